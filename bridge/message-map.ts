@@ -1,0 +1,98 @@
+/**
+ * The message map as plain data: which signal sits in which message, in which direction, when it is due, how it is
+ * laid out on each kind of link and what counts when it stops coming. Read from the bench file by configs/messages.ts.
+ * From the one map come the datagrams, the CAN frames, the C header, the CAN database file and a table for people.
+ */
+export interface MessageMap {
+  readonly links: readonly LinkSpec[];
+  readonly messages: readonly MessageSpec[];
+}
+
+export interface LinkSpec {
+  readonly name: string;
+  readonly kind: 'udp' | 'can' | 'can-multicast';
+  /** Own address and port (udp), e.g. 127.0.0.1 and 47110. */
+  readonly localAddress?: string;
+  readonly localPort?: number;
+  readonly remoteAddress?: string;
+  readonly remotePort?: number;
+  /** Interface name (can) or group (can-multicast). */
+  readonly interface?: string;
+  /** Nominal and data bit rate, bit/s (can). */
+  readonly bitRate?: number;
+  readonly dataBitRate?: number;
+}
+
+export type WireType = 'u8' | 'i8' | 'u16' | 'i16' | 'u32' | 'i32' | 'f32' | 'f64';
+
+export interface MapSignal {
+  readonly name: string;
+  /** Sent: path of the signal it carries. Received: path of the command it drives, or '' for a signal that only is shown. */
+  readonly path: string;
+  readonly about: string;
+  /** Unit on the wire as text for people and headers: `bar(a)`, `N m`, `1`. */
+  readonly unit: string;
+  /** SI value = wire value in `unit` * unitScale + unitOffset. */
+  readonly unitScale: number;
+  readonly unitOffset: number;
+  /** UDP layout: the field's type; the wire number is (value in unit - offset) / scale. */
+  readonly type: WireType;
+  readonly scale: number;
+  readonly offset: number;
+  /** Range in `unit`, for saturation when sent and for the verdict `out of range` when received. */
+  readonly least: number;
+  readonly most: number;
+  /** Received: the value in `unit` when the message has timed out or never came. */
+  readonly substitute: number;
+  /** Names for values: an enumeration. */
+  readonly names?: Readonly<Record<string, number>>;
+  readonly can?: CanLayout;
+}
+
+export interface CanLayout {
+  /** As in CAN database text: bit number of the least significant (little endian) or most significant bit (big endian). */
+  readonly startBit: number;
+  readonly length: number;
+  readonly byteOrder: 'little' | 'big';
+  readonly signed: boolean;
+  readonly float: boolean;
+  readonly scale: number;
+  readonly offset: number;
+  /** Multiplexing: this signal is the selector, or is present when the named selector has one of these values. */
+  readonly selector?: boolean;
+  readonly selectedBy?: { readonly signal: string; readonly values: readonly (readonly [number, number])[] };
+}
+
+export interface MessageSpec {
+  readonly name: string;
+  readonly about: string;
+  readonly link: string;
+  /** Seen from the bench. */
+  readonly direction: 'sent' | 'received';
+  /** Number of the message on the wire (UDP message number; CAN identifier). */
+  readonly identifier: number;
+  readonly extended?: boolean;
+  readonly flexibleDataRate?: boolean;
+  readonly bitRateSwitch?: boolean;
+  /** Payload length on CAN, bytes. */
+  readonly bytes?: number;
+  /** Cycle, phase and start delay in ticks. */
+  readonly every: number;
+  readonly phase: number;
+  readonly startDelay: number;
+  /** Received: ticks without it after which the substitutes count. */
+  readonly timeout: number;
+  /** Sent: `cyclic`, or `on-change`, or cyclic with a faster cycle while its values move. */
+  readonly trigger: 'cyclic' | 'on-change' | 'cyclic-and-change';
+  readonly fastEvery?: number;
+  /** What a received value outside its range does. */
+  readonly outOfRange: 'saturate' | 'refuse';
+  readonly protection?: Protection;
+  readonly signals: readonly MapSignal[];
+}
+
+/** Counter and checksum inside the payload (CAN; UDP has its own in the header). */
+export interface Protection {
+  readonly kind: string;
+  readonly settings: Readonly<Record<string, number | string>>;
+}
