@@ -35,6 +35,8 @@ export interface MapSignal {
   /** SI value = wire value in `unit` * unitScale + unitOffset. */
   readonly unitScale: number;
   readonly unitOffset: number;
+  /** The SI unit itself, for the signal list, where the path does not tell it. */
+  readonly siUnit?: string;
   /** UDP layout: the field's type; the wire number is (value in unit - offset) / scale. */
   readonly type: WireType;
   readonly scale: number;

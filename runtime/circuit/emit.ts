@@ -1,0 +1,224 @@
+import type { Graph, NodeId } from './graph.js';
+
+/**
+ * Prints nodes as straight-line code. A node used once is written in place, others become constants. Long functions
+ * are cut into chunks (V8 leaves a function of more than about 60 kB of bytecode unoptimised); values that cross from
+ * one chunk to another go through one array.
+ */
+export interface Output {
+  readonly array: string;
+  readonly index: number;
+  readonly node: NodeId;
+}
+
+export interface Dialect {
+  readonly state: (index: number) => string;
+  readonly command: (index: number) => string;
+  readonly memory: (index: number) => string;
+  readonly step: string;
+  readonly math: (name: string) => string;
+  readonly number: (value: number) => string;
+  readonly local: string;
+  readonly equals: string;
+  readonly differs: string;
+}
+
+export const javaScript: Dialect = {
+  state: (index) => `y[${index}]`,
+  command: (index) => `u[${index}]`,
+  memory: (index) => `m[${index}]`,
+  step: 'h',
+  math: (name) => `Math.${name}`,
+  number: numberText,
+  local: 'const ',
+  equals: '===',
+  differs: '!==',
+};
+
+export const cLanguage: Dialect = {
+  state: (index) => `y[${index}]`,
+  command: (index) => `u[${index}]`,
+  memory: (index) => `m[${index}]`,
+  step: 'h',
+  math: (name) => ({ abs: 'fabs', min: 'fmin', max: 'fmax', sign: 'oilspring_sign' })[name] ?? name,
+  number: (value) => {
+    const text = numberText(value);
+    return /[.e]/i.test(text) ? text : text.startsWith('(') ? `${text.slice(0, -1)}.0)` : `${text}.0`;
+  },
+  local: 'const double ',
+  equals: '==',
+  differs: '!=',
+};
+
+function numberText(value: number): string {
+  if (Object.is(value, -0)) return '(-0.0)';
+  if (!Number.isFinite(value)) throw new Error(`a constant of the circuit is ${value}`);
+  return value < 0 ? `(${value})` : String(value);
+}
+
+const infix = new Set(['+', '-', '*', '/', '<', '<=', '>', '>=', '===', '!==', '&&', '||']);
+const boolean = new Set(['<', '<=', '>', '>=', '===', '!==', '&&', '||', '!']);
+
+export interface Chunk {
+  readonly lines: string[];
+}
+
+/** Cuts `outputs` into chunks of at most `most` operations. */
+export function printChunks(graph: Graph, outputs: readonly Output[], dialect: Dialect, most = 1800): { chunks: Chunk[]; spills: number } {
+  const uses = new Map<NodeId, number>();
+  const order: NodeId[] = [];
+  const operandsOf = (id: NodeId) => graph.nodes[id]!.operands.map((operand) => throughLaw(graph, operand));
+  const visit = (given: NodeId) => {
+    const root = throughLaw(graph, given);
+    const stack: [NodeId, number][] = [[root, 0]];
+    uses.set(root, (uses.get(root) ?? 0) + 1);
+    if (uses.get(root)! > 1) return;
+    while (stack.length > 0) {
+      const top = stack[stack.length - 1]!;
+      const operands = operandsOf(top[0]);
+      if (top[1] === operands.length) {
+        order.push(top[0]);
+        stack.pop();
+        continue;
+      }
+      const next = operands[top[1]]!;
+      top[1] += 1;
+      const seen = uses.get(next) ?? 0;
+      uses.set(next, seen + 1);
+      if (seen === 0) stack.push([next, 0]);
+    }
+  };
+  for (const output of outputs) visit(output.node);
+
+  const chunkOf = new Map<NodeId, number>();
+  let chunk = 0;
+  let inChunk = 0;
+  for (const id of order) {
+    if (isLeaf(graph, id)) continue;
+    if (inChunk >= most) {
+      chunk += 1;
+      inChunk = 0;
+    }
+    chunkOf.set(id, chunk);
+    inChunk += 1;
+  }
+  const chunkCount = chunk + 1;
+
+  // a node must be reachable in a later chunk by its spill slot; single-use nodes are printed in the chunk of their user
+  const spill = new Map<NodeId, number>();
+  for (const id of order) {
+    const mine = chunkOf.get(id);
+    for (const target of operandsOf(id)) {
+      const theirs = chunkOf.get(target);
+      if (theirs !== undefined && theirs !== mine && !spill.has(target)) spill.set(target, spill.size);
+    }
+  }
+
+  const chunks: Chunk[] = Array.from({ length: chunkCount }, () => ({ lines: [] }));
+  const printed = new Map<NodeId, string>();
+  const text = (id: NodeId, at: number): string => {
+    const target = throughLaw(graph, id);
+    const node = graph.nodes[target]!;
+    switch (node.op) {
+      case 'const':
+        return dialect.number(node.value);
+      case 'state':
+        return dialect.state(node.value);
+      case 'command':
+        return dialect.command(node.value);
+      case 'memory':
+        return dialect.memory(node.value);
+      case 'step':
+        return dialect.step;
+      default:
+    }
+    const mine = chunkOf.get(target)!;
+    if (mine !== at) return `w[${spill.get(target)!}]`;
+    const name = printed.get(target);
+    return name ?? expression(target, at);
+  };
+  const condition = (id: NodeId, at: number): string => {
+    const node = graph.nodes[throughLaw(graph, id)]!;
+    return boolean.has(node.op) ? text(id, at) : `(${text(id, at)} ${dialect.differs} 0)`;
+  };
+  const expression = (id: NodeId, at: number): string => {
+    const node = graph.nodes[id]!;
+    const [a, b, c] = node.operands as [NodeId, NodeId, NodeId];
+    switch (node.op) {
+      case 'neg':
+        return `(-${text(a, at)})`;
+      case '?':
+        return `(${condition(a, at)} ? ${text(b, at)} : ${text(c, at)})`;
+      case '!':
+        return `(!${condition(a, at)})`;
+      case '&&':
+      case '||':
+        return `(${condition(a, at)} ${node.op} ${condition(b, at)})`;
+      default:
+        if (infix.has(node.op)) {
+          const op = node.op === '===' ? dialect.equals : node.op === '!==' ? dialect.differs : node.op;
+          return `(${text(a, at)} ${op} ${text(b, at)})`;
+        }
+        return `${dialect.math(node.op)}(${node.operands.map((operand) => text(operand, at)).join(', ')})`;
+    }
+  };
+  const depth = new Map<NodeId, number>();
+  for (const id of order) {
+    const node = graph.nodes[id]!;
+    if (isLeaf(graph, id)) continue;
+    const at = chunkOf.get(id)!;
+    const below = Math.max(0, ...operandsOf(id).map((operand) => depth.get(operand) ?? 0));
+    const spilled = spill.get(id);
+    const single = uses.get(id) === 1 && spilled === undefined && below < 12;
+    if (single || (boolean.has(node.op) && uses.get(id)! <= 1)) {
+      depth.set(id, below + 1);
+      continue;
+    }
+    depth.set(id, 0);
+    const isBoolean = boolean.has(node.op);
+    const body = isBoolean ? `${expression(id, at)} ? 1 : 0` : expression(id, at);
+    const lines = chunks[at]!.lines;
+    if (isBoolean) {
+      // a truth value used more than once is kept as 1 or 0
+      lines.push(`${dialect.local}v${id} = ${body};`);
+      printed.set(id, `(v${id} ${dialect.differs} 0)`);
+      if (spilled !== undefined) lines.push(`w[${spilled}] = v${id};`);
+      continue;
+    }
+    lines.push(`${dialect.local}v${id} = ${body};`);
+    printed.set(id, `v${id}`);
+    if (spilled !== undefined) lines.push(`w[${spilled}] = v${id};`);
+  }
+  for (const output of outputs) {
+    const target = throughLaw(graph, output.node);
+    const at = isLeaf(graph, target) ? chunkCount - 1 : chunkOf.get(target)!;
+    const value = boolean.has(graph.nodes[target]!.op) ? `(${text(target, at)} ? 1 : 0)` : text(target, at);
+    chunks[at]!.lines.push(`${output.array}[${output.index}] = ${value};`);
+  }
+  return { chunks, spills: spill.size };
+}
+
+function throughLaw(graph: Graph, id: NodeId): NodeId {
+  let at = id;
+  while (graph.nodes[at]!.op === 'law') at = graph.nodes[at]!.operands[0]!;
+  return at;
+}
+
+function isLeaf(graph: Graph, id: NodeId): boolean {
+  const op = graph.nodes[id]!.op;
+  return op === 'const' || op === 'state' || op === 'command' || op === 'memory' || op === 'step';
+}
+
+/** A JavaScript function over the arrays named in `parameters` that fills all outputs; `w` is its own spill array. */
+export function printFunction(graph: Graph, name: string, parameters: readonly string[], outputs: readonly Output[]): string {
+  const { chunks, spills } = printChunks(graph, outputs, javaScript);
+  const list = parameters.join(', ');
+  if (chunks.length === 1) return `function ${name}(${list}) {\n${indent(chunks[0]!.lines)}\n}`;
+  const parts = chunks.map((chunk, i) => `function ${name}${i}(${list}, w) {\n${indent(chunk.lines)}\n}`);
+  const calls = chunks.map((_, i) => `${name}${i}(${list}, ${name}W);`);
+  return `const ${name}W = new Float64Array(${Math.max(1, spills)});\n${parts.join('\n')}\nfunction ${name}(${list}) {\n${indent(calls)}\n}`;
+}
+
+export function indent(lines: readonly string[]): string {
+  return lines.map((line) => `  ${line}`).join('\n');
+}

@@ -1,0 +1,120 @@
+import type { Circuit } from './circuit/build.js';
+import { places } from './circuit/build.js';
+import { type LedgerPart, Rodas3 } from './solver/rodas3.js';
+
+/**
+ * A circuit with its state, memory and commands, advanced by whole steps. All that it remembers stands in three
+ * stretches of one block (see BlockLayout); `ledger` holds the running integrals: supplied, left, brought per stuff.
+ */
+export interface PlantPlaces {
+  readonly states: number;
+  readonly memory: number;
+  readonly commands: number;
+  readonly ledger: number;
+}
+
+export class Plant implements LedgerPart {
+  readonly y: Float64Array;
+  readonly m: Float64Array;
+  readonly u: Float64Array;
+  /** Integrals since the start: energy supplied and left, J; brought per stuff, kg. */
+  readonly ledger: Float64Array;
+  /** Readings, ledger powers, total energy, holdings, as of the end of the last step: see `places`. */
+  readonly observed: Float64Array;
+  readonly solver: Rodas3;
+  private readonly next: Float64Array;
+  private readonly open: Float64Array;
+  private openLength = 0;
+  private readonly count: number;
+  private readonly first: number;
+  private readonly observedLedger: number;
+  private readonly h: number;
+
+  constructor(
+    readonly circuit: Circuit,
+    readonly settings: { readonly step: number; readonly substeps: number; readonly net?: boolean },
+    block: Float64Array,
+    at: PlantPlaces,
+  ) {
+    const place = places(circuit);
+    this.count = place.rateCount - circuit.states.length;
+    this.first = circuit.states.length;
+    this.observedLedger = place.supplied;
+    this.y = block.subarray(at.states, at.states + circuit.states.length);
+    this.m = block.subarray(at.memory, at.memory + circuit.memory.length);
+    this.u = block.subarray(at.commands, at.commands + circuit.commands.length);
+    this.ledger = block.subarray(at.ledger, at.ledger + this.count);
+    this.observed = new Float64Array(place.observeCount);
+    this.next = new Float64Array(circuit.memory.length);
+    this.open = new Float64Array(this.count);
+    this.solver = new Rodas3(circuit, { net: settings.net ?? true });
+    this.h = settings.step / settings.substeps;
+  }
+
+  /** A plant with a block of its own: for checks, tests and references. */
+  static alone(circuit: Circuit, settings: { readonly step: number; readonly substeps: number; readonly net?: boolean }): Plant {
+    const n = circuit.states.length;
+    const k = circuit.memory.length;
+    const c = circuit.commands.length;
+    const plant = new Plant(circuit, settings, new Float64Array(n + k + c + 2 + circuit.stuffs.length), {
+      states: 0,
+      memory: n,
+      commands: n + k,
+      ledger: n + k + c,
+    });
+    plant.reset();
+    return plant;
+  }
+
+  /** Puts the start values into the block and observes. */
+  reset(): void {
+    const { circuit } = this;
+    circuit.states.forEach((state, i) => {
+      this.y[i] = state.initial;
+    });
+    circuit.memory.forEach((slot, i) => {
+      this.m[i] = slot.initial;
+    });
+    circuit.commands.forEach((command, i) => {
+      this.u[i] = command.rest;
+    });
+    this.ledger.fill(0);
+    this.observe();
+  }
+
+  observe(): void {
+    this.circuit.functions.observe(this.y, this.u, this.m, this.observed);
+  }
+
+  /** Advances by one step with the commands held, then observes. Allocates nothing. */
+  step(): void {
+    const { circuit, settings, y, u, m, next, solver, h } = this;
+    this.openLength = 0;
+    for (let i = 0; i < settings.substeps; i += 1) {
+      if (circuit.hasMemory) {
+        circuit.functions.update(y, u, m, h, next);
+        m.set(next);
+      }
+      solver.substep(y, u, m, h, this);
+    }
+    this.observe();
+    this.close();
+  }
+
+  /** Trapezoid over the parts of a step: each part's end is the next part's start; the step's end is observed. */
+  part(d: Float64Array, length: number): void {
+    const { count, first, open, ledger } = this;
+    for (let i = 0; i < count; i += 1) {
+      const power = d[first + i]!;
+      ledger[i] = ledger[i]! + 0.5 * (this.openLength * (open[i]! + power));
+      open[i] = power;
+    }
+    this.openLength = length;
+  }
+
+  private close(): void {
+    const { count, open, ledger, observed, observedLedger } = this;
+    for (let i = 0; i < count; i += 1) ledger[i] = ledger[i]! + 0.5 * (this.openLength * (open[i]! + observed[observedLedger + i]!));
+    this.openLength = 0;
+  }
+}
