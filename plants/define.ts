@@ -13,7 +13,7 @@ import type {
 import type { PortKindName, PortVariables } from './ports.js';
 
 type Numbers<T> = { readonly [K in keyof T]: number };
-type Writable<T> = { [K in keyof T]: number };
+type Writable<T> = { -readonly [K in keyof T]: number };
 type Ports<P extends Record<string, PortKindName>> = { [K in keyof P]: PortVariables[P[K]] };
 
 /** The one argument of an element function. Ports stand beside the tables under their own names. */
