@@ -78,13 +78,11 @@ export function unfuse(circuit: Circuit): Unfused {
       const scaled = kind.scaled?.effort === effort && connection;
       view[effort] = !target ? 0 : scaled ? connection.ratio * target[effort]! : target[effort]!;
     }
-    // `port.flow += x` reads the store's sum, adds, writes it back: with a ratio the store gets sum + ratio * x
-    const real: Record<string, number> = {};
+    // `port.flow += x` reads -0 here, so that what is written is x to the bit; the store then gets sum + ratio * x
     return new Proxy(view, {
-      get: (_, key: string) => (key in kind.flows ? 0 : view[key]),
+      get: (_, key: string) => (key in kind.flows ? -0 : view[key]),
       set: (_, key: string, added: number) => {
         if (!target) return true;
-        real[key] = added;
         const scaled = kind.scaled?.flow === key ? connection!.ratio * added : added;
         target[key] = target[key]! + scaled;
         return true;

@@ -1,0 +1,226 @@
+/**
+ * Laws of nitrogen and of the gas-charged accumulator. Pure numbers, SI, absolute pressures.
+ *
+ * Equation of state: Benedict, Webb and Rubin with the nitrogen constants of Cooper and Goldfrank (1967), as tabulated
+ * in Cengel and Boles (table 3-4) and Moran and Shapiro (table A-24), turned into mass units with M = 28.013 kg/kmol.
+ * Energy form after Otis and Pourmovahed (1985). Within 1 % of the reference equation (Span et al. 2000) at 300 K to
+ * 400 K up to 30 MPa. `real` is 1 for that equation and 0 for the ideal gas with c_v = 5/2 R (kappa = 1.4).
+ */
+
+export const NITROGEN_GAS_CONSTANT = 296.8;
+export const BWR_A0 = 136.009;
+export const BWR_B0 = 1.454325e-3;
+export const BWR_C0 = 1.04036e6;
+export const BWR_A = 0.115546;
+export const BWR_B = 2.96663e-6;
+export const BWR_C = 3356.75;
+export const BWR_ALPHA = 5.786397e-9;
+export const BWR_GAMMA = 6.753931e-6;
+/** Characteristic temperature of the vibration of the molecule, K (ideal part of Span et al. 2000). */
+export const NITROGEN_VIBRATION = 3364.011;
+
+/** Pressure, Pa, at `density` kg/m3 and `temperature` K. */
+export function gasPressure(density: number, temperature: number, real: number): number {
+  const square = density * density;
+  const cube = square * density;
+  const rt = NITROGEN_GAS_CONSTANT * temperature;
+  const tt = temperature * temperature;
+  const g = BWR_GAMMA * square;
+  return (
+    rt * density +
+    real *
+      ((BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) * square +
+        (BWR_B * rt - BWR_A) * cube +
+        BWR_A * BWR_ALPHA * cube * cube +
+        ((BWR_C * cube) / tt) * (1 + g) * Math.exp(-g))
+  );
+}
+
+/** (dp/dT) at constant volume, Pa/K. */
+export function gasPressureByTemperature(density: number, temperature: number, real: number): number {
+  const square = density * density;
+  const cube = square * density;
+  const ttt = temperature * temperature * temperature;
+  const g = BWR_GAMMA * square;
+  return (
+    NITROGEN_GAS_CONSTANT * density +
+    real *
+      ((BWR_B0 * NITROGEN_GAS_CONSTANT + (2 * BWR_C0) / ttt) * square +
+        BWR_B * NITROGEN_GAS_CONSTANT * cube -
+        ((2 * BWR_C * cube) / ttt) * (1 + g) * Math.exp(-g))
+  );
+}
+
+/** (dp/drho) at constant temperature, J/kg. */
+export function gasPressureByDensity(density: number, temperature: number, real: number): number {
+  const square = density * density;
+  const rt = NITROGEN_GAS_CONSTANT * temperature;
+  const tt = temperature * temperature;
+  const g = BWR_GAMMA * square;
+  return (
+    rt +
+    real *
+      (2 * (BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) * density +
+        3 * (BWR_B * rt - BWR_A) * square +
+        6 * BWR_A * BWR_ALPHA * square * square * density +
+        ((BWR_C * square) / tt) * (3 + 3 * g - 2 * g * g) * Math.exp(-g))
+  );
+}
+
+/** Heat capacity at constant volume, J/(kg K). */
+export function gasHeatCapacity(density: number, temperature: number, real: number): number {
+  const y = NITROGEN_VIBRATION / temperature;
+  const e = Math.exp(-y);
+  const ttt = temperature * temperature * temperature;
+  const square = density * density;
+  return (
+    2.5 * NITROGEN_GAS_CONSTANT +
+    real *
+      ((NITROGEN_GAS_CONSTANT * y * y * e) / ((1 - e) * (1 - e)) +
+        (6 / ttt) * (BWR_C0 * density - BWR_C / BWR_GAMMA) +
+        ((3 * BWR_C) / ttt) * (2 / BWR_GAMMA + square) * Math.exp(-BWR_GAMMA * square))
+  );
+}
+
+/** Internal energy, J/kg, zero for the dilute gas at 0 K. Consistent with the laws above: du/dT = c_v, du/dv = T p_T - p. */
+export function gasEnergy(density: number, temperature: number, real: number): number {
+  const e = Math.exp(-NITROGEN_VIBRATION / temperature);
+  const tt = temperature * temperature;
+  const square = density * density;
+  const g = BWR_GAMMA * square;
+  return (
+    2.5 * NITROGEN_GAS_CONSTANT * temperature +
+    real *
+      ((NITROGEN_GAS_CONSTANT * NITROGEN_VIBRATION * e) / (1 - e) -
+        (BWR_A0 + (3 * BWR_C0) / tt) * density -
+        0.5 * BWR_A * square +
+        0.2 * BWR_A * BWR_ALPHA * square * square * density +
+        ((1.5 * BWR_C) / (BWR_GAMMA * tt)) * (2 - (2 + g) * Math.exp(-g)))
+  );
+}
+
+/**
+ * Share of the gas pressure that the oil of an accumulator sees, 0 to 1, by its oil volume: 1 with the poppet open, and
+ * 1 - (1 - V/Vc)^3 below the closing volume Vc, where the poppet carries the rest. The gas then gives way only by this
+ * share of the oil volume (see `separatorTravel`), which keeps the energy exact and the oil pressure above zero.
+ */
+export function poppetShare(oilVolume: number, closingVolume: number): number {
+  const closed = Math.max(0, 1 - oilVolume / closingVolume);
+  return 1 - closed * closed * closed;
+}
+
+/** Volume by which the gas has shrunk from its precharge volume, m3: the integral of the poppet's share. */
+export function separatorTravel(oilVolume: number, closingVolume: number): number {
+  const closed = Math.max(0, 1 - oilVolume / closingVolume);
+  return oilVolume - 0.25 * closingVolume * (1 - closed * closed * closed * closed);
+}
+
+/** Pressure, Pa, that the end stop adds: a cubic spring past `fullVolume`, `stopPressure` at one closing volume past it. */
+export function stopRise(oilVolume: number, closingVolume: number, fullVolume: number, stopPressure: number): number {
+  const past = Math.max(0, oilVolume - fullVolume) / closingVolume;
+  return stopPressure * past * past * past;
+}
+
+/** Energy in that spring, J. */
+export function stopEnergy(oilVolume: number, closingVolume: number, fullVolume: number, stopPressure: number): number {
+  const past = Math.max(0, oilVolume - fullVolume) / closingVolume;
+  return 0.25 * stopPressure * closingVolume * past * past * past * past;
+}
+
+/** Gas volume, m3, never below half a percent of `volume`. */
+export function accumulatorGasVolume(oilVolume: number, volume: number, closingVolume: number): number {
+  return Math.max(volume - separatorTravel(oilVolume, closingVolume), 0.005 * volume);
+}
+
+/** Oil pressure, Pa, of an accumulator whose oil takes `oilVolume`. */
+export function accumulatorPressure(
+  oilVolume: number,
+  temperature: number,
+  gasMass: number,
+  real: number,
+  volume: number,
+  closingVolume: number,
+  fullVolume: number,
+  stopPressure: number,
+): number {
+  const density = gasMass / accumulatorGasVolume(oilVolume, volume, closingVolume);
+  return (
+    gasPressure(density, temperature, real) * poppetShare(oilVolume, closingVolume) +
+    stopRise(oilVolume, closingVolume, fullVolume, stopPressure)
+  );
+}
+
+/** Its derivative by the oil volume, Pa/m3. */
+export function accumulatorStiffness(
+  oilVolume: number,
+  temperature: number,
+  gasMass: number,
+  real: number,
+  volume: number,
+  closingVolume: number,
+  fullVolume: number,
+  stopPressure: number,
+): number {
+  const gasVolume = accumulatorGasVolume(oilVolume, volume, closingVolume);
+  const density = gasMass / gasVolume;
+  const closed = Math.max(0, 1 - oilVolume / closingVolume);
+  const share = 1 - closed * closed * closed;
+  const past = Math.max(0, oilVolume - fullVolume) / closingVolume;
+  return (
+    ((gasPressureByDensity(density, temperature, real) * density) / gasVolume) * share * share +
+    (gasPressure(density, temperature, real) * 3 * closed * closed + 3 * stopPressure * past * past) / closingVolume
+  );
+}
+
+/** Volume of oil as a share of its volume at the standard atmosphere; the same law as `oilVolumeRatio` of oil.ts. */
+export function storedOilRatio(pressure: number, freeAir: number, numerator: number, denominator: number): number {
+  const above = pressure - 101325;
+  return (freeAir * 101325) / pressure + ((1 - freeAir) * (1 + numerator * above)) / (1 + denominator * above);
+}
+
+/** Its derivative by pressure, 1/Pa; the same law as `oilVolumeSlope` of oil.ts. */
+export function storedOilSlope(pressure: number, freeAir: number, numerator: number, denominator: number): number {
+  const liquid = 1 + denominator * (pressure - 101325);
+  return (
+    (-freeAir * 101325) / (pressure * pressure) - ((1 - freeAir) * (denominator - numerator)) / (liquid * liquid)
+  );
+}
+
+/** One Newton step towards the oil volume at which the oil, compressed by the accumulator's pressure, just fits. */
+export function accumulatorNewton(
+  oilVolume: number,
+  relaxed: number,
+  temperature: number,
+  gasMass: number,
+  real: number,
+  volume: number,
+  closingVolume: number,
+  fullVolume: number,
+  stopPressure: number,
+  freeAir: number,
+  numerator: number,
+  denominator: number,
+): number {
+  const pressure = accumulatorPressure(
+    oilVolume,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+  );
+  const stiffness = accumulatorStiffness(
+    oilVolume,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+  );
+  const excess = oilVolume - relaxed * storedOilRatio(pressure, freeAir, numerator, denominator);
+  return oilVolume - excess / (1 - relaxed * storedOilSlope(pressure, freeAir, numerator, denominator) * stiffness);
+}

@@ -1,0 +1,120 @@
+/**
+ * Laws of mineral oil with free air. Pure numbers, SI, absolute pressures.
+ *
+ * The pressure law is barotropic: at the declared reference temperature, volume and pressure belong together, so that
+ * compression energy closes exactly. With P = p - p_a (p_a the standard atmosphere), the volume of an oil mass as a
+ * share of its volume at p_a is
+ *
+ *     x(p) = a0 p_a / p  +  (1 - a0) (1 + u P) / (1 + v P)
+ *
+ * a0 free air by volume at p_a (isothermal, comes and goes at once); u = (K' - 1)/(2 K), v = (K' + 1)/(2 K) with K the
+ * tangent bulk modulus of the liquid at p_a and K' = dK/dp there. K' = 0 is the constant modulus, exp(-P/K) within
+ * (P/K)^3/12; K' near 10 is what oils show. x(p) inverts in closed form (a quadratic) and stays positive for every mass.
+ * The lumped form of entrained air is common to the family reviewed by Gholizadeh, Burton and Schoenau (2011, 2012).
+ */
+
+/** Standard atmosphere, Pa: the reference of volumes and potentials. */
+export const STANDARD_PRESSURE = 101325;
+
+/** Numerator coefficient u of the liquid, 1/Pa. `modulus` Pa, `modulusSlope` = dK/dp, a pure number. */
+export function liquidNumerator(modulus: number, modulusSlope: number): number {
+  return (modulusSlope - 1) / (2 * modulus);
+}
+
+/** Denominator coefficient v of the liquid, 1/Pa. */
+export function liquidDenominator(modulus: number, modulusSlope: number): number {
+  return (modulusSlope + 1) / (2 * modulus);
+}
+
+/** Volume as a share of the volume at the standard atmosphere, x(p). `pressure` > 0. */
+export function oilVolumeRatio(pressure: number, freeAir: number, numerator: number, denominator: number): number {
+  const above = pressure - STANDARD_PRESSURE;
+  return (
+    (freeAir * STANDARD_PRESSURE) / pressure + ((1 - freeAir) * (1 + numerator * above)) / (1 + denominator * above)
+  );
+}
+
+/** dx/dp, 1/Pa, negative. */
+export function oilVolumeSlope(pressure: number, freeAir: number, numerator: number, denominator: number): number {
+  const liquid = 1 + denominator * (pressure - STANDARD_PRESSURE);
+  return (
+    (-freeAir * STANDARD_PRESSURE) / (pressure * pressure) -
+    ((1 - freeAir) * (denominator - numerator)) / (liquid * liquid)
+  );
+}
+
+/**
+ * Pressure, Pa, of oil whose volume is `ratio` (> 0) times its volume at the standard atmosphere: the positive root of
+ * a p^2 - q p - r = 0. Smooth, falling, positive for every ratio; `freeAir` must be above zero.
+ */
+export function oilPressure(ratio: number, freeAir: number, numerator: number, denominator: number): number {
+  const a = Math.max(ratio * denominator - (1 - freeAir) * numerator, 0.02 * denominator);
+  const q =
+    freeAir * STANDARD_PRESSURE * denominator +
+    (1 - freeAir) * (1 - numerator * STANDARD_PRESSURE) -
+    ratio * (1 - denominator * STANDARD_PRESSURE);
+  const r = freeAir * STANDARD_PRESSURE * (1 - denominator * STANDARD_PRESSURE);
+  const root = Math.sqrt(q * q + 4 * a * r);
+  return q > 0 ? (q + root) / (2 * a) : (2 * r) / (root - q);
+}
+
+/** Density, kg/m3, at `pressure` Pa; `referenceDensity` is that of oil with its air at the standard atmosphere. */
+export function oilDensity(
+  pressure: number,
+  referenceDensity: number,
+  freeAir: number,
+  numerator: number,
+  denominator: number,
+): number {
+  return referenceDensity / oilVolumeRatio(pressure, freeAir, numerator, denominator);
+}
+
+/** Pressure potential h(p) = integral of dp/rho from the standard atmosphere, J/kg. */
+export function oilPotential(
+  pressure: number,
+  referenceDensity: number,
+  freeAir: number,
+  numerator: number,
+  denominator: number,
+): number {
+  const above = pressure - STANDARD_PRESSURE;
+  const share = numerator / denominator;
+  const air = freeAir * STANDARD_PRESSURE * Math.log(pressure / STANDARD_PRESSURE);
+  const liquid = share * above + ((1 - share) / denominator) * Math.log(1 + denominator * above);
+  return (air + (1 - freeAir) * liquid) / referenceDensity;
+}
+
+/**
+ * Effective tangent bulk modulus, Pa: 1/K_e = (V_l/V)/K_l + (V_g/V)/(n p). `exponent` n is the polytropic exponent of
+ * the air; the pressure law of the plant is n = 1.
+ */
+export function effectiveBulkModulus(
+  pressure: number,
+  exponent: number,
+  freeAir: number,
+  numerator: number,
+  denominator: number,
+): number {
+  const above = pressure - STANDARD_PRESSURE;
+  const air = freeAir * Math.exp(Math.log(STANDARD_PRESSURE / pressure) / exponent);
+  const top = 1 + numerator * above;
+  const bottom = 1 + denominator * above;
+  const liquid = ((1 - freeAir) * top) / bottom;
+  const liquidSlope = ((1 - freeAir) * (denominator - numerator)) / (bottom * bottom);
+  return (air + liquid) / (liquidSlope + air / (exponent * pressure));
+}
+
+/**
+ * Kinematic viscosity, m2/s, after Walther (ASTM D341): log10 log10(nu + 0.7) = intercept - slope log10 T, nu in mm2/s,
+ * T in K. Valid above about 2 mm2/s; the temperature is held within 200 K to 500 K.
+ */
+export function kinematicViscosity(temperature: number, intercept: number, slope: number): number {
+  const held = Math.max(200, Math.min(500, temperature));
+  const outer = 2.302585092994046 * intercept - slope * Math.log(held);
+  return 1e-6 * Math.max(0.2, Math.exp(2.302585092994046 * Math.exp(outer)) - 0.7);
+}
+
+/** Factor by which pressure raises the viscosity, after Barus: exp(alpha p), `coefficient` alpha in 1/Pa. */
+export function pressureViscosityFactor(pressure: number, coefficient: number): number {
+  return Math.exp(coefficient * pressure);
+}
