@@ -42,7 +42,7 @@ export class DatagramQueue {
     if (this.count === 0) return -1;
     const at = this.head * this.placeLength;
     const length = this.lengths[this.head];
-    const copied = length < into.length ? length : into.length;
+    const copied = Math.min(length, into.length);
     for (let i = 0; i < copied; i += 1) into[i] = this.bytes[at + i];
     this.head = (this.head + 1) % this.places;
     this.count -= 1;

@@ -1,0 +1,166 @@
+import { BuildError, type Problem } from '../runtime/contract.js';
+import type { MapSignal, MessageMap, MessageSpec } from './message-map.js';
+import { greatestLength, limits, udpLayout, wireNumber } from './udp-layout.js';
+
+/** Names that the exchange gives to its own signals beside those of a message. */
+export const messageCounts = [
+  'age',
+  'timedOut',
+  'received',
+  'lost',
+  'duplicate',
+  'late',
+  'outOfRange',
+  'timeOuts',
+  'restarts',
+  'sent',
+  'unsendable',
+] as const;
+
+const identifier = /^[A-Za-z][A-Za-z0-9]*$/;
+
+/** Everything that is wrong with a map on its own, without a bench. Empty when it can be compiled. */
+export function examineMap(map: MessageMap): Problem[] {
+  const problems: Problem[] = [];
+  const links = new Set<string>();
+  for (const link of map.links) {
+    if (links.has(link.name))
+      problems.push({ path: `links.${link.name}`, what: 'the link is there twice', remedy: 'give each its own name' });
+    links.add(link.name);
+  }
+  const names = new Set<string>();
+  const numbers = new Map<string, string>();
+  for (const message of map.messages) {
+    const path = `messages.${message.name}`;
+    const add = (what: string, value: string, bound: string, remedy: string): void => {
+      problems.push({ path, what, value, bound, remedy });
+    };
+    if (!identifier.test(message.name))
+      add('the name cannot be used in C', message.name, 'letters and digits, a letter first', 'rename it');
+    if (names.has(message.name) || links.has(message.name))
+      add('the name is taken', message.name, 'one message or link per name', 'rename it');
+    names.add(message.name);
+    const link = map.links.find((one) => one.name === message.link);
+    if (!link) add('unknown link', message.link, `known: ${[...links].join(', ') || 'none'}`, 'declare it under links');
+    const number = `${message.link} ${message.identifier}`;
+    const other = numbers.get(number);
+    if (other !== undefined)
+      add(
+        'the number is taken on this link',
+        `${message.identifier}`,
+        `by ${other}`,
+        'number the messages of a link apart',
+      );
+    numbers.set(number, message.name);
+    examineTiming(message, add);
+    if (link?.kind === 'udp') {
+      if (!(Number.isInteger(message.identifier) && message.identifier >= 1 && message.identifier <= 0xffff))
+        add('the number does not fit a datagram', `${message.identifier}`, '1 to 65535', 'choose another number');
+      const { length } = udpLayout(message);
+      if (length > greatestLength)
+        add('the datagram is too long', `${length} bytes`, `at most ${greatestLength} bytes`, 'split the message');
+    }
+    examineSignals(message, path, problems);
+  }
+  return problems;
+}
+
+/** Throws a BuildError with all problems of the map, if there are any. */
+export function requireSoundMap(map: MessageMap): void {
+  const problems = examineMap(map);
+  if (problems.length > 0) throw new BuildError(problems);
+}
+
+function examineTiming(
+  message: MessageSpec,
+  add: (what: string, value: string, bound: string, remedy: string) => void,
+): void {
+  const whole = (value: number | undefined, least: number): boolean =>
+    value === undefined || (Number.isInteger(value) && value >= least);
+  if (!whole(message.every, message.trigger === 'on-change' ? 0 : 1))
+    add(
+      'the cycle is not a whole number of ticks',
+      `${message.every} ticks`,
+      'at least 1 tick',
+      'give a cycle that the step divides',
+    );
+  if (!whole(message.phase, 0) || (message.every > 0 && message.phase >= message.every))
+    add(
+      'the phase lies outside the cycle',
+      `${message.phase} ticks`,
+      `0 to ${Math.max(0, message.every - 1)} ticks`,
+      'reduce it by the cycle',
+    );
+  if (!whole(message.startDelay, 0))
+    add('the start delay is no whole number of ticks', `${message.startDelay} ticks`, 'at least 0', 'change it');
+  if (!whole(message.timeout, 0))
+    add('the time-out is no whole number of ticks', `${message.timeout} ticks`, 'at least 0', 'change it (0: never)');
+  if (!whole(message.fastEvery, 1))
+    add('the fast cycle is no whole number of ticks', `${message.fastEvery} ticks`, 'at least 1 tick', 'change it');
+}
+
+function examineSignals(message: MessageSpec, path: string, problems: Problem[]): void {
+  const names = new Set<string>();
+  for (const signal of message.signals) {
+    const add = (what: string, value: string, bound: string, remedy: string): void => {
+      problems.push({ path: `${path}.${signal.name}`, what, value, bound, remedy });
+    };
+    if (!identifier.test(signal.name))
+      add('the name cannot be used in C', signal.name, 'letters and digits, a letter first', 'rename it');
+    if (names.has(signal.name))
+      add('the message has this signal twice', signal.name, 'one signal per name', 'rename one');
+    if ((messageCounts as readonly string[]).includes(signal.name))
+      add('the name belongs to the link itself', signal.name, `not one of ${messageCounts.join(', ')}`, 'rename it');
+    names.add(signal.name);
+    examineNumbers(signal, message.direction === 'received', add);
+  }
+}
+
+function examineNumbers(
+  signal: MapSignal,
+  received: boolean,
+  add: (what: string, value: string, bound: string, remedy: string) => void,
+): void {
+  const { least, most, unit } = signal;
+  for (const name of ['scale', 'offset', 'unitScale', 'unitOffset', 'least', 'most'] as const)
+    if (!Number.isFinite(signal[name])) {
+      add(`${name} is not a finite number`, `${signal[name]}`, '', 'give a number');
+      return;
+    }
+  if (signal.scale === 0 || signal.unitScale === 0) {
+    add('the scale is zero', '0', 'not 0', 'give the size of one wire step');
+    return;
+  }
+  if (least > most) {
+    add('the range is upside down', `${least} .. ${most} ${unit}`, 'least first', 'swap the ends');
+    return;
+  }
+  const [low, high] = limits[signal.type];
+  for (const end of [least, most]) {
+    const wire = (end - signal.offset) / signal.scale;
+    if (wire < low - 0.5 || (signal.type[0] === 'f' ? wire > high : wire >= high + 0.5)) {
+      const ends = [low * signal.scale + signal.offset, high * signal.scale + signal.offset].sort((a, b) => a - b);
+      add(
+        `the range does not fit ${signal.type}`,
+        `${end} ${unit}`,
+        `${ends[0]} .. ${ends[1]} ${unit}`,
+        'take a wider type or another scale',
+      );
+    }
+  }
+  const wire = wireNumber(signal, most) - wireNumber(signal, least);
+  if (wire === 0 && least !== most)
+    add(
+      'the range is smaller than one wire step',
+      `${least} .. ${most} ${unit}`,
+      `step ${signal.scale} ${unit}`,
+      'take a finer scale',
+    );
+  if (received && !(signal.substitute >= least && signal.substitute <= most))
+    add(
+      'the substitute lies outside the range',
+      `${signal.substitute} ${unit}`,
+      `${least} .. ${most} ${unit}`,
+      'choose one inside',
+    );
+}

@@ -1,0 +1,358 @@
+import type { BlockLayout } from '../runtime/block.js';
+import { BuildError, type Problem } from '../runtime/contract.js';
+import type { EventCatalogue, Journal } from '../runtime/journal.js';
+import type { SignalTable } from '../runtime/signals.js';
+import { CountReports } from './count-reports.js';
+import { requireSoundMap } from './examine-map.js';
+import { linkEvents } from './link-events.js';
+import type { MapSignal, MessageMap } from './message-map.js';
+import { SlotCopies } from './slot-copies.js';
+import type { Transport } from './transport.js';
+import { mapChecksum } from './udp-layout.js';
+import { type LinkCount, linkCounts, UdpLink } from './udp-link.js';
+
+/** Where commands stand in the block. */
+export interface Targets {
+  /** Slot of the command with this path, or -1. */
+  find(path: string): number;
+  /** Paths like it, for the message about an unknown one. */
+  nearest?(path: string): readonly string[];
+}
+
+export interface ExchangeOptions {
+  readonly map: MessageMap;
+  readonly layout: BlockLayout;
+  /** Complete but for the exchange's own signals: what the messages carry is looked up here. */
+  readonly signals: SignalTable;
+  readonly events: EventCatalogue;
+  readonly targets: Targets;
+  /** Length of a tick, s. */
+  readonly step: number;
+  /** Ticks, from the first, in which time-outs put substitutes in place but are not counted. Default 0. */
+  readonly bootWindowTicks?: number;
+  /** Number of the first tick; negative with a pre-roll. Default 0. */
+  readonly firstTick?: number;
+  /** Most datagrams that one tick takes from one link. Default: four times the messages it may bring, at least 64. */
+  readonly datagramsPerTick?: number;
+}
+
+/**
+ * The exchange of messages with controllers, on the loop thread: `take` at the start of a tick, `publish` near its
+ * end. All that it remembers stands in the block, so that a run derived again from its inputs has the same bytes; it
+ * allocates nothing after it is made.
+ *
+ * Signals: `message.signal` (SI; the value that counts, or the value sent last), `message.age` and the counts of each
+ * message, the counts of each link, and `link.oneStepShare`.
+ */
+export class Exchange {
+  readonly checksum: number;
+  readonly links: readonly UdpLink[];
+  private readonly reports: CountReports;
+  private readonly taken: SlotCopies;
+  private readonly driven: SlotCopies;
+  private readonly gathered: SlotCopies;
+  private readonly published: SlotCopies;
+  private readonly shares: { readonly slots: UdpLink['slots']; readonly signal: number }[] = [];
+  private readonly units: Float64Array;
+  private readonly bootUntil: number;
+  private readonly silent: number;
+  private readonly timedOutKind: number;
+  private readonly cameBackKind: number;
+  private readonly awakeKind: number;
+  private readonly firstTick: number;
+  private readonly step: number;
+  private readonly bootWindowTicks: number;
+  private readonly subjects: Int32Array[];
+  private readonly linkSubjects: Int32Array;
+  private journal: Journal | undefined;
+
+  constructor(options: ExchangeOptions) {
+    const { map, layout, events, step } = options;
+    requireSoundMap(map);
+    const firstTick = options.firstTick ?? 0;
+    const problems: Problem[] = [];
+    this.checksum = mapChecksum(map);
+    this.firstTick = firstTick;
+    this.step = step;
+    this.bootWindowTicks = options.bootWindowTicks ?? 0;
+    this.bootUntil = layout.add('exchange.bootUntil', firstTick + this.bootWindowTicks);
+    this.silent = layout.add('exchange.silent');
+    this.reports = new CountReports(layout, events, Math.max(1, Math.round(1 / step)));
+    this.taken = new SlotCopies();
+    this.driven = new SlotCopies();
+    this.gathered = new SlotCopies();
+    this.published = new SlotCopies();
+    this.timedOutKind = events.kind(linkEvents.timedOut);
+    this.cameBackKind = events.kind(linkEvents.cameBack);
+    this.awakeKind = events.kind(linkEvents.awake);
+
+    const links: UdpLink[] = [];
+    map.links.forEach((spec, number) => {
+      if (spec.kind !== 'udp') {
+        problems.push({
+          path: `links.${spec.name}`,
+          what: 'this exchange serves no such link',
+          value: spec.kind,
+          bound: 'udp',
+          remedy: 'make it a udp link',
+        });
+        return;
+      }
+      const messages = map.messages.filter((message) => message.link === spec.name);
+      const most =
+        options.datagramsPerTick ??
+        Math.max(64, 4 * messages.filter((message) => message.direction === 'received').length);
+      links.push(new UdpLink(spec, number, messages, this.checksum, layout, firstTick, most));
+    });
+    this.links = links;
+    for (const link of links) this.declare(link, options, problems);
+    this.connect(options, problems);
+    if (problems.length > 0) throw new BuildError(problems);
+
+    this.units = new Float64Array(this.gathered.length);
+    this.subjects = links.map((link) =>
+      Int32Array.from(link.receivers, (receiver) => events.subject(receiver.message.name)),
+    );
+    this.linkSubjects = Int32Array.from(links, (link) => events.subject(link.spec.name));
+  }
+
+  /** Ties a link to what moves its datagrams; before that nothing comes on it and nothing leaves. */
+  attach(linkName: string, transport: Transport): void {
+    const link = this.links.find((one) => one.spec.name === linkName);
+    if (!link) throw new Error(`no link ${linkName}; there are: ${this.links.map((one) => one.spec.name).join(', ')}`);
+    link.transport = transport;
+  }
+
+  setJournal(journal: Journal): void {
+    this.journal = journal;
+    for (const link of this.links) link.journal = journal;
+  }
+
+  /** Stage `take`: drains the links, ages messages, puts substitutes in place, drives commands, shows all as signals. */
+  take(block: Float64Array, signals: Float64Array, tick: number): void {
+    const counts = tick >= block[this.bootUntil];
+    for (let l = 0; l < this.links.length; l += 1) {
+      const link = this.links[l];
+      const wasAwake = block[link.awake];
+      link.take(block, tick);
+      if (wasAwake === 0 && block[link.awake] === 1)
+        this.journal?.event(tick, this.awakeKind, this.linkSubjects[l], 0, 0, 0);
+      const receivers = link.receivers;
+      for (let i = 0; i < receivers.length; i += 1) {
+        const change = receivers[i].settle(block, counts);
+        if (change !== 0 && this.journal) {
+          const ticks = change > 0 ? block[receivers[i].age] : block[receivers[i].gap];
+          this.journal.event(
+            tick,
+            change > 0 ? this.timedOutKind : this.cameBackKind,
+            this.subjects[l][i],
+            ticks * this.step,
+            0,
+            0,
+          );
+        }
+      }
+    }
+    this.driven.copy(block, block);
+    this.taken.copy(block, signals);
+    for (let i = 0; i < this.shares.length; i += 1) {
+      const { slots, signal } = this.shares[i];
+      signals[signal] = block[slots.replies] > 0 ? block[slots.oneStepReplies] / block[slots.replies] : 0;
+    }
+    if (this.journal) this.reports.report(block, tick, this.journal);
+  }
+
+  /** Stage `publish`: writes and sends, in map order, what is due in this tick. */
+  publish(block: Float64Array, signals: Float64Array, tick: number): void {
+    if (block[this.silent] === 0) {
+      this.gathered.copy(signals, this.units);
+      let from = 0;
+      for (let l = 0; l < this.links.length; l += 1) {
+        const link = this.links[l];
+        if (tick === this.firstTick) link.hello(tick);
+        for (let i = 0; i < link.senders.length; i += 1) {
+          link.send(block, tick, i, this.units, from);
+          from += link.senders[i].codec.count;
+        }
+      }
+    }
+    this.published.copy(block, signals);
+  }
+
+  /** Defined silence: with `silent` nothing is sent until it is called again with false. */
+  setSilent(block: Float64Array, silent: boolean): void {
+    block[this.silent] = silent ? 1 : 0;
+  }
+
+  /** The controller boots (again) at `tick`: time-outs do not count for the boot window. */
+  startBootWindow(block: Float64Array, tick: number): void {
+    block[this.bootUntil] = tick + this.bootWindowTicks;
+  }
+
+  /** All counts to zero, between the pre-roll and the first counted tick. Sequences, ages and values stay. */
+  clearCounts(block: Float64Array): void {
+    for (const link of this.links) link.clearCounts(block);
+    this.reports.clear(block);
+  }
+
+  /** Declares the signals of one link and of its messages, and what is reported of their counts. */
+  private declare(link: UdpLink, options: ExchangeOptions, problems: Problem[]): void {
+    const { signals, step } = options;
+    const show = (
+      copies: SlotCopies,
+      slot: number,
+      path: string,
+      unit: string,
+      about: string,
+      group: 'link' | 'received' | 'sent',
+      scale = 1,
+      offset = 0,
+    ): void => {
+      if (signals.find(path) >= 0) {
+        problems.push({
+          path: `messages.${path}`,
+          what: 'the signal path is taken by an element or instrument',
+          remedy: 'rename the message or the element',
+        });
+        return;
+      }
+      copies.add(slot, signals.add({ path, unit, about, group }), scale, offset);
+    };
+    const name = link.spec.name;
+    for (const count of Object.keys(linkCounts) as LinkCount[])
+      show(this.taken, link.slots[count], `${name}.${count}`, '1', linkCounts[count], 'link');
+    for (const count of ['malformed', 'wrongChecksum', 'wrongMap', 'wrongLength'] as const)
+      this.reports.watch(link.slots[count], linkEvents[count], name);
+    this.reports.watch(link.slots.floods, linkEvents.flood, name);
+    this.reports.watch(link.slots.hellos, linkEvents.hello, name);
+    const share = `${name}.oneStepShare`;
+    this.shares.push({
+      slots: link.slots,
+      signal: signals.add({
+        path: share,
+        unit: '1',
+        about: 'share of the used messages that answer the tick just before',
+        group: 'link',
+        least: 0,
+        most: 1,
+      }),
+    });
+    for (const receiver of link.receivers) {
+      const { message } = receiver;
+      message.signals.forEach((signal, i) => {
+        show(
+          this.taken,
+          receiver.values + i,
+          `${message.name}.${signal.name}`,
+          siUnit(signal, signals),
+          signal.about,
+          'received',
+          signal.unitScale,
+          signal.unitOffset,
+        );
+      });
+      show(
+        this.taken,
+        receiver.age,
+        `${message.name}.age`,
+        's',
+        'time since the newest message that was used',
+        'link',
+        step,
+      );
+      show(this.taken, receiver.timedOut, `${message.name}.timedOut`, '1', '1 while a time-out lasts', 'link');
+      for (const [count, about] of receiverCounts)
+        show(this.taken, receiver[count], `${message.name}.${count}`, '1', about, 'link');
+      for (const count of ['lost', 'duplicate', 'late', 'outOfRange'] as const)
+        this.reports.watch(receiver[count], linkEvents[count], message.name);
+      this.reports.watch(receiver.restarts, linkEvents.restarted, message.name);
+    }
+    for (const sender of link.senders) {
+      const { message } = sender;
+      message.signals.forEach((signal, i) => {
+        show(
+          this.published,
+          sender.carried + i,
+          `${message.name}.${signal.name}`,
+          siUnit(signal, signals),
+          signal.about,
+          'sent',
+          signal.unitScale,
+          signal.unitOffset,
+        );
+      });
+      show(this.published, sender.sent, `${message.name}.sent`, '1', 'messages sent', 'link');
+      show(
+        this.published,
+        sender.unsendable,
+        `${message.name}.unsendable`,
+        '1',
+        'times not sent because a value was not finite',
+        'link',
+      );
+      this.reports.watch(sender.unsendable, linkEvents.unsendable, message.name);
+    }
+  }
+
+  /** Finds what sent messages carry and what received ones drive. */
+  private connect(options: ExchangeOptions, problems: Problem[]): void {
+    const { signals, targets } = options;
+    const drivers = new Map<number, string>();
+    for (const link of this.links) {
+      for (const sender of link.senders)
+        for (const signal of sender.message.signals) {
+          const index = signals.find(signal.path);
+          const path = `messages.${sender.message.name}.${signal.name}`;
+          if (index < 0)
+            problems.push(unknown(path, 'there is no such signal', signal.path, signals.nearest(signal.path)));
+          this.gathered.add(index, this.gathered.length, 1 / signal.unitScale, -signal.unitOffset / signal.unitScale);
+        }
+      for (const receiver of link.receivers)
+        receiver.message.signals.forEach((signal, i) => {
+          if (signal.path === '') return;
+          const path = `messages.${receiver.message.name}.${signal.name}`;
+          const slot = targets.find(signal.path);
+          if (slot < 0)
+            problems.push(unknown(path, 'there is no such command', signal.path, targets.nearest?.(signal.path) ?? []));
+          const other = drivers.get(slot);
+          if (slot >= 0 && other !== undefined)
+            problems.push({
+              path,
+              what: 'the command has two masters',
+              value: signal.path,
+              bound: `driven by ${other} already`,
+              remedy: 'drive it from one message',
+            });
+          drivers.set(slot, path);
+          this.driven.add(receiver.values + i, slot, signal.unitScale, signal.unitOffset);
+        });
+    }
+  }
+}
+
+const receiverCounts = [
+  ['received', 'messages used'],
+  ['lost', 'messages missing in the sequence'],
+  ['duplicate', 'messages that came twice'],
+  ['late', 'messages that came after a newer one'],
+  ['outOfRange', 'messages with a value outside its range'],
+  ['timeOuts', 'time-outs'],
+  ['restarts', 'jumps of the sequence'],
+] as const;
+
+function unknown(path: string, what: string, value: string, near: readonly string[]): Problem {
+  return {
+    path,
+    what,
+    value: value === '' ? 'no path' : value,
+    remedy: near.length > 0 ? `did you mean ${near.join(' or ')}?` : 'see `oilspring list signals BENCH`',
+  };
+}
+
+/** The SI unit of a signal: from the path it carries or drives, else as the map says it. */
+function siUnit(signal: MapSignal, signals: SignalTable): string {
+  const index = signals.find(signal.path);
+  if (index >= 0) return signals.all[index].unit;
+  if (signal.siUnit !== undefined) return signal.siUnit;
+  return signal.unitScale === 1 && signal.unitOffset === 0 ? signal.unit : `SI of ${signal.unit}`;
+}
