@@ -1,4 +1,5 @@
 import { errnoName, errnoOf, type LibC, libc } from '../runtime/realtime/ffi.js';
+import type { WaitingTransport } from './transport.js';
 
 const AF_INET = 2;
 const SOCK_DGRAM = 2;
@@ -19,6 +20,8 @@ const IP_ADD_MEMBERSHIP = 35;
 const MSG_TRUNC = 0x20;
 const POLLIN = 1;
 const ADDRESS_BYTES = 16;
+/** Datagrams of strangers that one call of `poll` passes over, so that a flood cannot hold the tick. */
+const MOST_STRANGERS = 64;
 
 export interface SocketAddress {
   /** IPv4, four decimal numbers. */
@@ -34,7 +37,12 @@ export interface UdpOptions {
   readonly receiveBuffer?: number;
   /** Lets several sockets bind the same group port. */
   readonly reuseAddress?: boolean;
-  readonly multicast?: { readonly group: string; readonly interfaceAddress?: string; readonly timeToLive?: number; readonly loop?: boolean };
+  readonly multicast?: {
+    readonly group: string;
+    readonly interfaceAddress?: string;
+    readonly timeToLive?: number;
+    readonly loop?: boolean;
+  };
 }
 
 /** An error of the operating system about a socket. `code` is its name, for example `EADDRINUSE`. */
@@ -50,7 +58,8 @@ export class UdpError extends Error {
 
 const REMEDIES: Record<string, string> = {
   EADDRINUSE: 'another program holds this port: stop it or choose another localPort',
-  EADDRNOTAVAIL: 'no interface of this computer has this address: use 127.0.0.1, 0.0.0.0 or one that `ip address` lists',
+  EADDRNOTAVAIL:
+    'no interface of this computer has this address: use 127.0.0.1, 0.0.0.0 or one that `ip address` lists',
   EACCES: 'ports below 1024 need more rights: choose a higher one',
   EMFILE: 'too many open files: raise `ulimit -n`',
   ENODEV: 'no interface can join this group: name one by interfaceAddress',
@@ -60,16 +69,16 @@ const REMEDIES: Record<string, string> = {
 /**
  * A non-blocking UDP socket of the calling thread, by FFI and without an event loop. Nothing here allocates per datagram.
  *
- * `receive` and `send` never throw on what a network may do: they count. Failures that mean a broken program or machine
+ * `poll` and `send` never throw on what a network may do: they count. Failures that mean a broken program or machine
  * (a closed descriptor, for example) throw.
  */
-export class UdpSocket {
+export class UdpSocket implements WaitingTransport {
   /** Datagrams taken, and sent. */
   received = 0;
   sent = 0;
   /** Datagrams from another address or port than the peer's: dropped. */
   strangers = 0;
-  /** Datagrams longer than the buffer given to `receive`: dropped. */
+  /** Datagrams longer than the buffer given to `poll`: taken, cut to the buffer. */
   oversized = 0;
   /** Datagrams that the kernel did not take for sending. */
   unsent = 0;
@@ -82,7 +91,7 @@ export class UdpSocket {
   private readonly from = new Uint8Array(new ArrayBuffer(ADDRESS_BYTES));
   private readonly fromLength = new Int32Array([ADDRESS_BYTES]);
   private readonly to = new Uint8Array(new ArrayBuffer(ADDRESS_BYTES));
-  private readonly pollSet = new Int32Array(2);
+  private readonly waitSet = new Int32Array(2);
   private readonly memory = new Int32Array(9);
   private peerKnown = false;
   private descriptor: number;
@@ -101,8 +110,10 @@ export class UdpSocket {
     try {
       if (options.reuseAddress) this.set(SOL_SOCKET, SO_REUSEADDR, Int32Array.of(1), 'sharing the port');
       const size = Int32Array.of(options.receiveBuffer ?? 1 << 20);
-      if (c.setsockopt(this.descriptor, SOL_SOCKET, SO_RCVBUFFORCE, size, 4) < 0) this.set(SOL_SOCKET, SO_RCVBUF, size, 'sizing the receive buffer');
-      if (c.bind(this.descriptor, local, ADDRESS_BYTES) < 0) throw this.failure(`binding UDP ${addressText(options.local)}`);
+      if (c.setsockopt(this.descriptor, SOL_SOCKET, SO_RCVBUFFORCE, size, 4) < 0)
+        this.set(SOL_SOCKET, SO_RCVBUF, size, 'sizing the receive buffer');
+      if (c.bind(this.descriptor, local, ADDRESS_BYTES) < 0)
+        throw this.failure(`binding UDP ${addressText(options.local)}`);
       this.localPort = this.readBack(local);
       this.receiveBuffer = this.readOption(SO_RCVBUF);
       if (options.multicast) this.join(options.multicast);
@@ -110,60 +121,66 @@ export class UdpSocket {
       this.close();
       throw error;
     }
-    this.pollSet[0] = this.descriptor;
+    this.waitSet[0] = this.descriptor;
   }
 
   /**
-   * Takes the next datagram of the peer into `into`; its length, or -1 when there is none. Datagrams of strangers and ones
-   * too long for `into` are dropped and counted on the way, at most `most` in one call, so that a flood cannot hold the
-   * tick: the rest waits for the next call.
+   * Takes the next datagram of the peer into `into`; its length in bytes, or -1 when none waits (or when a flood of
+   * strangers has used up this call's patience; the rest waits for the next one). One that is longer than `into` is cut
+   * to it and counted in `oversized`.
    */
-  receive(into: Uint8Array, most = 64): number {
+  poll(into: Uint8Array): number {
     const c = this.c;
-    for (let i = 0; i < most; i += 1) {
+    for (let i = 0; i < MOST_STRANGERS; i += 1) {
       this.fromLength[0] = ADDRESS_BYTES;
       const length = c.recvfrom(this.descriptor, into, into.length, MSG_TRUNC, this.from, this.fromLength);
       if (length < 0) {
         const errno = c.errno();
         if (errno === errnoOf.EAGAIN) return -1;
         // A pending error of an earlier send (a peer that is not there) is consumed by this call.
-        if (errno === errnoOf.EINTR || errno === errnoOf.ECONNREFUSED || errno === errnoOf.EHOSTUNREACH || errno === errnoOf.ENETUNREACH) continue;
+        if (
+          errno === errnoOf.EINTR ||
+          errno === errnoOf.ECONNREFUSED ||
+          errno === errnoOf.EHOSTUNREACH ||
+          errno === errnoOf.ENETUNREACH
+        )
+          continue;
         throw this.failure('receiving');
       }
       if (this.peerKnown && !sameAddress(this.from, this.to)) {
         this.strangers += 1;
-      } else if (length > into.length) {
-        this.oversized += 1;
-      } else {
-        this.received += 1;
-        return length;
+        continue;
       }
+      this.received += 1;
+      if (length <= into.length) return length;
+      this.oversized += 1;
+      return into.length;
     }
     return -1;
   }
 
-  /** Sends the first `length` bytes to the peer. False, and counted, when the kernel did not take them or no peer is known. */
-  send(bytes: Uint8Array, length: number): boolean {
+  /** Sends the first `length` bytes to the peer; `length`, or -1 (counted) when the kernel did not take them or no peer is known. */
+  send(bytes: Uint8Array, length: number): number {
     if (!this.peerKnown) {
       this.unsent += 1;
       this.unsentReason = errnoOf.EDESTADDRREQ;
-      return false;
+      return -1;
     }
     if (this.c.sendto(this.descriptor, bytes, length, 0, this.to, ADDRESS_BYTES) === length) {
       this.sent += 1;
-      return true;
+      return length;
     }
     const errno = this.c.errno();
     if (errno === errnoOf.EBADF || errno === errnoOf.EFAULT || errno === errnoOf.EINVAL) throw this.failure('sending');
     this.unsent += 1;
     this.unsentReason = errno;
-    return false;
+    return -1;
   }
 
   /** Waits up to `milliseconds` of wall time (0: not at all) until something is there to receive. For lockstep, not for live. */
   wait(milliseconds: number): boolean {
-    this.pollSet[1] = POLLIN;
-    const ready = this.c.poll(this.pollSet, 1, milliseconds);
+    this.waitSet[1] = POLLIN;
+    const ready = this.c.poll(this.waitSet, 1, milliseconds);
     if (ready < 0 && this.c.errno() !== errnoOf.EINTR) throw this.failure('waiting for a datagram');
     return ready > 0;
   }
@@ -208,10 +225,20 @@ export class UdpSocket {
     membership.set(addressBytes(multicast.interfaceAddress ?? '0.0.0.0'), 4);
     this.set(IPPROTO_IP, IP_ADD_MEMBERSHIP, membership, `joining group ${multicast.group}`);
     if (multicast.interfaceAddress !== undefined) {
-      this.set(IPPROTO_IP, IP_MULTICAST_IF, addressBytes(multicast.interfaceAddress), `sending by ${multicast.interfaceAddress}`);
+      this.set(
+        IPPROTO_IP,
+        IP_MULTICAST_IF,
+        addressBytes(multicast.interfaceAddress),
+        `sending by ${multicast.interfaceAddress}`,
+      );
     }
     this.set(IPPROTO_IP, IP_MULTICAST_TTL, Int32Array.of(multicast.timeToLive ?? 1), 'setting the time to live');
-    this.set(IPPROTO_IP, IP_MULTICAST_LOOP, Int32Array.of(multicast.loop === false ? 0 : 1), 'setting the loop-back of multicast');
+    this.set(
+      IPPROTO_IP,
+      IP_MULTICAST_LOOP,
+      Int32Array.of(multicast.loop === false ? 0 : 1),
+      'setting the loop-back of multicast',
+    );
   }
 
   private set(level: number, name: number, value: Uint8Array | Int32Array, what: string): void {
@@ -227,7 +254,8 @@ export class UdpSocket {
 
   private readBack(address: Uint8Array): number {
     this.fromLength[0] = ADDRESS_BYTES;
-    if (this.c.getsockname(this.descriptor, address, this.fromLength) < 0) throw this.failure('reading the own address');
+    if (this.c.getsockname(this.descriptor, address, this.fromLength) < 0)
+      throw this.failure('reading the own address');
     return readAddress(address).port;
   }
 
@@ -244,7 +272,8 @@ function sameAddress(a: Uint8Array, b: Uint8Array): boolean {
 
 /** sockaddr_in: family in host order, port and address in network order. */
 function writeAddress(into: Uint8Array, address: SocketAddress): void {
-  if (!Number.isInteger(address.port) || address.port < 0 || address.port > 65535) throw new RangeError(`port ${address.port}: a whole number 0 .. 65535`);
+  if (!Number.isInteger(address.port) || address.port < 0 || address.port > 65535)
+    throw new RangeError(`port ${address.port}: a whole number 0 .. 65535`);
   into[0] = AF_INET;
   into[1] = 0;
   into[2] = address.port >> 8;

@@ -18,8 +18,11 @@ export interface LibC {
   sched_getaffinity(pid: number, bytes: number, mask: Uint8Array): number;
   sched_getcpu(): number;
   prctl(option: number, a: number, b: number, c: number, d: number): number;
-  mlockall(flags: number): number;
+  /** `address` as a number: user space ends below 2^53. */
+  mlock(address: number, bytes: number): number;
   munlockall(): number;
+  /** Address of a view's memory. Allocates. */
+  addressOf(view: ArrayBufferView): number;
   socket(family: number, type: number, protocol: number): number;
   bind(socket: number, address: Uint8Array, length: number): number;
   getsockname(socket: number, address: Uint8Array, length: Int32Array): number;
@@ -53,7 +56,7 @@ export function whyNotLive(): string {
   }
 }
 
-const SIGNATURES: Record<Exclude<keyof LibC, 'errno'>, [string, string[]]> = {
+const SIGNATURES: Record<Exclude<keyof LibC, 'errno' | 'addressOf'>, [string, string[]]> = {
   clock_gettime: ['int', ['int', 'void *']],
   clock_nanosleep: ['int', ['int', 'int', 'void *', 'void *']],
   sched_setscheduler: ['int', ['int', 'int', 'void *']],
@@ -63,7 +66,7 @@ const SIGNATURES: Record<Exclude<keyof LibC, 'errno'>, [string, string[]]> = {
   sched_getaffinity: ['int', ['int', 'size_t', 'void *']],
   sched_getcpu: ['int', []],
   prctl: ['int', ['int', 'ulong', 'ulong', 'ulong', 'ulong']],
-  mlockall: ['int', ['int']],
+  mlock: ['int', ['size_t', 'size_t']],
   munlockall: ['int', []],
   socket: ['int', ['int', 'int', 'int']],
   bind: ['int', ['int', 'void *', 'uint32_t']],
@@ -89,7 +92,10 @@ export function libc(): LibC {
   try {
     const koffi = createRequire(import.meta.url)('koffi') as typeof import('koffi');
     const library = koffi.load(null);
-    const bound: Record<string, unknown> = { errno: () => koffi.errno() };
+    const bound: Record<string, unknown> = {
+      errno: () => koffi.errno(),
+      addressOf: (view: ArrayBufferView) => Number(koffi.address(view)),
+    };
     for (const [name, [result, parameters]] of Object.entries(SIGNATURES)) bound[name] = library.func(name, result, parameters);
     loaded = bound as unknown as LibC;
     return loaded;
