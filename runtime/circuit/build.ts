@@ -333,6 +333,11 @@ export function buildCircuit(spec: CircuitSpec): Circuit {
       readings.push(slot(element, name, { unit, about }, 'ledger'));
       readingNodes.push(node);
     }
+    const passing = element.kind.role === 'branch' ? throughput(graph, reader) : undefined;
+    if (passing !== undefined) {
+      readings.push(slot(element, 'throughput', { unit: 'W', about: 'mechanical and hydraulic power passing through' }, 'ledger'));
+      readingNodes.push(passing);
+    }
   }
 
   const rateNodes = states.map((state) => byName.get(state.element)!.derivatives.get(state.name)!);
@@ -440,6 +445,22 @@ function balanceTerms(
   return terms;
 }
 
+/** Half the sum of the magnitudes of a branch's port powers other than heat, W; undefined when it has none. */
+function throughput(graph: Graph, reader: ElementReader): NodeId | undefined {
+  let sum: NodeId | undefined;
+  for (const port of Object.keys(reader.element.kind.ports)) {
+    if (!reader.element.connections[port]) continue;
+    const efforts = reader.effortsSeen(port);
+    const flows = reader.ownFlows.get(port)!;
+    for (const pair of reader.portKind(port).power) {
+      if (pair.length === 1) continue;
+      const size = graph.apply('abs', [graph.product(flows.get(pair[0])!, efforts(pair[1]))]);
+      sum = sum === undefined ? size : graph.sum(sum, size);
+    }
+  }
+  return sum === undefined || graph.isConstant(sum) ? undefined : graph.product(graph.constant(0.5), sum);
+}
+
 function slot(element: ElementInstance, name: string, declaration: { unit: string; about: string }, group: SignalInfo['group']): Slot {
   return { element: element.name, name, path: `${element.name}.${name}`, unit: declaration.unit, about: declaration.about, group };
 }
@@ -453,6 +474,7 @@ function bounds(declaration: { least?: number; most?: number }): { least?: numbe
 
 function declareSlots(element: ElementInstance, states: StateSlot[], memory: (Slot & { initial: number })[], commands: CommandSlot[]): void {
   const { kind } = element;
+  checkNames(element);
   const values = { parameter: element.parameters, fluid: element.fluid ?? {} };
   const initial = kind.initial ? kind.initial({ ...values, start: element.start }) : {};
   for (const [name, declaration] of Object.entries(kind.states) as [string, StateDeclaration][]) {
@@ -471,6 +493,19 @@ function declareSlots(element: ElementInstance, states: StateSlot[], memory: (Sl
   }
   for (const [name, declaration] of Object.entries(kind.commands) as [string, CommandDeclaration][]) {
     commands.push({ ...slot(element, name, declaration, 'command'), ...bounds(declaration), rest: declaration.rest, fault: declaration.fault ?? false });
+  }
+}
+
+/** Names that the builder gives to every element besides its own declarations. */
+const takenReadings = ['energy', 'supply', 'loss', 'throughput'];
+
+function checkNames(element: ElementInstance): void {
+  const { kind } = element;
+  const seen = new Set<string>();
+  for (const name of [...Object.keys(kind.states), ...Object.keys(kind.memory), ...Object.keys(kind.commands), ...Object.keys(kind.readings)]) {
+    if (seen.has(name)) fail(element, `the name ${name} is declared twice among states, memory, commands and readings`, 'give each its own name');
+    if (takenReadings.includes(name)) fail(element, `the name ${name} belongs to the ledger`, 'choose another');
+    seen.add(name);
   }
 }
 

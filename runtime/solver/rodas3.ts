@@ -105,6 +105,13 @@ export class Rodas3 {
     }
   }
 
+  /** Counts back to zero: a new run begins. */
+  clear(): void {
+    this.refined = 0;
+    this.replaced = 0;
+    this.failed = false;
+  }
+
   /** True after a step whose last resort gave no number either; the state is the last good one. */
   failed = false;
 

@@ -1,0 +1,242 @@
+import { Exchange } from '../bridge/exchange.js';
+import { BlockLayout } from '../runtime/block.js';
+import { buildCircuit, type Circuit, places } from '../runtime/circuit/build.js';
+import { BuildError, type Problem } from '../runtime/contract.js';
+import type { InstrumentUpdate } from '../runtime/instrument.js';
+import { EventCatalogue } from '../runtime/journal.js';
+import { Plant, type PlantPlaces } from '../runtime/plant.js';
+import { emptyScript, Script, type ScriptSpec } from '../runtime/script.js';
+import { SignalTable } from '../runtime/signals.js';
+import { LedgerStage, type Stage, throughputs, Tick } from '../runtime/tick.js';
+import type { BenchSpec, InstrumentSpec } from './bench-spec.js';
+
+/** A bench put together: everything that one thread needs to run ticks. */
+export interface Assembly {
+  readonly spec: BenchSpec;
+  readonly script: ScriptSpec;
+  readonly circuit: Circuit;
+  readonly plant: Plant;
+  readonly layout: BlockLayout;
+  readonly table: SignalTable;
+  readonly events: EventCatalogue;
+  readonly block: Float64Array;
+  readonly signals: Float64Array;
+  readonly exchange: Exchange;
+  readonly tick: Tick;
+  readonly ledger: LedgerStage;
+  readonly firstTick: number;
+  /** Slot of a command by path, or -1. */
+  readonly target: (path: string) => number;
+  /** Puts the block back to the start, as if no tick had run. */
+  reset(): void;
+}
+
+export interface AssemblyOptions {
+  readonly seed: number;
+  readonly script?: ScriptSpec;
+  /** Substeps instead of the file's: for accuracy references. */
+  readonly substeps?: number;
+  /** A circuit that is built already, to save building it again. */
+  readonly circuit?: Circuit;
+}
+
+/** Puts a checked bench together. Throws BuildError for what only the built circuit shows. */
+export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
+  const script = options.script ?? emptyScript;
+  const circuit = options.circuit ?? buildCircuit(spec.circuit);
+  const layout = new BlockLayout();
+  const table = new SignalTable();
+  const events = new EventCatalogue();
+  const firstTick = -spec.life.preRoll;
+
+  const at = reservePlant(layout, circuit);
+  const commandAt = new Map(circuit.commands.map((command, i) => [command.path, at.commands + i]));
+  const shown = declareCircuit(table, circuit, at);
+  const life = new LifeSignals(spec, layout, table);
+  for (const [path, slot] of life.targets) commandAt.set(path, slot);
+  shown.slots.push(...life.shownSlots);
+  shown.signals.push(...life.shownSignals);
+  const targets = { find: (path: string) => commandAt.get(path) ?? -1, nearest: () => [...commandAt.keys()] };
+
+  const scriptStage = new Script(requireTargets(script, commandAt), spec.step, layout, table, events, targets);
+  const ledgerSignals = declareLedger(table, circuit);
+  const ledgerSlots = {
+    turnover: layout.addMany('ledger.turnover', throughputs(circuit).length),
+    start: layout.addMany('ledger.start', 1 + circuit.stuffs.length),
+  };
+  const declared = spec.instruments.map((instrument) => declareInstrument(instrument, layout, table, spec.step));
+  const exchange = new Exchange({
+    map: spec.map,
+    layout,
+    signals: table,
+    events,
+    targets: { find: targets.find, nearest: () => [] },
+    step: spec.step,
+    bootWindowTicks: spec.life.bootWindow,
+    firstTick,
+  });
+  const instruments = spec.instruments.map((instrument, i) => buildInstrument(instrument, declared[i]!, table, options.seed, i, spec.step));
+  const drives = spec.instruments.flatMap((instrument) =>
+    Object.entries(instrument.drives).map(([output, path]) => ({ from: table.find(`${instrument.name}.${output}`), to: targets.find(path) })),
+  );
+  const extras = declareStages(spec, layout, table, events);
+
+  const block = layout.create();
+  const signals = new Float64Array(table.length);
+  const plant = new Plant(circuit, { step: spec.step, substeps: options.substeps ?? spec.substeps }, block, at);
+  const ledger = new LedgerStage(circuit, plant, spec.step, ledgerSlots, ledgerSignals);
+  const initial = block.slice();
+  const tick = new Tick({
+    plant,
+    block,
+    signals,
+    exchange,
+    script: scriptStage,
+    before: stageOf(spec, instruments, 'before'),
+    drives: { from: Int32Array.from(drives, (drive) => drive.from), to: Int32Array.from(drives, (drive) => drive.to) },
+    after: stageOf(spec, instruments, 'after'),
+    ledger,
+    watch: extras.watch,
+    judge: extras.judge,
+    shown: { slots: Int32Array.from(shown.slots), signals: Int32Array.from(shown.signals) },
+    snapshotEvery: Math.max(1, Math.round(1 / spec.step)),
+  });
+  const reset = () => {
+    block.set(initial);
+    signals.fill(0);
+    plant.reset();
+    plant.solver.clear();
+    signals.set(plant.observed, 0);
+    ledger.begin(block);
+  };
+  reset();
+  return { spec, script, circuit, plant, layout, table, events, block, signals, exchange, tick, ledger, firstTick, target: targets.find, reset };
+}
+
+function reservePlant(layout: BlockLayout, circuit: Circuit): PlantPlaces {
+  const states = layout.length;
+  for (const state of circuit.states) layout.add(state.path, state.initial);
+  const memory = layout.length;
+  for (const slot of circuit.memory) layout.add(slot.path, slot.initial);
+  const commands = layout.length;
+  for (const command of circuit.commands) layout.add(command.path, command.rest);
+  const ledger = layout.length;
+  layout.add('ledger.supplied');
+  layout.add('ledger.left');
+  for (const stuff of circuit.stuffs) layout.add(`ledger.${stuff}Brought`);
+  return { states, memory, commands, ledger };
+}
+
+/** The circuit's own signals: what `observe` writes, in its order, then states, memory and commands. */
+function declareCircuit(table: SignalTable, circuit: Circuit, at: PlantPlaces): { slots: number[]; signals: number[] } {
+  const add = (path: string, unit: string, about: string) => table.add({ path, unit, about, group: 'ledger' });
+  for (const reading of circuit.readings) table.add(plain(reading));
+  add('ledger.supply', 'W', 'power that comes in from outside');
+  add('ledger.leaving', 'W', 'dissipated power that leaves the circuit');
+  for (const stuff of circuit.stuffs) add(`ledger.${stuff}Bringing`, 'kg/s', `${stuff} that comes in from outside`);
+  add('ledger.stored', 'J', 'energy stored in all elements');
+  for (const stuff of circuit.stuffs) add(`ledger.${stuff}Held`, 'kg', `${stuff} held by all elements`);
+  if (table.length !== places(circuit).observeCount) throw new Error('the signals do not match what the circuit observes');
+  const slots: number[] = [];
+  const signals: number[] = [];
+  const show = (list: readonly { path: string }[], first: number, infos: readonly Parameters<SignalTable['add']>[0][]) => {
+    list.forEach((slot, i) => {
+      if (table.find(slot.path) >= 0) return;
+      slots.push(first + i);
+      signals.push(table.add(plain(infos[i]!)));
+    });
+  };
+  show(circuit.states, at.states, circuit.states);
+  show(circuit.memory, at.memory, circuit.memory);
+  show(circuit.commands, at.commands, circuit.commands);
+  return { slots, signals };
+}
+
+function plain(info: Parameters<SignalTable['add']>[0]): Parameters<SignalTable['add']>[0] {
+  const { path, unit, about, group, least, most } = info;
+  return { path, unit, about, group, ...(least === undefined ? {} : { least }), ...(most === undefined ? {} : { most }) };
+}
+
+function declareLedger(table: SignalTable, circuit: Circuit): { residual: number; turnover: number; stuffs: number } {
+  const add = (name: string, unit: string, about: string) => table.add({ path: `ledger.${name}`, unit, about, group: 'ledger' });
+  const residual = add('residual', 'J', 'stored now less at the start, less what came in, plus what left: zero when the physics closes');
+  const turnover = add('turnover', 'J', 'largest energy that passed through any one branch');
+  const stuffs = table.length;
+  for (const stuff of circuit.stuffs) add(`${stuff}Residual`, 'kg', `${stuff} held now less at the start, less what came in`);
+  return { residual, turnover, stuffs };
+}
+
+/** Supply and key: signals that a script sets and messages carry. */
+class LifeSignals {
+  readonly targets: [string, number][] = [];
+  readonly shownSlots: number[] = [];
+  readonly shownSignals: number[] = [];
+  constructor(spec: BenchSpec, layout: BlockLayout, table: SignalTable) {
+    const add = (name: string, about: string, initial: boolean) => {
+      const path = `life.${name}`;
+      const slot = layout.add(path, initial ? 1 : 0);
+      this.targets.push([path, slot]);
+      this.shownSlots.push(slot);
+      this.shownSignals.push(table.add({ path, unit: '1', about, group: 'run', least: 0, most: 1 }));
+    };
+    add('supply', '1 while the controller has its supply', spec.life.supply);
+    add('key', '1 while the key is on', spec.life.key);
+  }
+}
+
+interface DeclaredInstrument {
+  readonly output: Record<string, number>;
+  readonly memory: Record<string, number>;
+  readonly extra: number;
+}
+
+function declareInstrument(spec: InstrumentSpec, layout: BlockLayout, table: SignalTable, step: number): DeclaredInstrument {
+  const output: Record<string, number> = {};
+  const memory: Record<string, number> = {};
+  for (const [name, declaration] of Object.entries(spec.kind.outputs)) {
+    const input = declaration.unitOf === undefined ? undefined : spec.inputs[declaration.unitOf];
+    const sensed = input === undefined ? -1 : table.find(input);
+    output[name] = table.add({ ...plain({ ...declaration, path: '', group: 'instrument' }), path: `${spec.name}.${name}`, unit: sensed >= 0 ? table.all[sensed]!.unit : declaration.unit });
+  }
+  for (const [name, declaration] of Object.entries(spec.kind.memory)) memory[name] = layout.add(`${spec.name}.${name}`, declaration.initial ?? 0);
+  const count = spec.kind.extraMemory?.(spec.parameters, step) ?? 0;
+  return { output, memory, extra: layout.addMany(`${spec.name}.memory`, count) };
+}
+
+function buildInstrument(spec: InstrumentSpec, declared: DeclaredInstrument, table: SignalTable, seed: number, identity: number, step: number): InstrumentUpdate {
+  const input: Record<string, number> = {};
+  const problems: Problem[] = [];
+  for (const [name, declaration] of Object.entries(spec.kind.inputs)) {
+    const path = spec.inputs[name];
+    input[name] = path === undefined ? -1 : table.find(path);
+    if (input[name] >= 0 || (path === undefined && declaration.optional)) continue;
+    const near = path === undefined ? [] : table.nearest(path);
+    problems.push({
+      where: spec.where,
+      path: `${spec.name}.${name}`,
+      what: path === undefined ? 'input is not connected' : `no signal \`${path}\``,
+      remedy: near.length > 0 ? `did you mean ${near.join(' or ')}?` : 'see `oilspring list signals BENCH`',
+    });
+  }
+  if (problems.length > 0) throw new BuildError(problems);
+  return spec.kind.build({ name: spec.name, parameter: spec.parameters, input, output: declared.output, memory: declared.memory, extra: declared.extra, seed, identity, step });
+}
+
+function stageOf(spec: BenchSpec, updates: readonly InstrumentUpdate[], stage: 'before' | 'after'): InstrumentUpdate[] {
+  return updates.filter((_, i) => spec.instruments[i]!.kind.stage === stage);
+}
+
+function requireTargets(script: ScriptSpec, commandAt: ReadonlyMap<string, number>): ScriptSpec {
+  const problems: Problem[] = [];
+  const named = [...script.traces.map((trace) => ['traces', trace.target] as const), ...script.steps.map((step) => [`steps (${step.name})`, step.target] as const)];
+  for (const [where, target] of named) {
+    if (target !== '' && !commandAt.has(target)) problems.push({ path: `${script.name}: ${where}`, what: `no command \`${target}\``, remedy: 'see `oilspring list signals BENCH`' });
+  }
+  if (problems.length > 0) throw new BuildError(problems);
+  return script;
+}
+
+function declareStages(_spec: BenchSpec, _layout: BlockLayout, _table: SignalTable, _events: EventCatalogue): { watch: Stage; judge: Stage } {
+  const none: Stage = { run() {} };
+  return { watch: none, judge: none };
+}
