@@ -94,6 +94,12 @@ export class Section {
     return this.scalar(key, asked, example)?.text;
   }
 
+  /** The text of a key if it has one; neither marks the key nor complains. */
+  peek(key: string): string | undefined {
+    const value = this.tree.entries.get(key)?.value;
+    return value?.kind === 'scalar' && value.value !== null ? value.text : undefined;
+  }
+
   /** A value with its place, whatever its type. */
   placed(key: string, asked: Asked = {}, example = 'some text'): Placed | undefined {
     const value = this.scalar(key, asked, example);

@@ -300,3 +300,16 @@ export function checkReference(unit: Unit, wanted: Unit, shown: string, differen
     throw new UnitError(`a temperature difference is not a temperature on a scale`, 'write it in K');
   }
 }
+
+/** The SI unit that a declaration would name for quantities in this unit: `Pa` for `bar(g)`, `kg m2` for `kg cm2`. */
+export function siUnit(unit: Unit): string {
+  const entry = known(unit);
+  if (entry) return entry.unit;
+  const bases = ['m', 'kg', 's', 'A', 'K', 'mol', 'rad'];
+  const power = (base: string, exponent: number) =>
+    exponent === 1 ? base : Number.isInteger(exponent) ? `${base}${exponent}` : `${base}^${exponent}`;
+  const over = bases.flatMap((base, i) => (unit.dimension[i]! > 0 ? [power(base, unit.dimension[i]!)] : []));
+  const under = bases.flatMap((base, i) => (unit.dimension[i]! < 0 ? [power(base, -unit.dimension[i]!)] : []));
+  if (under.length === 0) return over.join(' ') || '1';
+  return `${over.join(' ') || '1'}/${under.length === 1 ? under[0] : `(${under.join(' ')})`}`;
+}

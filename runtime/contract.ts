@@ -9,6 +9,8 @@
 export interface Quantity {
   readonly unit: string;
   readonly about: string;
+  /** A pressure or temperature difference: neither absolute nor gauge, no zero of a scale. */
+  readonly difference?: boolean;
 }
 
 /** A port kind: the efforts a store writes and the flows branches add, each flow counted into the store. */

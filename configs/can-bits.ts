@@ -1,0 +1,77 @@
+import type { CanLayout, MapSignal } from '../bridge/message-map.js';
+
+export interface BitClash {
+  readonly signal: string;
+  readonly what: string;
+  readonly value: string;
+  readonly bound: string;
+  readonly remedy: string;
+}
+
+/**
+ * Bits of a payload that a signal takes, numbered as in CAN database text: bit 8 b + i is bit i (0: least significant)
+ * of byte b. Big endian starts at its most significant bit and runs down, then on to bit 7 of the next byte.
+ */
+export function bitsOf(layout: CanLayout): number[] {
+  const bits: number[] = [];
+  let bit = layout.startBit;
+  for (let i = 0; i < layout.length; i += 1) {
+    bits.push(bit);
+    bit = layout.byteOrder === 'little' ? bit + 1 : bit % 8 === 0 ? bit + 15 : bit - 1;
+  }
+  return bits;
+}
+
+/** Signals that lie on one another's bits while both are present, and signals beyond the payload. */
+export function overlappingBits(signals: readonly MapSignal[], bytes: number): BitClash[] {
+  const clashes: BitClash[] = [];
+  const placed: { readonly signal: MapSignal; readonly bits: ReadonlySet<number> }[] = [];
+  const selectors = new Set(signals.filter((signal) => signal.can?.selector).map((signal) => signal.name));
+  for (const signal of signals) {
+    const layout = signal.can;
+    if (!layout) continue;
+    const bits = bitsOf(layout);
+    const value = `bits ${Math.min(...bits)} to ${Math.max(...bits)}`;
+    const beyond = bits.find((bit) => bit >= bytes * 8);
+    if (beyond !== undefined) {
+      clashes.push({
+        signal: signal.name,
+        what: 'signal beyond the payload',
+        value,
+        bound: `${bytes} bytes`,
+        remedy: 'move it or make the message longer',
+      });
+    }
+    if (layout.selectedBy && !selectors.has(layout.selectedBy.signal)) {
+      clashes.push({
+        signal: signal.name,
+        what: 'selected by a signal that is no selector',
+        value: layout.selectedBy.signal,
+        bound: selectors.size === 0 ? 'no selector in this message' : `selectors ${[...selectors].join(', ')}`,
+        remedy: 'mark the selector with selector: on',
+      });
+    }
+    for (const other of placed) {
+      const shared = bits.find((bit) => other.bits.has(bit));
+      if (shared === undefined || !together(layout, other.signal.can!)) continue;
+      clashes.push({
+        signal: signal.name,
+        what: `bits shared with ${other.signal.name}`,
+        value,
+        bound: `bit ${shared} is taken`,
+        remedy: 'move one of the two',
+      });
+      break;
+    }
+    placed.push({ signal, bits: new Set(bits) });
+  }
+  return clashes;
+}
+
+/** Whether two signals can be in the same frame. */
+function together(a: CanLayout, b: CanLayout): boolean {
+  if (!a.selectedBy || !b.selectedBy || a.selectedBy.signal !== b.selectedBy.signal) return true;
+  return a.selectedBy.values.some(([from, to]) =>
+    b.selectedBy!.values.some(([other, otherTo]) => from <= otherTo && other <= to),
+  );
+}

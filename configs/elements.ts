@@ -1,0 +1,341 @@
+import type { Connection, ElementInstance, ElementKind, Position } from '../runtime/contract.js';
+import type { Ambient, Catalogue } from './bench-spec.js';
+import { readParameters } from './parameters.js';
+import type { Problems } from './problems.js';
+import { shown } from './quantity.js';
+import { type Section, suggestion } from './section.js';
+import type { Tree } from './source.js';
+
+/** An element while the bench is read: with the places of what the file says about it. */
+export interface ReadElement extends ElementInstance {
+  readonly where: Position;
+  readonly path: string;
+  readonly places: ReadonlyMap<string, Position>;
+  /** False when something about it is wrong: checks that need it then stay away. */
+  readonly complete: boolean;
+}
+
+/** Names that would clash with the runtime's own groups of signals. */
+const reserved = new Set(['run', 'timing', 'ledger', 'link', 'links', 'watch', 'script']);
+
+/** Checks names of stores, branches, instruments, links and messages, which share one space of paths. */
+export class Names {
+  private readonly taken = new Map<string, Position>();
+
+  constructor(private readonly problems: Problems) {}
+
+  take(name: string, where: Position, path: string): boolean {
+    if (!/^[a-z][A-Za-z0-9]{0,63}$/.test(name)) {
+      const better = camel(name);
+      this.problems.add(
+        where,
+        path,
+        'not a name',
+        better === undefined
+          ? 'use letters and digits, a small letter first'
+          : `use letters and digits, such as ${better}`,
+        {
+          value: shown(name),
+        },
+      );
+      return false;
+    }
+    if (reserved.has(name)) {
+      this.problems.add(where, path, 'name is reserved for the runtime', 'choose another name');
+      return false;
+    }
+    const other = this.taken.get(name);
+    if (other) {
+      this.problems.add(
+        where,
+        path,
+        'name is taken',
+        `rename one of the two (the other is at ${other.file}:${other.line})`,
+      );
+      return false;
+    }
+    this.taken.set(name, where);
+    return true;
+  }
+}
+
+function camel(name: string): string | undefined {
+  const words = name.split(/[^A-Za-z0-9]+/).filter(Boolean);
+  const joined = words
+    .map((word, index) => (index === 0 ? word.charAt(0).toLowerCase() : word.charAt(0).toUpperCase()) + word.slice(1))
+    .join('');
+  return /^[a-z]/.test(joined) ? joined : undefined;
+}
+
+/** Fluids by name, as the numbers that elements see. */
+export function readFluids(
+  top: Section,
+  catalogue: Catalogue,
+  ambient: Ambient,
+): Map<string, Readonly<Record<string, number>> | undefined> {
+  const fluids = new Map<string, Readonly<Record<string, number>> | undefined>();
+  for (const [name, section] of top.sections('fluids')) {
+    fluids.set(name, undefined);
+    const kind = kindOf(section, catalogue.fluids, 'fluid');
+    if (!kind) continue;
+    section.skip('about');
+    const read = readParameters(section, kind.parameters, ambient);
+    section.finish(read.keys);
+    if (!read.complete) continue;
+    const remarks = kind.examine?.(read.values) ?? [];
+    for (const remark of remarks) {
+      section.problems.add(
+        read.places.get(remark.parameter) ?? section.where,
+        section.inner(remark.parameter),
+        remark.what,
+        remark.remedy,
+      );
+    }
+    if (remarks.length === 0) fluids.set(name, kind.values(read.values));
+  }
+  return fluids;
+}
+
+/** The kind that `is:` names; a problem and undefined when there is none. */
+export function kindOf<K extends { readonly kind: string }>(
+  section: Section,
+  kinds: readonly K[],
+  what: string,
+): K | undefined {
+  const said = section.placed('is', { required: true }, kinds[0]?.kind ?? what);
+  if (!said) return undefined;
+  const kind = kinds.find((candidate) => candidate.kind === said.text);
+  if (kind) return kind;
+  return section.fail(
+    'is',
+    `unknown kind of ${what}`,
+    suggestion(
+      said.text,
+      kinds.map((candidate) => candidate.kind),
+    ),
+    { value: shown(said.text) },
+  );
+}
+
+/** Reads stores and branches, in the order of the file, stores first. */
+export function readElements(
+  top: Section,
+  catalogue: Catalogue,
+  names: Names,
+  fluids: ReadonlyMap<string, Readonly<Record<string, number>> | undefined>,
+  ambient: Ambient,
+): ReadElement[] {
+  const elements: ReadElement[] = [];
+  const storeSections = top.sections('stores', { required: true });
+  for (const [name, section] of storeSections) {
+    const element = readElement(name, section, 'store', catalogue, names, fluids, ambient);
+    if (element) elements.push(element);
+  }
+  const stores = new Map(elements.map((element) => [element.name, element]));
+  const allStores = new Set(storeSections.map(([name]) => name));
+  for (const [name, section] of top.sections('branches')) {
+    const element = readElement(name, section, 'branch', catalogue, names, fluids, ambient, { stores, allStores });
+    if (element) elements.push(element);
+  }
+  return elements;
+}
+
+interface Circuitry {
+  readonly stores: ReadonlyMap<string, ReadElement>;
+  /** Also those with problems of their own, so that their connections are not complained about. */
+  readonly allStores: ReadonlySet<string>;
+}
+
+function readElement(
+  name: string,
+  section: Section,
+  role: 'store' | 'branch',
+  catalogue: Catalogue,
+  names: Names,
+  fluids: ReadonlyMap<string, Readonly<Record<string, number>> | undefined>,
+  ambient: Ambient,
+  circuitry?: Circuitry,
+): ReadElement | undefined {
+  names.take(name, section.where, section.path);
+  const before = section.problems.count;
+  const other = catalogue.elements.find(
+    (candidate) => candidate.role !== role && candidate.kind === section.peek('is'),
+  );
+  if (other) {
+    return section.fail(
+      'is',
+      `${other.kind} is a ${other.role}`,
+      `move it to ${other.role === 'store' ? 'stores' : 'branches'}:`,
+    );
+  }
+  const kind = kindOf(
+    section,
+    catalogue.elements.filter((candidate) => candidate.role === role),
+    role,
+  );
+  if (!kind) return undefined;
+  section.skip('about');
+
+  const fluid = kind.fluid ? readFluidName(section, fluids) : undefined;
+  const parameters = readParameters(section, kind.parameters, ambient);
+  const start = readStart(section, kind, ambient);
+  const connections: Record<string, Connection> = {};
+  const ports = role === 'branch' ? Object.entries(kind.ports) : [];
+  for (const [port, portKind] of ports) {
+    const connection = readConnection(section, port, portKind, kind, catalogue, circuitry!);
+    if (connection) connections[port] = connection;
+  }
+  section.finish([
+    ...parameters.keys,
+    ...ports.map(([port]) => port),
+    ...(Object.keys(kind.starts).length > 0 ? ['start'] : []),
+  ]);
+
+  let complete = section.problems.count === before && (!kind.fluid || fluid !== undefined);
+  if (complete) {
+    const remarks = kind.examine?.({ parameter: parameters.values, fluid: fluid ?? {} }) ?? [];
+    for (const remark of remarks) {
+      const where = parameters.places.get(remark.parameter) ?? section.where;
+      section.problems.add(where, section.inner(remark.parameter), remark.what, remark.remedy);
+    }
+    complete = remarks.length === 0;
+  }
+  return {
+    name,
+    kind,
+    parameters: parameters.values,
+    ...(fluid === undefined ? {} : { fluid }),
+    connections,
+    start,
+    where: section.where,
+    path: section.path,
+    places: parameters.places,
+    complete,
+  };
+}
+
+function readFluidName(
+  section: Section,
+  fluids: ReadonlyMap<string, Readonly<Record<string, number>> | undefined>,
+): Readonly<Record<string, number>> | undefined {
+  const said = section.text('fluid');
+  if (said === undefined) {
+    if (section.has('fluid')) return undefined;
+    if (fluids.size === 1) return [...fluids.values()][0];
+    const known = [...fluids.keys()];
+    return section.fail(
+      'fluid',
+      'missing',
+      known.length === 0
+        ? 'declare a fluid under fluids: and name it here'
+        : `add fluid: with one of ${known.join(', ')}`,
+    );
+  }
+  if (!fluids.has(said))
+    return section.fail('fluid', 'unknown fluid', suggestion(said, fluids.keys()), { value: shown(said) });
+  return fluids.get(said);
+}
+
+function readStart(section: Section, kind: ElementKind, ambient: Ambient): Record<string, number> {
+  if (Object.keys(kind.starts).length === 0) return {};
+  const inner = section.section('start');
+  const start = inner ?? section.sectionIn({ kind: 'scalar', value: null, text: '', where: section.where }, 'start')!;
+  const read = readParameters(start, kind.starts, ambient);
+  inner?.finish(read.keys);
+  return read.values;
+}
+
+function readConnection(
+  section: Section,
+  port: string,
+  portKind: string,
+  kind: ElementKind,
+  catalogue: Catalogue,
+  circuitry: Circuitry,
+): Connection | undefined {
+  const entry = section.entry(port);
+  const fitting = () =>
+    [...circuitry.stores.values()]
+      .filter((store) => Object.values(store.kind.ports).includes(portKind))
+      .map((store) => store.name);
+  if (!entry || (entry.value.kind === 'scalar' && entry.value.value === null)) {
+    if (kind.optionalPorts?.includes(port)) return undefined;
+    const candidates = fitting().slice(0, 6);
+    const remedy =
+      candidates.length > 0
+        ? `add ${port}: and one of ${candidates.join(', ')}`
+        : `add a store with ${article(portKind)} port and name it here`;
+    return section.fail(port, `port not connected (${portKind})`, remedy, {}, section.where);
+  }
+  let target: Tree = entry.value;
+  let ratio = 1;
+  if (target.kind === 'mapping') {
+    const inner = section.sectionIn(target, port)!;
+    const to = inner.entry('to');
+    const given = inner.quantity('ratio', { unit: '1' });
+    if (inner.has('ratio') && given !== undefined) {
+      ratio = given;
+      if (!catalogue.portKinds[portKind]?.scaled)
+        inner.fail('ratio', `a ratio on ${article(portKind)} port`, 'leave it away: only shafts turn at a ratio');
+      else if (ratio === 0)
+        inner.fail('ratio', 'ratio is zero', 'write how many turns the branch makes per turn of the store');
+    }
+    inner.finish(['to', 'ratio']);
+    if (!to) return inner.fail('to', 'missing', 'add to: and the name of a store');
+    target = to.value;
+  }
+  if (target.kind !== 'scalar')
+    return section.fail(port, 'not the name of a store', `write ${port}: store or ${port}: store.port`);
+  return resolve(section, port, portKind, target.text, ratio, circuitry, fitting);
+}
+
+function resolve(
+  section: Section,
+  port: string,
+  portKind: string,
+  text: string,
+  ratio: number,
+  circuitry: Circuitry,
+  fitting: () => string[],
+): Connection | undefined {
+  const [storeName = '', storePort, ...more] = text.split('.');
+  const fail = (what: string, remedy: string) => section.fail(port, what, remedy, { value: shown(text) });
+  if (more.length > 0) return fail('not a port of a store', 'write store or store.port');
+  const store = circuitry.stores.get(storeName);
+  if (!store) {
+    if (circuitry.allStores.has(storeName)) return undefined;
+    return fail('unknown store', suggestion(storeName, circuitry.stores.keys()));
+  }
+  const ports = store.kind.ports;
+  const matching = Object.keys(ports).filter((candidate) => ports[candidate] === portKind);
+  if (storePort !== undefined) {
+    if (!Object.hasOwn(ports, storePort))
+      return fail(`${storeName} has no port ${storePort}`, suggestion(storePort, Object.keys(ports)));
+    if (ports[storePort] !== portKind) {
+      return fail(
+        `${article(portKind)} port tied to ${article(ports[storePort]!)} port`,
+        matching.length > 0
+          ? `use ${storeName}.${matching[0]}`
+          : `tie it to one of ${fitting().slice(0, 6).join(', ')}`,
+      );
+    }
+    return { store: storeName, port: storePort, ratio };
+  }
+  if (matching.length === 0) {
+    const others = fitting().slice(0, 6);
+    return fail(
+      `${article(portKind)} port tied to a store without one`,
+      others.length > 0 ? `tie it to one of ${others.join(', ')}` : `add a store with ${article(portKind)} port`,
+    );
+  }
+  if (matching.length === 1) return { store: storeName, port: matching[0]!, ratio };
+  if (matching.includes(port)) return { store: storeName, port, ratio };
+  return fail(
+    `${storeName} has ${matching.length} ${portKind} ports`,
+    `write one of ${matching.map((one) => `${storeName}.${one}`).join(', ')}`,
+  );
+}
+
+function article(word: string): string {
+  return `${/^[aeiou]/.test(word) ? 'an' : 'a'} ${word}`;
+}

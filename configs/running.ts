@@ -1,0 +1,111 @@
+import type { Ambient, Budgets, ControllerSpec, Frames, LifeSpec, RecordSpec } from './bench-spec.js';
+import { inside } from './files.js';
+import { shown } from './quantity.js';
+import type { Section } from './section.js';
+import type { SignalList } from './signal-list.js';
+import { checkedTicks } from './ticks.js';
+import { standardAtmosphere } from './units.js';
+
+/** Reads the parts of a bench file that say how it runs: budgets, surroundings, life, controller, record. */
+
+export function readAmbient(top: Section): Ambient {
+  const section = top.section('ambient');
+  const temperature = section?.quantity('temperature', { unit: 'K', least: 200, most: 350 }) ?? 293.15;
+  const pressure = section?.quantity('pressure', { unit: 'Pa', least: 3e4, most: 1.2e5 }) ?? standardAtmosphere;
+  section?.finish();
+  return { temperature, pressure };
+}
+
+export function readBudgets(top: Section): Budgets {
+  const section = top.section('budgets');
+  const take = (key: string, unit: string, usual: number, most?: number) =>
+    section?.quantity(key, { unit, least: 0, most }) ?? usual;
+  const budgets = {
+    lateness: take('lateness', 's', 200e-6),
+    worstLateness: take('worstLateness', 's', 5e-3),
+    overruns: take('overruns', '1', 1e-3, 1),
+    drift: take('drift', 's', 0.1),
+    lostFrames: take('lostFrames', '1', 1e-3, 1),
+    energyResidual: take('energyResidual', '1', 1e-3, 1),
+    oilResidual: take('oilResidual', '1', 1e-9, 1),
+  };
+  section?.finish();
+  return budgets;
+}
+
+export function readLife(top: Section, step: number): LifeSpec {
+  const section = top.section('life');
+  const frames = section?.section('frames');
+  const seen = (key: 'warmUp' | 'preRoll' | 'afterwards', usual: Frames): Frames =>
+    frames?.choice(key, ['rest', 'silence'] as const) ?? usual;
+  const ticks = (key: string, usual: number) =>
+    (section && checkedTicks(section, key, step)) ?? Math.round(usual / step);
+  const life = {
+    supply: section?.flag('supply') ?? true,
+    key: section?.flag('key') ?? true,
+    preRoll: ticks('preRoll', 0.2),
+    bootWindow: ticks('bootWindow', 0.5),
+    frames: {
+      warmUp: seen('warmUp', 'silence'),
+      preRoll: seen('preRoll', 'rest'),
+      afterwards: seen('afterwards', 'silence'),
+    },
+    afterRun: ticks('afterRun', 0),
+  };
+  frames?.finish();
+  section?.finish();
+  return life;
+}
+
+export function readController(top: Section, step: number, root: string, file: string): ControllerSpec | undefined {
+  const section = top.section('controller');
+  if (!section) return undefined;
+  const module = readPath(section, 'module', root, file, 'controller.js');
+  const command = section.text('command', {}, 'node controller.js');
+  if (module !== undefined && section.has('command'))
+    section.fail('command', 'a module and a command', 'keep one of the two: --controller takes the other');
+  if (!section.has('module') && !section.has('command'))
+    section.fail('command', 'missing', 'add command: or module:', {}, section.where);
+  const period = checkedTicks(section, 'period', step, { least: 1 }) ?? Math.max(1, Math.round(0.01 / step));
+  const patience = section.quantity('patience', { unit: 's', least: 0.01, most: 600 }) ?? 5;
+  section.finish();
+  return { module, command, period, patience };
+}
+
+/** A path that another file is named by; it stays inside the bench's folder. */
+export function readPath(
+  section: Section,
+  key: string,
+  root: string,
+  file: string,
+  example: string,
+): string | undefined {
+  const said = section.text(key, {}, example);
+  if (said === undefined) return undefined;
+  if (inside(root, file, said) === undefined)
+    return section.fail(key, 'outside the folder of the bench', 'move the file into the folder', {
+      value: shown(said),
+    });
+  return said;
+}
+
+export function readRecord(top: Section, step: number, signals: SignalList): RecordSpec {
+  const section = top.section('record');
+  const named = section?.texts('signals');
+  const namedPeaks = section?.texts('peaks');
+  const every = (section && checkedTicks(section, 'every', step, { least: 1 })) ?? 1;
+  const record = {
+    signals: section && named ? signals.match(section, 'signals', named) : signals.all.map((info) => info.path),
+    every,
+    peaks: section && namedPeaks ? signals.match(section, 'peaks', namedPeaks) : usualPeaks(signals),
+  };
+  section?.finish();
+  return record;
+}
+
+/** Peaks of every true pressure. */
+function usualPeaks(signals: SignalList): string[] {
+  return signals.all
+    .filter((info) => info.unit === 'Pa' && (info.group === 'reading' || info.group === 'state'))
+    .map((info) => info.path);
+}

@@ -1,0 +1,131 @@
+import type { SignalGroup, SignalInfo } from '../runtime/contract.js';
+import type { ReadElement } from './elements.js';
+import { shown } from './quantity.js';
+import { type Placed, type Section, suggestion } from './section.js';
+import { fits, parseUnit } from './units.js';
+
+/** The signals that a bench file gives rise to, in its order, for looking up what the file refers to. */
+export class SignalList {
+  readonly all: SignalInfo[] = [];
+  private readonly byPath = new Map<string, SignalInfo>();
+  /** Names of elements and the like that could not be read: what refers to them is not complained about. */
+  readonly unread = new Set<string>();
+
+  add(info: SignalInfo): void {
+    if (this.byPath.has(info.path)) return;
+    this.byPath.set(info.path, info);
+    this.all.push(info);
+  }
+
+  find(path: string): SignalInfo | undefined {
+    return this.byPath.get(path);
+  }
+
+  /** All signals of an element, message or instrument. */
+  of(name: string): SignalInfo[] {
+    return this.all.filter((info) => info.path.startsWith(`${name}.`));
+  }
+
+  addElements(elements: readonly ReadElement[]): void {
+    for (const { name, kind } of elements) {
+      const groups: [SignalGroup, Readonly<Record<string, Omit<SignalInfo, 'path' | 'group'>>>][] = [
+        ['state', kind.states],
+        ['memory', kind.memory],
+        ['reading', kind.readings],
+        ['command', kind.commands],
+      ];
+      for (const [group, declared] of groups) {
+        for (const [signal, { unit, about, least, most, difference }] of Object.entries(declared)) {
+          this.add({
+            path: `${name}.${signal}`,
+            group,
+            unit,
+            about,
+            ...(least === undefined ? {} : { least }),
+            ...(most === undefined ? {} : { most }),
+            ...(difference === undefined ? {} : { difference }),
+          });
+        }
+      }
+    }
+  }
+
+  /** Resolves a text such as `a.b`, or the name of something with one signal of the unit. Reports what fails. */
+  resolve(
+    section: Section,
+    key: string,
+    said: Placed,
+    wanted: { readonly unit?: string; readonly groups?: readonly SignalGroup[] },
+  ): SignalInfo | undefined {
+    const fail = (what: string, remedy: string) =>
+      section.fail(key, what, remedy, { value: shown(said.text) }, said.where);
+    const usable = (info: SignalInfo) => !wanted.groups || wanted.groups.includes(info.group);
+    const unitFits = (info: SignalInfo) =>
+      wanted.unit === undefined || fits(parseUnit(info.unit), parseUnit(wanted.unit));
+    const owner = said.text.split('.')[0]!;
+    if (this.unread.has(owner)) return undefined;
+    let found = this.find(said.text);
+    if (!found && !said.text.includes('.')) {
+      const candidates = this.of(said.text).filter((info) => usable(info) && unitFits(info));
+      if (candidates.length > 1) {
+        return fail(
+          'names more than one signal',
+          `write one of ${candidates
+            .slice(0, 6)
+            .map((info) => info.path)
+            .join(', ')}`,
+        );
+      }
+      found = candidates[0];
+    }
+    if (!found) {
+      const own = this.of(owner)
+        .filter(usable)
+        .map((info) => info.path);
+      const pool = own.length > 0 ? own : this.all.filter(usable).map((info) => info.path);
+      return fail(`unknown ${wanted.groups?.length === 1 ? wanted.groups[0] : 'signal'}`, suggestion(said.text, pool));
+    }
+    if (!usable(found)) return fail(`${found.path} is a ${found.group}`, `name a ${wanted.groups!.join(' or ')}`);
+    if (!unitFits(found))
+      return fail(`signal in ${found.unit} where one in ${wanted.unit} belongs`, `name a signal in ${wanted.unit}`);
+    return found;
+  }
+
+  /** Paths that match any of the patterns; `*` stands for any run of letters within or across the dot. */
+  match(section: Section, key: string, patterns: readonly Placed[]): string[] {
+    const found = new Set<string>();
+    for (const pattern of patterns) {
+      const test = globTest(pattern.text);
+      const hits = this.all.filter((info) => test(info.path));
+      if (hits.length === 0 && !this.unread.has(pattern.text.split('.')[0]!)) {
+        const remedy = pattern.text.includes('*')
+          ? 'check the pattern against the list of signals'
+          : suggestion(
+              pattern.text,
+              this.all.map((info) => info.path),
+            );
+        section.fail(key, 'no such signal', remedy, { value: shown(pattern.text) }, pattern.where);
+      }
+      for (const hit of hits) found.add(hit.path);
+    }
+    return this.all.filter((info) => found.has(info.path)).map((info) => info.path);
+  }
+}
+
+/** A test for a path against a pattern with `*`. Linear in both, whatever the pattern. */
+export function globTest(pattern: string): (path: string) => boolean {
+  const parts = pattern.split('*');
+  return (path) => {
+    if (parts.length === 1) return path === pattern;
+    const first = parts[0]!;
+    const last = parts.at(-1)!;
+    if (!path.startsWith(first) || path.length < first.length + last.length || !path.endsWith(last)) return false;
+    let at = first.length;
+    for (const part of parts.slice(1, -1)) {
+      const next = path.indexOf(part, at);
+      if (next < 0) return false;
+      at = next + part.length;
+    }
+    return at <= path.length - last.length;
+  };
+}

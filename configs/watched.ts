@@ -1,0 +1,268 @@
+import type { WatchLevel } from '../runtime/contract.js';
+import type { Ambient, WatchedLimit, WatchedSignal } from './bench-spec.js';
+import type { ReadElement } from './elements.js';
+import type { Section } from './section.js';
+import type { SignalList } from './signal-list.js';
+import { formatQuantity } from './units.js';
+
+/**
+ * What the watch compares: the limits that elements declare, with their settings; for each pressure of an oil store the
+ * relief valve of its side; and what the bench file adds under `watch:`.
+ */
+
+const levels: readonly WatchLevel[] = [
+  'near relief',
+  'relief passing',
+  'above maximum',
+  'above 1.1 maximum',
+  'below precharge',
+  'below least inlet',
+  'over speed',
+  'over temperature',
+  'end of travel',
+  'level low',
+  'case pressure',
+  'not following',
+  'locked',
+];
+
+/** Parameter of a relief valve and of a store that the checks look for. */
+export const crackingParameter = 'cracking';
+export const maximumParameter = 'maximumAllowable';
+
+/** Warn when a pressure is within this share of its relief setting, or will be there within this time, s. */
+const usualVicinity = 0.05;
+const usualLookAhead = 0.2;
+
+interface Draft {
+  readonly path: string;
+  readonly unit: string;
+  readonly limits: WatchedLimit[];
+  relief?: { readonly valve: string; readonly setting: number };
+  vicinity: number;
+  lookAhead: number;
+}
+
+export interface ReliefValve {
+  readonly element: ReadElement;
+  /** The store at its inlet. */
+  readonly store: string;
+  /** Pa, absolute. */
+  readonly setting: number;
+}
+
+/** Relief valves: branches with a cracking pressure; the inlet is the first oil port. */
+export function reliefValves(elements: readonly ReadElement[]): ReliefValve[] {
+  const valves: ReliefValve[] = [];
+  for (const element of elements) {
+    const setting = element.parameters[crackingParameter];
+    if (element.kind.role !== 'branch' || setting === undefined || !element.complete) continue;
+    const inlet = Object.keys(element.kind.ports).find((port) => element.kind.ports[port] === 'oil');
+    const connection = inlet === undefined ? undefined : element.connections[inlet];
+    if (connection) valves.push({ element, store: connection.store, setting });
+  }
+  return valves;
+}
+
+/**
+ * The relief valve of each oil store's side: its own, the lowest of several; otherwise that of the nearest store behind
+ * branches that join oil and nothing else (isolation valves, orifices, lines). Check and relief valves, and machines
+ * with a shaft, end a side.
+ */
+export function reliefOfSide(
+  elements: readonly ReadElement[],
+  valves: readonly ReliefValve[],
+): Map<string, ReliefValve> {
+  const own = new Map<string, ReliefValve>();
+  for (const valve of valves) {
+    const other = own.get(valve.store);
+    if (!other || valve.setting < other.setting) own.set(valve.store, valve);
+  }
+  const neighbours = new Map<string, string[]>();
+  for (const element of elements) {
+    if (
+      element.kind.role !== 'branch' ||
+      element.parameters[crackingParameter] !== undefined ||
+      element.kind.kind.includes('check')
+    )
+      continue;
+    const stores = Object.values(element.connections).map((connection) => connection.store);
+    if (stores.length !== 2 || !Object.values(element.kind.ports).every((port) => port === 'oil')) continue;
+    for (const [a, b] of [stores, [...stores].reverse()]) neighbours.set(a!, [...(neighbours.get(a!) ?? []), b!]);
+  }
+  const found = new Map(own);
+  for (const element of elements) {
+    if (element.kind.role !== 'store' || found.has(element.name)) continue;
+    const nearest = search(element.name, neighbours, own);
+    if (nearest) found.set(element.name, nearest);
+  }
+  return found;
+}
+
+function search(
+  from: string,
+  neighbours: ReadonlyMap<string, readonly string[]>,
+  own: ReadonlyMap<string, ReliefValve>,
+): ReliefValve | undefined {
+  const seen = new Set([from]);
+  let edge = [from];
+  while (edge.length > 0) {
+    const next: string[] = [];
+    for (const store of edge) {
+      for (const neighbour of neighbours.get(store) ?? []) {
+        if (!seen.has(neighbour)) next.push(neighbour);
+        seen.add(neighbour);
+      }
+    }
+    const valves = next.map((store) => own.get(store)).filter((valve) => valve !== undefined);
+    if (valves.length > 0) return valves.reduce((low, valve) => (valve.setting < low.setting ? valve : low));
+    edge = next;
+  }
+  return undefined;
+}
+
+/** A relief valve set above what its node may carry protects nothing. */
+export function checkReliefSettings(
+  top: Section,
+  elements: readonly ReadElement[],
+  valves: readonly ReliefValve[],
+  sides: ReadonlyMap<string, ReliefValve>,
+): void {
+  for (const element of elements) {
+    const most = element.parameters[maximumParameter];
+    if (element.kind.role !== 'store' || most === undefined || !(most > 0)) continue;
+    const bound = `PS of ${element.name} is ${formatQuantity(most, 'bar(g)')}`;
+    const ownValves = valves.filter((valve) => valve.store === element.name);
+    for (const { element: valve, setting } of ownValves) {
+      if (setting <= most) continue;
+      top.problems.add(
+        valve.places.get(crackingParameter) ?? valve.where,
+        `${valve.path}.${crackingParameter}`,
+        'relief setting above the maximum allowable pressure',
+        `set it to ${formatQuantity(most, 'bar(g)')} or below`,
+        { value: formatQuantity(setting, 'bar(g)'), bound },
+      );
+    }
+    const side = sides.get(element.name);
+    if (ownValves.length === 0 && side && side.setting > most) {
+      top.problems.remark(
+        element.places.get(maximumParameter) ?? element.where,
+        `${element.path}.${maximumParameter}`,
+        `relief valve of this side, ${side.element.name}, is set higher`,
+        'give the store a relief valve of its own or lower that one',
+        { value: formatQuantity(side.setting, 'bar(g)'), bound },
+      );
+    }
+  }
+}
+
+export function readWatched(
+  top: Section,
+  elements: readonly ReadElement[],
+  signals: SignalList,
+  sides: ReadonlyMap<string, ReliefValve>,
+  ambient: Ambient,
+): WatchedSignal[] {
+  const drafts = new Map<string, Draft>();
+  const draft = (path: string, unit: string): Draft => {
+    let one = drafts.get(path);
+    if (!one) {
+      one = { path, unit, limits: [], vicinity: usualVicinity, lookAhead: usualLookAhead };
+      drafts.set(path, one);
+    }
+    return one;
+  };
+  for (const element of elements) {
+    for (const limit of element.kind.limits) {
+      const value = element.parameters[limit.parameter];
+      const reading = element.kind.readings[limit.reading] ?? element.kind.states[limit.reading];
+      if (reading === undefined || value === undefined || !(Math.abs(value) > 0) || Number.isNaN(value)) continue;
+      draft(`${element.name}.${limit.reading}`, reading.unit).limits.push({
+        level: limit.level,
+        side: limit.side,
+        setting: shareOf(value, limit.share ?? 1, element.kind.parameters[limit.parameter]!, ambient),
+        meaning: limit.meaning,
+        from: `${element.name}.${limit.parameter}`,
+      });
+    }
+    const side = sides.get(element.name);
+    const pressure = side && pressureReading(element);
+    if (pressure !== undefined)
+      draft(`${element.name}.${pressure}`, 'Pa').relief = { valve: side!.element.name, setting: side!.setting };
+  }
+  readAdditions(top, signals, draft, elements);
+  return [...drafts.values()];
+}
+
+/** 1.1 PS is 1.1 times the gauge pressure: what the wall carries. */
+function shareOf(
+  value: number,
+  share: number,
+  declared: { unit: string; difference?: boolean },
+  ambient: Ambient,
+): number {
+  return declared.unit === 'Pa' && !declared.difference
+    ? ambient.pressure + (value - ambient.pressure) * share
+    : value * share;
+}
+
+/** The reading that is the pressure of an oil store's oil: `pressure`, or `oilPressure`, or the only one in Pa. */
+function pressureReading(element: ReadElement): string | undefined {
+  if (!Object.values(element.kind.ports).includes('oil')) return undefined;
+  const inPascal = Object.keys(element.kind.readings).filter((name) => element.kind.readings[name]!.unit === 'Pa');
+  return (
+    ['pressure', 'oilPressure'].find((name) => inPascal.includes(name)) ??
+    (inPascal.length === 1 ? inPascal[0] : undefined)
+  );
+}
+
+/** `watch: { highLine.pressure: { above: 340 bar(g), level: near relief, meaning: ..., vicinity: 5 %, lookAhead: 0.2 s, relief: valve } }` */
+function readAdditions(
+  top: Section,
+  signals: SignalList,
+  draft: (path: string, unit: string) => Draft,
+  elements: readonly ReadElement[],
+): void {
+  for (const [path, section] of top.sections('watch')) {
+    const info = signals.resolve(section, '', { text: path, where: section.where }, {});
+    const vicinity = section.quantity('vicinity', { unit: '1', least: 0, most: 1 });
+    const lookAhead = section.quantity('lookAhead', { unit: 's', least: 0 });
+    const relief = readRelief(section, elements);
+    const level = section.choice('level', levels);
+    const meaning = section.text('meaning');
+    const expected = { unit: info?.unit ?? '1', difference: info?.difference };
+    const additions: ['above' | 'below', number][] = [];
+    for (const side of ['above', 'below'] as const) {
+      // Without a signal there is no unit to check against.
+      if (!info) section.skip(side);
+      const setting = info && section.quantity(side, expected);
+      if (setting !== undefined) additions.push([side, setting]);
+    }
+    section.finish();
+    if (!info) continue;
+    if (additions.length > 0 && level === undefined && !section.has('level')) {
+      section.fail('level', 'missing', `add level: with one of ${levels.join(', ')}`);
+    }
+    const one = draft(info.path, info.unit);
+    if (vicinity !== undefined) one.vicinity = vicinity;
+    if (lookAhead !== undefined) one.lookAhead = lookAhead;
+    if (relief) one.relief = relief;
+    if (level === undefined) continue;
+    for (const [side, setting] of additions)
+      one.limits.push({
+        level,
+        side,
+        setting,
+        meaning: meaning ?? `${info.about} is ${side} the setting of the bench`,
+        from: 'watch',
+      });
+  }
+}
+
+function readRelief(section: Section, elements: readonly ReadElement[]): Draft['relief'] {
+  const valves = elements.filter((element) => element.parameters[crackingParameter] !== undefined);
+  const names = valves.map((element) => element.name);
+  const said = section.choice('relief', names);
+  const valve = valves.find((element) => element.name === said);
+  return valve && { valve: valve.name, setting: valve.parameters[crackingParameter]! };
+}
