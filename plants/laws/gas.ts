@@ -115,16 +115,16 @@ export function separatorTravel(oilVolume: number, closingVolume: number): numbe
   return oilVolume - 0.25 * closingVolume * (1 - closed * closed * closed * closed);
 }
 
-/** Pressure, Pa, that the end stop adds: a cubic spring past `fullVolume`, `stopPressure` at one closing volume past it. */
+/** Pressure, Pa, that the end stop adds: a cubic spring past `fullVolume`, `stopPressure` at five closing volumes past it. */
 export function stopRise(oilVolume: number, closingVolume: number, fullVolume: number, stopPressure: number): number {
-  const past = Math.max(0, oilVolume - fullVolume) / closingVolume;
+  const past = Math.max(0, oilVolume - fullVolume) / (5 * closingVolume);
   return stopPressure * past * past * past;
 }
 
 /** Energy in that spring, J. */
 export function stopEnergy(oilVolume: number, closingVolume: number, fullVolume: number, stopPressure: number): number {
-  const past = Math.max(0, oilVolume - fullVolume) / closingVolume;
-  return 0.25 * stopPressure * closingVolume * past * past * past * past;
+  const past = Math.max(0, oilVolume - fullVolume) / (5 * closingVolume);
+  return 1.25 * stopPressure * closingVolume * past * past * past * past;
 }
 
 /** Gas volume, m3, never below half a percent of `volume`. */
@@ -165,10 +165,10 @@ export function accumulatorStiffness(
   const density = gasMass / gasVolume;
   const closed = Math.max(0, 1 - oilVolume / closingVolume);
   const share = 1 - closed * closed * closed;
-  const past = Math.max(0, oilVolume - fullVolume) / closingVolume;
+  const past = Math.max(0, oilVolume - fullVolume) / (5 * closingVolume);
   return (
     ((gasPressureByDensity(density, temperature, real) * density) / gasVolume) * share * share +
-    (gasPressure(density, temperature, real) * 3 * closed * closed + 3 * stopPressure * past * past) / closingVolume
+    (gasPressure(density, temperature, real) * 3 * closed * closed + 0.6 * stopPressure * past * past) / closingVolume
   );
 }
 
@@ -181,9 +181,7 @@ export function storedOilRatio(pressure: number, freeAir: number, numerator: num
 /** Its derivative by pressure, 1/Pa; the same law as `oilVolumeSlope` of oil.ts. */
 export function storedOilSlope(pressure: number, freeAir: number, numerator: number, denominator: number): number {
   const liquid = 1 + denominator * (pressure - 101325);
-  return (
-    (-freeAir * 101325) / (pressure * pressure) - ((1 - freeAir) * (denominator - numerator)) / (liquid * liquid)
-  );
+  return (-freeAir * 101325) / (pressure * pressure) - ((1 - freeAir) * (denominator - numerator)) / (liquid * liquid);
 }
 
 /** One Newton step towards the oil volume at which the oil, compressed by the accumulator's pressure, just fits. */
@@ -222,5 +220,251 @@ export function accumulatorNewton(
     stopPressure,
   );
   const excess = oilVolume - relaxed * storedOilRatio(pressure, freeAir, numerator, denominator);
-  return oilVolume - excess / (1 - relaxed * storedOilSlope(pressure, freeAir, numerator, denominator) * stiffness);
+  const next =
+    oilVolume - excess / (1 - relaxed * storedOilSlope(pressure, freeAir, numerator, denominator) * stiffness);
+  return Math.min(Math.max(next, 0.5 * relaxed), 0.99 * volume);
 }
+
+/**
+ * Oil volume, m3, of an accumulator that holds `mass` kg of oil (> 0) and `gasMass` kg of gas at `temperature` K: the
+ * root of V_oil - m/rho_ref x(p(V_oil)) = 0 by three Newton steps. The start counts the liquid as relaxed and the air
+ * at a pressure that rises in proportion to the volume up to the precharge, so that it holds down to an empty port.
+ * Residual below 1e-10 of `volume` up to 350 bar, 1e-7 up to 500 bar.
+ */
+export function accumulatorOilVolume(
+  mass: number,
+  temperature: number,
+  gasMass: number,
+  real: number,
+  volume: number,
+  closingVolume: number,
+  fullVolume: number,
+  stopPressure: number,
+  referenceDensity: number,
+  freeAir: number,
+  numerator: number,
+  denominator: number,
+): number {
+  const relaxed = mass / referenceDensity;
+  const liquid = relaxed * (1 - freeAir);
+  const precharge = gasPressure(gasMass / volume, temperature, real);
+  const start = 0.5 * (liquid + Math.sqrt(liquid * liquid + (relaxed * freeAir * 135100 * closingVolume) / precharge));
+  const first = accumulatorNewton(
+    Math.min(start, 0.8 * volume),
+    relaxed,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+    freeAir,
+    numerator,
+    denominator,
+  );
+  const second = accumulatorNewton(
+    first,
+    relaxed,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+    freeAir,
+    numerator,
+    denominator,
+  );
+  return accumulatorNewton(
+    second,
+    relaxed,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+    freeAir,
+    numerator,
+    denominator,
+  );
+}
+
+/** How the oil volume answers a mass of oil, m3/kg: (dV/dm) at the solution `oilVolume`. */
+export function accumulatorVolumeByMass(
+  mass: number,
+  temperature: number,
+  gasMass: number,
+  real: number,
+  volume: number,
+  closingVolume: number,
+  fullVolume: number,
+  stopPressure: number,
+  referenceDensity: number,
+  freeAir: number,
+  numerator: number,
+  denominator: number,
+  oilVolume: number,
+): number {
+  const pressure = accumulatorPressure(
+    oilVolume,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+  );
+  const stiffness = accumulatorStiffness(
+    oilVolume,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+  );
+  const slope = (mass / referenceDensity) * storedOilSlope(pressure, freeAir, numerator, denominator);
+  return storedOilRatio(pressure, freeAir, numerator, denominator) / (referenceDensity * (1 - slope * stiffness));
+}
+
+/** How it answers a change of gas pressure by itself, m3/Pa, negative: (dV/dp_gas) at the solution `oilVolume`. */
+export function accumulatorVolumeByGas(
+  mass: number,
+  temperature: number,
+  gasMass: number,
+  real: number,
+  volume: number,
+  closingVolume: number,
+  fullVolume: number,
+  stopPressure: number,
+  referenceDensity: number,
+  freeAir: number,
+  numerator: number,
+  denominator: number,
+  oilVolume: number,
+): number {
+  const pressure = accumulatorPressure(
+    oilVolume,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+  );
+  const stiffness = accumulatorStiffness(
+    oilVolume,
+    temperature,
+    gasMass,
+    real,
+    volume,
+    closingVolume,
+    fullVolume,
+    stopPressure,
+  );
+  const slope = (mass / referenceDensity) * storedOilSlope(pressure, freeAir, numerator, denominator);
+  return (slope * poppetShare(oilVolume, closingVolume)) / (1 - slope * stiffness);
+}
+
+/** Exact slopes of `accumulatorOilVolume` by the implicit function theorem; the other arguments are constants. */
+export const accumulatorOilVolumeSlopes = {
+  mass: (
+    mass: number,
+    temperature: number,
+    gasMass: number,
+    real: number,
+    volume: number,
+    closingVolume: number,
+    fullVolume: number,
+    stopPressure: number,
+    referenceDensity: number,
+    freeAir: number,
+    numerator: number,
+    denominator: number,
+    oilVolume: number,
+  ) =>
+    accumulatorVolumeByMass(
+      mass,
+      temperature,
+      gasMass,
+      real,
+      volume,
+      closingVolume,
+      fullVolume,
+      stopPressure,
+      referenceDensity,
+      freeAir,
+      numerator,
+      denominator,
+      oilVolume,
+    ),
+  temperature: (
+    mass: number,
+    temperature: number,
+    gasMass: number,
+    real: number,
+    volume: number,
+    closingVolume: number,
+    fullVolume: number,
+    stopPressure: number,
+    referenceDensity: number,
+    freeAir: number,
+    numerator: number,
+    denominator: number,
+    oilVolume: number,
+  ) =>
+    accumulatorVolumeByGas(
+      mass,
+      temperature,
+      gasMass,
+      real,
+      volume,
+      closingVolume,
+      fullVolume,
+      stopPressure,
+      referenceDensity,
+      freeAir,
+      numerator,
+      denominator,
+      oilVolume,
+    ) * gasPressureByTemperature(gasMass / accumulatorGasVolume(oilVolume, volume, closingVolume), temperature, real),
+  gasMass: (
+    mass: number,
+    temperature: number,
+    gasMass: number,
+    real: number,
+    volume: number,
+    closingVolume: number,
+    fullVolume: number,
+    stopPressure: number,
+    referenceDensity: number,
+    freeAir: number,
+    numerator: number,
+    denominator: number,
+    oilVolume: number,
+  ) =>
+    (accumulatorVolumeByGas(
+      mass,
+      temperature,
+      gasMass,
+      real,
+      volume,
+      closingVolume,
+      fullVolume,
+      stopPressure,
+      referenceDensity,
+      freeAir,
+      numerator,
+      denominator,
+      oilVolume,
+    ) *
+      gasPressureByDensity(gasMass / accumulatorGasVolume(oilVolume, volume, closingVolume), temperature, real)) /
+    accumulatorGasVolume(oilVolume, volume, closingVolume),
+};

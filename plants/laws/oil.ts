@@ -15,6 +15,8 @@
 
 /** Standard atmosphere, Pa: the reference of volumes and potentials. */
 export const STANDARD_PRESSURE = 101325;
+/** ln 10, for laws that are written with common logarithms. */
+export const NATURAL_TEN = Math.LN10;
 
 /** Numerator coefficient u of the liquid, 1/Pa. `modulus` Pa, `modulusSlope` = dK/dp, a pure number. */
 export function liquidNumerator(modulus: number, modulusSlope: number): number {
@@ -110,11 +112,6 @@ export function effectiveBulkModulus(
  */
 export function kinematicViscosity(temperature: number, intercept: number, slope: number): number {
   const held = Math.max(200, Math.min(500, temperature));
-  const outer = 2.302585092994046 * intercept - slope * Math.log(held);
-  return 1e-6 * Math.max(0.2, Math.exp(2.302585092994046 * Math.exp(outer)) - 0.7);
-}
-
-/** Factor by which pressure raises the viscosity, after Barus: exp(alpha p), `coefficient` alpha in 1/Pa. */
-export function pressureViscosityFactor(pressure: number, coefficient: number): number {
-  return Math.exp(coefficient * pressure);
+  const outer = NATURAL_TEN * intercept - slope * Math.log(held);
+  return 1e-6 * Math.max(0.2, Math.exp(NATURAL_TEN * Math.exp(outer)) - 0.7);
 }

@@ -1,0 +1,375 @@
+import type { BuildValues } from '../runtime/contract.js';
+import { store } from './define.js';
+import { oilMass } from './fluids.js';
+import { poppetWidth, prechargeMass, restOilVolume } from './gas-accumulator-start.js';
+import * as gasLaws from './laws/gas.js';
+import * as oilLaws from './laws/oil.js';
+
+/**
+ * A gas-charged accumulator: oil, gas and separator in one store, as energy storage or as pressurised reservoir. The
+ * oil is compressed by the pressure it sees; gas temperature is a state; gas heats the wall with a time constant, the
+ * wall gives heat to its surroundings. When nearly empty the poppet closes and the oil pressure leaves the gas pressure;
+ * at its end the separator meets a stop.
+ */
+export const gasAccumulator = store({
+  kind: 'gas-accumulator',
+  about: 'bladder, piston or diaphragm accumulator with real or ideal nitrogen',
+  source: 'Otis and Pourmovahed 1985 (thermal time constant); Benedict, Webb and Rubin; Cooper and Goldfrank 1967',
+  valid:
+    'gas 250 K to 450 K, up to 40 MPa; one thermal time constant: right for temperature and energy, weak for stiffness above 0.1 Hz (Hartig, Depp, Rexer and Pelz 2020)',
+  ports: { oil: 'oil', wall: 'heat' },
+  fluid: true,
+  states: {
+    mass: {
+      unit: 'kg',
+      about: 'oil mass',
+      least: 0,
+      errorWeight: ({ parameter, fluid }: BuildValues) =>
+        (3 * parameter.precharge!) / (poppetWidth(parameter) * fluid.referenceDensity! * 0.5e5),
+    },
+    heat: { unit: 'J', about: 'thermal energy of the oil, m c T', scale: 1e6 },
+    gasTemperature: { unit: 'K', about: 'gas temperature', least: 100, most: 700, scale: 300, errorWeight: () => 1 },
+    wallTemperature: { unit: 'K', about: 'wall temperature', least: 200, most: 500, scale: 300 },
+    gasMass: { unit: 'kg', about: 'gas mass', least: 0 },
+  },
+  commands: {
+    gasLeak: { unit: 'kg/s', about: 'gas lost to the surroundings', rest: 0, least: 0, most: 10, fault: true },
+  },
+  readings: {
+    pressure: { unit: 'Pa', about: 'absolute oil pressure', least: 0 },
+    gasPressure: { unit: 'Pa', about: 'absolute gas pressure', least: 0 },
+    gasVolume: { unit: 'm3', about: 'gas volume', least: 0 },
+    oilVolume: { unit: 'm3', about: 'oil volume under pressure', least: 0 },
+    stateOfCharge: { unit: '1', about: 'oil volume as a share of that at the end of travel', least: 0 },
+    oilTemperature: { unit: 'K', about: 'oil temperature' },
+    gasHeatFlow: { unit: 'W', about: 'heat from the wall into the gas' },
+    inflow: { unit: 'm3/s', about: 'oil that flows in, at its own pressure' },
+  },
+  parameters: {
+    volume: { unit: 'm3', about: 'gas volume when empty of oil', least: 1e-5, most: 2, usual: [1e-4, 0.2] },
+    precharge: { unit: 'Pa', about: 'gas pressure when empty of oil', least: 1.1e5, most: 4e7, usual: [3e5, 2.2e7] },
+    prechargeTemperature: {
+      unit: 'K',
+      about: 'temperature at which the precharge was set',
+      default: 293.15,
+      least: 230,
+      most: 350,
+    },
+    gas: {
+      unit: '1',
+      about: 'nitrogen by Benedict, Webb and Rubin, or as an ideal gas',
+      default: 0,
+      choices: ['nitrogen', 'ideal-nitrogen'],
+    },
+    separator: { unit: '1', about: 'kind of separator', default: 0, choices: ['bladder', 'piston', 'diaphragm'] },
+    leastGasShare: {
+      unit: '1',
+      about: 'gas volume at the end of travel, as a share of the volume',
+      default: 0.05,
+      least: 0.01,
+      most: 0.9,
+    },
+    closingShare: {
+      unit: '1',
+      about: 'oil volume below which the poppet closes, as a share of the volume',
+      default: 0.004,
+      least: 0.001,
+      most: 0.05,
+    },
+    stopPressure: {
+      unit: 'Pa',
+      about: 'pressure of the end stop five closing volumes past the end of travel',
+      default: 3e7,
+      least: 1e6,
+      most: 1e9,
+      difference: true,
+    },
+    timeConstant: {
+      unit: 's',
+      about: 'thermal time constant of the gas, m cv/(h A)',
+      default: 30,
+      least: 0.1,
+      most: 1e9,
+      usual: [3, 120],
+    },
+    foamHeatCapacity: {
+      unit: 'J/K',
+      about: 'heat capacity of elastomeric foam in the gas; 0: none',
+      default: 0,
+      least: 0,
+      most: 1e6,
+    },
+    wallHeatCapacity: {
+      unit: 'J/K',
+      about: 'heat capacity of the shell',
+      default: 30000,
+      least: 100,
+      most: 1e12,
+      usual: [2e3, 1e5],
+    },
+    ambientConductance: {
+      unit: 'W/K',
+      about: 'heat from the wall to the surroundings',
+      default: 8,
+      least: 0,
+      usual: [0, 30],
+    },
+    oilConductance: { unit: 'W/K', about: 'heat between the oil and the wall', default: 20, least: 0, usual: [0, 200] },
+    ambientTemperature: { unit: 'K', about: 'temperature around it', default: 293.15, least: 220, most: 340 },
+    reliefSetting: {
+      unit: 'Pa',
+      about: 'cracking pressure of the relief valve that protects it; 0: not watched',
+      default: 0,
+      least: 0,
+    },
+    maximumAllowable: { unit: 'Pa', about: 'maximum allowable pressure PS; 0: not watched', default: 0, least: 0 },
+    maximumTemperature: { unit: 'K', about: 'greatest gas temperature; 0: not watched', default: 0, least: 0 },
+    endOfTravel: {
+      unit: '1',
+      about: 'state of charge at which the separator is near its end',
+      default: 0.97,
+      least: 0,
+    },
+  },
+  starts: {
+    pressure: { unit: 'Pa', about: 'absolute oil pressure; 0: by state of charge', default: 0, least: 0 },
+    charge: { unit: '1', about: 'state of charge; 0: empty', default: 0, least: 0, most: 1 },
+    temperature: { unit: 'K', about: 'gas and wall temperature; 0: the surroundings', default: 0, least: 0, most: 450 },
+    oilTemperature: { unit: 'K', about: 'oil temperature; 0: that of the fluid', default: 0, least: 0, most: 450 },
+  },
+  laws: { ...oilLaws, ...gasLaws },
+  limits: [
+    {
+      reading: 'gasPressure',
+      side: 'below',
+      level: 'below precharge',
+      parameter: 'precharge',
+      share: 0.9,
+      meaning: 'gas has been lost: the accumulator stores less and its separator strikes the poppet',
+    },
+    {
+      reading: 'pressure',
+      side: 'below',
+      level: 'below precharge',
+      parameter: 'precharge',
+      meaning: 'the accumulator is empty: no oil is left for braking, launching or lubrication',
+    },
+    {
+      reading: 'pressure',
+      side: 'above',
+      level: 'near relief',
+      parameter: 'reliefSetting',
+      share: 0.95,
+      meaning: 'the accumulator is nearly full: recovered energy will soon go over the relief valve',
+    },
+    {
+      reading: 'pressure',
+      side: 'above',
+      level: 'above maximum',
+      parameter: 'maximumAllowable',
+      meaning: 'the pressure vessel is loaded beyond what it is permitted for',
+    },
+    {
+      reading: 'pressure',
+      side: 'above',
+      level: 'above 1.1 maximum',
+      parameter: 'maximumAllowable',
+      share: 1.1,
+      meaning: 'the pressure vessel may fail; a real vehicle is to be stopped, relieved and inspected',
+    },
+    {
+      reading: 'gasTemperature',
+      side: 'above',
+      level: 'over temperature',
+      parameter: 'maximumTemperature',
+      meaning: 'the separator hardens and will leak gas into the oil',
+    },
+    {
+      reading: 'stateOfCharge',
+      side: 'above',
+      level: 'end of travel',
+      parameter: 'endOfTravel',
+      meaning: 'the separator is at its end: the pressure will rise without warning and the bladder or seal suffers',
+    },
+  ],
+  efforts({ parameter, state, fluid, oil, wall, reading, law }) {
+    const real = parameter.gas === 0 ? 1 : 0;
+    const closing = parameter.closingShare * parameter.volume;
+    const end = (1 - parameter.leastGasShare) * parameter.volume;
+    const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
+    const oilVolume = law.accumulatorOilVolume(
+      mass,
+      state.gasTemperature,
+      state.gasMass,
+      real,
+      parameter.volume,
+      closing,
+      end,
+      parameter.stopPressure,
+      fluid.referenceDensity,
+      fluid.freeAir,
+      fluid.numerator,
+      fluid.denominator,
+    );
+    const gasVolume = law.accumulatorGasVolume(oilVolume, parameter.volume, closing);
+    const gasPressure = law.gasPressure(state.gasMass / gasVolume, state.gasTemperature, real);
+    const pressure =
+      gasPressure * law.poppetShare(oilVolume, closing) + law.stopRise(oilVolume, closing, end, parameter.stopPressure);
+    const temperature = state.heat / (fluid.heatCapacity * mass);
+    oil.pressure = pressure;
+    oil.temperature = temperature;
+    oil.density = mass / oilVolume;
+    oil.potential = law.oilPotential(
+      pressure,
+      fluid.referenceDensity,
+      fluid.freeAir,
+      fluid.numerator,
+      fluid.denominator,
+    );
+    oil.viscosity =
+      fluid.referenceDensity * law.kinematicViscosity(temperature, fluid.viscosityIntercept, fluid.viscositySlope);
+    oil.heatCapacity = fluid.heatCapacity;
+    wall.temperature = state.wallTemperature;
+    reading.pressure = pressure;
+    reading.gasPressure = gasPressure;
+    reading.gasVolume = gasVolume;
+    reading.oilVolume = oilVolume;
+    reading.stateOfCharge = oilVolume / end;
+    reading.oilTemperature = temperature;
+  },
+  derivatives({ parameter, state, command, fluid, oil, wall, reading, derivative, law }) {
+    const real = parameter.gas === 0 ? 1 : 0;
+    const closing = parameter.closingShare * parameter.volume;
+    const end = (1 - parameter.leastGasShare) * parameter.volume;
+    const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
+    const oilVolume = mass / oil.density;
+    const gasVolume = law.accumulatorGasVolume(oilVolume, parameter.volume, closing);
+    const density = state.gasMass / gasVolume;
+    const heatCapacity = state.gasMass * law.gasHeatCapacity(density, state.gasTemperature, real);
+    const byTemperature = law.gasPressureByTemperature(density, state.gasTemperature, real);
+    const byMass = law.accumulatorVolumeByMass(
+      mass,
+      state.gasTemperature,
+      state.gasMass,
+      real,
+      parameter.volume,
+      closing,
+      end,
+      parameter.stopPressure,
+      fluid.referenceDensity,
+      fluid.freeAir,
+      fluid.numerator,
+      fluid.denominator,
+      oilVolume,
+    );
+    const byGas = law.accumulatorVolumeByGas(
+      mass,
+      state.gasTemperature,
+      state.gasMass,
+      real,
+      parameter.volume,
+      closing,
+      end,
+      parameter.stopPressure,
+      fluid.referenceDensity,
+      fluid.freeAir,
+      fluid.numerator,
+      fluid.denominator,
+      oilVolume,
+    );
+    // the gas volume answers oil, gas temperature and gas loss: dVg = -share (byMass dm + byGas (pT dT + pm dmg))
+    const share = law.poppetShare(oilVolume, closing);
+    const gasLoss = -command.gasLeak;
+    const byGasMass = law.gasPressureByDensity(density, state.gasTemperature, real) / gasVolume;
+    const shrinking = share * (byMass * oil.massFlow + byGas * byGasMass * gasLoss);
+    const heatFlow = (heatCapacity * (state.wallTemperature - state.gasTemperature)) / parameter.timeConstant;
+    const work = state.gasTemperature * byTemperature;
+    const oilHeat = parameter.oilConductance * (oil.temperature - state.wallTemperature);
+    derivative.mass = oil.massFlow;
+    derivative.heat = oil.heatFlow - oilHeat;
+    derivative.gasMass = gasLoss;
+    derivative.gasTemperature =
+      (heatFlow + work * (shrinking + gasLoss / density)) /
+      (heatCapacity + parameter.foamHeatCapacity - work * share * byGas * byTemperature);
+    derivative.wallTemperature =
+      (oilHeat -
+        heatFlow +
+        wall.heatFlow +
+        parameter.ambientConductance * (parameter.ambientTemperature - state.wallTemperature)) /
+      parameter.wallHeatCapacity;
+    reading.gasHeatFlow = heatFlow;
+    reading.inflow = oil.massFlow / oil.density;
+  },
+  energy({ parameter, state, fluid, oil, law }) {
+    const real = parameter.gas === 0 ? 1 : 0;
+    const closing = parameter.closingShare * parameter.volume;
+    const end = (1 - parameter.leastGasShare) * parameter.volume;
+    const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
+    const oilVolume = mass / oil.density;
+    const density = state.gasMass / law.accumulatorGasVolume(oilVolume, parameter.volume, closing);
+    return (
+      state.mass * oil.potential -
+      oil.pressure * oilVolume +
+      state.heat +
+      state.gasMass * law.gasEnergy(density, state.gasTemperature, real) +
+      law.stopEnergy(oilVolume, closing, end, parameter.stopPressure) +
+      parameter.foamHeatCapacity * state.gasTemperature +
+      parameter.wallHeatCapacity * state.wallTemperature
+    );
+  },
+  /** Heat from the surroundings; gas that leaks takes its enthalpy along. */
+  supply({ parameter, state, command, fluid, oil, law }) {
+    const real = parameter.gas === 0 ? 1 : 0;
+    const closing = parameter.closingShare * parameter.volume;
+    const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
+    const density = state.gasMass / law.accumulatorGasVolume(mass / oil.density, parameter.volume, closing);
+    const enthalpy =
+      law.gasEnergy(density, state.gasTemperature, real) +
+      law.gasPressure(density, state.gasTemperature, real) / density;
+    return (
+      parameter.ambientConductance * (parameter.ambientTemperature - state.wallTemperature) - command.gasLeak * enthalpy
+    );
+  },
+  holds: { oil: ({ state }) => state.mass },
+  initial: ({ parameter, fluid, start }) => {
+    const temperature = start.temperature! || parameter.ambientTemperature!;
+    const gasMass = prechargeMass(parameter);
+    const [oilVolume, pressure] = restOilVolume(parameter, gasMass, temperature, start);
+    const mass = oilMass(oilVolume, pressure, fluid);
+    return {
+      mass,
+      heat: mass * fluid.heatCapacity! * (start.oilTemperature! || fluid.temperature!),
+      gasTemperature: temperature,
+      wallTemperature: temperature,
+      gasMass,
+    };
+  },
+  examine: ({ parameter }) => {
+    const problems: { parameter: string; what: string; remedy: string }[] = [];
+    const most = parameter.maximumAllowable!;
+    const ratio = most / parameter.precharge!;
+    const greatest = [4, 10, 8][parameter.separator!]!;
+    if (most > 0 && ratio > greatest) {
+      problems.push({
+        parameter: 'precharge',
+        what: `maximumAllowable is ${ratio.toFixed(1)} times the precharge, more than this separator bears (${greatest})`,
+        remedy: 'raise the precharge, or take another separator',
+      });
+    }
+    if (most > 0 && parameter.precharge! >= most) {
+      problems.push({
+        parameter: 'precharge',
+        what: 'the precharge is not below maximumAllowable',
+        remedy: 'lower the precharge to 0.9 of the least working pressure or less',
+      });
+    }
+    if (parameter.reliefSetting! > most && most > 0) {
+      problems.push({
+        parameter: 'reliefSetting',
+        what: 'the relief setting is above maximumAllowable',
+        remedy: 'set the relief valve at or below PS',
+      });
+    }
+    return problems;
+  },
+});

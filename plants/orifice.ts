@@ -1,0 +1,65 @@
+import { branch } from './define.js';
+import * as flowLaws from './laws/flow.js';
+
+/** A fixed orifice; what it dissipates heats the oil that leaves it. */
+export const orifice = branch({
+  kind: 'orifice',
+  about: 'turbulent orifice, smooth around zero',
+  source: 'Merritt, Hydraulic Control Systems, 1967',
+  ports: { from: 'oil', to: 'oil' },
+  readings: {
+    massFlow: { unit: 'kg/s', about: 'mass flow' },
+    flow: { unit: 'm3/s', about: 'volume flow at the density upstream' },
+  },
+  parameters: {
+    area: { unit: 'm2', about: 'area of the bore', least: 1e-9, most: 0.01, usual: [1e-7, 1e-3] },
+    dischargeCoefficient: {
+      unit: '1',
+      about: 'discharge coefficient',
+      default: 0.65,
+      least: 0.3,
+      most: 1,
+      usual: [0.6, 0.8],
+    },
+    smoothing: {
+      unit: 'Pa',
+      about: 'pressure difference below which it is laminar',
+      default: 2e4,
+      least: 100,
+      most: 2e5,
+      difference: true,
+    },
+  },
+  laws: flowLaws,
+  flows({ parameter, from, to, reading, law }) {
+    const massFlow = law.orificeMassFlow(
+      from.pressure,
+      to.pressure,
+      from.density,
+      to.density,
+      parameter.dischargeCoefficient * parameter.area,
+      parameter.smoothing,
+    );
+    const carried = law.heatCarried(massFlow, from.heatCapacity * from.temperature, to.heatCapacity * to.temperature);
+    const lost = massFlow * (from.potential - to.potential);
+    from.massFlow -= massFlow;
+    to.massFlow += massFlow;
+    from.heatFlow += (massFlow > 0 ? 0 : lost) - carried;
+    to.heatFlow += (massFlow > 0 ? lost : 0) + carried;
+    reading.massFlow = massFlow;
+    reading.flow = massFlow / (massFlow > 0 ? from.density : to.density);
+  },
+  loss({ parameter, from, to, law }) {
+    return (
+      law.orificeMassFlow(
+        from.pressure,
+        to.pressure,
+        from.density,
+        to.density,
+        parameter.dischargeCoefficient * parameter.area,
+        parameter.smoothing,
+      ) *
+      (from.potential - to.potential)
+    );
+  },
+});
