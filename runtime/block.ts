@@ -4,29 +4,40 @@
  * written whole every second, so that a run derived again can name the tick and then the slot that differs.
  */
 export class BlockLayout {
-  private readonly names: string[] = [];
+  /** Names by range: windows of thousands of slots would otherwise cost a string each. */
+  private readonly ranges: { readonly path: string; readonly at: number; readonly single: boolean }[] = [];
   private readonly first: number[] = [];
 
   get length(): number {
-    return this.names.length;
+    return this.first.length;
   }
 
   /** Reserves one slot. `path` names it in messages about differences. */
   add(path: string, initial = 0): number {
-    this.names.push(path);
+    this.ranges.push({ path, at: this.first.length, single: true });
     this.first.push(initial);
-    return this.names.length - 1;
+    return this.first.length - 1;
   }
 
   /** Reserves `count` slots in a row, named path[0], path[1], ...; the index of the first. */
   addMany(path: string, count: number, initial = 0): number {
-    const at = this.names.length;
-    for (let i = 0; i < count; i += 1) this.add(`${path}[${i}]`, initial);
+    const at = this.first.length;
+    if (count > 0) this.ranges.push({ path, at, single: false });
+    for (let i = 0; i < count; i += 1) this.first.push(initial);
     return at;
   }
 
   path(index: number): string {
-    return this.names[index] ?? `slot ${index}`;
+    if (!(index >= 0 && index < this.first.length)) return `slot ${index}`;
+    let low = 0;
+    let high = this.ranges.length - 1;
+    while (low < high) {
+      const middle = (low + high + 1) >> 1;
+      if (this.ranges[middle]!.at <= index) low = middle;
+      else high = middle - 1;
+    }
+    const range = this.ranges[low]!;
+    return range.single ? range.path : `${range.path}[${index - range.at}]`;
   }
 
   setInitial(index: number, value: number): void {
