@@ -234,15 +234,17 @@ export class UdpInbox {
 
   /**
    * One of `verdicts`. The checksum is over what came, so that a whole datagram of another map is told from a damaged
-   * one; of two faults the one that says more about the cause is named.
+   * one; of two faults the one that says more about the cause is named. A datagram longer than any of the link was cut:
+   * its checksum is gone, and the map's in its header is believed.
    */
   inspect(datagram: Datagram, length: number): number {
     if (length < controlLength) return verdicts.wrongLength;
     const view = datagram.view;
     if (view.getInt32(header.magic, true) !== magic || view.getUint8(header.version) !== version)
       return verdicts.malformed;
-    const whole = length < this.capacity && view.getInt32(length - 4, true) === crc32(datagram.bytes, 0, length - 4);
-    if (whole && view.getInt32(header.map, true) !== this.mapChecksum) return verdicts.wrongMap;
+    const cut = length >= this.capacity;
+    const whole = !cut && view.getInt32(length - 4, true) === crc32(datagram.bytes, 0, length - 4);
+    if ((whole || cut) && view.getInt32(header.map, true) !== this.mapChecksum) return verdicts.wrongMap;
     const kind = view.getUint8(header.kind);
     let expected: number = controlLength;
     if (kind === kinds.message) {
