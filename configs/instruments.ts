@@ -1,8 +1,8 @@
-import type { Position, SignalInfo } from '../runtime/contract.js';
+import type { ParameterDeclaration, Position, SignalInfo } from '../runtime/contract.js';
 import type { InstrumentKind } from '../runtime/instrument.js';
 import type { Ambient, Catalogue, InstrumentSpec } from './bench-spec.js';
 import { kindOf, type Names } from './elements.js';
-import { readParameters } from './parameters.js';
+import { rangeKeys, readParameters } from './parameters.js';
 import { type Placed, type Section, suggestion } from './section.js';
 import type { SignalList } from './signal-list.js';
 
@@ -65,6 +65,7 @@ export function declareInstruments(top: Section, catalogue: Catalogue, names: Na
     }
   }
   for (const { one } of waiting) signals.unread.add(one.name);
+  for (const one of pending) addCommands(one, signals);
   return pending;
 }
 
@@ -84,6 +85,23 @@ function outputInfo(one: Pending, output: string, signals: SignalList): SignalIn
     ...(declaration.least === undefined ? {} : { least: declaration.least }),
     ...(declaration.most === undefined ? {} : { most: declaration.most }),
   };
+}
+
+/** Commands of an instrument are signals like those of an element; `input` as unit stands for that of its input. */
+function addCommands(one: Pending, signals: SignalList): void {
+  for (const [name, { unit, about, least, most }] of Object.entries(one.kind.commands ?? {})) {
+    const free = Object.entries(one.kind.inputs).find(([, declaration]) => declaration.anyUnit)?.[0];
+    const said = free === undefined ? undefined : one.said.get(free);
+    const ofInput = said && free !== undefined ? inputSignal(one, free, said, signals)?.unit : undefined;
+    signals.add({
+      path: `${one.name}.${name}`,
+      group: 'command',
+      unit: unit === 'input' ? (ofInput ?? '1') : unit,
+      about,
+      ...(least === undefined ? {} : { least }),
+      ...(most === undefined ? {} : { most }),
+    });
+  }
 }
 
 /** As `resolve`, without complaints. */
@@ -113,9 +131,10 @@ export function readInstruments(
       inputs[input] = info.path;
       if (declaration.anyUnit) inputUnit ??= info.unit;
     }
-    const declared = inputUnit === undefined ? kind.parameters : inUnitOfInput(kind, inputUnit);
-    const read = readParameters(section, declared, ambient);
+    // With the unit of its input unknown, the parameters in that unit cannot be judged.
+    const read = readParameters(section, inUnitOfInput(kind, inputUnit), ambient);
     const drives = readDrives(section, name, kind, signals, drivers);
+    for (const key of [...Object.keys(kind.parameters), ...rangeKeys(kind.parameters).keys()]) section.skip(key);
     section.finish([...read.keys, ...Object.keys(kind.inputs), 'drives']);
     instruments.push({ name, kind, parameters: read.values, inputs, drives, where: section.where });
   }
@@ -123,13 +142,13 @@ export function readInstruments(
 }
 
 /** Parameters declared in the unit `input` take the unit of the signal that the instrument is tied to. */
-function inUnitOfInput(kind: InstrumentKind, unit: string): InstrumentKind['parameters'] {
-  return Object.fromEntries(
-    Object.entries(kind.parameters).map(([name, declaration]) => [
-      name,
-      declaration.unit === 'input' ? { ...declaration, unit } : declaration,
-    ]),
-  );
+function inUnitOfInput(kind: InstrumentKind, unit: string | undefined): InstrumentKind['parameters'] {
+  const declared: Record<string, ParameterDeclaration> = {};
+  for (const [name, declaration] of Object.entries(kind.parameters)) {
+    if (declaration.unit !== 'input') declared[name] = declaration;
+    else if (unit !== undefined) declared[name] = { ...declaration, unit };
+  }
+  return declared;
 }
 
 function readDrives(

@@ -8,7 +8,8 @@ import * as frictionLaws from './laws/friction.js';
  * The indicated (gross) torque follows the request plus drag with the lag of the air path, between nothing and the
  * full-load curve; fuel after the Willans line, fuel power = gross torque * speed / e. It burns only with ignition on
  * and above `firingSpeed`: it starts by being turned, and stalls when pulled below. An idle governor (PI with
- * automatic reset) adds what holds `idleSpeed`. A request below minus the drag cuts the fuel.
+ * automatic reset) adds what holds `idleSpeed`. A request of zero is overrun: no fuel down to idle; from there the
+ * drag is made up for over the first few `requestWidth`, so that a real request is the torque at the shaft.
  */
 export const combustionEngine = branch({
   kind: 'combustion-engine',
@@ -22,7 +23,7 @@ export const combustionEngine = branch({
     fuelMass: { unit: 'kg', about: 'fuel burnt so far', least: -1e-9, scale: 0.1 },
   },
   commands: {
-    torqueRequest: { unit: 'N m', about: 'wanted torque at the shaft', rest: 0, least: -500, most: 5000 },
+    torqueRequest: { unit: 'N m', about: 'wanted torque at the shaft; 0: overrun', rest: 0, least: 0, most: 5000 },
     ignition: { unit: '1', about: '1: fuel and ignition on', rest: 0, least: 0, most: 1 },
     derate: { unit: '1', about: 'share of the full-load torque that is left', rest: 1, least: 0, most: 1, fault: true },
   },
@@ -42,6 +43,7 @@ export const combustionEngine = branch({
     heatingValue: { unit: 'J/kg', about: 'lower heating value of the fuel', default: 42.8e6, least: 1e6, usual: [42e6, 44e6] },
     airPathTime: { unit: 's', about: 'lag of rising torque', default: 0.15, least: 0.01, usual: [0.05, 1.5] },
     cutTime: { unit: 's', about: 'lag of falling torque', default: 0.06, least: 0.01, usual: [0.02, 0.3] },
+    requestWidth: { unit: 'N m', about: 'request over which the drag is made up for', default: 8, least: 0.1 },
     idleSpeed: { unit: 'rad/s', about: 'idle speed', default: 73.3, least: 10, usual: [55, 110] },
     idleGain: { unit: 'N m s', about: 'idle governor: torque per speed missing', default: 4, least: 0 },
     idleTime: { unit: 's', about: 'its reset time', default: 0.8, least: 0.05 },
@@ -99,8 +101,9 @@ export const combustionEngine = branch({
       -drag,
       parameter.idleLimit,
     );
-    const wanted = Math.max(command.torqueRequest, governor);
-    const demand = command.ignition * law.between(wanted + drag, 0, fullLoad + drag);
+    const request = Math.max(command.torqueRequest, 0);
+    const requested = request + drag * (1 - Math.exp(-request / parameter.requestWidth));
+    const demand = command.ignition * law.between(Math.max(requested, governor + drag), 0, fullLoad + drag);
     const gross = state.indicatedTorque * law.smoothSwitch(speed, parameter.firingSpeed, 3);
     const torque = gross - law.slidingTorque(drag, speed, 2);
     const fuelPower = law.willansFuelPower(gross - drag, drag, forward, parameter.efficiency);

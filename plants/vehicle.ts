@@ -48,11 +48,11 @@ export const vehicle = store({
     rollingLength: {
       unit: 'm',
       about: 'way over which rolling resistance builds up',
-      default: 0.02,
+      default: 0.01,
       least: 0.001,
       most: 0.2,
     },
-    rollingDamping: { unit: 's/m', about: 'damping of that build-up', default: 2, least: 0 },
+    rollingDamping: { unit: 's/m', about: 'damping of that build-up', default: 10, least: 0 },
     heightOfCentre: { unit: 'm', about: 'height of the centre of gravity; 0: no load shift', default: 0, least: 0 },
     wheelbase: { unit: 'm', about: 'distance of the axles', default: 4, least: 0.5 },
     pitchTime: { unit: 's', about: 'lag of pitching', default: 0.1, least: 0.01 },
