@@ -1,0 +1,199 @@
+import { parentPort, workerData } from 'node:worker_threads';
+import v8 from 'node:v8';
+import { LockstepTransport } from '../../bridge/lockstep.js';
+import { UdpSocket } from '../../bridge/udp-socket.js';
+import { noTransport } from '../../bridge/transport.js';
+import { type Assembly, assemble } from '../../configs/assemble.js';
+import { readBench } from '../../configs/bench.js';
+import type { BenchSpec } from '../../configs/bench-spec.js';
+import { memoryFiles } from '../../configs/files.js';
+import { BuildError } from '../../runtime/contract.js';
+import { noJournal } from '../../runtime/journal.js';
+import { Clock } from '../../runtime/realtime/clock.js';
+import { CollectionMeter } from '../../runtime/realtime/collection-meter.js';
+import { whyNotLive } from '../../runtime/realtime/ffi.js';
+import { Pacer } from '../../runtime/realtime/pacer.js';
+import { enterScheduling, type Scheduling } from '../../runtime/realtime/scheduling.js';
+import { TimingRecord } from '../../runtime/realtime/timing-record.js';
+import { RingJournal } from '../../runtime/ring-journal.js';
+import { library } from '../catalogue.js';
+import { loadController, moduleTransport } from './controller-module.js';
+import { createLoopControl, runLoop } from './engine.js';
+import type { LoopMessage, RunOrder } from './run-order.js';
+import { StageClock } from './stage-meter.js';
+
+/**
+ * The loop thread: builds the bench, warms up, runs all ticks with its own sockets, and ends. It shares rings and a few
+ * words with the host and nothing else; no file, no terminal and no browser is touched here while ticks run.
+ */
+// before the hot code compiles; process-wide, so the host keeps its defaults only until here
+v8.setFlagsFromString('--max-inlined-bytecode-size=2000');
+v8.setFlagsFromString('--max-inlined-bytecode-size-cumulative=6000');
+
+/** Ticks of the dry run before a live run: after these, steps take what they will take. */
+const warmUpTicks = { live: 20_000, fast: 0 };
+const scriptEvery = 1;
+
+const port = parentPort!;
+const say = (message: LoopMessage) => port.postMessage(message);
+
+void main(workerData as RunOrder).catch((error: unknown) => {
+  const code = error instanceof BuildError ? 2 : 5;
+  say({ kind: 'failed', what: error instanceof Error ? error.message : String(error), code });
+});
+
+async function main(order: RunOrder): Promise<void> {
+  if (order.pace === 'live' && whyNotLive() !== '') throw new BuildError([{ path: 'run --pace live', what: whyNotLive(), remedy: 'use --pace fast here' }]);
+  const began = performance.now();
+  const texts = Object.fromEntries(order.sources.map((source) => [source.path, source.text]));
+  const spec = readBench(order.sources[0]!.path, library, memoryFiles(texts));
+  const assembly = assemble(spec, { seed: order.seed, script: order.script });
+  const built = performance.now();
+  const selection = Int32Array.from(order.signals, (path) => requireSignal(assembly, path));
+  const journal = new RingJournal(order.ring, selection);
+  const barriers: LockstepTransport[] = [];
+  const sockets: UdpSocket[] = [];
+
+  if (order.pace === 'live') await warmUp(assembly, spec, order);
+  const warmed = performance.now();
+  await attach(order, spec, assembly, barriers, sockets);
+  assembly.exchange.setJournal(journal);
+  assembly.tick.journal = journal;
+  const meter = order.profile ? new StageClock() : undefined;
+  if (meter) assembly.tick.meter = meter;
+
+  let scheduling: Scheduling | undefined;
+  if (order.pace === 'live') scheduling = enterScheduling(order.core === undefined ? {} : { core: order.core });
+  say({
+    kind: 'ready',
+    signals: assembly.table.all.map(({ path, unit, about, group }) => ({ path, unit, about, group })),
+    events: { kinds: assembly.events.kinds, subjects: assembly.events.subjects },
+    links: spec.map.links.map((link) => link.name),
+    block: Array.from({ length: assembly.layout.length }, (_, i) => assembly.layout.path(i)),
+    scheduling: scheduling?.words ?? ['fast pace: no scheduling asked for'],
+    policy: scheduling?.policy ?? 'SCHED_OTHER',
+    startUp: { build: (built - began) / 1000, warmUp: (warmed - built) / 1000 },
+  });
+
+  const meterOfCollections = new CollectionMeter();
+  let collections = { collections: 0, longest: 0, allocated: 0 };
+  let counting = false;
+  const pacer = order.pace === 'live' ? new Pacer({ period: Math.round(spec.step * 1e9), record: new TimingRecord(order.timing) }) : undefined;
+  const lateness = assembly.table.find('timing.lateness');
+  const end = runLoop({
+    assembly,
+    ticks: order.ticks,
+    shared: createLoopControl(order.control),
+    barriers,
+    ...(pacer ? { pacer } : {}),
+    ...(pacer && lateness >= 0 ? { timingSignals: { lateness, step: assembly.table.find('timing.step') } } : {}),
+    peaks: Int32Array.from(order.peaks, (path) => requireSignal(assembly, path)),
+    onCount: () => {
+      if (!counting) {
+        meter?.reset();
+        meterOfCollections.start();
+      } else collections = meterOfCollections.stop();
+      counting = true;
+    },
+  });
+  scheduling?.restore();
+  journal.close();
+  for (const socket of sockets) socket.close();
+  const shares = assembly.ledger.shares(assembly.block, assembly.signals);
+  say({
+    kind: 'done',
+    ticks: end.ticks,
+    stopped: end.stopped,
+    failure: end.failure ?? null,
+    wall: end.wall,
+    processor: end.processor,
+    hash: end.hash,
+    peaks: Object.fromEntries(order.peaks.map((path, i) => [path, end.peaks[i]!])),
+    ledger: {
+      energyResidual: shares.energy,
+      oilResidual: shares.stuffs['oil'] ?? 0,
+      turnover: assembly.signals[assembly.table.find('ledger.turnover')]!,
+      stuffs: shares.stuffs,
+    },
+    collections: collections.collections,
+    longestCollection: collections.longest,
+    heapGrowth: collections.allocated,
+    refined: assembly.plant.solver.refined,
+    replaced: assembly.plant.solver.replaced,
+    overflows: journal.overflows,
+    dropped: journal.dropped,
+    stages: meter?.summary() ?? [],
+    last: assembly.signals.slice(),
+    warnings: assembly.warnings(),
+  });
+}
+
+function requireSignal(assembly: Assembly, path: string): number {
+  const index = assembly.table.find(path);
+  if (index >= 0) return index;
+  const near = assembly.table.nearest(path);
+  throw new BuildError([{ path: 'record.signals', what: `no signal \`${path}\``, remedy: near.length > 0 ? `did you mean ${near.join(' or ')}?` : 'see `oilspring list signals BENCH`' }]);
+}
+
+/** Runs the very tick that will count, on the same arrays, and throws the state away: everything that it remembers stands in the block. */
+async function warmUp(assembly: Assembly, spec: BenchSpec, order: RunOrder): Promise<void> {
+  const link = spec.map.links[0];
+  if (link && spec.controller?.module !== undefined) {
+    const factory = await loadController(order.folder, spec.controller.module);
+    const transport = moduleTransport(spec.map, assembly.exchange.checksum, factory, spec.step, scriptEvery);
+    assembly.exchange.attach(link.name, transport);
+    dryRun(assembly, (tick) => transport.end(tick));
+  } else dryRun(assembly, () => {});
+  for (const one of spec.map.links) assembly.exchange.attach(one.name, noTransport);
+  assembly.reset();
+}
+
+function dryRun(assembly: Assembly, end: (tick: number) => void): void {
+  assembly.tick.journal = noJournal;
+  for (let round = 0; round < 2; round += 1) {
+    assembly.reset();
+    const last = assembly.firstTick + warmUpTicks.live / 2;
+    for (let tick = assembly.firstTick; tick < last; tick += 1) {
+      assembly.tick.run(tick);
+      end(tick);
+    }
+  }
+}
+
+async function attach(order: RunOrder, spec: BenchSpec, assembly: Assembly, barriers: LockstepTransport[], sockets: UdpSocket[]): Promise<void> {
+  const { exchange } = assembly;
+  if (order.controller.kind === 'none' || spec.map.links.length === 0) return;
+  if (order.controller.kind === 'module') {
+    const factory = await loadController(order.folder, order.controller.file);
+    const transport = moduleTransport(spec.map, exchange.checksum, factory, spec.step, spec.controller?.period ?? 1);
+    exchange.attach(spec.map.links[0]!.name, transport);
+    barriers.push(transport);
+    return;
+  }
+  const clock = new Clock();
+  const times = new Float64Array(1);
+  for (const link of spec.map.links) {
+    const socket = new UdpSocket({
+      local: { address: link.localAddress ?? '127.0.0.1', port: link.localPort ?? 0 },
+      peer: { address: link.remoteAddress ?? '127.0.0.1', port: link.remotePort ?? 0 },
+    });
+    sockets.push(socket);
+    if (order.pace === 'live') {
+      exchange.attach(link.name, socket);
+      continue;
+    }
+    const barrier = new LockstepTransport(socket, {
+      link: link.name,
+      mapChecksum: exchange.checksum,
+      every: spec.controller?.period ?? 1,
+      limit: 1000 * (spec.controller?.patience ?? 5),
+      now: () => {
+        clock.now(times, 0);
+        return times[0]! * 1e-6;
+      },
+    });
+    barrier.awaitHello(1000 * Math.max(10, spec.controller?.patience ?? 5));
+    exchange.attach(link.name, barrier);
+    barriers.push(barrier);
+  }
+}

@@ -1,0 +1,78 @@
+import type { ScriptSpec } from '../../runtime/script.js';
+import type { RingHandle } from '../../runtime/ring.js';
+
+/** What the host tells the loop thread to run: plain data, sent once. */
+export interface RunOrder {
+  /** The bench's files by path, the bench file first: exactly what the recording carries. */
+  readonly sources: readonly { readonly path: string; readonly text: string }[];
+  readonly script: ScriptSpec;
+  readonly seed: number;
+  readonly pace: 'live' | 'fast';
+  /** Counted ticks. */
+  readonly ticks: number;
+  /** Folder of the bench on the disk, for a controller's module. */
+  readonly folder: string;
+  /**
+   * Who answers: a module in the loop thread, a process over UDP (in lockstep at fast pace), or nobody.
+   */
+  readonly controller: { readonly kind: 'module'; readonly file: string } | { readonly kind: 'udp' } | { readonly kind: 'none' };
+  readonly ring: RingHandle;
+  readonly control: SharedArrayBuffer;
+  readonly timing: SharedArrayBuffer;
+  /** Paths recorded in every row. */
+  readonly signals: readonly string[];
+  /** Paths whose largest values are kept. */
+  readonly peaks: readonly string[];
+  /** Measure each stage of the tick. */
+  readonly profile: boolean;
+  readonly core: number | undefined;
+}
+
+/** What the loop thread says when the bench is built, before the first tick. */
+export interface RunReady {
+  readonly kind: 'ready';
+  readonly signals: readonly { readonly path: string; readonly unit: string; readonly about: string; readonly group: string }[];
+  readonly events: {
+    readonly kinds: readonly { readonly name: string; readonly severity: 'note' | 'warning' | 'alarm' | 'error'; readonly text: string }[];
+    readonly subjects: readonly string[];
+  };
+  readonly links: readonly string[];
+  readonly block: readonly string[];
+  /** What the loop thread got of scheduling, in words. */
+  readonly scheduling: readonly string[];
+  readonly policy: string;
+  /** s, by part. */
+  readonly startUp: { readonly build: number; readonly warmUp: number };
+}
+
+/** What it says at the end. */
+export interface RunDone {
+  readonly kind: 'done';
+  readonly ticks: number;
+  readonly stopped: boolean;
+  readonly failure: string | null;
+  readonly wall: number;
+  readonly processor: number;
+  readonly hash: string;
+  readonly peaks: Readonly<Record<string, number>>;
+  readonly ledger: { readonly energyResidual: number; readonly oilResidual: number; readonly turnover: number; readonly stuffs: Readonly<Record<string, number>> };
+  readonly collections: number;
+  readonly longestCollection: number;
+  readonly heapGrowth: number;
+  readonly refined: number;
+  readonly replaced: number;
+  readonly overflows: number;
+  readonly dropped: number;
+  readonly stages: readonly { readonly stage: string; readonly p50: number; readonly p99: number; readonly max: number }[];
+  /** Last values of all signals. */
+  readonly last: Float64Array;
+  readonly warnings: readonly unknown[];
+}
+
+export interface RunFailed {
+  readonly kind: 'failed';
+  readonly what: string;
+  /** 2 for bad input, 5 for what could not be finished. */
+  readonly code: number;
+}
+export type LoopMessage = RunReady | RunDone | RunFailed;
