@@ -20,7 +20,8 @@ export const FRAME = 8;
 export const LARGEST_BLOCK = 64 << 20;
 
 const signalSchema = z.object({
-  path: z.string().min(1).max(500),
+  // Begins with a letter: a spreadsheet takes a heading that begins with = or + for a formula.
+  path: z.string().max(500).regex(/^[\p{L}_][^\p{C}\s,"=]*$/u),
   unit: z.string().max(50),
   about: z.string().max(2000),
   group: z.string().max(50),

@@ -43,7 +43,7 @@ export class RecordingWriter {
     options: WriterOptions = {},
   ) {
     this.syncEvery = options.syncEvery ?? 1000;
-    headerSchema.parse(header);
+    const checked = headerSchema.parse(header);
     try {
       fs.mkdirSync(path.dirname(file), { recursive: true });
       this.descriptor = fs.openSync(file, options.replace ? 'w' : 'wx', 0o644);
@@ -54,7 +54,7 @@ export class RecordingWriter {
       );
     }
     this.enqueue(MAGIC);
-    this.add('header', { ...header });
+    this.add('header', checked);
     this.write();
   }
 
