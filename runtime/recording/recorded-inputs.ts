@@ -47,10 +47,12 @@ export class RecordedInputs {
     const position = positions[queue.at]!;
     const when = block.ticks[position]!;
     if (when > tick) return -1;
-    if (when < tick) throw new RecordingError(`an input of tick ${when} on link ${link} was passed over at tick ${tick}`);
+    if (when < tick)
+      throw new RecordingError(`an input of tick ${when} on link ${link} was passed over at tick ${tick}`);
     const from = block.offsets[position]!;
     const length = block.offsets[position + 1]! - from;
-    if (length > into.length) throw new RecordingError(`an input of ${length} bytes at tick ${tick} into room for ${into.length}`);
+    if (length > into.length)
+      throw new RecordingError(`an input of ${length} bytes at tick ${tick} into room for ${into.length}`);
     for (let i = 0; i < length; i += 1) into[i] = block.bytes[from + i]!;
     queue.at += 1;
     if (queue.at === positions.length) {
@@ -67,7 +69,8 @@ export class RecordedInputs {
     let count = 0;
     for (const queue of this.queues) {
       queue.waiting.forEach((entry, number) => {
-        for (let i = number === 0 ? queue.at : 0; i < entry.positions.length; i += 1) if (entry.block.ticks[entry.positions[i]!]! <= tick) count += 1;
+        for (let i = number === 0 ? queue.at : 0; i < entry.positions.length; i += 1)
+          if (entry.block.ticks[entry.positions[i]!]! <= tick) count += 1;
       });
     }
     return count;
@@ -83,12 +86,16 @@ export class RecordedInputs {
       }
       const block = step.value;
       if (block.kind !== 'inputs' || block.count === 0) continue;
-      if (block.ticks[0]! < this.loadedThrough) throw new RecordingError(`inputs of tick ${block.ticks[0]} behind those of tick ${this.loadedThrough}`);
+      if (block.ticks[0]! < this.loadedThrough)
+        throw new RecordingError(`inputs of tick ${block.ticks[0]} behind those of tick ${this.loadedThrough}`);
       this.loadedThrough = block.ticks[block.count - 1]!;
       const byLink: number[][] = this.queues.map(() => []);
       for (let i = 0; i < block.count; i += 1) {
         const list = byLink[block.links[i]!];
-        if (list === undefined) throw new RecordingError(`an input from link ${block.links[i]}: the recording has ${this.queues.length} links`);
+        if (list === undefined)
+          throw new RecordingError(
+            `an input from link ${block.links[i]}: the recording has ${this.queues.length} links`,
+          );
         list.push(i);
       }
       byLink.forEach((list, link) => {

@@ -1,0 +1,74 @@
+#!/usr/bin/env node
+import { createSocket } from 'node:dgram';
+import path from 'node:path';
+import { parseArgs } from 'node:util';
+import { ControllerEndpoint, type ControllerModule } from '../bridge/controller-side.js';
+import { readBench } from '../configs/bench.js';
+import { library } from './catalogue.js';
+import { loadController } from './loop/controller-module.js';
+
+/**
+ * A controller as a process of its own: it knows the message map and nothing else of the bench. Live it answers each
+ * trigger message at once; in lockstep it answers each `end` of the bench.
+ *
+ *   node dist/tools/controller.js BENCH [--lockstep] [--module FILE]
+ */
+const { values, positionals } = parseArgs({
+  allowPositionals: true,
+  options: { lockstep: { type: 'boolean', default: false }, module: { type: 'string' }, help: { type: 'boolean', default: false } },
+});
+const bench = positionals[0];
+if (values.help || bench === undefined) {
+  process.stdout.write('Usage: controller BENCH [--lockstep] [--module FILE]\n\nRuns the controller module of a bench as a process of its own, over UDP.\n');
+  process.exit(values.help ? 0 : 2);
+}
+
+try {
+  await main(bench);
+} catch (error) {
+  process.stderr.write(`controller: ${error instanceof Error ? error.message : String(error)}\n`);
+  process.exit(2);
+}
+
+async function main(file: string): Promise<void> {
+  const spec = readBench(file, library);
+  const moduleFile = values.module ?? spec.controller?.module;
+  if (moduleFile === undefined) throw new Error('the bench names no controller module: give --module FILE');
+  const factory = await loadController(path.dirname(file), moduleFile);
+  const link = spec.map.links.find((one) => one.kind === 'udp');
+  if (!link) throw new Error('the bench has no UDP link');
+  const socket = createSocket({ type: 'udp4', reuseAddr: true });
+  const local = { address: link.remoteAddress ?? '127.0.0.1', port: link.remotePort ?? 0 };
+  const bench = { address: link.localAddress ?? '127.0.0.1', port: link.localPort ?? 0 };
+  let controller: ControllerModule | undefined;
+  const endpoint = new ControllerEndpoint({
+    map: spec.map,
+    link: link.name,
+    mode: values.lockstep ? 'lockstep' : 'live',
+    send: (bytes, length) => socket.send(Uint8Array.from(bytes.subarray(0, length)), bench.port, bench.address),
+    controller: {
+      step: (tick, read, write) => controller!.step(tick, read, write),
+      restart: () => controller!.restart?.(),
+    },
+  });
+  controller = factory.createController(endpoint.mirror, spec.step);
+  let heard = 0;
+  socket.on('message', (bytes) => {
+    heard = Date.now();
+    endpoint.receive(bytes, bytes.length);
+  });
+  socket.on('error', (error) => {
+    process.stderr.write(`controller: ${error.message}\n`);
+    process.exit(2);
+  });
+  await new Promise<void>((resolve) => socket.bind(local.port, local.address, resolve));
+  // A control unit on its own timer: says hello until the bench speaks, and goes on by itself when it falls silent.
+  const every = 20;
+  setInterval(() => {
+    const silence = Date.now() - heard;
+    if (heard === 0 || silence > 2000) endpoint.hello();
+    else if (!values.lockstep && silence > every) endpoint.elapse(Math.round(every / 1000 / spec.step));
+  }, every);
+  for (const signal of ['SIGINT', 'SIGTERM'] as const) process.on(signal, () => process.exit(0));
+  process.on('disconnect', () => process.exit(0));
+}
