@@ -115,7 +115,7 @@ export const gasAccumulator = store({
       usual: [0, 30],
     },
     oilConductance: { unit: 'W/K', about: 'heat between the oil and the wall', default: 20, least: 0, usual: [0, 200] },
-    ambientTemperature: { unit: 'K', about: 'temperature around it', default: 293.15, least: 220, most: 340 },
+    ambientTemperature: { unit: 'K', about: 'temperature around it', least: 220, most: 340 },
     reliefSetting: {
       unit: 'Pa',
       about: 'cracking pressure of the relief valve that protects it; 0: not watched',

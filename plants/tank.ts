@@ -30,12 +30,11 @@ export const tank = store({
     ambientPressure: {
       unit: 'Pa',
       about: 'pressure of the air around it',
-      default: 101325,
       least: 3e4,
       most: 3e5,
       usual: [7e4, 1.1e5],
     },
-    ambientTemperature: { unit: 'K', about: 'temperature around it', default: 293.15, least: 220, most: 340 },
+    ambientTemperature: { unit: 'K', about: 'temperature around it', least: 220, most: 340 },
     conductance: { unit: 'W/K', about: 'heat through its walls', default: 10, least: 0, usual: [5, 50] },
     leastLevel: { unit: '1', about: 'level that is low; 0: not watched', default: 0.15, least: 0, most: 1 },
     maximumTemperature: { unit: 'K', about: 'greatest oil temperature; 0: not watched', default: 0, least: 0 },
