@@ -49,7 +49,8 @@ export function createRing(options: RingOptions): RingHandle {
   if (!Number.isInteger(capacity) || capacity < 64 || capacity > 1 << 30 || (capacity & (capacity - 1)) !== 0) {
     throw new RangeError(`ring capacity ${capacity} bytes: a power of two between 64 and 2^30`);
   }
-  if (!(reserve >= 0 && reserve < capacity)) throw new RangeError(`ring reserve ${reserve} bytes: 0 up to less than the capacity ${capacity}`);
+  if (!(reserve >= 0 && reserve < capacity))
+    throw new RangeError(`ring reserve ${reserve} bytes: 0 up to less than the capacity ${capacity}`);
   return {
     memory: new SharedArrayBuffer(CONTROL_BYTES + capacity),
     capacity,
@@ -137,7 +138,8 @@ export class RingWriter extends RingView {
     const needed = skipped + total;
     if (length < 0 || total > this.capacity / 2) return this.refuse(false);
     const spare = droppable && !this.waits ? this.reserve : 0;
-    if (this.free() < needed + spare && !(this.waits && this.waitFor(needed))) return this.refuse(droppable && !this.waits);
+    if (this.free() < needed + spare && !(this.waits && this.waitFor(needed)))
+      return this.refuse(droppable && !this.waits);
     let start = at;
     if (skipped > 0) {
       this.i32[at >> 2] = skipped - FRAME_BYTES;

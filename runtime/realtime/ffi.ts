@@ -28,7 +28,14 @@ export interface LibC {
   getsockname(socket: number, address: Uint8Array, length: Int32Array): number;
   setsockopt(socket: number, level: number, name: number, value: Uint8Array | Int32Array, length: number): number;
   getsockopt(socket: number, level: number, name: number, value: Int32Array, length: Int32Array): number;
-  recvfrom(socket: number, into: Uint8Array, length: number, flags: number, from: Uint8Array, fromLength: Int32Array): number;
+  recvfrom(
+    socket: number,
+    into: Uint8Array,
+    length: number,
+    flags: number,
+    from: Uint8Array,
+    fromLength: Int32Array,
+  ): number;
   sendto(socket: number, bytes: Uint8Array, length: number, flags: number, to: Uint8Array, toLength: number): number;
   /** `sets`: pollfd as [socket, events | result << 16]. */
   poll(sets: Int32Array, count: number, milliseconds: number): number;
@@ -96,7 +103,8 @@ export function libc(): LibC {
       errno: () => koffi.errno(),
       addressOf: (view: ArrayBufferView) => Number(koffi.address(view)),
     };
-    for (const [name, [result, parameters]] of Object.entries(SIGNATURES)) bound[name] = library.func(name, result, parameters);
+    for (const [name, [result, parameters]] of Object.entries(SIGNATURES))
+      bound[name] = library.func(name, result, parameters);
     loaded = bound as unknown as LibC;
     return loaded;
   } catch (error) {
@@ -107,7 +115,8 @@ export function libc(): LibC {
 }
 
 const nameByNumber = new Map<number, string>();
-for (const [name, number] of Object.entries(os.constants.errno)) if (!nameByNumber.has(number)) nameByNumber.set(number, name);
+for (const [name, number] of Object.entries(os.constants.errno))
+  if (!nameByNumber.has(number)) nameByNumber.set(number, name);
 
 /** `EADDRINUSE` for 98 and so on; `errno 1234` for a number without a name here. */
 export function errnoName(number: number): string {

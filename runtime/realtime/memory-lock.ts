@@ -37,8 +37,13 @@ export function lockMemory(views: readonly ArrayBufferView[]): MemoryLock {
     else if (refused.push(`program text (${errnoName(c.errno())})`) > 3) break;
   }
   const parts = [`${megabytes(textBytes)} of program text and ${megabytes(viewBytes)} of loop data locked in memory`];
-  if (refused.length > 0) parts.push(`refused: ${[...new Set(refused)].join(', ')}; ${schedulingRights().words}; CAP_IPC_LOCK or a larger limit would help`);
-  parts.push(hasSwap() ? 'the heap is not locked and this computer swaps: turn swap off for live runs' : 'no swap in use');
+  if (refused.length > 0)
+    parts.push(
+      `refused: ${[...new Set(refused)].join(', ')}; ${schedulingRights().words}; CAP_IPC_LOCK or a larger limit would help`,
+    );
+  parts.push(
+    hasSwap() ? 'the heap is not locked and this computer swaps: turn swap off for live runs' : 'no swap in use',
+  );
   return {
     textBytes,
     viewBytes,

@@ -37,7 +37,12 @@ export interface Scheduling {
 export function enterScheduling(wish: SchedulingWish = {}): Scheduling {
   const c = libc();
   const words: string[] = [];
-  const before = { policy: c.sched_getscheduler(0), parameter: new Int32Array(1), mask: new Uint8Array(MASK_BYTES), slack: c.prctl(PR_GET_TIMERSLACK, 0, 0, 0, 0) };
+  const before = {
+    policy: c.sched_getscheduler(0),
+    parameter: new Int32Array(1),
+    mask: new Uint8Array(MASK_BYTES),
+    slack: c.prctl(PR_GET_TIMERSLACK, 0, 0, 0, 0),
+  };
   c.sched_getparam(0, before.parameter);
   const maskKnown = c.sched_getaffinity(0, MASK_BYTES, before.mask) >= 0;
 
@@ -49,7 +54,9 @@ export function enterScheduling(wish: SchedulingWish = {}): Scheduling {
       core = wish.core;
       words.push(`loop thread pinned to processor ${core}`);
     } else {
-      words.push(`loop thread not pinned: processor ${wish.core} refused (${errnoName(c.errno())}); allowed are ${allowedCores().join(', ')}`);
+      words.push(
+        `loop thread not pinned: processor ${wish.core} refused (${errnoName(c.errno())}); allowed are ${allowedCores().join(', ')}`,
+      );
     }
   }
 
@@ -60,7 +67,9 @@ export function enterScheduling(wish: SchedulingWish = {}): Scheduling {
   let policy: Scheduling['policy'] = before.policy === SCHED_FIFO ? 'SCHED_FIFO' : 'SCHED_OTHER';
   let priority = before.parameter[0]!;
   const rights = schedulingRights();
-  const wanted = wish.priority ?? (rights.niceCapability ? DEFAULT_PRIORITY : Math.min(DEFAULT_PRIORITY, rights.priorityLimit || DEFAULT_PRIORITY));
+  const wanted =
+    wish.priority ??
+    (rights.niceCapability ? DEFAULT_PRIORITY : Math.min(DEFAULT_PRIORITY, rights.priorityLimit || DEFAULT_PRIORITY));
   if (wanted > 0) {
     if (c.sched_setscheduler(0, SCHED_FIFO, Int32Array.of(wanted)) === 0) {
       policy = 'SCHED_FIFO';
@@ -95,7 +104,8 @@ export function allowedCores(): number[] {
   const mask = new Uint8Array(MASK_BYTES);
   const cores: number[] = [];
   if (libc().sched_getaffinity(0, MASK_BYTES, mask) < 0) return cores;
-  for (let core = 0; core < MASK_BYTES * 8; core += 1) if ((mask[core >> 3]! & (1 << (core & 7))) !== 0) cores.push(core);
+  for (let core = 0; core < MASK_BYTES * 8; core += 1)
+    if ((mask[core >> 3]! & (1 << (core & 7))) !== 0) cores.push(core);
   return cores;
 }
 

@@ -14,7 +14,8 @@ export class InputColumns {
       this.links = grown(this.links, new Uint16Array(2 * this.count));
       this.lengths = grown(this.lengths, new Uint32Array(2 * this.count));
     }
-    if (this.length + length > this.bytes.length) this.bytes = grown(this.bytes, new Uint8Array(2 * (this.length + length)));
+    if (this.length + length > this.bytes.length)
+      this.bytes = grown(this.bytes, new Uint8Array(2 * (this.length + length)));
     this.ticks[this.count] = tick;
     this.links[this.count] = link;
     this.lengths[this.count] = length;

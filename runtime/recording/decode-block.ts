@@ -11,7 +11,8 @@ export function decodeBlock(fields: Fields, signals: number): RecordingBlock {
       const hashes = new Int32Array(copy(fields, 'hashes', 8));
       const count = hashes.length / 2;
       const data = new Float32Array(copy(fields, 'data', 4));
-      if (data.length !== count * signals) throw new RecordingError(`rows of ${data.length} numbers for ${count} ticks of ${signals} signals`);
+      if (data.length !== count * signals)
+        throw new RecordingError(`rows of ${data.length} numbers for ${count} ticks of ${signals} signals`);
       return { kind, count, ticks: ticksOf(fields, count), hashes, data };
     }
     case 'inputs': {
@@ -26,7 +27,8 @@ export function decodeBlock(fields: Fields, signals: number): RecordingBlock {
         if (sum > bytes.length) break;
         offsets[i + 1] = sum;
       }
-      if (sum !== bytes.length || links.length !== count) throw new RecordingError('inputs whose lengths do not add up');
+      if (sum !== bytes.length || links.length !== count)
+        throw new RecordingError('inputs whose lengths do not add up');
       return { kind, count, ticks: ticksOf(fields, count), links, offsets, bytes };
     }
     case 'events': {
@@ -34,7 +36,8 @@ export function decodeBlock(fields: Fields, signals: number): RecordingBlock {
       const count = codes.length;
       const subjects = new Int32Array(copy(fields, 'subjects', 4));
       const values = new Float64Array(copy(fields, 'values', 8));
-      if (subjects.length !== count || values.length !== 3 * count) throw new RecordingError('events whose parts differ in number');
+      if (subjects.length !== count || values.length !== 3 * count)
+        throw new RecordingError('events whose parts differ in number');
       return { kind, count, ticks: ticksOf(fields, count), codes, subjects, values };
     }
     case 'snapshot':
@@ -72,7 +75,8 @@ function ticksOf(fields: Fields, count: number): Float64Array {
     if (binary(fields, 'ticks').length !== 8 * count) throw new RecordingError('ticks that do not match their number');
   }
   for (let i = 0; i < count; i += 1) {
-    if (!Number.isSafeInteger(ticks[i]!) || (i > 0 && ticks[i]! < ticks[i - 1]!)) throw new RecordingError(`tick ${ticks[i]} out of order`);
+    if (!Number.isSafeInteger(ticks[i]!) || (i > 0 && ticks[i]! < ticks[i - 1]!))
+      throw new RecordingError(`tick ${ticks[i]} out of order`);
   }
   return ticks;
 }
@@ -86,7 +90,8 @@ function binary(fields: Fields, name: string): Uint8Array {
 /** A copy that starts at a multiple of 8, for typed views. */
 function copy(fields: Fields, name: string, unit: number): ArrayBuffer {
   const bytes = binary(fields, name);
-  if (bytes.length % unit !== 0) throw new RecordingError(`field ${name} of ${bytes.length} bytes is not a multiple of ${unit}`);
+  if (bytes.length % unit !== 0)
+    throw new RecordingError(`field ${name} of ${bytes.length} bytes is not a multiple of ${unit}`);
   return bytes.slice().buffer as ArrayBuffer;
 }
 

@@ -30,13 +30,20 @@ export async function exportCsv(recording: Recording, options: ExportOptions): P
   const columns = (options.signals ?? signals.map((signal) => signal.path)).map((path) => {
     const found = signals.findIndex((signal) => signal.path === path);
     if (found < 0) {
-      const near = nearest(path, signals.map((signal) => signal.path), 3);
-      throw new RecordingError(`signal ${path} was not recorded${near.length > 0 ? `; nearest: ${near.join(', ')}` : ''}`);
+      const near = nearest(
+        path,
+        signals.map((signal) => signal.path),
+        3,
+      );
+      throw new RecordingError(
+        `signal ${path} was not recorded${near.length > 0 ? `; nearest: ${near.join(', ')}` : ''}`,
+      );
     }
     return found;
   });
   const every = options.everyTicks ?? 1;
-  if (!Number.isInteger(every) || every < 1) throw new RecordingError(`every ${every} ticks: a whole number of at least 1`);
+  if (!Number.isInteger(every) || every < 1)
+    throw new RecordingError(`every ${every} ticks: a whole number of at least 1`);
 
   let target: fs.promises.FileHandle;
   try {
@@ -45,7 +52,9 @@ export async function exportCsv(recording: Recording, options: ExportOptions): P
     throw new RecordingError(`${options.to} cannot be written: ${(error as NodeJS.ErrnoException).code}`);
   }
   try {
-    await target.write(`${['time (s)', ...columns.map((c) => quoted(`${signals[c]!.path} (${signals[c]!.unit})`))].join(',')}\n`);
+    await target.write(
+      `${['time (s)', ...columns.map((c) => quoted(`${signals[c]!.path} (${signals[c]!.unit})`))].join(',')}\n`,
+    );
     let rows = 0;
     const walk = recording.blocks();
     for (let next = walk.next(); ; next = walk.next()) {

@@ -21,7 +21,10 @@ export const LARGEST_BLOCK = 64 << 20;
 
 const signalSchema = z.object({
   // Begins with a letter: a spreadsheet takes a heading that begins with = or + for a formula.
-  path: z.string().max(500).regex(/^[\p{L}_][^\p{C}\s,"=]*$/u),
+  path: z
+    .string()
+    .max(500)
+    .regex(/^[\p{L}_][^\p{C}\s,"=]*$/u),
   unit: z.string().max(50),
   about: z.string().max(2000),
   group: z.string().max(50),
@@ -50,7 +53,9 @@ export const headerSchema = z.object({
   /** Columns of the rows. */
   signals: z.array(signalSchema).max(100_000),
   events: z.object({
-    kinds: z.array(z.object({ name: z.string(), severity: z.enum(['note', 'warning', 'alarm', 'error']), text: z.string() })),
+    kinds: z.array(
+      z.object({ name: z.string(), severity: z.enum(['note', 'warning', 'alarm', 'error']), text: z.string() }),
+    ),
     subjects: z.array(z.string()),
   }),
   /** Names of the links that inputs come from, by number. */

@@ -1,7 +1,16 @@
 import fs from 'node:fs';
 import { crc32 } from './crc32.js';
 import { decodeBlock } from './decode-block.js';
-import { type EndBlock, FRAME, headerSchema, LARGEST_BLOCK, MAGIC, type RecordingBlock, RecordingError, type RecordingHeader } from './format.js';
+import {
+  type EndBlock,
+  FRAME,
+  headerSchema,
+  LARGEST_BLOCK,
+  MAGIC,
+  type RecordingBlock,
+  RecordingError,
+  type RecordingHeader,
+} from './format.js';
 import { type Packed, unpack } from './unpack.js';
 
 /**
@@ -54,7 +63,9 @@ export class Recording {
       this.descriptor = fs.openSync(file, 'r');
     } catch (error) {
       const code = (error as NodeJS.ErrnoException).code;
-      throw new RecordingError(`recording ${file} cannot be opened: ${code}${code === 'ENOENT' ? ', there is no such file' : ''}`);
+      throw new RecordingError(
+        `recording ${file} cannot be opened: ${code}${code === 'ENOENT' ? ', there is no such file' : ''}`,
+      );
     }
     try {
       const stat = fs.fstatSync(this.descriptor);
@@ -64,11 +75,14 @@ export class Recording {
       if (magic.length < MAGIC.length || !MAGIC.subarray(0, 7).every((byte, i) => magic[i] === byte)) {
         throw new RecordingError(`${file} is not a recording of oilspring`);
       }
-      if (magic[7] !== MAGIC[7]) throw new RecordingError(`${file} has format ${magic[7]}; this version reads format ${MAGIC[7]}`);
+      if (magic[7] !== MAGIC[7])
+        throw new RecordingError(`${file} has format ${magic[7]}; this version reads format ${MAGIC[7]}`);
       const found = this.blockAt(MAGIC.length, 0);
-      if (typeof found === 'string') throw new RecordingError(`${file}: the header is not whole (${found}); nothing in it can be read`);
+      if (typeof found === 'string')
+        throw new RecordingError(`${file}: the header is not whole (${found}); nothing in it can be read`);
       const { k, n: _, ...fields } = found.fields;
-      if (k !== 'header') throw new RecordingError(`${file}: begins with a block ${JSON.stringify(k)} instead of its header`);
+      if (k !== 'header')
+        throw new RecordingError(`${file}: begins with a block ${JSON.stringify(k)} instead of its header`);
       const parsed = headerSchema.safeParse(fields);
       if (!parsed.success) {
         const issue = parsed.error.issues[0]!;
@@ -102,7 +116,12 @@ export class Recording {
       number += 1;
       if (block.kind === 'end') {
         if (at === this.bytes) return { how: 'complete', atByte: at, what: 'complete', end: block };
-        return { how: 'damaged', atByte: at, what: `${this.bytes - at} bytes behind the end, at byte ${at}`, end: block };
+        return {
+          how: 'damaged',
+          atByte: at,
+          what: `${this.bytes - at} bytes behind the end, at byte ${at}`,
+          end: block,
+        };
       }
     }
     return { how: 'ended early', atByte: at, what: `no end block: the run was cut off after block ${number - 1}` };
@@ -120,7 +139,8 @@ export class Recording {
     let lastTick = -1;
     const walk = this.blocks();
     for (let step = walk.next(); ; step = walk.next()) {
-      if (step.done) return { ending: step.value, blocks, rows, inputs, events, snapshots, firstTick, lastTick, stamps };
+      if (step.done)
+        return { ending: step.value, blocks, rows, inputs, events, snapshots, firstTick, lastTick, stamps };
       const block = step.value;
       blocks += 1;
       if (block.kind === 'rows' && block.count > 0) {
@@ -151,7 +171,8 @@ export class Recording {
     if (crc32(payload, crc32(frame.subarray(0, 4))) !== view.getUint32(4, true)) return 'the checksum does not fit';
     try {
       const fields = unpack(payload);
-      if (fields === null || typeof fields !== 'object' || Array.isArray(fields) || fields instanceof Uint8Array) return 'the contents are not a map';
+      if (fields === null || typeof fields !== 'object' || Array.isArray(fields) || fields instanceof Uint8Array)
+        return 'the contents are not a map';
       if (fields['n'] !== number) return `its number is ${JSON.stringify(fields['n'])} and not ${number}`;
       return { fields, next: at + FRAME + length };
     } catch (error) {

@@ -62,7 +62,10 @@ export class Recorder {
   ) {
     this.ring = new RingReader(ring);
     this.signals = options.signals;
-    this.blockRows = Math.max(1, Math.min(options.blockRows ?? 256, Math.floor(MOST_ROW_BYTES / (4 * Math.max(1, options.signals)))));
+    this.blockRows = Math.max(
+      1,
+      Math.min(options.blockRows ?? 256, Math.floor(MOST_ROW_BYTES / (4 * Math.max(1, options.signals)))),
+    );
     this.ticks = new Float64Array(this.blockRows);
     this.hashes = new Int32Array(2 * this.blockRows);
     this.values = new Float32Array(this.blockRows * options.signals);
@@ -123,7 +126,8 @@ export class Recorder {
   async finish(summary: Readonly<Record<string, unknown>>): Promise<void> {
     this.stop();
     const writer = this.writer;
-    while (this.drain() || (writer !== undefined && writer.failure === undefined && writer.backlog > MOST_BACKLOG)) await writer?.drained();
+    while (this.drain() || (writer !== undefined && writer.failure === undefined && writer.backlog > MOST_BACKLOG))
+      await writer?.drained();
     this.flush();
     if (writer === undefined) return;
     if (writer.failure === undefined) {
@@ -173,7 +177,8 @@ export class Recorder {
         const code = ring.i32[(at + EVENT.code) >> 2]!;
         const subject = ring.i32[(at + EVENT.subject) >> 2]!;
         this.events += 1;
-        if (this.writer !== undefined) this.eventColumns.add(tick, code, subject, ring.f64[first]!, ring.f64[first + 1]!, ring.f64[first + 2]!);
+        if (this.writer !== undefined)
+          this.eventColumns.add(tick, code, subject, ring.f64[first]!, ring.f64[first + 1]!, ring.f64[first + 2]!);
         this.options.onEvent?.(tick, code, subject, ring.f64[first]!, ring.f64[first + 1]!, ring.f64[first + 2]!);
         break;
       }
@@ -214,7 +219,8 @@ export class Recorder {
       if (this.inputColumns.count > 0) writer.add('inputs', this.inputColumns.fields());
       if (this.eventColumns.count > 0) writer.add('events', this.eventColumns.fields());
       if (this.count > 0) writer.add('rows', this.rowFields());
-      if (this.lastTick >= 0 && this.lastFlush - this.lastStamp >= (this.options.stampEvery ?? 10_000)) this.stamp(writer);
+      if (this.lastTick >= 0 && this.lastFlush - this.lastStamp >= (this.options.stampEvery ?? 10_000))
+        this.stamp(writer);
       writer.write();
     }
     this.inputColumns.clear();
@@ -225,7 +231,8 @@ export class Recorder {
   private rowFields(): Record<string, unknown> {
     const count = this.count;
     const data = new Float32Array(count * this.signals);
-    for (let i = 0; i < this.signals; i += 1) data.set(this.values.subarray(i * this.blockRows, i * this.blockRows + count), i * count);
+    for (let i = 0; i < this.signals; i += 1)
+      data.set(this.values.subarray(i * this.blockRows, i * this.blockRows + count), i * count);
     const ticks = this.ticks;
     let contiguous = true;
     for (let i = 1; i < count; i += 1) if (ticks[i] !== ticks[0]! + i) contiguous = false;

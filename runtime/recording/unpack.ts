@@ -91,7 +91,8 @@ class Reader {
 
   private take(count: number): number {
     const from = this.at;
-    if (count > this.bytes.length - from) throw new UnpackError(`ends at byte ${this.bytes.length}, in the middle of a value`);
+    if (count > this.bytes.length - from)
+      throw new UnpackError(`ends at byte ${this.bytes.length}, in the middle of a value`);
     this.at = from + count;
     return from;
   }
@@ -111,18 +112,21 @@ class Reader {
   }
 
   private array(count: number, depth: number): Packed[] {
-    if (count > this.bytes.length - this.at) throw new UnpackError(`a list of ${count} at byte ${this.at} is longer than what follows`);
+    if (count > this.bytes.length - this.at)
+      throw new UnpackError(`a list of ${count} at byte ${this.at} is longer than what follows`);
     const list: Packed[] = [];
     for (let i = 0; i < count; i += 1) list.push(this.value(depth + 1));
     return list;
   }
 
   private map(count: number, depth: number): { [key: string]: Packed } {
-    if (count * 2 > this.bytes.length - this.at) throw new UnpackError(`a map of ${count} at byte ${this.at} is longer than what follows`);
+    if (count * 2 > this.bytes.length - this.at)
+      throw new UnpackError(`a map of ${count} at byte ${this.at} is longer than what follows`);
     const map: { [key: string]: Packed } = {};
     for (let i = 0; i < count; i += 1) {
       const key = this.value(depth + 1);
-      if (typeof key !== 'string' || key === '__proto__') throw new UnpackError(`a key at byte ${this.at} is not a plain name`);
+      if (typeof key !== 'string' || key === '__proto__')
+        throw new UnpackError(`a key at byte ${this.at} is not a plain name`);
       if (Object.hasOwn(map, key)) throw new UnpackError(`key ${JSON.stringify(key)} stands twice`);
       map[key] = this.value(depth + 1);
     }
@@ -130,7 +134,8 @@ class Reader {
   }
 
   private safe(value: bigint): number {
-    if (value > BigInt(Number.MAX_SAFE_INTEGER) || value < BigInt(Number.MIN_SAFE_INTEGER)) throw new UnpackError(`${value} is beyond exact numbers`);
+    if (value > BigInt(Number.MAX_SAFE_INTEGER) || value < BigInt(Number.MIN_SAFE_INTEGER))
+      throw new UnpackError(`${value} is beyond exact numbers`);
     return Number(value);
   }
 }

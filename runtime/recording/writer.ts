@@ -72,7 +72,8 @@ export class RecordingWriter {
   add(kind: string, fields: Readonly<Record<string, unknown>>): void {
     if (this.closed) throw new RecordingError('the recording is closed');
     const payload = this.packr.pack({ n: this.blockNumber, k: kind, ...fields });
-    if (payload.length > LARGEST_BLOCK) throw new RecordingError(`a block of ${payload.length} bytes; at most ${LARGEST_BLOCK}`);
+    if (payload.length > LARGEST_BLOCK)
+      throw new RecordingError(`a block of ${payload.length} bytes; at most ${LARGEST_BLOCK}`);
     this.blockNumber += 1;
     const frame = new Uint8Array(FRAME);
     const view = new DataView(frame.buffer);
@@ -156,7 +157,9 @@ export class RecordingWriter {
 
 function writeAt(descriptor: number, bytes: Uint8Array, from: number, position: number): Promise<number> {
   return new Promise((resolve, reject) =>
-    fs.write(descriptor, bytes, from, bytes.length - from, position, (error, count) => (error ? reject(error) : resolve(count))),
+    fs.write(descriptor, bytes, from, bytes.length - from, position, (error, count) =>
+      error ? reject(error) : resolve(count),
+    ),
   );
 }
 

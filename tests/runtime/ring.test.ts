@@ -25,7 +25,10 @@ function take(ring: RingReader): { kind: number; length: number; seed: number } 
 
 type Step = { do: 'put'; length: number; droppable: boolean } | { do: 'take'; count: number } | { do: 'release' };
 const step: fc.Arbitrary<Step> = fc.oneof(
-  { weight: 4, arbitrary: fc.record({ do: fc.constant('put' as const), length: fc.nat(200), droppable: fc.boolean() }) },
+  {
+    weight: 4,
+    arbitrary: fc.record({ do: fc.constant('put' as const), length: fc.nat(200), droppable: fc.boolean() }),
+  },
   { weight: 2, arbitrary: fc.record({ do: fc.constant('take' as const), count: fc.nat(6) }) },
   { weight: 2, arbitrary: fc.record({ do: fc.constant('release' as const) }) },
 );
@@ -150,7 +153,8 @@ describe('ring', () => {
         while (reader.next()) {
           const number = reader.f64[reader.offset >> 3]!;
           expect(number).toBeGreaterThan(last);
-          for (let i = 8; i < reader.length; i += 1) if (reader.bytes[reader.offset + i] !== (number & 255)) throw new Error(`record ${number} is torn`);
+          for (let i = 8; i < reader.length; i += 1)
+            if (reader.bytes[reader.offset + i] !== (number & 255)) throw new Error(`record ${number} is torn`);
           last = number;
           got += 1;
         }

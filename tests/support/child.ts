@@ -7,12 +7,19 @@ const HOOKS = fileURLToPath(new URL('./typescript-hooks.mjs', import.meta.url));
 export const typescriptArguments: readonly string[] = ['--import', HOOKS];
 
 /** Starts `file` (a URL or path of a .ts file) in a process of its own, with standard output and error piped. */
-export function startChild(file: URL | string, argv: readonly string[] = [], nodeArguments: readonly string[] = []): ChildProcess {
+export function startChild(
+  file: URL | string,
+  argv: readonly string[] = [],
+  nodeArguments: readonly string[] = [],
+): ChildProcess {
   const path = typeof file === 'string' ? file : fileURLToPath(file);
   // NODE_OPTIONS of a test runner would change what the child's heap does.
   const environment = { ...process.env };
   delete environment['NODE_OPTIONS'];
-  return spawn(process.execPath, [...typescriptArguments, ...nodeArguments, path, ...argv], { stdio: ['pipe', 'pipe', 'pipe'], env: environment });
+  return spawn(process.execPath, [...typescriptArguments, ...nodeArguments, path, ...argv], {
+    stdio: ['pipe', 'pipe', 'pipe'],
+    env: environment,
+  });
 }
 
 export interface ChildResult {
@@ -23,7 +30,11 @@ export interface ChildResult {
 }
 
 /** Runs `file` to its end. */
-export function runChild(file: URL | string, argv: readonly string[] = [], nodeArguments: readonly string[] = []): Promise<ChildResult> {
+export function runChild(
+  file: URL | string,
+  argv: readonly string[] = [],
+  nodeArguments: readonly string[] = [],
+): Promise<ChildResult> {
   return finished(startChild(file, argv, nodeArguments));
 }
 

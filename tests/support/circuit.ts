@@ -14,8 +14,12 @@ export interface Given {
 
 /** An element of a test circuit. Throws on names that the kind does not declare and on values that are missing. */
 export function element(name: string, kind: ElementKind, given: Given = {}): ElementInstance {
-  const fill = (declared: Readonly<Record<string, { readonly default?: number }>>, values: Readonly<Record<string, number>>) => {
-    for (const key of Object.keys(values)) if (!(key in declared)) throw new Error(`${name}: no ${key} in ${kind.kind}`);
+  const fill = (
+    declared: Readonly<Record<string, { readonly default?: number }>>,
+    values: Readonly<Record<string, number>>,
+  ) => {
+    for (const key of Object.keys(values))
+      if (!(key in declared)) throw new Error(`${name}: no ${key} in ${kind.kind}`);
     return Object.fromEntries(
       Object.entries(declared).map(([key, { default: standard }]) => {
         const value = values[key] ?? standard;
@@ -48,9 +52,16 @@ export class Bench {
   private readonly commandAt = new Map<string, number>();
   private readonly energyAtStart: number;
 
-  constructor(elements: readonly ElementInstance[], settings: { step?: number; substeps?: number; net?: boolean } = {}) {
+  constructor(
+    elements: readonly ElementInstance[],
+    settings: { step?: number; substeps?: number; net?: boolean } = {},
+  ) {
     this.circuit = buildCircuit({ name: 'test', portKinds, elements });
-    this.plant = Plant.alone(this.circuit, { step: settings.step ?? 1e-3, substeps: settings.substeps ?? 4, net: settings.net ?? true });
+    this.plant = Plant.alone(this.circuit, {
+      step: settings.step ?? 1e-3,
+      substeps: settings.substeps ?? 4,
+      net: settings.net ?? true,
+    });
     const { plant, circuit } = this;
     circuit.states.forEach((slot, i) => {
       this.at.set(slot.path, () => plant.y[i]!);
