@@ -1,8 +1,8 @@
 import type { MessageMap } from '../bridge/message-map.js';
+import type { FluidKind } from '../plants/fluids.js';
 import type {
   CircuitSpec,
   ElementKind,
-  ParameterDeclaration,
   PortKinds,
   Position,
   Problem,
@@ -18,21 +18,6 @@ export interface Catalogue {
   readonly elements: readonly ElementKind[];
   readonly instruments: readonly InstrumentKind[];
   readonly fluids: readonly FluidKind[];
-}
-
-/** A kind of fluid that a bench file may declare. */
-export interface FluidKind {
-  readonly kind: string;
-  readonly about: string;
-  readonly source: string;
-  readonly parameters: Readonly<Record<string, ParameterDeclaration>>;
-  /** The numbers that elements see as `fluid`, from SI parameters. Plain code at build time. */
-  readonly values: (parameter: Readonly<Record<string, number>>) => Readonly<Record<string, number>>;
-  readonly examine?: (parameter: Readonly<Record<string, number>>) => readonly {
-    readonly parameter: string;
-    readonly what: string;
-    readonly remedy: string;
-  }[];
 }
 
 /** A bench as its file says it, checked, in SI and ticks. Plain data. */
@@ -142,7 +127,9 @@ export interface ControllerSpec {
 }
 
 export interface RecordSpec {
-  /** Paths of the signals to record in every row, in the order of the signal list. */
+  /** Patterns of the signals to record in every row, as the file has them; `*` for all. */
+  readonly patterns: readonly string[];
+  /** What they match among `BenchSpec.signals`, in that order. */
   readonly signals: readonly string[];
   /** Ticks between rows. */
   readonly every: number;

@@ -9,7 +9,7 @@ import { readAmbient, readBudgets, readController, readLife, readPath, readRecor
 import { Section } from './section.js';
 import { SignalList } from './signal-list.js';
 import { readSource } from './source.js';
-import { checkReliefSettings, readWatched, reliefOfSide, reliefValves } from './watched.js';
+import { checkReliefSettings, fillReliefSettings, readWatched, reliefOfSide, reliefValves } from './watched.js';
 
 /** Longest and shortest tick, s. */
 const steps = { least: 1e-4, most: 0.02 };
@@ -38,10 +38,11 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
   const budgets = readBudgets(top);
 
   const names = new Names(problems);
-  const elements = readElements(top, catalogue, names, readFluids(top, catalogue, ambient), ambient);
+  let elements = readElements(top, catalogue, names, readFluids(top, catalogue, ambient), ambient);
   checkCircuit(top, elements);
 
   const signals = new SignalList();
+  signals.addRuntime();
   signals.addElements(elements);
   for (const key of ['stores', 'branches'] as const) {
     for (const unread of namesBelow(top, key))
@@ -56,6 +57,7 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
   const valves = reliefValves(elements);
   const sides = reliefOfSide(elements, valves);
   checkReliefSettings(top, elements, valves, sides);
+  elements = fillReliefSettings(elements, sides);
   const watched = readWatched(top, elements, signals, sides, ambient);
   const life = readLife(top, step);
   const duty = readPath(top, 'duty', root, file, 'scenarios/round.yaml');

@@ -16,7 +16,7 @@ export interface ReadElement extends ElementInstance {
 }
 
 /** Names that would clash with the runtime's own groups of signals. */
-const reserved = new Set(['run', 'timing', 'ledger', 'link', 'links', 'watch', 'script']);
+const reserved = new Set(['run', 'timing', 'ledger', 'link', 'links', 'watch', 'scenario', 'life', 'exchange']);
 
 /** Checks names of stores, branches, instruments, links and messages, which share one space of paths. */
 export class Names {
@@ -82,15 +82,9 @@ export function readFluids(
     const read = readParameters(section, kind.parameters, ambient);
     section.finish(read.keys);
     if (!read.complete) continue;
-    const remarks = kind.examine?.(read.values) ?? [];
-    for (const remark of remarks) {
-      section.problems.add(
-        read.places.get(remark.parameter) ?? section.where,
-        section.inner(remark.parameter),
-        remark.what,
-        remark.remedy,
-      );
-    }
+    const remarks = kind.examine(read.values);
+    for (const { path, what, remedy } of remarks)
+      section.problems.add(read.places.get(path) ?? section.where, section.inner(path), what, remedy);
     if (remarks.length === 0) fluids.set(name, kind.values(read.values));
   }
   return fluids;
@@ -102,7 +96,12 @@ export function kindOf<K extends { readonly kind: string }>(
   kinds: readonly K[],
   what: string,
 ): K | undefined {
-  const said = section.placed('is', { required: true }, kinds[0]?.kind ?? what);
+  if (!section.has('is')) {
+    section.skip('is');
+    const some = kinds.slice(0, 6).map((candidate) => candidate.kind);
+    return section.fail('is', 'missing', `add is: and a kind of ${what}, such as ${some.join(', ')}`);
+  }
+  const said = section.placed('is', {}, kinds[0]?.kind ?? what);
   if (!said) return undefined;
   const kind = kinds.find((candidate) => candidate.kind === said.text);
   if (kind) return kind;

@@ -65,6 +65,21 @@ export function declareInstruments(top: Section, catalogue: Catalogue, names: Na
     }
   }
   for (const { one } of waiting) signals.unread.add(one.name);
+  for (const { name, kind, said } of pending) {
+    const sensed = [...said].find(([input]) => kind.inputs[input]!.anyUnit);
+    const inputUnit = sensed && inputSignal({ name, kind }, sensed[0], sensed[1], signals)?.unit;
+    for (const [command, { unit, about, least, most }] of Object.entries(kind.commands ?? {})) {
+      if (unit === 'input' && inputUnit === undefined) continue;
+      signals.add({
+        path: `${name}.${command}`,
+        group: 'command',
+        unit: unit === 'input' ? inputUnit! : unit,
+        about,
+        ...(least === undefined ? {} : { least }),
+        ...(most === undefined ? {} : { most }),
+      });
+    }
+  }
   for (const one of pending) addCommands(one, signals);
   return pending;
 }
@@ -105,11 +120,18 @@ function addCommands(one: Pending, signals: SignalList): void {
 }
 
 /** As `resolve`, without complaints. */
-function inputSignal(one: Pending, input: string, said: Placed, signals: SignalList): SignalInfo | undefined {
+function inputSignal(
+  one: Pick<Pending, 'name' | 'kind'>,
+  input: string,
+  said: Placed,
+  signals: SignalList,
+): SignalInfo | undefined {
   const exact = signals.find(said.text);
   if (exact || said.text.includes('.')) return exact;
   const declaration = one.kind.inputs[input];
-  const candidates = signals.of(said.text).filter((info) => declaration?.anyUnit || info.unit === declaration?.unit);
+  const fitting = signals.of(said.text).filter((info) => declaration?.anyUnit || info.unit === declaration?.unit);
+  const value = fitting.filter((info) => info.path === `${said.text}.value`);
+  const candidates = value.length > 0 ? value : fitting;
   return candidates.length === 1 ? candidates[0] : undefined;
 }
 

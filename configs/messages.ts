@@ -30,6 +30,8 @@ type Places = Map<string, Position>;
  */
 export interface PendingMessages {
   readonly links: readonly LinkSpec[];
+  /** Also those with problems of their own. */
+  readonly linkNames: readonly string[];
   readonly places: Places;
   readonly messages: readonly {
     readonly section: Section;
@@ -41,7 +43,9 @@ export interface PendingMessages {
 export function declareMessages(top: Section, names: Names, signals: SignalList): PendingMessages {
   const links: LinkSpec[] = [];
   const places: Places = new Map();
+  const linkNames: string[] = [];
   for (const [name, section] of top.sections('links')) {
+    linkNames.push(name);
     names.take(name, section.where, section.path);
     places.set(section.path, section.where);
     const link = readLink(name, section);
@@ -52,7 +56,11 @@ export function declareMessages(top: Section, names: Names, signals: SignalList)
     return { name, section, signals: section.sections('signals', { required: true }) };
   });
   for (const { name, section, signals: fields } of messages) {
-    if (section.peek('direction') !== 'received') continue;
+    const direction = section.peek('direction');
+    if (direction !== 'received') {
+      if (direction !== 'sent') signals.unread.add(name);
+      continue;
+    }
     for (const [field, inner] of fields) {
       const target = signals.find(inner.peek('to') ?? '');
       const unit = target?.unit ?? unitOrUndefined(inner.peek('unit') ?? '1');
@@ -66,7 +74,7 @@ export function declareMessages(top: Section, names: Names, signals: SignalList)
         });
     }
   }
-  return { links, places, messages };
+  return { links, linkNames, places, messages };
 }
 
 function unitOrUndefined(text: string): string | undefined {
@@ -87,9 +95,10 @@ export function finishMessages(
   const places: Places = new Map(pending.places);
   const before = top.problems.count;
   const messages = pending.messages.map((one) =>
-    readMessage(one.name, one.section, one.signals, pending.links, step, signals, drivers, places),
+    readMessage(one.name, one.section, one.signals, pending, step, signals, drivers, places),
   );
   const map: MessageMap = { links: pending.links, messages: messages.filter((message) => message !== undefined) };
+  signals.addCounts(map);
   // What is wrong with the map as a map is said once the parts are right: before that it would say things twice.
   if (top.problems.count === before) {
     for (const problem of examineMap(map)) {
@@ -104,7 +113,7 @@ function readMessage(
   name: string,
   section: Section,
   fields: readonly [string, Section][],
-  links: readonly LinkSpec[],
+  pending: PendingMessages,
   step: number,
   signals: SignalList,
   drivers: Drivers,
@@ -113,7 +122,7 @@ function readMessage(
   places.set(section.path, section.where);
   const about = section.text('about') ?? '';
   const direction = section.choice('direction', ['sent', 'received'] as const, { required: true });
-  const link = readLinkName(section, links);
+  const link = readLinkName(section, pending.links, pending.linkNames);
   const can = link !== undefined && link.kind !== 'udp';
   const extended = section.flag('extended') ?? false;
   const identifier = section.whole(
@@ -173,33 +182,20 @@ function readMessage(
   };
 }
 
-function readLinkName(section: Section, links: readonly LinkSpec[]): LinkSpec | undefined {
+function readLinkName(section: Section, links: readonly LinkSpec[], names: readonly string[]): LinkSpec | undefined {
   const said = section.text('link');
   if (said === undefined) {
-    if (links.length === 1 && !section.has('link')) return links[0];
-    if (!section.has('link'))
-      section.fail(
-        'link',
-        'missing',
-        links.length === 0
-          ? 'declare a link under links:'
-          : `add link: with one of ${links.map((one) => one.name).join(', ')}`,
-      );
-    return undefined;
-  }
-  const link = links.find((one) => one.name === said);
-  return (
-    link ??
-    section.fail(
+    if (section.has('link')) return undefined;
+    if (names.length === 1) return links[0];
+    return section.fail(
       'link',
-      'unknown link',
-      suggestion(
-        said,
-        links.map((one) => one.name),
-      ),
-      { value: shown(said) },
-    )
-  );
+      'missing',
+      names.length === 0 ? 'declare a link under links:' : `add link: with one of ${names.join(', ')}`,
+    );
+  }
+  if (!names.includes(said))
+    return section.fail('link', 'unknown link', suggestion(said, names), { value: shown(said) });
+  return links.find((one) => one.name === said);
 }
 
 function readProtection(section: Section): Protection | undefined {
@@ -242,6 +238,7 @@ function readSignal(
   const type = section.choice('type', wireTypes) ?? (names ? 'u8' : 'f32');
   const scale = section.quantity('scale', { unit: '1' }) ?? 1;
   const offset = section.quantity('offset', { unit: '1' }) ?? 0;
+  section.skip('range');
   const range = scaling && readRange(section, unit, names);
   const substitute = sent ? 0 : scaling && readSubstitute(section, unit, names);
   const layout = can ? readCanLayout(section, scale, offset) : undefined;

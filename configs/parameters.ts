@@ -3,7 +3,7 @@ import type { Ambient } from './bench-spec.js';
 import { parseQuantity, shown, splitConditions } from './quantity.js';
 import type { Section } from './section.js';
 import type { Scalar } from './source.js';
-import { formatQuantity, parseUnit, sameDimension, tradeUnit } from './units.js';
+import { formatQuantity, tradeUnit } from './units.js';
 
 export type Declarations = Readonly<Record<string, ParameterDeclaration>>;
 
@@ -28,12 +28,14 @@ export function readParameters(section: Section, declared: Declarations, ambient
   const values: Record<string, number> = {};
   const places = new Map<string, Position>();
   const ranges = rangeKeys(declared);
+  const attempted = new Set<string>();
   const before = section.problems.count;
 
   for (const [key, [least, most]] of ranges) {
     if (!section.has(key) || Object.hasOwn(declared, key)) continue;
     const declaration = declared[least]!;
     const range = section.range(key, { unit: declaration.unit, difference: declaration.difference });
+    attempted.add(least).add(most);
     if (!range) continue;
     values[least] = range.least;
     values[most] = range.most;
@@ -47,7 +49,7 @@ export function readParameters(section: Section, declared: Declarations, ambient
     }
   }
   for (const [name, declaration] of Object.entries(declared)) {
-    if (Object.hasOwn(values, name) || section.has(name)) continue;
+    if (Object.hasOwn(values, name) || section.has(name) || attempted.has(name)) continue;
     const given = declaration.default ?? ambientValue(name, declaration, ambient);
     if (given !== undefined) values[name] = given;
     else
@@ -129,14 +131,14 @@ function conditionTarget(name: string, condition: string, declared: Declarations
 }
 
 /** `range` for least and most, `speedRange` for leastSpeed and mostSpeed. */
-function rangeKeys(declared: Declarations): Map<string, readonly [string, string]> {
+export function rangeKeys(declared: Declarations): Map<string, readonly [string, string]> {
   const found = new Map<string, readonly [string, string]>();
   for (const name of Object.keys(declared)) {
     if (!name.startsWith('least')) continue;
     const rest = name.slice('least'.length);
     const most = `most${rest}`;
     if (!Object.hasOwn(declared, most)) continue;
-    if (!sameDimension(parseUnit(declared[name]!.unit).dimension, parseUnit(declared[most]!.unit).dimension)) continue;
+    if (declared[name]!.unit !== declared[most]!.unit) continue;
     found.set(rest === '' ? 'range' : `${rest.charAt(0).toLowerCase()}${rest.slice(1)}Range`, [name, most]);
   }
   return found;

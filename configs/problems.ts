@@ -5,6 +5,8 @@ export class Problems {
   readonly all: Problem[] = [];
   /** Not wrong, but worth a look: values outside what data sheets usually say. */
   readonly remarks: Problem[] = [];
+  /** Files in the order in which they were read. */
+  readonly files: string[] = [];
 
   add(
     where: Position | undefined,
@@ -32,7 +34,7 @@ export class Problems {
 
   /** Throws a BuildError with all problems in the order of the file. */
   throwIfAny(): void {
-    if (this.all.length > 0) throw new BuildError(sorted(this.all));
+    if (this.all.length > 0) throw new BuildError(sorted(this.all, this.files));
   }
 }
 
@@ -53,9 +55,9 @@ function problem(
   };
 }
 
-/** By file in order of appearance, then line and column; problems without a place last. */
-export function sorted(problems: readonly Problem[]): Problem[] {
-  const files = [...new Set(problems.map((entry) => entry.where?.file))];
+/** By file in the order given, others behind as they appear, then line and column; problems without a place last. */
+export function sorted(problems: readonly Problem[], first: readonly string[] = []): Problem[] {
+  const files: unknown[] = [...new Set([...first, ...problems.map((entry) => entry.where?.file)])];
   const rank = (entry: Problem) => (entry.where === undefined ? files.length : files.indexOf(entry.where.file));
   return [...problems].sort(
     (a, b) =>

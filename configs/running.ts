@@ -95,6 +95,7 @@ export function readRecord(top: Section, step: number, signals: SignalList): Rec
   const namedPeaks = section?.texts('peaks');
   const every = (section && checkedTicks(section, 'every', step, { least: 1 })) ?? 1;
   const record = {
+    patterns: named?.map((one) => one.text) ?? ['*'],
     signals: section && named ? signals.match(section, 'signals', named) : signals.all.map((info) => info.path),
     every,
     peaks: section && namedPeaks ? signals.match(section, 'peaks', namedPeaks) : usualPeaks(signals),

@@ -42,6 +42,7 @@ export class Section {
   }
 
   inner(key: string): string {
+    if (key === '') return this.path;
     return this.path === '' ? key : `${this.path}.${key}`;
   }
 

@@ -1,3 +1,6 @@
+import { messageCounts } from '../bridge/examine-map.js';
+import type { MessageMap } from '../bridge/message-map.js';
+import { linkCounts } from '../bridge/udp-link.js';
 import type { SignalGroup, SignalInfo } from '../runtime/contract.js';
 import type { ReadElement } from './elements.js';
 import { shown } from './quantity.js';
@@ -24,6 +27,51 @@ export class SignalList {
   /** All signals of an element, message or instrument. */
   of(name: string): SignalInfo[] {
     return this.all.filter((info) => info.path.startsWith(`${name}.`));
+  }
+
+  /** What the runtime itself tells: life, scenario, ledger. */
+  addRuntime(): void {
+    const add = (path: string, unit: string, about: string, group: SignalGroup) =>
+      this.add({ path, unit, about, group });
+    add('life.supply', '1', '1 while the controller has its supply', 'run');
+    add('life.key', '1', '1 while the key is on', 'run');
+    add('scenario.time', 's', 'time since tick 0', 'run');
+    add('scenario.step', '1', 'steps of the timeline done', 'run');
+    add('scenario.targetSpeed', 'm/s', 'speed that the driver is to follow', 'run');
+    add('scenario.targetSpeedAhead', 'm/s', 'the same, a preview time ahead', 'run');
+    add('scenario.remaining', 's', 'time to the end of the scenario', 'run');
+    add('ledger.supply', 'W', 'power that comes in from outside', 'ledger');
+    add('ledger.leaving', 'W', 'dissipated power that leaves the circuit', 'ledger');
+    add('ledger.stored', 'J', 'energy stored in all elements', 'ledger');
+    add('ledger.residual', 'J', 'what the energy balance leaves over', 'ledger');
+    add('ledger.turnover', 'J', 'largest energy that passed through any one branch', 'ledger');
+  }
+
+  /** The counts that links and messages keep of themselves. */
+  addCounts(map: MessageMap): void {
+    for (const link of map.links) {
+      for (const [count, about] of Object.entries(linkCounts))
+        this.add({ path: `${link.name}.${count}`, unit: '1', about, group: 'link' });
+      this.add({
+        path: `${link.name}.oneStepShare`,
+        unit: '1',
+        about: 'share of the used messages that answer the tick just before',
+        group: 'link',
+      });
+    }
+    for (const message of map.messages) {
+      for (const count of messageCounts) {
+        const ofSender = count === 'sent' || count === 'unsendable';
+        if (ofSender === (message.direction === 'sent')) {
+          this.add({
+            path: `${message.name}.${count}`,
+            unit: count === 'age' ? 's' : '1',
+            about: `${count} of this message`,
+            group: 'link',
+          });
+        }
+      }
+    }
   }
 
   addElements(elements: readonly ReadElement[]): void {
@@ -66,7 +114,10 @@ export class SignalList {
     if (this.unread.has(owner)) return undefined;
     let found = this.find(said.text);
     if (!found && !said.text.includes('.')) {
-      const candidates = this.of(said.text).filter((info) => usable(info) && unitFits(info));
+      const fitting = this.of(said.text).filter((info) => usable(info) && unitFits(info));
+      // What a sensor or stage says is its `value`, whatever else it tells.
+      const value = fitting.filter((info) => info.path === `${said.text}.value`);
+      const candidates = value.length > 0 ? value : fitting;
       if (candidates.length > 1) {
         return fail(
           'names more than one signal',
@@ -97,7 +148,10 @@ export class SignalList {
     for (const pattern of patterns) {
       const test = globTest(pattern.text);
       const hits = this.all.filter((info) => test(info.path));
-      if (hits.length === 0 && !this.unread.has(pattern.text.split('.')[0]!)) {
+      const mayBeUnread = pattern.text.includes('*')
+        ? this.unread.size > 0
+        : this.unread.has(pattern.text.split('.')[0]!);
+      if (hits.length === 0 && !mayBeUnread) {
         const remedy = pattern.text.includes('*')
           ? 'check the pattern against the list of signals'
           : suggestion(

@@ -24,6 +24,8 @@ export interface Scalar {
   readonly value: string | number | boolean | null;
   /** As written, without quotes. */
   readonly text: string;
+  /** As it stands in the file, with quotes and folds, from `where` on; absent where the file says nothing. */
+  readonly raw?: string;
   readonly where: Position;
 }
 export interface List {
@@ -81,6 +83,7 @@ export function readSource(path: string, problems: Problems, files: Files = disk
       return undefined;
     }
     seen.add(file);
+    problems.files.push(file);
     let text: string | undefined;
     try {
       text = files.read(file);
@@ -199,8 +202,14 @@ export function parseText(text: string, file: string, problems: Problems): Mappi
     );
     return undefined;
   }
-  for (const error of [...document.errors, ...document.warnings]) {
-    problems.add(at(error.pos[0]), 'yaml', yamlMessage(error.code, error.message), yamlRemedy(error.code));
+  // What follows the first syntax error is mostly its echo.
+  for (const error of document.errors.length > 0 ? document.errors.slice(0, 1) : document.warnings) {
+    problems.add(
+      at(error.pos[0]),
+      'yaml',
+      yamlMessage(error.code, error.message),
+      yamlRemedy(error.code, error.message),
+    );
   }
   if (document.errors.length > 0) return undefined;
   const contents = document.contents;
@@ -212,17 +221,21 @@ export function parseText(text: string, file: string, problems: Problems): Mappi
     problems.add(start, 'file', 'not a mapping', 'write `key: value` lines');
     return undefined;
   }
-  return new Converter(file, at, problems).mapping(contents, '', 0);
+  return new Converter(file, at, problems, text).mapping(contents, '', 0);
 }
 
 function yamlMessage(code: string, message: string): string {
+  if (/call stack/i.test(message)) return 'nested too deep';
   if (code === 'MULTIPLE_DOCS') return 'more than one document in the file';
+  if (code === 'MULTILINE_IMPLICIT_KEY') return 'a line that is no `key: value`';
   const line = message.split('\n')[0]!.replace(/\.$/, '');
   return line.charAt(0).toLowerCase() + line.slice(1);
 }
 
-function yamlRemedy(code: string): string {
+function yamlRemedy(code: string, message: string): string {
+  if (/call stack/i.test(message)) return `nest at most ${deepest} levels`;
   if (code === 'MULTIPLE_DOCS') return 'put it into a file of its own and include that';
+  if (code === 'MULTILINE_IMPLICIT_KEY') return 'check the colon and the space behind it';
   if (code === 'TAB_AS_INDENT') return 'indent with spaces';
   if (code === 'TAG_RESOLVE_FAILED') return 'leave the tag away';
   return 'check indentation, colons, quotes and brackets near here';
@@ -233,6 +246,7 @@ class Converter {
     private readonly file: string,
     private readonly at: (offset: number | undefined) => Position,
     private readonly problems: Problems,
+    private readonly source: string,
   ) {}
 
   mapping(node: YAMLMap, path: string, depth: number): Mapping {
@@ -290,7 +304,8 @@ class Converter {
       const value = node.value;
       if (value === null) return { kind: 'scalar', value: null, text: '', where };
       if (typeof value === 'string' || typeof value === 'number' || typeof value === 'boolean') {
-        return { kind: 'scalar', value, text: node.source ?? String(value), where };
+        const raw = node.range ? { raw: this.source.slice(node.range[0], node.range[1]) } : {};
+        return { kind: 'scalar', value, text: node.source ?? String(value), ...raw, where };
       }
     }
     this.problems.add(

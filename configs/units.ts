@@ -39,6 +39,18 @@ const atomPattern = /^([A-Za-zµμΩ°%‰]+|1(?![\d.]))(\([ag]\))?(?:\^?(-?\d+(
 
 /** Parses a unit expression. A slash takes one factor; more than one goes into parentheses. Throws UnitError. */
 export function parseUnit(text: string): Unit {
+  const known = cache.get(text);
+  if (known) return known;
+  const unit = parse(text);
+  if (cache.size < mostCached) cache.set(text, unit);
+  return unit;
+}
+
+/** The units of declarations are asked for again and again. */
+const cache = new Map<string, Unit>();
+const mostCached = 1000;
+
+function parse(text: string): Unit {
   const trimmed = text.trim();
   if (trimmed.length > 80) throw new UnitError('unit too long to be one', 'write a unit such as J/(kg K)');
   const plain = trimmed

@@ -29,6 +29,8 @@ const levels: readonly WatchLevel[] = [
 /** Parameter of a relief valve and of a store that the checks look for. */
 export const crackingParameter = 'cracking';
 export const maximumParameter = 'maximumAllowable';
+/** A store's own statement of the relief setting of its side; filled in from the relief valve when left out. */
+export const reliefParameter = 'reliefSetting';
 
 /** Warn when a pressure is within this share of its relief setting, or will be there within this time, s. */
 const usualVicinity = 0.05;
@@ -154,6 +156,19 @@ export function checkReliefSettings(
       );
     }
   }
+}
+
+/** Stores that state a relief setting but leave it out of the file get that of the relief valve of their side. */
+export function fillReliefSettings(
+  elements: readonly ReadElement[],
+  sides: ReadonlyMap<string, ReliefValve>,
+): ReadElement[] {
+  return elements.map((element) => {
+    const side = sides.get(element.name);
+    if (!side || !Object.hasOwn(element.kind.parameters, reliefParameter) || element.places.has(reliefParameter))
+      return element;
+    return { ...element, parameters: { ...element.parameters, [reliefParameter]: side.setting } };
+  });
 }
 
 export function readWatched(

@@ -30,7 +30,15 @@ describe('a right bench file', () => {
   });
 
   it('has its elements in order, stores first, with defaults and short forms resolved', () => {
-    expect(bench.circuit.elements.map((one) => one.name)).toEqual(['highAccumulator', 'highLine', 'lowLine', 'propShaft', 'isolation', 'mainRelief', 'pumpMotor']);
+    expect(bench.circuit.elements.map((one) => one.name)).toEqual([
+      'highAccumulator',
+      'highLine',
+      'lowLine',
+      'propShaft',
+      'isolation',
+      'mainRelief',
+      'pumpMotor',
+    ]);
     expect(element('highAccumulator').parameters).toEqual({
       volume: 0.05,
       precharge: 15101325,
@@ -43,7 +51,12 @@ describe('a right bench file', () => {
     expect(element('highLine').start).toEqual({ pressure: 20101325, temperature: 313.15 });
     expect(element('highLine').fluid).toEqual({ air: 0.005 });
     expect(element('highLine').where).toEqual({ file: 'bench.yaml', line: 11, column: 3 });
-    expect(element('mainRelief').parameters).toEqual({ cracking: 33101325, fullFlow: 34601325, fullFlowRate: 0.2 / 60, hysteresis: 1e5 });
+    expect(element('mainRelief').parameters).toEqual({
+      cracking: 33101325,
+      fullFlow: 34601325,
+      fullFlowRate: 0.2 / 60,
+      hysteresis: 1e5,
+    });
   });
 
   it('has its connections, ratios on shafts', () => {
@@ -56,15 +69,35 @@ describe('a right bench file', () => {
 
   it('has its instruments, with parameters in the unit of what they sense', () => {
     const [sensor, stage] = bench.instruments;
-    expect(sensor).toMatchObject({ name: 'highPressureSensor', parameters: { least: 101325, most: 40101325, lag: 0.002 }, inputs: { of: 'highLine.pressure' } });
+    expect(sensor).toMatchObject({
+      name: 'highPressureSensor',
+      parameters: { least: 101325, most: 40101325, lag: 0.002 },
+      inputs: { of: 'highLine.pressure' },
+    });
     expect(stage).toMatchObject({ inputs: { request: 'requests.valve' }, drives: { output: 'isolation.opening' } });
     expect(bench.signals.find((info) => info.path === 'highPressureSensor.value')!.unit).toBe('Pa');
   });
 
   it('has its message map in ticks and wire units', () => {
     const [sensors, requests] = bench.map.messages;
-    expect(sensors).toMatchObject({ link: 'powertrain', direction: 'sent', identifier: 1, every: 10, phase: 2, trigger: 'cyclic', outOfRange: 'saturate' });
-    expect(sensors!.signals[0]).toMatchObject({ path: 'highPressureSensor.value', unitScale: 1e5, unitOffset: 101325, type: 'u16', scale: 0.01, least: 0, most: 400 });
+    expect(sensors).toMatchObject({
+      link: 'powertrain',
+      direction: 'sent',
+      identifier: 1,
+      every: 10,
+      phase: 2,
+      trigger: 'cyclic',
+      outOfRange: 'saturate',
+    });
+    expect(sensors!.signals[0]).toMatchObject({
+      path: 'highPressureSensor.value',
+      unitScale: 1e5,
+      unitOffset: 101325,
+      type: 'u16',
+      scale: 0.01,
+      least: 0,
+      most: 400,
+    });
     expect(sensors!.signals[1]).toMatchObject({ unit: 'rpm', least: -4000, most: 4000, type: 'f32' });
     expect(requests).toMatchObject({ direction: 'received', timeout: 50, outOfRange: 'refuse' });
     expect(requests!.signals.map((signal) => [signal.path, signal.substitute, signal.type])).toEqual([
@@ -86,7 +119,9 @@ describe('a right bench file', () => {
     expect(high.relief).toEqual({ valve: 'mainRelief', setting: 33101325 });
     expect(watched.get('highAccumulator.pressure')!.relief).toEqual({ valve: 'mainRelief', setting: 33101325 });
     expect(watched.get('highAccumulator.pressure')!.limits.map((limit) => limit.level)).toEqual(['below precharge']);
-    expect(watched.get('lowLine.pressure')).toMatchObject({ limits: [{ level: 'below least inlet', setting: 3e5, from: 'watch' }] });
+    expect(watched.get('lowLine.pressure')).toMatchObject({
+      limits: [{ level: 'below least inlet', setting: 3e5, from: 'watch' }],
+    });
     expect(watched.get('lowLine.pressure')!.relief).toBeUndefined();
   });
 
@@ -132,14 +167,25 @@ describe('a bench in several files', () => {
     const whole = read(smallBench);
     const bench = readBench('truck/bench.yaml', catalogue, memoryFiles(parts));
     expect(bench.map).toEqual(whole.map);
-    expect(bench.circuit.elements.map(({ where: _where, ...rest }) => rest)).toEqual(whole.circuit.elements.map(({ where: _where, ...rest }) => rest));
+    expect(bench.circuit.elements.map(({ where: _where, ...rest }) => rest)).toEqual(
+      whole.circuit.elements.map(({ where: _where, ...rest }) => rest),
+    );
     expect(bench.circuit.elements[0]!.where).toEqual({ file: 'truck/parts/circuit.yaml', line: 2, column: 3 });
-    expect(bench.sources.map((source) => source.name)).toEqual(['bench.yaml', 'parts/circuit.yaml', 'parts/instruments.yaml', 'messages.yaml']);
+    expect(bench.sources.map((source) => source.name)).toEqual([
+      'bench.yaml',
+      'parts/circuit.yaml',
+      'parts/instruments.yaml',
+      'messages.yaml',
+    ]);
   });
 
   it('reads again from the texts that it carries', () => {
     const bench = readBench('truck/bench.yaml', catalogue, memoryFiles(parts));
-    const again = readBench('bench.yaml', catalogue, memoryFiles(Object.fromEntries(bench.sources.map((source) => [source.name, source.text]))));
+    const again = readBench(
+      'bench.yaml',
+      catalogue,
+      memoryFiles(Object.fromEntries(bench.sources.map((source) => [source.name, source.text]))),
+    );
     expect(again.map).toEqual(bench.map);
     expect(again.watched).toEqual(bench.watched);
   });
@@ -148,7 +194,9 @@ describe('a bench in several files', () => {
     const folder = mkdtempSync(join(tmpdir(), 'bench-'));
     try {
       writeFileSync(join(folder, 'bench.yaml'), parts['truck/bench.yaml'].replace('[parts, messages.yaml]', 'rest'));
-      expect(() => readBench(join(folder, 'bench.yaml'), catalogue)).toThrow(`${join(folder, 'bench.yaml')}:1:10 include: no such file, ${join(folder, 'rest')}, check the name`);
+      expect(() => readBench(join(folder, 'bench.yaml'), catalogue)).toThrow(
+        `${join(folder, 'bench.yaml')}:1:10 include: no such file, ${join(folder, 'rest')}, check the name`,
+      );
       writeFileSync(join(folder, 'rest'), smallBench.slice(smallBench.indexOf('stores:'), wires));
       expect(readBench(join(folder, 'bench.yaml'), catalogue).name).toBe('small circuit');
     } finally {

@@ -1,5 +1,6 @@
-import type { Catalogue, FluidKind } from '../../configs/bench-spec.js';
+import type { Catalogue } from '../../configs/bench-spec.js';
 import { branch, store } from '../../plants/define.js';
+import type { FluidKind } from '../../plants/fluids.js';
 import { portKinds } from '../../plants/ports.js';
 import type { InstrumentKind } from '../../runtime/instrument.js';
 
@@ -22,8 +23,21 @@ const volume = store({
     temperature: { unit: 'K', about: 'oil temperature' },
   },
   limits: [
-    { reading: 'pressure', side: 'above', level: 'above maximum', parameter: 'maximumAllowable', meaning: 'a pipe may burst' },
-    { reading: 'pressure', side: 'above', level: 'above 1.1 maximum', parameter: 'maximumAllowable', share: 1.1, meaning: 'take it out of service' },
+    {
+      reading: 'pressure',
+      side: 'above',
+      level: 'above maximum',
+      parameter: 'maximumAllowable',
+      meaning: 'a pipe may burst',
+    },
+    {
+      reading: 'pressure',
+      side: 'above',
+      level: 'above 1.1 maximum',
+      parameter: 'maximumAllowable',
+      share: 1.1,
+      meaning: 'take it out of service',
+    },
   ],
   efforts() {},
 });
@@ -44,10 +58,20 @@ const accumulator = store({
     maximumAllowable: { unit: 'Pa', about: 'maximum allowable pressure PS', default: 0 },
   },
   starts: { temperature: { unit: 'K', about: 'gas temperature' } },
-  limits: [{ reading: 'pressure', side: 'below', level: 'below precharge', parameter: 'precharge', meaning: 'the separator sits on its stop' }],
+  limits: [
+    {
+      reading: 'pressure',
+      side: 'below',
+      level: 'below precharge',
+      parameter: 'precharge',
+      meaning: 'the separator sits on its stop',
+    },
+  ],
   efforts() {},
   examine: ({ parameter }) =>
-    parameter.precharge! < 2e5 ? [{ parameter: 'precharge', what: 'precharge below what a bladder bears', remedy: 'use at least 2 bar(a)' }] : [],
+    parameter.precharge! < 2e5
+      ? [{ parameter: 'precharge', what: 'precharge below what a bladder bears', remedy: 'use at least 2 bar(a)' }]
+      : [],
 });
 
 const shaft = store({
@@ -75,7 +99,10 @@ const valve = branch({
   ports: { from: 'oil', to: 'oil' },
   commands: { opening: { unit: '1', about: 'opening wanted', rest: 0, least: 0, most: 1 } },
   readings: { flow: { unit: 'm3/s', about: 'flow' }, drop: { unit: 'Pa', about: 'pressure drop', difference: true } },
-  parameters: { opens: { unit: 's', about: 'opening time', least: 1e-3 }, leak: { unit: 'm3/s', about: 'leakage', default: 0 } },
+  parameters: {
+    opens: { unit: 's', about: 'opening time', least: 1e-3 },
+    leak: { unit: 'm3/s', about: 'leakage', default: 0 },
+  },
   flows() {},
 });
 
@@ -142,6 +169,8 @@ const oil: FluidKind = {
     air: { unit: '1', about: 'entrained air', default: 0.005, least: 0, most: 0.2 },
   },
   values: (parameter) => ({ air: parameter.air! }),
+  examine: (parameter) =>
+    parameter.air! > 0.1 ? [{ path: 'air', what: 'more foam than oil', remedy: 'bleed it' }] : [],
 };
 
 export const catalogue: Catalogue = {
