@@ -245,6 +245,7 @@ export class UdpInbox {
     const cut = length >= this.capacity;
     const whole = !cut && view.getInt32(length - 4, true) === crc32(datagram.bytes, 0, length - 4);
     if ((whole || cut) && view.getInt32(header.map, true) !== this.mapChecksum) return verdicts.wrongMap;
+    if (cut) return verdicts.wrongLength;
     const kind = view.getUint8(header.kind);
     let expected: number = controlLength;
     if (kind === kinds.message) {

@@ -187,7 +187,7 @@ describe('time-outs', () => {
 });
 
 describe('sequence', () => {
-  const after = (sequences: readonly number[], each = (rig: Rig) => rig.take(1)): Rig => {
+  const received = (sequences: readonly number[], each = (rig: Rig) => rig.take(1)): Rig => {
     const rig = new Rig(sampleMap());
     sequences.forEach((sequence, i) => {
       rig.say('requests', [i, 0], sequence);
@@ -222,22 +222,22 @@ describe('sequence', () => {
       { received: 4, lost: 0, duplicate: 0, late: 0, restarts: 1 },
     ],
     ['with a jump far ahead', [0, 1, 900000, 900001], { received: 4, lost: 0, duplicate: 0, late: 0, restarts: 1 }],
-  ] as const)('%s', (_what, sequences, expected) => expect(counts(after(sequences))).toEqual(expected));
+  ] as const)('%s', (_what, sequences, expected) => expect(counts(received(sequences))).toEqual(expected));
 
   it('uses no value that is a duplicate or late', () => {
-    expect(after([0, 2, 1]).command(requests.torque)).toBe(1);
-    expect(after([0, 1, 1]).command(requests.torque)).toBe(1);
+    expect(received([0, 2, 1]).command(requests.torque)).toBe(1);
+    expect(received([0, 1, 1]).command(requests.torque)).toBe(1);
   });
 
   it('takes a new start as it comes after a hello, and after a time-out', () => {
-    const rig = after([40, 41]);
+    const rig = received([40, 41]);
     rig.control(kinds.hello);
     rig.say('requests', [9, 0], 0);
     rig.take(2);
     expect(rig.command(requests.torque)).toBe(9);
     expect(rig.value('powertrain.hellos')).toBe(1);
     expect(rig.value('requests.restarts')).toBe(0);
-    const other = after([400, 401]);
+    const other = received([400, 401]);
     for (let tick = 2; tick < 10; tick += 1) other.take(tick);
     other.say('requests', [9, 0], 10);
     other.take(10);
@@ -265,7 +265,7 @@ describe('sequence', () => {
             line.push(sequence + 1, sequence);
           } else line.push(sequence, sequence + 1);
         });
-        const rig = after(line);
+        const rig = received(line);
         expect(counts(rig)).toEqual({
           received: 1 + 2 * fates.length - lost - late,
           lost,

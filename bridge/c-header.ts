@@ -1,0 +1,370 @@
+import { requireSoundMap } from './examine-map.js';
+import type { MapSignal, MessageMap, MessageSpec } from './message-map.js';
+import { controlLength, header, kinds, magic, mapChecksum, type UdpLayout, udpLayout, version } from './udp-layout.js';
+
+/**
+ * The C header of the UDP messages of a map, for the controller's side: C11 or C++11, freestanding but for string.h.
+ * Structs that are the datagrams byte for byte, static asserts on their layout, numbers of the messages, values of
+ * enumerations, checksum, and per message `finish` (header, padding, checksum) and per signal `get` and `set` in its
+ * unit. Names of messages and signals are used as they are.
+ */
+export function cHeader(map: MessageMap, bench: string): string {
+  requireSoundMap(map);
+  const udp = new Set(map.links.filter((link) => link.kind === 'udp').map((link) => link.name));
+  const layouts = map.messages.filter((message) => udp.has(message.link)).map(udpLayout);
+  const parts = [opening(map, bench), messageNumbers(layouts), helpers(layouts), ...layouts.map(messageText), closing];
+  return parts.join('\n');
+}
+
+function opening(map: MessageMap, bench: string): string {
+  return `/*
+ * Messages of the bench "${comment(bench)}", as datagrams of oilspring's UDP link.
+ * Made by \`oilspring wire\` from the message map; make it again when the map changes, do not edit it.
+ *
+ * "to bench" and "from bench" are said from the controller's side. All numbers are little-endian.
+ * oilspring is not a safety device: a bench has its own relief valves, interlocks and emergency stop.
+ */
+#ifndef OILSPRING_MESSAGES_H
+#define OILSPRING_MESSAGES_H
+
+#include <stddef.h>
+#include <stdint.h>
+#include <string.h>
+
+#if defined(__BYTE_ORDER__) && __BYTE_ORDER__ != __ORDER_LITTLE_ENDIAN__
+#error "these structs are the datagrams themselves: they need a little-endian processor"
+#endif
+
+#ifdef __cplusplus
+#define OILSPRING_ASSERT(condition, text) static_assert(condition, text)
+#else
+#define OILSPRING_ASSERT(condition, text) _Static_assert(condition, text)
+#endif
+
+OILSPRING_ASSERT(sizeof(float) == 4 && sizeof(double) == 8, "IEEE 754 numbers of 4 and 8 bytes");
+
+#define OILSPRING_MAGIC ${hex(magic)} /* "OILS" */
+#define OILSPRING_VERSION ${version}u
+/* Checksum of the message map: both ends must have been built from the same. */
+#define OILSPRING_MAP_CHECKSUM ${hex(mapChecksum(map))}
+
+enum oilspring_kind {
+    OILSPRING_KIND_MESSAGE = ${kinds.message}, /* a message of the map */
+    OILSPRING_KIND_END = ${kinds.end},     /* from bench, lockstep: all messages of the tick in the header have been sent */
+    OILSPRING_KIND_DONE = ${kinds.done},    /* to bench, lockstep: all answers to that tick have been sent */
+    OILSPRING_KIND_HELLO = ${kinds.hello}    /* the sender has just started */
+};
+`;
+}
+
+function messageNumbers(layouts: readonly UdpLayout[]): string {
+  const lines = layouts.map(({ message }) => `    OILSPRING_MESSAGE_${message.name} = ${message.identifier}`);
+  return `enum oilspring_message {
+${lines.length > 0 ? lines.join(',\n') : '    OILSPRING_MESSAGE_none = 0'}
+};
+`;
+}
+
+function helpers(layouts: readonly UdpLayout[]): string {
+  const greatest = Math.max(controlLength, ...layouts.map((layout) => layout.length));
+  const lengths = layouts.map(
+    ({ message, length }) => `    case OILSPRING_MESSAGE_${message.name}:\n        return ${length}u;`,
+  );
+  return `/* The longest datagram, bytes: room for one more tells a longer one. */
+#define OILSPRING_GREATEST_LENGTH ${greatest}u
+
+#pragma pack(push, 1)
+struct oilspring_header {
+    uint32_t magic;
+    uint8_t version;
+    uint8_t kind;
+    uint16_t message;
+    /* Counts up by one with each datagram of this message, or of this kind, modulo 2^32. */
+    uint32_t sequence;
+    /* Of the bench, modulo 2^32. To bench: the newest one seen. */
+    uint32_t tick;
+    uint32_t map;
+};
+/* A datagram without fields: end, done, hello. */
+struct oilspring_control {
+    struct oilspring_header header;
+    uint32_t checksum;
+};
+#pragma pack(pop)
+
+OILSPRING_ASSERT(sizeof(struct oilspring_header) == ${header.length}, "header");
+OILSPRING_ASSERT(offsetof(struct oilspring_header, message) == ${header.message}, "header.message");
+OILSPRING_ASSERT(offsetof(struct oilspring_header, sequence) == ${header.sequence}, "header.sequence");
+OILSPRING_ASSERT(offsetof(struct oilspring_header, tick) == ${header.tick}, "header.tick");
+OILSPRING_ASSERT(offsetof(struct oilspring_header, map) == ${header.map}, "header.map");
+OILSPRING_ASSERT(sizeof(struct oilspring_control) == ${controlLength}, "control");
+
+/* CRC-32 of IEEE 802.3: reflected, polynomial 0x04C11DB7, initial and final 0xFFFFFFFF. */
+static inline uint32_t oilspring_crc32(const void *data, size_t length)
+{
+    /* Four bits a step. */
+    static const uint32_t table[16] = {
+        0x00000000u, 0x1DB71064u, 0x3B6E20C8u, 0x26D930ACu, 0x76DC4190u, 0x6B6B51F4u, 0x4DB26158u, 0x5005713Cu,
+        0xEDB88320u, 0xF00F9344u, 0xD6D6A3E8u, 0xCB61B38Cu, 0x9B64C2B0u, 0x86D3D2D4u, 0xA00AE278u, 0xBDBDF21Cu
+    };
+    const unsigned char *bytes = (const unsigned char *)data;
+    uint32_t crc = 0xFFFFFFFFu;
+    size_t i;
+    for (i = 0; i < length; i += 1) {
+        crc ^= bytes[i];
+        crc = (crc >> 4) ^ table[crc & 15u];
+        crc = (crc >> 4) ^ table[crc & 15u];
+    }
+    return crc ^ 0xFFFFFFFFu;
+}
+
+/* What oilspring_check says. Use the fields of a datagram only when it is OILSPRING_SOUND. */
+enum oilspring_verdict {
+    OILSPRING_SOUND = 0,
+    OILSPRING_MALFORMED = 1,
+    OILSPRING_WRONG_CHECKSUM = 2,
+    OILSPRING_WRONG_MAP = 3,
+    OILSPRING_WRONG_LENGTH = 4
+};
+
+/* Length of a message by its number, bytes; 0 when there is no such message. */
+static inline size_t oilspring_length(unsigned message)
+{
+    switch (message) {
+${lengths.join('\n')}
+    default:
+        return 0u;
+    }
+}
+
+static inline enum oilspring_verdict oilspring_check(const void *datagram, size_t length)
+{
+    struct oilspring_header header;
+    uint32_t checksum;
+    size_t expected = sizeof(struct oilspring_control);
+    int whole;
+    if (length < sizeof(struct oilspring_control))
+        return OILSPRING_WRONG_LENGTH;
+    memcpy(&header, datagram, sizeof header);
+    if (header.magic != OILSPRING_MAGIC || header.version != OILSPRING_VERSION)
+        return OILSPRING_MALFORMED;
+    if (length > OILSPRING_GREATEST_LENGTH)
+        return header.map == OILSPRING_MAP_CHECKSUM ? OILSPRING_WRONG_LENGTH : OILSPRING_WRONG_MAP;
+    memcpy(&checksum, (const unsigned char *)datagram + length - 4, sizeof checksum);
+    whole = checksum == oilspring_crc32(datagram, length - 4);
+    if (whole && header.map != OILSPRING_MAP_CHECKSUM)
+        return OILSPRING_WRONG_MAP;
+    if (header.kind == OILSPRING_KIND_MESSAGE)
+        expected = oilspring_length(header.message);
+    else if (header.kind < OILSPRING_KIND_MESSAGE || header.kind > OILSPRING_KIND_HELLO)
+        expected = 0u;
+    if (expected == 0u)
+        return whole ? OILSPRING_MALFORMED : OILSPRING_WRONG_CHECKSUM;
+    if (length != expected)
+        return OILSPRING_WRONG_LENGTH;
+    return whole ? OILSPRING_SOUND : OILSPRING_WRONG_CHECKSUM;
+}
+
+static inline struct oilspring_header oilspring_make_header(enum oilspring_kind kind, uint16_t message, uint32_t sequence, uint32_t tick)
+{
+    struct oilspring_header header;
+    header.magic = OILSPRING_MAGIC;
+    header.version = (uint8_t)OILSPRING_VERSION;
+    header.kind = (uint8_t)kind;
+    header.message = message;
+    header.sequence = sequence;
+    header.tick = tick;
+    header.map = OILSPRING_MAP_CHECKSUM;
+    return header;
+}
+
+/* Fills in a datagram without fields; its length, bytes. */
+static inline size_t oilspring_finish_control(struct oilspring_control *datagram, enum oilspring_kind kind, uint32_t sequence, uint32_t tick)
+{
+    datagram->header = oilspring_make_header(kind, 0u, sequence, tick);
+    datagram->checksum = oilspring_crc32(datagram, sizeof *datagram - 4);
+    return sizeof *datagram;
+}
+
+/* The nearest whole number; halves go up. */
+static inline int64_t oilspring_round(double value)
+{
+    double raised = value + 0.5;
+    int64_t whole = (int64_t)raised;
+    return (double)whole > raised ? whole - 1 : whole;
+}
+
+/* Brings *value into least .. most: 0 when it was inside, 1 when it was not, -1 when it is not finite. */
+static inline int oilspring_limit(double *value, double least, double most)
+{
+    if (!(*value - *value == 0.0))
+        return -1;
+    if (*value < least) {
+        *value = least;
+        return 1;
+    }
+    if (*value > most) {
+        *value = most;
+        return 1;
+    }
+    return 0;
+}
+`;
+}
+
+const cTypes = {
+  u8: 'uint8_t',
+  i8: 'int8_t',
+  u16: 'uint16_t',
+  i16: 'int16_t',
+  u32: 'uint32_t',
+  i32: 'int32_t',
+  f32: 'float',
+  f64: 'double',
+} as const;
+
+function messageText(layout: UdpLayout): string {
+  const { message } = layout;
+  const struct = `struct oilspring_${message.name}`;
+  const members: [number, string][] = layout.fields.map(({ signal, offset }) => [offset, fieldText(signal)]);
+  layout.padding.forEach(([offset, count], i) => {
+    members.push([offset, `    uint8_t padding${i}_[${count}];`]);
+  });
+  members.sort((a, b) => a[0] - b[0]);
+  const asserts = layout.fields.map(
+    ({ signal, offset }) =>
+      `OILSPRING_ASSERT(offsetof(${struct}, ${member(signal.name)}) == ${offset}, "${message.name}.${signal.name}");`,
+  );
+  const clear = layout.padding
+    .map((_, i) => `    memset(message->padding${i}_, 0, sizeof message->padding${i}_);\n`)
+    .join('');
+  return `/* ${message.direction === 'sent' ? 'From' : 'To'} bench: ${comment(message.about || message.name)}
+ * ${comment(timing(message))} */
+#pragma pack(push, 1)
+${struct} {
+    struct oilspring_header header;
+${members.map(([, text]) => text).join('\n')}
+    uint32_t checksum;
+};
+#pragma pack(pop)
+
+OILSPRING_ASSERT(sizeof(${struct}) == ${layout.length}, "${message.name}");
+OILSPRING_ASSERT(offsetof(${struct}, checksum) == ${layout.checksumAt}, "${message.name}.checksum");
+${asserts.join('\n')}
+
+/* Fills in header, padding and checksum once the fields are set; the length of the datagram, bytes. */
+static inline size_t oilspring_finish_${message.name}(${struct} *message, uint32_t sequence, uint32_t tick)
+{
+    message->header = oilspring_make_header(OILSPRING_KIND_MESSAGE, ${message.identifier}u, sequence, tick);
+${clear}    message->checksum = oilspring_crc32(message, sizeof *message - 4);
+    return sizeof *message;
+}
+${message.signals.map((signal) => signalText(message, signal)).join('')}`;
+}
+
+function timing(message: MessageSpec): string {
+  const parts: string[] = [];
+  if (message.trigger !== 'on-change')
+    parts.push(`every ${message.every} ticks, in ticks with remainder ${message.phase}`);
+  if (message.trigger !== 'cyclic') parts.push(`when a value moves, at most every ${message.fastEvery ?? 1} ticks`);
+  if (message.startDelay > 0) parts.push(`from tick ${message.startDelay} of the bench's life on`);
+  if (message.direction === 'received') {
+    parts.push(message.timeout > 0 ? `time-out after ${message.timeout} ticks` : 'no time-out');
+    parts.push(
+      `a value out of range is ${message.outOfRange === 'refuse' ? 'refused with its message' : 'brought into range'}`,
+    );
+  }
+  return `${parts.join('; ')}.`;
+}
+
+function fieldText(signal: MapSignal): string {
+  const scaled =
+    signal.scale === 1 && signal.offset === 0
+      ? ''
+      : ` = field * ${signal.scale}${signal.offset === 0 ? '' : ` + ${signal.offset}`}`;
+  const range = `${signal.least} .. ${signal.most}`;
+  return `    /* ${comment(signal.about || signal.name)}; ${comment(signal.unit)}${scaled}, ${range} */
+    ${cTypes[signal.type]} ${member(signal.name)};`;
+}
+
+function signalText(message: MessageSpec, signal: MapSignal): string {
+  const struct = `struct oilspring_${message.name}`;
+  const name = `${message.name}_${signal.name}`;
+  const field = `message->${member(signal.name)}`;
+  const plain = signal.scale === 1 && signal.offset === 0;
+  const type = cTypes[signal.type];
+  const wire = plain ? 'value' : `(value - ${number(signal.offset)}) / ${number(signal.scale)}`;
+  const stored =
+    signal.type[0] === 'f'
+      ? plain && type === 'double'
+        ? wire
+        : `(${type})(${wire})`
+      : `(${type})oilspring_round(${wire})`;
+  const value = plain ? `(double)${field}` : `(double)${field} * ${number(signal.scale)} + ${number(signal.offset)}`;
+  const names = Object.entries(signal.names ?? {}).filter(
+    ([, one]) => Number.isSafeInteger(one) && Math.abs(one) < 2 ** 31,
+  );
+  const enumeration =
+    names.length === 0
+      ? ''
+      : `
+enum oilspring_${name} {
+${names.map(([text, one]) => `    OILSPRING_${name}_${text.replace(/[^A-Za-z0-9_]/g, '_')} = ${one}`).join(',\n')}
+};
+`;
+  return `${enumeration}
+/* In ${comment(signal.unit)}. */
+static inline double oilspring_get_${name}(const ${struct} *message)
+{
+    return ${value};
+}
+
+/* In ${comment(signal.unit)}. 0: set; 1: brought into range and set; -1: not finite, not set. */
+static inline int oilspring_set_${name}(${struct} *message, double value)
+{
+    int verdict = oilspring_limit(&value, ${number(signal.least)}, ${number(signal.most)});
+    if (verdict >= 0)
+        ${field} = ${stored};
+    return verdict;
+}
+`;
+}
+
+const closing = `#endif
+`;
+
+/** Words that C11 or C++20 keep for themselves, among those that a signal could be called; and the struct's own. */
+const keywords = new Set(
+  (
+    'alignas alignof and asm auto bitand bitor bool break case catch char class compl concept const consteval constexpr ' +
+    'constinit continue decltype default delete do double else enum explicit export extern false float for friend goto if ' +
+    'inline int long mutable namespace new noexcept not nullptr operator or private protected public register reinterpret ' +
+    'requires restrict return short signed sizeof static struct switch template this throw true try typedef typeid ' +
+    'typename union unsigned using virtual void volatile while xor header checksum errno linux unix'
+  ).split(' '),
+);
+
+function member(name: string): string {
+  return keywords.has(name) ? `${name}_` : name;
+}
+
+/** A number as a double literal. */
+function number(value: number): string {
+  const text = `${value}`;
+  return /[.e]/.test(text) ? text : `${text}.0`;
+}
+
+function hex(value: number): string {
+  return `0x${(value >>> 0).toString(16).toUpperCase().padStart(8, '0')}u`;
+}
+
+/** Text that may stand inside a C comment. */
+function comment(text: string): string {
+  return text
+    .replace(/\s+/g, ' ')
+    .replace(/\*\//g, '* /')
+    .replace(/\/\*/g, '/ *')
+    .replace(/\\$/, '\\ ')
+    .replace(/\?\?/g, '? ?')
+    .trim();
+}
