@@ -3,7 +3,7 @@
  * Parameters as in the AUTOSAR Classic Platform "Specification of CRC Routines" (SWS_CRCLibrary) and ISO 11898-1 (the
  * 15-bit one); check values, over the nine ASCII digits "123456789", are tested.
  *
- * Each table is Int32Array: a byte of input costs one look-up. 32-bit results are signed (a small integer to the
+ * 32-bit results are signed (a small integer to the
  * engine, not a boxed number); `>>> 0` where they are printed.
  */
 
@@ -26,12 +26,12 @@ export function crc16(bytes: Uint8Array, from: number, to: number): number {
 
 /** CRC-32 (IEEE 802.3): reflected, polynomial 0x04C11DB7, initial and final 0xFFFFFFFF. Signed 32 bit. */
 export function crc32(bytes: Uint8Array, from: number, to: number): number {
-  return crc32Reflected(tableEDB88320, bytes, from, to);
+  return crc32Reflected(tablesEDB88320, bytes, from, to);
 }
 
 /** CRC-32P4: reflected, polynomial 0xF4ACFB13, initial and final 0xFFFFFFFF. Signed 32 bit. */
 export function crc32P4(bytes: Uint8Array, from: number, to: number): number {
-  return crc32Reflected(tableC8DF352F, bytes, from, to);
+  return crc32Reflected(tablesC8DF352F, bytes, from, to);
 }
 
 /** CRC-15 of classic CAN frames, over whole bytes: polynomial 0x4599, initial and final 0. */
@@ -47,9 +47,19 @@ function crc8(table: Int32Array, bytes: Uint8Array, from: number, to: number): n
   return crc ^ 0xff;
 }
 
-function crc32Reflected(table: Int32Array, bytes: Uint8Array, from: number, to: number): number {
+/** Four bytes a step (slicing, Kounavis and Berry 2005), the rest byte by byte. */
+function crc32Reflected(tables: Int32Array, bytes: Uint8Array, from: number, to: number): number {
   let crc = -1;
-  for (let i = from; i < to; i += 1) crc = (crc >>> 8) ^ table[(crc ^ bytes[i]) & 0xff];
+  let i = from;
+  for (; i + 3 < to; i += 4) {
+    crc ^= bytes[i] | (bytes[i + 1] << 8) | (bytes[i + 2] << 16) | (bytes[i + 3] << 24);
+    crc =
+      tables[768 + (crc & 0xff)] ^
+      tables[512 + ((crc >>> 8) & 0xff)] ^
+      tables[256 + ((crc >>> 16) & 0xff)] ^
+      tables[crc >>> 24];
+  }
+  for (; i < to; i += 1) crc = (crc >>> 8) ^ tables[(crc ^ bytes[i]) & 0xff];
   return ~crc;
 }
 
@@ -66,20 +76,24 @@ function leftTable(width: number, polynomial: number): Int32Array {
   return table;
 }
 
-/** Table of a reflected 32-bit check; `polynomial` with its bits reversed. */
-function rightTable(polynomial: number): Int32Array {
-  const table = new Int32Array(256);
+/** Tables of a reflected 32-bit check, the k-th for a byte with k bytes after it; `polynomial` with its bits reversed. */
+function rightTables(polynomial: number): Int32Array {
+  const tables = new Int32Array(4 * 256);
   for (let byte = 0; byte < 256; byte += 1) {
     let value = byte;
     for (let bit = 0; bit < 8; bit += 1) value = value & 1 ? (value >>> 1) ^ polynomial : value >>> 1;
-    table[byte] = value;
+    tables[byte] = value;
   }
-  return table;
+  for (let at = 256; at < tables.length; at += 1) {
+    const before = tables[at - 256];
+    tables[at] = (before >>> 8) ^ tables[before & 0xff];
+  }
+  return tables;
 }
 
 const table1D = leftTable(8, 0x1d);
 const table2F = leftTable(8, 0x2f);
 const table1021 = leftTable(16, 0x1021);
 const table4599 = leftTable(15, 0x4599);
-const tableEDB88320 = rightTable(0xedb88320);
-const tableC8DF352F = rightTable(0xc8df352f);
+const tablesEDB88320 = rightTables(0xedb88320);
+const tablesC8DF352F = rightTables(0xc8df352f);

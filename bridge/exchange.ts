@@ -2,14 +2,13 @@ import type { BlockLayout } from '../runtime/block.js';
 import { BuildError, type Problem } from '../runtime/contract.js';
 import type { EventCatalogue, Journal } from '../runtime/journal.js';
 import type { SignalTable } from '../runtime/signals.js';
-import { CountReports } from './count-reports.js';
 import { requireSoundMap } from './examine-map.js';
+import { ExchangeTables } from './exchange-tables.js';
 import { linkEvents } from './link-events.js';
-import type { MapSignal, MessageMap } from './message-map.js';
-import { SlotCopies } from './slot-copies.js';
+import type { MessageMap } from './message-map.js';
 import type { Transport } from './transport.js';
 import { mapChecksum } from './udp-layout.js';
-import { type LinkCount, linkCounts, UdpLink } from './udp-link.js';
+import { UdpLink } from './udp-link.js';
 
 /** Where commands stand in the block. */
 export interface Targets {
@@ -47,12 +46,7 @@ export interface ExchangeOptions {
 export class Exchange {
   readonly checksum: number;
   readonly links: readonly UdpLink[];
-  private readonly reports: CountReports;
-  private readonly taken: SlotCopies;
-  private readonly driven: SlotCopies;
-  private readonly gathered: SlotCopies;
-  private readonly published: SlotCopies;
-  private readonly shares: { readonly slots: UdpLink['slots']; readonly signal: number }[] = [];
+  private readonly tables: ExchangeTables;
   private readonly units: Float64Array;
   private readonly bootUntil: number;
   private readonly silent: number;
@@ -77,11 +71,6 @@ export class Exchange {
     this.bootWindowTicks = options.bootWindowTicks ?? 0;
     this.bootUntil = layout.add('exchange.bootUntil', firstTick + this.bootWindowTicks);
     this.silent = layout.add('exchange.silent');
-    this.reports = new CountReports(layout, events, Math.max(1, Math.round(1 / step)));
-    this.taken = new SlotCopies();
-    this.driven = new SlotCopies();
-    this.gathered = new SlotCopies();
-    this.published = new SlotCopies();
     this.timedOutKind = events.kind(linkEvents.timedOut);
     this.cameBackKind = events.kind(linkEvents.cameBack);
     this.awakeKind = events.kind(linkEvents.awake);
@@ -105,11 +94,10 @@ export class Exchange {
       links.push(new UdpLink(spec, number, messages, this.checksum, layout, firstTick, most));
     });
     this.links = links;
-    for (const link of links) this.declare(link, options, problems);
-    this.connect(options, problems);
+    this.tables = new ExchangeTables(links, options, problems);
     if (problems.length > 0) throw new BuildError(problems);
 
-    this.units = new Float64Array(this.gathered.length);
+    this.units = new Float64Array(this.tables.gathered.length);
     this.subjects = links.map((link) =>
       Int32Array.from(link.receivers, (receiver) => events.subject(receiver.message.name)),
     );
@@ -153,19 +141,19 @@ export class Exchange {
         }
       }
     }
-    this.driven.copy(block, block);
-    this.taken.copy(block, signals);
-    for (let i = 0; i < this.shares.length; i += 1) {
-      const { slots, signal } = this.shares[i];
+    this.tables.driven.copy(block, block);
+    this.tables.taken.copy(block, signals);
+    for (let i = 0; i < this.tables.shares.length; i += 1) {
+      const { slots, signal } = this.tables.shares[i];
       signals[signal] = block[slots.replies] > 0 ? block[slots.oneStepReplies] / block[slots.replies] : 0;
     }
-    if (this.journal) this.reports.report(block, tick, this.journal);
+    if (this.journal) this.tables.reports.report(block, tick, this.journal);
   }
 
   /** Stage `publish`: writes and sends, in map order, what is due in this tick. */
   publish(block: Float64Array, signals: Float64Array, tick: number): void {
     if (block[this.silent] === 0) {
-      this.gathered.copy(signals, this.units);
+      this.tables.gathered.copy(signals, this.units);
       let from = 0;
       for (let l = 0; l < this.links.length; l += 1) {
         const link = this.links[l];
@@ -176,7 +164,7 @@ export class Exchange {
         }
       }
     }
-    this.published.copy(block, signals);
+    this.tables.published.copy(block, signals);
   }
 
   /** Defined silence: with `silent` nothing is sent until it is called again with false. */
@@ -192,167 +180,6 @@ export class Exchange {
   /** All counts to zero, between the pre-roll and the first counted tick. Sequences, ages and values stay. */
   clearCounts(block: Float64Array): void {
     for (const link of this.links) link.clearCounts(block);
-    this.reports.clear(block);
+    this.tables.reports.clear(block);
   }
-
-  /** Declares the signals of one link and of its messages, and what is reported of their counts. */
-  private declare(link: UdpLink, options: ExchangeOptions, problems: Problem[]): void {
-    const { signals, step } = options;
-    const show = (
-      copies: SlotCopies,
-      slot: number,
-      path: string,
-      unit: string,
-      about: string,
-      group: 'link' | 'received' | 'sent',
-      scale = 1,
-      offset = 0,
-    ): void => {
-      if (signals.find(path) >= 0) {
-        problems.push({
-          path: `messages.${path}`,
-          what: 'the signal path is taken by an element or instrument',
-          remedy: 'rename the message or the element',
-        });
-        return;
-      }
-      copies.add(slot, signals.add({ path, unit, about, group }), scale, offset);
-    };
-    const name = link.spec.name;
-    for (const count of Object.keys(linkCounts) as LinkCount[])
-      show(this.taken, link.slots[count], `${name}.${count}`, '1', linkCounts[count], 'link');
-    for (const count of ['malformed', 'wrongChecksum', 'wrongMap', 'wrongLength'] as const)
-      this.reports.watch(link.slots[count], linkEvents[count], name);
-    this.reports.watch(link.slots.floods, linkEvents.flood, name);
-    this.reports.watch(link.slots.hellos, linkEvents.hello, name);
-    const share = `${name}.oneStepShare`;
-    this.shares.push({
-      slots: link.slots,
-      signal: signals.add({
-        path: share,
-        unit: '1',
-        about: 'share of the used messages that answer the tick just before',
-        group: 'link',
-        least: 0,
-        most: 1,
-      }),
-    });
-    for (const receiver of link.receivers) {
-      const { message } = receiver;
-      message.signals.forEach((signal, i) => {
-        show(
-          this.taken,
-          receiver.values + i,
-          `${message.name}.${signal.name}`,
-          siUnit(signal, signals),
-          signal.about,
-          'received',
-          signal.unitScale,
-          signal.unitOffset,
-        );
-      });
-      show(
-        this.taken,
-        receiver.age,
-        `${message.name}.age`,
-        's',
-        'time since the newest message that was used',
-        'link',
-        step,
-      );
-      show(this.taken, receiver.timedOut, `${message.name}.timedOut`, '1', '1 while a time-out lasts', 'link');
-      for (const [count, about] of receiverCounts)
-        show(this.taken, receiver[count], `${message.name}.${count}`, '1', about, 'link');
-      for (const count of ['lost', 'duplicate', 'late', 'outOfRange'] as const)
-        this.reports.watch(receiver[count], linkEvents[count], message.name);
-      this.reports.watch(receiver.restarts, linkEvents.restarted, message.name);
-    }
-    for (const sender of link.senders) {
-      const { message } = sender;
-      message.signals.forEach((signal, i) => {
-        show(
-          this.published,
-          sender.carried + i,
-          `${message.name}.${signal.name}`,
-          siUnit(signal, signals),
-          signal.about,
-          'sent',
-          signal.unitScale,
-          signal.unitOffset,
-        );
-      });
-      show(this.published, sender.sent, `${message.name}.sent`, '1', 'messages sent', 'link');
-      show(
-        this.published,
-        sender.unsendable,
-        `${message.name}.unsendable`,
-        '1',
-        'times not sent because a value was not finite',
-        'link',
-      );
-      this.reports.watch(sender.unsendable, linkEvents.unsendable, message.name);
-    }
-  }
-
-  /** Finds what sent messages carry and what received ones drive. */
-  private connect(options: ExchangeOptions, problems: Problem[]): void {
-    const { signals, targets } = options;
-    const drivers = new Map<number, string>();
-    for (const link of this.links) {
-      for (const sender of link.senders)
-        for (const signal of sender.message.signals) {
-          const index = signals.find(signal.path);
-          const path = `messages.${sender.message.name}.${signal.name}`;
-          if (index < 0)
-            problems.push(unknown(path, 'there is no such signal', signal.path, signals.nearest(signal.path)));
-          this.gathered.add(index, this.gathered.length, 1 / signal.unitScale, -signal.unitOffset / signal.unitScale);
-        }
-      for (const receiver of link.receivers)
-        receiver.message.signals.forEach((signal, i) => {
-          if (signal.path === '') return;
-          const path = `messages.${receiver.message.name}.${signal.name}`;
-          const slot = targets.find(signal.path);
-          if (slot < 0)
-            problems.push(unknown(path, 'there is no such command', signal.path, targets.nearest?.(signal.path) ?? []));
-          const other = drivers.get(slot);
-          if (slot >= 0 && other !== undefined)
-            problems.push({
-              path,
-              what: 'the command has two masters',
-              value: signal.path,
-              bound: `driven by ${other} already`,
-              remedy: 'drive it from one message',
-            });
-          drivers.set(slot, path);
-          this.driven.add(receiver.values + i, slot, signal.unitScale, signal.unitOffset);
-        });
-    }
-  }
-}
-
-const receiverCounts = [
-  ['received', 'messages used'],
-  ['lost', 'messages missing in the sequence'],
-  ['duplicate', 'messages that came twice'],
-  ['late', 'messages that came after a newer one'],
-  ['outOfRange', 'messages with a value outside its range'],
-  ['timeOuts', 'time-outs'],
-  ['restarts', 'jumps of the sequence'],
-] as const;
-
-function unknown(path: string, what: string, value: string, near: readonly string[]): Problem {
-  return {
-    path,
-    what,
-    value: value === '' ? 'no path' : value,
-    remedy: near.length > 0 ? `did you mean ${near.join(' or ')}?` : 'see `oilspring list signals BENCH`',
-  };
-}
-
-/** The SI unit of a signal: from the path it carries or drives, else as the map says it. */
-function siUnit(signal: MapSignal, signals: SignalTable): string {
-  const index = signals.find(signal.path);
-  if (index >= 0) return signals.all[index].unit;
-  if (signal.siUnit !== undefined) return signal.siUnit;
-  return signal.unitScale === 1 && signal.unitOffset === 0 ? signal.unit : `SI of ${signal.unit}`;
 }

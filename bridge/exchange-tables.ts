@@ -1,0 +1,195 @@
+import type { Problem } from '../runtime/contract.js';
+import type { SignalTable } from '../runtime/signals.js';
+import { CountReports } from './count-reports.js';
+import type { ExchangeOptions } from './exchange.js';
+import { linkEvents } from './link-events.js';
+import type { MapSignal } from './message-map.js';
+import { SlotCopies } from './slot-copies.js';
+import { type LinkCount, linkCounts, type UdpLink } from './udp-link.js';
+
+/**
+ * What stands between the block, the signals and the messages, as tables: made once when the bench is built. Declares
+ * all signals of the exchange on the way.
+ */
+export class ExchangeTables {
+  /** Block to signals, at the end of `take` and of `publish`. */
+  readonly taken = new SlotCopies();
+  readonly published = new SlotCopies();
+  /** Received values to command slots, within the block. */
+  readonly driven = new SlotCopies();
+  /** Signals to the values of sent messages, one after the other, in units of the map. */
+  readonly gathered = new SlotCopies();
+  readonly shares: { readonly slots: UdpLink['slots']; readonly signal: number }[] = [];
+  readonly reports: CountReports;
+
+  constructor(
+    private readonly links: readonly UdpLink[],
+    options: ExchangeOptions,
+    problems: Problem[],
+  ) {
+    this.reports = new CountReports(options.layout, options.events, Math.max(1, Math.round(1 / options.step)));
+    for (const link of links) this.declare(link, options, problems);
+    this.connect(options, problems);
+  }
+
+  /** Declares the signals of one link and of its messages, and what is reported of their counts. */
+  private declare(link: UdpLink, options: ExchangeOptions, problems: Problem[]): void {
+    const { signals, step } = options;
+    const show = (
+      copies: SlotCopies,
+      slot: number,
+      path: string,
+      unit: string,
+      about: string,
+      group: 'link' | 'received' | 'sent',
+      scale = 1,
+      offset = 0,
+    ): void => {
+      if (signals.find(path) >= 0) {
+        problems.push({
+          path: `messages.${path}`,
+          what: 'the signal path is taken by an element or instrument',
+          remedy: 'rename the message or the element',
+        });
+        return;
+      }
+      copies.add(slot, signals.add({ path, unit, about, group }), scale, offset);
+    };
+    const name = link.spec.name;
+    for (const count of Object.keys(linkCounts) as LinkCount[])
+      show(this.taken, link.slots[count], `${name}.${count}`, '1', linkCounts[count], 'link');
+    for (const count of ['malformed', 'wrongChecksum', 'wrongMap', 'wrongLength'] as const)
+      this.reports.watch(link.slots[count], linkEvents[count], name);
+    this.reports.watch(link.slots.floods, linkEvents.flood, name);
+    this.reports.watch(link.slots.hellos, linkEvents.hello, name);
+    const share = `${name}.oneStepShare`;
+    this.shares.push({
+      slots: link.slots,
+      signal: signals.add({
+        path: share,
+        unit: '1',
+        about: 'share of the used messages that answer the tick just before',
+        group: 'link',
+        least: 0,
+        most: 1,
+      }),
+    });
+    for (const receiver of link.receivers) {
+      const { message } = receiver;
+      message.signals.forEach((signal, i) => {
+        show(
+          this.taken,
+          receiver.values + i,
+          `${message.name}.${signal.name}`,
+          siUnit(signal, signals),
+          signal.about,
+          'received',
+          signal.unitScale,
+          signal.unitOffset,
+        );
+      });
+      show(
+        this.taken,
+        receiver.age,
+        `${message.name}.age`,
+        's',
+        'time since the newest message that was used',
+        'link',
+        step,
+      );
+      show(this.taken, receiver.timedOut, `${message.name}.timedOut`, '1', '1 while a time-out lasts', 'link');
+      for (const [count, about] of receiverCounts)
+        show(this.taken, receiver[count], `${message.name}.${count}`, '1', about, 'link');
+      for (const count of ['lost', 'duplicate', 'late', 'outOfRange'] as const)
+        this.reports.watch(receiver[count], linkEvents[count], message.name);
+      this.reports.watch(receiver.restarts, linkEvents.restarted, message.name);
+    }
+    for (const sender of link.senders) {
+      const { message } = sender;
+      message.signals.forEach((signal, i) => {
+        show(
+          this.published,
+          sender.carried + i,
+          `${message.name}.${signal.name}`,
+          siUnit(signal, signals),
+          signal.about,
+          'sent',
+          signal.unitScale,
+          signal.unitOffset,
+        );
+      });
+      show(this.published, sender.sent, `${message.name}.sent`, '1', 'messages sent', 'link');
+      show(
+        this.published,
+        sender.unsendable,
+        `${message.name}.unsendable`,
+        '1',
+        'times not sent because a value was not finite',
+        'link',
+      );
+      this.reports.watch(sender.unsendable, linkEvents.unsendable, message.name);
+    }
+  }
+
+  /** Finds what sent messages carry and what received ones drive. */
+  private connect(options: ExchangeOptions, problems: Problem[]): void {
+    const { signals, targets } = options;
+    const drivers = new Map<number, string>();
+    for (const link of this.links) {
+      for (const sender of link.senders)
+        for (const signal of sender.message.signals) {
+          const index = signals.find(signal.path);
+          const path = `messages.${sender.message.name}.${signal.name}`;
+          if (index < 0)
+            problems.push(unknown(path, 'there is no such signal', signal.path, signals.nearest(signal.path)));
+          this.gathered.add(index, this.gathered.length, 1 / signal.unitScale, -signal.unitOffset / signal.unitScale);
+        }
+      for (const receiver of link.receivers)
+        receiver.message.signals.forEach((signal, i) => {
+          if (signal.path === '') return;
+          const path = `messages.${receiver.message.name}.${signal.name}`;
+          const slot = targets.find(signal.path);
+          if (slot < 0)
+            problems.push(unknown(path, 'there is no such command', signal.path, targets.nearest?.(signal.path) ?? []));
+          const other = drivers.get(slot);
+          if (slot >= 0 && other !== undefined)
+            problems.push({
+              path,
+              what: 'the command has two masters',
+              value: signal.path,
+              bound: `driven by ${other} already`,
+              remedy: 'drive it from one message',
+            });
+          drivers.set(slot, path);
+          this.driven.add(receiver.values + i, slot, signal.unitScale, signal.unitOffset);
+        });
+    }
+  }
+}
+
+const receiverCounts = [
+  ['received', 'messages used'],
+  ['lost', 'messages missing in the sequence'],
+  ['duplicate', 'messages that came twice'],
+  ['late', 'messages that came after a newer one'],
+  ['outOfRange', 'messages with a value outside its range'],
+  ['timeOuts', 'time-outs'],
+  ['restarts', 'jumps of the sequence'],
+] as const;
+
+function unknown(path: string, what: string, value: string, near: readonly string[]): Problem {
+  return {
+    path,
+    what,
+    value: value === '' ? 'no path' : value,
+    remedy: near.length > 0 ? `did you mean ${near.join(' or ')}?` : 'see `oilspring list signals BENCH`',
+  };
+}
+
+/** The SI unit of a signal: from the path it carries or drives, else as the map says it. */
+function siUnit(signal: MapSignal, signals: SignalTable): string {
+  const index = signals.find(signal.path);
+  if (index >= 0) return signals.all[index].unit;
+  if (signal.siUnit !== undefined) return signal.siUnit;
+  return signal.unitScale === 1 && signal.unitOffset === 0 ? signal.unit : `SI of ${signal.unit}`;
+}
