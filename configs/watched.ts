@@ -53,14 +53,19 @@ export interface ReliefValve {
   readonly setting: number;
 }
 
-/** Relief valves: branches with a cracking pressure; the inlet is the first oil port. */
+/** Whether a branch limits a pressure: it states an absolute cracking pressure. A check valve's is a difference. */
+function limitsPressure(element: ReadElement): boolean {
+  const cracking = element.kind.parameters[crackingParameter];
+  return element.kind.role === 'branch' && cracking?.unit === 'Pa' && !cracking.difference;
+}
+
+/** Relief valves, also those inside charge pumps. What they protect is tied to `from`, or else to `outlet`. */
 export function reliefValves(elements: readonly ReadElement[]): ReliefValve[] {
   const valves: ReliefValve[] = [];
   for (const element of elements) {
     const setting = element.parameters[crackingParameter];
-    if (element.kind.role !== 'branch' || setting === undefined || !element.complete) continue;
-    const inlet = Object.keys(element.kind.ports).find((port) => element.kind.ports[port] === 'oil');
-    const connection = inlet === undefined ? undefined : element.connections[inlet];
+    if (!limitsPressure(element) || setting === undefined || !element.complete) continue;
+    const connection = element.connections['from'] ?? element.connections['outlet'];
     if (connection) valves.push({ element, store: connection.store, setting });
   }
   return valves;
@@ -275,7 +280,9 @@ function readAdditions(
 }
 
 function readRelief(section: Section, elements: readonly ReadElement[]): Draft['relief'] {
-  const valves = elements.filter((element) => element.parameters[crackingParameter] !== undefined);
+  const valves = elements.filter(
+    (element) => limitsPressure(element) && element.parameters[crackingParameter] !== undefined,
+  );
   const names = valves.map((element) => element.name);
   const said = section.choice('relief', names);
   const valve = valves.find((element) => element.name === said);

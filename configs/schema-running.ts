@@ -1,0 +1,130 @@
+import { flag, mapping, named, quantitySchema, type Schema, text, texts } from './schema-parts.js';
+
+/** Schemas of the parts of a bench file that no kind declares: links, messages, watch, life and the like. */
+export function runningSchemas(): Record<string, Schema> {
+  const time = quantitySchema({ unit: 's' });
+  const share = quantitySchema({ unit: '1' });
+  const whole = (minimum: number): Schema => ({ type: 'integer', minimum });
+  const value: Schema = { type: ['string', 'number'] };
+  return {
+    ambient: mapping(
+      { temperature: quantitySchema({ unit: 'K' }), pressure: quantitySchema({ unit: 'Pa' }) },
+      [],
+      'surroundings',
+    ),
+    budgets: mapping(
+      {
+        lateness: time,
+        worstLateness: time,
+        overruns: share,
+        drift: time,
+        lostFrames: share,
+        energyResidual: share,
+        oilResidual: share,
+      },
+      [],
+      'past these a run is not valid',
+    ),
+    links: named(
+      {
+        oneOf: [
+          mapping({ is: { const: 'udp' }, about: text, local: text, remote: text }, ['is', 'local', 'remote']),
+          mapping({ is: { const: 'can' }, about: text, interface: text, bitRate: text, dataBitRate: text }, [
+            'is',
+            'interface',
+          ]),
+          mapping({ is: { const: 'can-multicast' }, about: text, group: text, bitRate: text, dataBitRate: text }, [
+            'is',
+            'group',
+          ]),
+        ],
+      },
+      'links to controllers',
+    ),
+    messages: named(messageSchema(time, whole, value), 'messages by name'),
+    watch: {
+      type: 'object',
+      description: 'what to watch beside the limits of the elements, by signal',
+      additionalProperties: mapping({
+        above: value,
+        below: value,
+        level: text,
+        meaning: text,
+        vicinity: share,
+        lookAhead: time,
+        relief: text,
+      }),
+    },
+    life: mapping(
+      {
+        supply: flag,
+        key: flag,
+        preRoll: time,
+        bootWindow: time,
+        afterRun: time,
+        frames: mapping({ warmUp: frames, preRoll: frames, afterwards: frames }),
+      },
+      [],
+      'the life of the bench',
+    ),
+    duty: { ...text, description: 'scenario that check drives' },
+    controller: mapping({ module: text, command: text, period: time, patience: time }, [], 'the controller to start'),
+    record: mapping({ signals: texts, peaks: texts, every: time }, [], 'what is recorded'),
+  };
+}
+
+const frames: Schema = { enum: ['rest', 'silence'] };
+
+function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: Schema): Schema {
+  const number: Schema = { type: 'number' };
+  const can = mapping(
+    {
+      start: whole(0),
+      length: whole(1),
+      order: { enum: ['little', 'big'] },
+      signed: flag,
+      float: flag,
+      scale: number,
+      offset: number,
+      selector: flag,
+      when: { type: 'object', additionalProperties: { anyOf: [value, { type: 'array', items: value }] } },
+    },
+    ['start', 'length'],
+    'layout on CAN',
+  );
+  const signal = mapping({
+    from: { ...text, description: 'sent: the signal that it carries' },
+    to: { ...text, description: 'received: the command that it drives' },
+    about: text,
+    unit: { ...text, description: 'unit on the wire, such as bar(a), N m, %' },
+    range: { ...text, description: 'range in that unit, such as 0 .. 400' },
+    type: { enum: ['u8', 'i8', 'u16', 'i16', 'u32', 'i32', 'f32', 'f64'] },
+    scale: number,
+    offset: number,
+    substitute: { ...value, description: 'received: what counts after a time-out' },
+    names: { type: 'object', additionalProperties: number },
+    can,
+  });
+  return mapping(
+    {
+      about: text,
+      link: text,
+      direction: { enum: ['sent', 'received'], description: 'seen from the bench' },
+      id: { anyOf: [whole(0), text] },
+      every: time,
+      phase: time,
+      startDelay: time,
+      fastEvery: time,
+      timeout: time,
+      trigger: { enum: ['cyclic', 'on-change', 'cyclic-and-change'] },
+      outOfRange: { enum: ['saturate', 'refuse'] },
+      extended: flag,
+      flexibleDataRate: flag,
+      bitRateSwitch: flag,
+      bytes: whole(0),
+      protection: { type: 'object', required: ['is'] },
+      signals: named(signal, 'signals by name'),
+    },
+    ['direction', 'id', 'signals'],
+  );
+}
