@@ -14,7 +14,7 @@ export const electricChargePump = branch({
     speed: { unit: 'rad/s', about: 'speed of the motor', scale: 100 },
   },
   commands: {
-    speed: { unit: 'rad/s', about: 'wanted speed', rest: 0, least: 0, most: 1000 },
+    speedRequest: { unit: 'rad/s', about: 'wanted speed', rest: 0, least: 0, most: 1000 },
     power: { unit: '1', about: 'supply of the motor, on above 0.5', rest: 1, least: 0, most: 1 },
     wear: {
       unit: '1',
@@ -118,7 +118,7 @@ export const electricChargePump = branch({
     inlet.heatFlow += (massFlow > 0 ? 0 : friction) + (backMass > 0 ? backLoss : 0) - carried;
     outlet.heatFlow += (massFlow > 0 ? friction : 0) + (backMass > 0 ? 0 : backLoss) + carried;
     derivative.speed =
-      ((command.power > 0.5 ? Math.max(0, Math.min(parameter.maximumSpeed, command.speed)) : 0) - state.speed) /
+      ((command.power > 0.5 ? Math.max(0, Math.min(parameter.maximumSpeed, command.speedRequest)) : 0) - state.speed) /
       parameter.speedLag;
     reading.shaftPower = torque * state.speed;
     reading.flow = net / inlet.density;

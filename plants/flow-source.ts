@@ -8,7 +8,7 @@ export const flowSource = branch({
   source: 'prescribed',
   ports: { from: 'oil', to: 'oil' },
   states: { flow: { unit: 'm3/s', about: 'volume flow at the density upstream', scale: 1e-3 } },
-  commands: { flow: { unit: 'm3/s', about: 'wanted volume flow', rest: 0, least: -0.1, most: 0.1 } },
+  commands: { flowRequest: { unit: 'm3/s', about: 'wanted volume flow', rest: 0, least: -0.1, most: 0.1 } },
   readings: {
     massFlow: { unit: 'kg/s', about: 'mass flow' },
     power: { unit: 'W', about: 'power put into the oil' },
@@ -19,7 +19,7 @@ export const flowSource = branch({
   flows({ parameter, from, to, state, command, derivative, reading, law }) {
     const massFlow = state.flow * (state.flow > 0 ? from.density : to.density);
     const carried = law.heatCarried(massFlow, from.heatCapacity * from.temperature, to.heatCapacity * to.temperature);
-    derivative.flow = (command.flow - state.flow) / parameter.lag;
+    derivative.flow = (command.flowRequest - state.flow) / parameter.lag;
     from.massFlow -= massFlow;
     to.massFlow += massFlow;
     from.heatFlow -= carried;

@@ -14,9 +14,9 @@ export function wilsonLeakage(
   return (slipCoefficient * radianDisplacement * difference) / viscosity;
 }
 
-/** sqrt(x^2 + width^2) - width: |x| with a rounded corner, zero at zero. */
+/** sqrt(x^2 + width^2): |x| with a rounded corner. */
 export function softMagnitude(x: number, width: number): number {
-  return Math.sqrt(x * x + width * width) - width;
+  return Math.sqrt(x * x + width * width);
 }
 
 /**
@@ -44,28 +44,6 @@ export function wilsonTorque(
  */
 export function carriedDensity(densityHigh: number, densityLow: number, drawing: number, smoothSpeed: number): number {
   return densityLow + 0.5 * (densityHigh - densityLow) * (1 + Math.tanh(drawing / smoothSpeed));
-}
-
-/** Wilson's efficiencies at full displacement as a pump: volumetric, S = mu w / dp. */
-export function pumpVolumetricEfficiency(hersey: number, slipCoefficient: number): number {
-  return 1 - slipCoefficient / hersey;
-}
-
-/** Hydromechanical, as a pump. */
-export function pumpMechanicalEfficiency(
-  hersey: number,
-  viscousCoefficient: number,
-  frictionCoefficient: number,
-): number {
-  return 1 / (1 + viscousCoefficient * hersey + frictionCoefficient);
-}
-
-/** The Hersey number mu w / dp at which a pump after Wilson is most efficient. */
-export function bestHersey(slipCoefficient: number, viscousCoefficient: number, frictionCoefficient: number): number {
-  return (
-    slipCoefficient +
-    Math.sqrt(slipCoefficient * slipCoefficient + (slipCoefficient * (1 + frictionCoefficient)) / viscousCoefficient)
-  );
 }
 
 /**
