@@ -1,0 +1,82 @@
+import type { ElkExtendedEdge, ElkNode } from 'elkjs/lib/elk-api.js';
+import type { ElementFacts } from '../../live/source.js';
+
+export interface Placed {
+  readonly element: ElementFacts;
+  readonly x: number;
+  readonly y: number;
+  readonly width: number;
+  readonly height: number;
+}
+export interface Tie {
+  readonly key: string;
+  readonly branch: ElementFacts;
+  readonly kind: string;
+  /** Place of the port among the branch's tied ports. */
+  readonly order: number;
+  /** From the store to the branch for the first port, from the branch to the store for the others. */
+  readonly points: readonly (readonly [number, number])[];
+}
+export interface Layout {
+  readonly width: number;
+  readonly height: number;
+  readonly nodes: readonly Placed[];
+  readonly ties: readonly Tie[];
+}
+export const nodeWidth = 178;
+
+export function nodeHeight(element: ElementFacts): number {
+  const lines = Math.min(3, element.shows.length) + (element.position === undefined ? 0 : 1);
+  return 42 + lines * 19;
+}
+
+/** Layered layout with orthogonal lines (Sugiyama, Tagawa and Toda 1981) by the Eclipse Layout Kernel. */
+export async function layOut(elements: readonly ElementFacts[]): Promise<Layout> {
+  const { default: Elk } = await import('elkjs/lib/elk.bundled.js');
+  const names = new Set(elements.map((element) => element.name));
+  const children: ElkNode[] = elements.map((element) => ({ id: element.name, width: nodeWidth, height: nodeHeight(element) }));
+  const edges: ElkExtendedEdge[] = [];
+  const ties = new Map<string, { branch: ElementFacts; kind: string; order: number }>();
+  for (const branch of elements) {
+    let order = 0;
+    for (const port of branch.ports) {
+      if (port.store === undefined || !names.has(port.store)) continue;
+      const id = `${branch.name}.${port.name}`;
+      edges.push(order === 0 ? { id, sources: [port.store], targets: [branch.name] } : { id, sources: [branch.name], targets: [port.store] });
+      ties.set(id, { branch, kind: port.kind, order });
+      order += 1;
+    }
+  }
+  const graph: ElkNode = {
+    id: 'circuit',
+    layoutOptions: {
+      'elk.algorithm': 'layered',
+      'elk.direction': 'RIGHT',
+      'elk.edgeRouting': 'ORTHOGONAL',
+      'elk.layered.spacing.nodeNodeBetweenLayers': '52',
+      'elk.spacing.nodeNode': '30',
+      'elk.spacing.edgeNode': '22',
+      'elk.spacing.edgeEdge': '14',
+      'elk.layered.spacing.edgeNodeBetweenLayers': '22',
+      'elk.layered.nodePlacement.strategy': 'NETWORK_SIMPLEX',
+      'elk.layered.considerModelOrder.strategy': 'NODES_AND_EDGES',
+      'elk.padding': '[top=10,left=10,bottom=10,right=10]',
+    },
+    children,
+    edges,
+  };
+  const laid: ElkNode = await new Elk().layout(graph);
+  const byName = new Map(elements.map((element) => [element.name, element]));
+  return {
+    width: laid.width ?? 0,
+    height: laid.height ?? 0,
+    nodes: (laid.children ?? []).map((node) => ({ element: byName.get(node.id)!, x: node.x ?? 0, y: node.y ?? 0, width: node.width ?? 0, height: node.height ?? 0 })),
+    ties: (laid.edges ?? []).flatMap((edge) => {
+      const section = edge.sections?.[0];
+      const tie = ties.get(edge.id);
+      if (section === undefined || tie === undefined) return [];
+      const points = [section.startPoint, ...(section.bendPoints ?? []), section.endPoint].map((point): [number, number] => [point.x, point.y]);
+      return [{ key: edge.id, ...tie, points }];
+    }),
+  };
+}

@@ -1,0 +1,194 @@
+import { useEffect, useState } from 'preact/hooks';
+import type { ElementFacts } from '../../live/source.js';
+import { Glyph } from '../parts/glyph.js';
+import { type Layout, layOut, type Placed, type Tie } from '../store/circuit-layout.js';
+import { infoOf, status, subject } from '../store/connection.js';
+import { lookOf, worst } from '../store/pressures.js';
+import { shownAs, shownOf, withUnit } from '../store/units.js';
+import { beat, usePaths, valueOf } from '../store/values.js';
+
+/** The circuit as the bench file ties it, with what flows in it now. */
+export function Circuit() {
+  const elements = subject.value?.bench.elements;
+  const [layout, setLayout] = useState<Layout | undefined>(undefined);
+  const [problem, setProblem] = useState('');
+  const [chosen, setChosen] = useState<string | undefined>(undefined);
+  useEffect(() => {
+    let gone = false;
+    layOut(elements ?? [])
+      .then((laid) => !gone && setLayout(laid))
+      .catch((error: unknown) => setProblem(String(error)));
+    return () => {
+      gone = true;
+    };
+  }, [elements]);
+  usePaths((elements ?? []).flatMap((element) => [...element.shows, element.flow, element.position?.path, ...element.faults.map((fault) => fault.path)]));
+  const element = elements?.find((candidate) => candidate.name === chosen);
+  return (
+    <section class="panel circuit" aria-labelledby="circuit-title">
+      <header>
+        <h2 id="circuit-title">Circuit</h2>
+        <ul class="key">
+          <li class="oil">oil</li>
+          <li class="shaft">shaft, road</li>
+          <li class="gas">gas</li>
+          <li class="heat">heat</li>
+        </ul>
+      </header>
+      {problem !== '' && <p role="alert">The circuit could not be laid out: {problem}</p>}
+      {/* biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls must be reachable by keyboard */}
+      <div class="scroll" tabIndex={0} role="region" aria-label="Drawing of the circuit">
+        {layout !== undefined && (
+          <svg class="drawing" viewBox={`0 0 ${layout.width} ${layout.height}`} style={{ minWidth: `${Math.round(layout.width * 0.62)}px`, maxWidth: `${Math.round(layout.width * 1.5)}px` }}>
+            <title>Stores and branches with their present values</title>
+            {layout.ties.map((tie) => (
+              <TieLine key={tie.key} tie={tie} />
+            ))}
+            {layout.nodes.map((node) => (
+              <Node key={node.element.name} node={node} chosen={node.element.name === chosen} choose={() => setChosen(node.element.name === chosen ? undefined : node.element.name)} />
+            ))}
+          </svg>
+        )}
+      </div>
+      {element !== undefined && <Particulars element={element} close={() => setChosen(undefined)} />}
+    </section>
+  );
+}
+
+function faultsOf(element: ElementFacts): string[] {
+  return element.faults.filter((fault) => {
+    const value = valueOf(fault.path);
+    return Number.isFinite(value) && Math.abs(value - fault.rest) > 1e-6;
+  }).map((fault) => fault.about);
+}
+
+function TieLine({ tie }: { tie: Tie }) {
+  beat.value;
+  const flow = tie.branch.flow === undefined || tie.order > 1 ? Number.NaN : valueOf(tie.branch.flow);
+  const info = tie.branch.flow === undefined ? undefined : infoOf(tie.branch.flow);
+  const scale = info?.most ?? 1;
+  const moves = Math.abs(flow) > scale * 0.002;
+  const d = tie.points.map(([x, y], i) => `${i === 0 ? 'M' : 'L'}${x} ${y}`).join('');
+  return (
+    <g class={`tie ${tie.kind} ${moves ? 'moves' : ''}`}>
+      <path d={d} />
+      {moves && <Arrow points={tie.points} forward={flow > 0} size={6 + 5 * Math.min(1, Math.sqrt(Math.abs(flow) / scale))} />}
+    </g>
+  );
+}
+
+/** In the middle of the longest stretch of a line. */
+function Arrow({ points, forward, size }: { points: readonly (readonly [number, number])[]; forward: boolean; size: number }) {
+  let best = 0;
+  const length = (i: number) => Math.hypot(points[i + 1][0] - points[i][0], points[i + 1][1] - points[i][1]);
+  for (let i = 1; i + 1 < points.length; i += 1) if (length(i) > length(best)) best = i;
+  const [[x1, y1], [x2, y2]] = [points[best], points[best + 1]];
+  const angle = (Math.atan2(y2 - y1, x2 - x1) * 180) / Math.PI + (forward ? 0 : 180);
+  return <path class="arrow" d={`M${-size} ${-size * 0.75}L${size} 0L${-size} ${size * 0.75}Z`} transform={`translate(${(x1 + x2) / 2} ${(y1 + y2) / 2}) rotate(${angle})`} />;
+}
+
+function Node({ node, chosen, choose }: { node: Placed; chosen: boolean; choose: () => void }) {
+  beat.value;
+  const { element } = node;
+  const faults = faultsOf(element);
+  const warning = worst((status.value?.warnings ?? []).filter((candidate) => candidate.active && candidate.path.startsWith(`${element.name}.`)));
+  const tone = warning === undefined ? 'fine' : lookOf(warning).tone;
+  const position = element.position === undefined ? undefined : valueOf(element.position.path);
+  const lines = [
+    ...element.shows.slice(0, 3).map((path) => {
+      const info = infoOf(path);
+      return info === undefined ? '–' : `${path === element.flow && valueOf(path) < 0 ? '◀ ' : ''}${withUnit(path === element.flow ? Math.abs(valueOf(path)) : valueOf(path), shownOf(info))}${path === element.flow && valueOf(path) > 0 ? ' ▶' : ''}`;
+    }),
+    ...(element.position === undefined || position === undefined ? [] : [position > 0.98 ? element.position.one : position < 0.02 ? element.position.zero : `${Math.round(position * 100)} % ${element.position.one}`]),
+  ];
+  const said = `${element.name}, ${element.kind}: ${lines.join(', ')}${faults.length > 0 ? `; in fault: ${faults.join(', ')}` : ''}${warning === undefined ? '' : `; ${lookOf(warning).words}`}`;
+  return (
+    <g
+      class={`node ${element.role} tone-${tone} ${faults.length > 0 ? 'fault' : ''} ${chosen ? 'chosen' : ''}`}
+      transform={`translate(${node.x} ${node.y})`}
+      role="button"
+      tabIndex={0}
+      aria-pressed={chosen}
+      aria-label={said}
+      onClick={choose}
+      onKeyDown={(event) => {
+        if (event.key !== 'Enter' && event.key !== ' ') return;
+        event.preventDefault();
+        choose();
+      }}
+    >
+      <rect width={node.width} height={node.height} rx={element.role === 'store' ? 10 : 2} />
+      <g transform="translate(10 8)">
+        <Glyph kind={element.kind} />
+      </g>
+      <text class="name" x={42} y={25}>
+        {element.name.length > 17 ? `${element.name.slice(0, 16)}…` : element.name}
+      </text>
+      {lines.map((line, i) => (
+        // biome-ignore lint/suspicious/noArrayIndexKey: the lines keep their places
+        <text class="number" key={i} x={node.width - 12} y={47 + i * 19} text-anchor="end">
+          {line}
+        </text>
+      ))}
+      {(faults.length > 0 || warning !== undefined) && (
+        <g transform={`translate(${node.width - 14} 0)`}>
+          <circle class="badge" r={11} />
+          <text class="badge-text" text-anchor="middle" y={5}>
+            {faults.length > 0 ? '⚡' : warning === undefined ? '' : lookOf(warning).shape}
+          </text>
+        </g>
+      )}
+    </g>
+  );
+}
+
+function Particulars({ element, close }: { element: ElementFacts; close: () => void }) {
+  const known = subject.value;
+  const signals = known?.signals.filter((info) => info.path.startsWith(`${element.name}.`)) ?? [];
+  usePaths(signals.map((info) => info.path));
+  beat.value;
+  return (
+    <aside class="particulars" aria-label={`Particulars of ${element.name}`}>
+      <header>
+        <h3>
+          {element.name} <span class="quiet">{element.kind}</span>
+        </h3>
+        <button type="button" class="small" onClick={close}>
+          Close
+        </button>
+      </header>
+      <p>{element.about}</p>
+      {faultsOf(element).length > 0 && <p class="fault-text">⚡ in fault: {faultsOf(element).join(', ')}</p>}
+      <div class="pair">
+        <table>
+          <caption>Signals</caption>
+          <tbody>
+            {signals.map((info) => (
+              <tr key={info.path}>
+                <th scope="row" title={info.about}>
+                  {info.path.slice(element.name.length + 1)}
+                </th>
+                <td class="number">{withUnit(valueOf(info.path), shownOf(info))}</td>
+              </tr>
+            ))}
+          </tbody>
+        </table>
+        {element.parameters.length > 0 && (
+          <table>
+            <caption>Parameters</caption>
+            <tbody>
+              {element.parameters.map((parameter) => (
+                <tr key={parameter.name}>
+                  <th scope="row" title={parameter.about}>
+                    {parameter.name}
+                  </th>
+                  <td class="number">{withUnit(parameter.value, shownAs(parameter.unit))}</td>
+                </tr>
+              ))}
+            </tbody>
+          </table>
+        )}
+      </div>
+    </aside>
+  );
+}

@@ -1,0 +1,59 @@
+import { infoOf, subject } from '../store/connection.js';
+import { shownAs, withUnit } from '../store/units.js';
+import { beat, usePaths, valueOf } from '../store/values.js';
+
+const headings: Record<string, string> = {
+  supply: 'From outside',
+  stored: 'Into stores',
+  'kept loss': 'Losses that heat the oil',
+  'leaving loss': 'Losses that leave',
+  residual: 'Does not balance',
+};
+
+/** Where the power goes, from the ledger. */
+export function Energy() {
+  const powers = subject.value?.bench.powers ?? [];
+  usePaths(powers.map((power) => power.path));
+  beat.value;
+  if (powers.length === 0) return null;
+  const shown = shownAs('W');
+  const most = Math.max(1000, ...powers.map((power) => Math.abs(valueOf(power.path)) || 0));
+  const roles = [...new Set(powers.map((power) => power.role))];
+  return (
+    <section class="panel" aria-labelledby="energy-title">
+      <header>
+        <h2 id="energy-title">Energy flows</h2>
+        <span class="quiet number">full bar {withUnit(most, shown)}</span>
+      </header>
+      <table class="energy full">
+        <caption class="hidden">Powers of the ledger now</caption>
+        {roles.map((role) => (
+          <tbody key={role}>
+            <tr>
+              <th colSpan={3} scope="rowgroup" class="role">
+                {headings[role]}
+              </th>
+            </tr>
+            {powers
+              .filter((power) => power.role === role)
+              .map((power) => {
+                const value = valueOf(power.path);
+                const share = Math.min(1, Math.abs(value) / most) || 0;
+                return (
+                  <tr key={power.path}>
+                    <th scope="row" title={infoOf(power.path)?.about}>
+                      {power.name}
+                    </th>
+                    <td class="balance">
+                      <div class={value < 0 ? 'out' : 'in'} style={{ width: `${(share * 50).toFixed(2)}%`, [value < 0 ? 'right' : 'left']: '50%' }} />
+                    </td>
+                    <td class="number">{withUnit(value, shown)}</td>
+                  </tr>
+                );
+              })}
+          </tbody>
+        ))}
+      </table>
+    </section>
+  );
+}
