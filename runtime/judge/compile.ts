@@ -196,7 +196,11 @@ class Compiler {
       case 'given': {
         const condition = inside(formula.condition, -polarity);
         this.trigger(condition, first, last);
-        return this.both(operation.given, condition, inside(formula.then));
+        return this.both(operation.given, condition, inside(formula.consequence));
+      }
+      case 'happens': {
+        const of = inside(formula.of);
+        return this.emit({ kind: operation.happens, a: of.register }, of.horizon, 0);
       }
       case 'begins':
       case 'ends': {

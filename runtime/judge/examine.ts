@@ -31,6 +31,7 @@ export function examineFormula(formula: Formula): FormulaProblem[] {
     switch (at.is) {
       case 'compare':
       case 'given':
+      case 'happens':
       case 'begins':
       case 'ends':
         add(
@@ -111,7 +112,7 @@ export function examineFormula(formula: Formula): FormulaProblem[] {
     add(
       formula,
       `margins in different units (${[...units].join(', ')})`,
-      'split the requirement, or use whenever ... then, whose trigger lends no margin',
+      'split the requirement, or use whenever ... then or (...) happens, which lend no margin',
     );
   }
   return problems;

@@ -10,6 +10,7 @@
  *   given C then F                 rho(F, t) where C holds at t, +infinity where it does not: the trigger decides whether
  *                                  a tick counts and lends the margin no unit (margins of outputs given inputs, after
  *                                  Ferrere, Nickovic, Donze, Ito and Kapinski 2019)
+ *   happens F                      +infinity where F holds, -infinity where not: a condition that lends no margin
  *   begins F                       min(rho(F, t), -rho(F, t - 1)); ends F: min(-rho(F, t), rho(F, t - 1)); -infinity at t = 0
  *   always [a, b] F                least rho(F, s) for s in [t + a, t + b];  eventually: greatest
  *   left until [a, b] right        greatest over s in [t + a, t + b] of min(rho(right, s), least rho(left, r), r in [t, s))
@@ -57,10 +58,12 @@ export type Formula =
       readonly right: Expression;
       readonly unit: string;
       readonly per?: number;
+      /** How the author wrote `per`; for printing only. */
+      readonly perWritten?: string;
     }
   | { readonly is: 'and' | 'or' | 'implies'; readonly left: Formula; readonly right: Formula }
-  | { readonly is: 'not' | 'begins' | 'ends' | 'start' | 'end'; readonly of: Formula }
-  | { readonly is: 'given'; readonly condition: Formula; readonly then: Formula }
+  | { readonly is: 'not' | 'happens' | 'begins' | 'ends' | 'start' | 'end'; readonly of: Formula }
+  | { readonly is: 'given'; readonly condition: Formula; readonly consequence: Formula }
   | { readonly is: 'always' | 'eventually'; readonly from: number; readonly to: number | null; readonly of: Formula }
   | {
       readonly is: 'until';
@@ -101,13 +104,14 @@ export function horizon(formula: Formula): number {
     case 'implies':
       return Math.max(horizon(formula.left), horizon(formula.right));
     case 'not':
+    case 'happens':
     case 'begins':
     case 'ends':
     case 'start':
     case 'end':
       return horizon(formula.of);
     case 'given':
-      return Math.max(horizon(formula.condition), horizon(formula.then));
+      return Math.max(horizon(formula.condition), horizon(formula.consequence));
     case 'always':
     case 'eventually':
       return (formula.to ?? 0) + horizon(formula.of);
@@ -127,7 +131,7 @@ export function parts(formula: Formula): readonly Formula[] {
     case 'until':
       return [formula.left, formula.right];
     case 'given':
-      return [formula.condition, formula.then];
+      return [formula.condition, formula.consequence];
     default:
       return [formula.of];
   }
@@ -136,7 +140,8 @@ export function parts(formula: Formula): readonly Formula[] {
 /** Units of the margins that can become the margin of the formula; triggers lend none. */
 export function marginUnits(formula: Formula, found: Set<string> = new Set()): Set<string> {
   if (formula.is === 'compare') found.add(formula.unit);
-  else if (formula.is === 'given') marginUnits(formula.then, found);
+  else if (formula.is === 'given') marginUnits(formula.consequence, found);
+  else if (formula.is === 'happens') return found;
   else for (const part of parts(formula)) marginUnits(part, found);
   return found;
 }

@@ -31,7 +31,7 @@ function nesting(formula: Formula): number {
     case 'ends':
       return 1 + nesting(formula.of);
     case 'given':
-      return Math.max(nesting(formula.condition), nesting(formula.then));
+      return Math.max(nesting(formula.condition), nesting(formula.consequence));
     default:
       return 'of' in formula ? nesting(formula.of) : Math.max(nesting(formula.left), nesting(formula.right));
   }
@@ -153,10 +153,14 @@ class Evaluation {
       }
       case 'given': {
         const condition = this.inner(formula.condition, -polarity, first, last);
-        const then = this.inner(formula.then, polarity, first, last);
+        const consequence = this.inner(formula.consequence, polarity, first, last);
         if (first <= last)
           this.countTriggers(condition, first, Math.min(last, this.trace.ticks - 1), formula.condition);
-        return array(n, (t) => (holds(condition[t]!) ? then[t]! : Infinity));
+        return array(n, (t) => (holds(condition[t]!) ? consequence[t]! : Infinity));
+      }
+      case 'happens': {
+        const of = this.inner(formula.of, polarity, first, last);
+        return array(n, (t) => (holds(of[t]!) ? Infinity : -Infinity));
       }
       case 'begins':
       case 'ends': {

@@ -36,10 +36,11 @@ export const operation = {
   delay: 30,
   extreme: 31,
   until: 32,
-  signalBelow: 33,
-  signalNotAbove: 34,
-  signalAbove: 35,
-  signalNotBelow: 36,
+  happens: 33,
+  signalBelow: 34,
+  signalNotAbove: 35,
+  signalAbove: 36,
+  signalNotBelow: 37,
 } as const;
 
 const firstFormula = operation.below;
@@ -198,32 +199,32 @@ export class Program {
         case operation.below: {
           // Equal sides must give -0 here and +0 below; `+ 0` takes the sign off (-0) - 0.
           const margin = -(registers[a]! - registers[this.b[i]!]! + 0);
-          registers[to] = margin === margin ? margin : -this.sign[i]! * Infinity;
+          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
         case operation.notAbove: {
           const margin = registers[this.b[i]!]! - registers[a]! + 0;
-          registers[to] = margin === margin ? margin : -this.sign[i]! * Infinity;
+          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
         case operation.signalBelow: {
           const margin = -(signals[a]! - this.constant[i]! + 0);
-          registers[to] = margin === margin ? margin : -this.sign[i]! * Infinity;
+          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
         case operation.signalNotAbove: {
           const margin = this.constant[i]! - signals[a]! + 0;
-          registers[to] = margin === margin ? margin : -this.sign[i]! * Infinity;
+          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
         case operation.signalAbove: {
           const margin = -(this.constant[i]! - signals[a]! + 0);
-          registers[to] = margin === margin ? margin : -this.sign[i]! * Infinity;
+          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
         case operation.signalNotBelow: {
           const margin = signals[a]! - this.constant[i]! + 0;
-          registers[to] = margin === margin ? margin : -this.sign[i]! * Infinity;
+          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
         case operation.divide:
@@ -241,6 +242,11 @@ export class Program {
         case operation.given: {
           const condition = registers[a]!;
           registers[to] = condition > 0 || 1 / condition === Infinity ? registers[this.b[i]!]! : Infinity;
+          break;
+        }
+        case operation.happens: {
+          const margin = registers[a]!;
+          registers[to] = margin > 0 || 1 / margin === Infinity ? Infinity : -Infinity;
           break;
         }
         case operation.trigger:
@@ -276,7 +282,7 @@ export class Program {
     const before = time >= span ? windows[slot + 1 + ((time - span) & mask)]! : windows[slot]!;
     windows[slot + 1 + (time & mask)] = now;
     let change = now - before;
-    if (this.kind[i] === operation.rate) change = time === 0 ? 0 : change / ((time < span ? time : span) * this.step);
+    if (this.kind[i] === operation.rate) change = time === 0 ? 0 : change / (Math.min(time, span) * this.step);
     this.registers[this.to[i]!] = change;
   }
 
@@ -311,8 +317,8 @@ export class Program {
     const registers = this.registers;
     const now = registers[this.a[i]!]!;
     const to = this.to[i]!;
-    if (now !== now) windows[slot] = time + 1;
-    registers[to] = now === now ? now : 0;
+    if (Number.isNaN(now)) windows[slot] = time + 1;
+    registers[to] = Number.isNaN(now) ? 0 : now;
     slideExtreme(windows, slot + 1, this.span[i]!, this.mask[i]!, this.sign[i]!, time, registers, to, to);
     const seen = windows[slot]! - 1;
     if (seen >= 0 && time - seen <= this.span[i]!) registers[to] = Number.NaN;

@@ -41,7 +41,7 @@ export function slideExtreme(
   let drop = tail;
   let stride = 1;
   while (drop > head) {
-    const probe = drop - stride < head ? head : drop - stride;
+    const probe = Math.max(head, drop - stride);
     const other = memory[values + (probe & mask)]!;
     if (other > value || (other === value && 1 / other > 1 / value)) {
       keep = probe + 1;

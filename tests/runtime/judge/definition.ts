@@ -122,7 +122,9 @@ export function definition(formula: Formula, run: SampledRun, view: 1 | -1): num
       case 'implies':
         return Math.max(-rho(f.left, t, other), rho(f.right, t, polarity));
       case 'given':
-        return isTrue(rho(f.condition, t, other)) ? rho(f.then, t, polarity) : Infinity;
+        return isTrue(rho(f.condition, t, other)) ? rho(f.consequence, t, polarity) : Infinity;
+      case 'happens':
+        return isTrue(rho(f.of, t, polarity)) ? Infinity : -Infinity;
       case 'begins':
         return t === 0 ? -Infinity : Math.min(rho(f.of, t, polarity), -rho(f.of, t - 1, other));
       case 'ends':

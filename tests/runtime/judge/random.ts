@@ -93,14 +93,14 @@ export function formulas(most: number): fc.Arbitrary<Formula> {
       },
       {
         arbitrary: fc
-          .tuple(fc.constantFrom('not', 'begins', 'ends'), tie('inner'))
+          .tuple(fc.constantFrom('not', 'happens', 'begins', 'ends'), tie('inner'))
           .map(([is, of]) => ({ is, of }) as Formula),
         weight: 2,
       },
       {
         arbitrary: fc
           .tuple(tie('inner'), tie('inner'))
-          .map(([condition, then]) => ({ is: 'given' as const, condition, then })),
+          .map(([condition, consequence]) => ({ is: 'given' as const, condition, consequence })),
         weight: 1,
       },
       {

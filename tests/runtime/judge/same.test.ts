@@ -136,7 +136,7 @@ function exact(formula: Formula): boolean {
 function continuous(formula: Formula): boolean {
   const text = JSON.stringify(formula);
   return (
-    !/"(given|count|duration)"/.test(text) ||
+    !/"(given|happens|count|duration)"/.test(text) ||
     !/"(integral|mean|duration|product|quotient|rate|sum|difference)"/.test(text)
   );
 }
