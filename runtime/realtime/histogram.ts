@@ -31,7 +31,7 @@ export class Histogram {
   /** Records times[index], ns. Negative counts as 0; NaN is not counted. */
   record(times: Float64Array, index: number): void {
     const value = times[index]!;
-    if (!(value === value)) return;
+    if (Number.isNaN(value)) return;
     const bucket = bucketOf(value);
     this.buckets[bucket] = this.buckets[bucket]! + 1;
     this.head[0] = this.head[0]! + 1;

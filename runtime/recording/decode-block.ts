@@ -92,7 +92,7 @@ function copy(fields: Fields, name: string, unit: number): ArrayBuffer {
   const bytes = binary(fields, name);
   if (bytes.length % unit !== 0)
     throw new RecordingError(`field ${name} of ${bytes.length} bytes is not a multiple of ${unit}`);
-  return bytes.slice().buffer as ArrayBuffer;
+  return new Uint8Array(bytes).buffer;
 }
 
 function number(fields: Fields, name: string): number {

@@ -22,7 +22,8 @@ export function signalDigest(recording: Recording): string {
     if (block.kind !== 'rows') continue;
     ticks.update(block.ticks);
     hashes.update(block.hashes);
-    columns.forEach((column, i) => column.update(block.data.subarray(i * block.count, (i + 1) * block.count)));
+    for (let i = 0; i < columns.length; i += 1)
+      columns[i]!.update(block.data.subarray(i * block.count, (i + 1) * block.count));
   }
   const whole = createHash('sha256');
   whole.update(JSON.stringify(signals.map((signal) => signal.path)));

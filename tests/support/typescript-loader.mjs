@@ -1,6 +1,9 @@
-import { existsSync, readFileSync } from 'node:fs';
+import { createHash } from 'node:crypto';
+import { existsSync, mkdirSync, readFileSync, renameSync, writeFileSync } from 'node:fs';
 import { fileURLToPath } from 'node:url';
-import typescript from 'typescript';
+
+// The compiler takes half a second to load: what it made is kept, by the text it was made from.
+const cache = new URL('../../node_modules/.cache/oilspring-tests/', import.meta.url);
 
 export async function resolve(specifier, context, next) {
   if (/^(\.|\/|file:)/.test(specifier) && specifier.endsWith('.js')) {
@@ -13,7 +16,11 @@ export async function resolve(specifier, context, next) {
 export async function load(url, context, next) {
   if (!url.startsWith('file:') || !url.endsWith('.ts')) return next(url, context);
   const path = fileURLToPath(url);
-  const { outputText } = typescript.transpileModule(readFileSync(path, 'utf8'), {
+  const text = readFileSync(path, 'utf8');
+  const kept = new URL(`${createHash('sha256').update(path).update(text).digest('hex')}.mjs`, cache);
+  if (existsSync(kept)) return { format: 'module', source: readFileSync(kept, 'utf8'), shortCircuit: true };
+  const { default: typescript } = await import('typescript');
+  const { outputText } = typescript.transpileModule(text, {
     fileName: path,
     compilerOptions: {
       target: typescript.ScriptTarget.ES2022,
@@ -22,5 +29,9 @@ export async function load(url, context, next) {
       inlineSourceMap: true,
     },
   });
+  mkdirSync(cache, { recursive: true });
+  const fresh = new URL(`${kept.href}.${process.pid}.${Math.random()}`);
+  writeFileSync(fresh, outputText);
+  renameSync(fresh, kept);
   return { format: 'module', source: outputText, shortCircuit: true };
 }
