@@ -6,13 +6,14 @@ import * as frictionLaws from './laws/friction.js';
  *
  * The gear that is engaged is a bristle between the input and the output times the ratio. A request for another gear
  * first lets go (the capacity runs down), waits `shiftTime` in neutral, takes the new ratio, synchronises with
- * `synchroniserTorque` and then locks with `lockTorque`. The ratio changes only while nothing is transmitted. A gear
+ * `synchroniserTorque`, grows firm as the slip comes to rest and locks with `lockTorque`. The ratio changes only while nothing is transmitted. A gear
  * with ratio 0 is not there: a request for it means neutral.
  *
  * Losses are additive: drag on the input, and `meshLoss` of the transmitted torque against the output's motion.
  *
- * Fast mode: locked bristles against the lighter shaft, w = sqrt(lockTorque / (bristleAngle J)): 2500 N m, 0.02 rad
- * and 0.1 kg m2 at the input give 1120 rad/s; substeps of 0.25 ms resolve up to 1600 rad/s.
+ * Fast mode: locked bristles against the inertias of both shafts. With bristleAngle at the output the stiffness at the
+ * input is k = lockTorque / (bristleAngle |ratio|), the reduced inertia J = 1 / (1/Jin + ratio^2/Jout), w = sqrt(k/J):
+ * 2500 N m, 0.05 rad, ratio 6.2, 0.1 and 0.15 kg m2 give 1460 rad/s; substeps of 0.25 ms resolve up to 1600 rad/s.
  */
 export const steppedGearbox = branch({
   kind: 'stepped-gearbox',
@@ -50,17 +51,17 @@ export const steppedGearbox = branch({
     shiftTime: { unit: 's', about: 'time in neutral between gears', default: 0.3, least: 0.01, usual: [0.1, 1] },
     engagementTime: { unit: 's', about: 'lag with which a gear takes hold and lets go', default: 0.015, least: 0.003 },
     synchroniserTorque: { unit: 'N m', about: 'torque of synchronising at the input', default: 150, least: 1 },
-    synchronousSpeed: { unit: 'rad/s', about: 'slip below which the gear locks', default: 2, least: 0.1 },
+    synchronousSpeed: { unit: 'rad/s', about: 'slip within which the gear grows firm', default: 4, least: 0.1 },
     lockTorque: { unit: 'N m', about: 'torque that a locked gear takes at the input', default: 2500, least: 10 },
-    bristleAngle: { unit: 'rad', about: 'wind-up of a locked gear at lockTorque', default: 0.02, least: 0.002, most: 0.2 },
-    bristleDamping: { unit: 's/rad', about: 'damping of sticking', default: 0.02, least: 0, most: 1 },
+    bristleAngle: { unit: 'rad', about: 'wind-up of a locked gear at lockTorque, at the output', default: 0.05, least: 0.002, most: 0.2 },
+    bristleDamping: { unit: 's/rad', about: 'damping of sticking, at the output', default: 0.03, least: 0, most: 1 },
     dragTorque: { unit: 'N m', about: 'drag of bearings and oil at the input', default: 2, least: 0, usual: [0, 20] },
     meshLoss: { unit: '1', about: 'share of the transmitted torque that is lost', default: 0.02, least: 0, most: 0.3 },
   },
   starts: { gear: { unit: '1', about: 'engaged gear', default: 0, least: -1, most: 6 } },
   laws: frictionLaws,
   heat: 'leaves',
-  update({ parameter, memory, state, command, input, output, step }) {
+  update({ parameter, memory, state, command, step }) {
     const wanted = Math.floor(command.gearRequest + 0.5);
     const wantedRatio =
       wanted === 1
@@ -81,10 +82,10 @@ export const steppedGearbox = branch({
     const free = command.jammed < 0.5;
     const target = wantedRatio === 0 ? 0 : wanted;
     const idle = memory.gear === 0 ? Math.min(memory.neutralTime + step, 10) : 0;
-    const takes = free && memory.gear === 0 && target !== 0 && idle >= parameter.shiftTime && state.capacity < 1;
+    const takes = free && memory.gear === 0 && target !== 0 && idle + 1e-9 >= parameter.shiftTime && state.capacity < 0.01;
     const leaves = free && memory.gear !== 0 && memory.gear !== target;
-    const slip = input.speed - memory.ratio * output.speed;
-    const synchronised = memory.locked > 0.5 || Math.abs(slip) < parameter.synchronousSpeed;
+    // the lock falls in when the torque has settled: what it changes then is next to nothing
+    const synchronised = memory.locked > 0.5 || state.capacity > 0.98 * parameter.lockTorque;
     const holds = memory.gear !== 0 && !leaves && synchronised;
     memory.gear = takes ? target : leaves ? 0 : memory.gear;
     memory.ratio = takes ? wantedRatio : memory.ratio;
@@ -93,39 +94,64 @@ export const steppedGearbox = branch({
   },
   flows({ parameter, input, output, state, memory, command, derivative, reading, law }) {
     const slip = input.speed - memory.ratio * output.speed;
-    const torque = law.bristleTorque(state.capacity, slip, state.deflection, 1, parameter.bristleDamping);
+    const torque = law.bristleTorque(
+      state.capacity,
+      slip,
+      state.deflection,
+      1,
+      parameter.bristleDamping / Math.abs(memory.ratio),
+    );
     const drag = law.slidingTorque(parameter.dragTorque, input.speed, 1);
     const mesh = law.slidingTorque(parameter.meshLoss * Math.abs(memory.ratio * torque), output.speed, 0.5);
     const goal =
-      memory.gear === 0 ? 0 : memory.locked > 0.5 ? parameter.lockTorque : parameter.synchroniserTorque;
+      memory.gear === 0
+        ? 0
+        : memory.locked > 0.5
+          ? parameter.lockTorque
+          : law.settlingTorque(slip, parameter.synchronousSpeed, parameter.synchroniserTorque, parameter.lockTorque);
     input.torque -= torque + drag;
     output.torque += memory.ratio * torque - mesh;
     derivative.capacity = (goal - state.capacity) / parameter.engagementTime;
-    derivative.deflection = law.bristleRate(slip, state.deflection, 1, parameter.bristleAngle);
+    derivative.deflection = law.bristleRate(slip, state.deflection, 1, parameter.bristleAngle * Math.abs(memory.ratio));
     reading.inputTorque = torque + drag;
     reading.outputTorque = memory.ratio * torque - mesh;
     reading.slip = slip;
     reading.shifting =
       memory.gear === Math.floor(command.gearRequest + 0.5) && (memory.gear === 0 || memory.locked > 0.5) ? 0 : 1;
   },
-  energy({ parameter, state, law }) {
-    return law.bristleEnergy(state.capacity, state.deflection, parameter.bristleAngle);
+  energy({ parameter, state, memory, law }) {
+    return law.bristleEnergy(state.capacity, state.deflection, parameter.bristleAngle * Math.abs(memory.ratio));
   },
-  supply({ parameter, state, memory, law }) {
+  supply({ parameter, input, output, state, memory, law }) {
+    const slip = input.speed - memory.ratio * output.speed;
     const goal =
-      memory.gear === 0 ? 0 : memory.locked > 0.5 ? parameter.lockTorque : parameter.synchroniserTorque;
+      memory.gear === 0
+        ? 0
+        : memory.locked > 0.5
+          ? parameter.lockTorque
+          : law.settlingTorque(slip, parameter.synchronousSpeed, parameter.synchroniserTorque, parameter.lockTorque);
     const rate = (goal - state.capacity) / parameter.engagementTime;
-    return law.bristleEnergy(Math.max(rate, 0), state.deflection, parameter.bristleAngle);
+    return law.bristleEnergy(Math.max(rate, 0), state.deflection, parameter.bristleAngle * Math.abs(memory.ratio));
   },
   loss({ parameter, input, output, state, memory, law }) {
     const slip = input.speed - memory.ratio * output.speed;
-    const torque = law.bristleTorque(state.capacity, slip, state.deflection, 1, parameter.bristleDamping);
+    const torque = law.bristleTorque(
+      state.capacity,
+      slip,
+      state.deflection,
+      1,
+      parameter.bristleDamping / Math.abs(memory.ratio),
+    );
     const goal =
-      memory.gear === 0 ? 0 : memory.locked > 0.5 ? parameter.lockTorque : parameter.synchroniserTorque;
+      memory.gear === 0
+        ? 0
+        : memory.locked > 0.5
+          ? parameter.lockTorque
+          : law.settlingTorque(slip, parameter.synchronousSpeed, parameter.synchroniserTorque, parameter.lockTorque);
     const rate = (goal - state.capacity) / parameter.engagementTime;
     return (
-      law.bristleLoss(state.capacity, slip, state.deflection, 1, parameter.bristleDamping) +
-      law.bristleEnergy(Math.max(-rate, 0), state.deflection, parameter.bristleAngle) +
+      law.bristleLoss(state.capacity, slip, state.deflection, 1, parameter.bristleDamping / Math.abs(memory.ratio)) +
+      law.bristleEnergy(Math.max(-rate, 0), state.deflection, parameter.bristleAngle * Math.abs(memory.ratio)) +
       law.slidingTorque(parameter.dragTorque, input.speed, 1) * input.speed +
       law.slidingTorque(parameter.meshLoss * Math.abs(memory.ratio * torque), output.speed, 0.5) * output.speed
     );

@@ -2,8 +2,8 @@ import { branch } from './define.js';
 import * as tyreLaws from './laws/tyre.js';
 
 /**
- * Longitudinal tyre with relaxation: the carcass deflection u is the state, slip is u / relaxationLength, the force is
- * Fz lambda shape(slip / lambda), lambda the friction of the surface (Pacejka's similarity method: the slope stays).
+ * Longitudinal tyre with relaxation: the carcass deflection u is the state, slip is u / relaxationLength. The surface
+ * scales the peak friction: of the Magic Formula the whole curve, as the commonly quoted sets for wet, snow and ice do.
  * A damping that fades with speed settles rocking at standstill.
  *
  * Load: `loadShare` of the body's weight, plus `axlePosition` (1 rear, -1 front) times the load that pitching moves,
@@ -14,7 +14,7 @@ import * as tyreLaws from './laws/tyre.js';
 export const tyre = branch({
   kind: 'tyre',
   about: 'longitudinal tyre with relaxation length',
-  source: 'Pacejka, Tire and Vehicle Dynamics (Magic Formula, relaxation, similarity); Dugoff et al., SAE 700377',
+  source: 'Pacejka, Tire and Vehicle Dynamics (Magic Formula, relaxation); Dugoff et al., SAE 700377',
   valid: 'no lateral slip; slip up to 3 at standstill',
   ports: { wheel: 'shaft', road: 'road' },
   states: {
@@ -71,14 +71,14 @@ export const tyre = branch({
     const share =
       parameter.model === 0
         ? law.magicFormula(
-            slip / friction,
+            slip,
             parameter.stiffnessFactor,
             parameter.shapeFactor,
-            parameter.peakFriction,
+            parameter.peakFriction * friction,
             parameter.curvatureFactor,
           )
-        : law.dugoff(slip / friction, slope, parameter.peakFriction);
-    const elastic = load * friction * share;
+        : law.dugoff(slip, slope, parameter.peakFriction * friction);
+    const elastic = load * share;
     const damping =
       ((parameter.dampingTime * slope * load * friction) / parameter.relaxationLength) *
       slipVelocity *
@@ -115,14 +115,14 @@ export const tyre = branch({
     const share =
       parameter.model === 0
         ? law.magicFormula(
-            slip / friction,
+            slip,
             parameter.stiffnessFactor,
             parameter.shapeFactor,
-            parameter.peakFriction,
+            parameter.peakFriction * friction,
             parameter.curvatureFactor,
           )
-        : law.dugoff(slip / friction, slope, parameter.peakFriction);
-    const sliding = load * friction * share * slip;
+        : law.dugoff(slip, slope, parameter.peakFriction * friction);
+    const sliding = load * share * slip;
     const damping =
       ((parameter.dampingTime * slope * load * friction) / parameter.relaxationLength) *
       slipVelocity *

@@ -48,3 +48,8 @@ export function bristleLoss(
 export function slidingTorque(torque: number, speed: number, width: number): number {
   return torque * Math.tanh(speed / width);
 }
+
+/** Torque that grows from `loose` to `firm` as a slip comes to rest within about `width`. */
+export function settlingTorque(slip: number, width: number, loose: number, firm: number): number {
+  return loose + (firm - loose) * Math.exp((-slip * slip) / (width * width));
+}

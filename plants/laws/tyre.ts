@@ -4,13 +4,7 @@
  */
 
 /** Force share F/Fz at a slip: D sin(C atan(B k - E (B k - atan B k))). */
-export function magicFormula(
-  slip: number,
-  stiffness: number,
-  shape: number,
-  peak: number,
-  curvature: number,
-): number {
+export function magicFormula(slip: number, stiffness: number, shape: number, peak: number, curvature: number): number {
   const x = stiffness * slip;
   return peak * Math.sin(shape * Math.atan(x - curvature * (x - Math.atan(x))));
 }
@@ -49,5 +43,5 @@ export function relaxationSpeed(slipVelocity: number, velocity: number, least: n
 
 /** Share of the standstill damping that acts: 1 at rest, fading with rolling and slip speed over `width`, m/s. */
 export function standstillShare(slipVelocity: number, velocity: number, width: number): number {
-  return 1 / (1 + (slipVelocity * slipVelocity + velocity * velocity) / (width * width));
+  return Math.exp(-(slipVelocity * slipVelocity + velocity * velocity) / (width * width));
 }
