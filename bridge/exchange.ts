@@ -1,6 +1,6 @@
 import type { BlockLayout } from '../runtime/block.js';
 import { BuildError, type Problem } from '../runtime/contract.js';
-import type { EventCatalogue, Journal } from '../runtime/journal.js';
+import { type EventCatalogue, type Journal, noJournal } from '../runtime/journal.js';
 import type { SignalTable } from '../runtime/signals.js';
 import { requireSoundMap } from './examine-map.js';
 import { ExchangeTables } from './exchange-tables.js';
@@ -58,7 +58,7 @@ export class Exchange {
   private readonly bootWindowTicks: number;
   private readonly subjects: Int32Array[];
   private readonly linkSubjects: Int32Array;
-  private journal: Journal | undefined;
+  private journal: Journal = noJournal;
 
   constructor(options: ExchangeOptions) {
     const { map, layout, events, step } = options;
@@ -124,11 +124,11 @@ export class Exchange {
       const wasAwake = block[link.awake];
       link.take(block, tick);
       if (wasAwake === 0 && block[link.awake] === 1)
-        this.journal?.event(tick, this.awakeKind, this.linkSubjects[l], 0, 0, 0);
+        this.journal.event(tick, this.awakeKind, this.linkSubjects[l], 0, 0, 0);
       const receivers = link.receivers;
       for (let i = 0; i < receivers.length; i += 1) {
         const change = receivers[i].settle(block, counts);
-        if (change !== 0 && this.journal) {
+        if (change !== 0) {
           const ticks = change > 0 ? block[receivers[i].age] : block[receivers[i].gap];
           this.journal.event(
             tick,
@@ -147,7 +147,7 @@ export class Exchange {
       const { slots, signal } = this.tables.shares[i];
       signals[signal] = block[slots.replies] > 0 ? block[slots.oneStepReplies] / block[slots.replies] : 0;
     }
-    if (this.journal) this.tables.reports.report(block, tick, this.journal);
+    this.tables.reports.report(block, tick, this.journal);
   }
 
   /** Stage `publish`: writes and sends, in map order, what is due in this tick. */

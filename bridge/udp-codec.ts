@@ -40,6 +40,8 @@ export class UdpCodec {
   /** The range widened by what rounding to the wire adds: a bound that was sent must come back as inside. */
   private readonly wireLeast: Float64Array;
   private readonly wireMost: Float64Array;
+  /** Offsets of the padding bytes. */
+  private readonly gaps: Int32Array;
   /** The numbers of the last `quantise`, as they go on the wire. */
   private readonly wire: Float64Array;
 
@@ -58,6 +60,9 @@ export class UdpCodec {
     this.number = message.identifier;
     this.type = Uint8Array.from(signals, (signal) => typeNumbers[signal.type]);
     this.at = Int32Array.from(this.layout.fields, (field) => field.offset);
+    this.gaps = Int32Array.from(
+      this.layout.padding.flatMap(([from, count]) => Array.from({ length: count }, (_, i) => from + i)),
+    );
     this.scale = column((signal) => signal.scale);
     this.offset = column((signal) => signal.offset);
     this.least = column((signal) => signal.least);
@@ -96,7 +101,7 @@ export class UdpCodec {
   write(datagram: Datagram, sequence: number, tick: number): number {
     const view = datagram.view;
     writeHeader(view, kinds.message, this.number, sequence, tick, this.mapChecksum);
-    for (let i = header.length; i < this.length; i += 1) datagram.bytes[i] = 0;
+    for (let i = 0; i < this.gaps.length; i += 1) datagram.bytes[this.gaps[i]] = 0;
     for (let i = 0; i < this.count; i += 1) {
       const at = this.at[i];
       const wire = this.wire[i];

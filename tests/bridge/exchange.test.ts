@@ -3,6 +3,7 @@ import { describe, expect, it } from 'vitest';
 import { crc32 } from '../../bridge/checksums.js';
 import { kinds } from '../../bridge/udp-layout.js';
 import { hashBlock } from '../../runtime/block.js';
+import { noJournal } from '../../runtime/journal.js';
 import { Rig } from './rig.js';
 import { mapOf, message, sampleMap, signal } from './sample-map.js';
 
@@ -379,6 +380,20 @@ describe('one-step replies', () => {
 });
 
 describe('determinism', () => {
+  it('does not hang on whether a journal listens', () => {
+    const rigs = [new Rig(sampleMap()), new Rig(sampleMap())];
+    rigs[1].exchange.setJournal(noJournal);
+    for (const rig of rigs)
+      for (let tick = 0; tick < 20; tick += 1) {
+        rig.say('requests', [1, 0], tick % 7);
+        rig.say('requests', [1, 0], tick, 0, (d) => d.view.setUint8(20, 7));
+        rig.take(tick);
+        rig.publish(tick);
+      }
+    expect(rigs[1].block).toEqual(rigs[0].block);
+    expect(rigs[0].seen.length).toBeGreaterThan(2);
+  });
+
   it('gives the same bytes of the block, tick by tick, from the recorded inputs alone', () => {
     fc.assert(
       fc.property(

@@ -49,6 +49,8 @@ const anyMessage: fc.Arbitrary<MessageSpec> = fc
 
 function encode(codec: UdpCodec, values: readonly number[], sequence = 0, tick = 0): Datagram {
   const datagram = new Datagram(codec.length + 8);
+  // A buffer is used again and again: what an earlier datagram left must not shine through.
+  datagram.bytes.fill(0xff);
   expect(codec.quantise(Float64Array.from(values), 0, new Float64Array(codec.count), 0)).toBeGreaterThanOrEqual(0);
   expect(codec.write(datagram, sequence, tick)).toBe(codec.length);
   return datagram;
