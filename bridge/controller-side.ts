@@ -91,6 +91,8 @@ export class ControllerEndpoint {
   private tick = Number.NEGATIVE_INFINITY;
   /** The newest tick that the bench has said, for the echo. */
   private heard = 0;
+  /** Lockstep: the tick of the last barrier. */
+  private ended = Number.NEGATIVE_INFINITY;
   private controlSequence = 0;
 
   constructor(private readonly options: ControllerEndpointOptions) {
@@ -160,7 +162,10 @@ export class ControllerEndpoint {
       this.tick = tick;
       this.heard = tick;
       if (this.options.mode === 'lockstep') {
-        this.answer(1);
+        // One barrier may stand for several ticks: what fell due in any of them goes out. The first stands for its own.
+        const passed = this.ended === Number.NEGATIVE_INFINITY ? 1 : tick - this.ended;
+        this.ended = tick;
+        this.answer(passed > 0 && passed < longestBarrier ? passed : 1);
         this.control(kinds.done, tick);
       }
     } else if (kind === kinds.message) this.use(tick);
@@ -240,6 +245,7 @@ export class ControllerEndpoint {
     }
     this.tick = Number.NEGATIVE_INFINITY;
     this.heard = 0;
+    this.ended = Number.NEGATIVE_INFINITY;
   }
 
   private findTrigger(): number {
@@ -259,6 +265,9 @@ export class ControllerEndpoint {
     return best;
   }
 }
+
+/** Ticks that one barrier of lockstep stands for at most; a wider step of the tick is another run. */
+const longestBarrier = 256;
 
 /** Ticks by which a message may carry an older tick than one before it and still be of the same run. */
 const backwards = 1024;

@@ -96,6 +96,9 @@ describe('lockstep', () => {
     for (let tick = 0; tick < 21; tick += 1) run(tick);
     expect(controller.steps.map((one) => one.tick)).toEqual([0, 5, 10, 15]);
     expect([...new Set(rig.inputs.map((one) => one.tick))]).toEqual([1, 6, 11, 16]);
+    // A message that fell due between two barriers goes out, once, at the later one: gear is due in ticks 2 and 12.
+    expect(rig.inputs.filter((one) => one.bytes[6] === 33).map((one) => one.tick)).toEqual([6, 16]);
+    expect(rig.value('requests.received')).toBe(4);
   });
 
   it('derives the run again from the recorded inputs, without barrier and controller', () => {
