@@ -20,7 +20,14 @@ export const clutch = branch({
   },
   commands: {
     engagement: { unit: '1', about: 'wanted clamping, 0 open to 1 closed', rest: 0, least: 0, most: 1 },
-    capacityFactor: { unit: '1', about: 'share of the torque capacity that is left', rest: 1, least: 0, most: 2, fault: true },
+    capacityFactor: {
+      unit: '1',
+      about: 'share of the torque capacity that is left',
+      rest: 1,
+      least: 0,
+      most: 2,
+      fault: true,
+    },
   },
   readings: {
     torque: { unit: 'N m', about: 'torque from a to b' },
@@ -31,7 +38,13 @@ export const clutch = branch({
   parameters: {
     maximumTorque: { unit: 'N m', about: 'sliding torque when closed', least: 1, usual: [50, 5000] },
     engagementTime: { unit: 's', about: 'lag of the clamping', default: 0.03, least: 0.003, usual: [0.01, 0.3] },
-    bristleAngle: { unit: 'rad', about: 'slip after which friction is built up', default: 0.01, least: 0.002, most: 0.1 },
+    bristleAngle: {
+      unit: 'rad',
+      about: 'slip after which friction is built up',
+      default: 0.01,
+      least: 0.002,
+      most: 0.1,
+    },
     bristleDamping: { unit: 's/rad', about: 'damping of sticking', default: 0.05, least: 0, most: 1 },
     staticFactor: { unit: '1', about: 'sticking over sliding torque', default: 1, least: 1, most: 2 },
     staticWidth: { unit: 'rad/s', about: 'slip over which it falls to sliding', default: 2, least: 0.01 },
@@ -47,7 +60,8 @@ export const clutch = branch({
     const heat = law.bristleLoss(capacity, slip, state.deflection, level, parameter.bristleDamping);
     a.torque -= torque;
     b.torque += torque;
-    derivative.application = (command.engagement * command.capacityFactor - state.application) / parameter.engagementTime;
+    derivative.application =
+      (command.engagement * command.capacityFactor - state.application) / parameter.engagementTime;
     derivative.deflection = law.bristleRate(slip, state.deflection, level, parameter.bristleAngle);
     derivative.slipEnergy = heat;
     reading.torque = torque;

@@ -37,10 +37,30 @@ export const combustionEngine = branch({
   },
   parameters: {
     sweptVolume: { unit: 'm3', about: 'swept volume, four-stroke', least: 1e-4, usual: [0.001, 0.015] },
-    efficiency: { unit: '1', about: 'indicated efficiency e of the Willans line', default: 0.43, least: 0.1, most: 0.6, usual: [0.33, 0.48] },
-    dragPressure: { unit: 'Pa', about: 'mean effective pressure of drag at standstill', default: 1.5e5, least: 0, usual: [0.8e5, 2.5e5], difference: true },
+    efficiency: {
+      unit: '1',
+      about: 'indicated efficiency e of the Willans line',
+      default: 0.43,
+      least: 0.1,
+      most: 0.6,
+      usual: [0.33, 0.48],
+    },
+    dragPressure: {
+      unit: 'Pa',
+      about: 'mean effective pressure of drag at standstill',
+      default: 1.5e5,
+      least: 0,
+      usual: [0.8e5, 2.5e5],
+      difference: true,
+    },
     dragRise: { unit: 'Pa s', about: 'its rise per speed', default: 0, least: 0 },
-    heatingValue: { unit: 'J/kg', about: 'lower heating value of the fuel', default: 42.8e6, least: 1e6, usual: [42e6, 44e6] },
+    heatingValue: {
+      unit: 'J/kg',
+      about: 'lower heating value of the fuel',
+      default: 42.8e6,
+      least: 1e6,
+      usual: [42e6, 44e6],
+    },
     airPathTime: { unit: 's', about: 'lag of rising torque', default: 0.15, least: 0.01, usual: [0.05, 1.5] },
     cutTime: { unit: 's', about: 'lag of falling torque', default: 0.06, least: 0.01, usual: [0.02, 0.3] },
     requestWidth: { unit: 'N m', about: 'request over which the drag is made up for', default: 8, least: 0.1 },
@@ -109,8 +129,7 @@ export const combustionEngine = branch({
     const fuelPower = law.willansFuelPower(gross - drag, drag, forward, parameter.efficiency);
     shaft.torque += torque;
     derivative.indicatedTorque =
-      (demand - state.indicatedTorque) /
-      (demand > state.indicatedTorque ? parameter.airPathTime : parameter.cutTime);
+      (demand - state.indicatedTorque) / (demand > state.indicatedTorque ? parameter.airPathTime : parameter.cutTime);
     derivative.idleTorque =
       (command.ignition * law.between(governor, -0.1 * parameter.idleLimit, parameter.idleLimit) - state.idleTorque) /
       parameter.idleTime;
@@ -141,9 +160,7 @@ export const combustionEngine = branch({
         : 0,
   }),
   examine: ({ parameter }) => {
-    const rising = [1, 2, 3, 4].every(
-      (i) => parameter[`fullLoadSpeed${i + 1}`]! > parameter[`fullLoadSpeed${i}`]! + 1,
-    );
+    const rising = [1, 2, 3, 4].every((i) => parameter[`fullLoadSpeed${i + 1}`]! > parameter[`fullLoadSpeed${i}`]! + 1);
     return rising
       ? []
       : [

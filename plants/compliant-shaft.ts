@@ -46,9 +46,7 @@ export const compliantShaft = branch({
   loss({ parameter, a, b, state, law }) {
     const gap = 0.5 * parameter.backlash;
     const difference = a.speed - b.speed;
-    return (
-      parameter.damping * law.engagedShare(state.twist, gap, 0.1 * gap + 1e-9) * difference * difference
-    );
+    return parameter.damping * law.engagedShare(state.twist, gap, 0.1 * gap + 1e-9) * difference * difference;
   },
   initial: ({ start }) => ({ twist: start.twist! }),
 });

@@ -28,7 +28,12 @@ export const planetaryJoint = store({
     sunInertia: { unit: 'kg m2', about: 'inertia of the sun', least: 1e-5 },
     ringInertia: { unit: 'kg m2', about: 'inertia of the ring', least: 1e-5 },
     carrierInertia: { unit: 'kg m2', about: 'inertia of the carrier with the planets', least: 1e-5 },
-    viscousFriction: { unit: 'N m s', about: 'mesh friction per speed of the sun to the carrier', default: 0.002, least: 0 },
+    viscousFriction: {
+      unit: 'N m s',
+      about: 'mesh friction per speed of the sun to the carrier',
+      default: 0.002,
+      least: 0,
+    },
     meshFriction: { unit: 'N m', about: 'constant mesh friction on the sun', default: 0, least: 0 },
     maximumSunSpeed: { unit: 'rad/s', about: 'highest speed of the sun; 0: not watched', default: 0, least: 0 },
   },
@@ -80,9 +85,7 @@ export const planetaryJoint = store({
   },
   loss({ parameter, state, law }) {
     const relative = parameter.ratio * (state.carrierSpeed - state.ringSpeed);
-    return (
-      (parameter.viscousFriction * relative + law.slidingTorque(parameter.meshFriction, relative, 1)) * relative
-    );
+    return (parameter.viscousFriction * relative + law.slidingTorque(parameter.meshFriction, relative, 1)) * relative;
   },
   initial: ({ start }) => ({ carrierSpeed: start.carrierSpeed!, ringSpeed: start.ringSpeed! }),
 });

@@ -28,7 +28,13 @@ export const serviceBrake = branch({
   parameters: {
     maximumTorque: { unit: 'N m', about: 'torque at full application', least: 1, usual: [500, 30000] },
     applicationTime: { unit: 's', about: 'lag of the application', default: 0.08, least: 0.003, usual: [0.05, 0.5] },
-    bristleAngle: { unit: 'rad', about: 'slip after which friction is built up', default: 0.008, least: 0.002, most: 0.1 },
+    bristleAngle: {
+      unit: 'rad',
+      about: 'slip after which friction is built up',
+      default: 0.008,
+      least: 0.002,
+      most: 0.1,
+    },
     bristleDamping: { unit: 's/rad', about: 'damping of sticking', default: 0.02, least: 0, most: 1 },
     staticFactor: { unit: '1', about: 'sticking over sliding torque', default: 1, least: 1, most: 2 },
     staticWidth: { unit: 'rad/s', about: 'slip over which it falls to sliding', default: 0.5, least: 0.01 },

@@ -53,7 +53,13 @@ export const steppedGearbox = branch({
     synchroniserTorque: { unit: 'N m', about: 'torque of synchronising at the input', default: 150, least: 1 },
     synchronousSpeed: { unit: 'rad/s', about: 'slip within which the gear grows firm', default: 4, least: 0.1 },
     lockTorque: { unit: 'N m', about: 'torque that a locked gear takes at the input', default: 2500, least: 10 },
-    bristleAngle: { unit: 'rad', about: 'wind-up of a locked gear at lockTorque, at the output', default: 0.05, least: 0.002, most: 0.2 },
+    bristleAngle: {
+      unit: 'rad',
+      about: 'wind-up of a locked gear at lockTorque, at the output',
+      default: 0.05,
+      least: 0.002,
+      most: 0.2,
+    },
     bristleDamping: { unit: 's/rad', about: 'damping of sticking, at the output', default: 0.03, least: 0, most: 1 },
     dragTorque: { unit: 'N m', about: 'drag of bearings and oil at the input', default: 2, least: 0, usual: [0, 20] },
     meshLoss: { unit: '1', about: 'share of the transmitted torque that is lost', default: 0.02, least: 0, most: 0.3 },
@@ -82,7 +88,8 @@ export const steppedGearbox = branch({
     const free = command.jammed < 0.5;
     const target = wantedRatio === 0 ? 0 : wanted;
     const idle = memory.gear === 0 ? Math.min(memory.neutralTime + step, 10) : 0;
-    const takes = free && memory.gear === 0 && target !== 0 && idle + 1e-9 >= parameter.shiftTime && state.capacity < 0.01;
+    const takes =
+      free && memory.gear === 0 && target !== 0 && idle + 1e-9 >= parameter.shiftTime && state.capacity < 0.01;
     const leaves = free && memory.gear !== 0 && memory.gear !== target;
     // the lock falls in when the torque has settled: what it changes then is next to nothing
     const synchronised = memory.locked > 0.5 || state.capacity > 0.98 * parameter.lockTorque;

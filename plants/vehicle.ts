@@ -100,12 +100,7 @@ export const vehicle = store({
     derivative.altitude = state.velocity * law.slopeSine(command.grade);
     derivative.loadedMass = (command.payload - state.loadedMass) / parameter.loadingTime;
     derivative.pitchAcceleration = (acceleration - state.pitchAcceleration) / parameter.pitchTime;
-    derivative.rollingDeflection = law.bristleRate(
-      state.velocity,
-      state.rollingDeflection,
-      1,
-      parameter.rollingLength,
-    );
+    derivative.rollingDeflection = law.bristleRate(state.velocity, state.rollingDeflection, 1, parameter.rollingLength);
     reading.acceleration = acceleration;
     reading.tractiveForce = road.force;
     reading.rollingForce = rolling;

@@ -84,8 +84,14 @@ export function energyEconomyRating(energyRating: number, distanceRating: number
 }
 
 /** SAE J2951 metrics of traces sampled alike (10 Hz for the standard's own numbers), smoothed as the standard has it. */
-export function driveTraceMetrics(driven: ArrayLike<number>, target: ArrayLike<number>, step: number, load: TraceLoad): DriveTraceMetrics {
-  if (driven.length !== target.length) throw new Error(`driven trace has ${driven.length} samples, target ${target.length}: sample both alike`);
+export function driveTraceMetrics(
+  driven: ArrayLike<number>,
+  target: ArrayLike<number>,
+  step: number,
+  load: TraceLoad,
+): DriveTraceMetrics {
+  if (driven.length !== target.length)
+    throw new Error(`driven trace has ${driven.length} samples, target ${target.length}: sample both alike`);
   const d = smoothTrace(driven);
   const t = smoothTrace(target);
   const ofDriven = traceSums(d, step, load);
@@ -117,7 +123,8 @@ export interface SpeedRegression {
 
 export function speedRegression(driven: ArrayLike<number>, target: ArrayLike<number>): SpeedRegression {
   const n = target.length;
-  if (driven.length !== n || n < 3) throw new Error(`${driven.length} driven and ${n} target samples: give at least 3, as many of each`);
+  if (driven.length !== n || n < 3)
+    throw new Error(`${driven.length} driven and ${n} target samples: give at least 3, as many of each`);
   let sx = 0;
   let sy = 0;
   for (let i = 0; i < n; i += 1) {
@@ -146,8 +153,10 @@ export function regressionFaults(regression: SpeedRegression, topSpeed: number):
   const faults: string[] = [];
   const { slope, intercept, standardError, determination } = regression;
   if (!(slope >= 0.95 && slope <= 1.03)) faults.push(`slope ${slope.toFixed(4)} outside 0.950 .. 1.030`);
-  if (!(Math.abs(intercept) <= 0.02 * topSpeed)) faults.push(`intercept ${intercept.toFixed(3)} m/s above 2.0 % of ${topSpeed.toFixed(2)} m/s`);
-  if (!(standardError <= 0.05 * topSpeed)) faults.push(`standard error ${standardError.toFixed(3)} m/s above 5 % of ${topSpeed.toFixed(2)} m/s`);
+  if (!(Math.abs(intercept) <= 0.02 * topSpeed))
+    faults.push(`intercept ${intercept.toFixed(3)} m/s above 2.0 % of ${topSpeed.toFixed(2)} m/s`);
+  if (!(standardError <= 0.05 * topSpeed))
+    faults.push(`standard error ${standardError.toFixed(3)} m/s above 5 % of ${topSpeed.toFixed(2)} m/s`);
   if (!(determination >= 0.97)) faults.push(`r squared ${determination.toFixed(4)} below 0.970`);
   return faults;
 }
@@ -162,7 +171,13 @@ export interface Excursion {
  * Stretches outside the band that lies `tolerance` (m/s) above the highest and below the lowest target within
  * +/- `reach` seconds. 40 CFR 600.109-08: 2 mph, 1 s; stretches shorter than 2 s are allowed.
  */
-export function excursions(driven: ArrayLike<number>, target: ArrayLike<number>, step: number, tolerance = 0.89408, reach = 1): Excursion[] {
+export function excursions(
+  driven: ArrayLike<number>,
+  target: ArrayLike<number>,
+  step: number,
+  tolerance = 0.89408,
+  reach = 1,
+): Excursion[] {
   const found: Excursion[] = [];
   const wide = Math.round(reach / step);
   let since = -1;

@@ -1,4 +1,10 @@
-import type { CommandDeclaration, MemoryDeclaration, ParameterDeclaration, Quantity, ReadingDeclaration } from './contract.js';
+import type {
+  CommandDeclaration,
+  MemoryDeclaration,
+  ParameterDeclaration,
+  Quantity,
+  ReadingDeclaration,
+} from './contract.js';
 
 /**
  * Instruments: driver, sensors, power stages. Discrete, updated once a tick in their stage. Their update functions are

@@ -6,8 +6,8 @@ import type { InstrumentKind, InstrumentSetup, InstrumentUpdate } from '../../ru
  *   force = road load at the target ahead + mass * (target ahead - target) / previewTime + gain e + integral of gain e / resetTime
  *
  * (proportional-integral with feedforward and preview). A positive force goes to the accelerator, a negative one to
- * the brake, never both; pedals move at a limited rate. The integral is led back to what the pedals really do, so it
- * does not wind up. At a target of zero and standstill the driver holds with the brake and goes to neutral after a while.
+ * the brake, never both; pedals move at a limited rate. The integral rests while the pedals are at their ends or on
+ * their way (conditional integration), so it does not wind up. At a target of zero and standstill the driver holds with the brake and goes to neutral after a while.
  */
 export const driver: InstrumentKind = {
   kind: 'driver',
@@ -38,7 +38,12 @@ export const driver: InstrumentKind = {
     holdBrake: { unit: '1', about: 'brake pedal at standstill', default: 0.3, least: 0, most: 1 },
     holdSpeed: { unit: 'm/s', about: 'below this it is standstill', default: 0.15, least: 0.01 },
     neutralAfter: { unit: 's', about: 'standstill until neutral', default: 3, least: 0 },
-    brakeThreshold: { unit: 'N', about: 'retarding force below which the foot stays off the brake', default: 200, least: 0 },
+    brakeThreshold: {
+      unit: 'N',
+      about: 'retarding force below which the foot stays off the brake',
+      default: 200,
+      least: 0,
+    },
   },
   memory: {
     integral: { unit: 'N', about: 'integral part of the force' },
@@ -59,6 +64,7 @@ function build({ parameter, input, output, memory, step }: InstrumentSetup): Ins
   const resetTime = parameter['resetTime']!;
   const previewTime = parameter['previewTime']!;
   const move = parameter['pedalRate']! * step;
+  const slack = 0.02 * acceleratorForce;
   const holdBrake = parameter['holdBrake']!;
   const holdSpeed = parameter['holdSpeed']!;
   const neutralAfter = parameter['neutralAfter']!;
@@ -66,7 +72,12 @@ function build({ parameter, input, output, memory, step }: InstrumentSetup): Ins
   const inTarget = input['target']!;
   const inAhead = input['targetAhead'] ?? -1;
   const inVelocity = input['velocity']!;
-  const { integral, accelerator, brake, standing } = memory as Record<string, number> & { integral: number; accelerator: number; brake: number; standing: number };
+  const { integral, accelerator, brake, standing } = memory as Record<string, number> & {
+    integral: number;
+    accelerator: number;
+    brake: number;
+    standing: number;
+  };
   const outAccelerator = output['accelerator']!;
   const outBrake = output['brake']!;
   const outDirection = output['direction']!;
@@ -99,10 +110,12 @@ function build({ parameter, input, output, memory, step }: InstrumentSetup): Ins
     if (stands) {
       block[integral] = 0;
     } else {
-      // what is done lags behind what is wanted: the difference leads the integral back
+      // while the pedals cannot give what is wanted, the integral does not grow in that direction
       const done = nextAccelerator * acceleratorForce - (nextBrake > 0 ? nextBrake * brakeForce + threshold : 0);
-      const idle = force <= 0 && force >= -threshold && done === 0 ? force : done;
-      block[integral] = block[integral]! + (step / resetTime) * (gain * error + (idle - force));
+      const coasts = force <= 0 && force >= -threshold && done === 0;
+      const lacking = coasts ? 0 : force - done;
+      const winds = lacking * error > 0 && Math.abs(lacking) > slack;
+      if (!winds) block[integral] = block[integral]! + (step / resetTime) * gain * error;
     }
     signals[outAccelerator] = nextAccelerator;
     signals[outBrake] = nextBrake;

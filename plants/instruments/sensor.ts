@@ -50,7 +50,17 @@ function sensor({ kind, about, unit }: SensorSort): InstrumentKind {
   };
 }
 
-function build({ parameter, input, output, memory, extra, command, seed, identity, step }: InstrumentSetup): InstrumentUpdate {
+function build({
+  parameter,
+  input,
+  output,
+  memory,
+  extra,
+  command,
+  seed,
+  identity,
+  step,
+}: InstrumentSetup): InstrumentUpdate {
   const least = parameter['least']!;
   const most = parameter['most']!;
   const lag = parameter['lag']!;
@@ -102,5 +112,9 @@ export const speedSensor = sensor({ kind: 'speed-sensor', about: 'sensor of an a
 export const velocitySensor = sensor({ kind: 'velocity-sensor', about: 'sensor of a velocity', unit: 'm/s' });
 export const temperatureSensor = sensor({ kind: 'temperature-sensor', about: 'temperature sensor', unit: 'K' });
 export const torqueSensor = sensor({ kind: 'torque-sensor', about: 'torque sensor', unit: 'N m' });
-export const positionSensor = sensor({ kind: 'position-sensor', about: 'sensor of a position, angle or share', unit: 'input' });
+export const positionSensor = sensor({
+  kind: 'position-sensor',
+  about: 'sensor of a position, angle or share',
+  unit: 'input',
+});
 export const anySensor = sensor({ kind: 'sensor', about: 'sensor of any signal', unit: 'input' });

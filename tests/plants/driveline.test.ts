@@ -3,31 +3,65 @@ import * as library from '../../plants/library.js';
 import { Bench, element } from '../support/circuit.js';
 
 /** A 7.5 t truck of our own invention: engine, clutch, gearbox, axle, two lumped tyres, brakes on both axles. */
-function truck(settings: { velocity?: number; gear?: number; engaged?: number; substeps?: number; running?: number } = {}): Bench {
+function truck(
+  settings: { velocity?: number; gear?: number; engaged?: number; substeps?: number; running?: number } = {},
+): Bench {
   const velocity = settings.velocity ?? 0;
   const wheel = velocity / 0.48;
   const ratio = [1, 6.2, 3.6, 2.1, 1.35, 1, 0.75][settings.gear ?? 0]!;
   return new Bench(
     [
-      element('body', library.vehicle, { parameters: { mass: 7500, rollingResistance: 0.008, dragArea: 4.5, heightOfCentre: 1.1 }, start: { velocity } }),
-      element('crank', library.inertia, { parameters: { inertia: 0.9 }, start: { speed: settings.running ? 73.3 : 0 } }),
+      element('body', library.vehicle, {
+        parameters: { mass: 7500, rollingResistance: 0.008, dragArea: 4.5, heightOfCentre: 1.1 },
+        start: { velocity },
+      }),
+      element('crank', library.inertia, {
+        parameters: { inertia: 0.9 },
+        start: { speed: settings.running ? 73.3 : 0 },
+      }),
       element('gearInput', library.inertia, { parameters: { inertia: 0.1 }, start: { speed: wheel * 4.1 * ratio } }),
       element('propShaft', library.inertia, { parameters: { inertia: 0.15 }, start: { speed: wheel * 4.1 } }),
-      element('rearAxle', library.axle, { parameters: { ratio: 4.1, inertia: 24, dragTorque: 5 }, start: { speed: wheel } }),
+      element('rearAxle', library.axle, {
+        parameters: { ratio: 4.1, inertia: 24, dragTorque: 5 },
+        start: { speed: wheel },
+      }),
       element('frontAxle', library.axle, { parameters: { inertia: 18, meshLoss: 0 }, start: { speed: wheel } }),
-      element('engine', library.combustionEngine, { parameters: { sweptVolume: 0.0046 }, start: { running: settings.running ?? 0 }, to: { shaft: 'crank.shaft' } }),
+      element('engine', library.combustionEngine, {
+        parameters: { sweptVolume: 0.0046 },
+        start: { running: settings.running ?? 0 },
+        to: { shaft: 'crank.shaft' },
+      }),
       element('starter', library.torqueSource, { to: { shaft: 'crank.shaft' } }),
-      element('clutch', library.clutch, { parameters: { maximumTorque: 1000 }, start: { application: settings.engaged ?? 0 }, to: { a: 'crank.shaft', b: 'gearInput.shaft' } }),
+      element('clutch', library.clutch, {
+        parameters: { maximumTorque: 1000 },
+        start: { application: settings.engaged ?? 0 },
+        to: { a: 'crank.shaft', b: 'gearInput.shaft' },
+      }),
       element('gearbox', library.steppedGearbox, {
         parameters: { ratio1: 6.2, ratio2: 3.6, ratio3: 2.1, ratio4: 1.35, ratio5: 1, ratio6: 0.75, reverseRatio: 5.6 },
         start: { gear: settings.gear ?? 0 },
         to: { input: 'gearInput.shaft', output: 'propShaft.shaft' },
       }),
-      element('halfShafts', library.compliantShaft, { parameters: { stiffness: 3000, damping: 15 }, to: { a: 'propShaft.shaft', b: 'rearAxle.input' } }),
-      element('rearTyres', library.tyre, { parameters: { radius: 0.48, loadShare: 0.6, axlePosition: 1 }, to: { wheel: 'rearAxle.wheels', road: 'body.road' } }),
-      element('frontTyres', library.tyre, { parameters: { radius: 0.48, loadShare: 0.4, axlePosition: -1 }, to: { wheel: 'frontAxle.wheels', road: 'body.road' } }),
-      element('rearBrake', library.serviceBrake, { parameters: { maximumTorque: 16000 }, to: { shaft: 'rearAxle.wheels' } }),
-      element('frontBrake', library.serviceBrake, { parameters: { maximumTorque: 16000 }, to: { shaft: 'frontAxle.wheels' } }),
+      element('halfShafts', library.compliantShaft, {
+        parameters: { stiffness: 3000, damping: 15 },
+        to: { a: 'propShaft.shaft', b: 'rearAxle.input' },
+      }),
+      element('rearTyres', library.tyre, {
+        parameters: { radius: 0.48, loadShare: 0.6, axlePosition: 1 },
+        to: { wheel: 'rearAxle.wheels', road: 'body.road' },
+      }),
+      element('frontTyres', library.tyre, {
+        parameters: { radius: 0.48, loadShare: 0.4, axlePosition: -1 },
+        to: { wheel: 'frontAxle.wheels', road: 'body.road' },
+      }),
+      element('rearBrake', library.serviceBrake, {
+        parameters: { maximumTorque: 16000 },
+        to: { shaft: 'rearAxle.wheels' },
+      }),
+      element('frontBrake', library.serviceBrake, {
+        parameters: { maximumTorque: 16000 },
+        to: { shaft: 'frontAxle.wheels' },
+      }),
     ],
     { substeps: settings.substeps ?? 4 },
   );
@@ -39,7 +73,12 @@ const brakes = (bench: Bench, demand: number) => {
 };
 
 /** Greatest difference of a signal between a run at 4 substeps and one at 32, as a share of its span. */
-function deviation(make: (substeps: number) => Bench, drive: (bench: Bench, time: number) => void, seconds: number, paths: readonly string[]): Record<string, number> {
+function deviation(
+  make: (substeps: number) => Bench,
+  drive: (bench: Bench, time: number) => void,
+  seconds: number,
+  paths: readonly string[],
+): Record<string, number> {
   const coarse = make(4);
   const fine = make(32);
   const worst = new Map(paths.map((path) => [path, 0]));
@@ -70,7 +109,10 @@ describe('standstill', () => {
     bench.run(60);
     expect(Math.abs(bench.get('body.distance') - settled)).toBeLessThan(1e-3);
     expect(bench.get('body.gradeForce')).toBeCloseTo((7500 * 9.80665 * 0.1) / Math.sqrt(1.01), 6);
-    expect(bench.get('rearTyres.force') + bench.get('frontTyres.force') - bench.get('body.rollingForce')).toBeCloseTo(bench.get('body.gradeForce'), 1);
+    expect(bench.get('rearTyres.force') + bench.get('frontTyres.force') - bench.get('body.rollingForce')).toBeCloseTo(
+      bench.get('body.gradeForce'),
+      1,
+    );
   });
 
   it('a brake that is too weak for the grade lets it roll', () => {
@@ -89,8 +131,15 @@ describe('standstill', () => {
         element('body', library.vehicle, { parameters: { mass: 7500, rollingResistance: 0.008 } }),
         element('wheels', library.axle, { parameters: { ratio: 4.1, inertia: 40 } }),
         element('wall', library.speedSource),
-        element('clutch', library.clutch, { parameters: { maximumTorque: capacity }, start: { application: 1 }, to: { a: 'wall.shaft', b: 'wheels.input' } }),
-        element('tyres', library.tyre, { parameters: { radius: 0.48, loadShare: 1 }, to: { wheel: 'wheels.wheels', road: 'body.road' } }),
+        element('clutch', library.clutch, {
+          parameters: { maximumTorque: capacity },
+          start: { application: 1 },
+          to: { a: 'wall.shaft', b: 'wheels.input' },
+        }),
+        element('tyres', library.tyre, {
+          parameters: { radius: 0.48, loadShare: 1 },
+          to: { wheel: 'wheels.wheels', road: 'body.road' },
+        }),
       ]);
       bench.set('body.grade', 0.1);
       bench.set('clutch.engagement', 1);
@@ -124,7 +173,9 @@ describe('braking', () => {
     expect(bench.get('body.distance')).toBeGreaterThan(25);
     expect(Math.abs(bench.get('body.velocity'))).toBeLessThan(1e-4);
     expect(Math.abs(bench.energyResidual())).toBeLessThan(1e-6 * bench.plant.ledger[1]!);
-    expect((bench.get('rearBrake.brakeEnergy') + bench.get('frontBrake.brakeEnergy')) / bench.plant.ledger[1]!).toBeGreaterThan(0.85);
+    expect(
+      (bench.get('rearBrake.brakeEnergy') + bench.get('frontBrake.brakeEnergy')) / bench.plant.ledger[1]!,
+    ).toBeGreaterThan(0.85);
   });
 
   it('locks its wheels on ice and brakes with the friction of the ice', () => {
@@ -246,10 +297,16 @@ describe('accuracy at 4 substeps against 32, share of the span', () => {
       (substeps) =>
         new Bench(
           [
-            element('gear', library.planetaryJoint, { parameters: { ratio: 2.6, sunInertia: 0.03, ringInertia: 0.1, carrierInertia: 0.4 }, start: { carrierSpeed: 80, ringSpeed: 60 } }),
+            element('gear', library.planetaryJoint, {
+              parameters: { ratio: 2.6, sunInertia: 0.03, ringInertia: 0.1, carrierInertia: 0.4 },
+              start: { carrierSpeed: 80, ringSpeed: 60 },
+            }),
             element('engine', library.torqueSource, { to: { shaft: 'gear.carrier' } }),
             element('load', library.inertia, { parameters: { inertia: 8 }, start: { speed: 60 } }),
-            element('shaft', library.compliantShaft, { parameters: { stiffness: 12000, damping: 20, backlash: 0.02 }, to: { a: 'gear.ring', b: 'load.shaft' } }),
+            element('shaft', library.compliantShaft, {
+              parameters: { stiffness: 12000, damping: 20, backlash: 0.02 },
+              to: { a: 'gear.ring', b: 'load.shaft' },
+            }),
             element('unit', library.torqueSource, { to: { shaft: 'gear.sun' } }),
           ],
           { substeps },

@@ -1,59 +1,105 @@
 import { describe, expect, it } from 'vitest';
 import * as library from '../../plants/library.js';
-import type { ElementInstance } from '../../runtime/contract.js';
 import { unfuse } from '../../runtime/circuit/unfused.js';
+import type { ElementInstance } from '../../runtime/contract.js';
 import { Bench, element } from '../support/circuit.js';
 
 /** Every mechanical element on a small circuit of its own. */
 const circuits: Record<string, () => ElementInstance[]> = {
   'inertia, shaft-drag, torque-source': () => [
     element('rotor', library.inertia, { parameters: { inertia: 0.5, viscousFriction: 0.02 }, start: { speed: 80 } }),
-    element('drag', library.shaftDrag, { parameters: { constantDrag: 2, linearDrag: 0.01, quadraticDrag: 1e-4 }, to: { shaft: 'rotor.shaft' } }),
+    element('drag', library.shaftDrag, {
+      parameters: { constantDrag: 2, linearDrag: 0.01, quadraticDrag: 1e-4 },
+      to: { shaft: 'rotor.shaft' },
+    }),
     element('source', library.torqueSource, { parameters: { constantTorque: 30 }, to: { shaft: 'rotor.shaft' } }),
   ],
   'compliant-shaft with backlash, speed-source': () => [
     element('drive', library.speedSource, { parameters: { constantSpeed: 20 } }),
     element('rotor', library.inertia, { parameters: { inertia: 2 }, start: { speed: 18 } }),
-    element('shaft', library.compliantShaft, { parameters: { backlash: 0.05, stiffness: 5000 }, start: { twist: 0.01 }, to: { a: ['drive.shaft', 0.5], b: 'rotor.shaft' } }),
+    element('shaft', library.compliantShaft, {
+      parameters: { backlash: 0.05, stiffness: 5000 },
+      start: { twist: 0.01 },
+      to: { a: ['drive.shaft', 0.5], b: 'rotor.shaft' },
+    }),
   ],
   'planetary-joint': () => [
     element('planetary', library.planetaryJoint, {
       parameters: { ratio: 2.6, sunInertia: 0.02, ringInertia: 0.15, carrierInertia: 0.3, meshFriction: 1.5 },
       start: { carrierSpeed: 60, ringSpeed: 40 },
     }),
-    ...(['sun', 'ring', 'carrier'] as const).map((port) => element(`${port}Source`, library.torqueSource, { to: { shaft: `planetary.${port}` } })),
+    ...(['sun', 'ring', 'carrier'] as const).map((port) =>
+      element(`${port}Source`, library.torqueSource, { to: { shaft: `planetary.${port}` } }),
+    ),
   ],
   'axle, differential': () => [
     element('axle', library.axle, { parameters: { ratio: 4.1, inertia: 20, dragTorque: 15 }, start: { speed: 10 } }),
-    element('differential', library.differential, { parameters: { ratio: 3.9, wheelInertia: 10, inputInertia: 0.1, lockingFriction: 2, wheelFriction: 0.5 }, start: { speed: 10 } }),
-    element('tie', library.compliantShaft, { parameters: { stiffness: 8000, damping: 40 }, to: { a: 'axle.input', b: 'differential.input' } }),
+    element('differential', library.differential, {
+      parameters: { ratio: 3.9, wheelInertia: 10, inputInertia: 0.1, lockingFriction: 2, wheelFriction: 0.5 },
+      start: { speed: 10 },
+    }),
+    element('tie', library.compliantShaft, {
+      parameters: { stiffness: 8000, damping: 40 },
+      to: { a: 'axle.input', b: 'differential.input' },
+    }),
     element('left', library.torqueSource, { parameters: { constantTorque: 300 }, to: { shaft: 'differential.left' } }),
-    element('right', library.torqueSource, { parameters: { constantTorque: -500 }, to: { shaft: 'differential.right' } }),
+    element('right', library.torqueSource, {
+      parameters: { constantTorque: -500 },
+      to: { shaft: 'differential.right' },
+    }),
     element('wheel', library.torqueSource, { parameters: { constantTorque: 400 }, to: { shaft: 'axle.wheels' } }),
   ],
   'clutch, service-brake': () => [
     element('a', library.inertia, { parameters: { inertia: 0.8 }, start: { speed: 150 } }),
     element('b', library.inertia, { parameters: { inertia: 2 }, start: { speed: 20 } }),
-    element('clutch', library.clutch, { parameters: { maximumTorque: 900, staticFactor: 1.15 }, to: { a: 'a.shaft', b: ['b.shaft', 1.7] } }),
+    element('clutch', library.clutch, {
+      parameters: { maximumTorque: 900, staticFactor: 1.15 },
+      to: { a: 'a.shaft', b: ['b.shaft', 1.7] },
+    }),
     element('brake', library.serviceBrake, { parameters: { maximumTorque: 800 }, to: { shaft: 'b.shaft' } }),
   ],
   'stepped-gearbox, combustion-engine': () => [
     element('crank', library.inertia, { parameters: { inertia: 0.9 }, start: { speed: 80 } }),
-    element('engine', library.combustionEngine, { parameters: { sweptVolume: 0.0046, dragRise: 300 }, start: { running: 1 }, to: { shaft: 'crank.shaft' } }),
+    element('engine', library.combustionEngine, {
+      parameters: { sweptVolume: 0.0046, dragRise: 300 },
+      start: { running: 1 },
+      to: { shaft: 'crank.shaft' },
+    }),
     element('output', library.inertia, { parameters: { inertia: 30 }, start: { speed: 12 } }),
-    element('gearbox', library.steppedGearbox, { parameters: { ratio1: 6, ratio2: 3.2, ratio3: 1.8, reverseRatio: 5.5 }, start: { gear: 1 }, to: { input: 'crank.shaft', output: 'output.shaft' } }),
+    element('gearbox', library.steppedGearbox, {
+      parameters: { ratio1: 6, ratio2: 3.2, ratio3: 1.8, reverseRatio: 5.5 },
+      start: { gear: 1 },
+      to: { input: 'crank.shaft', output: 'output.shaft' },
+    }),
   ],
   'vehicle, tyre, force-source': () => [
-    element('body', library.vehicle, { parameters: { mass: 7500, rollingResistance: 0.008, dragArea: 4.5, constantLoad: 50, linearLoad: 2, quadraticLoad: 0.1, heightOfCentre: 1.2 }, start: { velocity: 5 } }),
+    element('body', library.vehicle, {
+      parameters: {
+        mass: 7500,
+        rollingResistance: 0.008,
+        dragArea: 4.5,
+        constantLoad: 50,
+        linearLoad: 2,
+        quadraticLoad: 0.1,
+        heightOfCentre: 1.2,
+      },
+      start: { velocity: 5 },
+    }),
     element('wheels', library.axle, { parameters: { inertia: 25 }, start: { speed: 10 } }),
-    element('rear', library.tyre, { parameters: { radius: 0.48, loadShare: 0.6, axlePosition: 1 }, to: { wheel: 'wheels.wheels', road: 'body.road' } }),
+    element('rear', library.tyre, {
+      parameters: { radius: 0.48, loadShare: 0.6, axlePosition: 1 },
+      to: { wheel: 'wheels.wheels', road: 'body.road' },
+    }),
     element('tow', library.forceSource, { parameters: { constantForce: 500 }, to: { road: 'body.road' } }),
     element('drive', library.torqueSource, { parameters: { constantTorque: 1500 }, to: { shaft: 'wheels.input' } }),
   ],
   'tyre by the friction model, velocity-source': () => [
     element('belt', library.velocitySource, { parameters: { constantVelocity: 15, weight: 20000 } }),
     element('wheel', library.inertia, { parameters: { inertia: 10 }, start: { speed: 32 } }),
-    element('tyre', library.tyre, { parameters: { radius: 0.48, loadShare: 1, model: 1, peakFriction: 0.8 }, to: { wheel: 'wheel.shaft', road: 'belt.road' } }),
+    element('tyre', library.tyre, {
+      parameters: { radius: 0.48, loadShare: 1, model: 1, peakFriction: 0.8 },
+      to: { wheel: 'wheel.shaft', road: 'belt.road' },
+    }),
   ],
 };
 
@@ -131,7 +177,10 @@ describe.each(Object.keys(circuits))('%s', (name) => {
           const slope = (up[i]! - down[i]!) / (2 * size);
           const scale = circuit.states[i]!.scale / circuit.states[k]!.scale;
           const error = Math.abs(slope - exact[i * n + k]!) / (Math.abs(slope) + 10 * scale);
-          if (error > 1e-4) expect.fail(`d ${circuit.states[i]!.path}' / d ${circuit.states[k]!.path}: ${exact[i * n + k]} against ${slope}`);
+          if (error > 1e-4)
+            expect.fail(
+              `d ${circuit.states[i]!.path}' / d ${circuit.states[k]!.path}: ${exact[i * n + k]} against ${slope}`,
+            );
           worst = Math.max(worst, error);
         }
       }
@@ -168,7 +217,8 @@ describe.each(Object.keys(circuits))('%s', (name) => {
       const plain = new Float64Array(circuit.states.length + 8);
       circuit.functions.rates(y, plant.u, plant.m, fused);
       unfuse(circuit).rates(y, plant.u, plant.m, plain);
-      for (let i = 0; i < circuit.states.length; i += 1) expect(Object.is(fused[i], plain[i]), `${circuit.states[i]!.path}: ${fused[i]} ${plain[i]}`).toBe(true);
+      for (let i = 0; i < circuit.states.length; i += 1)
+        expect(Object.is(fused[i], plain[i]), `${circuit.states[i]!.path}: ${fused[i]} ${plain[i]}`).toBe(true);
     }
   });
 

@@ -47,7 +47,8 @@ describe('European cycles: UN Regulation No. 83, Annex 4a, Appendix 1', () => {
 });
 
 const load = { constant: 400, linear: 5, quadratic: 2.7, effectiveMass: 1.015 * 7500 };
-const sampled = (scale = 1, shift = 0) => Float64Array.from({ length: 11801 }, (_, i) => scale * speedAt(nedc, 0.1 * i + shift));
+const sampled = (scale = 1, shift = 0) =>
+  Float64Array.from({ length: 11801 }, (_, i) => scale * speedAt(nedc, 0.1 * i + shift));
 
 describe('SAE J2951 drive-trace metrics', () => {
   it('CE 1030 against 1000 and D 10.1 against 10.0: ER 3.000, DR 1.000, EER 1.9417', () => {
@@ -85,7 +86,9 @@ describe('40 CFR 1037.555 speed regression and 40 CFR 600.109-08 band', () => {
     const top = 120 / 3.6;
     expect(regressionFaults(speedRegression(sampled(), sampled()), top)).toEqual([]);
     expect(regressionFaults(speedRegression(sampled(0.94), sampled()), top)).toHaveLength(1);
-    expect(regressionFaults(speedRegression(sampled(1, -20), sampled()), top).join()).toMatch(/r squared|standard error/);
+    expect(regressionFaults(speedRegression(sampled(1, -20), sampled()), top).join()).toMatch(
+      /r squared|standard error/,
+    );
   });
 
   it('finds slope, intercept and error of a known line', () => {

@@ -1,6 +1,6 @@
 import { describe, expect, it } from 'vitest';
-import * as frictionLaws from '../../plants/laws/friction.js';
 import * as engineLaws from '../../plants/laws/engine.js';
+import * as frictionLaws from '../../plants/laws/friction.js';
 import * as tyreLaws from '../../plants/laws/tyre.js';
 import * as library from '../../plants/library.js';
 import { Bench, element } from '../support/circuit.js';
@@ -22,7 +22,8 @@ function timeUntil(bench: Bench, path: string, level: number, most: number): num
 
 describe('coast-down, closed form for constant and quadratic drag (EPA "Vehicle Road Load Problem", Thompson)', () => {
   const parameters = { mass: 7500, rollingResistance: 0.008, dragArea: 4.5, airDensity: 1.2 };
-  const coasting = () => new Bench([element('body', library.vehicle, { parameters, start: { velocity: 80 / 3.6 } })], { step: 0.01 });
+  const coasting = () =>
+    new Bench([element('body', library.vehicle, { parameters, start: { velocity: 80 / 3.6 } })], { step: 0.01 });
 
   it.each([
     [70, 11.8547],
@@ -48,7 +49,12 @@ describe('coast-down, closed form for constant and quadratic drag (EPA "Vehicle 
     const q = Math.sqrt(4 * A * C - B * B);
     const at = (v: number) => (2 / q) * Math.atan((2 * C * v + B) / q);
     const bench = new Bench(
-      [element('body', library.vehicle, { parameters: { mass, constantLoad: f0, linearLoad: f1, quadraticLoad: f2 }, start: { velocity: 25 } })],
+      [
+        element('body', library.vehicle, {
+          parameters: { mass, constantLoad: f0, linearLoad: f1, quadraticLoad: f2 },
+          start: { velocity: 25 },
+        }),
+      ],
       { step: 0.01 },
     );
     expect(timeUntil(bench, 'body.velocity', 5, 400)).toBeCloseTo(at(25) - at(5), 4);
@@ -59,7 +65,10 @@ describe('road load and energy of trucks, from the definitions', () => {
   it('18 t at 60 km/h needs 38.73 kW', () => {
     const velocity = 60 / 3.6;
     const bench = new Bench([
-      element('body', library.vehicle, { parameters: { mass: 18000, rollingResistance: 0.0075, dragArea: 6, airDensity: 1.2 }, start: { velocity } }),
+      element('body', library.vehicle, {
+        parameters: { mass: 18000, rollingResistance: 0.0075, dragArea: 6, airDensity: 1.2 },
+        start: { velocity },
+      }),
     ]);
     expect(((bench.get('body.rollingForce') + bench.get('body.airDragForce')) * velocity) / 1e3).toBeCloseTo(38.73, 2);
     expect(bench.get('body.loss') / 1e3).toBeCloseTo(38.73, 2);
@@ -76,12 +85,19 @@ describe('road load and energy of trucks, from the definitions', () => {
     [7500, 723.4],
     [18000, 1736.1],
   ])('%s kg at 50 km/h hold %s kJ', (mass, kilojoule) => {
-    const bench = new Bench([element('body', library.vehicle, { parameters: { mass }, start: { velocity: 50 / 3.6 } })]);
+    const bench = new Bench([
+      element('body', library.vehicle, { parameters: { mass }, start: { velocity: 50 / 3.6 } }),
+    ]);
     expect(bench.get('body.energy') / 1e3).toBeCloseTo(kilojoule, 1);
   });
 
   it('payload loaded while driving keeps the velocity and the ledger', () => {
-    const bench = new Bench([element('body', library.vehicle, { parameters: { mass: 5000, rollingResistance: 0.008 }, start: { velocity: 10 } })]);
+    const bench = new Bench([
+      element('body', library.vehicle, {
+        parameters: { mass: 5000, rollingResistance: 0.008 },
+        start: { velocity: 10 },
+      }),
+    ]);
     bench.set('body.payload', 2500);
     bench.run(3);
     expect(bench.get('body.totalMass')).toBeCloseTo(7500, 1);
@@ -104,11 +120,17 @@ describe('braking distance', () => {
 
   it('load transfer: m a h / L (quasi-static)', () => {
     const bench = new Bench([
-      element('body', library.vehicle, { parameters: { mass: 7500, heightOfCentre: 1.2, wheelbase: 4 }, start: { velocity: 20 } }),
+      element('body', library.vehicle, {
+        parameters: { mass: 7500, heightOfCentre: 1.2, wheelbase: 4 },
+        start: { velocity: 20 },
+      }),
       element('brake', library.forceSource, { parameters: { constantForce: -5 * 7500 }, to: { road: 'body.road' } }),
       ...(['rear', 'front'] as const).flatMap((axle, i) => [
         element(`${axle}Axle`, library.axle, { parameters: { inertia: 10, meshLoss: 0 }, start: { speed: 40 } }),
-        element(`${axle}Tyres`, library.tyre, { parameters: { radius: 0.5, loadShare: 0.5, axlePosition: 1 - 2 * i }, to: { wheel: `${axle}Axle.wheels`, road: 'body.road' } }),
+        element(`${axle}Tyres`, library.tyre, {
+          parameters: { radius: 0.5, loadShare: 0.5, axlePosition: 1 - 2 * i },
+          to: { wheel: `${axle}Axle.wheels`, road: 'body.road' },
+        }),
       ]),
     ]);
     bench.run(2);
@@ -120,7 +142,12 @@ describe('braking distance', () => {
 });
 
 describe('tyre: Magic Formula (Bakker, Nyborg & Pacejka 1987), commonly quoted sets', () => {
-  const sets: Record<string, [number, number, number, number]> = { dry: [10, 1.9, 1, 0.97], wet: [12, 2.3, 0.82, 1], snow: [5, 2, 0.3, 1], ice: [4, 2, 0.1, 1] };
+  const sets: Record<string, [number, number, number, number]> = {
+    dry: [10, 1.9, 1, 0.97],
+    wet: [12, 2.3, 0.82, 1],
+    snow: [5, 2, 0.3, 1],
+    ice: [4, 2, 0.1, 1],
+  };
   const force = (set: string, slip: number) => tyreLaws.magicFormula(slip, ...sets[set]!);
 
   it('values, peak and slope of the formula', () => {
@@ -150,12 +177,20 @@ describe('tyre: Magic Formula (Bakker, Nyborg & Pacejka 1987), commonly quoted s
     return new Bench([
       element('belt', library.velocitySource, { parameters: { constantVelocity: velocity, weight: 40000 } }),
       element('drum', library.speedSource, { parameters: { constantSpeed: (velocity * (1 + slip)) / 0.5 } }),
-      element('tyre', library.tyre, { parameters: { radius: 0.5, loadShare: 1, ...parameters }, to: { wheel: 'drum.shaft', road: 'belt.road' } }),
+      element('tyre', library.tyre, {
+        parameters: { radius: 0.5, loadShare: 1, ...parameters },
+        to: { wheel: 'drum.shaft', road: 'belt.road' },
+      }),
     ]);
   }
 
   it('the element settles on the curve: slip 0.05, 0.1 and 0.18, dry', () => {
-    for (const [slip, share] of [[0.05, 0.73562], [0.1, 0.95584], [0.18019, 1], [-0.1, -0.95584]] as const) {
+    for (const [slip, share] of [
+      [0.05, 0.73562],
+      [0.1, 0.95584],
+      [0.18019, 1],
+      [-0.1, -0.95584],
+    ] as const) {
       const bench = stand(slip, {});
       bench.run(1);
       expect(bench.get('tyre.force') / 40000).toBeCloseTo(share, 3);
@@ -188,7 +223,10 @@ describe('driveline', () => {
     const bench = new Bench([
       element('light', library.inertia, { parameters: { inertia: 1 }, start: { speed: 1 } }),
       element('heavy', library.inertia, { parameters: { inertia: 10 }, start: { speed: -0.1 } }),
-      element('shaft', library.compliantShaft, { parameters: { stiffness: 1e4, damping: 0 }, to: { a: 'light.shaft', b: 'heavy.shaft' } }),
+      element('shaft', library.compliantShaft, {
+        parameters: { stiffness: 1e4, damping: 0 },
+        to: { a: 'light.shaft', b: 'heavy.shaft' },
+      }),
     ]);
     let before = bench.get('shaft.twist');
     const crossings: number[] = [];
@@ -211,7 +249,10 @@ describe('driveline', () => {
     const bench = new Bench([
       element('line', library.speedSource, { parameters: { constantSpeed: 100 } }),
       element('rotor', library.inertia, { parameters: { inertia: 2 } }),
-      element('clutch', library.clutch, { parameters: { maximumTorque: 400 }, to: { a: 'line.shaft', b: 'rotor.shaft' } }),
+      element('clutch', library.clutch, {
+        parameters: { maximumTorque: 400 },
+        to: { a: 'line.shaft', b: 'rotor.shaft' },
+      }),
     ]);
     bench.run(3, (time) => bench.set('clutch.engagement', profile(time)));
     expect(bench.get('rotor.speed')).toBeCloseTo(100, 1);
@@ -256,7 +297,10 @@ describe('planetary gear (Willis 1841)', () => {
       }),
       element('sun', library.torqueSource, { parameters: { constantTorque: 100 }, to: { shaft: 'gear.sun' } }),
       element('ring', library.torqueSource, { parameters: { constantTorque: 100 * z }, to: { shaft: 'gear.ring' } }),
-      element('carrier', library.torqueSource, { parameters: { constantTorque: -100 * (1 + z) }, to: { shaft: 'gear.carrier' } }),
+      element('carrier', library.torqueSource, {
+        parameters: { constantTorque: -100 * (1 + z) },
+        to: { shaft: 'gear.carrier' },
+      }),
     ]);
     bench.run(2);
     expect(bench.get('gear.sunSpeed')).toBeCloseTo((1 + z) * 100 - z * 30, 9);
@@ -264,10 +308,12 @@ describe('planetary gear (Willis 1841)', () => {
     expect(bench.get('gear.ringSpeed')).toBeCloseTo(30, 9);
   });
 
-  it('with the ring held the sun sees its own inertia and the carrier\'s over (1 + z)^2', () => {
+  it("with the ring held the sun sees its own inertia and the carrier's over (1 + z)^2", () => {
     const z = 3;
     const bench = new Bench([
-      element('gear', library.planetaryJoint, { parameters: { ratio: z, sunInertia: 0.02, ringInertia: 1e6, carrierInertia: 0.32, viscousFriction: 0 } }),
+      element('gear', library.planetaryJoint, {
+        parameters: { ratio: z, sunInertia: 0.02, ringInertia: 1e6, carrierInertia: 0.32, viscousFriction: 0 },
+      }),
       element('sun', library.torqueSource, { parameters: { constantTorque: 4 }, to: { shaft: 'gear.sun' } }),
     ]);
     bench.run(1);
@@ -277,17 +323,22 @@ describe('planetary gear (Willis 1841)', () => {
 
 describe('flywheel', () => {
   it('0.5 kg m2 at 8000 rpm holds 175.460 kJ', () => {
-    const bench = new Bench([element('wheel', library.inertia, { parameters: { inertia: 0.5 }, start: { speed: (8000 * Math.PI) / 30 } })]);
+    const bench = new Bench([
+      element('wheel', library.inertia, { parameters: { inertia: 0.5 }, start: { speed: (8000 * Math.PI) / 30 } }),
+    ]);
     expect(bench.storedEnergy() / 1e3).toBeCloseTo(175.46, 2);
   });
 
-  it('runs down by J w\' = -(a + c w^2): 8000 to 4000 rpm in 366.452 s, to rest in 1207.990 s', () => {
+  it("runs down by J w' = -(a + c w^2): 8000 to 4000 rpm in 366.452 s, to rest in 1207.990 s", () => {
     const rpm = Math.PI / 30;
     const wheel = () =>
       new Bench(
         [
           element('wheel', library.inertia, { parameters: { inertia: 0.5 }, start: { speed: 8000 * rpm } }),
-          element('drag', library.shaftDrag, { parameters: { constantDrag: 0.2, quadraticDrag: 1e-6, width: 0.01 }, to: { shaft: 'wheel.shaft' } }),
+          element('drag', library.shaftDrag, {
+            parameters: { constantDrag: 0.2, quadraticDrag: 1e-6, width: 0.01 },
+            to: { shaft: 'wheel.shaft' },
+          }),
         ],
         { step: 0.02 },
       );
@@ -309,7 +360,10 @@ describe('combustion engine: Willans line, 6.7 L, e 0.45, p_me0 1.7 bar, 42.8 MJ
   });
 
   it('the element burns just that at 100 and 600 N m, 356.3 and 215.15 g/kWh', () => {
-    for (const [torque, fuel, specific] of [[100, 5.597, 356.3], [600, 20.278, 215.15]] as const) {
+    for (const [torque, fuel, specific] of [
+      [100, 5.597, 356.3],
+      [600, 20.278, 215.15],
+    ] as const) {
       const bench = new Bench([
         element('dynamometer', library.speedSource, { parameters: { constantSpeed: 50 * Math.PI } }),
         element('engine', library.combustionEngine, {
