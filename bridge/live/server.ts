@@ -161,6 +161,7 @@ export async function startLiveServer(options: LiveServerOptions): Promise<LiveS
 
   /** Events since the last frame; never left out for a slow client: one that is too far behind is dropped instead. */
   let fresh: LiveEvent[] = [];
+  let knownNames = 0;
   const detach = source.attach({
     rows: (ticks, values, count) => desk.decimator.rows(ticks, values, count),
     event: (event) => {
@@ -172,8 +173,12 @@ export async function startLiveServer(options: LiveServerOptions): Promise<LiveS
   const frames = setInterval(
     () => {
       const events = fresh;
+      const names = source.events.kinds.length + source.events.subjects.length;
+      const grown = names !== knownNames;
+      knownNames = names;
       if (events.length > 0) fresh = [];
       for (const client of clients) {
+        if (grown && client.recording === undefined) client.send({ type: 'names', events: source.events });
         if (!client.frame(desk.decimator)) desk.counts.skippedFrames += 1;
         if (events.length > 0 && client.recording === undefined) client.send({ type: 'events', events, past: false });
       }

@@ -17,6 +17,7 @@ export const largestRequest = 16 * 1024;
 
 /** What the server sends. Every message is one msgpack map; numbers of signals index `hello.signals`. */
 export type ServerMessage =
+  | Names
   | Hello
   | Frame
   | HistoryAnswer
@@ -82,6 +83,11 @@ export interface Answer {
   readonly type: 'answer';
   readonly request: number;
   readonly acknowledgement: Acknowledgement;
+}
+/** Kinds or subjects of events have been added since the greeting. */
+export interface Names {
+  readonly type: 'names';
+  readonly events: EventNames;
 }
 /** A message that was not understood or not allowed. */
 export interface Refusal {

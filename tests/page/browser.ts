@@ -20,14 +20,27 @@ export function launch(): Promise<Browser> {
   if (executable === undefined) throw new Error('there is no chromium here');
   return chromium.launch({
     executablePath: executable,
-    args: ['--headless', '--no-sandbox', '--disable-gpu', '--disable-quic', '--no-first-run', '--disable-background-networking', '--disable-component-update', '--disable-sync'],
+    args: [
+      '--headless',
+      '--no-sandbox',
+      '--disable-gpu',
+      '--disable-quic',
+      '--no-first-run',
+      '--disable-background-networking',
+      '--disable-component-update',
+      '--disable-sync',
+    ],
   });
 }
 
 /** Builds the page as it is shipped, into a folder of its own so that tests never touch what others serve. */
 export async function builtPage(): Promise<string> {
   const outDir = join(root, 'dist', 'tests-page');
-  await build({ configFile: join(root, 'bridge', 'page', 'vite.config.mjs'), logLevel: 'error', build: { outDir, emptyOutDir: true } });
+  await build({
+    configFile: join(root, 'bridge', 'page', 'vite.config.mjs'),
+    logLevel: 'error',
+    build: { outDir, emptyOutDir: true },
+  });
   return outDir;
 }
 

@@ -39,7 +39,10 @@ describe.skipIf(reason !== undefined)('pictures of the page', () => {
   for (const size of sizes) {
     for (const scheme of ['light', 'dark'] as const) {
       test(`${size.name} ${scheme}`, async () => {
-        const page = await browser.newPage({ viewport: { width: size.width, height: size.height }, colorScheme: scheme });
+        const page = await browser.newPage({
+          viewport: { width: size.width, height: size.height },
+          colorScheme: scheme,
+        });
         const wrong = complaints(page);
         await page.goto(`${server.url}#token=${token}`);
         await page.locator('.drawing').waitFor();
@@ -49,9 +52,13 @@ describe.skipIf(reason !== undefined)('pictures of the page', () => {
           await page.waitForTimeout(600);
           await page.screenshot({ path: join(screens, `${view}-${size.name}-${scheme}.png`), fullPage: true });
           // nothing may make the page itself scroll sideways
-          expect(await page.evaluate(() => document.documentElement.scrollWidth), view).toBeLessThanOrEqual(size.width);
+          expect(await page.evaluate<number>('document.documentElement.scrollWidth'), view).toBeLessThanOrEqual(
+            size.width,
+          );
         }
-        const em = await page.locator('.banner .words').evaluate((words) => Number.parseFloat(getComputedStyle(words).fontSize));
+        const em = await page.evaluate<number>(
+          "Number.parseFloat(getComputedStyle(document.querySelector('.banner .words')).fontSize)",
+        );
         // the height of a capital in the fonts of the page is 0.71 em and more
         expect(em * 0.71).toBeGreaterThanOrEqual(size.height / 20);
         expect(wrong).toEqual([]);

@@ -4,17 +4,31 @@ import type { History } from '../../live/source.js';
 import { chartView, visibleRange } from '../store/charts.js';
 import { askHistory, subject, tick } from '../store/connection.js';
 import { clock, format, shownOf } from '../store/units.js';
+import { Scroll } from './scroll.js';
 
 /** What a chart shows, as text: least and greatest value in ten stretches of the visible time. */
-export function ChartTable({ name, lines }: { name: string; lines: readonly { readonly info: SignalInfo; readonly at: number }[] }) {
+export function ChartTable({
+  name,
+  lines,
+}: {
+  name: string;
+  lines: readonly { readonly info: SignalInfo; readonly at: number }[];
+}) {
   const [history, setHistory] = useState<History | undefined>(undefined);
   const key = lines.map((line) => line.at).join();
   const view = chartView.value;
-  // biome-ignore lint/correctness/useExhaustiveDependencies: the key stands for the lines
+  // the key stands for the lines
   useEffect(() => {
     const look = () => {
       const [from, to] = visibleRange(chartView.peek(), tick.peek());
-      void askHistory(lines.map((line) => line.at), from, to, 10).then(setHistory).catch(() => undefined);
+      void askHistory(
+        lines.map((line) => line.at),
+        from,
+        to,
+        10,
+      )
+        .then(setHistory)
+        .catch(() => undefined);
     };
     look();
     const timer = setInterval(look, 2000);
@@ -23,8 +37,7 @@ export function ChartTable({ name, lines }: { name: string; lines: readonly { re
   const bins = history?.ticks.length ?? 0;
   const step = subject.value?.bench.step ?? 0.001;
   return (
-    // biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls must be reachable by keyboard
-    <section class="scroll" aria-label={`Values of ${name}`} tabIndex={0}>
+    <Scroll label={`Values of ${name}`}>
       <table>
         <caption>Least … greatest value in each stretch, brought up to date every two seconds</caption>
         <thead>
@@ -45,13 +58,14 @@ export function ChartTable({ name, lines }: { name: string; lines: readonly { re
               </th>
               {lines.map(({ info }, i) => (
                 <td key={info.path} class="number">
-                  {format(history?.least[i * bins + bin] ?? Number.NaN, shownOf(info))} … {format(history?.most[i * bins + bin] ?? Number.NaN, shownOf(info))}
+                  {format(history?.least[i * bins + bin] ?? Number.NaN, shownOf(info))} …{' '}
+                  {format(history?.most[i * bins + bin] ?? Number.NaN, shownOf(info))}
                 </td>
               ))}
             </tr>
           ))}
         </tbody>
       </table>
-    </section>
+    </Scroll>
   );
 }

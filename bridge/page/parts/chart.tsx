@@ -7,7 +7,7 @@ import { askHistory, onFrame, onReset, subject, tick } from '../store/connection
 import { calm, coloursChanged, flowUnit, pressureUnit, speedUnit } from '../store/preferences.js';
 import { Strip } from '../store/strip.js';
 import { clock, format, shownOf, withUnit } from '../store/units.js';
-import { beat, subscribedSignals, usePaths, valueOf } from '../store/values.js';
+import { beat, newest, subscribedSignals, usePaths } from '../store/values.js';
 import { ChartTable } from './chart-table.js';
 
 const dashes: (number[] | undefined)[] = [undefined, [7, 4], [2, 3], [12, 4, 2, 4], [4, 2], [1, 4]];
@@ -30,9 +30,17 @@ export function Chart({ name, paths, height }: { name: string; paths: readonly s
     return known === undefined || at === undefined ? [] : [{ info: known.signals[at], at }];
   });
   // the chart is built anew when anything changes that uPlot takes only at the start
-  const key = [paths.join(), pressureUnit.value, speedUnit.value, flowUnit.value, coloursChanged.value, known?.recording?.name, known?.bench.name].join('|');
+  const key = [
+    paths.join(),
+    pressureUnit.value,
+    speedUnit.value,
+    flowUnit.value,
+    coloursChanged.value,
+    known?.recording?.name,
+    known?.bench.name,
+  ].join('|');
 
-  // biome-ignore lint/correctness/useExhaustiveDependencies: the key stands for everything that is read
+  // the key stands for everything that is read
   useEffect(() => {
     const place = box.current;
     if (place === null || known === undefined || lines.length === 0) return;
@@ -43,7 +51,10 @@ export function Chart({ name, paths, height }: { name: string; paths: readonly s
   const cursor = cursorTick.value;
   const step = known?.bench.step ?? 0.001;
   const here = cursor === undefined ? undefined : strip.current.at(cursor);
-  const said = here === undefined ? 'no cursor' : `${clock(here.tick, step, 2)}: ${lines.map((line, i) => `${line.info.path} ${withUnit(here.most[i], shownOf(line.info))}`).join(', ')}`;
+  const said =
+    here === undefined
+      ? 'no cursor'
+      : `${clock(here.tick, step, 2)}: ${lines.map((line, i) => `${line.info.path} ${withUnit(here.most[i], shownOf(line.info))}`).join(', ')}`;
   const [from, to] = visibleRange(chartView.value, tick.value);
   const keys = (event: KeyboardEvent) => {
     const now = cursor ?? to;
@@ -71,10 +82,21 @@ export function Chart({ name, paths, height }: { name: string; paths: readonly s
           {lines.map((line, i) => (
             <li key={line.info.path} title={line.info.about}>
               <svg class="sample" viewBox="0 0 26 8" aria-hidden="true">
-                <line x1="0" y1="4" x2="26" y2="4" class={`series${i % 6}`} stroke-dasharray={dashes[i % 6]?.join(' ')} />
+                <line
+                  x1="0"
+                  y1="4"
+                  x2="26"
+                  y2="4"
+                  class={`series${i % 6}`}
+                  stroke-dasharray={dashes[i % 6]?.join(' ')}
+                />
               </svg>
               <span class="path">{line.info.path}</span>
-              <output class="number">{here === undefined ? withUnit(valueOf(line.info.path), shownOf(line.info)) : span(here.least[i], here.most[i], line.info)}</output>
+              <output class="number">
+                {here === undefined
+                  ? withUnit(newest(line.info.path), shownOf(line.info))
+                  : span(here.least[i], here.most[i], line.info)}
+              </output>
             </li>
           ))}
         </ul>
@@ -102,7 +124,9 @@ export function Chart({ name, paths, height }: { name: string; paths: readonly s
 
 function span(least: number, most: number, info: SignalInfo): string {
   const shown = shownOf(info);
-  return format(least, shown) === format(most, shown) ? withUnit(most, shown) : `${format(least, shown)} … ${withUnit(most, shown)}`;
+  return format(least, shown) === format(most, shown)
+    ? withUnit(most, shown)
+    : `${format(least, shown)} … ${withUnit(most, shown)}`;
 }
 
 /** Settings of the pressures among the lines, drawn where they fall into the picture. */
@@ -122,7 +146,13 @@ function settingsOf(lines: readonly Line[]): { value: number; text: string }[] {
   return [...found.values()];
 }
 
-function draw(place: HTMLDivElement, step: number, interval: number, lines: readonly Line[], held: { current: Strip }): () => void {
+function draw(
+  place: HTMLDivElement,
+  step: number,
+  interval: number,
+  lines: readonly Line[],
+  held: { current: Strip },
+): () => void {
   const look = getComputedStyle(document.documentElement);
   const colour = (name: string) => look.getPropertyValue(name).trim();
   const em = Number.parseFloat(look.fontSize);
@@ -134,13 +164,22 @@ function draw(place: HTMLDivElement, step: number, interval: number, lines: read
   let again = false;
   let frame = 0;
 
-  const axis = { stroke: colour('--quiet'), font, grid: { stroke: colour('--grid'), width: 1 }, ticks: { stroke: colour('--grid'), width: 1, size: 4 } };
+  const axis = {
+    stroke: colour('--quiet'),
+    font,
+    grid: { stroke: colour('--grid'), width: 1 },
+    ticks: { stroke: colour('--grid'), width: 1, size: 4 },
+  };
   const plot = new uPlot(
     {
       width: Math.max(50, place.clientWidth),
       height: Math.max(50, place.clientHeight),
       legend: { show: false },
-      cursor: { sync: { key: sync.key, setSeries: false }, drag: { x: true, y: false, setScale: false }, points: { show: false } },
+      cursor: {
+        sync: { key: sync.key, setSeries: false },
+        drag: { x: true, y: false, setScale: false },
+        points: { show: false },
+      },
       select: { show: true, left: 0, top: 0, width: 0, height: 0 },
       scales: {
         x: {
@@ -153,7 +192,13 @@ function draw(place: HTMLDivElement, step: number, interval: number, lines: read
         ...Object.fromEntries(units.map((unit) => [`u${unit}`, { range: padded }])),
       },
       axes: [
-        { ...axis, size: em * 1.6, gap: 4, values: (_plot: uPlot, splits: number[]) => splits.map((x) => (x < 0 ? '' : clock(x / step, step, splits[1] - splits[0] < 1 ? 1 : 0))) },
+        {
+          ...axis,
+          size: em * 1.6,
+          gap: 4,
+          values: (_plot: uPlot, splits: number[]) =>
+            splits.map((x) => (x < 0 ? '' : clock(x / step, step, splits[1] - splits[0] < 1 ? 1 : 0))),
+        },
         ...units.slice(0, 2).map((unit, i) => ({
           ...axis,
           scale: `u${unit}`,
@@ -203,7 +248,10 @@ function draw(place: HTMLDivElement, step: number, interval: number, lines: read
     cursorTick.value = left < 0 ? undefined : Math.round(self.posToVal(left, 'x') / step);
   }
 
-  let strip = new Strip(lines.map((line) => line.at), interval);
+  let strip = new Strip(
+    lines.map((line) => line.at),
+    interval,
+  );
   held.current = strip;
   function load(): void {
     const view = chartView.peek();
@@ -215,7 +263,10 @@ function draw(place: HTMLDivElement, step: number, interval: number, lines: read
       return;
     }
     loading = true;
-    const mine = new Strip(lines.map((line) => line.at), wide);
+    const mine = new Strip(
+      lines.map((line) => line.at),
+      wide,
+    );
     askHistory(mine.signals, from - wide, view.live ? to + 1e6 : to + wide, bins)
       .then((history) => {
         mine.replace(history);
@@ -254,9 +305,12 @@ function draw(place: HTMLDivElement, step: number, interval: number, lines: read
   const offView = chartView.subscribe(load);
   const offCursor = cursorTick.subscribe((at) => {
     if (plot.cursor.event !== undefined && plot.cursor.event !== null) return;
-    if (at !== undefined && plot.data[0].length > 0) plot.setCursor({ left: plot.valToPos(at * step, 'x'), top: plot.over.clientHeight / 2 }, false);
+    if (at !== undefined && plot.data[0].length > 0)
+      plot.setCursor({ left: plot.valToPos(at * step, 'x'), top: plot.over.clientHeight / 2 }, false);
   });
-  const resize = new ResizeObserver(() => plot.setSize({ width: Math.max(50, place.clientWidth), height: Math.max(50, place.clientHeight) }));
+  const resize = new ResizeObserver(() =>
+    plot.setSize({ width: Math.max(50, place.clientWidth), height: Math.max(50, place.clientHeight) }),
+  );
   resize.observe(place);
   return () => {
     offFrame();
@@ -275,7 +329,13 @@ function padded(_plot: uPlot, least: number | null, most: number | null): [numbe
   return [least - room, most + room];
 }
 
-function drawSettings(plot: uPlot, settings: readonly { value: number; text: string }[], scale: string, ink: string, font: string): void {
+function drawSettings(
+  plot: uPlot,
+  settings: readonly { value: number; text: string }[],
+  scale: string,
+  ink: string,
+  font: string,
+): void {
   const { ctx, bbox } = plot;
   const ratio = devicePixelRatio;
   ctx.save();

@@ -7,8 +7,14 @@ const drawings: readonly [RegExp, preact.JSX.Element][] = [
   [/valve/, <path d="M3 6v12l18-12v12ZM12 12V4M9 4h6" />],
   [/orifice|throttle|leak|line-resistance|pipe/, <path d="M2 12h20M5 5c4 4 10 4 14 0M5 19c4-4 10-4 14 0" />],
   [/clutch|synchron/, <path d="M2 12h7M9 4v16M13 4v16M13 12h9" />],
-  [/gear|planet|ratio|cvt/, <path d="M12 6a6 6 0 1 0 0 12 6 6 0 0 0 0-12ZM12 2v4M12 18v4M2 12h4M18 12h4M5 5l3 3M16 16l3 3M19 5l-3 3M8 16l-3 3" />],
-  [/vehicle|body/, <path d="M2 16V8h12v8M14 11h5l3 3v2H2M6.5 14.5a2 2 0 1 0 0 4 2 2 0 0 0 0-4M17.5 14.5a2 2 0 1 0 0 4 2 2 0 0 0 0-4" />],
+  [
+    /gear|planet|ratio|cvt/,
+    <path d="M12 6a6 6 0 1 0 0 12 6 6 0 0 0 0-12ZM12 2v4M12 18v4M2 12h4M18 12h4M5 5l3 3M16 16l3 3M19 5l-3 3M8 16l-3 3" />,
+  ],
+  [
+    /vehicle|body/,
+    <path d="M2 16V8h12v8M14 11h5l3 3v2H2M6.5 14.5a2 2 0 1 0 0 4 2 2 0 0 0 0-4M17.5 14.5a2 2 0 1 0 0 4 2 2 0 0 0 0-4" />,
+  ],
   [/wheel|tyre|road/, <path d="M12 3a9 9 0 1 0 0 18 9 9 0 0 0 0-18ZM12 8a4 4 0 1 0 0 8 4 4 0 0 0 0-8" />],
   [/inertia|shaft|flywheel/, <path d="M2 12h5M7 4h10v16H7zM17 12h5" />],
   [/engine|cylinder/, <path d="M6 3v12h12V3M6 8h12M12 15v4M9 22l3-3 3 3" />],

@@ -4,7 +4,9 @@ import { subject, tick } from './connection.js';
 import { read, write } from './preferences.js';
 
 /** What all charts show: the newest `seconds`, or a range of ticks that stands still. */
-export type ChartView = { readonly live: true; readonly seconds: number } | { readonly live: false; readonly from: number; readonly to: number };
+export type ChartView =
+  | { readonly live: true; readonly seconds: number }
+  | { readonly live: false; readonly from: number; readonly to: number };
 export const chartView = signal<ChartView>({ live: true, seconds: 30 });
 /** Where the shared cursor stands, in ticks. */
 export const cursorTick = signal<number | undefined>(undefined);
@@ -68,7 +70,10 @@ effect(() => {
     charts.value = bench.charts;
   }
   const recording = subject.value?.recording;
-  chartView.value = recording === undefined ? { live: true, seconds: 30 } : { live: false, from: recording.firstTick, to: Math.max(recording.firstTick + 20, recording.lastTick) };
+  chartView.value =
+    recording === undefined
+      ? { live: true, seconds: 30 }
+      : { live: false, from: recording.firstTick, to: Math.max(recording.firstTick + 20, recording.lastTick) };
 });
 export function changeCharts(next: readonly ChartFacts[]): void {
   charts.value = next;

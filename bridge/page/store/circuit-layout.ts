@@ -23,7 +23,16 @@ export interface Layout {
   readonly nodes: readonly Placed[];
   readonly ties: readonly Tie[];
 }
-export const nodeWidth = 178;
+export const nodeWidth = 176;
+
+/** Of the two drawings, the one that is larger in a place of this size, px. */
+export function fitting(layouts: readonly Layout[], width: number, height: number): Layout | undefined {
+  const scale = (layout: Layout) => Math.min(width / layout.width, height / layout.height);
+  return layouts.reduce<Layout | undefined>(
+    (best, layout) => (best === undefined || scale(layout) > scale(best) * 1.05 ? layout : best),
+    undefined,
+  );
+}
 
 export function nodeHeight(element: ElementFacts): number {
   const lines = Math.min(3, element.shows.length) + (element.position === undefined ? 0 : 1);
@@ -31,10 +40,14 @@ export function nodeHeight(element: ElementFacts): number {
 }
 
 /** Layered layout with orthogonal lines (Sugiyama, Tagawa and Toda 1981) by the Eclipse Layout Kernel. */
-export async function layOut(elements: readonly ElementFacts[]): Promise<Layout> {
+export async function layOut(elements: readonly ElementFacts[], direction: 'RIGHT' | 'DOWN'): Promise<Layout> {
   const { default: Elk } = await import('elkjs/lib/elk.bundled.js');
   const names = new Set(elements.map((element) => element.name));
-  const children: ElkNode[] = elements.map((element) => ({ id: element.name, width: nodeWidth, height: nodeHeight(element) }));
+  const children: ElkNode[] = elements.map((element) => ({
+    id: element.name,
+    width: nodeWidth,
+    height: nodeHeight(element),
+  }));
   const edges: ElkExtendedEdge[] = [];
   const ties = new Map<string, { branch: ElementFacts; kind: string; order: number }>();
   for (const branch of elements) {
@@ -42,7 +55,11 @@ export async function layOut(elements: readonly ElementFacts[]): Promise<Layout>
     for (const port of branch.ports) {
       if (port.store === undefined || !names.has(port.store)) continue;
       const id = `${branch.name}.${port.name}`;
-      edges.push(order === 0 ? { id, sources: [port.store], targets: [branch.name] } : { id, sources: [branch.name], targets: [port.store] });
+      edges.push(
+        order === 0
+          ? { id, sources: [port.store], targets: [branch.name] }
+          : { id, sources: [branch.name], targets: [port.store] },
+      );
       ties.set(id, { branch, kind: port.kind, order });
       order += 1;
     }
@@ -51,9 +68,9 @@ export async function layOut(elements: readonly ElementFacts[]): Promise<Layout>
     id: 'circuit',
     layoutOptions: {
       'elk.algorithm': 'layered',
-      'elk.direction': 'RIGHT',
+      'elk.direction': direction,
       'elk.edgeRouting': 'ORTHOGONAL',
-      'elk.layered.spacing.nodeNodeBetweenLayers': '52',
+      'elk.layered.spacing.nodeNodeBetweenLayers': direction === 'RIGHT' ? '52' : '40',
       'elk.spacing.nodeNode': '30',
       'elk.spacing.edgeNode': '22',
       'elk.spacing.edgeEdge': '14',
@@ -70,12 +87,20 @@ export async function layOut(elements: readonly ElementFacts[]): Promise<Layout>
   return {
     width: laid.width ?? 0,
     height: laid.height ?? 0,
-    nodes: (laid.children ?? []).map((node) => ({ element: byName.get(node.id)!, x: node.x ?? 0, y: node.y ?? 0, width: node.width ?? 0, height: node.height ?? 0 })),
+    nodes: (laid.children ?? []).map((node) => ({
+      element: byName.get(node.id)!,
+      x: node.x ?? 0,
+      y: node.y ?? 0,
+      width: node.width ?? 0,
+      height: node.height ?? 0,
+    })),
     ties: (laid.edges ?? []).flatMap((edge) => {
       const section = edge.sections?.[0];
       const tie = ties.get(edge.id);
       if (section === undefined || tie === undefined) return [];
-      const points = [section.startPoint, ...(section.bendPoints ?? []), section.endPoint].map((point): [number, number] => [point.x, point.y]);
+      const points = [section.startPoint, ...(section.bendPoints ?? []), section.endPoint].map(
+        (point): [number, number] => [point.x, point.y],
+      );
       return [{ key: edge.id, ...tie, points }];
     }),
   };

@@ -1,6 +1,15 @@
 import { computed, signal } from '@preact/signals';
 import type { SignalInfo } from '../../../runtime/contract.js';
-import type { Acknowledgement, BenchFacts, EventNames, History, HandCommand, LiveEvent, LiveStatus, RecordingEntry } from '../../live/source.js';
+import type {
+  Acknowledgement,
+  BenchFacts,
+  EventNames,
+  HandCommand,
+  History,
+  LiveEvent,
+  LiveStatus,
+  RecordingEntry,
+} from '../../live/source.js';
 import type { Frame, PageMessage, ServerMessage } from '../../live/wire.js';
 import { decode, doublesOf, encode, floatsOf, wireVersion } from '../../live/wire.js';
 import { who } from './preferences.js';
@@ -10,13 +19,13 @@ export interface Subject {
   readonly bench: BenchFacts;
   readonly signals: readonly SignalInfo[];
   readonly index: ReadonlyMap<string, number>;
-  readonly events: EventNames;
   readonly interval: number;
   /** Name and range of a recording; absent when live. */
   readonly recording?: { readonly name: string; readonly firstTick: number; readonly lastTick: number };
 }
 
 export const subject = signal<Subject | undefined>(undefined);
+export const eventNames = signal<EventNames>({ kinds: [], subjects: [] });
 export const status = signal<LiveStatus | undefined>(undefined);
 export const clients = signal(0);
 export const events = signal<readonly LiveEvent[]>([]);
@@ -41,7 +50,8 @@ export const stale = computed<{ since: number; why: string } | undefined>(() => 
   if (lastHeard.value === 0) return undefined;
   if (!connected.value) return { since: lastHeard.value, why: 'no connection to the bench; trying again' };
   if (now - lastHeard.value > 1500) return { since: lastHeard.value, why: 'the bench does not answer' };
-  if (lastFrame.value > 0 && now - lastFrame.value > 1500 && status.value?.run.phase !== 'ended') return { since: lastFrame.value, why: 'no new values' };
+  if (lastFrame.value > 0 && now - lastFrame.value > 1500 && status.value?.run.phase !== 'ended')
+    return { since: lastFrame.value, why: 'no new values' };
   return undefined;
 });
 
@@ -85,7 +95,14 @@ function request<T>(make: (request: number) => PageMessage): Promise<T> {
 }
 
 export function askHistory(signals: readonly number[], from: number, to: number, bins: number): Promise<History> {
-  return request((number) => ({ type: 'history', request: number, signals, from: Math.max(0, Math.floor(from)), to: Math.max(0, Math.floor(to)), bins }));
+  return request((number) => ({
+    type: 'history',
+    request: number,
+    signals,
+    from: Math.max(0, Math.floor(from)),
+    to: Math.max(0, Math.floor(to)),
+    bins,
+  }));
 }
 export function order(command: HandCommand): Promise<Acknowledgement> {
   return request((number) => ({ type: 'command', request: number, who: who.value, command }));
@@ -154,7 +171,10 @@ function see(next: Omit<Subject, 'index'>): void {
 function take(message: ServerMessage): void {
   switch (message.type) {
     case 'hello':
-      if (message.version !== wireVersion) return location.reload();
+      if (message.version !== wireVersion) {
+        location.reload();
+        return;
+      }
       if (message.serverStart === serverStart && subject.peek()?.recording !== undefined) {
         openRecording(subject.peek()?.recording?.name ?? '');
         return;
@@ -162,8 +182,9 @@ function take(message: ServerMessage): void {
       if (message.serverStart !== serverStart) {
         serverStart = message.serverStart;
         events.value = [];
-        see({ bench: message.bench, signals: message.signals, events: message.events, interval: message.interval });
+        see({ bench: message.bench, signals: message.signals, interval: message.interval });
       }
+      eventNames.value = message.events;
       tick.value = message.lastTick;
       control.value = message.control;
       offersRecordings.value = message.recordings;
@@ -171,10 +192,14 @@ function take(message: ServerMessage): void {
       for (const listener of resetListeners) listener();
       return;
     case 'opened':
-      see({ bench: message.bench, signals: message.signals, events: message.events, interval: 1, recording: message });
+      see({ bench: message.bench, signals: message.signals, interval: 1, recording: message });
+      eventNames.value = message.events;
       events.value = [];
       tick.value = message.lastTick;
       for (const listener of resetListeners) listener();
+      return;
+    case 'names':
+      eventNames.value = message.events;
       return;
     case 'frame':
       lastFrame.value = Date.now();
@@ -191,7 +216,11 @@ function take(message: ServerMessage): void {
       else events.value = [...events.value, ...message.events].slice(-2000);
       return;
     case 'history':
-      settle(message.request, { ticks: doublesOf(message.ticks), least: floatsOf(message.least), most: floatsOf(message.most) });
+      settle(message.request, {
+        ticks: doublesOf(message.ticks),
+        least: floatsOf(message.least),
+        most: floatsOf(message.most),
+      });
       return;
     case 'answer':
       settle(message.request, message.acknowledgement);

@@ -1,7 +1,7 @@
 import { computed, effect, signal } from '@preact/signals';
 import type { PressureFacts, WarningStatus } from '../../live/source.js';
 import { askHistory, onReset, stale, status, subject, tick } from './connection.js';
-import { beat, pulse, rangeOf, valueOf } from './values.js';
+import { beat, newest, pulse, rangeOf } from './values.js';
 
 /** Tones of the page, quiet to loud; each has its colour, its pattern and its shape. */
 export type Tone = 'fine' | 'low' | 'near' | 'passing' | 'above' | 'severe' | 'unknown';
@@ -31,7 +31,12 @@ export const fine: LevelLook = { tone: 'fine', rank: 0, words: 'Within settings'
 const unknown: LevelLook = { tone: 'unknown', rank: 7, words: 'Not up to date', shape: '?' };
 
 export function lookOf(warning: WarningStatus): LevelLook {
-  return looks[warning.level] ?? { ...bySeverity[warning.severity], words: warning.level.charAt(0).toUpperCase() + warning.level.slice(1) };
+  return (
+    looks[warning.level] ?? {
+      ...bySeverity[warning.severity],
+      words: warning.level.charAt(0).toUpperCase() + warning.level.slice(1),
+    }
+  );
 }
 
 /** The most severe warning that is active; if none, that waits for an acknowledgement. */
@@ -42,10 +47,13 @@ export function worst(warnings: readonly WarningStatus[]): WarningStatus | undef
   return best;
 }
 /** Warnings of pressures only: what the large letters speak of. */
-export const pressureWarnings = computed(() => (status.value?.warnings ?? []).filter((warning) => warning.unit === 'Pa'));
+export const pressureWarnings = computed(() =>
+  (status.value?.warnings ?? []).filter((warning) => warning.unit === 'Pa'),
+);
 
 export const banner = computed<{ look: LevelLook; warning: WarningStatus | undefined; past: boolean }>(() => {
-  if (stale.value !== undefined || status.value === undefined) return { look: unknown, warning: undefined, past: false };
+  if (stale.value !== undefined || status.value === undefined)
+    return { look: unknown, warning: undefined, past: false };
   const warning = worst(pressureWarnings.value);
   if (warning === undefined) return { look: fine, warning: undefined, past: false };
   return warning.active ? { look: lookOf(warning), warning, past: false } : { look: fine, warning, past: true };
@@ -68,10 +76,11 @@ effect(() => {
   let changed: Map<string, number> | undefined;
   for (const { path } of subject.peek()?.bench.pressures ?? []) {
     const high = rangeOf(path)[1];
-    if (high > ((changed ?? peaks.peek()).get(path) ?? Number.NEGATIVE_INFINITY)) (changed ??= new Map(peaks.peek())).set(path, high);
+    if (high > ((changed ?? peaks.peek()).get(path) ?? Number.NEGATIVE_INFINITY))
+      (changed ??= new Map(peaks.peek())).set(path, high);
     let rate = rates.get(path);
     if (rate === undefined) rates.set(path, (rate = { ticks: [], values: [] }));
-    const value = valueOf(path);
+    const value = newest(path);
     if (Number.isFinite(value) && now !== rate.ticks.at(-1)) {
       rate.ticks.push(now);
       rate.values.push(value);
@@ -113,10 +122,10 @@ onReset(() => {
 export function timeToRelief(pressure: PressureFacts): number | undefined {
   beat.value;
   if (pressure.relief === undefined) return undefined;
-  const value = valueOf(pressure.path);
+  const value = newest(pressure.path);
   if (!(value < pressure.relief)) return undefined;
   let seconds: number;
-  if (pressure.timeToRelief !== undefined) seconds = valueOf(pressure.timeToRelief);
+  if (pressure.timeToRelief !== undefined) seconds = newest(pressure.timeToRelief);
   else {
     const rate = rates.get(pressure.path);
     const step = subject.value?.bench.step ?? 0.001;

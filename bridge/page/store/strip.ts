@@ -107,7 +107,11 @@ export class Strip {
       if (this.ticks[middle] <= tick) low = middle;
       else high = middle - 1;
     }
-    return { tick: this.ticks[low], least: this.least.map((list) => list[low]), most: this.most.map((list) => list[low]) };
+    return {
+      tick: this.ticks[low],
+      least: this.least.map((list) => list[low]),
+      most: this.most.map((list) => list[low]),
+    };
   }
 
   /** Neighbouring interval in direction -1 or 1, its tick. */

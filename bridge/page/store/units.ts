@@ -10,9 +10,17 @@ export interface Shown {
   readonly decimals: number;
 }
 
-const pressureFactor: Record<string, [number, number]> = { bar: [1e-5, 1], MPa: [1e-6, 2], psi: [1 / 6894.757293168, 0] };
+const pressureFactor: Record<string, [number, number]> = {
+  bar: [1e-5, 1],
+  MPa: [1e-6, 2],
+  psi: [1 / 6894.757293168, 0],
+};
 const speedFactor: Record<string, number> = { 'km/h': 3.6, 'm/s': 1, mph: 1 / 0.44704 };
-const flowFactor: Record<string, [number, number]> = { 'L/min': [60_000, 1], 'L/s': [1000, 2], 'gal/min': [60 / 3.785411784e-3, 1] };
+const flowFactor: Record<string, [number, number]> = {
+  'L/min': [60_000, 1],
+  'L/s': [1000, 2],
+  'gal/min': [60 / 3.785411784e-3, 1],
+};
 const fixed: Record<string, [string, number, number, number]> = {
   m3: ['L', 1000, 0, 2],
   'rad/s': ['1/min', 30 / Math.PI, 0, 0],
@@ -75,7 +83,9 @@ export function clock(tick: number, step: number, decimals = 1): string {
   const whole = Math.floor(seconds);
   const hours = Math.floor(whole / 3600);
   const minutes = Math.floor(whole / 60) % 60;
-  const rest = (seconds - Math.floor(seconds / 60) * 60).toFixed(decimals).padStart(decimals > 0 ? 3 + decimals : 2, '0');
+  const rest = (seconds - Math.floor(seconds / 60) * 60)
+    .toFixed(decimals)
+    .padStart(decimals > 0 ? 3 + decimals : 2, '0');
   return hours > 0 ? `${hours}:${String(minutes).padStart(2, '0')}:${rest}` : `${minutes}:${rest}`;
 }
 export function microseconds(seconds: number): string {

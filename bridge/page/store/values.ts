@@ -19,7 +19,7 @@ let scheduled = false;
 let lastBeat = 0;
 
 /** The newest value of a path, SI; NaN while unknown. */
-export function valueOf(path: string | undefined): number {
+export function newest(path: string | undefined): number {
   const at = path === undefined ? undefined : subject.value?.index.get(path);
   return at === undefined ? Number.NaN : last[at];
 }
@@ -37,9 +37,11 @@ export function subscribedSignals(): readonly number[] {
 export function usePaths(paths: readonly (string | undefined)[]): void {
   const known = subject.value;
   const key = paths.join('\n');
-  // biome-ignore lint/correctness/useExhaustiveDependencies: the key stands for the paths
+  // the key stands for the paths
   useEffect(() => {
-    const indices = paths.map((path) => (path === undefined ? undefined : known?.index.get(path))).filter((at) => at !== undefined);
+    const indices = paths
+      .map((path) => (path === undefined ? undefined : known?.index.get(path)))
+      .filter((at) => at !== undefined);
     for (const at of indices) wanted.set(at, (wanted.get(at) ?? 0) + 1);
     schedule();
     return () => {

@@ -47,12 +47,9 @@ export function App() {
   }
   return (
     <>
-      <a class="skip" href="#content" onClick={(event) => {
-        event.preventDefault();
-        document.getElementById('content')?.focus();
-      }}>
+      <button type="button" class="skip" onClick={() => document.getElementById('content')?.focus()}>
         To the content
-      </a>
+      </button>
       <TopBar />
       <Stale />
       <Banner />
@@ -75,27 +72,38 @@ export function App() {
 function View({ name }: { name: ViewName }) {
   switch (name) {
     case 'overview':
-      return (
+      return isWide.value ? (
         <>
-          <Pressures />
-          <Charts most={isWide.value ? 4 : 3} />
-          <Circuit />
           <div class="stack">
+            <Pressures />
             <Warnings />
             <Requirements />
-            {!isWide.value && <Events most={60} />}
           </div>
-          {isWide.value && (
-            <>
-              <GasPaths />
+          <div class="stack">
+            <Charts most={4} />
+            <GasPaths />
+          </div>
+          <div class="stack">
+            <Circuit />
+            <div class="stack two">
               <Energy />
-              <div class="stack">
-                <Messages />
-                <Timing />
-              </div>
-              <Events most={60} />
-            </>
-          )}
+              <Messages brief />
+            </div>
+            <Events most={40} />
+          </div>
+        </>
+      ) : (
+        <>
+          <div class="stack">
+            <Pressures />
+            <Warnings />
+            <Requirements />
+          </div>
+          <div class="stack">
+            <Charts most={3} />
+            <Circuit />
+            <Events most={40} />
+          </div>
         </>
       );
     case 'charts':

@@ -14,7 +14,7 @@ import {
 } from '../store/preferences.js';
 import { banner, lookOf, nameOfPath } from '../store/pressures.js';
 import { clock, format, number, shownAs, withUnit } from '../store/units.js';
-import { beat, usePaths, valueOf } from '../store/values.js';
+import { beat, newest, usePaths } from '../store/values.js';
 
 /** Run, time, and what a person sets for herself. Stays on top, with the state of the pressures in short. */
 export function TopBar() {
@@ -35,7 +35,8 @@ export function TopBar() {
         {look.words}
       </p>
       <p class="run">
-        <strong>{run?.phase ?? '–'}</strong> <span class="quiet">{run?.pace}</span> <span class="number time">{clock(tick.value, step)}</span>
+        <strong>{run?.phase ?? '–'}</strong> <span class="quiet">{run?.pace}</span>{' '}
+        <span class="number time">{clock(tick.value, step)}</span>
       </p>
       {run !== undefined && run.notValid.length > 0 && <p class="invalid">✖ not valid: {run.notValid.join('; ')}</p>}
       {run !== undefined && run.hands > 0 && <p class="quiet">✋ {run.hands} by hand</p>}
@@ -54,13 +55,23 @@ function Settings() {
         <Choice<SpeedUnit> name="Speed" held={speedUnit} choices={speedUnits} />
         <Choice<FlowUnit> name="Flow" held={flowUnit} choices={flowUnits} />
         <Choice<Theme> name="Colours" held={theme} choices={['system', 'light', 'dark']} />
-        <p class="quiet">{clients.value > 1 ? `${clients.value} pages look at this bench.` : 'Only this page looks at this bench.'}</p>
+        <p class="quiet">
+          {clients.value > 1 ? `${clients.value} pages look at this bench.` : 'Only this page looks at this bench.'}
+        </p>
       </div>
     </details>
   );
 }
 
-function Choice<T extends string>({ name, held, choices }: { name: string; held: { value: T }; choices: readonly T[] }) {
+function Choice<T extends string>({
+  name,
+  held,
+  choices,
+}: {
+  name: string;
+  held: { value: T };
+  choices: readonly T[];
+}) {
   return (
     <label>
       {name}
@@ -110,14 +121,21 @@ export function Banner() {
         </p>
         <p class="detail">
           {warning === undefined ? (
-            look.tone === 'unknown' ? 'The values below are old.' : 'Every watched pressure is within its settings.'
+            look.tone === 'unknown' ? (
+              'The values below are old.'
+            ) : (
+              'Every watched pressure is within its settings.'
+            )
           ) : past ? (
             <>
-              Was {lookOf(warning).words.toLowerCase()}: {nameOfPath(warning.path)}, peak {withUnit(warning.peak, shown)}, from {clock(warning.sinceTick, step)}; not acknowledged
+              Was {lookOf(warning).words.toLowerCase()}: {nameOfPath(warning.path)}, peak{' '}
+              {withUnit(warning.peak, shown)}, from {clock(warning.sinceTick, step)}; not acknowledged
             </>
           ) : (
             <>
-              {nameOfPath(warning.path)} <strong class="number">{withUnit(valueOf(path), shown)}</strong>, setting {format(warning.setting, shown)}, peak {format(warning.peak, shown)}, since {clock(warning.sinceTick, step)}
+              {nameOfPath(warning.path)} <strong class="number">{withUnit(newest(path), shown)}</strong>, setting{' '}
+              {format(warning.setting, shown)}, peak {format(warning.peak, shown)}, since{' '}
+              {clock(warning.sinceTick, step)}
             </>
           )}
           {others > 0 && ` · ${others} more`}
@@ -142,9 +160,20 @@ function ScenarioStep() {
         {now === undefined ? '' : ` · step ${scenario.step + 1} of ${facts.steps.length}`}
       </p>
       <p class="now">
-        {now?.name ?? (scenario.state === 'ended' ? 'ended' : 'not started')} {now !== undefined && <span class="number quiet">{clock(Math.max(0, tick.value - scenario.sinceTick), step, 0)}</span>}
+        {now?.name ?? (scenario.state === 'ended' ? 'ended' : 'not started')}{' '}
+        {now !== undefined && (
+          <span class="number quiet">{clock(Math.max(0, tick.value - scenario.sinceTick), step, 0)}</span>
+        )}
       </p>
-      <p class="next">{next === undefined ? (now === undefined ? (facts.steps[0] === undefined ? '' : `first: ${facts.steps[0].name}`) : 'last step') : `next: ${next.name}`}</p>
+      <p class="next">
+        {next === undefined
+          ? now === undefined
+            ? facts.steps[0] === undefined
+              ? ''
+              : `first: ${facts.steps[0].name}`
+            : 'last step'
+          : `next: ${next.name}`}
+      </p>
     </div>
   );
 }
@@ -154,8 +183,9 @@ export function Caution() {
   return (
     <footer class="caution-foot">
       <p>
-        <strong>⚠ oilspring is not a safety device.</strong> These pressures are computed, not measured. A real bench has its own relief valves, interlocks and emergency stop; its hydraulic work follows local codes and is done by licensed people. Shut off and
-        discharge accumulators before anybody works on a circuit.
+        <strong>⚠ oilspring is not a safety device.</strong> These pressures are computed, not measured. A real bench
+        has its own relief valves, interlocks and emergency stop; its hydraulic work follows local codes and is done by
+        licensed people. Shut off and discharge accumulators before anybody works on a circuit.
         {bench?.invented ? ' The data behind this bench are invented.' : ''}
       </p>
     </footer>

@@ -16,7 +16,11 @@ export function ChartTools() {
     <div class="tools" role="toolbar" aria-label="Time shown in the charts">
       <label>
         Window{' '}
-        <select value={view.live ? String(view.seconds) : ''} disabled={!view.live} onChange={(event) => (chartView.value = { live: true, seconds: Number(event.currentTarget.value) })}>
+        <select
+          value={view.live ? String(view.seconds) : ''}
+          disabled={!view.live}
+          onChange={(event) => (chartView.value = { live: true, seconds: Number(event.currentTarget.value) })}
+        >
           {!view.live && <option value="">free</option>}
           {windows.map(([seconds, text]) => (
             <option key={seconds} value={String(seconds)}>
@@ -29,7 +33,7 @@ export function ChartTools() {
         ◀ Earlier
       </button>
       {!isRecording && (
-        <button type="button" class="primary" onClick={view.live ? pause : live}>
+        <button type="button" class={view.live ? '' : 'primary'} onClick={view.live ? pause : live}>
           {view.live ? '❚❚ Pause' : '▶ Live'}
         </button>
       )}
@@ -70,7 +74,10 @@ function Composer() {
   const list = useId();
   const [problem, setProblem] = useState('');
   const known = subject.value;
-  const change = (at: number, paths: readonly string[]) => changeCharts(charts.value.flatMap((chart, i) => (i !== at ? [chart] : paths.length === 0 ? [] : [{ ...chart, paths }])));
+  const change = (at: number, paths: readonly string[]) =>
+    changeCharts(
+      charts.value.flatMap((chart, i) => (i !== at ? [chart] : paths.length === 0 ? [] : [{ ...chart, paths }])),
+    );
   const add = (at: number, path: string): boolean => {
     if (known?.index.get(path) === undefined) {
       setProblem(`There is no signal called ${path}.`);
@@ -93,7 +100,6 @@ function Composer() {
       </datalist>
       {problem !== '' && <p role="alert">{problem}</p>}
       {[...charts.value, undefined].map((chart, at) => (
-        // biome-ignore lint/suspicious/noArrayIndexKey: charts have no other identity than their place
         <form
           key={at}
           class="compose"
@@ -105,15 +111,33 @@ function Composer() {
         >
           <strong>{chart?.name ?? 'New chart'}</strong>
           {chart?.paths.map((path) => (
-            <button type="button" class="chip" key={path} aria-label={`Remove ${path} from ${chart.name}`} onClick={() => change(at, chart.paths.filter((other) => other !== path))}>
+            <button
+              type="button"
+              class="chip"
+              key={path}
+              aria-label={`Remove ${path} from ${chart.name}`}
+              onClick={() =>
+                change(
+                  at,
+                  chart.paths.filter((other) => other !== path),
+                )
+              }
+            >
               {path} ×
             </button>
           ))}
           <label>
             <span class="hidden">Signal to add to {chart?.name ?? 'a new chart'}</span>
-            <input name="path" list={list} placeholder="element.signal" autocomplete="off" spellcheck={false} required />
+            <input
+              name="path"
+              list={list}
+              placeholder="element.signal"
+              autocomplete="off"
+              spellcheck={false}
+              required
+            />
           </label>
-          <button>Add</button>
+          <button type="submit">Add</button>
         </form>
       ))}
       <button type="button" onClick={() => changeCharts(known?.bench.charts ?? [])}>

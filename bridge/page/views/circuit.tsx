@@ -1,28 +1,45 @@
-import { useEffect, useState } from 'preact/hooks';
+import { useEffect, useRef, useState } from 'preact/hooks';
 import type { ElementFacts } from '../../live/source.js';
 import { Glyph } from '../parts/glyph.js';
-import { type Layout, layOut, type Placed, type Tie } from '../store/circuit-layout.js';
+import { Scroll } from '../parts/scroll.js';
+import { fitting, type Layout, layOut, type Placed, type Tie } from '../store/circuit-layout.js';
 import { infoOf, status, subject } from '../store/connection.js';
 import { lookOf, worst } from '../store/pressures.js';
 import { shownAs, shownOf, withUnit } from '../store/units.js';
-import { beat, usePaths, valueOf } from '../store/values.js';
+import { beat, newest, usePaths } from '../store/values.js';
 
 /** The circuit as the bench file ties it, with what flows in it now. */
 export function Circuit() {
   const elements = subject.value?.bench.elements;
-  const [layout, setLayout] = useState<Layout | undefined>(undefined);
+  const [layouts, setLayouts] = useState<readonly Layout[]>([]);
+  const place = useRef<HTMLElement>(null);
+  const [size, setSize] = useState<[number, number]>([900, 500]);
   const [problem, setProblem] = useState('');
   const [chosen, setChosen] = useState<string | undefined>(undefined);
   useEffect(() => {
     let gone = false;
-    layOut(elements ?? [])
-      .then((laid) => !gone && setLayout(laid))
+    Promise.all([layOut(elements ?? [], 'RIGHT'), layOut(elements ?? [], 'DOWN')])
+      .then((laid) => !gone && setLayouts(laid))
       .catch((error: unknown) => setProblem(String(error)));
     return () => {
       gone = true;
     };
   }, [elements]);
-  usePaths((elements ?? []).flatMap((element) => [...element.shows, element.flow, element.position?.path, ...element.faults.map((fault) => fault.path)]));
+  useEffect(() => {
+    if (place.current === null) return;
+    const watch = new ResizeObserver(([entry]) => setSize([entry.contentRect.width, window.innerHeight * 0.72]));
+    watch.observe(place.current);
+    return () => watch.disconnect();
+  }, []);
+  const layout = fitting(layouts, size[0], size[1]);
+  usePaths(
+    (elements ?? []).flatMap((element) => [
+      ...element.shows,
+      element.flow,
+      element.position?.path,
+      ...element.faults.map((fault) => fault.path),
+    ]),
+  );
   const element = elements?.find((candidate) => candidate.name === chosen);
   return (
     <section class="panel circuit" aria-labelledby="circuit-title">
@@ -36,35 +53,48 @@ export function Circuit() {
         </ul>
       </header>
       {problem !== '' && <p role="alert">The circuit could not be laid out: {problem}</p>}
-      {/* biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls must be reachable by keyboard */}
-      <div class="scroll" tabIndex={0} role="region" aria-label="Drawing of the circuit">
+      <Scroll label="Drawing of the circuit" place={place}>
         {layout !== undefined && (
-          <svg class="drawing" viewBox={`0 0 ${layout.width} ${layout.height}`} style={{ minWidth: `${Math.round(layout.width * 0.62)}px`, maxWidth: `${Math.round(layout.width * 1.5)}px` }}>
+          <svg
+            class="drawing"
+            viewBox={`0 0 ${layout.width} ${layout.height}`}
+            style={{
+              minWidth: `${Math.round(layout.width * 0.66)}px`,
+              maxWidth: `${Math.round(layout.width * Math.min(1.7, Math.max(0.66, size[1] / layout.height)))}px`,
+            }}
+          >
             <title>Stores and branches with their present values</title>
             {layout.ties.map((tie) => (
               <TieLine key={tie.key} tie={tie} />
             ))}
             {layout.nodes.map((node) => (
-              <Node key={node.element.name} node={node} chosen={node.element.name === chosen} choose={() => setChosen(node.element.name === chosen ? undefined : node.element.name)} />
+              <Node
+                key={node.element.name}
+                node={node}
+                chosen={node.element.name === chosen}
+                choose={() => setChosen(node.element.name === chosen ? undefined : node.element.name)}
+              />
             ))}
           </svg>
         )}
-      </div>
+      </Scroll>
       {element !== undefined && <Particulars element={element} close={() => setChosen(undefined)} />}
     </section>
   );
 }
 
 function faultsOf(element: ElementFacts): string[] {
-  return element.faults.filter((fault) => {
-    const value = valueOf(fault.path);
-    return Number.isFinite(value) && Math.abs(value - fault.rest) > 1e-6;
-  }).map((fault) => fault.about);
+  return element.faults
+    .filter((fault) => {
+      const value = newest(fault.path);
+      return Number.isFinite(value) && Math.abs(value - fault.rest) > 1e-6;
+    })
+    .map((fault) => fault.about);
 }
 
 function TieLine({ tie }: { tie: Tie }) {
   beat.value;
-  const flow = tie.branch.flow === undefined || tie.order > 1 ? Number.NaN : valueOf(tie.branch.flow);
+  const flow = tie.branch.flow === undefined || tie.order > 1 ? Number.NaN : newest(tie.branch.flow);
   const info = tie.branch.flow === undefined ? undefined : infoOf(tie.branch.flow);
   const scale = info?.most ?? 1;
   const moves = Math.abs(flow) > scale * 0.002;
@@ -72,40 +102,71 @@ function TieLine({ tie }: { tie: Tie }) {
   return (
     <g class={`tie ${tie.kind} ${moves ? 'moves' : ''}`}>
       <path d={d} />
-      {moves && <Arrow points={tie.points} forward={flow > 0} size={6 + 5 * Math.min(1, Math.sqrt(Math.abs(flow) / scale))} />}
+      {moves && (
+        <Arrow points={tie.points} forward={flow > 0} size={6 + 5 * Math.min(1, Math.sqrt(Math.abs(flow) / scale))} />
+      )}
     </g>
   );
 }
 
 /** In the middle of the longest stretch of a line. */
-function Arrow({ points, forward, size }: { points: readonly (readonly [number, number])[]; forward: boolean; size: number }) {
+function Arrow({
+  points,
+  forward,
+  size,
+}: {
+  points: readonly (readonly [number, number])[];
+  forward: boolean;
+  size: number;
+}) {
   let best = 0;
   const length = (i: number) => Math.hypot(points[i + 1][0] - points[i][0], points[i + 1][1] - points[i][1]);
   for (let i = 1; i + 1 < points.length; i += 1) if (length(i) > length(best)) best = i;
   const [[x1, y1], [x2, y2]] = [points[best], points[best + 1]];
   const angle = (Math.atan2(y2 - y1, x2 - x1) * 180) / Math.PI + (forward ? 0 : 180);
-  return <path class="arrow" d={`M${-size} ${-size * 0.75}L${size} 0L${-size} ${size * 0.75}Z`} transform={`translate(${(x1 + x2) / 2} ${(y1 + y2) / 2}) rotate(${angle})`} />;
+  return (
+    <path
+      class="arrow"
+      d={`M${-size} ${-size * 0.75}L${size} 0L${-size} ${size * 0.75}Z`}
+      transform={`translate(${(x1 + x2) / 2} ${(y1 + y2) / 2}) rotate(${angle})`}
+    />
+  );
 }
 
 function Node({ node, chosen, choose }: { node: Placed; chosen: boolean; choose: () => void }) {
   beat.value;
   const { element } = node;
   const faults = faultsOf(element);
-  const warning = worst((status.value?.warnings ?? []).filter((candidate) => candidate.active && candidate.path.startsWith(`${element.name}.`)));
+  const warning = worst(
+    (status.value?.warnings ?? []).filter(
+      (candidate) => candidate.active && candidate.path.startsWith(`${element.name}.`),
+    ),
+  );
   const tone = warning === undefined ? 'fine' : lookOf(warning).tone;
-  const position = element.position === undefined ? undefined : valueOf(element.position.path);
+  const position = element.position === undefined ? undefined : newest(element.position.path);
   const lines = [
     ...element.shows.slice(0, 3).map((path) => {
       const info = infoOf(path);
-      return info === undefined ? '–' : `${path === element.flow && valueOf(path) < 0 ? '◀ ' : ''}${withUnit(path === element.flow ? Math.abs(valueOf(path)) : valueOf(path), shownOf(info))}${path === element.flow && valueOf(path) > 0 ? ' ▶' : ''}`;
+      return info === undefined
+        ? '–'
+        : `${path === element.flow && newest(path) < 0 ? '◀ ' : ''}${withUnit(path === element.flow ? Math.abs(newest(path)) : newest(path), shownOf(info))}${path === element.flow && newest(path) > 0 ? ' ▶' : ''}`;
     }),
-    ...(element.position === undefined || position === undefined ? [] : [position > 0.98 ? element.position.one : position < 0.02 ? element.position.zero : `${Math.round(position * 100)} % ${element.position.one}`]),
+    ...(element.position === undefined || position === undefined
+      ? []
+      : [
+          position > 0.98
+            ? element.position.one
+            : position < 0.02
+              ? element.position.zero
+              : `${Math.round(position * 100)} % ${element.position.one}`,
+        ]),
   ];
   const said = `${element.name}, ${element.kind}: ${lines.join(', ')}${faults.length > 0 ? `; in fault: ${faults.join(', ')}` : ''}${warning === undefined ? '' : `; ${lookOf(warning).words}`}`;
   return (
     <g
       class={`node ${element.role} tone-${tone} ${faults.length > 0 ? 'fault' : ''} ${chosen ? 'chosen' : ''}`}
       transform={`translate(${node.x} ${node.y})`}
+      // biome-ignore lint/a11y/useSemanticElements: there is no button inside a drawing
       role="button"
       tabIndex={0}
       aria-pressed={chosen}
@@ -121,11 +182,15 @@ function Node({ node, chosen, choose }: { node: Placed; chosen: boolean; choose:
       <g transform="translate(10 8)">
         <Glyph kind={element.kind} />
       </g>
-      <text class="name" x={42} y={25}>
-        {element.name.length > 17 ? `${element.name.slice(0, 16)}…` : element.name}
+      <text
+        class="name"
+        x={42}
+        y={25}
+        style={{ fontSize: `${Math.min(15.5, (node.width - 50) / (element.name.length * 0.66))}px` }}
+      >
+        {element.name}
       </text>
       {lines.map((line, i) => (
-        // biome-ignore lint/suspicious/noArrayIndexKey: the lines keep their places
         <text class="number" key={i} x={node.width - 12} y={47 + i * 19} text-anchor="end">
           {line}
         </text>
@@ -168,7 +233,7 @@ function Particulars({ element, close }: { element: ElementFacts; close: () => v
                 <th scope="row" title={info.about}>
                   {info.path.slice(element.name.length + 1)}
                 </th>
-                <td class="number">{withUnit(valueOf(info.path), shownOf(info))}</td>
+                <td class="number">{withUnit(newest(info.path), shownOf(info))}</td>
               </tr>
             ))}
           </tbody>

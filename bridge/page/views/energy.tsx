@@ -1,6 +1,7 @@
+import { useRef } from 'preact/hooks';
 import { infoOf, subject } from '../store/connection.js';
 import { shownAs, withUnit } from '../store/units.js';
-import { beat, usePaths, valueOf } from '../store/values.js';
+import { beat, newest, usePaths } from '../store/values.js';
 
 const headings: Record<string, string> = {
   supply: 'From outside',
@@ -15,9 +16,12 @@ export function Energy() {
   const powers = subject.value?.bench.powers ?? [];
   usePaths(powers.map((power) => power.path));
   beat.value;
-  if (powers.length === 0) return null;
   const shown = shownAs('W');
-  const most = Math.max(1000, ...powers.map((power) => Math.abs(valueOf(power.path)) || 0));
+  // the scale only grows, so that a bar that shrinks means less power
+  const largest = useRef(1000);
+  largest.current = Math.max(largest.current, ...powers.map((power) => Math.abs(newest(power.path)) || 0));
+  const most = largest.current;
+  if (powers.length === 0) return null;
   const roles = [...new Set(powers.map((power) => power.role))];
   return (
     <section class="panel" aria-labelledby="energy-title">
@@ -37,7 +41,7 @@ export function Energy() {
             {powers
               .filter((power) => power.role === role)
               .map((power) => {
-                const value = valueOf(power.path);
+                const value = newest(power.path);
                 const share = Math.min(1, Math.abs(value) / most) || 0;
                 return (
                   <tr key={power.path}>
@@ -45,7 +49,10 @@ export function Energy() {
                       {power.name}
                     </th>
                     <td class="balance">
-                      <div class={value < 0 ? 'out' : 'in'} style={{ width: `${(share * 50).toFixed(2)}%`, [value < 0 ? 'right' : 'left']: '50%' }} />
+                      <div
+                        class={value < 0 ? 'out' : 'in'}
+                        style={{ width: `${(share * 50).toFixed(2)}%`, [value < 0 ? 'right' : 'left']: '50%' }}
+                      />
                     </td>
                     <td class="number">{withUnit(value, shown)}</td>
                   </tr>

@@ -1,6 +1,7 @@
 import { useState } from 'preact/hooks';
 import type { LiveEvent, WarningStatus } from '../../live/source.js';
-import { control, events, order, status, subject, tick } from '../store/connection.js';
+import { Scroll } from '../parts/scroll.js';
+import { control, eventNames, events, order, status, subject, tick } from '../store/connection.js';
 import { who } from '../store/preferences.js';
 import { lookOf, nameOfPath } from '../store/pressures.js';
 import { clock, number, shownAs, withUnit } from '../store/units.js';
@@ -9,7 +10,9 @@ export const shapes: Record<string, string> = { note: '○', warning: '▲', ala
 
 /** Warnings that stand: what, where, how much, since when, and what it would mean on a vehicle. */
 export function Warnings() {
-  const warnings = [...(status.value?.warnings ?? [])].sort((a, b) => Number(b.active) - Number(a.active) || lookOf(b).rank - lookOf(a).rank);
+  const warnings = [...(status.value?.warnings ?? [])].sort(
+    (a, b) => Number(b.active) - Number(a.active) || lookOf(b).rank - lookOf(a).rank,
+  );
   return (
     <section class="panel" aria-labelledby="warnings-title">
       <header>
@@ -48,14 +51,24 @@ function Warning({ warning }: { warning: WarningStatus }) {
         {warning.active ? '' : '(over)'}
       </p>
       <p class="number">
-        setting {withUnit(warning.setting, shown)} · peak {withUnit(warning.peak, shown)} · since {clock(warning.sinceTick, step)}
+        setting {withUnit(warning.setting, shown)} · peak {withUnit(warning.peak, shown)} · since{' '}
+        {clock(warning.sinceTick, step)}
       </p>
       <p>{warning.meaning}</p>
       {warning.acknowledged ? (
         <p class="quiet">✓ acknowledged{warning.active ? ', still active' : ''}</p>
       ) : subject.value?.recording !== undefined ? null : (
-        <button type="button" disabled={!may} title={may ? undefined : 'needs control: token and name under Hands'} onClick={acknowledge}>
-          Acknowledge<span class="hidden"> {look.words} of {nameOfPath(warning.path)}</span>
+        <button
+          type="button"
+          disabled={!may}
+          title={may ? undefined : 'needs control: token and name under Hands'}
+          onClick={acknowledge}
+        >
+          Acknowledge
+          <span class="hidden">
+            {' '}
+            {look.words} of {nameOfPath(warning.path)}
+          </span>
         </button>
       )}
       {answer !== '' && <p role="alert">{answer}</p>}
@@ -65,11 +78,11 @@ function Warning({ warning }: { warning: WarningStatus }) {
 
 /** The text of an event with its places filled in; `{a:Pa}` carries the unit. */
 export function eventText(event: LiveEvent): string {
-  const names = subject.value?.events;
-  const kind = names?.kinds[event.kind];
+  const names = eventNames.value;
+  const kind = names.kinds[event.kind];
   if (kind === undefined) return `event ${event.kind}`;
   return kind.text.replace(/\{(subject|a|b|c)(?::([^}]*))?\}/g, (_all, place: string, unit: string | undefined) => {
-    if (place === 'subject') return names?.subjects[event.subject] ?? `subject ${event.subject}`;
+    if (place === 'subject') return names.subjects[event.subject] ?? `subject ${event.subject}`;
     const value = event[place as 'a' | 'b' | 'c'];
     return unit === undefined ? number(value, Number.isInteger(value) ? 0 : 3) : withUnit(value, shownAs(unit));
   });
@@ -78,11 +91,15 @@ export function eventText(event: LiveEvent): string {
 export function Events({ most = 200 }: { most?: number }) {
   const [least, setLeast] = useState('note');
   const order_ = ['note', 'warning', 'alarm', 'error'];
-  const names = subject.value?.events;
+  const names = eventNames.value;
   const recording = subject.value?.recording !== undefined;
   const step = subject.value?.bench.step ?? 0.001;
   const list = events.value
-    .filter((event) => order_.indexOf(names?.kinds[event.kind]?.severity ?? 'note') >= order_.indexOf(least) && (!recording || event.tick <= tick.value))
+    .filter(
+      (event) =>
+        order_.indexOf(names.kinds[event.kind]?.severity ?? 'note') >= order_.indexOf(least) &&
+        (!recording || event.tick <= tick.value),
+    )
     .slice(-most)
     .reverse();
   return (
@@ -100,20 +117,21 @@ export function Events({ most = 200 }: { most?: number }) {
           </select>
         </label>
       </header>
-      {/* biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls must be reachable by keyboard */}
-      <div class="scroll tall" tabIndex={0} role="region" aria-label="List of events, newest first">
+      <Scroll tall label="List of events, newest first">
         <ol class="log">
           {list.map((event, i) => {
-            const severity = names?.kinds[event.kind]?.severity ?? 'note';
+            const severity = names.kinds[event.kind]?.severity ?? 'note';
             return (
-              <li key={`${event.tick}.${event.kind}.${event.subject}.${i}`} class={severity}>
-                <span class="number">{clock(event.tick, step, 3)}</span> <span aria-label={severity}>{shapes[severity]}</span> {eventText(event)}
+              <li key={`${event.tick}.${event.kind}.${event.subject}.${i}`} class={`is-${severity}`}>
+                <span class="number">{clock(event.tick, step, 3)}</span>{' '}
+                <span aria-hidden="true">{shapes[severity]}</span>
+                <span class="hidden">{severity}:</span> {eventText(event)}
               </li>
             );
           })}
         </ol>
         {list.length === 0 && <p class="quiet">Nothing yet.</p>}
-      </div>
+      </Scroll>
     </section>
   );
 }
@@ -134,19 +152,31 @@ export function Requirements() {
           const state = states[i];
           if (state === undefined) return null;
           const shown = shownAs(requirement.unit, true);
-          const share = requirement.comfortable === undefined ? 0 : Math.min(1, Math.abs(state.margin) / requirement.comfortable) || 0;
+          const share =
+            requirement.comfortable === undefined
+              ? 0
+              : Math.min(1, Math.abs(state.margin) / requirement.comfortable) || 0;
           const shape = state.verdict === 'violated' ? '✖' : state.verdict === 'holds so far' ? '✓' : '○';
           return (
-            <li key={requirement.name} class={state.verdict === 'violated' ? 'violated' : state.verdict === 'holds so far' ? 'holds' : 'open'}>
+            <li
+              key={requirement.name}
+              class={state.verdict === 'violated' ? 'violated' : state.verdict === 'holds so far' ? 'holds' : 'open'}
+            >
               <p>
-                <strong>{requirement.name}</strong> <span class="verdict">{shape} {state.verdict}</span>
+                <strong>{requirement.name}</strong>{' '}
+                <span class="verdict">
+                  {shape} {state.verdict}
+                </span>
               </p>
               <p class="quiet">{requirement.text}</p>
               {Number.isFinite(state.margin) && (
                 <>
                   {requirement.comfortable !== undefined && (
                     <div class="balance" aria-hidden="true">
-                      <div class={state.margin < 0 ? 'out' : 'in'} style={{ width: `${(share * 50).toFixed(1)}%`, [state.margin < 0 ? 'right' : 'left']: '50%' }} />
+                      <div
+                        class={state.margin < 0 ? 'out' : 'in'}
+                        style={{ width: `${(share * 50).toFixed(1)}%`, [state.margin < 0 ? 'right' : 'left']: '50%' }}
+                      />
                     </div>
                   )}
                   <p class="number">

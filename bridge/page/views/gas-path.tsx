@@ -2,7 +2,7 @@ import { useEffect, useRef, useState } from 'preact/hooks';
 import type { AccumulatorFacts } from '../../live/source.js';
 import { askHistory, onReset, subject, tick } from '../store/connection.js';
 import { format, shownAs, withUnit } from '../store/units.js';
-import { beat, usePaths, valueOf } from '../store/values.js';
+import { beat, newest, usePaths } from '../store/values.js';
 
 const mostPoints = 900;
 
@@ -27,16 +27,16 @@ function GasPath({ facts }: { facts: AccumulatorFacts }) {
   const trail = useRef<[number, number][]>([]);
   const [, setTick] = useState(-1);
   const now = beat.value;
-  // biome-ignore lint/correctness/useExhaustiveDependencies: once per beat
+  // once per beat
   useEffect(() => {
-    const [v, p] = [valueOf(facts.volume), valueOf(facts.pressure)];
+    const [v, p] = [newest(facts.volume), newest(facts.pressure)];
     if (Number.isFinite(v) && Number.isFinite(p)) {
       trail.current.push([v, p]);
       if (trail.current.length > mostPoints) trail.current.shift();
     }
     setTick(tick.peek());
   }, [now]);
-  // biome-ignore lint/correctness/useExhaustiveDependencies: the accumulator does not change its paths
+  // the accumulator does not change its paths
   useEffect(() => {
     const load = () => {
       const known = subject.peek();
@@ -67,18 +67,27 @@ function GasPath({ facts }: { facts: AccumulatorFacts }) {
       .filter(([, p]) => p <= pMost)
       .map(([v, p], i) => `${i === 0 ? 'M' : 'L'}${x(v).toFixed(1)} ${y(p).toFixed(1)}`)
       .join('');
-  const [v, p] = [valueOf(facts.volume), valueOf(facts.pressure)];
-  const curves = facts.curves?.map((curve) => ({ name: curve.name, points: curve.volume.map((at, i): [number, number] => [at, curve.pressure[i]]) })) ?? [
+  const [v, p] = [newest(facts.volume), newest(facts.pressure)];
+  const curves = facts.curves?.map((curve) => ({
+    name: curve.name,
+    points: curve.volume.map((at, i): [number, number] => [at, curve.pressure[i]]),
+  })) ?? [
     { name: 'isotherm', points: ideal(facts, 1) },
     { name: 'adiabat', points: ideal(facts, 1.4) },
   ];
-  const said = `${facts.name}: ${withUnit(p, pressure)} at ${withUnit(v, volume)} of gas${facts.temperature === undefined ? '' : `, ${withUnit(valueOf(facts.temperature), shownAs('K'))}`}`;
+  const said = `${facts.name}: ${withUnit(p, pressure)} at ${withUnit(v, volume)} of gas${facts.temperature === undefined ? '' : `, ${withUnit(newest(facts.temperature), shownAs('K'))}`}`;
   return (
     <figure class="gas">
       <svg viewBox={`0 0 ${width} ${height}`} role="img" aria-label={`Path in the pressure-volume plane. ${said}`}>
         {steps(pMost * pressure.factor + pressure.offset, 5).map((at) => (
           <g key={at}>
-            <line class="grid" x1={left} x2={width - 12} y1={y((at - pressure.offset) / pressure.factor)} y2={y((at - pressure.offset) / pressure.factor)} />
+            <line
+              class="grid"
+              x1={left}
+              x2={width - 12}
+              y1={y((at - pressure.offset) / pressure.factor)}
+              y2={y((at - pressure.offset) / pressure.factor)}
+            />
             <text class="tick" x={left - 8} y={y((at - pressure.offset) / pressure.factor) + 4} text-anchor="end">
               {at}
             </text>
@@ -94,7 +103,13 @@ function GasPath({ facts }: { facts: AccumulatorFacts }) {
         ))}
         {facts.maximumAllowable !== undefined && (
           <>
-            <line class="limit" x1={left} x2={width - 12} y1={y(facts.maximumAllowable)} y2={y(facts.maximumAllowable)} />
+            <line
+              class="limit"
+              x1={left}
+              x2={width - 12}
+              y1={y(facts.maximumAllowable)}
+              y2={y(facts.maximumAllowable)}
+            />
             <text class="tick" x={width - 16} y={y(facts.maximumAllowable) - 5} text-anchor="end">
               PS {format(facts.maximumAllowable, pressure)}
             </text>
@@ -107,7 +122,12 @@ function GasPath({ facts }: { facts: AccumulatorFacts }) {
             <g key={curve.name}>
               <path class={`curve curve${i % 3}`} d={line(curve.points)} />
               {at !== undefined && (
-                <text class="tick" x={x(at[0]) + (i % 2 === 0 ? -6 : 8)} y={y(at[1]) + (i % 2 === 0 ? 14 : -4)} text-anchor={i % 2 === 0 ? 'end' : 'start'}>
+                <text
+                  class="tick"
+                  x={x(at[0]) + (i % 2 === 0 ? -6 : 8)}
+                  y={y(at[1]) + (i % 2 === 0 ? 14 : -4)}
+                  text-anchor={i % 2 === 0 ? 'end' : 'start'}
+                >
                   {curve.name}
                 </text>
               )}
@@ -125,7 +145,13 @@ function GasPath({ facts }: { facts: AccumulatorFacts }) {
       </svg>
       <figcaption>
         <strong>{said}</strong>
-        {facts.curves === undefined && <span class="quiet"> Curves: ideal gas from the precharge ({withUnit(facts.precharge, pressure)} at {withUnit(facts.prechargeTemperature, shownAs('K'))}); nitrogen departs from them above some 100 bar.</span>}
+        {facts.curves === undefined && (
+          <span class="quiet">
+            {' '}
+            Curves: ideal gas from the precharge ({withUnit(facts.precharge, pressure)} at{' '}
+            {withUnit(facts.prechargeTemperature, shownAs('K'))}); nitrogen departs from them above some 100 bar.
+          </span>
+        )}
       </figcaption>
     </figure>
   );

@@ -4,7 +4,7 @@ import type { HandCommand, HandFacts } from '../../live/source.js';
 import { control, giveToken, infoOf, order, status, subject } from '../store/connection.js';
 import { who } from '../store/preferences.js';
 import { number, shownOf, withUnit } from '../store/units.js';
-import { beat, usePaths, valueOf } from '../store/values.js';
+import { beat, newest, usePaths } from '../store/values.js';
 
 /** The answer to the newest hand, in words. */
 const answer = signal<{ ok: boolean; text: string } | undefined>(undefined);
@@ -12,7 +12,10 @@ const answer = signal<{ ok: boolean; text: string } | undefined>(undefined);
 async function act(command: HandCommand, what: string): Promise<boolean> {
   try {
     const got = await order(command);
-    answer.value = { ok: got.ok, text: got.ok ? `${what}: in the record at tick ${got.tick}` : `${what}: refused, ${got.text}` };
+    answer.value = {
+      ok: got.ok,
+      text: got.ok ? `${what}: in the record at tick ${got.tick}` : `${what}: refused, ${got.text}`,
+    };
     return got.ok;
   } catch (error) {
     answer.value = { ok: false, text: `${what}: ${(error as Error).message}` };
@@ -32,11 +35,13 @@ export function Hands() {
         <h2 id="hands-title">Hands</h2>
       </header>
       <p class="caution">
-        <strong>⚠ Whatever you set here reaches the control unit.</strong> If it drives real hardware, keep the rig's own relief valves, interlocks and emergency stop in force; this page is none of them.
+        <strong>⚠ Whatever you set here reaches the control unit.</strong> If it drives real hardware, keep the rig's
+        own relief valves, interlocks and emergency stop in force; this page is none of them.
       </p>
       <Permission />
       <p role="status" class={answer.value?.ok === false ? 'refused' : 'quiet'}>
-        {answer.value?.text ?? 'Every hand goes into the record with its tick and name; the verdict says that hands were used.'}
+        {answer.value?.text ??
+          'Every hand goes into the record with its tick and name; the verdict says that hands were used.'}
       </p>
       <fieldset disabled={!allowed}>
         <legend class="hidden">Everything that a hand may touch</legend>
@@ -56,15 +61,26 @@ export function Hands() {
 function Permission() {
   const [problem, setProblem] = useState('');
   if (subject.value?.recording !== undefined) return <p>A recording cannot be steered.</p>;
-  if (control.value === 'none') return <p>This bench was started without control: the page only looks. Start it with <code>--control</code> to drive it by hand.</p>;
+  if (control.value === 'none')
+    return (
+      <p>
+        This bench was started without control: the page only looks. Start it with <code>--control</code> to drive it by
+        hand.
+      </p>
+    );
   return (
     <div class="permission">
       <label>
         Your name or initials, for the record
-        <input value={who.value} maxLength={80} autocomplete="off" onInput={(event) => (who.value = event.currentTarget.value)} />
+        <input
+          value={who.value}
+          maxLength={80}
+          autocomplete="off"
+          onInput={(event) => (who.value = event.currentTarget.value)}
+        />
       </label>
       {control.value === 'granted' ? (
-        <p>✓ Control granted to this page.</p>
+        <p>✓ Control granted to this page{who.value.trim() === '' ? ': say who you are to use it' : ''}.</p>
       ) : (
         <form
           onSubmit={(event) => {
@@ -79,7 +95,9 @@ function Permission() {
             Token, printed where the bench was started
             <input name="token" type="password" autocomplete="off" maxLength={256} required />
           </label>
-          <button class="primary">Take control</button>
+          <button type="submit" class="primary">
+            Take control
+          </button>
           {problem !== '' && <p role="alert">{problem}</p>}
         </form>
       )}
@@ -90,7 +108,11 @@ function Permission() {
 function ScenarioHands() {
   const state = status.value?.scenario.state ?? 'not started';
   const button = (action: 'start' | 'hold' | 'continue' | 'end', text: string, possible: boolean) => (
-    <button type="button" disabled={!possible} onClick={() => void act({ kind: 'scenario', action }, `Scenario ${action}`)}>
+    <button
+      type="button"
+      disabled={!possible}
+      onClick={() => void act({ kind: 'scenario', action }, `Scenario ${action}`)}
+    >
       {text}
     </button>
   );
@@ -112,14 +134,23 @@ function Group({ name, hands }: { name: string; hands: readonly HandFacts[] }) {
   return (
     <section class="group">
       <h3>{name}</h3>
-      {hands.map((hand) => (hand.choices !== undefined || hand.kind === 'key' || hand.kind === 'supply' || (hand.kind === 'fault' && hand.increment === undefined) ? <Choice key={hand.path} hand={hand} /> : <Slider key={hand.path} hand={hand} />))}
+      {hands.map((hand) =>
+        hand.choices !== undefined ||
+        hand.kind === 'key' ||
+        hand.kind === 'supply' ||
+        (hand.kind === 'fault' && hand.increment === undefined) ? (
+          <Choice key={hand.path} hand={hand} />
+        ) : (
+          <Slider key={hand.path} hand={hand} />
+        ),
+      )}
     </section>
   );
 }
 
 function present(hand: HandFacts): string {
   const info = infoOf(hand.path);
-  return info === undefined ? '–' : withUnit(valueOf(hand.path), shownOf(info));
+  return info === undefined ? '–' : withUnit(newest(hand.path), shownOf(info));
 }
 
 function Choice({ hand }: { hand: HandFacts }) {
@@ -128,13 +159,20 @@ function Choice({ hand }: { hand: HandFacts }) {
     { name: 'off', value: hand.kind === 'fault' ? hand.rest : hand.least },
     { name: 'on', value: hand.most },
   ];
-  const value = valueOf(hand.path);
+  const value = newest(hand.path);
   return (
     <div class="hand" role="group" aria-label={hand.name}>
       <span class="hand-name">{hand.name}</span>
       <div class="row">
         {choices.map((choice) => (
-          <button type="button" key={choice.name} aria-pressed={Math.abs(value - choice.value) < 1e-6} onClick={() => void act({ kind: 'set', path: hand.path, value: choice.value }, `${hand.name} ${choice.name}`)}>
+          <button
+            type="button"
+            key={choice.name}
+            aria-pressed={Math.abs(value - choice.value) < 1e-6}
+            onClick={() =>
+              void act({ kind: 'set', path: hand.path, value: choice.value }, `${hand.name} ${choice.name}`)
+            }
+          >
             {choice.name}
           </button>
         ))}
@@ -159,11 +197,14 @@ function Slider({ hand }: { hand: HandFacts }) {
     if (hand.deadMan === undefined || renew.current !== undefined) return;
     setHeld(true);
     void sendIt();
-    renew.current = setInterval(() => {
-      void sendIt().then((ok) => {
-        if (!ok) drop();
-      });
-    }, (hand.deadMan * 1000) / 3);
+    renew.current = setInterval(
+      () => {
+        void sendIt().then((ok) => {
+          if (!ok) drop();
+        });
+      },
+      (hand.deadMan * 1000) / 3,
+    );
   };
   const stop = () => {
     clearInterval(renew.current);
@@ -176,7 +217,7 @@ function Slider({ hand }: { hand: HandFacts }) {
     stop();
     void act({ kind: 'release', path: hand.path, reason: 'let go' }, `${hand.name} let go`);
   };
-  // biome-ignore lint/correctness/useExhaustiveDependencies: the functions read only references
+  // the functions read only references
   useEffect(() => {
     const hidden = () => document.visibilityState === 'hidden' && release();
     window.addEventListener('blur', release);
@@ -257,7 +298,7 @@ function Note() {
         <span class="hidden">Text of the note</span>
         <textarea name="note" rows={2} maxLength={2000} required />
       </label>
-      <button>Write it down</button>
+      <button type="submit">Write it down</button>
     </form>
   );
 }

@@ -1,9 +1,9 @@
 import { useEffect, useRef, useState } from 'preact/hooks';
 import type { PressureFacts } from '../../live/source.js';
-import { clock, format, number, shownAs } from '../store/units.js';
 import { subject } from '../store/connection.js';
 import { fine, lookOf, peaks, pressureWarnings, resetPeaks, timeToRelief, worst } from '../store/pressures.js';
-import { beat, pulse, rangeOf, usePaths, valueOf } from '../store/values.js';
+import { clock, format, number, shownAs } from '../store/units.js';
+import { beat, newest, pulse, rangeOf, usePaths } from '../store/values.js';
 
 /** Every watched pressure as a column against its settings. */
 export function Pressures() {
@@ -30,7 +30,7 @@ export function Pressures() {
 function Column({ pressure }: { pressure: PressureFacts }) {
   beat.value;
   const shown = shownAs('Pa');
-  const value = valueOf(pressure.path);
+  const value = newest(pressure.path);
   const peak = peaks.value.get(pressure.path);
   const warning = worst(pressureWarnings.value.filter((candidate) => candidate.path === pressure.path));
   const look = warning?.active ? lookOf(warning) : fine;
@@ -54,11 +54,17 @@ function Column({ pressure }: { pressure: PressureFacts }) {
         {pressure.relief !== undefined && (
           <>
             <dt>Relief in</dt>
-            <dd class="number">{value >= pressure.relief ? 'reached' : seconds === undefined ? '–' : `${number(seconds, 1)} s`}</dd>
+            <dd class="number">
+              {value >= pressure.relief ? 'reached' : seconds === undefined ? '–' : `${number(seconds, 1)} s`}
+            </dd>
           </>
         )}
       </dl>
-      {warning !== undefined && !warning.acknowledged && !warning.active && <p class="quiet">was {lookOf(warning).words.toLowerCase()} at {clock(warning.sinceTick, subject.value?.bench.step ?? 0.001)}</p>}
+      {warning !== undefined && !warning.acknowledged && !warning.active && (
+        <p class="quiet">
+          was {lookOf(warning).words.toLowerCase()} at {clock(warning.sinceTick, subject.value?.bench.step ?? 0.001)}
+        </p>
+      )}
     </article>
   );
 }
@@ -76,7 +82,13 @@ function Glass({ pressure }: { pressure: PressureFacts }) {
   }, []);
   const shown = shownAs('Pa');
   const base = subject.value?.bench.ambientPressure ?? 101325;
-  const share = (si: number | undefined) => (si === undefined || !Number.isFinite(si) ? 0 : Math.min(1, Math.max(0, (si - base) / (pressure.scaleMost - base))));
+  // settings are round numbers: a decimal only where it tells something
+  const short = (si: number) => {
+    const value = si * shown.factor + shown.offset;
+    return number(value, Math.abs(value) >= 100 || Math.abs(value - Math.round(value)) < 0.05 ? 0 : shown.decimals);
+  };
+  const share = (si: number | undefined) =>
+    si === undefined || !Number.isFinite(si) ? 0 : Math.min(1, Math.max(0, (si - base) / (pressure.scaleMost - base)));
   const [least, most] = rangeOf(pressure.path);
   const peak = peaks.value.get(pressure.path);
   const em = Number.parseFloat(getComputedStyle(document.documentElement).fontSize);
@@ -86,7 +98,9 @@ function Glass({ pressure }: { pressure: PressureFacts }) {
       { at: pressure.relief, text: 'relief', kind: 'relief' },
       { at: pressure.precharge, text: 'precharge', kind: 'low' },
       { at: pressure.leastInlet, text: 'least inlet', kind: 'low' },
-    ].flatMap((mark) => (mark.at === undefined ? [] : [{ share: share(mark.at), text: `${format(mark.at, shown)} ${mark.text}`, kind: mark.kind }])),
+    ].flatMap((mark) =>
+      mark.at === undefined ? [] : [{ share: share(mark.at), text: `${short(mark.at)} ${mark.text}`, kind: mark.kind }],
+    ),
     (em * 0.95) / height,
   );
   const percent = (x: number) => `${(x * 100).toFixed(2)}%`;
@@ -94,15 +108,28 @@ function Glass({ pressure }: { pressure: PressureFacts }) {
     <div class="glass" ref={box} aria-hidden="true">
       <div class="tube">
         {pressure.workingLeast !== undefined && pressure.workingMost !== undefined && (
-          <div class="working" style={{ bottom: percent(share(pressure.workingLeast)), height: percent(share(pressure.workingMost) - share(pressure.workingLeast)) }} />
+          <div
+            class="working"
+            style={{
+              bottom: percent(share(pressure.workingLeast)),
+              height: percent(share(pressure.workingMost) - share(pressure.workingLeast)),
+            }}
+          />
         )}
-        <div class="oil" style={{ height: percent(share(least)) }} />
-        <div class="breath" style={{ bottom: percent(share(least)), height: percent(Math.max(0.004, share(most) - share(least))) }} />
+        <div class="fill" style={{ height: percent(share(least)) }} />
+        <div
+          class="breath"
+          style={{ bottom: percent(share(least)), height: percent(Math.max(0.004, share(most) - share(least))) }}
+        />
         {peak !== undefined && <div class="peak" style={{ bottom: percent(share(peak)) }} />}
       </div>
       <svg class="marks" width="100%" height={height} viewBox={`0 0 100 ${height}`} preserveAspectRatio="none">
         {marks.map((mark) => (
-          <polyline key={mark.text} class={`mark ${mark.kind}`} points={`0,${(1 - mark.share) * height} 8,${(1 - mark.share) * height} 16,${(1 - mark.placed) * height}`} />
+          <polyline
+            key={mark.text}
+            class={`mark ${mark.kind}`}
+            points={`0,${(1 - mark.share) * height} 8,${(1 - mark.share) * height} 16,${(1 - mark.placed) * height}`}
+          />
         ))}
       </svg>
       {marks.map((mark) => (
@@ -116,7 +143,9 @@ function Glass({ pressure }: { pressure: PressureFacts }) {
 
 /** Moves labels apart until none covers another. */
 function labels<T extends { share: number }>(marks: readonly T[], gap: number): (T & { placed: number })[] {
-  const sorted = [...marks].sort((a, b) => a.share - b.share).map((mark) => ({ ...mark, placed: Math.max(gap / 2, mark.share) }));
+  const sorted = [...marks]
+    .sort((a, b) => a.share - b.share)
+    .map((mark) => ({ ...mark, placed: Math.max(gap / 2, mark.share) }));
   for (let i = 1; i < sorted.length; i += 1) sorted[i].placed = Math.max(sorted[i].placed, sorted[i - 1].placed + gap);
   let ceiling = 1 - gap / 2;
   for (let i = sorted.length - 1; i >= 0; i -= 1) {

@@ -1,5 +1,15 @@
 import { useEffect, useRef, useState } from 'preact/hooks';
-import { askMoment, askShelf, goLive, offersRecordings, openRecording, shelf, subject, tick } from '../store/connection.js';
+import { Scroll } from '../parts/scroll.js';
+import {
+  askMoment,
+  askShelf,
+  goLive,
+  offersRecordings,
+  openRecording,
+  shelf,
+  subject,
+  tick,
+} from '../store/connection.js';
 import { clock } from '../store/units.js';
 import { showMoment } from '../store/values.js';
 
@@ -19,8 +29,7 @@ export function Recordings() {
       {!offersRecordings.value && <p class="quiet">This server offers no recordings.</p>}
       {offersRecordings.value && shelf.value.length === 0 && <p class="quiet">There is none yet.</p>}
       {shelf.value.length > 0 && (
-        // biome-ignore lint/a11y/noNoninteractiveTabindex: a region that scrolls must be reachable by keyboard
-        <div class="scroll" tabIndex={0} role="region" aria-label="Table of recordings">
+        <Scroll label="Table of recordings">
           <table class="full">
             <thead>
               <tr>
@@ -28,7 +37,9 @@ export function Recordings() {
                 <th scope="col">Bench</th>
                 <th scope="col">Scenario</th>
                 <th scope="col">Started</th>
-                <th scope="col" class="number">Length</th>
+                <th scope="col" class="number">
+                  Length
+                </th>
                 <th scope="col">Verdict</th>
                 <th scope="col">
                   <span class="hidden">Open</span>
@@ -53,7 +64,7 @@ export function Recordings() {
               ))}
             </tbody>
           </table>
-        </div>
+        </Scroll>
       )}
     </section>
   );
@@ -74,7 +85,7 @@ export function Moment() {
       showMoment(tick.peek());
     }, 40) as unknown as number;
   };
-  // biome-ignore lint/correctness/useExhaustiveDependencies: plays from where it stands
+  // plays from where it stands
   useEffect(() => {
     if (!playing || recording === undefined) return;
     const timer = setInterval(() => {

@@ -66,18 +66,18 @@ function charge(time: number): number {
     return x * x * (3 - 2 * x);
   };
   return (
-    0.12 + 0.7 * ramp(4, 11) - 0.62 * ramp(15, 22) + 0.72 * ramp(26, 33) + 0.07 * ramp(34, 37) - 0.87 * ramp(40, 47)
+    0.12 + 0.7 * ramp(4, 11) - 0.62 * ramp(15, 22) + 0.7 * ramp(26, 33) + 0.06 * ramp(34, 37) - 0.84 * ramp(40, 47)
   );
 }
 function chargeRate(time: number): number {
   return (charge(time + 0.005) - charge(Math.max(0, time - 0.005))) / 0.01;
 }
 const gasVolume0 = 0.05;
-const volume = (time: number) => 0.0465 - 0.0206 * charge(time);
+const volume = (time: number) => 0.0465 - 0.0222 * charge(time);
 const pressure = (time: number) => 151 * bar * (gasVolume0 / volume(time)) ** (1.19 + 0.02 * Math.sin(time / 9));
 /** Small and deterministic, in place of noise. */
 const ripple = (time: number, rate: number) => Math.sin(time * rate) * 0.6 + Math.sin(time * rate * 2.371 + 1) * 0.4;
-const flow = (time: number) => 0.0206 * chargeRate(time);
+const flow = (time: number) => 0.0222 * chargeRate(time);
 const speed = (time: number) => Math.max(0, 9 - 15 * (charge(time) - 0.4) + 0.6 * Math.sin(time / 5));
 const faulty = (set: ReadonlyMap<string, number>, path: string) => set.get(path) ?? 0;
 
@@ -91,7 +91,7 @@ const table: readonly [SignalInfo, Value][] = [
   [signal('highAccumulator.oilVolume', 'm3', 'oil volume', 'reading', 0, 0.05), (t) => gasVolume0 - volume(t)],
   [
     signal('highLine.pressure', 'Pa', 'pressure, absolute', 'reading', 0, 420 * bar),
-    (t) => pressure(t) + flow(t) * 9e8 + 0.5 * bar * ripple(t, 140),
+    (t) => pressure(t) + flow(t) * 2.2e8 + 0.5 * bar * ripple(t, 140),
   ],
   [signal('highLine.temperature', 'K', 'oil temperature', 'state', 250, 400), (t) => 318 + 4 * Math.sin(t / 31)],
   [
@@ -152,7 +152,7 @@ const table: readonly [SignalInfo, Value][] = [
   [signal('driver.gear', '1', 'selector', 'instrument', -1, 1), (_t, set) => set.get('driver.gear') ?? 1],
   [
     signal('highPressureSensor.value', 'Pa', 'sensed pressure, absolute', 'instrument', 0, 401 * bar),
-    (t) => Math.round((pressure(t - 0.004) + flow(t) * 9e8 + 0.3 * bar * ripple(t, 611)) / 5e4) * 5e4,
+    (t) => Math.round((pressure(t - 0.004) + flow(t) * 2.2e8 + 0.3 * bar * ripple(t, 611)) / 5e4) * 5e4,
   ],
   [signal('supply.on', '1', 'supply', 'run', 0, 1), (_t, set) => set.get('supply.on') ?? 1],
   [signal('key.on', '1', 'key', 'run', 0, 1), (_t, set) => set.get('key.on') ?? 1],
@@ -208,7 +208,7 @@ export function syntheticBench(options: SyntheticOptions = {}): SyntheticBench {
   const set = new Map<string, number>();
   const spikes = new Map<number, number>();
   const commands: { command: HandCommand; hand: Hand }[] = [];
-  const subjects: string[] = [];
+  const subjects: string[] = facts.scenario.steps.map((candidate) => candidate.name);
   const warnings = new Map<string, WarningStatus>();
   let tick = -1;
   let step = -1;
