@@ -7,7 +7,7 @@ import { EventCatalogue } from '../runtime/journal.js';
 import { Plant, type PlantPlaces } from '../runtime/plant.js';
 import { emptyScript, Script, type ScriptSpec } from '../runtime/script.js';
 import { SignalTable } from '../runtime/signals.js';
-import { LedgerStage, type Stage, throughputs, Tick } from '../runtime/tick.js';
+import { LedgerStage, type Stage, Tick, throughputs } from '../runtime/tick.js';
 import type { BenchSpec, InstrumentSpec } from './bench-spec.js';
 
 /** A bench put together: everything that one thread needs to run ticks. */
@@ -29,6 +29,8 @@ export interface Assembly {
   readonly target: (path: string) => number;
   /** Puts the block back to the start, as if no tick had run. */
   reset(): void;
+  /** Warnings so far, oldest first. Not for the tick. */
+  warnings(): readonly unknown[];
 }
 
 export interface AssemblyOptions {
@@ -56,6 +58,8 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   for (const [path, slot] of life.targets) commandAt.set(path, slot);
   shown.slots.push(...life.shownSlots);
   shown.signals.push(...life.shownSignals);
+  const units = new Map(spec.signals.map((info) => [info.path, info.unit]));
+  const declared = spec.instruments.map((instrument) => declareInstrument(instrument, layout, table, spec.step, units, commandAt, shown));
   const targets = { find: (path: string) => commandAt.get(path) ?? -1, nearest: () => [...commandAt.keys()] };
 
   const scriptStage = new Script(requireTargets(script, commandAt), spec.step, layout, table, events, targets);
@@ -64,7 +68,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     turnover: layout.addMany('ledger.turnover', throughputs(circuit).length),
     start: layout.addMany('ledger.start', 1 + circuit.stuffs.length),
   };
-  const declared = spec.instruments.map((instrument) => declareInstrument(instrument, layout, table, spec.step));
+  declareTiming(table);
   const exchange = new Exchange({
     map: spec.map,
     layout,
@@ -75,9 +79,14 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     bootWindowTicks: spec.life.bootWindow,
     firstTick,
   });
-  const instruments = spec.instruments.map((instrument, i) => buildInstrument(instrument, declared[i]!, table, options.seed, i, spec.step));
+  const instruments = spec.instruments.map((instrument, i) =>
+    buildInstrument(instrument, declared[i]!, table, options.seed, i, spec.step),
+  );
   const drives = spec.instruments.flatMap((instrument) =>
-    Object.entries(instrument.drives).map(([output, path]) => ({ from: table.find(`${instrument.name}.${output}`), to: targets.find(path) })),
+    Object.entries(instrument.drives).map(([output, path]) => ({
+      from: table.find(`${instrument.name}.${output}`),
+      to: targets.find(path),
+    })),
   );
   const extras = declareStages(spec, layout, table, events);
 
@@ -110,7 +119,24 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     ledger.begin(block);
   };
   reset();
-  return { spec, script, circuit, plant, layout, table, events, block, signals, exchange, tick, ledger, firstTick, target: targets.find, reset };
+  return {
+    spec,
+    script,
+    circuit,
+    plant,
+    layout,
+    table,
+    events,
+    block,
+    signals,
+    exchange,
+    tick,
+    ledger,
+    firstTick,
+    target: targets.find,
+    reset,
+    warnings: () => [],
+  };
 }
 
 function reservePlant(layout: BlockLayout, circuit: Circuit): PlantPlaces {
@@ -136,10 +162,15 @@ function declareCircuit(table: SignalTable, circuit: Circuit, at: PlantPlaces): 
   for (const stuff of circuit.stuffs) add(`ledger.${stuff}Bringing`, 'kg/s', `${stuff} that comes in from outside`);
   add('ledger.stored', 'J', 'energy stored in all elements');
   for (const stuff of circuit.stuffs) add(`ledger.${stuff}Held`, 'kg', `${stuff} held by all elements`);
-  if (table.length !== places(circuit).observeCount) throw new Error('the signals do not match what the circuit observes');
+  if (table.length !== places(circuit).observeCount)
+    throw new Error('the signals do not match what the circuit observes');
   const slots: number[] = [];
   const signals: number[] = [];
-  const show = (list: readonly { path: string }[], first: number, infos: readonly Parameters<SignalTable['add']>[0][]) => {
+  const show = (
+    list: readonly { path: string }[],
+    first: number,
+    infos: readonly Parameters<SignalTable['add']>[0][],
+  ) => {
     list.forEach((slot, i) => {
       if (table.find(slot.path) >= 0) return;
       slots.push(first + i);
@@ -154,15 +185,28 @@ function declareCircuit(table: SignalTable, circuit: Circuit, at: PlantPlaces): 
 
 function plain(info: Parameters<SignalTable['add']>[0]): Parameters<SignalTable['add']>[0] {
   const { path, unit, about, group, least, most } = info;
-  return { path, unit, about, group, ...(least === undefined ? {} : { least }), ...(most === undefined ? {} : { most }) };
+  return {
+    path,
+    unit,
+    about,
+    group,
+    ...(least === undefined ? {} : { least }),
+    ...(most === undefined ? {} : { most }),
+  };
 }
 
 function declareLedger(table: SignalTable, circuit: Circuit): { residual: number; turnover: number; stuffs: number } {
-  const add = (name: string, unit: string, about: string) => table.add({ path: `ledger.${name}`, unit, about, group: 'ledger' });
-  const residual = add('residual', 'J', 'stored now less at the start, less what came in, plus what left: zero when the physics closes');
+  const add = (name: string, unit: string, about: string) =>
+    table.add({ path: `ledger.${name}`, unit, about, group: 'ledger' });
+  const residual = add(
+    'residual',
+    'J',
+    'stored now less at the start, less what came in, plus what left: zero when the physics closes',
+  );
   const turnover = add('turnover', 'J', 'largest energy that passed through any one branch');
   const stuffs = table.length;
-  for (const stuff of circuit.stuffs) add(`${stuff}Residual`, 'kg', `${stuff} held now less at the start, less what came in`);
+  for (const stuff of circuit.stuffs)
+    add(`${stuff}Residual`, 'kg', `${stuff} held now less at the start, less what came in`);
   return { residual, turnover, stuffs };
 }
 
@@ -184,26 +228,58 @@ class LifeSignals {
   }
 }
 
+/** What a live run says of each tick besides: not part of the block, zero at fast pace. */
+function declareTiming(table: SignalTable): void {
+  table.add({ path: 'timing.lateness', unit: 's', about: 'start of this tick after its deadline (live)', group: 'timing' });
+  table.add({ path: 'timing.step', unit: 's', about: 'length of the tick before (live)', group: 'timing' });
+}
+
 interface DeclaredInstrument {
   readonly output: Record<string, number>;
+  readonly command: Record<string, number>;
   readonly memory: Record<string, number>;
   readonly extra: number;
 }
 
-function declareInstrument(spec: InstrumentSpec, layout: BlockLayout, table: SignalTable, step: number): DeclaredInstrument {
+function declareInstrument(
+  spec: InstrumentSpec,
+  layout: BlockLayout,
+  table: SignalTable,
+  step: number,
+  units: ReadonlyMap<string, string>,
+  commandAt: Map<string, number>,
+  shown: { slots: number[]; signals: number[] },
+): DeclaredInstrument {
   const output: Record<string, number> = {};
   const memory: Record<string, number> = {};
+  const command: Record<string, number> = {};
+  const sensed = Object.entries(spec.kind.inputs).find(([, declaration]) => declaration.anyUnit)?.[0];
+  const inputUnit = units.get(spec.inputs[sensed ?? ''] ?? '') ?? '1';
   for (const [name, declaration] of Object.entries(spec.kind.outputs)) {
-    const input = declaration.unitOf === undefined ? undefined : spec.inputs[declaration.unitOf];
-    const sensed = input === undefined ? -1 : table.find(input);
-    output[name] = table.add({ ...plain({ ...declaration, path: '', group: 'instrument' }), path: `${spec.name}.${name}`, unit: sensed >= 0 ? table.all[sensed]!.unit : declaration.unit });
+    const from = declaration.unitOf === undefined ? undefined : units.get(spec.inputs[declaration.unitOf] ?? '');
+    output[name] = table.add({ ...plain({ ...declaration, path: '', group: 'instrument' }), path: `${spec.name}.${name}`, unit: from ?? declaration.unit });
+  }
+  for (const [name, declaration] of Object.entries(spec.kind.commands ?? {})) {
+    const path = `${spec.name}.${name}`;
+    const slot = layout.add(path, declaration.rest);
+    command[name] = slot;
+    commandAt.set(path, slot);
+    shown.slots.push(slot);
+    shown.signals.push(table.add({ ...plain({ ...declaration, path, group: 'command' }), unit: declaration.unit === 'input' ? inputUnit : declaration.unit }));
   }
   for (const [name, declaration] of Object.entries(spec.kind.memory)) memory[name] = layout.add(`${spec.name}.${name}`, declaration.initial ?? 0);
   const count = spec.kind.extraMemory?.(spec.parameters, step) ?? 0;
-  return { output, memory, extra: layout.addMany(`${spec.name}.memory`, count) };
+  return { output, memory, command, extra: layout.addMany(`${spec.name}.memory`, count) };
 }
 
-function buildInstrument(spec: InstrumentSpec, declared: DeclaredInstrument, table: SignalTable, seed: number, identity: number, step: number): InstrumentUpdate {
+function buildInstrument(
+  spec: InstrumentSpec,
+  declared: DeclaredInstrument,
+  table: SignalTable,
+  seed: number,
+  identity: number,
+  step: number,
+): InstrumentUpdate {
   const input: Record<string, number> = {};
   const problems: Problem[] = [];
   for (const [name, declaration] of Object.entries(spec.kind.inputs)) {
@@ -219,7 +295,18 @@ function buildInstrument(spec: InstrumentSpec, declared: DeclaredInstrument, tab
     });
   }
   if (problems.length > 0) throw new BuildError(problems);
-  return spec.kind.build({ name: spec.name, parameter: spec.parameters, input, output: declared.output, memory: declared.memory, extra: declared.extra, seed, identity, step });
+  return spec.kind.build({
+    name: spec.name,
+    parameter: spec.parameters,
+    input,
+    output: declared.output,
+    memory: declared.memory,
+    command: declared.command,
+    extra: declared.extra,
+    seed,
+    identity,
+    step,
+  });
 }
 
 function stageOf(spec: BenchSpec, updates: readonly InstrumentUpdate[], stage: 'before' | 'after'): InstrumentUpdate[] {
@@ -228,15 +315,28 @@ function stageOf(spec: BenchSpec, updates: readonly InstrumentUpdate[], stage: '
 
 function requireTargets(script: ScriptSpec, commandAt: ReadonlyMap<string, number>): ScriptSpec {
   const problems: Problem[] = [];
-  const named = [...script.traces.map((trace) => ['traces', trace.target] as const), ...script.steps.map((step) => [`steps (${step.name})`, step.target] as const)];
+  const named = [
+    ...script.traces.map((trace) => ['traces', trace.target] as const),
+    ...script.steps.map((step) => [`steps (${step.name})`, step.target] as const),
+  ];
   for (const [where, target] of named) {
-    if (target !== '' && !commandAt.has(target)) problems.push({ path: `${script.name}: ${where}`, what: `no command \`${target}\``, remedy: 'see `oilspring list signals BENCH`' });
+    if (target !== '' && !commandAt.has(target))
+      problems.push({
+        path: `${script.name}: ${where}`,
+        what: `no command \`${target}\``,
+        remedy: 'see `oilspring list signals BENCH`',
+      });
   }
   if (problems.length > 0) throw new BuildError(problems);
   return script;
 }
 
-function declareStages(_spec: BenchSpec, _layout: BlockLayout, _table: SignalTable, _events: EventCatalogue): { watch: Stage; judge: Stage } {
+function declareStages(
+  _spec: BenchSpec,
+  _layout: BlockLayout,
+  _table: SignalTable,
+  _events: EventCatalogue,
+): { watch: Stage; judge: Stage } {
   const none: Stage = { run() {} };
   return { watch: none, judge: none };
 }

@@ -1,7 +1,7 @@
 import { messageCounts } from '../bridge/examine-map.js';
 import type { MessageMap } from '../bridge/message-map.js';
 import { linkCounts } from '../bridge/udp-link.js';
-import type { SignalGroup, SignalInfo } from '../runtime/contract.js';
+import type { PortKinds, SignalGroup, SignalInfo } from '../runtime/contract.js';
 import type { ReadElement } from './elements.js';
 import { shown } from './quantity.js';
 import { type Placed, type Section, suggestion } from './section.js';
@@ -44,6 +44,8 @@ export class SignalList {
     add('ledger.leaving', 'W', 'dissipated power that leaves the circuit', 'ledger');
     add('ledger.stored', 'J', 'energy stored in all elements', 'ledger');
     add('ledger.residual', 'J', 'what the energy balance leaves over', 'ledger');
+    add('timing.lateness', 's', 'start of this tick after its deadline (live)', 'timing');
+    add('timing.step', 's', 'length of the tick before (live)', 'timing');
     add('ledger.turnover', 'J', 'largest energy that passed through any one branch', 'ledger');
   }
 
@@ -74,8 +76,9 @@ export class SignalList {
     }
   }
 
-  addElements(elements: readonly ReadElement[]): void {
-    for (const { name, kind } of elements) {
+  addElements(elements: readonly ReadElement[], portKinds: PortKinds): void {
+    for (const element of elements) {
+      const { name, kind } = element;
       const groups: [SignalGroup, Readonly<Record<string, Omit<SignalInfo, 'path' | 'group'>>>][] = [
         ['state', kind.states],
         ['memory', kind.memory],
@@ -95,7 +98,31 @@ export class SignalList {
           });
         }
       }
+      this.addLedgerOf(element, portKinds);
     }
+    const stuffs = new Set(
+      elements.flatMap(({ kind }) => [...Object.keys(kind.holds ?? {}), ...Object.keys(kind.brings ?? {})]),
+    );
+    for (const stuff of [...stuffs].sort()) {
+      const add = (name: string, unit: string, about: string) =>
+        this.add({ path: `ledger.${stuff}${name}`, unit, about, group: 'ledger' });
+      add('Bringing', 'kg/s', `${stuff} that comes in from outside`);
+      add('Held', 'kg', `${stuff} held by all elements`);
+      add('Residual', 'kg', `${stuff} held now less at the start, less what came in`);
+    }
+  }
+
+  /** What the circuit builder tells of each element's energy. */
+  private addLedgerOf({ name, kind, connections }: ReadElement, portKinds: PortKinds): void {
+    const add = (signal: string, unit: string, about: string) =>
+      this.add({ path: `${name}.${signal}`, unit, about, group: 'ledger' });
+    if (kind.energy) add('energy', 'J', 'stored energy');
+    if (kind.supply) add('supply', 'W', 'power that comes in from outside');
+    if (kind.loss) add('loss', 'W', 'power that its law dissipates');
+    const passes = Object.keys(connections).some((port) =>
+      portKinds[kind.ports[port]!]?.power.some((factors) => factors.length === 2),
+    );
+    if (kind.role === 'branch' && passes) add('throughput', 'W', 'mechanical and hydraulic power passing through');
   }
 
   /** Resolves a text such as `a.b`, or the name of something with one signal of the unit. Reports what fails. */

@@ -4,7 +4,7 @@ import path from 'node:path';
 import { parseArgs } from 'node:util';
 import { ControllerEndpoint, type ControllerModule } from '../bridge/controller-side.js';
 import { readBench } from '../configs/bench.js';
-import { library } from './catalogue.js';
+import { catalogue as library } from '../configs/catalogue.js';
 import { loadController } from './loop/controller-module.js';
 
 /**

@@ -385,6 +385,7 @@ export function buildCircuit(spec: CircuitSpec): Circuit {
     ...(compile(code, ['rates', 'ratesAndJacobian', 'update', 'observe', 'factor', 'solve']) as unknown as CircuitFunctions),
     audit: lazily(() => compile(printFunction(graph, 'audit', ['y', 'u', 'm', 'out'], outputs.audit), ['audit'])['audit'] as CircuitFunctions['audit']),
   };
+  train(functions, { states, memory, commands }, rows.length, elimination.size, outputs);
   return {
     name: spec.name,
     spec,
@@ -402,6 +403,38 @@ export function buildCircuit(spec: CircuitSpec): Circuit {
     outputs,
     graph,
   };
+}
+
+/**
+ * Runs each function a few times on numbers that are not whole, before anything else does: V8 takes a value that happened
+ * to be whole in the first calls for an integer, and throws the optimised code away when it is not, in mid-run.
+ */
+function train(
+  functions: CircuitFunctions,
+  circuit: { readonly states: readonly StateSlot[]; readonly memory: readonly { readonly initial: number }[]; readonly commands: readonly CommandSlot[] },
+  entries: number,
+  factors: number,
+  outputs: CircuitOutputs,
+): void {
+  const odd = (i: number, k: number) => 0.1 + 0.5 * Math.abs(Math.sin(12.9898 * (i + 1) + 78.233 * (k + 1)));
+  const d = new Float64Array(outputs.ratesAndJacobian.length);
+  const J = new Float64Array(entries);
+  const A = new Float64Array(factors + 1);
+  const out = new Float64Array(outputs.observe.length + outputs.update.length);
+  const x = new Float64Array(circuit.states.length);
+  for (let k = 0; k < 24; k += 1) {
+    const y = Float64Array.from(circuit.states, (state, i) => state.initial * (0.9 + 0.2 * odd(i, k)) + (state.initial === 0 ? state.scale * odd(i, k) * 0.1 : 0));
+    const u = Float64Array.from(circuit.commands, (command, i) => command.rest + (k % 2 === 0 ? odd(i, k) : -odd(i, k)));
+    const m = Float64Array.from(circuit.memory, (slot, i) => slot.initial + odd(i, k));
+    functions.rates(y, u, m, d);
+    functions.update(y, u, m, 2.5e-4, out);
+    functions.observe(y, u, m, out);
+    functions.ratesAndJacobian(y, u, m, d, J);
+    functions.factor(J, 4000, A);
+    for (let i = 0; i < A.length; i += 1) A[i] = odd(i, k);
+    for (let i = 0; i < x.length; i += 1) y[i] = odd(i, k);
+    functions.solve(A, y, x);
+  }
 }
 
 function compile(code: string, names: readonly string[]): Record<string, unknown> {

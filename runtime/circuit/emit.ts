@@ -56,8 +56,9 @@ function numberText(value: number): string {
   return value < 0 ? `(${value})` : String(value);
 }
 
-const infix = new Set(['+', '-', '*', '/', '<', '<=', '>', '>=', '===', '!==', '&&', '||']);
-const boolean = new Set(['<', '<=', '>', '>=', '===', '!==', '&&', '||', '!']);
+const infix = new Set(['+', '-', '*', '/']);
+const comparisons = new Set(['<', '<=', '>', '>=', '===', '!==']);
+const boolean = new Set([...comparisons, '&&', '||', '!']);
 
 export interface Chunk {
   readonly lines: string[];
@@ -138,62 +139,69 @@ export function printChunks(graph: Graph, outputs: readonly Output[], dialect: D
     return name ?? expression(target, at);
   };
   const condition = (id: NodeId, at: number): string => {
-    const node = graph.nodes[throughLaw(graph, id)]!;
-    return boolean.has(node.op) ? text(id, at) : `(${text(id, at)} ${dialect.differs} 0)`;
+    const target = throughLaw(graph, id);
+    const node = graph.nodes[target]!;
+    const inPlace = chunkOf.get(target) === at && !printed.has(target);
+    if (comparisons.has(node.op) && inPlace) return comparison(target, at);
+    return `(${text(id, at)} ${dialect.differs} 0)`;
   };
+  const comparison = (id: NodeId, at: number): string => {
+    const node = graph.nodes[id]!;
+    const op = node.op === '===' ? dialect.equals : node.op === '!==' ? dialect.differs : node.op;
+    return `(${text(node.operands[0]!, at)} ${op} ${text(node.operands[1]!, at)})`;
+  };
+  /** A truth value as 1 or 0; a number counts as true when it is not 0. */
+  const truth = (id: NodeId, at: number): string =>
+    boolean.has(graph.nodes[throughLaw(graph, id)]!.op) ? text(id, at) : `(${text(id, at)} ${dialect.differs} 0 ? 1 : 0)`;
   const expression = (id: NodeId, at: number): string => {
     const node = graph.nodes[id]!;
     const [a, b, c] = node.operands as [NodeId, NodeId, NodeId];
+    if (comparisons.has(node.op)) return `(${comparison(id, at)} ? 1 : 0)`;
     switch (node.op) {
       case 'neg':
         return `(-${text(a, at)})`;
       case '?':
         return `(${condition(a, at)} ? ${text(b, at)} : ${text(c, at)})`;
       case '!':
-        return `(!${condition(a, at)})`;
+        return `(1 - ${truth(a, at)})`;
       case '&&':
+        return `(${truth(a, at)} * ${truth(b, at)})`;
       case '||':
-        return `(${condition(a, at)} ${node.op} ${condition(b, at)})`;
+        return `${dialect.math('max')}(${truth(a, at)}, ${truth(b, at)})`;
       default:
-        if (infix.has(node.op)) {
-          const op = node.op === '===' ? dialect.equals : node.op === '!==' ? dialect.differs : node.op;
-          return `(${text(a, at)} ${op} ${text(b, at)})`;
-        }
+        if (infix.has(node.op)) return `(${text(a, at)} ${node.op} ${text(b, at)})`;
         return `${dialect.math(node.op)}(${node.operands.map((operand) => text(operand, at)).join(', ')})`;
     }
   };
+  // Both arms of a choice are computed ahead of it: code that runs for the first time when a relief valve opens would
+  // make V8 throw the optimised function away in the middle of a live run.
+  const arms = new Set<NodeId>();
+  for (const id of order) {
+    if (graph.nodes[id]!.op !== '?') continue;
+    const [, b, c] = operandsOf(id);
+    arms.add(b!);
+    arms.add(c!);
+  }
   const depth = new Map<NodeId, number>();
   for (const id of order) {
-    const node = graph.nodes[id]!;
     if (isLeaf(graph, id)) continue;
     const at = chunkOf.get(id)!;
     const below = Math.max(0, ...operandsOf(id).map((operand) => depth.get(operand) ?? 0));
     const spilled = spill.get(id);
-    const single = uses.get(id) === 1 && spilled === undefined && below < 12;
-    if (single || (boolean.has(node.op) && uses.get(id)! <= 1)) {
+    if (uses.get(id) === 1 && spilled === undefined && below < 12 && !arms.has(id)) {
       depth.set(id, below + 1);
       continue;
     }
     depth.set(id, 0);
-    const isBoolean = boolean.has(node.op);
-    const body = isBoolean ? `${expression(id, at)} ? 1 : 0` : expression(id, at);
     const lines = chunks[at]!.lines;
-    if (isBoolean) {
-      // a truth value used more than once is kept as 1 or 0
-      lines.push(`${dialect.local}v${id} = ${body};`);
-      printed.set(id, `(v${id} ${dialect.differs} 0)`);
-      if (spilled !== undefined) lines.push(`w[${spilled}] = v${id};`);
-      continue;
-    }
-    lines.push(`${dialect.local}v${id} = ${body};`);
+    lines.push(`${dialect.local}v${id} = ${expression(id, at)};`);
     printed.set(id, `v${id}`);
     if (spilled !== undefined) lines.push(`w[${spilled}] = v${id};`);
   }
   for (const output of outputs) {
     const target = throughLaw(graph, output.node);
     const at = isLeaf(graph, target) ? chunkCount - 1 : chunkOf.get(target)!;
-    const value = boolean.has(graph.nodes[target]!.op) ? `(${text(target, at)} ? 1 : 0)` : text(target, at);
-    chunks[at]!.lines.push(`${output.array}[${output.index}] = ${value};`);
+    chunks[at]!.lines.push(`${output.array}[${output.index}] = ${text(target, at)};`);
   }
   return { chunks, spills: spill.size };
 }

@@ -16,7 +16,7 @@ import { Pacer } from '../../runtime/realtime/pacer.js';
 import { enterScheduling, type Scheduling } from '../../runtime/realtime/scheduling.js';
 import { TimingRecord } from '../../runtime/realtime/timing-record.js';
 import { RingJournal } from '../../runtime/ring-journal.js';
-import { library } from '../catalogue.js';
+import { catalogue as library } from '../../configs/catalogue.js';
 import { loadController, moduleTransport } from './controller-module.js';
 import { createLoopControl, runLoop } from './engine.js';
 import type { LoopMessage, RunOrder } from './run-order.js';
