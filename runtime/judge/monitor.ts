@@ -90,15 +90,14 @@ export class Judge {
     for (let i = 0; i < this.roots.length; i += 1) {
       const root = this.roots[i]!;
       const at = this.results + i * slotsPerRequirement;
-      const triggers = this.triggerCount(i, block);
+      this.countTriggers(i, block, at + 4);
       block[at] = outermost.now[root]!;
       block[at + 1] = outermost.value[root]!;
       block[at + 2] = outermost.at[root]!;
-      block[at + 4] = triggers;
       const before = block[at + 3]!;
       let verdict = 0;
       if (!holds(outermost.high[root]!)) verdict = 2;
-      else if (triggers === 0) verdict = 3;
+      else if (block[at + 4] === 0) verdict = 3;
       else if (holds(outermost.low[root]!)) verdict = 1;
       else if (holds(outermost.value[root]!) && !this.awaits(i, tick, block)) verdict = 1;
       block[at + 3] = verdict;
@@ -108,14 +107,12 @@ export class Judge {
     }
   }
 
-  /** -1 without triggers, otherwise how often the rarest came. */
-  private triggerCount(index: number, block: Float64Array): number {
+  /** Into a slot: -1 without triggers, otherwise how often the rarest came. Returns nothing: a real number would be boxed. */
+  private countTriggers(index: number, block: Float64Array, to: number): void {
     const first = this.triggerAt[index]!;
     const last = this.triggerAt[index + 1]!;
-    if (first === last) return -1;
-    let least = block[this.triggerSlots[first]!]!;
-    for (let i = first + 1; i < last; i += 1) least = Math.min(least, block[this.triggerSlots[i]!]!);
-    return least;
+    block[to] = first === last ? -1 : Infinity;
+    for (let i = first; i < last; i += 1) block[to] = Math.min(block[to]!, block[this.triggerSlots[i]!]!);
   }
 
   /** Whether a trigger has come whose consequence is not known yet. */

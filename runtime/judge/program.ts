@@ -1,6 +1,9 @@
 import { addTo, slideExtreme, slideUntil } from './window.js';
 
-/** What an operation of a compiled requirement does; expressions first, so that they can be told apart by number. */
+/**
+ * What an operation of a compiled requirement does; expressions first, so that they can be told apart by number. The switch in
+ * `run` says the numbers themselves: the engine makes a jump table of literals only, and compares one by one otherwise.
+ */
 export const operation = {
   signal: 0,
   sum: 1,
@@ -138,134 +141,144 @@ export class Program {
         }
       }
       switch (kind) {
-        case operation.signal:
+        case 0: // signal
           registers[to] = signals[a]!;
           break;
-        case operation.sum:
+        case 1: // sum
           registers[to] = registers[a]! + registers[this.b[i]!]!;
           break;
-        case operation.difference:
+        case 2: // difference
           registers[to] = registers[a]! - registers[this.b[i]!]!;
           break;
-        case operation.product:
+        case 3: // product
           registers[to] = registers[a]! * registers[this.b[i]!]!;
           break;
-        case operation.quotient:
+        case 4: // quotient
           registers[to] = registers[a]! / registers[this.b[i]!]!;
           break;
-        case operation.lesser:
+        case 5: // lesser
           registers[to] = Math.min(registers[a]!, registers[this.b[i]!]!);
           break;
-        case operation.greater:
+        case 6: // greater
           registers[to] = Math.max(registers[a]!, registers[this.b[i]!]!);
           break;
-        case operation.negative:
+        case 7: // negative
           registers[to] = -registers[a]!;
           break;
-        case operation.size:
+        case 8: // size
           registers[to] = Math.abs(registers[a]!);
           break;
-        case operation.change:
-        case operation.rate:
+        case 9: // change
+        case 10: // rate
           this.change(i, time, windows);
           break;
-        case operation.integral:
-        case operation.integralOver:
+        case 11: // integral
+        case 12: // integralOver
           this.integral(i, time, windows);
           break;
-        case operation.peak:
+        case 13: // peak
           windows[this.slot[i]!] = Math.max(windows[this.slot[i]!]!, registers[a]!);
           registers[to] = windows[this.slot[i]!]!;
           break;
-        case operation.trough:
+        case 14: // trough
           windows[this.slot[i]!] = Math.min(windows[this.slot[i]!]!, registers[a]!);
           registers[to] = windows[this.slot[i]!]!;
           break;
-        case operation.extremeOver:
+        case 15: // extremeOver
           this.extremeOver(i, time, windows);
           break;
-        case operation.extreme:
+        case 31: // extreme
           slideExtreme(windows, this.slot[i]!, this.span[i]!, this.mask[i]!, this.sign[i]!, time, registers, a, to);
           break;
-        case operation.mean:
-        case operation.meanOver:
+        case 16: // mean
+        case 17: // meanOver
           this.mean(i, time, windows);
           break;
-        case operation.count:
-        case operation.duration:
-        case operation.durationOver:
+        case 18: // count
+        case 19: // duration
+        case 20: // durationOver
           this.tally(i, time, windows);
           break;
-        case operation.below: {
+        case 21: {
+          // below
           // Equal sides must give -0 here and +0 below; `+ 0` takes the sign off (-0) - 0.
           const margin = -(registers[a]! - registers[this.b[i]!]! + 0);
           registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
-        case operation.notAbove: {
+        case 22: {
+          // notAbove
           const margin = registers[this.b[i]!]! - registers[a]! + 0;
           registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
-        case operation.signalBelow: {
+        case 34: {
+          // signalBelow
           const margin = -(signals[a]! - this.constant[i]! + 0);
           registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
-        case operation.signalNotAbove: {
+        case 35: {
+          // signalNotAbove
           const margin = this.constant[i]! - signals[a]! + 0;
           registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
-        case operation.signalAbove: {
+        case 36: {
+          // signalAbove
           const margin = -(this.constant[i]! - signals[a]! + 0);
           registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
-        case operation.signalNotBelow: {
+        case 37: {
+          // signalNotBelow
           const margin = signals[a]! - this.constant[i]! + 0;
           registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
           break;
         }
-        case operation.divide:
+        case 23: // divide
           registers[to] = registers[a]! / this.constant[i]!;
           break;
-        case operation.and:
+        case 24: // and
           registers[to] = Math.min(registers[a]!, registers[this.b[i]!]!);
           break;
-        case operation.or:
+        case 25: // or
           registers[to] = Math.max(registers[a]!, registers[this.b[i]!]!);
           break;
-        case operation.not:
+        case 26: // not
           registers[to] = -registers[a]!;
           break;
-        case operation.given: {
+        case 27: {
+          // given
           const condition = registers[a]!;
           registers[to] = condition > 0 || 1 / condition === Infinity ? registers[this.b[i]!]! : Infinity;
           break;
         }
-        case operation.happens: {
+        case 33: {
+          // happens
           const margin = registers[a]!;
           registers[to] = margin > 0 || 1 / margin === Infinity ? Infinity : -Infinity;
           break;
         }
-        case operation.trigger:
+        case 28: // trigger
           this.trigger(i, time, block, end);
           break;
-        case operation.previous: {
+        case 29: {
+          // previous
           const slot = this.slot[i]!;
           registers[to] = time === 0 ? this.constant[i]! : windows[slot]!;
           windows[slot] = registers[a]!;
           break;
         }
-        case operation.delay: {
+        case 30: {
+          // delay
           const slot = this.slot[i]!;
           const mask = this.mask[i]!;
           windows[slot + (time & mask)] = registers[a]!;
           if (time >= this.span[i]!) registers[to] = windows[slot + ((time - this.span[i]!) & mask)]!;
           break;
         }
-        case operation.until:
+        case 32: // until
           slideUntil(windows, this.slot[i]!, this.span[i]!, this.mask[i]! + 1, time, registers, a, this.b[i]!, to);
           break;
       }
@@ -290,25 +303,27 @@ export class Program {
   private integral(i: number, time: number, windows: Float64Array): void {
     const slot = this.slot[i]!;
     const span = this.span[i]!;
-    const now = this.registers[this.a[i]!]!;
+    const registers = this.registers;
+    const to = this.to[i]!;
+    const from = this.a[i]!;
     if (time > 0) {
-      let trapezoid = 0.5 * (windows[slot]! + now) * this.step;
-      if (trapezoid - trapezoid !== 0) {
+      registers[to] = 0.5 * (windows[slot]! + registers[from]!) * this.step;
+      if (!Number.isFinite(registers[to]!)) {
         windows[slot + 3] = time + 1;
-        trapezoid = 0;
+        registers[to] = 0;
       }
-      addTo(windows, slot + 1, trapezoid);
+      addTo(windows, slot + 1, registers, to, 1);
       if (this.kind[i] === operation.integralOver) {
         const mask = this.mask[i]!;
         // The trapezoid of tick `time - span` leaves; there is none at tick 0.
-        if (time > span) addTo(windows, slot + 1, -windows[slot + 4 + ((time - span) & mask)]!);
-        windows[slot + 4 + (time & mask)] = trapezoid;
+        if (time > span) addTo(windows, slot + 1, windows, slot + 4 + ((time - span) & mask), -1);
+        windows[slot + 4 + (time & mask)] = registers[to]!;
       }
     }
-    windows[slot] = now;
+    windows[slot] = registers[from]!;
     const spoilt =
       windows[slot + 3] !== 0 && (this.kind[i] === operation.integral || time - windows[slot + 3]! + 1 < span);
-    this.registers[this.to[i]!] = spoilt ? Number.NaN : windows[slot + 1]! + windows[slot + 2]!;
+    registers[to] = spoilt ? Number.NaN : windows[slot + 1]! + windows[slot + 2]!;
   }
 
   /** Slots: 1 + tick of the last value that is no number, then the extreme. Such a value spoils its whole span. */
@@ -328,24 +343,26 @@ export class Program {
   private mean(i: number, time: number, windows: Float64Array): void {
     const slot = this.slot[i]!;
     const span = this.span[i]!;
-    let now = this.registers[this.a[i]!]!;
-    if (now - now !== 0) {
+    const registers = this.registers;
+    const to = this.to[i]!;
+    registers[to] = registers[this.a[i]!]!;
+    if (!Number.isFinite(registers[to]!)) {
       windows[slot + 2] = time + 1;
-      now = 0;
+      registers[to] = 0;
     }
-    addTo(windows, slot, now);
+    addTo(windows, slot, registers, to, 1);
     let count = time + 1;
     if (this.kind[i] === operation.meanOver) {
       const mask = this.mask[i]!;
       if (time > span) {
-        addTo(windows, slot, -windows[slot + 3 + ((time - span - 1) & mask)]!);
+        addTo(windows, slot, windows, slot + 3 + ((time - span - 1) & mask), -1);
         count = span + 1;
       }
-      windows[slot + 3 + (time & mask)] = now;
+      windows[slot + 3 + (time & mask)] = registers[to]!;
     }
     const spoilt =
       windows[slot + 2] !== 0 && (this.kind[i] === operation.mean || time - windows[slot + 2]! + 1 <= span);
-    this.registers[this.to[i]!] = spoilt ? Number.NaN : (windows[slot]! + windows[slot + 1]!) / count;
+    registers[to] = spoilt ? Number.NaN : (windows[slot]! + windows[slot + 1]!) / count;
   }
 
   /** Slots: whether it held before, tally, ring of what held. */

@@ -139,11 +139,12 @@ function joinArc(memory: Float64Array, base: number, size: number, begin: number
   memory[base] = Math.min(frontLeast, backLeast);
 }
 
-/** Slots of a compensated running sum. */
-export const sumSlots = 2;
-
-/** Adds to the sum at `base` (value, correction) with Neumaier's correction (1974); the sum is memory[base] + memory[base + 1]. */
-export function addTo(memory: Float64Array, base: number, value: number): void {
+/**
+ * Adds source[index] times `sign` to the sum at `base` (value, correction) with Neumaier's correction (1974); the sum is
+ * memory[base] + memory[base + 1]. The value comes by its place: a real number as an argument may be boxed.
+ */
+export function addTo(memory: Float64Array, base: number, source: Float64Array, index: number, sign: 1 | -1): void {
+  const value = sign * source[index]!;
   const sum = memory[base]!;
   const next = sum + value;
   memory[base + 1] = memory[base + 1]! + (Math.abs(sum) >= Math.abs(value) ? sum - next + value : value - next + sum);
