@@ -9,7 +9,14 @@ import { readAmbient, readBudgets, readController, readLife, readPath, readRecor
 import { Section } from './section.js';
 import { SignalList } from './signal-list.js';
 import { readSource } from './source.js';
-import { checkReliefSettings, fillReliefSettings, readWatched, reliefOfSide, reliefValves } from './watched.js';
+import {
+  checkReliefSettings,
+  fillReliefSettings,
+  readWatched,
+  reliefOfSide,
+  reliefValves,
+  remarkReliefSettings,
+} from './watched.js';
 
 /** Longest and shortest tick, s. */
 const steps = { least: 1e-4, most: 0.02 };
@@ -43,7 +50,7 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
 
   const signals = new SignalList();
   signals.addRuntime();
-  signals.addElements(elements);
+  signals.addElements(elements, catalogue.portKinds);
   for (const key of ['stores', 'branches'] as const) {
     for (const unread of namesBelow(top, key))
       if (!elements.some((element) => element.name === unread)) signals.unread.add(unread);
@@ -57,6 +64,7 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
   const valves = reliefValves(elements);
   const sides = reliefOfSide(elements, valves);
   checkReliefSettings(top, elements, valves, sides);
+  remarkReliefSettings(top, elements, sides);
   elements = fillReliefSettings(elements, sides);
   const watched = readWatched(top, elements, signals, sides, ambient);
   const life = readLife(top, step);

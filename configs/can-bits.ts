@@ -63,9 +63,28 @@ export function overlappingBits(signals: readonly MapSignal[], bytes: number): B
       });
       break;
     }
+    const short = beyondRange(signal, layout);
+    if (short) clashes.push(short);
     placed.push({ signal, bits: new Set(bits) });
   }
   return clashes;
+}
+
+/** The range of a signal must be sayable in its bits. */
+function beyondRange(signal: MapSignal, layout: CanLayout): BitClash | undefined {
+  if (layout.float || !(layout.length <= 64)) return undefined;
+  const least = layout.signed ? -(2 ** (layout.length - 1)) : 0;
+  const most = layout.signed ? 2 ** (layout.length - 1) - 1 : 2 ** layout.length - 1;
+  const raw = [signal.least, signal.most].map((value) => (value - layout.offset) / layout.scale);
+  if (raw.every((value) => value > least - 0.5 && value < most + 0.5)) return undefined;
+  const ends = [least, most].map((value) => value * layout.scale + layout.offset).sort((a, b) => a - b);
+  return {
+    signal: signal.name,
+    what: `the range does not fit ${layout.length} bits`,
+    value: `${signal.least} .. ${signal.most} ${signal.unit}`,
+    bound: `${ends[0]} .. ${ends[1]} ${signal.unit}`,
+    remedy: 'take more bits or another scale and offset',
+  };
 }
 
 /** Whether two signals can be in the same frame. */

@@ -29,10 +29,10 @@ export const cycles: readonly DriveCycle[] = Object.values(european);
 const longest = 86_400;
 /** Signals of the runtime that a script may set beside commands. */
 const settableOfRun = new Set(['life.supply', 'life.key']);
-const actions = ['set', 'ramp', 'hold', 'release', 'note'] as const;
+const actions = ['set', 'ramp', 'hold', 'release'] as const;
 
 /**
- * Reads a scenario file: `scenario` (name), `about`, `duration`, `preview`, `drive` (points of time and speed, or the
+ * Reads a scenario file: `scenario` (name), `about`, `lasts`, `preview`, `drive` (points of time and speed, or the
  * name of a cycle), `grade` (points), `traces` (any command over time) and `steps`. Throws a BuildError with all that is
  * wrong.
  */
@@ -64,7 +64,7 @@ class ScenarioReader {
     const { top, bench } = this;
     const name = top.text('scenario', { required: true }, 'harbour round') ?? '';
     const about = top.text('about') ?? '';
-    const given = top.has('duration') ? this.duration() : undefined;
+    const given = top.has('lasts') ? this.lasts() : undefined;
     const preview = checkedTicks(top, 'preview', bench.step) ?? Math.round(0.5 / bench.step);
     const drive = this.drive();
     const grade = this.grade();
@@ -75,14 +75,14 @@ class ScenarioReader {
     const ticks = given ?? Math.max(0, ...ends, ...steps.map((step) => step.at));
     // Where something else is wrong, the end may be missing only because of that.
     if (ticks === 0 && top.problems.count === 0)
-      top.fail('duration', 'missing', 'add duration: 60 s, or a drive', {}, top.where);
+      top.fail('lasts', 'missing', 'add lasts: 60 s, or a drive', {}, top.where);
     return { name, about, ticks, drive, preview, traces, steps };
   }
 
-  private duration(): number | undefined {
-    const seconds = this.top.quantity('duration', { unit: 's', most: longest });
+  private lasts(): number | undefined {
+    const seconds = this.top.quantity('lasts', { unit: 's', most: longest });
     if (seconds === undefined) return undefined;
-    return checkedTicks(this.top, 'duration', this.bench.step, { least: 1 });
+    return checkedTicks(this.top, 'lasts', this.bench.step, { least: 1 });
   }
 
   private drive(): [number, number][] {
@@ -121,25 +121,29 @@ class ScenarioReader {
       );
     }
     const target = candidates[0]!;
-    return {
-      target: target.path,
-      points: this.points(this.top, 'grade', entry.value, expectedOf(target)),
-      between: 'linear',
-    };
+    return this.pointsOrSection(this.top, 'grade', entry.value, target);
   }
 
+  /** Below `traces`, by command: a list of points, or `points` and what lies between them. */
   private traces(taken: string | undefined): ScriptTrace[] {
     const traces: ScriptTrace[] = [];
-    for (const [path, section] of this.top.sections('traces')) {
-      const target = this.command(section, '', { text: path, where: section.where });
-      if (target?.path === taken) {
-        section.fail('', 'the command follows grade already', 'keep one of the two', {}, section.where);
+    const all = this.top.section('traces');
+    for (const path of all?.keys() ?? []) {
+      const { value, where } = all!.entry(path)!;
+      const target = this.command(all!, path, { text: path, where });
+      if (target && target.path === taken) {
+        all!.fail(path, 'the command follows grade already', 'keep one of the two', {}, where);
         continue;
       }
-      const trace = target && this.trace(section, target);
+      const trace = target && this.pointsOrSection(all!, path, value, target);
       if (trace) traces.push(trace);
     }
     return traces;
+  }
+
+  private pointsOrSection(section: Section, key: string, value: Tree, target: SignalInfo): ScriptTrace | undefined {
+    if (value.kind === 'mapping') return this.trace(section.sectionIn(value, key)!, target);
+    return { target: target.path, points: this.points(section, key, value, expectedOf(target)), between: 'linear' };
   }
 
   private trace(section: Section, target: SignalInfo, known: readonly string[] = []): ScriptTrace | undefined {
@@ -209,32 +213,27 @@ class ScenarioReader {
     return steps.sort((a, b) => a.at - b.at);
   }
 
+  /** One action, with or without a note; or a note alone. */
   private step(section: Section): ScriptStep | undefined {
     const at = checkedTicks(section, 'at', this.bench.step, { required: true });
-    const said = section.text('name');
+    const note = section.text('note');
     const named = actions.filter((action) => section.has(action));
-    if (named.length !== 1) {
-      for (const key of section.keys()) section.skip(key);
-      const odd = section
-        .keys()
-        .find((key) => !['at', 'name', 'to', 'over'].includes(key) && !(actions as readonly string[]).includes(key));
-      const remedy = odd === undefined ? `write one of ${actions.join(', ')}` : suggestion(odd, actions);
-      return section.fail(
-        '',
-        named.length === 0 ? 'a step that does nothing' : `a step that does ${named.length} things`,
-        remedy,
-        odd === undefined ? {} : { value: odd },
-      );
+    if (named.length > 1 || (named.length === 0 && !section.has('note'))) {
+      const known = ['at', 'to', 'over', 'note', ...actions];
+      const odd = section.keys().find((key) => !known.includes(key));
+      const remedy =
+        odd === undefined ? `write one of ${actions.join(', ')} or note` : suggestion(odd, [...actions, 'note']);
+      const what = named.length === 0 ? 'a step that does nothing' : `a step that does ${named.length} things`;
+      return section.fail('', what, remedy, odd === undefined ? {} : { value: odd });
     }
-    const action = named[0]!;
-    const object = section.placed(action, { required: true }, action === 'note' ? 'some text' : 'element.command');
-    if (action === 'note') {
+    const action = named[0];
+    if (action === undefined) {
       section.finish();
-      return at === undefined || !object
+      return at === undefined || note === undefined
         ? undefined
-        : { at, name: said ?? object.text, action, target: '', value: 0, over: 0 };
+        : { at, name: note, action: 'note', target: '', value: 0, over: 0 };
     }
-    const target = this.command(section, action, object);
+    const target = this.command(section, action, section.placed(action, { required: true }, 'element.command'));
     const takesValue = action === 'set' || action === 'ramp';
     const entry = takesValue ? section.entry('to') : undefined;
     if (takesValue && !entry)
@@ -244,7 +243,7 @@ class ScenarioReader {
     section.finish();
     if (at === undefined || !target || value === undefined || over === undefined) return undefined;
     const written = takesValue ? ` to ${section.peek('to')}` : '';
-    return { at, name: said ?? `${action} ${target.path}${written}`, action, target: target.path, value, over };
+    return { at, name: note ?? `${action} ${target.path}${written}`, action, target: target.path, value, over };
   }
 
   private command(section: Section, key: string, said: Placed | undefined): SignalInfo | undefined {

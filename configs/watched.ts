@@ -83,7 +83,8 @@ export function reliefOfSide(
   const own = new Map<string, ReliefValve>();
   for (const valve of valves) {
     const other = own.get(valve.store);
-    if (!other || valve.setting < other.setting) own.set(valve.store, valve);
+    // A relief valve of its own goes before the one inside a charge pump, which sets the charge pressure.
+    if (!other || goesBefore(valve, other)) own.set(valve.store, valve);
   }
   const neighbours = new Map<string, string[]>();
   for (const element of elements) {
@@ -128,6 +129,11 @@ function search(
   return undefined;
 }
 
+function goesBefore(one: ReliefValve, other: ReliefValve): boolean {
+  const inPump = (valve: ReliefValve) => valve.element.connections['from'] === undefined;
+  return inPump(one) === inPump(other) ? one.setting < other.setting : inPump(other);
+}
+
 /** A relief valve set above what its node may carry protects nothing. */
 export function checkReliefSettings(
   top: Section,
@@ -160,6 +166,30 @@ export function checkReliefSettings(
         { value: formatQuantity(side.setting, 'bar(g)'), bound },
       );
     }
+  }
+}
+
+/** A store that states another relief setting than its valve has is worth a look. */
+export function remarkReliefSettings(
+  top: Section,
+  elements: readonly ReadElement[],
+  sides: ReadonlyMap<string, ReliefValve>,
+): void {
+  for (const element of elements) {
+    const stated = element.parameters[reliefParameter];
+    const place = element.places.get(reliefParameter);
+    const side = sides.get(element.name);
+    if (!place || !side || stated === undefined || stated === 0 || Math.abs(stated - side.setting) < 1) continue;
+    top.problems.remark(
+      place,
+      `${element.path}.${reliefParameter}`,
+      `another relief setting than that of ${side.element.name}`,
+      'leave it away or make the two agree',
+      {
+        value: formatQuantity(stated, 'bar(g)'),
+        bound: formatQuantity(side.setting, 'bar(g)'),
+      },
+    );
   }
 }
 
@@ -205,13 +235,20 @@ export function readWatched(
         from: `${element.name}.${limit.parameter}`,
       });
     }
-    const side = sides.get(element.name);
-    const pressure = side && pressureReading(element);
-    if (pressure !== undefined)
-      draft(`${element.name}.${pressure}`, 'Pa').relief = { valve: side!.element.name, setting: side!.setting };
+    const pressure = pressureReading(element);
+    const relief = reliefOf(element, sides.get(element.name));
+    if (pressure !== undefined && relief) draft(`${element.name}.${pressure}`, 'Pa').relief = relief;
   }
   readAdditions(top, signals, draft, elements);
   return [...drafts.values()];
+}
+
+/** What the store itself states, or else the relief valve of its side. Stated as 0: none. */
+function reliefOf(element: ReadElement, side: ReliefValve | undefined): Draft['relief'] | undefined {
+  const stated = element.places.has(reliefParameter) ? element.parameters[reliefParameter] : undefined;
+  if (stated === 0) return undefined;
+  const setting = stated ?? side?.setting;
+  return setting === undefined ? undefined : { valve: side?.element.name ?? '', setting };
 }
 
 /** 1.1 PS is 1.1 times the gauge pressure: what the wall carries. */

@@ -18,7 +18,8 @@ const layout = (
   offset: 0,
   ...more,
 });
-const signal = (name: string, can: CanLayout) => ({ name, can }) as MapSignal;
+const signal = (name: string, can: CanLayout, more: Partial<MapSignal> = {}) =>
+  ({ name, can, least: 0, most: 1, unit: '1', ...more }) as MapSignal;
 
 describe('bits of a CAN payload', () => {
   it('little endian counts up from the least significant bit', () => {
@@ -65,6 +66,17 @@ describe('bits of a CAN payload', () => {
       bound: '2 bytes',
     });
     expect(overlappingBits([signal('a', layout(12, 4))], 2)).toEqual([]);
+  });
+
+  it('ranges are sayable in the bits', () => {
+    const of = (least: number, most: number, can: CanLayout) =>
+      overlappingBits([signal('a', can, { least, most, unit: 'rpm' })], 8).map((clash) => clash.bound);
+    expect(of(0, 4000, layout(0, 12))).toEqual([]);
+    expect(of(0, 4100, layout(0, 12))).toEqual(['0 .. 4095 rpm']);
+    expect(of(-1, 100, layout(0, 12))).toEqual(['0 .. 4095 rpm']);
+    expect(of(-2000, 2000, layout(0, 12, 'little', { signed: true }))).toEqual([]);
+    expect(of(0, 10000, layout(0, 12, 'little', { scale: 2.5, offset: -100 }))).toEqual([]);
+    expect(of(0, 1e9, layout(0, 32, 'little', { float: true }))).toEqual([]);
   });
 
   it('a signal has as many different bits as it is long', () => {

@@ -29,7 +29,7 @@ function complaints(text: string): string[] {
 
 const round = `scenario: short round
 about: invented
-duration: 60 s
+lasts: 60 s
 preview: 0.4 s
 drive:
   - [0 s, 0 km/h]
@@ -41,7 +41,7 @@ traces:
 steps:
   - { at: 20 s, release: isolation.open }
   - { at: 12 s, set: isolation.open, to: on }
-  - { at: 13 s, ramp: line.pressure, to: 200 bar(g), over: 500 ms, name: charge }
+  - { at: 13 s, ramp: line.pressure, to: 200 bar(g), over: 500 ms, note: charge }
   - { at: 13 s, hold: truck.payload }
   - { at: 1 s, note: pulling out }
   - { at: 50 s, set: life.key, to: off }
@@ -96,12 +96,8 @@ describe('a scenario file', () => {
   });
 
   it.each([
-    [
-      'duration: 60 s',
-      'duration: 0 s',
-      ['round.yaml:3:11 duration: too small, 0 s, at least 0.001 s, use a larger value'],
-    ],
-    ['duration: 60 s', 'duration: 2 d', ['round.yaml:3:11 duration: too large, 2 d, at most 1 d, use a smaller value']],
+    ['lasts: 60 s', 'lasts: 0 s', ['round.yaml:3:8 lasts: too small, 0 s, at least 0.001 s, use a larger value']],
+    ['lasts: 60 s', 'lasts: 2 d', ['round.yaml:3:8 lasts: too large, 2 d, at most 1 d, use a smaller value']],
     [
       '[12 s, 36 km/h]',
       '[12 s, 36]',
@@ -146,8 +142,8 @@ describe('a scenario file', () => {
     ['hold: truck', 'hod: truck', ['round.yaml:16:5 steps[3]: a step that does nothing, hod, did you mean hold?']],
     [
       'note: pulling out',
-      'note: a, set: isolation.open, to: 1',
-      ['round.yaml:17:5 steps[4]: a step that does 2 things, write one of set, ramp, hold, release, note'],
+      'hold: truck.grade, set: isolation.open, to: 1',
+      ['round.yaml:17:5 steps[4]: a step that does 2 things, write one of set, ramp, hold, release or note'],
     ],
     ['at: 1 s', 'at: 1', ['round.yaml:17:11 steps[4].at: no unit, 1, write a time with its unit, for example 5 ms']],
     ['steps:\n', 'step: []\nsteps:\n', ['round.yaml:12:1 step: unknown key, did you mean steps?']],
@@ -157,9 +153,7 @@ describe('a scenario file', () => {
   });
 
   it('needs an end and a known cycle', () => {
-    expect(complaints('scenario: idle\n')).toEqual([
-      'round.yaml:1:1 duration: missing, add duration: 60 s, or a drive',
-    ]);
+    expect(complaints('scenario: idle\n')).toEqual(['round.yaml:1:1 lasts: missing, add lasts: 60 s, or a drive']);
     expect(complaints('scenario: city\ndrive: ECE15\n')[0]).toBe(
       'round.yaml:2:8 drive: unknown choice, ECE15, did you mean ECE-15?',
     );
@@ -185,7 +179,7 @@ describe('a scenario file', () => {
       ),
     })).node;
     const file = fc.dictionary(
-      fc.constantFrom('scenario', 'about', 'duration', 'preview', 'drive', 'grade', 'traces', 'steps', 'other'),
+      fc.constantFrom('scenario', 'about', 'lasts', 'preview', 'drive', 'grade', 'traces', 'steps', 'other'),
       node,
       { maxKeys: 6 },
     );

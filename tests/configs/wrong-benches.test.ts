@@ -467,6 +467,14 @@ const cases: readonly (readonly [string, string, string, readonly string[]])[] =
       'bench.yaml:20:54 branches.isolation.to: unknown store, mainRelief, use one of highAccumulator, highLine, lowLine, propShaft',
     ],
   ],
+  [
+    'a signal of another unit',
+    'request: requests.valve',
+    'request: highLine.pressure',
+    [
+      'bench.yaml:25:37 instruments.valveStage.request: signal in Pa where one in 1 belongs, highLine.pressure, name a signal in 1',
+    ],
+  ],
 ];
 
 describe('one wrong statement, one message', () => {
@@ -506,6 +514,79 @@ describe('several wrong statements', () => {
       'extra.yaml:3:3 stores.lowLine: said twice, keep one of them (the other is at bench.yaml:17)',
       'extra.yaml:4:1 step: said twice, keep one of them (the other is at bench.yaml:3)',
     ]);
+  });
+});
+
+describe('messages on CAN', () => {
+  const from = smallBench.indexOf('links:');
+  const can = `${smallBench.slice(0, from)}links:
+  bus: { is: can, interface: can0, bitRate: 500 kbit/s }
+messages:
+  sensors:
+    direction: sent
+    id: 0x101
+    every: 10 ms
+    bytes: 4
+    signals:
+      highPressure: { from: highPressureSensor, unit: bar(g), range: 0 .. 400, can: { start: 0, length: 16, scale: 0.01 } }
+      shaftSpeed: { from: propShaft.speed, unit: rpm, range: -4000 .. 4000, can: { start: 23, length: 16, order: big, signed: on } }
+  requests:
+    direction: received
+    id: 0x201
+    every: 10 ms
+    timeout: 50 ms
+    bytes: 8
+    protection: { is: counter, start: 60, length: 4 }
+    signals:
+      valve: { unit: '%', range: 0 .. 100, substitute: 0 %, can: { start: 0, length: 8 } }
+`;
+
+  it('are read with their layout', () => {
+    const { map } = readBench('bench.yaml', catalogue, memoryFiles({ 'bench.yaml': can }));
+    expect(map.links).toEqual([{ name: 'bus', kind: 'can', interface: 'can0', bitRate: 500_000 }]);
+    expect(map.messages[0]).toMatchObject({ identifier: 0x101, bytes: 4 });
+    expect(map.messages[0]!.signals.map((signal) => signal.can)).toEqual([
+      { startBit: 0, length: 16, byteOrder: 'little', signed: false, float: false, scale: 0.01, offset: 0 },
+      { startBit: 23, length: 16, byteOrder: 'big', signed: true, float: false, scale: 1, offset: 0 },
+    ]);
+    expect(map.messages[1]!.protection).toEqual({ kind: 'counter', settings: { start: 60, length: 4 } });
+  });
+
+  it.each([
+    [
+      'start: 23',
+      'start: 15',
+      'bench.yaml:36:82 messages.sensors.signals.shaftSpeed.can: bits shared with highPressure, bits 8 to 23, bit 15 is taken, move one of the two',
+    ],
+    [
+      'start: 23',
+      'start: 31',
+      'bench.yaml:36:82 messages.sensors.signals.shaftSpeed.can: signal beyond the payload, bits 24 to 39, 4 bytes, move it or make the message longer',
+    ],
+    [
+      'length: 16, scale: 0.01',
+      'length: 12, scale: 0.01',
+      'bench.yaml:35:85 messages.sensors.signals.highPressure.can: the range does not fit 12 bits, 0 .. 400 bar(g), 0 .. 40.95 bar(g), take more bits or another scale and offset',
+    ],
+    [
+      'id: 0x101',
+      'id: 0x801',
+      'bench.yaml:31:9 messages.sensors.id: too large, 0x801, at most 2047, use a smaller number',
+    ],
+    ['    bytes: 4\n', '', 'bench.yaml:29:3 messages.sensors.bytes: missing, add bytes: 0'],
+    [
+      'interface: can0',
+      'interface: a-name-that-is-too-long',
+      'bench.yaml:27:30 links.bus.interface: not the name of an interface, a-name-that-is-too-long, use at most 15 characters, such as can0',
+    ],
+    [
+      ', can: { start: 0, length: 8 }',
+      '',
+      'bench.yaml:45:7 messages.requests.signals.valve.can: missing, add can: and its keys below it',
+    ],
+  ])('%s -> %s', (was, becomes, message) => {
+    expect(can.split(was)).toHaveLength(2);
+    expect(complaints(can.replace(was, becomes))).toEqual([message]);
   });
 });
 
