@@ -1,0 +1,250 @@
+import { type EventCatalogue, type Journal, noJournal } from './journal.js';
+import { declareWatchEvents, type WatchEvents } from './watch-events.js';
+import type { WatchLadder } from './watch-ladders.js';
+import { describeWarning, WatchLog, type WatchWarning } from './watch-log.js';
+import { keeping, SLOT, type WatchSetup, WatchTables } from './watch-tables.js';
+
+export interface WatchOptions extends WatchSetup {
+  readonly events: EventCatalogue;
+  /** A level stays at least this long after it was last true, s. Default 0.2. */
+  readonly hold?: number;
+}
+
+/** What `watch.*.timeToRelief` says when the pressure does not approach its relief setting, s. */
+export const notApproaching = 1e6;
+
+const usualHold = 0.2;
+
+/**
+ * The watch: every tick, true signals against their settings. A signal has up to two ladders of levels, above and below;
+ * a ladder has one warning, which climbs, falls, ends, and stays open until it has ended and was acknowledged. All that
+ * it remembers stands in the block. `run` allocates nothing.
+ *
+ * A level begins in the tick in which the value is beyond its setting. It is over when the value has been back by the
+ * hysteresis (watch-ladders.ts) for the hold time; its last tick is then the last one before that.
+ */
+export class Watch {
+  journal: Journal = noJournal;
+  private readonly step: number;
+  private readonly hold: number;
+  private readonly tables: WatchTables;
+  private readonly events: WatchEvents;
+  private readonly log = new WatchLog();
+
+  /** Throws BuildError for paths that are no signals. */
+  constructor(options: WatchOptions) {
+    this.step = options.step;
+    this.hold = Math.max(1, Math.round((options.hold ?? usualHold) / options.step));
+    this.tables = new WatchTables(options);
+    this.events = declareWatchEvents(options.events, this.tables.ladders);
+  }
+
+  get ladders(): readonly WatchLadder[] {
+    return this.tables.ladders;
+  }
+
+  /** Slot of the command `watch.acknowledge`: acts when it changes; below 0 on all warnings, n > 0 on number n - 1. */
+  get acknowledgeSlot(): number {
+    return this.tables.acknowledgeSlot;
+  }
+
+  /** Closed warnings that `warnings` no longer tells. */
+  get forgotten(): number {
+    return this.log.forgotten;
+  }
+
+  /** Puts the signals to what they say before tick 0 and forgets closed warnings. `run` does it at tick 0. */
+  begin(block: Float64Array, signals: Float64Array): void {
+    const { tables } = this;
+    this.log.clear();
+    for (let i = 0; i < tables.source.length; i += 1) {
+      const value = signals[tables.source[i]];
+      block[tables.peakSlot + i] = value;
+      signals[tables.peakSignal[i]] = value;
+    }
+    for (let k = 0; k < tables.sourceOf.length; k += 1) {
+      const r = tables.reliefOf[k];
+      if (r < 0) continue;
+      block[tables.reliefSlot + 2 * r] = Math.max(signals[tables.sourceOf[k]], tables.floor[r]);
+      signals[tables.timeSignal[r]] = notApproaching;
+    }
+  }
+
+  run(block: Float64Array, signals: Float64Array, tick: number): void {
+    if (tick === 0) this.begin(block, signals);
+    const { source, ladderAt, peakSlot, peakSign, peakSignal, levelSignal, acknowledgeSlot } = this.tables;
+    if (block[acknowledgeSlot] !== block[acknowledgeSlot + 1]) this.obey(block, tick);
+    let worst = 0;
+    for (let i = 0; i < source.length; i += 1) {
+      const value = signals[source[i]];
+      if (peakSign[i] * value > peakSign[i] * block[peakSlot + i]) block[peakSlot + i] = value;
+      signals[peakSignal[i]] = block[peakSlot + i];
+      let level = 0;
+      for (let k = ladderAt[i]; k < ladderAt[i + 1]; k += 1)
+        level = Math.max(level, this.look(block, signals, k, tick));
+      signals[levelSignal[i]] = level;
+      worst = Math.max(worst, level);
+    }
+    signals[this.tables.worstSignal] = worst;
+    this.count(block, signals);
+  }
+
+  /** One ladder in one tick; the number of its present level. */
+  private look(block: Float64Array, signals: Float64Array, k: number, tick: number): number {
+    const { slot, sign, sourceOf, rungAt, least, begins, number, reliefOf, near } = this.tables;
+    const at = slot + SLOT.count * k;
+    const first = rungAt[k];
+    const value = sign[k] * signals[sourceOf[k]];
+    const r = reliefOf[k];
+    let rung = r >= 0 && this.approaches(block, signals, k, r) ? near[r] : 0;
+    if (value > least[k]) {
+      let j = rungAt[k + 1];
+      while (j > first + rung && !(value > begins[j - 1])) j -= 1;
+      rung = j - first;
+    }
+    const present = block[at + SLOT.present];
+    if (rung > present) this.climb(block, signals, k, rung, tick);
+    else if (present > 0) this.stay(block, signals, k, tick);
+    const now = block[at + SLOT.present];
+    if (now === 0) return 0;
+    if (value > sign[k] * block[at + SLOT.peak]) block[at + SLOT.peak] = sign[k] * value;
+    return number[first + now - 1];
+  }
+
+  /** Writes the predicted time to relief; whether it has been near for long enough to say so. */
+  private approaches(block: Float64Array, signals: Float64Array, k: number, r: number): boolean {
+    const { reliefSlot, sourceOf, gain, lag, floor, relief, lookAhead, confirm, timeSignal } = this.tables;
+    const at = reliefSlot + 2 * r;
+    const value = signals[sourceOf[k]];
+    const fed = Math.max(value, floor[r]);
+    const smoothed = block[at] + gain[r] * (fed - block[at]);
+    block[at] = smoothed;
+    const rate = (fed - smoothed) / lag[r];
+    const gap = relief[r] - value;
+    let time = notApproaching;
+    if (gap <= 0) time = 0;
+    else if (rate * notApproaching > gap) time = gap / rate;
+    signals[timeSignal[r]] = time;
+    const ticks = time < lookAhead[r] ? block[at + 1] + 1 : 0;
+    block[at + 1] = ticks;
+    return ticks > confirm[r];
+  }
+
+  /** A level begins, or a warning that is on goes higher. Tells when that is more than was told or seen before. */
+  private climb(block: Float64Array, signals: Float64Array, k: number, rung: number, tick: number): void {
+    const at = this.tables.slot + SLOT.count * k;
+    const present = block[at + SLOT.present];
+    const worst = block[at + SLOT.worst];
+    const seen = block[at + SLOT.acknowledged] !== 0;
+    if (worst === 0) {
+      block[at + SLOT.since] = tick;
+      block[at + SLOT.peak] = signals[this.tables.sourceOf[k]];
+      block[at + SLOT.times] = 0;
+    }
+    if (present === 0) block[at + SLOT.times] += 1;
+    block[at + SLOT.present] = rung;
+    block[at + SLOT.worst] = Math.max(worst, rung);
+    block[at + SLOT.until] = tick;
+    block[at + SLOT.acknowledged] = 0;
+    if (present === 0 || rung > worst || seen) this.tell(signals, k, rung, present === 0, tick);
+  }
+
+  private tell(signals: Float64Array, k: number, rung: number, begins: boolean, tick: number): void {
+    const { events, tables } = this;
+    const j = tables.rungAt[k] + rung - 1;
+    const value = signals[tables.sourceOf[k]];
+    const r = tables.reliefOf[k];
+    const early = r >= 0 && rung === tables.near[r] && !(value > tables.begins[j]);
+    const kind = early ? events.predicted[k] : begins ? events.begins[j] : events.rises[j];
+    const third = early ? signals[tables.timeSignal[r]] : tables.number[j];
+    this.journal.event(tick, kind, events.subjects[k], value, tables.setting[j], third);
+  }
+
+  /** A level that is on: it lasts, or goes lower when its time has come. */
+  private stay(block: Float64Array, signals: Float64Array, k: number, tick: number): void {
+    const at = this.tables.slot + SLOT.count * k;
+    let rung = block[at + SLOT.present];
+    if (this.lasts(signals, k, rung)) {
+      block[at + SLOT.until] = tick;
+      return;
+    }
+    if (tick - block[at + SLOT.until] < this.hold) return;
+    do rung -= 1;
+    while (rung > 0 && !this.lasts(signals, k, rung));
+    block[at + SLOT.present] = rung;
+    if (rung > 0) {
+      block[at + SLOT.until] = tick;
+      return;
+    }
+    this.report(block, k, this.events.ends[k], block[at + SLOT.until], tick);
+    if (block[at + SLOT.acknowledged] !== 0) this.close(block, k);
+  }
+
+  private lasts(signals: Float64Array, k: number, rung: number): boolean {
+    const { reliefOf, near, timeSignal, lookAhead, sign, sourceOf, ends, rungAt } = this.tables;
+    const r = reliefOf[k];
+    if (r >= 0 && rung === near[r] && signals[timeSignal[r]] < keeping * lookAhead[r]) return true;
+    return sign[k] * signals[sourceOf[k]] > ends[rungAt[k] + rung - 1];
+  }
+
+  /**
+   * Acknowledges one open warning by its number among `ladders`, or all with -1. One that is over is closed; one that
+   * lasts is closed when it ends, and calls again when it climbs. Unknown numbers and closed ones do nothing.
+   */
+  acknowledge(block: Float64Array, index: number, tick: number): void {
+    for (let k = 0; k < this.ladders.length; k += 1) {
+      const at = this.tables.slot + SLOT.count * k;
+      if (index >= 0 && k !== index) continue;
+      if (block[at + SLOT.worst] === 0 || block[at + SLOT.acknowledged] !== 0) continue;
+      block[at + SLOT.acknowledged] = 1;
+      this.report(block, k, this.events.acknowledged[k], tick, tick);
+      if (block[at + SLOT.present] === 0) this.close(block, k);
+    }
+  }
+
+  private obey(block: Float64Array, tick: number): void {
+    const said = block[this.acknowledgeSlot];
+    block[this.acknowledgeSlot + 1] = said;
+    if (said < 0) this.acknowledge(block, -1, tick);
+    else if (said >= 1) this.acknowledge(block, Math.floor(said) - 1, tick);
+  }
+
+  /** Peak, setting of the worst level, and the time from the beginning to tick `until`. */
+  private report(block: Float64Array, k: number, kind: number, until: number, tick: number): void {
+    const at = this.tables.slot + SLOT.count * k;
+    const setting = this.tables.setting[this.tables.rungAt[k] + block[at + SLOT.worst] - 1];
+    const time = (until - block[at + SLOT.since]) * this.step;
+    this.journal.event(tick, kind, this.events.subjects[k], block[at + SLOT.peak], setting, time);
+  }
+
+  private close(block: Float64Array, k: number): void {
+    const at = this.tables.slot + SLOT.count * k;
+    this.log.add(block, at, k);
+    block[at + SLOT.worst] = 0;
+    block[at + SLOT.acknowledged] = 0;
+  }
+
+  private count(block: Float64Array, signals: Float64Array): void {
+    const { slot, countSignal, unseenSignal } = this.tables;
+    const end = slot + SLOT.count * this.ladders.length;
+    let open = 0;
+    let unseen = 0;
+    for (let at = slot; at < end; at += SLOT.count) {
+      if (block[at + SLOT.worst] === 0) continue;
+      open += 1;
+      if (block[at + SLOT.acknowledged] === 0) unseen += 1;
+    }
+    signals[countSignal] = open;
+    signals[unseenSignal] = unseen;
+  }
+
+  /** All warnings so far, oldest first. Not for the tick. */
+  warnings(block: Float64Array): WatchWarning[] {
+    const open = this.ladders.flatMap((ladder, k) => {
+      const at = this.tables.slot + SLOT.count * k;
+      if (block[at + SLOT.worst] === 0) return [];
+      return [{ ...describeWarning(ladder, block.subarray(at, at + SLOT.count), this.step), index: k }];
+    });
+    return [...this.log.list(this.ladders, this.step), ...open].sort((a, b) => a.since - b.since);
+  }
+}
