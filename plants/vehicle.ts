@@ -24,7 +24,13 @@ export const vehicle = store({
     rollingDeflection: { unit: '1', about: 'bristle deflection of the rolling resistance', scale: 1 },
   },
   commands: {
-    payload: { unit: 'kg', about: 'payload wanted on board', rest: 0, least: 0 },
+    payload: {
+      unit: 'kg',
+      about: 'payload wanted on board; at rest that of the start',
+      rest: 0,
+      restFrom: 'payload',
+      least: 0,
+    },
     grade: { unit: '1', about: 'slope of the road, rise over run, uphill positive', rest: 0, least: -0.5, most: 0.5 },
     headwind: { unit: 'm/s', about: 'wind against the vehicle', rest: 0, least: -60, most: 60 },
   },

@@ -53,6 +53,8 @@ export interface MemoryDeclaration extends Quantity {
 export interface CommandDeclaration extends Quantity {
   /** The value when nobody sets it. */
   readonly rest: number;
+  /** Name of a start value that stands in for `rest`: what is there at the start stays until somebody says otherwise. */
+  readonly restFrom?: string;
   readonly least?: number;
   readonly most?: number;
   /** True for inputs that only faults and scenarios touch (leak factor, stuck position, ...). */

@@ -525,7 +525,7 @@ function declareSlots(element: ElementInstance, states: StateSlot[], memory: (Sl
     memory.push({ ...slot(element, name, declaration, 'memory'), initial: initial[name] ?? declaration.initial ?? 0 });
   }
   for (const [name, declaration] of Object.entries(kind.commands) as [string, CommandDeclaration][]) {
-    commands.push({ ...slot(element, name, declaration, 'command'), ...bounds(declaration), rest: declaration.rest, fault: declaration.fault ?? false });
+    commands.push({ ...slot(element, name, declaration, 'command'), ...bounds(declaration), rest: (declaration.restFrom === undefined ? undefined : element.start[declaration.restFrom]) ?? declaration.rest, fault: declaration.fault ?? false });
   }
 }
 

@@ -91,6 +91,17 @@ describe('road load and energy of trucks, from the definitions', () => {
     expect(bench.get('body.energy') / 1e3).toBeCloseTo(kilojoule, 1);
   });
 
+  it('the payload of the start stays on board until somebody says otherwise', () => {
+    const bench = new Bench([
+      element('body', library.vehicle, { parameters: { mass: 5200 }, start: { payload: 1400 } }),
+    ]);
+    bench.run(2);
+    expect(bench.get('body.totalMass')).toBe(6600);
+    bench.set('body.payload', 1100);
+    bench.run(4);
+    expect(bench.get('body.totalMass')).toBeCloseTo(6300, 3);
+  });
+
   it('payload loaded while driving keeps the velocity and the ledger', () => {
     const bench = new Bench([
       element('body', library.vehicle, {
