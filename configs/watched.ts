@@ -27,10 +27,10 @@ const levels: readonly WatchLevel[] = [
 ];
 
 /** Parameter of a relief valve and of a store that the checks look for. */
-export const crackingParameter = 'cracking';
-export const maximumParameter = 'maximumAllowable';
+const crackingParameter = 'cracking';
+const maximumParameter = 'maximumAllowable';
 /** A store's own statement of the relief setting of its side; filled in from the relief valve when left out. */
-export const reliefParameter = 'reliefSetting';
+const reliefParameter = 'reliefSetting';
 
 /** Warn when a pressure is within this share of its relief setting, or will be there within this time, s. */
 const usualVicinity = 0.05;

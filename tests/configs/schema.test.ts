@@ -1,8 +1,11 @@
+import { mkdtempSync, readFileSync, rmSync } from 'node:fs';
+import { tmpdir } from 'node:os';
+import { join } from 'node:path';
 import { describe, expect, it } from 'vitest';
 import { parse } from 'yaml';
 import { z } from 'zod';
 import { catalogue as library } from '../../configs/catalogue.js';
-import { benchSchema } from '../../configs/schema.js';
+import { benchSchema, writeBenchSchema } from '../../configs/schema.js';
 import { catalogue } from './catalogue.js';
 import { smallBench } from './small-bench.js';
 
@@ -59,5 +62,17 @@ describe('the schema for editors', () => {
       }
     }
     z.fromJSONSchema(schema as Json);
+  });
+
+  it('is written as JSON', () => {
+    const folder = mkdtempSync(join(tmpdir(), 'schema-'));
+    try {
+      writeBenchSchema(catalogue, join(folder, 'bench.schema.json'));
+      expect(JSON.parse(readFileSync(join(folder, 'bench.schema.json'), 'utf8'))).toEqual(
+        JSON.parse(JSON.stringify(benchSchema(catalogue))),
+      );
+    } finally {
+      rmSync(folder, { recursive: true });
+    }
   });
 });
