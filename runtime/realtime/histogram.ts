@@ -70,6 +70,14 @@ export class Histogram {
     return this.max;
   }
 
+  /** Upper edge, µs, and count of each bucket that is not empty. */
+  counts(): [number, number][] {
+    const list: [number, number][] = [];
+    for (let i = 0; i < BUCKETS; i += 1)
+      if (this.buckets[i]! > 0) list.push([Math.min(upperEdge(i), this.head[2]!) / 1e3, this.buckets[i]!]);
+    return list;
+  }
+
   summary(): DurationSummary {
     return { p50: this.quantile(0.5), p99: this.quantile(0.99), p999: this.quantile(0.999), max: this.max };
   }
