@@ -73,42 +73,49 @@ export class Watch {
   run(block: Float64Array, signals: Float64Array, tick: number): void {
     if (tick === 0) this.begin(block, signals);
     const { source, ladderAt, peakSlot, peakSign, peakSignal, levelSignal, acknowledgeSlot } = this.tables;
+    const { slot, sign, least, reliefOf, worstSignal } = this.tables;
     if (block[acknowledgeSlot] !== block[acknowledgeSlot + 1]) this.obey(block, tick);
     let worst = 0;
     for (let i = 0; i < source.length; i += 1) {
       const value = signals[source[i]];
       if (peakSign[i] * value > peakSign[i] * block[peakSlot + i]) block[peakSlot + i] = value;
       signals[peakSignal[i]] = block[peakSlot + i];
-      let level = 0;
-      for (let k = ladderAt[i]; k < ladderAt[i + 1]; k += 1)
-        level = Math.max(level, this.look(block, signals, k, tick));
-      signals[levelSignal[i]] = level;
-      worst = Math.max(worst, level);
+      signals[levelSignal[i]] = 0;
+      for (let k = ladderAt[i]; k < ladderAt[i + 1]; k += 1) {
+        const r = reliefOf[k];
+        const near = r >= 0 && this.approaches(block, signals, k, r);
+        // The usual case ends here: nothing is beyond its setting, and nothing was.
+        if (!near && !(sign[k] * value > least[k]) && block[slot + SLOT.count * k] === 0) continue;
+        this.look(block, signals, k, near, tick);
+        const level = this.levelOf(block, k);
+        if (level > signals[levelSignal[i]]) signals[levelSignal[i]] = level;
+        if (level > worst) worst = level;
+      }
     }
-    signals[this.tables.worstSignal] = worst;
+    signals[worstSignal] = worst;
     this.count(block, signals);
   }
 
-  /** One ladder in one tick; the number of its present level. */
-  private look(block: Float64Array, signals: Float64Array, k: number, tick: number): number {
-    const { slot, sign, sourceOf, rungAt, least, begins, number, reliefOf, near } = this.tables;
+  /** One ladder that has something to say, or had in the tick before. */
+  private look(block: Float64Array, signals: Float64Array, k: number, predicted: boolean, tick: number): void {
+    const { slot, sign, sourceOf, rungAt, begins, reliefOf, near } = this.tables;
     const at = slot + SLOT.count * k;
     const first = rungAt[k];
     const value = sign[k] * signals[sourceOf[k]];
-    const r = reliefOf[k];
-    let rung = r >= 0 && this.approaches(block, signals, k, r) ? near[r] : 0;
-    if (value > least[k]) {
-      let j = rungAt[k + 1];
-      while (j > first + rung && !(value > begins[j - 1])) j -= 1;
-      rung = j - first;
-    }
+    const low = predicted ? near[reliefOf[k]] : 0;
+    let rung = rungAt[k + 1] - first;
+    while (rung > low && !(value > begins[first + rung - 1])) rung -= 1;
     const present = block[at + SLOT.present];
     if (rung > present) this.climb(block, signals, k, rung, tick);
     else if (present > 0) this.stay(block, signals, k, tick);
-    const now = block[at + SLOT.present];
-    if (now === 0) return 0;
-    if (value > sign[k] * block[at + SLOT.peak]) block[at + SLOT.peak] = sign[k] * value;
-    return number[first + now - 1];
+    if (block[at + SLOT.present] > 0 && value > sign[k] * block[at + SLOT.peak])
+      block[at + SLOT.peak] = sign[k] * value;
+  }
+
+  /** Number of the present level of a ladder. */
+  private levelOf(block: Float64Array, k: number): number {
+    const present = block[this.tables.slot + SLOT.count * k + SLOT.present];
+    return present > 0 ? this.tables.number[this.tables.rungAt[k] + present - 1] : 0;
   }
 
   /** Writes the predicted time to relief; whether it has been near for long enough to say so. */
