@@ -242,8 +242,8 @@ export const gasAccumulator = store({
     const closing = parameter.closingShare * parameter.volume;
     const end = (1 - parameter.leastGasShare) * parameter.volume;
     const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
-    const oilVolume = mass / oil.density;
-    const gasVolume = law.accumulatorGasVolume(oilVolume, parameter.volume, closing);
+    const oilVolume = reading.oilVolume;
+    const gasVolume = reading.gasVolume;
     const density = state.gasMass / gasVolume;
     const heatCapacity = state.gasMass * law.gasHeatCapacity(density, state.gasTemperature, real);
     const byTemperature = law.gasPressureByTemperature(density, state.gasTemperature, real);
@@ -300,32 +300,25 @@ export const gasAccumulator = store({
     reading.gasHeatFlow = heatFlow;
     reading.inflow = oil.massFlow / oil.density;
   },
-  energy({ parameter, state, fluid, oil, law }) {
+  energy({ parameter, state, oil, reading, law }) {
     const real = parameter.gas === 0 ? 1 : 0;
     const closing = parameter.closingShare * parameter.volume;
     const end = (1 - parameter.leastGasShare) * parameter.volume;
-    const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
-    const oilVolume = mass / oil.density;
-    const density = state.gasMass / law.accumulatorGasVolume(oilVolume, parameter.volume, closing);
     return (
       state.mass * oil.potential -
-      oil.pressure * oilVolume +
+      oil.pressure * reading.oilVolume +
       state.heat +
-      state.gasMass * law.gasEnergy(density, state.gasTemperature, real) +
-      law.stopEnergy(oilVolume, closing, end, parameter.stopPressure) +
+      state.gasMass * law.gasEnergy(state.gasMass / reading.gasVolume, state.gasTemperature, real) +
+      law.stopEnergy(reading.oilVolume, closing, end, parameter.stopPressure) +
       parameter.foamHeatCapacity * state.gasTemperature +
       parameter.wallHeatCapacity * state.wallTemperature
     );
   },
   /** Heat from the surroundings; gas that leaks takes its enthalpy along. */
-  supply({ parameter, state, command, fluid, oil, law }) {
+  supply({ parameter, state, command, reading, law }) {
     const real = parameter.gas === 0 ? 1 : 0;
-    const closing = parameter.closingShare * parameter.volume;
-    const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
-    const density = state.gasMass / law.accumulatorGasVolume(mass / oil.density, parameter.volume, closing);
-    const enthalpy =
-      law.gasEnergy(density, state.gasTemperature, real) +
-      law.gasPressure(density, state.gasTemperature, real) / density;
+    const density = state.gasMass / reading.gasVolume;
+    const enthalpy = law.gasEnergy(density, state.gasTemperature, real) + reading.gasPressure / density;
     return (
       parameter.ambientConductance * (parameter.ambientTemperature - state.wallTemperature) - command.gasLeak * enthalpy
     );

@@ -82,6 +82,85 @@ export function gasHeatCapacity(density: number, temperature: number, real: numb
   );
 }
 
+/** Second derivative of pressure by temperature, Pa/K2. */
+export function gasCurvature(density: number, temperature: number, real: number): number {
+  const square = density * density;
+  const tttt = temperature * temperature * temperature * temperature;
+  const g = BWR_GAMMA * square;
+  return ((6 * real * square) / tttt) * (BWR_C * density * (1 + g) * Math.exp(-g) - BWR_C0);
+}
+
+/** Mixed second derivative of pressure by density and temperature, J/(kg K). */
+export function gasMixedCurvature(density: number, temperature: number, real: number): number {
+  const square = density * density;
+  const ttt = temperature * temperature * temperature;
+  const g = BWR_GAMMA * square;
+  return (
+    NITROGEN_GAS_CONSTANT +
+    real *
+      (2 * (BWR_B0 * NITROGEN_GAS_CONSTANT + (2 * BWR_C0) / ttt) * density +
+        3 * BWR_B * NITROGEN_GAS_CONSTANT * square -
+        ((2 * BWR_C * square) / ttt) * (3 + 3 * g - 2 * g * g) * Math.exp(-g))
+  );
+}
+
+/** Second derivative of pressure by density, Pa m6/kg2. */
+export function gasDensityCurvature(density: number, temperature: number, real: number): number {
+  const square = density * density;
+  const rt = NITROGEN_GAS_CONSTANT * temperature;
+  const tt = temperature * temperature;
+  const g = BWR_GAMMA * square;
+  return (
+    real *
+    (2 * (BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) +
+      6 * (BWR_B * rt - BWR_A) * density +
+      30 * BWR_A * BWR_ALPHA * square * square +
+      ((2 * BWR_C * density) / tt) * (3 + g * (3 + g * (2 * g - 9))) * Math.exp(-g))
+  );
+}
+
+/** Derivative of the heat capacity by temperature, J/(kg K2). */
+export function gasHeatCapacityByTemperature(density: number, temperature: number, real: number): number {
+  const y = NITROGEN_VIBRATION / temperature;
+  const e = Math.exp(-y);
+  const ttt = temperature * temperature * temperature;
+  const square = density * density;
+  const vibration = (NITROGEN_GAS_CONSTANT * y * y * e) / ((1 - e) * (1 - e));
+  const residual =
+    (6 / ttt) * (BWR_C0 * density - BWR_C / BWR_GAMMA) +
+    ((3 * BWR_C) / ttt) * (2 / BWR_GAMMA + square) * Math.exp(-BWR_GAMMA * square);
+  return (-real / temperature) * (vibration * (2 - (y * (1 + e)) / (1 - e)) + 3 * residual);
+}
+
+/**
+ * Slopes of the laws above, in the form that the builder takes instead of differentiating them: one evaluation serves
+ * all states. `real` is a constant. (dc_v/drho = -T p_TT / rho^2.)
+ */
+export const gasPressureSlopes = {
+  density: (density: number, temperature: number, real: number, _value: number) =>
+    gasPressureByDensity(density, temperature, real),
+  temperature: (density: number, temperature: number, real: number, _value: number) =>
+    gasPressureByTemperature(density, temperature, real),
+};
+export const gasPressureByTemperatureSlopes = {
+  density: (density: number, temperature: number, real: number, _value: number) =>
+    gasMixedCurvature(density, temperature, real),
+  temperature: (density: number, temperature: number, real: number, _value: number) =>
+    gasCurvature(density, temperature, real),
+};
+export const gasPressureByDensitySlopes = {
+  density: (density: number, temperature: number, real: number, _value: number) =>
+    gasDensityCurvature(density, temperature, real),
+  temperature: (density: number, temperature: number, real: number, _value: number) =>
+    gasMixedCurvature(density, temperature, real),
+};
+export const gasHeatCapacitySlopes = {
+  density: (density: number, temperature: number, real: number, _value: number) =>
+    (-temperature * gasCurvature(density, temperature, real)) / (density * density),
+  temperature: (density: number, temperature: number, real: number, _value: number) =>
+    gasHeatCapacityByTemperature(density, temperature, real),
+};
+
 /** Internal energy, J/kg, zero for the dilute gas at 0 K. Consistent with the laws above: du/dT = c_v, du/dv = T p_T - p. */
 export function gasEnergy(density: number, temperature: number, real: number): number {
   const e = Math.exp(-NITROGEN_VIBRATION / temperature);

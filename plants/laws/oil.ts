@@ -60,6 +60,12 @@ export function oilPressure(ratio: number, freeAir: number, numerator: number, d
   return q > 0 ? (q + root) / (2 * a) : (2 * r) / (root - q);
 }
 
+/** Its exact slope, from that of the inverse. */
+export const oilPressureSlopes = {
+  ratio: (_ratio: number, freeAir: number, numerator: number, denominator: number, value: number) =>
+    1 / oilVolumeSlope(value, freeAir, numerator, denominator),
+};
+
 /** Density, kg/m3, at `pressure` Pa; `referenceDensity` is that of oil with its air at the standard atmosphere. */
 export function oilDensity(
   pressure: number,
@@ -85,6 +91,18 @@ export function oilPotential(
   const liquid = share * above + ((1 - share) / denominator) * Math.log(1 + denominator * above);
   return (air + (1 - freeAir) * liquid) / referenceDensity;
 }
+
+/** Its exact slope, 1/rho. */
+export const oilPotentialSlopes = {
+  pressure: (
+    pressure: number,
+    referenceDensity: number,
+    freeAir: number,
+    numerator: number,
+    denominator: number,
+    _value: number,
+  ) => oilVolumeRatio(pressure, freeAir, numerator, denominator) / referenceDensity,
+};
 
 /**
  * Effective tangent bulk modulus, Pa: 1/K_e = (V_l/V)/K_l + (V_g/V)/(n p). `exponent` n is the polytropic exponent of

@@ -1,7 +1,7 @@
 import { describe, expect, it } from 'vitest';
 import * as library from '../../plants/library.js';
 import { places } from '../../runtime/circuit/build.js';
-import type { ElementInstance } from '../../runtime/contract.js';
+import type { ElementFunction, ElementInstance } from '../../runtime/contract.js';
 import { Bench, element } from '../support/circuit.js';
 import { bar, litre, litresPerMinute, oil } from '../support/oil.js';
 
@@ -372,9 +372,9 @@ describe('pump-motor', () => {
 });
 
 /** The unit's own flows with 1 % more torque on the shaft. */
-function falsified(): (argument: never) => void {
+function falsified(): ElementFunction {
   const source = library.pumpMotor.flows!.toString();
   const changed = source.replace('shaft.torque += torque;', 'shaft.torque += 1.01 * torque;');
   expect(changed).not.toBe(source);
-  return new Function(`return ({ ${changed} }).flows`)() as (argument: never) => void;
+  return new Function(`return ({ ${changed} }).flows`)() as ElementFunction;
 }

