@@ -7,6 +7,8 @@ import { EventCatalogue } from '../runtime/journal.js';
 import { Plant, type PlantPlaces } from '../runtime/plant.js';
 import { emptyScript, Script, type ScriptSpec } from '../runtime/script.js';
 import { SignalTable } from '../runtime/signals.js';
+import { Watch } from '../runtime/watch.js';
+import type { WatchWarning } from '../runtime/watch-log.js';
 import { LedgerStage, type Stage, Tick, throughputs } from '../runtime/tick.js';
 import type { BenchSpec, InstrumentSpec } from './bench-spec.js';
 
@@ -30,7 +32,8 @@ export interface Assembly {
   /** Puts the block back to the start, as if no tick had run. */
   reset(): void;
   /** Warnings so far, oldest first. Not for the tick. */
-  warnings(): readonly unknown[];
+  warnings(): readonly WatchWarning[];
+  readonly watch: Watch;
 }
 
 export interface AssemblyOptions {
@@ -41,6 +44,8 @@ export interface AssemblyOptions {
   /** A circuit that is built already, to save building it again. */
   readonly circuit?: Circuit;
 }
+
+const nothingToJudge: Stage = { run() {} };
 
 /** Puts a checked bench together. Throws BuildError for what only the built circuit shows. */
 export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
@@ -88,7 +93,8 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
       to: targets.find(path),
     })),
   );
-  const extras = declareStages(spec, layout, table, events);
+  const watch = new Watch({ watched: spec.watched, signals: table, layout, events, step: spec.step, ambientPressure: spec.ambient.pressure });
+  commandAt.set('watch.acknowledge', watch.acknowledgeSlot);
 
   const block = layout.create();
   const signals = new Float64Array(table.length);
@@ -105,8 +111,8 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     drives: { from: Int32Array.from(drives, (drive) => drive.from), to: Int32Array.from(drives, (drive) => drive.to) },
     after: stageOf(spec, instruments, 'after'),
     ledger,
-    watch: extras.watch,
-    judge: extras.judge,
+    watch,
+    judge: nothingToJudge,
     shown: { slots: Int32Array.from(shown.slots), signals: Int32Array.from(shown.signals) },
     snapshotEvery: Math.max(1, Math.round(1 / spec.step)),
   });
@@ -135,7 +141,8 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     firstTick,
     target: targets.find,
     reset,
-    warnings: () => [],
+    watch,
+    warnings: () => watch.warnings(block),
   };
 }
 
@@ -329,14 +336,4 @@ function requireTargets(script: ScriptSpec, commandAt: ReadonlyMap<string, numbe
   }
   if (problems.length > 0) throw new BuildError(problems);
   return script;
-}
-
-function declareStages(
-  _spec: BenchSpec,
-  _layout: BlockLayout,
-  _table: SignalTable,
-  _events: EventCatalogue,
-): { watch: Stage; judge: Stage } {
-  const none: Stage = { run() {} };
-  return { watch: none, judge: none };
 }

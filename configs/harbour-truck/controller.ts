@@ -183,7 +183,7 @@ export function createController(mirror: ControllerMirror, _step: number): Contr
     clutch = slew(clutch, clutchWanted, clutchWanted > clutch ? 2.5 * period : 12 * period);
     // the engine comes to the gearbox's speed before the clutch takes it along
     if (clutchWanted > 0 && clutch < 0.3 && !launching && engineSpeed < propSpeed * ratio - 5) engineWanted = Math.max(engineWanted, 160);
-    engineTorque = slew(engineTorque, clutch > 0.05 || clutchWanted > 0 ? engineWanted : 0, 2500 * period);
+    engineTorque = slew(engineTorque, clutch > 0.05 || clutchWanted > 0 ? engineWanted : 0, 8000 * period);
 
     // service brakes: what the pump-motor does not take
     const recovered = connected === 1 && pumpTorque < 0 ? -pumpTorque * truck.pumpRatio : 0;

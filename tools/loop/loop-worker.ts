@@ -7,6 +7,7 @@ import { type Assembly, assemble } from '../../configs/assemble.js';
 import { readBench } from '../../configs/bench.js';
 import type { BenchSpec } from '../../configs/bench-spec.js';
 import { memoryFiles } from '../../configs/files.js';
+import { globTest } from '../../configs/signal-list.js';
 import { BuildError } from '../../runtime/contract.js';
 import { noJournal } from '../../runtime/journal.js';
 import { Clock } from '../../runtime/realtime/clock.js';
@@ -49,7 +50,7 @@ async function main(order: RunOrder): Promise<void> {
   const spec = readBench(order.sources[0]!.path, library, memoryFiles(texts));
   const assembly = assemble(spec, { seed: order.seed, script: order.script });
   const built = performance.now();
-  const selection = Int32Array.from(order.signals, (path) => requireSignal(assembly, path));
+  const selection = choose(assembly, order.patterns);
   const journal = new RingJournal(order.ring, selection);
   const barriers: LockstepTransport[] = [];
   const sockets: UdpSocket[] = [];
@@ -59,6 +60,7 @@ async function main(order: RunOrder): Promise<void> {
   await attach(order, spec, assembly, barriers, sockets);
   assembly.exchange.setJournal(journal);
   assembly.tick.journal = journal;
+  assembly.watch.journal = journal;
   const meter = order.profile ? new StageClock() : undefined;
   if (meter) assembly.tick.meter = meter;
 
@@ -66,7 +68,11 @@ async function main(order: RunOrder): Promise<void> {
   if (order.pace === 'live') scheduling = enterScheduling(order.core === undefined ? {} : { core: order.core });
   say({
     kind: 'ready',
-    signals: assembly.table.all.map(({ path, unit, about, group }) => ({ path, unit, about, group })),
+    signals: [...selection].map((index) => {
+      const { path, unit, about, group } = assembly.table.all[index]!;
+      return { path, unit, about, group };
+    }),
+    paths: assembly.table.all.map((info) => info.path),
     events: { kinds: assembly.events.kinds, subjects: assembly.events.subjects },
     links: spec.map.links.map((link) => link.name),
     block: Array.from({ length: assembly.layout.length }, (_, i) => assembly.layout.path(i)),
@@ -126,6 +132,16 @@ async function main(order: RunOrder): Promise<void> {
     last: assembly.signals.slice(),
     warnings: assembly.warnings(),
   });
+}
+
+/** Indices of the signals that any pattern names, in the order of the list; the watch's are always among them. */
+function choose(assembly: Assembly, patterns: readonly string[]): Int32Array {
+  const tests = [...patterns, 'watch.*', 'scenario.*'].map(globTest);
+  const found: number[] = [];
+  assembly.table.all.forEach((info, i) => {
+    if (tests.some((test) => test(info.path))) found.push(i);
+  });
+  return Int32Array.from(found);
 }
 
 function requireSignal(assembly: Assembly, path: string): number {

@@ -1,5 +1,6 @@
 import type { ScriptSpec } from '../../runtime/script.js';
 import type { RingHandle } from '../../runtime/ring.js';
+import type { WatchWarning } from '../../runtime/watch-log.js';
 
 /** What the host tells the loop thread to run: plain data, sent once. */
 export interface RunOrder {
@@ -19,8 +20,8 @@ export interface RunOrder {
   readonly ring: RingHandle;
   readonly control: SharedArrayBuffer;
   readonly timing: SharedArrayBuffer;
-  /** Paths recorded in every row. */
-  readonly signals: readonly string[];
+  /** Patterns of the paths recorded in every row; `*` stands for any run of letters. */
+  readonly patterns: readonly string[];
   /** Paths whose largest values are kept. */
   readonly peaks: readonly string[];
   /** Measure each stage of the tick. */
@@ -31,7 +32,10 @@ export interface RunOrder {
 /** What the loop thread says when the bench is built, before the first tick. */
 export interface RunReady {
   readonly kind: 'ready';
+  /** What is recorded, in the order of the rows. */
   readonly signals: readonly { readonly path: string; readonly unit: string; readonly about: string; readonly group: string }[];
+  /** Paths of all signals, in the order of `last`. */
+  readonly paths: readonly string[];
   readonly events: {
     readonly kinds: readonly { readonly name: string; readonly severity: 'note' | 'warning' | 'alarm' | 'error'; readonly text: string }[];
     readonly subjects: readonly string[];
@@ -66,7 +70,7 @@ export interface RunDone {
   readonly stages: readonly { readonly stage: string; readonly p50: number; readonly p99: number; readonly max: number }[];
   /** Last values of all signals. */
   readonly last: Float64Array;
-  readonly warnings: readonly unknown[];
+  readonly warnings: readonly WatchWarning[];
 }
 
 export interface RunFailed {

@@ -1,0 +1,208 @@
+import { readFileSync } from 'node:fs';
+import os from 'node:os';
+import path from 'node:path';
+import { fileURLToPath } from 'node:url';
+import { Worker } from 'node:worker_threads';
+import { TimingRecord } from '../../runtime/realtime/timing-record.js';
+import { Recorder } from '../../runtime/recording/recorder.js';
+import { type RecordingHeader, FORMAT } from '../../runtime/recording/format.js';
+import { RecordingWriter } from '../../runtime/recording/writer.js';
+import { createRing } from '../../runtime/ring.js';
+import { packageRoot } from '../loop/controller-module.js';
+import { CONTROL, createLoopControl, phases, PROGRESS } from '../loop/engine.js';
+import type { LoopMessage, RunDone, RunFailed, RunOrder, RunReady } from '../loop/run-order.js';
+import { ControllerChild } from './controller-child.js';
+import type { RunPlan } from './plan.js';
+
+/** What the host sees of a run while it goes on. */
+export interface RunView {
+  readonly plan: RunPlan;
+  readonly phase: string;
+  readonly tick: number;
+  /** The last row that was read: values of `ready.signals`. */
+  readonly values: Float32Array | undefined;
+  readonly ready: RunReady | undefined;
+  readonly timing: TimingRecord;
+  readonly controller: ControllerChild | undefined;
+}
+
+export interface RunHooks {
+  /** Everything is built; the recording is open. */
+  onReady?(view: RunView): void;
+  /** A row as it arrived, and each event. */
+  onRow?(view: RunView, tick: number, values: Float32Array): void;
+  onEvent?(view: RunView, event: { readonly tick: number; readonly code: number; readonly subject: number; readonly a: number; readonly b: number; readonly c: number }): void;
+  /** From the host's timer, about every 200 ms. */
+  onTimer?(view: RunView): void;
+  readonly abort?: AbortSignal;
+}
+
+export interface RunOutcome {
+  readonly plan: RunPlan;
+  readonly ready: RunReady | undefined;
+  readonly done: RunDone | undefined;
+  readonly failed: RunFailed | undefined;
+  readonly timing: TimingRecord;
+  readonly recording: string | undefined;
+  readonly recordingFailure: string | undefined;
+  readonly rows: number;
+  /** Processor time of the whole process in the run, s. */
+  readonly processor: number;
+  /** Wall time from the order to the first counted tick, s. */
+  readonly startUp: number;
+  readonly controllerEnded: string | undefined;
+  /** Completes the recording with the summary and closes it. */
+  finish(summary: Readonly<Record<string, unknown>>): Promise<void>;
+}
+
+/** Runs a planned bench on a loop thread of its own and records it. Resolves when the loop has ended. */
+export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunOutcome> {
+  const { wish, spec } = plan;
+  const began = performance.now();
+  const usage = process.cpuUsage();
+  const ring = createRing({ capacity: 16 << 20, whenFull: wish.pace === 'live' ? 'drop' : 'wait' });
+  const shared = createLoopControl();
+  const timing = new TimingRecord();
+  const order: RunOrder = {
+    sources: plan.benchSources,
+    script: plan.script,
+    seed: plan.seed,
+    pace: wish.pace,
+    ticks: plan.ticks,
+    folder: plan.folder,
+    controller: plan.controller.kind === 'process' ? { kind: 'udp' } : plan.controller,
+    ring,
+    control: shared.memory,
+    timing: timing.memory,
+    patterns: spec.record.patterns,
+    peaks: spec.record.peaks,
+    profile: wish.profile ?? false,
+    core: wish.core,
+  };
+  const child = plan.controller.kind === 'process' && plan.controller.command !== undefined ? new ControllerChild(plan, plan.controller.command) : undefined;
+  let ready: RunReady | undefined;
+  let done: RunDone | undefined;
+  let failed: RunFailed | undefined;
+  let recorder: Recorder | undefined;
+  let writer: RecordingWriter | undefined;
+  let startUp = 0;
+  let tick = Number.NEGATIVE_INFINITY;
+  let values: Float32Array | undefined;
+  const view: RunView = {
+    plan,
+    timing,
+    controller: child,
+    get phase() {
+      return phases[Atomics.load(shared.control, CONTROL.phase)]!;
+    },
+    get tick() {
+      return ready === undefined ? tick : shared.progress[PROGRESS.tick]!;
+    },
+    get values() {
+      return values;
+    },
+    get ready() {
+      return ready;
+    },
+  };
+
+  const stop = () => {
+    Atomics.store(shared.control, CONTROL.stop, 1);
+  };
+  hooks.abort?.addEventListener('abort', stop);
+  const here = fileURLToPath(import.meta.url);
+  const worker = new Worker(path.join(path.dirname(here), '..', 'loop', 'loop-worker.js'), { workerData: order, stdout: false, stderr: false });
+  const timer = setInterval(() => {
+    if (startUp === 0 && Atomics.load(shared.control, CONTROL.phase) >= 3) startUp = (performance.now() - began) / 1000;
+    hooks.onTimer?.(view);
+  }, 200);
+  try {
+    await new Promise<void>((resolve) => {
+      worker.on('message', (message: LoopMessage) => {
+        if (message.kind === 'ready') {
+          ready = message;
+          try {
+            if (plan.recording !== undefined) writer = new RecordingWriter(plan.recording, headerOf(plan, message));
+          } catch (error) {
+            failed = { kind: 'failed', what: (error as Error).message, code: 2 };
+            stop();
+          }
+          recorder = new Recorder(ring, writer, {
+            signals: message.signals.length,
+            onRow: (at, row) => {
+              tick = at;
+              values = row;
+              hooks.onRow?.(view, at, row);
+            },
+            onEvent: (at, code, subject, a, b, c) => hooks.onEvent?.(view, { tick: at, code, subject, a, b, c }),
+          });
+          recorder.start();
+          hooks.onReady?.(view);
+        } else if (message.kind === 'done') done = message;
+        else failed ??= message;
+      });
+      worker.on('error', (error) => {
+        failed ??= { kind: 'failed', what: `the loop thread ended in an error: ${error.message}`, code: 5 };
+        resolve();
+      });
+      worker.on('exit', () => resolve());
+    });
+  } finally {
+    clearInterval(timer);
+    hooks.abort?.removeEventListener('abort', stop);
+    await child?.stop();
+  }
+  const used = process.cpuUsage(usage);
+  return {
+    plan,
+    ready,
+    done,
+    failed,
+    timing,
+    recording: writer?.file,
+    get recordingFailure() {
+      return writer?.failure === undefined ? undefined : writer.failureError().message;
+    },
+    get rows() {
+      return recorder?.rows ?? 0;
+    },
+    processor: (used.user + used.system) / 1e6,
+    startUp,
+    controllerEnded: child?.ended,
+    finish: async (summary) => {
+      await recorder?.finish(summary);
+    },
+  };
+}
+
+export function softwareVersion(): string {
+  return (JSON.parse(readFileSync(path.join(packageRoot(), 'package.json'), 'utf8')) as { version: string }).version;
+}
+
+function headerOf(plan: RunPlan, ready: RunReady): RecordingHeader {
+  const { wish, spec } = plan;
+  const cpus = os.cpus();
+  return {
+    format: FORMAT,
+    run: `${new Date().toISOString()}-${process.pid}`,
+    created: new Date().toISOString(),
+    software: { version: softwareVersion(), node: process.version, v8: process.versions.v8 },
+    machine: {
+      system: `${os.type()} ${os.release()} ${os.arch()}`,
+      processor: cpus[0]?.model ?? 'unknown',
+      processors: cpus.length,
+      memory: os.totalmem(),
+      scheduling: ready.scheduling.join('; '),
+    },
+    bench: { name: spec.name, files: plan.benchSources.map((source) => ({ path: source.path, text: source.text })) },
+    scenario: plan.scenarioSources.length === 0 ? null : { path: plan.scenarioSources[0]!.path, text: plan.scenarioSources[0]!.text },
+    seed: plan.seed,
+    step: spec.step,
+    pace: wish.pace,
+    options: { ticks: plan.ticks, controller: plan.controller.kind, script: JSON.stringify(plan.script) },
+    signals: ready.signals.map((signal) => ({ ...signal })),
+    events: { kinds: ready.events.kinds.map((kind) => ({ ...kind })), subjects: [...ready.events.subjects] },
+    links: [...ready.links],
+    block: [...ready.block],
+  };
+}
