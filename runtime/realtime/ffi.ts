@@ -37,6 +37,11 @@ export interface LibC {
     fromLength: Int32Array,
   ): number;
   sendto(socket: number, bytes: Uint8Array, length: number, flags: number, to: Uint8Array, toLength: number): number;
+  send(socket: number, bytes: Uint8Array, length: number, flags: number): number;
+  /** `message`: struct msghdr, 56 bytes, with addresses from `addressOf`. */
+  recvmsg(socket: number, message: Uint8Array, flags: number): number;
+  /** `request`: struct ifreq, 40 bytes. */
+  ioctl(socket: number, command: number, request: Uint8Array): number;
   /** `sets`: pollfd as [socket, events | result << 16]. */
   poll(sets: Int32Array, count: number, milliseconds: number): number;
   close(socket: number): number;
@@ -82,6 +87,9 @@ const SIGNATURES: Record<Exclude<keyof LibC, 'errno' | 'addressOf'>, [string, st
   getsockopt: ['int', ['int', 'int', 'int', 'void *', 'void *']],
   recvfrom: ['int', ['int', 'void *', 'size_t', 'int', 'void *', 'void *']],
   sendto: ['int', ['int', 'void *', 'size_t', 'int', 'void *', 'uint32_t']],
+  send: ['int', ['int', 'void *', 'size_t', 'int']],
+  recvmsg: ['int', ['int', 'void *', 'int']],
+  ioctl: ['int', ['int', 'ulong', 'void *']],
   poll: ['int', ['void *', 'ulong', 'int']],
   close: ['int', ['int']],
 };

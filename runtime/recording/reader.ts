@@ -38,7 +38,7 @@ export interface RecordingOverview {
   readonly inputs: number;
   readonly events: number;
   readonly snapshots: number;
-  /** Of the rows, -1 when there are none. */
+  /** Of the rows; NaN when there are none. Ticks of the pre-roll are negative. */
   readonly firstTick: number;
   readonly lastTick: number;
   /** Pairs of tick and wall clock, ms since 1970. */
@@ -135,8 +135,8 @@ export class Recording {
     let inputs = 0;
     let events = 0;
     let snapshots = 0;
-    let firstTick = -1;
-    let lastTick = -1;
+    let firstTick = Number.NaN;
+    let lastTick = Number.NaN;
     const walk = this.blocks();
     for (let step = walk.next(); ; step = walk.next()) {
       if (step.done)

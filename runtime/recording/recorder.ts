@@ -12,6 +12,8 @@ export interface RecorderOptions {
   readonly flushEvery?: number;
   /** How often the ring is looked at, ms. Default 5. */
   readonly pollEvery?: number;
+  /** While the disk owes more bytes than this, the ring is left alone: live it drops rows then, at fast pace the loop waits. Default 64 MiB. */
+  readonly mostBacklog?: number;
   /** A tick is paired with the wall clock this often, ms. Default 10000. */
   readonly stampEvery?: number;
   /** Called for each event as it is read. */
@@ -20,7 +22,6 @@ export interface RecorderOptions {
   readonly onRow?: (tick: number, values: Float32Array) => void;
 }
 
-/** While the disk owes more than this, the ring is left alone: live it drops rows then, at fast pace the loop waits. */
 const MOST_BACKLOG = 64 << 20;
 /** Inputs of a block, bytes, before it is closed early. */
 const MOST_INPUT_BYTES = 4 << 20;
@@ -37,10 +38,11 @@ export class Recorder {
   rows = 0;
   inputs = 0;
   events = 0;
-  /** The last tick of which anything was read, -1 before. */
-  lastTick = -1;
+  /** The last tick of which anything was read, NaN before. Ticks of the pre-roll are negative. */
+  lastTick = Number.NaN;
   private readonly ring: RingReader;
   private readonly signals: number;
+  private readonly mostBacklog: number;
   private readonly blockRows: number;
   private readonly ticks: Float64Array;
   private readonly hashes: Int32Array;
@@ -62,6 +64,7 @@ export class Recorder {
   ) {
     this.ring = new RingReader(ring);
     this.signals = options.signals;
+    this.mostBacklog = options.mostBacklog ?? MOST_BACKLOG;
     this.blockRows = Math.max(
       1,
       Math.min(options.blockRows ?? 256, Math.floor(MOST_ROW_BYTES / (4 * Math.max(1, options.signals)))),
@@ -97,7 +100,7 @@ export class Recorder {
   /** Reads what is in the ring now; true when there may be more at once. */
   drain(): boolean {
     const writer = this.writer;
-    if (writer !== undefined && writer.failure === undefined && writer.backlog > MOST_BACKLOG) {
+    if (writer !== undefined && writer.failure === undefined && writer.backlog > this.mostBacklog) {
       writer.write();
       return false;
     }
@@ -126,7 +129,7 @@ export class Recorder {
   async finish(summary: Readonly<Record<string, unknown>>): Promise<void> {
     this.stop();
     const writer = this.writer;
-    while (this.drain() || (writer !== undefined && writer.failure === undefined && writer.backlog > MOST_BACKLOG))
+    while (this.drain() || (writer !== undefined && writer.failure === undefined && writer.backlog > this.mostBacklog))
       await writer?.drained();
     this.flush();
     if (writer === undefined) return;
@@ -219,7 +222,7 @@ export class Recorder {
       if (this.inputColumns.count > 0) writer.add('inputs', this.inputColumns.fields());
       if (this.eventColumns.count > 0) writer.add('events', this.eventColumns.fields());
       if (this.count > 0) writer.add('rows', this.rowFields());
-      if (this.lastTick >= 0 && this.lastFlush - this.lastStamp >= (this.options.stampEvery ?? 10_000))
+      if (!Number.isNaN(this.lastTick) && this.lastFlush - this.lastStamp >= (this.options.stampEvery ?? 10_000))
         this.stamp(writer);
       writer.write();
     }
@@ -244,6 +247,7 @@ export class Recorder {
   }
 
   private stamp(writer: RecordingWriter): void {
+    if (Number.isNaN(this.lastTick)) return;
     this.lastStamp = Date.now();
     writer.add('stamp', { tick: this.lastTick, wall: this.lastStamp });
   }

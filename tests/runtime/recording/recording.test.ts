@@ -1,10 +1,11 @@
 import { execFileSync } from 'node:child_process';
 import fs from 'node:fs';
 import path from 'node:path';
-import { describe, expect, it } from 'vitest';
+import { describe, expect, it, vi } from 'vitest';
 import { RecordingError } from '../../../runtime/recording/format.js';
 import { Recording } from '../../../runtime/recording/reader.js';
 import { RecordedInputs } from '../../../runtime/recording/recorded-inputs.js';
+import { RecordedStates } from '../../../runtime/recording/recorded-states.js';
 import { Recorder } from '../../../runtime/recording/recorder.js';
 import { signalDigest } from '../../../runtime/recording/signal-digest.js';
 import { RecordingWriter } from '../../../runtime/recording/writer.js';
@@ -116,6 +117,39 @@ describe('recording', () => {
     recording.close();
   });
 
+  it('compares states by tick, and has the blocks of the ticks that have one', async () => {
+    const file = scratchFile('a.osr');
+    await recordSample(file, 300, { blockRows: 40 }, -100);
+    const recording = new Recording(file);
+    const states = new RecordedStates(recording);
+    const hash = new Int32Array(2);
+    const found: number[] = [];
+    const blocks: number[] = [];
+    for (let tick = -100; tick < 210; tick += 1) {
+      hash[0] = Math.imul(tick, 0x9e3779b1);
+      hash[1] = tick === 77 ? 0 : ~tick;
+      found.push(states.compare(tick, hash));
+      const block = states.snapshot(tick);
+      if (block !== undefined) blocks.push(block[0]!);
+    }
+    expect(found.indexOf(0)).toBe(177);
+    expect(found.filter((one) => one === 1).length).toBe(299);
+    expect(found.slice(300).every((one) => one === -1)).toBe(true);
+    expect(blocks).toEqual([-100, -50, 0, 50, 100, 150]);
+    expect(states.ending?.how).toBe('complete');
+    expect(states.skipped).toBe(0);
+    expect(() => states.compare(5, hash)).toThrow(/tick 5 asked for after tick 209/);
+    const late = new RecordedStates(recording);
+    hash[1] = ~50;
+    hash[0] = Math.imul(50, 0x9e3779b1);
+    expect(late.snapshot(50)![0]).toBe(50);
+    expect(late.compare(50, hash)).toBe(1);
+    expect(late.skipped).toBe(150);
+    const inputs = new RecordedInputs(recording);
+    expect(inputs.next(-98, 0, new Uint8Array(64))).toBe(-1);
+    recording.close();
+  });
+
   it('says when an input was passed over, is too long, or comes from a link that is not there', async () => {
     const file = scratchFile('a.osr');
     await recordSample(file, 100);
@@ -182,6 +216,48 @@ describe('recording', () => {
     while (recorder.rows < 26) await new Promise((resolve) => setTimeout(resolve, 2));
     await recorder.finish({});
     expect([recorder.rows, recorder.inputs, recorder.events, recorder.lastTick]).toEqual([26, 25, 3, 25]);
+  });
+});
+
+describe('a disk that stalls', () => {
+  it('costs rows, counted, and no input; what comes afterwards is recorded', async () => {
+    const file = scratchFile('a.osr');
+    const handle = createRing({ capacity: 1 << 15, reserve: 1 << 14, whenFull: 'drop' });
+    const journal = new RingJournal(handle, Int32Array.of(0, 1, 2));
+    const writer = new RecordingWriter(file, sampleHeader());
+    await writer.drained();
+    const recorder = new Recorder(handle, writer, { signals: 3, blockRows: 16, mostBacklog: 4096 });
+    const stalled: (() => void)[] = [];
+    const write = fs.write.bind(fs) as (...call: unknown[]) => void;
+    const stall = vi
+      .spyOn(fs, 'write')
+      .mockImplementation(((...call: unknown[]) => stalled.push(() => write(...call))) as never);
+    const signals = new Float64Array(3);
+    const bytes = Uint8Array.of(1, 2, 3);
+    const record = (from: number, to: number) => {
+      for (let tick = from; tick < to; tick += 1) {
+        signals[0] = tick;
+        if (tick % 5 === 0) journal.input(tick, 0, bytes, 3);
+        journal.row(tick, signals, Int32Array.of(tick, 0));
+        recorder.drain();
+      }
+    };
+    record(0, 1000);
+    expect(stalled.length).toBe(1);
+    expect(journal.dropped).toBeGreaterThan(100);
+    const lost = journal.dropped;
+    stall.mockRestore();
+    stalled[0]!();
+    await writer.drained();
+    recorder.drain();
+    await writer.drained();
+    record(1000, 1100);
+    await recorder.finish({});
+    const recording = new Recording(file);
+    const overview = recording.examine();
+    expect(overview.ending).toMatchObject({ how: 'complete', end: { dropped: lost, overflows: 0 } });
+    expect([overview.rows, overview.inputs, overview.lastTick]).toEqual([1100 - lost, 220, 1099]);
+    recording.close();
   });
 });
 
