@@ -235,7 +235,7 @@ function draw(
             if (to - from >= 20) chartView.value = { live: false, from, to };
           },
         ],
-        draw: [(self) => drawSettings(self, settings, `u${units[0]}`, colour('--ink'), font)],
+        draw: [(self) => drawSettings(self, settings, `u${units[0]}`, colour('--ink'), colour('--panel'), font)],
       },
     },
     [[], ...lines.map(() => [])],
@@ -334,6 +334,7 @@ function drawSettings(
   settings: readonly { value: number; text: string }[],
   scale: string,
   ink: string,
+  panel: string,
   font: string,
 ): void {
   const { ctx, bbox } = plot;
@@ -345,6 +346,7 @@ function drawSettings(
   ctx.setLineDash([2 * ratio, 4 * ratio]);
   ctx.font = font.replace(/^(\d+)px/, (_all, size: string) => `${Number(size) * ratio}px`);
   ctx.textAlign = 'right';
+  const places: { x: number; y: number }[] = [];
   for (const { value, text } of settings) {
     const y = plot.valToPos(value, scale, true);
     if (!(y >= bbox.top && y <= bbox.top + bbox.height)) continue;
@@ -352,7 +354,18 @@ function drawSettings(
     ctx.moveTo(bbox.left, y);
     ctx.lineTo(bbox.left + bbox.width, y);
     ctx.stroke();
-    ctx.fillText(text, bbox.left + bbox.width - 4 * ratio, y - 4 * ratio);
+    // beside the text that is already there, where two settings are close
+    let x = bbox.left + bbox.width - 4 * ratio;
+    for (const taken of places) if (Math.abs(taken.y - y) < 14 * ratio) x = Math.min(x, taken.x - 10 * ratio);
+    ctx.setLineDash([]);
+    ctx.strokeStyle = panel;
+    ctx.lineWidth = 4 * ratio;
+    ctx.strokeText(text, x, y - 4 * ratio);
+    ctx.fillText(text, x, y - 4 * ratio);
+    ctx.strokeStyle = ink;
+    ctx.lineWidth = ratio;
+    ctx.setLineDash([2 * ratio, 4 * ratio]);
+    places.push({ x: x - ctx.measureText(text).width, y });
   }
   ctx.restore();
 }

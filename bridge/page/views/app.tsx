@@ -84,7 +84,7 @@ function View({ name }: { name: ViewName }) {
             <GasPaths />
           </div>
           <div class="stack">
-            <Circuit />
+            <Circuit share={0.54} />
             <div class="stack two">
               <Energy />
               <Messages brief />

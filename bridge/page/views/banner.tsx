@@ -39,7 +39,7 @@ export function TopBar() {
         <span class="number time">{clock(tick.value, step)}</span>
       </p>
       {run !== undefined && run.notValid.length > 0 && <p class="invalid">✖ not valid: {run.notValid.join('; ')}</p>}
-      {run !== undefined && run.hands > 0 && <p class="quiet">✋ {run.hands} by hand</p>}
+      {run !== undefined && run.hands > 0 && <p class="quiet">by hand: {run.hands}</p>}
       {thinned.value && <p class="quiet">picture thinned: this page reads slowly</p>}
       <Settings />
     </header>
@@ -93,7 +93,7 @@ export function Stale() {
     <div class="stale-place" role="alert">
       {state !== undefined && (
         <p class="stale-bar">
-          <strong>✖ Picture since {new Date(state.since).toLocaleTimeString()} unchanged</strong>{' '}
+          <strong>✖ Picture unchanged since {new Date(state.since).toLocaleTimeString([], { hour12: false })}</strong>{' '}
           <span class="number">({number(Math.max(0, wallClock.value - state.since) / 1000, 0)} s)</span>: {state.why}.
         </p>
       )}
@@ -111,7 +111,10 @@ export function Banner() {
   const step = subject.value?.bench.step ?? 0.001;
   const others = (status.value?.warnings ?? []).filter((other) => other.active && other !== warning).length;
   return (
-    <section class={`banner tone-${look.tone}`} aria-label="State of the pressures and of the scenario">
+    <section
+      class={`banner tone-${look.tone} ${past && warning !== undefined ? `past hem-${lookOf(warning).tone}` : ''}`}
+      aria-label="State of the pressures and of the scenario"
+    >
       <div class="state">
         <p class="words" aria-live="assertive">
           <span class="shape" aria-hidden="true">
@@ -138,7 +141,7 @@ export function Banner() {
               {clock(warning.sinceTick, step)}
             </>
           )}
-          {others > 0 && ` · ${others} more`}
+          {others > 0 && look.tone !== 'unknown' && ` · ${others} more`}
         </p>
       </div>
       <ScenarioStep />

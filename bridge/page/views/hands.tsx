@@ -161,7 +161,7 @@ function Choice({ hand }: { hand: HandFacts }) {
   ];
   const value = newest(hand.path);
   return (
-    <div class="hand" role="group" aria-label={hand.name}>
+    <fieldset class="hand" aria-label={hand.name}>
       <span class="hand-name">{hand.name}</span>
       <div class="row">
         {choices.map((choice) => (
@@ -177,7 +177,7 @@ function Choice({ hand }: { hand: HandFacts }) {
           </button>
         ))}
       </div>
-    </div>
+    </fieldset>
   );
 }
 
@@ -230,7 +230,7 @@ function Slider({ hand }: { hand: HandFacts }) {
   }, []);
   const holds = (event: KeyboardEvent) => event.key === ' ' || event.key === 'Enter';
   return (
-    <div class="hand" role="group" aria-label={hand.name}>
+    <fieldset class="hand" aria-label={hand.name}>
       <span class="hand-name">
         {hand.name} <span class="quiet number">now {present(hand)}</span>
       </span>
@@ -277,7 +277,7 @@ function Slider({ hand }: { hand: HandFacts }) {
           </button>
         )}
       </div>
-    </div>
+    </fieldset>
   );
 }
 

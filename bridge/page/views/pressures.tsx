@@ -39,13 +39,13 @@ function Column({ pressure }: { pressure: PressureFacts }) {
     <article class={`column tone-${look.tone}`}>
       <h3>{pressure.name}</h3>
       <p class="value">
-        <output class="number">{format(value, shown)}</output> <span class="unit">{shown.unit}</span>
+        <output class="number">{format(value, shown)}</output> <span class="unit number">{shown.unit}</span>
       </p>
       <p class="state">
         <span class="shape" aria-hidden="true">
           {look.shape}
         </span>{' '}
-        {look.words}
+        {look === fine ? 'Within' : look.words}
       </p>
       <Glass pressure={pressure} />
       <dl>
