@@ -32,7 +32,7 @@ export function gasPressure(density: number, temperature: number, real: number):
       ((BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) * square +
         (BWR_B * rt - BWR_A) * cube +
         BWR_A * BWR_ALPHA * cube * cube +
-        ((BWR_C * cube) / tt) * (1 + g) * Math.exp(-g))
+        (BWR_C / tt) * cube * (1 + g) * Math.exp(-g))
   );
 }
 
@@ -47,7 +47,7 @@ export function gasPressureByTemperature(density: number, temperature: number, r
     real *
       ((BWR_B0 * NITROGEN_GAS_CONSTANT + (2 * BWR_C0) / ttt) * square +
         BWR_B * NITROGEN_GAS_CONSTANT * cube -
-        ((2 * BWR_C * cube) / ttt) * (1 + g) * Math.exp(-g))
+        ((2 * BWR_C) / ttt) * cube * (1 + g) * Math.exp(-g))
   );
 }
 
@@ -63,7 +63,7 @@ export function gasPressureByDensity(density: number, temperature: number, real:
       (2 * (BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) * density +
         3 * (BWR_B * rt - BWR_A) * square +
         6 * BWR_A * BWR_ALPHA * square * square * density +
-        ((BWR_C * square) / tt) * (3 + 3 * g - 2 * g * g) * Math.exp(-g))
+        (BWR_C / tt) * square * (3 + 3 * g - 2 * g * g) * Math.exp(-g))
   );
 }
 
@@ -100,7 +100,7 @@ export function gasMixedCurvature(density: number, temperature: number, real: nu
     real *
       (2 * (BWR_B0 * NITROGEN_GAS_CONSTANT + (2 * BWR_C0) / ttt) * density +
         3 * BWR_B * NITROGEN_GAS_CONSTANT * square -
-        ((2 * BWR_C * square) / ttt) * (3 + 3 * g - 2 * g * g) * Math.exp(-g))
+        ((2 * BWR_C) / ttt) * square * (3 + 3 * g - 2 * g * g) * Math.exp(-g))
   );
 }
 
@@ -115,7 +115,7 @@ export function gasDensityCurvature(density: number, temperature: number, real: 
     (2 * (BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) +
       6 * (BWR_B * rt - BWR_A) * density +
       30 * BWR_A * BWR_ALPHA * square * square +
-      ((2 * BWR_C * density) / tt) * (3 + g * (3 + g * (2 * g - 9))) * Math.exp(-g))
+      ((2 * BWR_C) / tt) * density * (3 + g * (3 + g * (2 * g - 9))) * Math.exp(-g))
   );
 }
 
@@ -184,25 +184,25 @@ export function gasEnergy(density: number, temperature: number, real: number): n
  * share of the oil volume (see `separatorTravel`), which keeps the energy exact and the oil pressure above zero.
  */
 export function poppetShare(oilVolume: number, closingVolume: number): number {
-  const closed = Math.max(0, 1 - oilVolume / closingVolume);
+  const closed = Math.max(0, 1 - oilVolume * (1 / closingVolume));
   return 1 - closed * closed * closed;
 }
 
 /** Volume by which the gas has shrunk from its precharge volume, m3: the integral of the poppet's share. */
 export function separatorTravel(oilVolume: number, closingVolume: number): number {
-  const closed = Math.max(0, 1 - oilVolume / closingVolume);
+  const closed = Math.max(0, 1 - oilVolume * (1 / closingVolume));
   return oilVolume - 0.25 * closingVolume * (1 - closed * closed * closed * closed);
 }
 
 /** Pressure, Pa, that the end stop adds: a cubic spring past `fullVolume`, `stopPressure` at five closing volumes past it. */
 export function stopRise(oilVolume: number, closingVolume: number, fullVolume: number, stopPressure: number): number {
-  const past = Math.max(0, oilVolume - fullVolume) / (5 * closingVolume);
+  const past = Math.max(0, oilVolume - fullVolume) * (0.2 / closingVolume);
   return stopPressure * past * past * past;
 }
 
 /** Energy in that spring, J. */
 export function stopEnergy(oilVolume: number, closingVolume: number, fullVolume: number, stopPressure: number): number {
-  const past = Math.max(0, oilVolume - fullVolume) / (5 * closingVolume);
+  const past = Math.max(0, oilVolume - fullVolume) * (0.2 / closingVolume);
   return 1.25 * stopPressure * closingVolume * past * past * past * past;
 }
 
@@ -242,12 +242,13 @@ export function accumulatorStiffness(
 ): number {
   const gasVolume = accumulatorGasVolume(oilVolume, volume, closingVolume);
   const density = gasMass / gasVolume;
-  const closed = Math.max(0, 1 - oilVolume / closingVolume);
+  const closed = Math.max(0, 1 - oilVolume * (1 / closingVolume));
   const share = 1 - closed * closed * closed;
-  const past = Math.max(0, oilVolume - fullVolume) / (5 * closingVolume);
+  const past = Math.max(0, oilVolume - fullVolume) * (0.2 / closingVolume);
   return (
     ((gasPressureByDensity(density, temperature, real) * density) / gasVolume) * share * share +
-    (gasPressure(density, temperature, real) * 3 * closed * closed + 0.6 * stopPressure * past * past) / closingVolume
+    (gasPressure(density, temperature, real) * 3 * closed * closed + 0.6 * stopPressure * past * past) *
+      (1 / closingVolume)
   );
 }
 
@@ -306,9 +307,10 @@ export function accumulatorNewton(
 
 /**
  * Oil volume, m3, of an accumulator that holds `mass` kg of oil (> 0) and `gasMass` kg of gas at `temperature` K: the
- * root of V_oil - m/rho_ref x(p(V_oil)) = 0 by three Newton steps. The start counts the liquid as relaxed and the air
- * at a pressure that rises in proportion to the volume up to the precharge, so that it holds down to an empty port.
- * Residual below 1e-10 of `volume` up to 350 bar, 1e-7 up to 500 bar.
+ * root of V_oil - m/rho_ref x(p(V_oil)) = 0 by two Newton steps. The start compresses the liquid by the pressure of an
+ * ideal gas, and counts the air at a pressure that rises in proportion to the oil volume below the closing volume, so
+ * that it holds down to an empty port. Residual below 1e-12 of `volume` up to 400 bar and 1e-9 up to 500 bar; past the end of
+ * travel up to 1e-4.
  */
 export function accumulatorOilVolume(
   mass: number,
@@ -325,25 +327,13 @@ export function accumulatorOilVolume(
   denominator: number,
 ): number {
   const relaxed = mass / referenceDensity;
-  const liquid = relaxed * (1 - freeAir);
-  const precharge = gasPressure(gasMass / volume, temperature, real);
-  const start = 0.5 * (liquid + Math.sqrt(liquid * liquid + (relaxed * freeAir * 135100 * closingVolume) / precharge));
+  const dilute = NITROGEN_GAS_CONSTANT * temperature * gasMass;
+  const estimate = dilute / Math.max(volume - relaxed, 0.05 * volume) - 101325;
+  const liquid = (relaxed * (1 - freeAir) * (1 + numerator * estimate)) / (1 + denominator * estimate);
+  const air = (relaxed * freeAir * 135100 * closingVolume * volume) / dilute;
+  const start = 0.5 * (liquid + Math.sqrt(liquid * liquid + air));
   const first = accumulatorNewton(
-    Math.min(start, 0.8 * volume),
-    relaxed,
-    temperature,
-    gasMass,
-    real,
-    volume,
-    closingVolume,
-    fullVolume,
-    stopPressure,
-    freeAir,
-    numerator,
-    denominator,
-  );
-  const second = accumulatorNewton(
-    first,
+    Math.min(start, 0.97 * volume),
     relaxed,
     temperature,
     gasMass,
@@ -357,7 +347,7 @@ export function accumulatorOilVolume(
     denominator,
   );
   return accumulatorNewton(
-    second,
+    first,
     relaxed,
     temperature,
     gasMass,
