@@ -1,6 +1,8 @@
 import { describe, expect, it } from 'vitest';
 import { Clock } from '../../../runtime/realtime/clock.js';
 import { errnoName, libc, RealtimeUnavailable, whyNotLive } from '../../../runtime/realtime/ffi.js';
+import { holdIdleStates } from '../../../runtime/realtime/idle-states.js';
+import { machineFacts } from '../../../runtime/realtime/machine-facts.js';
 import { allowedCores, enterScheduling, schedulingRights } from '../../../runtime/realtime/scheduling.js';
 import { runChild } from '../../support/child.js';
 
@@ -47,8 +49,8 @@ describe.skipIf(here !== '')('real-time machinery of Linux', () => {
 
   it('reports a sleep that cannot be', () => {
     const clock = new Clock();
-    // A nanosecond field beyond its range.
     expect(clock.sleepUntil(Float64Array.of(Number.NaN), 0)).toBe(0);
+    // A nanosecond field beyond its range.
     expect(libc().clock_nanosleep(1, 1, Int32Array.of(0, 0, 2_000_000_000, 0), null)).toBe(22);
   });
 
@@ -73,6 +75,22 @@ describe.skipIf(here !== '')('real-time machinery of Linux', () => {
     }
     scheduling.restore();
     expect([c.sched_getscheduler(0), allowedCores().join(), c.prctl(30, 0, 0, 0, 0)]).toEqual(before);
+  });
+
+  it('holds idle states off while it may, says so, and lets go twice without harm', () => {
+    const hold = holdIdleStates();
+    hold.release();
+    hold.release();
+    expect(hold.words).toMatch(hold.held ? /held off$/ : /not held off: \/dev\/cpu_dma_latency E[A-Z]+/);
+  });
+
+  it('lists facts about the machine as plain values', () => {
+    const facts = machineFacts();
+    expect(facts['system']).toMatch(/^Linux \d/);
+    expect(facts['processors']).toBeGreaterThan(0);
+    expect(facts['preemption']).toMatch(/^(PREEMPT|none)/);
+    expect(facts['clockSource']).toMatch(/\w/);
+    for (const value of Object.values(facts)) expect(['string', 'number', 'boolean']).toContain(typeof value);
   });
 
   it('refuses a processor that is not there, in words', () => {

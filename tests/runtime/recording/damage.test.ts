@@ -218,38 +218,42 @@ it('has the same checksum with and without zlib', () => {
 
 describe('a recorder killed with SIGKILL', () => {
   const rounds = Number(process.env['OILSPRING_KILLS'] ?? 6);
-  it(`leaves a recording that reads up to its last whole block (${rounds} times)`, async () => {
-    let rows = 0;
-    for (let round = 0; round < rounds; round += 1) {
-      const file = scratchFile('killed.osr');
-      const child = startChild(new URL('./record-for-ever.ts', import.meta.url), [file]);
-      await new Promise<void>((resolve) => child.stdout!.once('data', () => resolve()));
-      await new Promise((resolve) => setTimeout(resolve, Math.random() * 300));
-      const ended = new Promise((resolve) => child.once('exit', resolve));
-      child.kill('SIGKILL');
-      await ended;
-      const recording = new Recording(file);
-      const found = recording.examine();
-      expect(found.ending.how).toBe('ended early');
-      expect(recording.bytes - found.ending.atByte).toBeLessThan(1 << 20);
-      // All that was there is right: ticks without a gap, each with the values it should have.
-      let tick = 0;
-      const inputs = new RecordedInputs(recording);
-      const into = new Uint8Array(64);
-      for (const block of recording.blocks()) {
-        if (block.kind !== 'rows') continue;
-        for (let i = 0; i < block.count; i += 1, tick += 1) {
-          if (block.ticks[i] !== tick || block.data[i] !== Math.fround(1e5 + tick))
-            throw new Error(`row ${tick} is wrong`);
-          for (let link = 0; link < tick % 3; link += 1)
-            if (inputs.next(tick, link, into) < 0) throw new Error(`input of tick ${tick} is missing`);
+  it(
+    `leaves a recording that reads up to its last whole block (${rounds} times)`,
+    async () => {
+      let rows = 0;
+      for (let round = 0; round < rounds; round += 1) {
+        const file = scratchFile('killed.osr');
+        const child = startChild(new URL('./record-for-ever.ts', import.meta.url), [file]);
+        await new Promise<void>((resolve) => child.stdout!.once('data', () => resolve()));
+        await new Promise((resolve) => setTimeout(resolve, Math.random() * 300));
+        const ended = new Promise((resolve) => child.once('exit', resolve));
+        child.kill('SIGKILL');
+        await ended;
+        const recording = new Recording(file);
+        const found = recording.examine();
+        expect(found.ending.how).toBe('ended early');
+        expect(recording.bytes - found.ending.atByte).toBeLessThan(1 << 20);
+        // All that was there is right: ticks without a gap, each with the values it should have.
+        let tick = 0;
+        const inputs = new RecordedInputs(recording);
+        const into = new Uint8Array(64);
+        for (const block of recording.blocks()) {
+          if (block.kind !== 'rows') continue;
+          for (let i = 0; i < block.count; i += 1, tick += 1) {
+            if (block.ticks[i] !== tick || block.data[i] !== Math.fround(1e5 + tick))
+              throw new Error(`row ${tick} is wrong`);
+            for (let link = 0; link < tick % 3; link += 1)
+              if (inputs.next(tick, link, into) < 0) throw new Error(`input of tick ${tick} is missing`);
+          }
         }
+        expect(tick).toBe(found.rows);
+        rows += tick;
+        recording.close();
+        fs.rmSync(file);
       }
-      expect(tick).toBe(found.rows);
-      rows += tick;
-      recording.close();
-      fs.rmSync(file);
-    }
-    expect(rows).toBeGreaterThan(100 * rounds);
-  });
+      expect(rows).toBeGreaterThan(100 * rounds);
+    },
+    30_000 + 10_000 * rounds,
+  );
 });
