@@ -73,6 +73,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     turnover: layout.addMany('ledger.turnover', throughputs(circuit).length),
     start: layout.addMany('ledger.start', 1 + circuit.stuffs.length),
   };
+  const meters = declareMeters(circuit, layout, table);
   declareTiming(table);
   const exchange = new Exchange({
     map: spec.map,
@@ -99,7 +100,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   const block = layout.create();
   const signals = new Float64Array(table.length);
   const plant = new Plant(circuit, { step: spec.step, substeps: options.substeps ?? spec.substeps }, block, at);
-  const ledger = new LedgerStage(circuit, plant, spec.step, ledgerSlots, ledgerSignals);
+  const ledger = new LedgerStage(circuit, plant, spec.step, ledgerSlots, ledgerSignals, meters);
   const initial = block.slice();
   const tick = new Tick({
     plant,
@@ -233,6 +234,18 @@ class LifeSignals {
     add('supply', '1 while the controller has its supply', spec.life.supply);
     add('key', '1 while the key is on', spec.life.key);
   }
+}
+
+/** Energy that machines took up while braking and gave back, by machine. */
+function declareMeters(circuit: Circuit, layout: BlockLayout, table: SignalTable): { power: number; sign: 1 | -1; slot: number; signal: number }[] {
+  return circuit.spec.elements
+    .filter((element) => element.kind.kind === 'pump-motor')
+    .flatMap((element) =>
+      ([['recovered', -1, 'taken from its shaft while pumping'], ['returned', 1, 'given to its shaft while motoring']] as const).map(([name, sign, about]) => {
+        const path = `ledger.${element.name}.${name}`;
+        return { power: table.find(`${element.name}.shaftPower`), sign, slot: layout.add(path), signal: table.add({ path, unit: 'J', about: `energy of ${element.name} ${about}`, group: 'ledger' }) };
+      }),
+    );
 }
 
 /** What a live run says of each tick besides: not part of the block, zero at fast pace. */

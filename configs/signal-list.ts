@@ -1,6 +1,5 @@
-import { messageCounts } from '../bridge/examine-map.js';
+import { countsOfLink, countsOfMessage } from '../bridge/link-counts.js';
 import type { MessageMap } from '../bridge/message-map.js';
-import { linkCounts } from '../bridge/udp-link.js';
 import type { PortKinds, SignalGroup, SignalInfo } from '../runtime/contract.js';
 import type { ReadElement } from './elements.js';
 import { shown } from './quantity.js';
@@ -52,8 +51,9 @@ export class SignalList {
   /** The counts that links and messages keep of themselves. */
   addCounts(map: MessageMap): void {
     for (const link of map.links) {
-      for (const [count, about] of Object.entries(linkCounts))
+      for (const [count, { about }] of Object.entries(countsOfLink(link.kind)))
         this.add({ path: `${link.name}.${count}`, unit: '1', about, group: 'link' });
+      if (link.kind !== 'udp') continue;
       this.add({
         path: `${link.name}.oneStepShare`,
         unit: '1',
@@ -62,17 +62,9 @@ export class SignalList {
       });
     }
     for (const message of map.messages) {
-      for (const count of messageCounts) {
-        const ofSender = count === 'sent' || count === 'unsendable';
-        if (ofSender === (message.direction === 'sent')) {
-          this.add({
-            path: `${message.name}.${count}`,
-            unit: count === 'age' ? 's' : '1',
-            about: `${count} of this message`,
-            group: 'link',
-          });
-        }
-      }
+      const kind = map.links.find((link) => link.name === message.link)?.kind ?? 'udp';
+      for (const [count, { about, ticks }] of Object.entries(countsOfMessage(kind, message.direction)))
+        this.add({ path: `${message.name}.${count}`, unit: ticks ? 's' : '1', about, group: 'link' });
     }
   }
 

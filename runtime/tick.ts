@@ -114,6 +114,8 @@ export class LedgerStage implements Stage {
     private readonly step: number,
     slots: { readonly turnover: number; readonly start: number },
     private readonly signal: { readonly residual: number; readonly turnover: number; readonly stuffs: number },
+    /** Signals of power, W, whose positive part is integrated: slot and signal of each integral. */
+    private readonly meters: readonly { readonly power: number; readonly sign: 1 | -1; readonly slot: number; readonly signal: number }[] = [],
   ) {
     this.at = places(circuit);
     this.through = Int32Array.from(throughputs(circuit));
@@ -137,6 +139,12 @@ export class LedgerStage implements Stage {
       const sum = block[this.turnover + i]! + observed[through[i]!]! * this.step;
       block[this.turnover + i] = sum;
       if (sum > most) most = sum;
+    }
+    for (let i = 0; i < this.meters.length; i += 1) {
+      const meter = this.meters[i]!;
+      const power = meter.sign * signals[meter.power]!;
+      if (power > 0) block[meter.slot] = block[meter.slot]! + power * this.step;
+      signals[meter.signal] = block[meter.slot]!;
     }
     signals[this.signal.residual] = observed[at.energy]! - block[this.startEnergy]! - ledger[0]! + ledger[1]!;
     signals[this.signal.turnover] = most;

@@ -66,6 +66,10 @@ export function runLoop(options: LoopOptions): LoopEnd {
   try {
     pacer?.begin();
     for (; tick < last; tick += 1) {
+      if (tick === 0) {
+        options.onCount?.();
+        pacer?.count();
+      }
       if (pacer) {
         pacer.wait();
         if (timing && tick > 0) {
@@ -74,8 +78,6 @@ export function runLoop(options: LoopOptions): LoopEnd {
         }
       }
       if (tick === 0) {
-        pacer?.count();
-        options.onCount?.();
         Atomics.store(control, CONTROL.phase, 3);
         clock.now(times, 0);
         clock.threadTime(times, 1);

@@ -11,7 +11,7 @@ import { globTest } from '../../configs/signal-list.js';
 import { BuildError } from '../../runtime/contract.js';
 import { noJournal } from '../../runtime/journal.js';
 import { Clock } from '../../runtime/realtime/clock.js';
-import { CollectionMeter } from '../../runtime/realtime/collection-meter.js';
+import { CollectionMeter, collectNow } from '../../runtime/realtime/collection-meter.js';
 import { whyNotLive } from '../../runtime/realtime/ffi.js';
 import { Pacer } from '../../runtime/realtime/pacer.js';
 import { enterScheduling, type Scheduling } from '../../runtime/realtime/scheduling.js';
@@ -65,6 +65,10 @@ async function main(order: RunOrder): Promise<void> {
   if (meter) assembly.tick.meter = meter;
 
   let scheduling: Scheduling | undefined;
+  if (order.pace === 'live') {
+    Pacer.warmUp();
+    collectNow();
+  }
   if (order.pace === 'live') scheduling = enterScheduling(order.core === undefined ? {} : { core: order.core });
   say({
     kind: 'ready',

@@ -51,6 +51,8 @@ export interface RunOutcome {
   /** Wall time from the order to the first counted tick, s. */
   readonly startUp: number;
   readonly controllerEnded: string | undefined;
+  /** Why the run could not be finished without its controller; undefined when it could. */
+  readonly controllerEndedEarly: string | undefined;
   /** Completes the recording with the summary and closes it. */
   finish(summary: Readonly<Record<string, unknown>>): Promise<void>;
 }
@@ -169,6 +171,7 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     processor: (used.user + used.system) / 1e6,
     startUp,
     controllerEnded: child?.ended,
+    controllerEndedEarly: undefined,
     finish: async (summary) => {
       await recorder?.finish(summary);
     },

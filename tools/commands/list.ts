@@ -1,0 +1,58 @@
+import { Command } from 'commander';
+import { assemble } from '../../configs/assemble.js';
+import { catalogue } from '../../configs/catalogue.js';
+import { readScenario } from '../../configs/scenario.js';
+import type { ElementKind } from '../../runtime/contract.js';
+import path from 'node:path';
+import { CommandError } from './failure.js';
+import { elementSheet } from './element-sheet.js';
+import { readBenchFile } from '../run/plan.js';
+import { table } from './table.js';
+
+export function listCommand(): Command {
+  const command = new Command('list').description('the declarations: elements, or the signals of a bench').addHelpText(
+    'after',
+    `
+Examples:
+  oilspring list elements
+  oilspring list elements pump-motor
+  oilspring list signals configs/harbour-truck/bench.yaml --json`,
+  );
+  command
+    .command('elements [KIND]')
+    .description('all elements, or one of them whole')
+    .option('--json', 'as JSON')
+    .option('--markdown', 'a sheet per element')
+    .exitOverride()
+    .action((kind: string | undefined, options: { json?: boolean; markdown?: boolean }) => {
+      const kinds = kind === undefined ? [...catalogue.elements].sort((a, b) => (a.kind < b.kind ? -1 : 1)) : [find(kind)];
+      if (options.json) process.stdout.write(`${JSON.stringify(kinds.map(plain), undefined, 2)}\n`);
+      else if (options.markdown || kind !== undefined) process.stdout.write(`${kinds.map(elementSheet).join('\n\n')}\n`);
+      else process.stdout.write(`${table(kinds.map((one) => [one.kind, one.role, Object.entries(one.ports).map(([name, type]) => `${name}:${type}`).join(' '), one.about]))}\n`);
+    });
+  command
+    .command('signals BENCH')
+    .description('all signals of a bench with their units')
+    .option('--json', 'as JSON')
+    .exitOverride()
+    .action((bench: string, options: { json?: boolean }) => {
+      const { spec, folder } = readBenchFile(bench);
+      const script = spec.duty === undefined ? undefined : readScenario(path.join(folder, spec.duty), spec).script;
+      const { all } = assemble(spec, { seed: spec.seed, ...(script ? { script } : {}) }).table;
+      if (options.json) process.stdout.write(`${JSON.stringify(all, undefined, 2)}\n`);
+      else process.stdout.write(`${table(all.map((info) => [info.path, info.unit, info.group, info.about]))}\n`);
+    });
+  return command;
+}
+
+function find(kind: string): ElementKind {
+  const found = catalogue.elements.find((one) => one.kind === kind);
+  if (!found) throw new CommandError(`no element \`${kind}\`: there are ${catalogue.elements.map((one) => one.kind).sort().join(', ')}`);
+  return found;
+}
+
+/** What of a declaration is data. */
+function plain(kind: ElementKind): object {
+  const { about, source, valid, role, ports, states, memory, commands, readings, parameters, starts, limits, fluid, heat } = kind;
+  return { kind: kind.kind, role, about, source, valid, ports, fluid, heat, parameters, starts, states, memory, commands, readings, limits };
+}

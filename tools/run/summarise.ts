@@ -1,0 +1,116 @@
+import type { RunSummary } from '../../runtime/run-summary.js';
+import { judgeRun, type Measured } from '../../runtime/verdict.js';
+import { pressureSettings } from '../../runtime/watch-settings.js';
+import { type RunOutcome, softwareVersion } from './host-run.js';
+
+/** The summary of a run that has ended, with its verdict. */
+export function summarise(outcome: RunOutcome): RunSummary {
+  const { plan, done, failed, ready } = outcome;
+  const { spec, wish } = plan;
+  const { step, budgets } = spec;
+  const ticks = done?.ticks ?? 0;
+  const simulated = ticks * step;
+  const live = wish.pace === 'live';
+  const last = new Map((ready?.paths ?? []).map((path, i) => [path, done?.last[i] ?? Number.NaN]));
+  const value = (path: string) => last.get(path) ?? 0;
+  const timing = outcome.timing.summary();
+  const links = spec.map.links.map((link) => linkOf(plan.spec, link.name, value));
+  const expected = spec.map.messages.filter((message) => message.direction === 'received' && message.every > 0).reduce((sum, message) => sum + ticks / message.every, 0);
+  const troubled = links.reduce((sum, link) => sum + link.lost + link.late + link.malformed, 0);
+  const broken = failed?.what ?? done?.failure ?? outcome.controllerEndedEarly;
+  const judgement = judgeRun(
+    {
+      ticks,
+      step,
+      ending: broken !== undefined && broken !== null ? 'broken' : done?.stopped ? 'stopped' : 'complete',
+      ...(broken ? { endingReason: broken } : done?.stopped ? { endingReason: 'by hand' } : {}),
+      timing: live
+        ? [
+            measured('99th percentile of lateness', timing.lateness.p99 * 1e-6, budgets.lateness, 's'),
+            measured('largest lateness', timing.lateness.max * 1e-6, budgets.worstLateness, 's'),
+            measured('share of overruns', ticks > 0 ? timing.overruns / ticks : 0, budgets.overruns, '1'),
+            measured('drift against wall time', timing.drift, budgets.drift, 's'),
+          ]
+        : [],
+      frames: expected > 0 && plan.controller.kind !== 'none' ? [measured('share of lost, late and malformed messages', troubled / expected, budgets.lostFrames, '1')] : [],
+      ledger: done
+        ? [
+            measured('energy residual as a share of the turnover', done.ledger.energyResidual, budgets.energyResidual, '1'),
+            measured('oil residual as a share of the oil', done.ledger.oilResidual, budgets.oilResidual, '1'),
+          ]
+        : [],
+      rowsLost: (done?.dropped ?? 0) + (done?.overflows ?? 0),
+      hands: [],
+      ...(outcome.recordingFailure === undefined ? {} : { otherwise: [outcome.recordingFailure] }),
+    },
+    [],
+  );
+  const energies: { key: string; about: string; value: number }[] = [];
+  for (const [path, energy] of last) {
+    const match = /^ledger\.(\w+)\.(recovered|returned)$/.exec(path);
+    if (match) energies.push({ key: match[2]!, about: `${match[2] === 'recovered' ? 'taken up' : 'given back'} by ${match[1]}`, value: energy });
+  }
+  for (const element of spec.circuit.elements) {
+    if (element.kind.kind === 'service-brake') energies.push({ key: 'braked', about: `turned to heat in ${element.name}`, value: value(`${element.name}.brakeEnergy`) });
+  }
+  const engine = spec.circuit.elements.find((element) => element.kind.kind === 'combustion-engine');
+  return {
+    bench: spec.name,
+    scenario: plan.script.name,
+    pace: wish.pace,
+    seed: plan.seed,
+    software: softwareVersion(),
+    verdict: judgement.verdict,
+    valid: judgement.valid,
+    exitCode: failed?.code ?? judgement.exitCode,
+    verdictText: judgement.summary,
+    reasons: judgement.reasons,
+    ending: broken !== undefined && broken !== null ? 'broken' : done?.stopped ? 'stopped' : 'complete',
+    requirements: [],
+    simulated,
+    planned: plan.ticks * step,
+    realTimeFactor: done && done.wall > 0 ? simulated / done.wall : 0,
+    timing: { ...timing, measured: live, collections: done?.collections ?? 0, heapGrowth: done && ticks > 0 ? done.heapGrowth / ticks : 0 },
+    startUp: { build: ready?.startUp.build ?? 0, warmUp: ready?.startUp.warmUp ?? 0, total: outcome.startUp },
+    scheduling: { policy: ready?.policy ?? 'unknown', words: ready?.scheduling ?? [] },
+    processor: { loop: done?.processor ?? 0, all: outcome.processor },
+    stages: done?.stages ?? [],
+    peaks: done?.peaks ?? {},
+    settings: Object.fromEntries(spec.watched.filter((input) => input.unit === 'Pa').map((input) => [input.path, pressureSettings(input)])),
+    warnings: done?.warnings ?? [],
+    ledger: {
+      energyResidual: done?.ledger.energyResidual ?? 0,
+      oilResidual: done?.ledger.oilResidual ?? 0,
+      turnover: done?.ledger.turnover ?? 0,
+      energyBound: budgets.energyResidual,
+      oilBound: budgets.oilResidual,
+    },
+    energies,
+    fuel: engine === undefined || !done ? null : { mass: value(`${engine.name}.fuelMass`), energy: value(`${engine.name}.fuelMass`) * (engine.parameters['heatingValue'] ?? 0) },
+    solver: { refined: done?.refined ?? 0, replaced: done?.replaced ?? 0 },
+    links,
+    stateHash: done?.hash ?? '',
+    recording: outcome.recording ?? null,
+    rowsLost: done?.dropped ?? 0,
+  };
+}
+
+function measured(name: string, value: number, bound: number, unit: string): Measured {
+  return { name, value, bound, unit };
+}
+
+function linkOf(spec: RunOutcome['plan']['spec'], name: string, value: (path: string) => number): RunSummary['links'][number] {
+  const own = spec.map.messages.filter((message) => message.link === name);
+  const sum = (direction: string, count: string) => own.filter((message) => message.direction === direction).reduce((total, message) => total + value(`${message.name}.${count}`), 0);
+  const replies = value(`${name}.replies`);
+  return {
+    name,
+    received: sum('received', 'received'),
+    sent: sum('sent', 'sent'),
+    lost: sum('received', 'lost'),
+    late: sum('received', 'late'),
+    malformed: ['malformed', 'wrongChecksum', 'wrongMap', 'wrongLength'].reduce((total, count) => total + value(`${name}.${count}`), 0),
+    timeOuts: sum('received', 'timeOuts'),
+    oneStepShare: replies > 0 ? value(`${name}.oneStepShare`) : null,
+  };
+}
