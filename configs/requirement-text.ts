@@ -6,6 +6,11 @@ export function formulaText(formula: Formula, step: number): string {
   return new Printer(step).formula(formula);
 }
 
+/** An expression as text. */
+export function expressionText(expression: Expression, step: number): string {
+  return new Printer(step).expression(expression);
+}
+
 /** Binding strength of arithmetic: higher binds tighter. */
 const strength = { sum: 1, difference: 1, product: 2, quotient: 2 } as const;
 const sign = { sum: '+', difference: '-', product: '*', quotient: '/' } as const;
@@ -71,7 +76,7 @@ class Printer {
     return seconds >= 1 || seconds === 0 ? `${seconds} s` : `${Number((seconds * 1000).toPrecision(15))} ms`;
   }
 
-  private expression(x: Expression, within = 0): string {
+  expression(x: Expression, within = 0): string {
     switch (x.is) {
       case 'signal':
         return x.path;

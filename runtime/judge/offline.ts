@@ -37,6 +37,11 @@ function nesting(formula: Formula): number {
   }
 }
 
+/** Values of an expression at the ticks of a run, for pictures. */
+export function expressionValues(expression: Expression, trace: Trace): Float64Array {
+  return new Evaluation(trace, 1, trace.ticks + 1).expression(expression);
+}
+
 interface Point {
   readonly margin: number;
   readonly tick: number;
@@ -208,7 +213,7 @@ class Evaluation {
   }
 
   /** Values at the ticks of the run. */
-  private expression(expression: Expression): Float64Array {
+  expression(expression: Expression): Float64Array {
     const n = this.trace.ticks;
     switch (expression.is) {
       case 'signal': {
