@@ -67,7 +67,7 @@ export function eliminate(n: number, rows: readonly number[], columns: readonly 
         factorLines.push(`${declare}${name(i, j)} = ${store}(${sum}) * ${pivot(j)};`);
         multiplications += 1;
       } else if (j === i) {
-        factorLines.push(`{ const d = ${sum}; if (!(d >= A[${size}])) A[${size}] = d; ${at(i, i)} = 1 / d; }`);
+        factorLines.push(`{ const d = ${sum}; A[${size}] = Math.min(A[${size}], d); ${at(i, i)} = 1 / d; }`);
         if (!cut) factorLines.push(`const r${i} = ${at(i, i)};`);
       } else factorLines.push(`${declare}${name(i, j)} = ${store}${sum};`);
     }

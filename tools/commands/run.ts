@@ -50,12 +50,20 @@ Ctrl-C ends a run cleanly at any moment, with the recording whole.`,
     .action(async (bench: string, flags: RunFlags) => {
       const wish: RunWish = { ...flags, bench, record: flags.record === false ? '' : flags.record };
       const plan = planRun(wish);
-      process.exitCode = await runAndShow(plan, flags.json ?? false);
+      process.exitCode = await runAndShow(plan, { json: flags.json ?? false });
     });
 }
 
+export interface ShowOptions {
+  /** One object on standard output and nothing else. */
+  readonly json?: boolean;
+  /** Serve the live page. */
+  readonly page?: boolean;
+}
+
 /** Runs a plan with the terminal view, records, prints the summary; the exit code. */
-export async function runAndShow(plan: RunPlan, json: boolean): Promise<number> {
+export async function runAndShow(plan: RunPlan, options: ShowOptions): Promise<number> {
+  const json = options.json ?? false;
   const abort = new AbortController();
   const onSignal = () => abort.abort();
   process.on('SIGINT', onSignal);
