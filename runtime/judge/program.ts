@@ -125,18 +125,26 @@ export class Program {
     view: number,
     end: number,
   ): void {
+    // Read once: the fields would be loaded anew for each operation.
     const registers = this.registers;
-    const count = this.kind.length;
+    const kinds = this.kind;
+    const begins = this.begins;
+    const as = this.a;
+    const bs = this.b;
+    const tos = this.to;
+    const signs = this.sign;
+    const constants = this.constant;
+    const count = kinds.length;
     for (let i = 0; i < count; i += 1) {
-      const kind = this.kind[i]!;
-      const time = tick - this.begins[i]!;
+      const kind = kinds[i]!;
+      const time = tick - begins[i]!;
       if (time < 0) continue;
-      const a = this.a[i]!;
-      const to = this.to[i]!;
+      const a = as[i]!;
+      const to = tos[i]!;
       if (view !== 0) {
         if (kind < firstFormula) continue;
         if (kind === operation.below || kind === operation.notAbove || kind >= operation.signalBelow) {
-          registers[to] = view * this.sign[i]! * Infinity;
+          registers[to] = view * signs[i]! * Infinity;
           continue;
         }
       }
@@ -145,22 +153,22 @@ export class Program {
           registers[to] = signals[a]!;
           break;
         case 1: // sum
-          registers[to] = registers[a]! + registers[this.b[i]!]!;
+          registers[to] = registers[a]! + registers[bs[i]!]!;
           break;
         case 2: // difference
-          registers[to] = registers[a]! - registers[this.b[i]!]!;
+          registers[to] = registers[a]! - registers[bs[i]!]!;
           break;
         case 3: // product
-          registers[to] = registers[a]! * registers[this.b[i]!]!;
+          registers[to] = registers[a]! * registers[bs[i]!]!;
           break;
         case 4: // quotient
-          registers[to] = registers[a]! / registers[this.b[i]!]!;
+          registers[to] = registers[a]! / registers[bs[i]!]!;
           break;
         case 5: // lesser
-          registers[to] = Math.min(registers[a]!, registers[this.b[i]!]!);
+          registers[to] = Math.min(registers[a]!, registers[bs[i]!]!);
           break;
         case 6: // greater
-          registers[to] = Math.max(registers[a]!, registers[this.b[i]!]!);
+          registers[to] = Math.max(registers[a]!, registers[bs[i]!]!);
           break;
         case 7: // negative
           registers[to] = -registers[a]!;
@@ -188,7 +196,7 @@ export class Program {
           this.extremeOver(i, time, windows);
           break;
         case 31: // extreme
-          slideExtreme(windows, this.slot[i]!, this.span[i]!, this.mask[i]!, this.sign[i]!, time, registers, a, to);
+          slideExtreme(windows, this.slot[i]!, this.span[i]!, this.mask[i]!, signs[i]!, time, registers, a, to);
           break;
         case 16: // mean
         case 17: // meanOver
@@ -202,48 +210,48 @@ export class Program {
         case 21: {
           // below
           // Equal sides must give -0 here and +0 below; `+ 0` takes the sign off (-0) - 0.
-          const margin = -(registers[a]! - registers[this.b[i]!]! + 0);
-          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
+          const margin = -(registers[a]! - registers[bs[i]!]! + 0);
+          registers[to] = Number.isNaN(margin) ? -signs[i]! * Infinity : margin;
           break;
         }
         case 22: {
           // notAbove
-          const margin = registers[this.b[i]!]! - registers[a]! + 0;
-          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
+          const margin = registers[bs[i]!]! - registers[a]! + 0;
+          registers[to] = Number.isNaN(margin) ? -signs[i]! * Infinity : margin;
           break;
         }
         case 34: {
           // signalBelow
-          const margin = -(signals[a]! - this.constant[i]! + 0);
-          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
+          const margin = -(signals[a]! - constants[i]! + 0);
+          registers[to] = Number.isNaN(margin) ? -signs[i]! * Infinity : margin;
           break;
         }
         case 35: {
           // signalNotAbove
-          const margin = this.constant[i]! - signals[a]! + 0;
-          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
+          const margin = constants[i]! - signals[a]! + 0;
+          registers[to] = Number.isNaN(margin) ? -signs[i]! * Infinity : margin;
           break;
         }
         case 36: {
           // signalAbove
-          const margin = -(this.constant[i]! - signals[a]! + 0);
-          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
+          const margin = -(constants[i]! - signals[a]! + 0);
+          registers[to] = Number.isNaN(margin) ? -signs[i]! * Infinity : margin;
           break;
         }
         case 37: {
           // signalNotBelow
-          const margin = signals[a]! - this.constant[i]! + 0;
-          registers[to] = Number.isNaN(margin) ? -this.sign[i]! * Infinity : margin;
+          const margin = signals[a]! - constants[i]! + 0;
+          registers[to] = Number.isNaN(margin) ? -signs[i]! * Infinity : margin;
           break;
         }
         case 23: // divide
-          registers[to] = registers[a]! / this.constant[i]!;
+          registers[to] = registers[a]! / constants[i]!;
           break;
         case 24: // and
-          registers[to] = Math.min(registers[a]!, registers[this.b[i]!]!);
+          registers[to] = Math.min(registers[a]!, registers[bs[i]!]!);
           break;
         case 25: // or
-          registers[to] = Math.max(registers[a]!, registers[this.b[i]!]!);
+          registers[to] = Math.max(registers[a]!, registers[bs[i]!]!);
           break;
         case 26: // not
           registers[to] = -registers[a]!;
@@ -251,7 +259,7 @@ export class Program {
         case 27: {
           // given
           const condition = registers[a]!;
-          registers[to] = condition > 0 || 1 / condition === Infinity ? registers[this.b[i]!]! : Infinity;
+          registers[to] = condition > 0 || 1 / condition === Infinity ? registers[bs[i]!]! : Infinity;
           break;
         }
         case 33: {
@@ -266,7 +274,7 @@ export class Program {
         case 29: {
           // previous
           const slot = this.slot[i]!;
-          registers[to] = time === 0 ? this.constant[i]! : windows[slot]!;
+          registers[to] = time === 0 ? constants[i]! : windows[slot]!;
           windows[slot] = registers[a]!;
           break;
         }
@@ -279,7 +287,7 @@ export class Program {
           break;
         }
         case 32: // until
-          slideUntil(windows, this.slot[i]!, this.span[i]!, this.mask[i]! + 1, time, registers, a, this.b[i]!, to);
+          slideUntil(windows, this.slot[i]!, this.span[i]!, this.mask[i]! + 1, time, registers, a, bs[i]!, to);
           break;
       }
     }
