@@ -81,6 +81,7 @@ export function securityHeaders(hostText: string | undefined): Record<string, st
       "style-src 'self'",
       "img-src 'self' data:",
       `connect-src 'self'${host}`,
+      "worker-src 'self'",
       "manifest-src 'self'",
       "base-uri 'none'",
       "form-action 'self'",

@@ -127,6 +127,21 @@ export class Recording {
     return { how: 'ended early', atByte: at, what: `no end block: the run was cut off after block ${number - 1}` };
   }
 
+  /**
+   * Reads one block again: `at` is its first byte (`position` before it was read), `number` its place among all blocks,
+   * the header being 0. Throws RecordingError when there is none.
+   */
+  again(at: number, number: number): RecordingBlock {
+    const found = this.blockAt(at, number);
+    if (typeof found === 'string') throw new RecordingError(`${this.file}: block ${number} at byte ${at}: ${found}`);
+    return decodeBlock(found.fields, this.header.signals.length);
+  }
+
+  /** Where the blocks behind the header begin. */
+  get afterHeader(): number {
+    return this.firstBlock;
+  }
+
   /** Reads through the whole file and says what is in it. */
   examine(): RecordingOverview {
     const stamps: { tick: number; wall: number }[] = [];

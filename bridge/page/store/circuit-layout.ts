@@ -1,4 +1,5 @@
-import type { ElkExtendedEdge, ElkNode } from 'elkjs/lib/elk-api.js';
+import Elk, { type ELK, type ElkExtendedEdge, type ElkNode } from 'elkjs/lib/elk-api.js';
+import workerUrl from 'elkjs/lib/elk-worker.min.js?url';
 import type { ElementFacts } from '../../live/source.js';
 
 export interface Placed {
@@ -23,7 +24,7 @@ export interface Layout {
   readonly nodes: readonly Placed[];
   readonly ties: readonly Tie[];
 }
-export const nodeWidth = 176;
+export const nodeWidth = 164;
 
 /** Of the two drawings, the one that is larger in a place of this size, px. */
 export function fitting(layouts: readonly Layout[], width: number, height: number): Layout | undefined {
@@ -39,9 +40,15 @@ export function nodeHeight(element: ElementFacts): number {
   return 42 + lines * 19;
 }
 
+let started: ELK | undefined;
+/** The layout library works in a thread of its own: the page keeps moving meanwhile. */
+function engine(): ELK {
+  started ??= new Elk({ workerUrl });
+  return started;
+}
+
 /** Layered layout with orthogonal lines (Sugiyama, Tagawa and Toda 1981) by the Eclipse Layout Kernel. */
 export async function layOut(elements: readonly ElementFacts[], direction: 'RIGHT' | 'DOWN'): Promise<Layout> {
-  const { default: Elk } = await import('elkjs/lib/elk.bundled.js');
   const names = new Set(elements.map((element) => element.name));
   const children: ElkNode[] = elements.map((element) => ({
     id: element.name,
@@ -70,7 +77,7 @@ export async function layOut(elements: readonly ElementFacts[], direction: 'RIGH
       'elk.algorithm': 'layered',
       'elk.direction': direction,
       'elk.edgeRouting': 'ORTHOGONAL',
-      'elk.layered.spacing.nodeNodeBetweenLayers': direction === 'RIGHT' ? '52' : '28',
+      'elk.layered.spacing.nodeNodeBetweenLayers': direction === 'RIGHT' ? '40' : '28',
       'elk.spacing.nodeNode': '30',
       'elk.spacing.edgeNode': '22',
       'elk.spacing.edgeEdge': '12',
@@ -83,7 +90,7 @@ export async function layOut(elements: readonly ElementFacts[], direction: 'RIGH
     children,
     edges,
   };
-  const laid: ElkNode = await new Elk().layout(graph);
+  const laid: ElkNode = await engine().layout(graph);
   const byName = new Map(elements.map((element) => [element.name, element]));
   return {
     width: laid.width ?? 0,

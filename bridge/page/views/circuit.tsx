@@ -54,13 +54,14 @@ export function Circuit({ share = 0.72 }: { share?: number }) {
       </header>
       {problem !== '' && <p role="alert">The circuit could not be laid out: {problem}</p>}
       <Scroll label="Drawing of the circuit" place={place}>
+        {layout === undefined && problem === '' && <p class="quiet">Laying the circuit out…</p>}
         {layout !== undefined && (
           <svg
             class="drawing"
             viewBox={`0 0 ${layout.width} ${layout.height}`}
             style={{
-              minWidth: `${Math.round(layout.width * 0.66)}px`,
-              maxWidth: `${Math.round(layout.width * Math.min(1.7, Math.max(0.66, size[1] / layout.height)))}px`,
+              minWidth: `${Math.round(layout.width * 0.6)}px`,
+              maxWidth: `${Math.round(layout.width * Math.min(1.7, Math.max(0.6, size[1] / layout.height)))}px`,
             }}
           >
             <title>Stores and branches with their present values</title>
@@ -96,7 +97,7 @@ function TieLine({ tie }: { tie: Tie }) {
   beat.value;
   const flow = tie.branch.flow === undefined || tie.order > 1 ? Number.NaN : newest(tie.branch.flow);
   const info = tie.branch.flow === undefined ? undefined : infoOf(tie.branch.flow);
-  const scale = info?.most ?? 1;
+  const scale = info?.most ?? largest(tie.branch.flow, flow);
   const moves = Math.abs(flow) > scale * 0.002;
   const d = tie.points.map(([x, y], i) => `${i === 0 ? 'M' : 'L'}${x} ${y}`).join('');
   return (
@@ -107,6 +108,16 @@ function TieLine({ tie }: { tie: Tie }) {
       )}
     </g>
   );
+}
+
+/** The largest flow that was seen, for signals that declare no range. */
+const largestSeen = new Map<string, number>();
+function largest(path: string | undefined, value: number): number {
+  if (path === undefined) return 1;
+  const seen = Math.max(largestSeen.get(path) ?? 1e-9, Number.isFinite(value) ? Math.abs(value) : 0);
+  largestSeen.set(path, seen);
+  // a trickle is no flow: 0.1 L/min, 1 N m
+  return Math.max(seen, infoOf(path)?.unit === 'm3/s' ? 1e-3 : 100);
 }
 
 /** In the middle of the longest stretch of a line. */
@@ -166,6 +177,8 @@ function Node({ node, chosen, choose }: { node: Placed; chosen: boolean; choose:
   ];
   const said = `${element.name}, ${element.kind}: ${lines.join(', ')}${faults.length > 0 ? `; in fault: ${faults.join(', ')}` : ''}${warning === undefined ? '' : `; ${lookOf(warning).words}`}`;
   return (
+    // biome-ignore lint/a11y/noStaticElementInteractions: its role comes with what makes it reachable
+    // biome-ignore lint/a11y/useAriaPropsSupportedByRole: as above
     <g
       class={`node ${element.role} tone-${tone} ${faults.length > 0 ? 'fault' : ''} ${chosen ? 'chosen' : ''}`}
       transform={`translate(${node.x} ${node.y})`}
@@ -180,14 +193,14 @@ function Node({ node, chosen, choose }: { node: Placed; chosen: boolean; choose:
       }}
     >
       <rect width={node.width} height={node.height} rx={element.role === 'store' ? 10 : 2} />
-      <g transform="translate(10 8)">
+      <g transform="translate(7 8) scale(0.95)">
         <Glyph kind={element.kind} />
       </g>
       <text
         class="name"
-        x={42}
+        x={34}
         y={25}
-        style={{ fontSize: `${Math.min(15.5, (node.width - 50) / (element.name.length * 0.66))}px` }}
+        style={{ fontSize: `${Math.min(15.5, (node.width - 40) / (element.name.length * 0.66))}px` }}
       >
         {element.name}
       </text>

@@ -21,6 +21,9 @@ export function Energy() {
   const largest = useRef(1000);
   largest.current = Math.max(largest.current, ...powers.map((power) => Math.abs(newest(power.path)) || 0));
   const most = largest.current;
+  // what never carried half a watt is left out
+  const seen = useRef(new Set<string>());
+  for (const { path } of powers) if (Math.abs(newest(path)) > 0.5) seen.current.add(path);
   if (powers.length === 0) return null;
   const roles = [...new Set(powers.map((power) => power.role))];
   return (
@@ -39,7 +42,11 @@ export function Energy() {
               </th>
             </tr>
             {powers
-              .filter((power) => power.role === role)
+              .filter(
+                (power) =>
+                  power.role === role &&
+                  (seen.current.has(power.path) || role === 'residual' || power.path.startsWith('ledger.')),
+              )
               .map((power) => {
                 const value = newest(power.path);
                 const share = Math.min(1, Math.abs(value) / most) || 0;

@@ -123,7 +123,14 @@ function Glass({ pressure }: { pressure: PressureFacts }) {
         />
         {peak !== undefined && <div class="peak" style={{ bottom: percent(share(peak)) }} />}
       </div>
-      <svg class="marks" width="100%" height={height} viewBox={`0 0 100 ${height}`} preserveAspectRatio="none">
+      <svg
+        aria-hidden="true"
+        class="marks"
+        width="100%"
+        height={height}
+        viewBox={`0 0 100 ${height}`}
+        preserveAspectRatio="none"
+      >
         {marks.map((mark) => (
           <polyline
             key={mark.text}

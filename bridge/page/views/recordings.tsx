@@ -96,7 +96,7 @@ export function Moment() {
   }, [playing, recording]);
   if (recording === undefined) return null;
   return (
-    <div class="moment" role="group" aria-label="Moment of the recording">
+    <section class="moment" aria-label="Moment of the recording">
       <strong>Recording {recording.name}</strong>
       <button type="button" onClick={() => setPlaying(!playing)}>
         {playing ? '❚❚ Stop' : '▶ Play'}
@@ -117,6 +117,6 @@ export function Moment() {
       <button type="button" class="primary" onClick={goLive}>
         Back to the bench
       </button>
-    </div>
+    </section>
   );
 }
