@@ -65,10 +65,11 @@ export const isolationValve = branch({
   update({ parameter, memory, command, step }) {
     const without = parameter.atPowerLoss === 0 ? 0 : parameter.atPowerLoss === 1 ? 1 : memory.accepted;
     const asked = command.power > 0.5 ? command.open : without;
-    const waited = asked === memory.accepted ? 0 : memory.waited + step;
-    const taken = waited >= parameter.deadTime;
+    const waiting = asked !== memory.accepted;
+    // half a substep of grace: whole substeps do not add up to the dead time to the bit
+    const taken = waiting && memory.waited >= parameter.deadTime - 0.5 * step;
     memory.accepted = taken ? asked : memory.accepted;
-    memory.waited = taken ? 0 : waited;
+    memory.waited = waiting && !taken ? memory.waited + step : 0;
   },
   flows({ parameter, from, to, state, memory, command, derivative, reading, law }) {
     const target = command.stuckAt < 0 ? memory.accepted : command.stuckAt;

@@ -50,7 +50,7 @@ export class Frames {
       charges: this.charges(),
       links: this.links(),
       ...(live && timing.lateness.max > 0 ? { timing: { lateness: timing.lateness, step: timing.step, overruns: timing.overruns, drift: timing.drift } } : {}),
-      warnings: { open: this.value('watch.open') ?? this.value('watch.unacknowledged') ?? 0, present: this.value('watch.present') ?? this.value('watch.count') ?? 0 },
+      warnings: { open: this.value('watch.count') ?? 0, present: this.present() },
     };
   }
 
@@ -67,6 +67,14 @@ export class Frames {
   private value(path: string): number | undefined {
     const i = this.index.get(path);
     return i === undefined ? undefined : this.view.values?.[i];
+  }
+
+  /** What the levels that are present say. */
+  private present(): string[] {
+    return this.view.plan.spec.watched.flatMap((input) => {
+      const level = watchLevelNames[Math.round(this.value(`watch.${input.path}.level`) ?? 0)];
+      return level === undefined || level === watchLevelNames[0] ? [] : [`${input.path} ${level}`];
+    });
   }
 
   private headlines(): TerminalHeadline[] {
