@@ -196,7 +196,7 @@ export const gasAccumulator = store({
     const real = parameter.gas === 0 ? 1 : 0;
     const closing = parameter.closingShare * parameter.volume;
     const end = (1 - parameter.leastGasShare) * parameter.volume;
-    const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
+    const mass = Math.max(state.mass, 1e-8 * fluid.referenceDensity * parameter.volume);
     const oilVolume = law.accumulatorOilVolume(
       mass,
       state.gasTemperature,
@@ -218,7 +218,8 @@ export const gasAccumulator = store({
     const temperature = state.heat / (fluid.heatCapacity * mass);
     oil.pressure = pressure;
     oil.temperature = temperature;
-    oil.density = mass / oilVolume;
+    // below the least mass of the pressure law the density goes to zero with the oil that is left
+    oil.density = Math.max(state.mass, 1e-6 * mass) / oilVolume;
     oil.potential = law.oilPotential(
       pressure,
       fluid.referenceDensity,
@@ -241,7 +242,7 @@ export const gasAccumulator = store({
     const real = parameter.gas === 0 ? 1 : 0;
     const closing = parameter.closingShare * parameter.volume;
     const end = (1 - parameter.leastGasShare) * parameter.volume;
-    const mass = Math.max(state.mass, 1e-5 * fluid.referenceDensity * parameter.volume);
+    const mass = Math.max(state.mass, 1e-8 * fluid.referenceDensity * parameter.volume);
     const oilVolume = reading.oilVolume;
     const gasVolume = reading.gasVolume;
     const density = state.gasMass / gasVolume;

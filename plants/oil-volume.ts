@@ -107,7 +107,8 @@ export const oilVolume = store({
     const temperature = state.heat / (fluid.heatCapacity * mass);
     oil.pressure = pressure;
     oil.temperature = temperature;
-    oil.density = mass / parameter.volume;
+    // below the least mass of the pressure law the density goes to zero with the oil that is left
+    oil.density = Math.max(state.mass, 1e-6 * mass) / parameter.volume;
     oil.potential = law.oilPotential(
       pressure,
       fluid.referenceDensity,

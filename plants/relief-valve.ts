@@ -11,7 +11,10 @@ export const reliefValve = branch({
   about: 'pressure relief valve with cracking, override, reseat and lag',
   source: 'Merritt, Hydraulic Control Systems, 1967; terms after ISO 4126-1',
   ports: { from: 'oil', to: 'oil' },
-  states: { lift: { unit: '1', about: 'opening, 1 at the rated point', least: -0.01 } },
+  states: {
+    // half a percent of lift: substeps in which the valve cracks are done again in quarters
+    lift: { unit: '1', about: 'opening, 1 at the rated point', least: -0.01, errorWeight: () => 200 },
+  },
   memory: { lifted: { unit: '1', about: '1 from cracking until the reseat pressure is reached', initial: 0 } },
   commands: {
     settingFactor: { unit: '1', about: 'drift of the setting', rest: 1, least: 0.1, most: 3, fault: true },
@@ -75,7 +78,11 @@ export const reliefValve = branch({
   },
   flows({ parameter, from, to, state, memory, command, derivative, reading, law }) {
     const rated = parameter.fullFlow - 101325;
-    const cracking = parameter.cracking * (memory.lifted > 0.5 ? parameter.reseat : 1) * command.settingFactor;
+    const setting = parameter.cracking * command.settingFactor;
+    // what the memory will say after this substep holds within it already: the lift would else come a substep late
+    const over = (from.pressure - setting) / (0.07 * (parameter.fullFlow - parameter.cracking));
+    const lifted = memory.lifted > 0.5 ? 1 : law.smoothStep(over);
+    const cracking = setting * (1 - (1 - parameter.reseat) * lifted);
     const share = law.reliefShare(
       from.pressure,
       cracking,

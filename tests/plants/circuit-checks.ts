@@ -64,8 +64,11 @@ export function command(plant: Plant, path: string, value: number): void {
   plant.u[indexOf(plant.circuit.commands, path)] = value;
 }
 
-/** The exact Jacobian against central differences at the plant's present state; the worst error relative to its row. */
-export function jacobianError(plant: Plant, relativeStep = 1e-6): { error: number; where: string } {
+/**
+ * The exact Jacobian against central differences at the plant's present state; the worst error relative to its entry.
+ * With several steps each entry counts with the one that fits it best: too long a step bends, too short a one is noise.
+ */
+export function jacobianError(plant: Plant, relativeSteps: number | readonly number[] = 1e-6): { error: number; where: string } {
   const { circuit, y, u, m } = plant;
   const n = circuit.states.length;
   const J = new Float64Array(circuit.jacobian.rows.length);
@@ -75,27 +78,39 @@ export function jacobianError(plant: Plant, relativeStep = 1e-6): { error: numbe
   circuit.jacobian.rows.forEach((row, i) => {
     exact[row]![circuit.jacobian.columns[i]!] = J[i]!;
   });
+  const steps = typeof relativeSteps === 'number' ? [relativeSteps] : relativeSteps;
+  const a = new Float64Array(n);
+  const b = new Float64Array(n);
   let worst = 0;
   let where = '';
   for (let k = 0; k < n; k += 1) {
-    const size = relativeStep * (Math.abs(y[k]!) + circuit.states[k]!.scale);
-    const up = Float64Array.from(y);
-    const down = Float64Array.from(y);
-    up[k]! += size;
-    down[k]! -= size;
-    const a = new Float64Array(n);
-    const b = new Float64Array(n);
-    circuit.functions.rates(up, u, m, a);
-    circuit.functions.rates(down, u, m, b);
+    const least = new Float64Array(n).fill(Number.POSITIVE_INFINITY);
+    const slopes = new Float64Array(n);
+    for (const step of steps) {
+      const size = step * (Math.abs(y[k]!) + circuit.states[k]!.scale);
+      const up = Float64Array.from(y);
+      const down = Float64Array.from(y);
+      up[k]! += size;
+      down[k]! -= size;
+      circuit.functions.rates(up, u, m, a);
+      circuit.functions.rates(down, u, m, b);
+      for (let i = 0; i < n; i += 1) {
+        const slope = (a[i]! - b[i]!) / (up[k]! - down[k]!);
+        // rounding noise of the difference quotient itself
+        const noise = (4e-16 * (Math.abs(a[i]!) + Math.abs(b[i]!)) * 1e3) / size;
+        const scale = Math.max(Math.abs(slope), Math.abs(exact[i]![k]!), 1e-12);
+        const error = Math.max(0, Math.abs(slope - exact[i]![k]!) - noise) / scale;
+        // false for NaN too
+        if (error < least[i]!) {
+          least[i] = error;
+          slopes[i] = slope;
+        }
+      }
+    }
     for (let i = 0; i < n; i += 1) {
-      const slope = (a[i]! - b[i]!) / (up[k]! - down[k]!);
-      // rounding noise of the difference quotient itself
-      const noise = (4e-16 * (Math.abs(a[i]!) + Math.abs(b[i]!)) * 1e3) / size;
-      const scale = Math.max(Math.abs(slope), Math.abs(exact[i]![k]!), 1e-12);
-      const error = Math.max(0, Math.abs(slope - exact[i]![k]!) - noise) / scale;
-      if (error > worst) {
-        worst = error;
-        where = `d(${circuit.states[i]!.path})/d(${circuit.states[k]!.path}): exact ${exact[i]![k]}, difference ${slope}`;
+      if (least[i]! > worst) {
+        worst = least[i]!;
+        where = `d(${circuit.states[i]!.path})/d(${circuit.states[k]!.path}): exact ${exact[i]![k]}, difference ${slopes[i]}`;
       }
     }
   }
