@@ -2,8 +2,9 @@ import { BlockLayout } from '../runtime/block.js';
 import { nearest } from '../runtime/signals.js';
 import { requireSoundMap } from './examine-map.js';
 import type { MessageMap, MessageSpec } from './message-map.js';
-import { MessageReceiver, receptions } from './message-receiver.js';
+import { MessageReceiver } from './message-receiver.js';
 import { MessageSender } from './message-sender.js';
+import { receptions } from './received-message.js';
 import type { Transport } from './transport.js';
 import { Datagram, UdpCodec, UdpInbox, verdicts, writeControl } from './udp-codec.js';
 import { header, kinds, mapChecksum } from './udp-layout.js';
@@ -19,7 +20,7 @@ export interface ControllerModule {
 }
 
 /**
- * The mirror of a map: what the bench sends on a link is what a controller reads, and the other way round.
+ * The mirror of a map: what the bench sends on a link (or several) is what a controller reads, and the other way round.
  * `read` holds the signals of all messages in map order and then the age of each message in ticks, Infinity before it
  * came first. `write` holds the signals of all messages in map order; they begin with the substitutes.
  */
@@ -29,11 +30,12 @@ export class ControllerMirror {
   readonly readPaths: readonly string[];
   readonly writePaths: readonly string[];
 
-  constructor(map: MessageMap, link: string) {
-    const own = map.messages.filter((message) => message.link === link);
+  constructor(map: MessageMap, link: string | readonly string[]) {
+    const links = typeof link === 'string' ? [link] : link;
+    const own = map.messages.filter((message) => links.includes(message.link));
     if (own.length === 0)
       throw new Error(
-        `the map has no messages on link ${link}; its links: ${map.links.map((one) => one.name).join(', ')}`,
+        `the map has no messages on link ${links.join(' or ')}; its links: ${map.links.map((one) => one.name).join(', ')}`,
       );
     const paths = (messages: readonly MessageSpec[]): string[] =>
       messages.flatMap((message) => message.signals.map((signal) => `${message.name}.${signal.name}`));

@@ -1,21 +1,10 @@
 import { BuildError, type Problem } from '../runtime/contract.js';
+import { bitsOf } from './can-bits.js';
+import { flexibleLengths, identifierMasks } from './can-frame.js';
+import { reservedNames } from './link-counts.js';
 import type { MapSignal, MessageMap, MessageSpec } from './message-map.js';
+import { readProtection } from './protection/make.js';
 import { greatestLength, limits, udpLayout, wireNumber } from './udp-layout.js';
-
-/** Names that the exchange gives to its own signals beside those of a message. */
-export const messageCounts = [
-  'age',
-  'timedOut',
-  'received',
-  'lost',
-  'duplicate',
-  'late',
-  'outOfRange',
-  'timeOuts',
-  'restarts',
-  'sent',
-  'unsendable',
-] as const;
 
 const identifier = /^[A-Za-z][A-Za-z0-9]*$/;
 
@@ -42,7 +31,7 @@ export function examineMap(map: MessageMap): Problem[] {
     names.add(message.name);
     const link = map.links.find((one) => one.name === message.link);
     if (!link) add('unknown link', message.link, `known: ${[...links].join(', ') || 'none'}`, 'declare it under links');
-    const number = `${message.link} ${message.identifier}`;
+    const number = `${message.link} ${message.identifier}${message.extended ? ' extended' : ''}`;
     const other = numbers.get(number);
     if (other !== undefined)
       add(
@@ -60,6 +49,7 @@ export function examineMap(map: MessageMap): Problem[] {
       if (length > greatestLength)
         add('the datagram is too long', `${length} bytes`, `at most ${greatestLength} bytes`, 'split the message');
     }
+    if (link && link.kind !== 'udp') examineFrame(message, add);
     examineSignals(message, path, problems);
   }
   return problems;
@@ -69,6 +59,37 @@ export function examineMap(map: MessageMap): Problem[] {
 export function requireSoundMap(map: MessageMap): void {
   const problems = examineMap(map);
   if (problems.length > 0) throw new BuildError(problems);
+}
+
+/** What a CAN frame must be beyond what the reader of a file checks. */
+function examineFrame(
+  message: MessageSpec,
+  add: (what: string, value: string, bound: string, remedy: string) => void,
+): void {
+  const most = message.extended ? identifierMasks.extended : identifierMasks.standard;
+  if (!(Number.isInteger(message.identifier) && message.identifier >= 0 && message.identifier <= most))
+    add('the identifier does not fit', `${message.identifier}`, `0 to ${most}`, 'choose another or make it extended');
+  const bytes = message.bytes ?? 8;
+  const lengths = message.flexibleDataRate ? flexibleLengths : flexibleLengths.filter((length) => length <= 8);
+  if (!lengths.includes(bytes))
+    add('no CAN frame has this length', `${bytes} bytes`, `one of ${lengths.join(', ')}`, 'take the next longer one');
+  if (message.bitRateSwitch && !message.flexibleDataRate)
+    add('a classic frame has no bit-rate switch', 'bitRateSwitch: on', '', 'add flexibleDataRate: on');
+  for (const signal of message.signals)
+    if (!signal.can)
+      add(`${signal.name} has no layout on CAN`, 'no can:', '', 'add can: { start: 0, length: 8 } to it');
+  const { bits, faults } = readProtection(message);
+  for (const fault of faults) add(fault.what, fault.value, fault.bound, fault.remedy);
+  for (const signal of message.signals) {
+    const shared = signal.can && bitsOf(signal.can).find((bit) => bits.includes(bit));
+    if (shared !== undefined)
+      add(
+        `${signal.name} lies on the bits of the protection`,
+        `bit ${shared}`,
+        `${message.protection?.kind}`,
+        'move one of the two',
+      );
+  }
 }
 
 function examineTiming(
@@ -109,8 +130,8 @@ function examineSignals(message: MessageSpec, path: string, problems: Problem[])
       add('the name cannot be used in C', signal.name, 'letters and digits, a letter first', 'rename it');
     if (names.has(signal.name))
       add('the message has this signal twice', signal.name, 'one signal per name', 'rename one');
-    if ((messageCounts as readonly string[]).includes(signal.name))
-      add('the name belongs to the link itself', signal.name, `not one of ${messageCounts.join(', ')}`, 'rename it');
+    if (reservedNames.includes(signal.name))
+      add('the name belongs to the link itself', signal.name, `not one of ${reservedNames.join(', ')}`, 'rename it');
     names.add(signal.name);
     examineNumbers(signal, message.direction === 'received', add);
   }

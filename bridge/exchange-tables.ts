@@ -2,10 +2,10 @@ import type { Problem } from '../runtime/contract.js';
 import type { SignalTable } from '../runtime/signals.js';
 import { CountReports } from './count-reports.js';
 import type { ExchangeOptions } from './exchange.js';
-import { linkEvents } from './link-events.js';
+import type { Link } from './link.js';
+import { type Counts, countsOfLink, countsOfMessage } from './link-counts.js';
 import type { MapSignal } from './message-map.js';
 import { SlotCopies } from './slot-copies.js';
-import { type LinkCount, linkCounts, type UdpLink } from './udp-link.js';
 
 /**
  * What stands between the block, the signals and the messages, as tables: made once when the bench is built. Declares
@@ -19,11 +19,11 @@ export class ExchangeTables {
   readonly driven = new SlotCopies();
   /** Signals to the values of sent messages, one after the other, in units of the map. */
   readonly gathered = new SlotCopies();
-  readonly shares: { readonly slots: UdpLink['slots']; readonly signal: number }[] = [];
+  readonly shares: { readonly slots: Link['slots']; readonly signal: number }[] = [];
   readonly reports: CountReports;
 
   constructor(
-    private readonly links: readonly UdpLink[],
+    private readonly links: readonly Link[],
     options: ExchangeOptions,
     problems: Problem[],
   ) {
@@ -33,7 +33,7 @@ export class ExchangeTables {
   }
 
   /** Declares the signals of one link and of its messages, and what is reported of their counts. */
-  private declare(link: UdpLink, options: ExchangeOptions, problems: Problem[]): void {
+  private declare(link: Link, options: ExchangeOptions, problems: Problem[]): void {
     const { signals, step } = options;
     const show = (
       copies: SlotCopies,
@@ -55,25 +55,26 @@ export class ExchangeTables {
       }
       copies.add(slot, signals.add({ path, unit, about, group }), scale, offset);
     };
-    const name = link.spec.name;
-    for (const count of Object.keys(linkCounts) as LinkCount[])
-      show(this.taken, link.slots[count], `${name}.${count}`, '1', linkCounts[count], 'link');
-    for (const count of ['malformed', 'wrongChecksum', 'wrongMap', 'wrongLength'] as const)
-      this.reports.watch(link.slots[count], linkEvents[count], name);
-    this.reports.watch(link.slots.floods, linkEvents.flood, name);
-    this.reports.watch(link.slots.hellos, linkEvents.hello, name);
-    const share = `${name}.oneStepShare`;
-    this.shares.push({
-      slots: link.slots,
-      signal: signals.add({
-        path: share,
-        unit: '1',
-        about: 'share of the used messages that answer the tick just before',
-        group: 'link',
-        least: 0,
-        most: 1,
-      }),
-    });
+    const showCounts = (copies: SlotCopies, owner: string, counts: Counts, slots: Link['slots']): void => {
+      for (const [name, { about, ticks, event }] of Object.entries(counts)) {
+        show(copies, slots[name], `${owner}.${name}`, ticks ? 's' : '1', about, 'link', ticks ? step : 1);
+        if (event) this.reports.watch(slots[name], event, owner);
+      }
+    };
+    const { name, kind } = link.spec;
+    showCounts(this.taken, name, countsOfLink(kind), link.slots);
+    if (kind === 'udp')
+      this.shares.push({
+        slots: link.slots,
+        signal: signals.add({
+          path: `${name}.oneStepShare`,
+          unit: '1',
+          about: 'share of the used messages that answer the tick just before',
+          group: 'link',
+          least: 0,
+          most: 1,
+        }),
+      });
     for (const receiver of link.receivers) {
       const { message } = receiver;
       message.signals.forEach((signal, i) => {
@@ -88,21 +89,7 @@ export class ExchangeTables {
           signal.unitOffset,
         );
       });
-      show(
-        this.taken,
-        receiver.age,
-        `${message.name}.age`,
-        's',
-        'time since the newest message that was used',
-        'link',
-        step,
-      );
-      show(this.taken, receiver.timedOut, `${message.name}.timedOut`, '1', '1 while a time-out lasts', 'link');
-      for (const [count, about] of receiverCounts)
-        show(this.taken, receiver[count], `${message.name}.${count}`, '1', about, 'link');
-      for (const count of ['lost', 'duplicate', 'late', 'outOfRange'] as const)
-        this.reports.watch(receiver[count], linkEvents[count], message.name);
-      this.reports.watch(receiver.restarts, linkEvents.restarted, message.name);
+      showCounts(this.taken, message.name, countsOfMessage(kind, 'received'), receiver.slots);
     }
     for (const sender of link.senders) {
       const { message } = sender;
@@ -118,16 +105,7 @@ export class ExchangeTables {
           signal.unitOffset,
         );
       });
-      show(this.published, sender.sent, `${message.name}.sent`, '1', 'messages sent', 'link');
-      show(
-        this.published,
-        sender.unsendable,
-        `${message.name}.unsendable`,
-        '1',
-        'times not sent because a value was not finite',
-        'link',
-      );
-      this.reports.watch(sender.unsendable, linkEvents.unsendable, message.name);
+      showCounts(this.published, message.name, countsOfMessage(kind, 'sent'), sender.slots);
     }
   }
 
@@ -166,16 +144,6 @@ export class ExchangeTables {
     }
   }
 }
-
-const receiverCounts = [
-  ['received', 'messages used'],
-  ['lost', 'messages missing in the sequence'],
-  ['duplicate', 'messages that came twice'],
-  ['late', 'messages that came after a newer one'],
-  ['outOfRange', 'messages with a value outside its range'],
-  ['timeOuts', 'time-outs'],
-  ['restarts', 'jumps of the sequence'],
-] as const;
 
 function unknown(path: string, what: string, value: string, near: readonly string[]): Problem {
   return {

@@ -2,8 +2,10 @@ import type { BlockLayout } from '../runtime/block.js';
 import { BuildError, type Problem } from '../runtime/contract.js';
 import { type EventCatalogue, type Journal, noJournal } from '../runtime/journal.js';
 import type { SignalTable } from '../runtime/signals.js';
+import { CanLink } from './can-link.js';
 import { requireSoundMap } from './examine-map.js';
 import { ExchangeTables } from './exchange-tables.js';
+import type { Link } from './link.js';
 import { linkEvents } from './link-events.js';
 import type { MessageMap } from './message-map.js';
 import type { Transport } from './transport.js';
@@ -31,7 +33,7 @@ export interface ExchangeOptions {
   readonly bootWindowTicks?: number;
   /** Number of the first tick; negative with a pre-roll. Default 0. */
   readonly firstTick?: number;
-  /** Most datagrams that one tick takes from one link. Default: four times the messages it may bring, at least 64. */
+  /** Most datagrams or frames that one tick takes from one link. Default: four times the messages it may bring, at least 64. */
   readonly datagramsPerTick?: number;
 }
 
@@ -45,7 +47,7 @@ export interface ExchangeOptions {
  */
 export class Exchange {
   readonly checksum: number;
-  readonly links: readonly UdpLink[];
+  readonly links: readonly Link[];
   private readonly tables: ExchangeTables;
   private readonly units: Float64Array;
   private readonly bootUntil: number;
@@ -75,23 +77,14 @@ export class Exchange {
     this.cameBackKind = events.kind(linkEvents.cameBack);
     this.awakeKind = events.kind(linkEvents.awake);
 
-    const links: UdpLink[] = [];
-    map.links.forEach((spec, number) => {
-      if (spec.kind !== 'udp') {
-        problems.push({
-          path: `links.${spec.name}`,
-          what: 'this exchange serves no such link',
-          value: spec.kind,
-          bound: 'udp',
-          remedy: 'make it a udp link',
-        });
-        return;
-      }
+    const links: Link[] = map.links.map((spec, number) => {
       const messages = map.messages.filter((message) => message.link === spec.name);
       const most =
         options.datagramsPerTick ??
         Math.max(64, 4 * messages.filter((message) => message.direction === 'received').length);
-      links.push(new UdpLink(spec, number, messages, this.checksum, layout, firstTick, most));
+      return spec.kind === 'udp'
+        ? new UdpLink(spec, number, messages, this.checksum, layout, firstTick, most)
+        : new CanLink(spec, number, messages, layout, firstTick, most);
     });
     this.links = links;
     this.tables = new ExchangeTables(links, options, problems);
@@ -160,7 +153,7 @@ export class Exchange {
         if (tick === this.firstTick) link.hello(tick);
         for (let i = 0; i < link.senders.length; i += 1) {
           link.send(block, tick, i, this.units, from);
-          from += link.senders[i].codec.count;
+          from += link.senders[i].count;
         }
       }
     }

@@ -1,36 +1,25 @@
 import type { BlockLayout } from '../runtime/block.js';
 import { type Journal, noJournal } from '../runtime/journal.js';
+import type { Link } from './link.js';
+import { udpLinkCounts } from './link-counts.js';
 import type { LinkSpec, MessageSpec } from './message-map.js';
-import { MessageReceiver, receptions } from './message-receiver.js';
+import { MessageReceiver } from './message-receiver.js';
 import { MessageSender } from './message-sender.js';
+import { receptions } from './received-message.js';
 import { noTransport, type Transport } from './transport.js';
 import { Datagram, UdpCodec, UdpInbox, verdicts, writeControl } from './udp-codec.js';
 import { header, kinds } from './udp-layout.js';
-
-/** Counts of a link, each a slot of the block and a signal `link.name`. */
-export const linkCounts = {
-  received: 'datagrams taken',
-  malformed: 'datagrams of no known form',
-  wrongChecksum: 'datagrams with a wrong checksum',
-  wrongMap: 'datagrams made with another message map',
-  wrongLength: 'datagrams with a wrong length',
-  floods: 'ticks in which the bound on datagrams was reached',
-  hellos: 'times the controller said that it has started',
-  replies: 'messages used',
-  oneStepReplies: 'messages used that answer the tick just before',
-} as const;
-export type LinkCount = keyof typeof linkCounts;
 
 /**
  * The bench's end of one UDP link: drains the transport into the receivers, writes what is due. The work of a tick is
  * bounded: at most `datagramsPerTick` are taken, the rest waits in the transport, so that a flood cannot delay a step.
  */
-export class UdpLink {
+export class UdpLink implements Link {
   transport: Transport = noTransport;
   journal: Journal = noJournal;
   readonly senders: readonly MessageSender[];
   readonly receivers: readonly MessageReceiver[];
-  readonly slots: Readonly<Record<LinkCount, number>>;
+  readonly slots: Readonly<Record<keyof typeof udpLinkCounts, number>>;
   /** Slot: 1 once a message was used. */
   readonly awake: number;
   /** Sends that the transport did not accept. It depends on the machine and not on inputs: not part of the block. */
@@ -58,8 +47,9 @@ export class UdpLink {
     this.inbox = new UdpInbox(received, mapChecksum);
     this.incoming = new Datagram(this.inbox.capacity);
     this.outgoing = new Datagram(Math.max(64, ...codecs.map((codec) => codec.length)));
-    const slots = {} as Record<LinkCount, number>;
-    for (const name of Object.keys(linkCounts) as LinkCount[]) slots[name] = layout.add(`${spec.name}.${name}`);
+    const slots = {} as Record<keyof typeof udpLinkCounts, number>;
+    for (const name of Object.keys(udpLinkCounts) as (keyof typeof udpLinkCounts)[])
+      slots[name] = layout.add(`${spec.name}.${name}`);
     this.slots = slots;
     this.awake = layout.add(`${spec.name}.awake`);
   }

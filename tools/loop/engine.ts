@@ -1,9 +1,9 @@
-import type { LockstepTransport } from '../../bridge/lockstep.js';
 import type { Assembly } from '../../configs/assemble.js';
 import { hashText } from '../../runtime/block.js';
 import { Clock } from '../../runtime/realtime/clock.js';
 import type { Pacer } from '../../runtime/realtime/pacer.js';
 import { PACER } from '../../runtime/realtime/pacer.js';
+import type { Barrier } from './controller-module.js';
 
 /** Words of the small shared memory between host and loop thread. */
 export const CONTROL = { stop: 0, phase: 1, refined: 2, words: 16 } as const;
@@ -25,7 +25,7 @@ export interface LoopOptions {
   readonly ticks: number;
   readonly shared: LoopControl;
   /** Barriers to be told the end of each tick. */
-  readonly barriers: readonly LockstepTransport[];
+  readonly barriers: readonly Barrier[];
   /** Live: paces the ticks. Absent: as fast as it goes. */
   readonly pacer?: Pacer;
   /** Live: indices of the signals that get lateness and step of the tick before, s. */

@@ -1,7 +1,5 @@
 import { parentPort, workerData } from 'node:worker_threads';
 import v8 from 'node:v8';
-import { LockstepTransport } from '../../bridge/lockstep.js';
-import { UdpSocket } from '../../bridge/udp-socket.js';
 import { noTransport } from '../../bridge/transport.js';
 import { type Assembly, assemble } from '../../configs/assemble.js';
 import { readBench } from '../../configs/bench.js';
@@ -10,7 +8,6 @@ import { memoryFiles } from '../../configs/files.js';
 import { globTest } from '../../configs/signal-list.js';
 import { BuildError } from '../../runtime/contract.js';
 import { noJournal } from '../../runtime/journal.js';
-import { Clock } from '../../runtime/realtime/clock.js';
 import { CollectionMeter, collectNow } from '../../runtime/realtime/collection-meter.js';
 import { whyNotLive } from '../../runtime/realtime/ffi.js';
 import { Pacer } from '../../runtime/realtime/pacer.js';
@@ -18,7 +15,8 @@ import { enterScheduling, type Scheduling } from '../../runtime/realtime/schedul
 import { TimingRecord } from '../../runtime/realtime/timing-record.js';
 import { RingJournal } from '../../runtime/ring-journal.js';
 import { catalogue as library } from '../../configs/catalogue.js';
-import { loadController, moduleTransport } from './controller-module.js';
+import { attachLinks, attachModule } from './attach-links.js';
+import { loadController } from './controller-module.js';
 import { createLoopControl, runLoop } from './engine.js';
 import type { LoopMessage, RunOrder } from './run-order.js';
 import { StageClock } from './stage-meter.js';
@@ -52,12 +50,10 @@ async function main(order: RunOrder): Promise<void> {
   const built = performance.now();
   const selection = choose(assembly, order.patterns);
   const journal = new RingJournal(order.ring, selection);
-  const barriers: LockstepTransport[] = [];
-  const sockets: UdpSocket[] = [];
 
   if (order.pace === 'live') await warmUp(assembly, spec, order);
   const warmed = performance.now();
-  await attach(order, spec, assembly, barriers, sockets);
+  const links = await attachLinks(order, spec, assembly.exchange);
   assembly.exchange.setJournal(journal);
   assembly.tick.journal = journal;
   assembly.watch.journal = journal;
@@ -94,7 +90,7 @@ async function main(order: RunOrder): Promise<void> {
     assembly,
     ticks: order.ticks,
     shared: createLoopControl(order.control),
-    barriers,
+    barriers: links.barriers,
     ...(pacer ? { pacer } : {}),
     ...(pacer && lateness >= 0 ? { timingSignals: { lateness, step: assembly.table.find('timing.step') } } : {}),
     peaks: Int32Array.from(order.peaks, (path) => requireSignal(assembly, path)),
@@ -108,7 +104,7 @@ async function main(order: RunOrder): Promise<void> {
   });
   scheduling?.restore();
   journal.close();
-  for (const socket of sockets) socket.close();
+  links.close();
   const shares = assembly.ledger.shares(assembly.block, assembly.signals);
   say({
     kind: 'done',
@@ -157,12 +153,10 @@ function requireSignal(assembly: Assembly, path: string): number {
 
 /** Runs the very tick that will count, on the same arrays, and throws the state away: everything that it remembers stands in the block. */
 async function warmUp(assembly: Assembly, spec: BenchSpec, order: RunOrder): Promise<void> {
-  const link = spec.map.links[0];
-  if (link && spec.controller?.module !== undefined) {
+  if (spec.map.links.length > 0 && spec.controller?.module !== undefined) {
     const factory = await loadController(order.folder, spec.controller.module);
-    const transport = moduleTransport(spec.map, assembly.exchange.checksum, factory, spec.step, scriptEvery);
-    assembly.exchange.attach(link.name, transport);
-    dryRun(assembly, (tick) => transport.end(tick));
+    const barrier = attachModule(spec, assembly.exchange, factory, scriptEvery);
+    dryRun(assembly, (tick) => barrier.end(tick));
   } else dryRun(assembly, () => {});
   for (const one of spec.map.links) assembly.exchange.attach(one.name, noTransport);
   assembly.reset();
@@ -177,43 +171,5 @@ function dryRun(assembly: Assembly, end: (tick: number) => void): void {
       assembly.tick.run(tick);
       end(tick);
     }
-  }
-}
-
-async function attach(order: RunOrder, spec: BenchSpec, assembly: Assembly, barriers: LockstepTransport[], sockets: UdpSocket[]): Promise<void> {
-  const { exchange } = assembly;
-  if (order.controller.kind === 'none' || spec.map.links.length === 0) return;
-  if (order.controller.kind === 'module') {
-    const factory = await loadController(order.folder, order.controller.file);
-    const transport = moduleTransport(spec.map, exchange.checksum, factory, spec.step, spec.controller?.period ?? 1);
-    exchange.attach(spec.map.links[0]!.name, transport);
-    barriers.push(transport);
-    return;
-  }
-  const clock = new Clock();
-  const times = new Float64Array(1);
-  for (const link of spec.map.links) {
-    const socket = new UdpSocket({
-      local: { address: link.localAddress ?? '127.0.0.1', port: link.localPort ?? 0 },
-      peer: { address: link.remoteAddress ?? '127.0.0.1', port: link.remotePort ?? 0 },
-    });
-    sockets.push(socket);
-    if (order.pace === 'live') {
-      exchange.attach(link.name, socket);
-      continue;
-    }
-    const barrier = new LockstepTransport(socket, {
-      link: link.name,
-      mapChecksum: exchange.checksum,
-      every: spec.controller?.period ?? 1,
-      limit: 1000 * (spec.controller?.patience ?? 5),
-      now: () => {
-        clock.now(times, 0);
-        return times[0]! * 1e-6;
-      },
-    });
-    barrier.awaitHello(1000 * Math.max(10, spec.controller?.patience ?? 5));
-    exchange.attach(link.name, barrier);
-    barriers.push(barrier);
   }
 }

@@ -1,0 +1,176 @@
+import { BlockLayout } from '../runtime/block.js';
+import { CanCodec } from './can-codec.js';
+import { frameSizes, identifierFlags, identifierWord, payloadAt, payloadRoom } from './can-frame.js';
+import { CanReceiver } from './can-receiver.js';
+import { CanSender } from './can-sender.js';
+import { ControllerMirror, type ControllerModule } from './controller-side.js';
+import { requireSoundMap } from './examine-map.js';
+import { IdentifierTable } from './identifier-table.js';
+import type { MessageMap } from './message-map.js';
+import { makeProtector } from './protection/make.js';
+import { receptions } from './received-message.js';
+import type { Transport } from './transport.js';
+
+export interface CanControllerOptions {
+  readonly map: MessageMap;
+  /** The CAN links that the controller is on, all of one block of values. */
+  readonly links: readonly string[];
+  readonly controller: ControllerModule;
+  /** Sends the first `size` bytes on link number `link` of `links`; the bytes are used again afterwards. */
+  readonly send: (link: number, frame: Uint8Array, size: number) => void;
+  /** The message that the controller answers at once; default: of those with the shortest cycle the last in map order. */
+  readonly trigger?: string;
+}
+
+/**
+ * The controller's end of CAN links, without a socket: give it each frame that came, it steps the controller and sends
+ * what is due, by the same codec, protection and schedule as the bench.
+ *
+ * CAN frames carry no tick. A process of its own counts its time by the trigger message, one cycle for each that came;
+ * a module in the loop thread is told the tick by `step`. Allocates nothing after it is made.
+ */
+export class CanControllerEndpoint {
+  readonly mirror: ControllerMirror;
+  readonly read: Float64Array;
+  readonly write: Float64Array;
+  /** Frames that were not used, of whatever fault. */
+  refused = 0;
+  private readonly memory: Float64Array;
+  private readonly receivers: readonly CanReceiver[];
+  private readonly senders: readonly CanSender[];
+  /** Link number of each sender. */
+  private readonly senderLinks: Int32Array;
+  private readonly tables: readonly IdentifierTable[];
+  /** Per link: receiver of each place of its table. */
+  private readonly places: readonly Int32Array[];
+  private readonly incoming = new Uint8Array(frameSizes.flexible);
+  private readonly incomingPayload = this.incoming.subarray(payloadAt);
+  private readonly outgoing = new Uint8Array(frameSizes.flexible);
+  private readonly outgoingPayload = this.outgoing.subarray(payloadAt);
+  private readonly came: Float64Array;
+  private readonly trigger: number;
+  private readonly triggerEvery: number;
+  private tick = 0;
+
+  constructor(private readonly options: CanControllerOptions) {
+    const { map, links } = options;
+    requireSoundMap(map);
+    this.mirror = new ControllerMirror(map, links);
+    const { inbound, outbound } = this.mirror;
+    const layout = new BlockLayout();
+    this.receivers = inbound.map((message) => new CanReceiver(new CanCodec(message), makeProtector(message), layout));
+    this.senders = outbound.map(
+      (message) => new CanSender(new CanCodec(message), makeProtector(message), layout, Number.NEGATIVE_INFINITY),
+    );
+    this.senderLinks = Int32Array.from(outbound, (message) => links.indexOf(message.link));
+    this.tables = links.map((link) => new IdentifierTable(inbound.filter((message) => message.link === link)));
+    this.places = links.map((link) =>
+      Int32Array.from(inbound.flatMap((message, i) => (message.link === link ? [i] : []))),
+    );
+    this.memory = layout.create();
+    this.came = new Float64Array(inbound.length).fill(Number.NEGATIVE_INFINITY);
+    this.read = new Float64Array(this.mirror.readPaths.length);
+    this.write = new Float64Array(this.mirror.writePaths.length);
+    let at = 0;
+    for (const message of outbound) for (const signal of message.signals) this.write[at++] = signal.substitute;
+    this.trigger = this.findTrigger();
+    this.triggerEvery = this.trigger < 0 ? 1 : Math.max(1, inbound[this.trigger].every);
+  }
+
+  /** One frame of 16 or 72 bytes that came on link number `link`. Answers it when it is the trigger message. */
+  receive(link: number, frame: Uint8Array, size: number): void {
+    const index = this.use(link, frame, size);
+    if (index < 0) return;
+    if (index === this.trigger) {
+      this.tick += this.triggerEvery;
+      this.came[index] = this.tick;
+      this.answer(this.triggerEvery);
+    } else this.came[index] = this.tick;
+  }
+
+  /** Takes all that waits on link number `link`, without answering. */
+  pump(link: number, transport: Transport): void {
+    for (;;) {
+      const size = transport.poll(this.incoming);
+      if (size < 0) return;
+      const index = this.use(link, this.incoming, size);
+      if (index >= 0) this.came[index] = this.tick;
+    }
+  }
+
+  /** The tick is `tick`: what is pumped from now on came in it. */
+  setTick(tick: number): void {
+    this.tick = tick;
+  }
+
+  /** Steps the controller and sends, once, each message that fell due in the last `ticks` ticks. */
+  answer(ticks: number): void {
+    const { memory, read, write, tick } = this;
+    let at = 0;
+    for (let i = 0; i < this.receivers.length; i += 1) {
+      const receiver = this.receivers[i];
+      for (let k = 0; k < receiver.codec.count; k += 1) read[at + k] = memory[receiver.values + k];
+      at += receiver.codec.count;
+    }
+    for (let i = 0; i < this.receivers.length; i += 1) read[at + i] = tick - this.came[i];
+    this.options.controller.step(tick, read, write);
+    let from = 0;
+    for (let i = 0; i < this.senders.length; i += 1) {
+      const sender = this.senders[i];
+      for (let due = tick - ticks + 1; due <= tick; due += 1) {
+        const size = sender.write(memory, due, write, from, this.outgoing, this.outgoingPayload);
+        if (size < 0) continue;
+        this.options.send(this.senderLinks[i], this.outgoing, size);
+        break;
+      }
+      from += sender.count;
+    }
+  }
+
+  /** When nothing came for a while by the controller's own clock: time goes on by `ticks`, and what is due is sent. */
+  elapse(ticks: number): void {
+    this.tick += ticks;
+    this.answer(ticks);
+  }
+
+  /** Index of the message that a frame carried and that was used, or -1. */
+  private use(link: number, frame: Uint8Array, size: number): number {
+    const room = payloadRoom(size);
+    if (room < 0 || frame[4] > room) {
+      this.refused += 1;
+      return -1;
+    }
+    const word = identifierWord(frame);
+    if ((word & (identifierFlags.error | identifierFlags.remote)) !== 0) return -1;
+    const place = this.tables[link].find(word);
+    if (place < 0) return -1;
+    const index = this.places[link][place];
+    const receiver = this.receivers[index];
+    if (frame !== this.incoming) for (let i = 0; i < size; i += 1) this.incoming[i] = frame[i];
+    if (
+      (size === frameSizes.flexible) !== (receiver.message.flexibleDataRate === true) ||
+      receiver.accept(this.memory, this.incomingPayload, frame[4]) > receptions.saturated
+    ) {
+      this.refused += 1;
+      return -1;
+    }
+    return index;
+  }
+
+  private findTrigger(): number {
+    const { inbound } = this.mirror;
+    if (this.options.trigger !== undefined) {
+      const index = inbound.findIndex((message) => message.name === this.options.trigger);
+      if (index < 0)
+        throw new Error(
+          `the bench sends no message ${this.options.trigger}; it sends: ${inbound.map((one) => one.name).join(', ')}`,
+        );
+      return index;
+    }
+    let best = -1;
+    inbound.forEach((message, i) => {
+      if (message.every > 0 && (best < 0 || message.every <= inbound[best].every)) best = i;
+    });
+    return best;
+  }
+}

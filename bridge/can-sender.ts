@@ -1,0 +1,54 @@
+import type { BlockLayout } from '../runtime/block.js';
+import type { CanCodec } from './can-codec.js';
+import { frameFlags, frameSizes, identifierFlags, payloadAt, writeFrameHead } from './can-frame.js';
+import type { Protector } from './protection/protector.js';
+import { SentMessage } from './sent-message.js';
+
+/** A message that goes by CAN, with its counter and checksum where it has them. */
+export class CanSender extends SentMessage {
+  private readonly counter: number;
+  private readonly word: number;
+  private readonly flags: number;
+  private readonly size: number;
+
+  constructor(
+    readonly codec: CanCodec,
+    private readonly protector: Protector | undefined,
+    layout: BlockLayout,
+    firstTick: number,
+  ) {
+    // Of a message that the bench receives `outOfRange` says what the bench does, not what its sender does.
+    super(codec, layout, firstTick, codec.message.direction === 'sent' && codec.message.outOfRange === 'refuse');
+    const { message } = this;
+    this.counter = layout.add(`${message.name}.counter`);
+    this.word = message.identifier | (message.extended ? identifierFlags.extended : 0);
+    const flexible = message.flexibleDataRate === true;
+    this.size = flexible ? frameSizes.flexible : frameSizes.classic;
+    this.flags = flexible ? frameFlags.flexible | (message.bitRateSwitch ? frameFlags.bitRateSwitch : 0) : 0;
+  }
+
+  /**
+   * Writes the frame if the message is due with values[from ..] (units of the map); its size (16 or 72), or -1 when it is
+   * not due, or -2 when it was not written because of a value. `payload` is the frame from its payload on.
+   */
+  write(
+    memory: Float64Array,
+    tick: number,
+    values: Float64Array,
+    from: number,
+    frame: Uint8Array,
+    payload: Uint8Array,
+  ): number {
+    const prepared = this.prepare(memory, tick, values, from);
+    if (prepared < 0) return prepared;
+    const length = this.codec.write(payload);
+    if (this.protector !== undefined) {
+      const counter = memory[this.counter];
+      this.protector.protect(payload, length, counter);
+      memory[this.counter] = counter + 1 >= this.protector.modulo ? 0 : counter + 1;
+    }
+    writeFrameHead(frame, this.word, length, this.flags);
+    for (let i = payloadAt + length; i < this.size; i += 1) frame[i] = 0;
+    return this.size;
+  }
+}

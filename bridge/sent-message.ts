@@ -1,0 +1,103 @@
+import type { BlockLayout } from '../runtime/block.js';
+import type { MessageSpec } from './message-map.js';
+import { changeDistance, dueByCycle } from './schedule.js';
+
+/** The part of a codec that the schedule needs. */
+export interface Quantiser {
+  readonly message: MessageSpec;
+  readonly count: number;
+  /** Values onto the wire's steps: how many were brought into range, or -1 when one is not finite. */
+  quantise(values: Float64Array, from: number, carried: Float64Array, to: number): number;
+}
+
+/** What `prepare` says. */
+export const preparations = { ready: 0, notDue: -1, unsendable: -2 } as const;
+
+/**
+ * One message on its way out, whatever carries it: decides when it is due. What it remembers (what it carried last, in
+ * units of the map, when it went) stands in a block that each call is given; all allocated when it is made.
+ */
+export class SentMessage {
+  readonly message: MessageSpec;
+  readonly count: number;
+  /** Slots: what the last one carried, first of `count`. */
+  readonly carried: number;
+  /** Slots by the names of link-counts.ts. */
+  readonly slots: Readonly<Record<string, number>>;
+  /** Slot: sent since the start or the last clearing. */
+  readonly sent: number;
+  /** Slot: times that it was due and a value was not finite, or outside its range in a message that refuses that. */
+  readonly unsendable: number;
+  private readonly lastTick: number;
+  private readonly fresh: Float64Array;
+  private readonly onCycle: boolean;
+  private readonly onChange: boolean;
+  private readonly distance: number;
+
+  constructor(
+    private readonly quantiser: Quantiser,
+    layout: BlockLayout,
+    private readonly firstTick: number,
+    /** A value outside its range keeps the message from being sent, instead of being brought into it. */
+    private readonly refuses = false,
+  ) {
+    const message = quantiser.message;
+    this.message = message;
+    this.count = quantiser.count;
+    this.carried = layout.length;
+    for (const signal of message.signals) layout.add(`${message.name}.${signal.name}`);
+    this.sent = layout.add(`${message.name}.sent`);
+    this.unsendable = layout.add(`${message.name}.unsendable`);
+    this.slots = { sent: this.sent, unsendable: this.unsendable };
+    this.lastTick = layout.add(`${message.name}.lastTick`, Number.NEGATIVE_INFINITY);
+    this.fresh = new Float64Array(this.count);
+    this.onCycle = message.trigger !== 'on-change';
+    this.onChange = message.trigger !== 'cyclic';
+    this.distance = changeDistance(message);
+  }
+
+  /** Whether the message could go out in this tick, before its values are looked at. */
+  mayBeDue(memory: Float64Array, tick: number): boolean {
+    if (this.onCycle && this.dueNow(tick)) return true;
+    if (!this.onChange || tick - this.firstTick < this.message.startDelay) return false;
+    return tick - memory[this.lastTick] >= this.distance;
+  }
+
+  /** Another run begins: what was sent before is no measure for what is due now. The sequence goes on. */
+  forget(memory: Float64Array): void {
+    memory[this.lastTick] = Number.NEGATIVE_INFINITY;
+  }
+
+  clearCounts(memory: Float64Array): void {
+    memory[this.sent] = 0;
+    memory[this.unsendable] = 0;
+  }
+
+  /**
+   * `ready`: due with values[from ..] (units of the map), quantised and counted as sent, to be written now by the codec.
+   * `notDue`, or `unsendable`: a value was not finite or not allowed, and it is not to be written.
+   */
+  protected prepare(memory: Float64Array, tick: number, values: Float64Array, from: number): number {
+    if (!this.mayBeDue(memory, tick)) return preparations.notDue;
+    const saturated = this.quantiser.quantise(values, from, this.fresh, 0);
+    if (saturated < 0 || (saturated > 0 && this.refuses)) {
+      memory[this.unsendable] += 1;
+      return preparations.unsendable;
+    }
+    if (!(this.onCycle && this.dueNow(tick)) && memory[this.lastTick] > Number.NEGATIVE_INFINITY && !this.moved(memory))
+      return preparations.notDue;
+    for (let i = 0; i < this.count; i += 1) memory[this.carried + i] = this.fresh[i];
+    memory[this.lastTick] = tick;
+    memory[this.sent] += 1;
+    return preparations.ready;
+  }
+
+  private dueNow(tick: number): boolean {
+    return dueByCycle(tick, this.firstTick, this.message.every, this.message.phase, this.message.startDelay);
+  }
+
+  private moved(memory: Float64Array): boolean {
+    for (let i = 0; i < this.count; i += 1) if (memory[this.carried + i] !== this.fresh[i]) return true;
+    return false;
+  }
+}
