@@ -47,8 +47,18 @@ function engine(): ELK {
   return started;
 }
 
+const known = new WeakMap<readonly ElementFacts[], Map<string, Promise<Layout>>>();
+/** The same circuit is laid out once. */
+export function laidOut(elements: readonly ElementFacts[], direction: 'RIGHT' | 'DOWN'): Promise<Layout> {
+  let both = known.get(elements);
+  if (both === undefined) known.set(elements, (both = new Map()));
+  let layout = both.get(direction);
+  if (layout === undefined) both.set(direction, (layout = layOut(elements, direction)));
+  return layout;
+}
+
 /** Layered layout with orthogonal lines (Sugiyama, Tagawa and Toda 1981) by the Eclipse Layout Kernel. */
-export async function layOut(elements: readonly ElementFacts[], direction: 'RIGHT' | 'DOWN'): Promise<Layout> {
+async function layOut(elements: readonly ElementFacts[], direction: 'RIGHT' | 'DOWN'): Promise<Layout> {
   const names = new Set(elements.map((element) => element.name));
   const children: ElkNode[] = elements.map((element) => ({
     id: element.name,

@@ -100,9 +100,11 @@ function View({ name }: { name: ViewName }) {
             <Requirements />
           </div>
           <div class="stack">
-            <Charts most={3} />
-            <Circuit />
+            <Charts most={4} />
             <Events most={40} />
+          </div>
+          <div class="across">
+            <Circuit />
           </div>
         </>
       );

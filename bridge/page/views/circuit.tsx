@@ -2,7 +2,7 @@ import { useEffect, useRef, useState } from 'preact/hooks';
 import type { ElementFacts } from '../../live/source.js';
 import { Glyph } from '../parts/glyph.js';
 import { Scroll } from '../parts/scroll.js';
-import { fitting, type Layout, layOut, type Placed, type Tie } from '../store/circuit-layout.js';
+import { fitting, type Layout, laidOut, type Placed, type Tie } from '../store/circuit-layout.js';
 import { infoOf, status, subject } from '../store/connection.js';
 import { lookOf, worst } from '../store/pressures.js';
 import { shownAs, shownOf, withUnit } from '../store/units.js';
@@ -18,9 +18,12 @@ export function Circuit({ share = 0.72 }: { share?: number }) {
   const [chosen, setChosen] = useState<string | undefined>(undefined);
   useEffect(() => {
     let gone = false;
-    Promise.all([layOut(elements ?? [], 'RIGHT'), layOut(elements ?? [], 'DOWN')])
-      .then((laid) => !gone && setLayouts(laid))
-      .catch((error: unknown) => setProblem(String(error)));
+    setLayouts([]);
+    for (const direction of ['RIGHT', 'DOWN'] as const) {
+      laidOut(elements ?? [], direction)
+        .then((laid) => !gone && setLayouts((others) => [...others, laid]))
+        .catch((error: unknown) => setProblem(String(error)));
+    }
     return () => {
       gone = true;
     };
