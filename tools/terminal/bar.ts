@@ -24,7 +24,7 @@ export function marksOf(settings: PressureSettings): Mark[] {
 
 /** Top of a pressure's scale, Pa: room above the highest setting. */
 export function scaleMost(settings: PressureSettings, peak: number, ambient: number): number {
-  const highest = Math.max(...Object.values(settings), ambient);
+  const highest = Math.max(...Object.values(settings).filter(Number.isFinite), ambient);
   const gauge = highest - ambient;
   return gauge > 0 ? ambient + 1.12 * gauge : Math.max(peak, ambient + 1e5);
 }
@@ -50,6 +50,7 @@ export function bar(
     cells.push({ text, on: share >= 0.25, mark: false });
   }
   for (const { at, letter } of marks) {
+    if (!Number.isFinite(place(at))) continue;
     const i = Math.min(columns - 1, Math.max(0, Math.floor(place(at))));
     cells[i] = { text: letter, on: cells[i].on, mark: true };
   }

@@ -128,9 +128,10 @@ function headlineLines(headlines: readonly TerminalHeadline[], columns: number):
   return lines;
 }
 
-/** The most urgent of them, in the order of the bench. */
+/** The most urgent of them, then those with most settings, in the order of the bench. */
 function byUrgency(pressures: readonly TerminalPressure[], most: number): TerminalPressure[] {
-  const chosen = [...pressures].sort((a, b) => b.level - a.level).slice(0, most);
+  const weight = (one: TerminalPressure) => 100 * one.level + Object.keys(one.settings).length;
+  const chosen = [...pressures].sort((a, b) => weight(b) - weight(a)).slice(0, most);
   return pressures.filter((one) => chosen.includes(one));
 }
 

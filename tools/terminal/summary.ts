@@ -135,14 +135,13 @@ function peakLines(summary: RunSummary): Line[] {
   const row = (name: string, cells: readonly string[], first: string, tone: Tone): Line => [
     span(left(first, indent), 'dim'),
     span(left(name, 28), tone),
-    ...cells.map((cell) => span(right(cell, 9), tone)),
+    ...cells.map((cell) => span(right(cell, 10), tone)),
   ];
   return [
-    row('bar(g)', ['peak', 'relief', 'PS', 'share'], 'peaks', 'dim'),
+    row('bar(g)', ['peak', 'relief', 'PS', 'of relief'], 'peaks', 'dim'),
     ...pressures.slice(0, most).map(([path, peak]) => {
       const { relief, maximumAllowable } = summary.settings[path];
-      const against = relief ?? maximumAllowable;
-      const share = against === undefined ? '' : `${((100 * (peak - gaugeZero)) / (against - gaugeZero)).toFixed(0)} %`;
+      const share = relief === undefined ? '' : `${((100 * (peak - gaugeZero)) / (relief - gaugeZero)).toFixed(0)} %`;
       return row(path, [number(peak), number(relief), number(maximumAllowable), share], '', 'plain');
     }),
   ];

@@ -56,8 +56,15 @@ export function right(text: string, columns: number, ellipsis = '…'): string {
   return ' '.repeat(Math.max(0, columns - width(fitting))) + fitting;
 }
 
+/** A number and its unit stay together. */
+const united = /(\d) (?=(?:m?s|µs|[kM]?J|bar|%|[kM]?g|B|K|L|rpm|km\/h|°C|N m)(?![\w/]))/g;
+
 /** Breaks at spaces into lines of at most `columns`; a longer word is cut through. */
 export function wrap(text: string, columns: number): string[] {
+  return breakLines(text.replace(united, '$1\u00a0'), columns).map((line) => line.replace(/\u00a0/g, ' '));
+}
+
+function breakLines(text: string, columns: number): string[] {
   const lines: string[] = [];
   let line = '';
   const room = Math.max(1, columns);
