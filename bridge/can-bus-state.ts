@@ -64,6 +64,9 @@ export function useNote(block: Float64Array, slots: Slots, note: Uint8Array): bo
     case noteKinds.unsent:
       block[slots.unsent] += noteCount(note);
       return true;
+    case noteKinds.malformed:
+      block[slots.malformed] += noteCount(note);
+      return true;
     default:
       return false;
   }

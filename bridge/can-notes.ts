@@ -11,7 +11,7 @@
  */
 export const noteSize = 8;
 
-export const noteKinds = { interface: 1, dropped: 2, queueFull: 3, unsent: 4 } as const;
+export const noteKinds = { interface: 1, dropped: 2, queueFull: 3, unsent: 4, malformed: 5 } as const;
 
 export const interfaceStates = { up: 0, down: 1, gone: 2 } as const;
 
@@ -37,6 +37,7 @@ export class NoteQueue {
   queueFull = 0;
   unsent = 0;
   unsentReason = 0;
+  malformed = 0;
   private state = -1;
 
   /** The interface has come into a state. Only the newest that was not told yet is told. */
@@ -64,6 +65,11 @@ export class NoteQueue {
     if (this.unsent > 0) {
       const length = writeNote(into, noteKinds.unsent, 0, this.unsentReason, this.unsent);
       this.unsent = 0;
+      return length;
+    }
+    if (this.malformed > 0) {
+      const length = writeNote(into, noteKinds.malformed, 0, 0, this.malformed);
+      this.malformed = 0;
       return length;
     }
     return -1;

@@ -11,12 +11,13 @@ export interface MessageMap {
 export interface LinkSpec {
   readonly name: string;
   readonly kind: 'udp' | 'can' | 'can-multicast';
-  /** Own address and port (udp), e.g. 127.0.0.1 and 47110. */
+  /** Own address and port (udp), e.g. 127.0.0.1 and 47110; own address by which frames go (can-multicast). */
   readonly localAddress?: string;
   readonly localPort?: number;
+  /** The peer's (udp), the group's (can-multicast). */
   readonly remoteAddress?: string;
   readonly remotePort?: number;
-  /** Interface name (can) or group (can-multicast). */
+  /** Name of the interface (can). */
   readonly interface?: string;
   /** Nominal and data bit rate, bit/s (can). */
   readonly bitRate?: number;

@@ -42,7 +42,11 @@ export interface UdpOptions {
     readonly interfaceAddress?: string;
     readonly timeToLive?: number;
     readonly loop?: boolean;
+    /** False: for sending only, the group is not joined. Default true. */
+    readonly receive?: boolean;
   };
+  /** Whose datagrams are passed over: an own socket that sends to the same group. */
+  readonly ignore?: SocketAddress;
 }
 
 /** An error of the operating system about a socket. `code` is its name, for example `EADDRINUSE`. */
@@ -93,6 +97,7 @@ export class UdpSocket implements WaitingTransport {
   private readonly to = new Uint8Array(new ArrayBuffer(ADDRESS_BYTES));
   private readonly waitSet = new Int32Array(2);
   private readonly memory = new Int32Array(9);
+  private readonly own: Uint8Array | undefined;
   private peerKnown = false;
   private descriptor: number;
 
@@ -104,6 +109,10 @@ export class UdpSocket implements WaitingTransport {
     if (options.peer !== undefined) {
       writeAddress(this.to, options.peer);
       this.peerKnown = true;
+    }
+    if (options.ignore !== undefined) {
+      this.own = new Uint8Array(new ArrayBuffer(ADDRESS_BYTES));
+      writeAddress(this.own, options.ignore);
     }
     this.descriptor = c.socket(AF_INET, SOCK_DGRAM | SOCK_NONBLOCK | SOCK_CLOEXEC, 0);
     if (this.descriptor < 0) throw this.failure('opening a UDP socket');
@@ -151,6 +160,7 @@ export class UdpSocket implements WaitingTransport {
         this.strangers += 1;
         continue;
       }
+      if (this.own !== undefined && sameAddress(this.from, this.own)) continue;
       this.received += 1;
       if (length <= into.length) return length;
       this.oversized += 1;
@@ -223,7 +233,8 @@ export class UdpSocket implements WaitingTransport {
     const membership = new Uint8Array(8);
     membership.set(addressBytes(multicast.group), 0);
     membership.set(addressBytes(multicast.interfaceAddress ?? '0.0.0.0'), 4);
-    this.set(IPPROTO_IP, IP_ADD_MEMBERSHIP, membership, `joining group ${multicast.group}`);
+    if (multicast.receive !== false)
+      this.set(IPPROTO_IP, IP_ADD_MEMBERSHIP, membership, `joining group ${multicast.group}`);
     if (multicast.interfaceAddress !== undefined) {
       this.set(
         IPPROTO_IP,

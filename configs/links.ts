@@ -1,4 +1,5 @@
 import { isIPv4 } from 'node:net';
+import { usualGroup } from '../bridge/can-datagram.js';
 import type { LinkSpec } from '../bridge/message-map.js';
 import { shown } from './quantity.js';
 import type { Section } from './section.js';
@@ -40,11 +41,26 @@ export function readLink(name: string, section: Section): LinkSpec | undefined {
       });
     return { name, kind, interface: device, ...rates };
   }
-  const group = readAddress(section, 'group', '239.74.163.2:43113');
+  const group = section.has('group')
+    ? readAddress(section, 'group', `${usualGroup.address}:${usualGroup.port}`)
+    : usualGroup;
+  // Frames stay on this computer unless the file says by which of its addresses they are to leave.
+  const own = section.text('by', {}, '127.0.0.1') ?? '127.0.0.1';
   section.finish();
-  return (
-    group && { name, kind, interface: group.address, remoteAddress: group.address, remotePort: group.port, ...rates }
-  );
+  if (!isIPv4(own))
+    return section.fail('by', 'not an IPv4 address', 'name an address of this computer, such as 127.0.0.1', {
+      value: shown(own),
+    });
+  if (group && !/^2(2[4-9]|3\d)\./.test(group.address))
+    return section.fail(
+      'group',
+      'not a multicast group',
+      `use one of 224.0.0.0 to 239.255.255.255, such as ${usualGroup.address}`,
+      {
+        value: shown(group.address),
+      },
+    );
+  return group && { name, kind, localAddress: own, remoteAddress: group.address, remotePort: group.port, ...rates };
 }
 
 function readAddress(

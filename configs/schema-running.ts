@@ -33,10 +33,10 @@ export function runningSchemas(): Record<string, Schema> {
             'is',
             'interface',
           ]),
-          mapping({ is: { const: 'can-multicast' }, about: text, group: text, bitRate: text, dataBitRate: text }, [
-            'is',
-            'group',
-          ]),
+          mapping(
+            { is: { const: 'can-multicast' }, about: text, group: text, by: text, bitRate: text, dataBitRate: text },
+            ['is'],
+          ),
         ],
       },
       'links to controllers',

@@ -1,4 +1,6 @@
+import { usualGroup } from '../../bridge/can-datagram.js';
 import { kernelFilters, needsFlexibleDataRate } from '../../bridge/can-link.js';
+import { CanMulticast } from '../../bridge/can-multicast.js';
 import { CanError, CanSocket } from '../../bridge/can-socket.js';
 import type { Exchange } from '../../bridge/exchange.js';
 import { LockstepTransport } from '../../bridge/lockstep.js';
@@ -38,7 +40,16 @@ export async function attachLinks(order: RunOrder, spec: BenchSpec, exchange: Ex
         exchange.attach(link.name, socket);
         continue;
       }
-      if (link.kind === 'can-multicast') throw notServed(link);
+      if (link.kind === 'can-multicast') {
+        const bus = new CanMulticast({
+          group: link.remoteAddress ?? usualGroup.address,
+          port: link.remotePort ?? usualGroup.port,
+          interfaceAddress: link.localAddress ?? '127.0.0.1',
+        });
+        sockets.push(bus);
+        exchange.attach(link.name, bus);
+        continue;
+      }
       const socket = new UdpSocket({
         local: { address: link.localAddress ?? '127.0.0.1', port: link.localPort ?? 0 },
         peer: { address: link.remoteAddress ?? '127.0.0.1', port: link.remotePort ?? 0 },
@@ -111,17 +122,6 @@ function notAtFastPace(link: LinkSpec): BuildError {
       value: `kind ${link.kind}`,
       remedy:
         'run it with --pace live, or at fast pace against the controller module of the bench, over frames in memory',
-    },
-  ]);
-}
-
-function notServed(link: LinkSpec): BuildError {
-  return new BuildError([
-    {
-      path: `links.${link.name}`,
-      what: 'links of this kind are not served yet',
-      value: link.kind,
-      remedy: 'use can or udp',
     },
   ]);
 }
