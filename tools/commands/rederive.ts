@@ -28,6 +28,7 @@ export function rederiveCommand(): Command {
           }
         }
         if (found.stopped) throw new CommandError('stopped before the end of the recording', exitCode.unfinished);
+        if (found.identical && found.ending === 'damaged') throw new CommandError('identical up to where the recording is damaged: what lies behind cannot be read');
         process.exitCode = found.identical ? exitCode.fine : exitCode.differs;
       } finally {
         progress.done();
