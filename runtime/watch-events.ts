@@ -10,7 +10,7 @@ export interface WatchEvents {
   readonly rises: Int32Array;
   /** a: value, b: relief setting, c: predicted time to reach it, s. By ladder, -1 without relief. */
   readonly predicted: Int32Array;
-  /** By ladder. a: peak, b: setting of the worst level, c: from its beginning to its end, s. */
+  /** By ladder. a: peak, b: setting of the worst level, c: how long it was on this time, s. */
   readonly ends: Int32Array;
   /** By ladder. a: peak, b: setting of the worst level, c: time since it began, s. */
   readonly acknowledged: Int32Array;

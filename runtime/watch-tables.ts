@@ -12,9 +12,22 @@ const smoothing = 0.25;
 const confirming = 0.25;
 export const keeping = 1.5;
 
-/** Slots of a warning in the block. Levels by their place on the ladder, from 1; 0: none. */
-export const warningSlots = ['present', 'worst', 'since', 'until', 'peak', 'acknowledged', 'times'] as const;
-export const SLOT = { present: 0, worst: 1, since: 2, until: 3, peak: 4, acknowledged: 5, times: 6, count: 7 } as const;
+/**
+ * Slots of a warning in the block. Levels by their place on the ladder, from 1; 0: none. `since` is its first tick since
+ * it was last closed, `began` that of the present time it is on.
+ */
+export const warningSlots = ['present', 'worst', 'since', 'until', 'peak', 'acknowledged', 'times', 'began'] as const;
+export const SLOT = {
+  present: 0,
+  worst: 1,
+  since: 2,
+  until: 3,
+  peak: 4,
+  acknowledged: 5,
+  times: 6,
+  began: 7,
+  count: 8,
+} as const;
 
 export interface WatchSetup {
   readonly watched: readonly WatchInput[];

@@ -48,6 +48,11 @@ export class Watch {
     return this.tables.acknowledgeSlot;
   }
 
+  /** First slot of the warnings: SLOT.count for each of `ladders`, in their order. */
+  get warningSlot(): number {
+    return this.tables.slot;
+  }
+
   /** Closed warnings that `warnings` no longer tells. */
   get forgotten(): number {
     return this.log.forgotten;
@@ -148,7 +153,10 @@ export class Watch {
       block[at + SLOT.peak] = signals[this.tables.sourceOf[k]];
       block[at + SLOT.times] = 0;
     }
-    if (present === 0) block[at + SLOT.times] += 1;
+    if (present === 0) {
+      block[at + SLOT.times] += 1;
+      block[at + SLOT.began] = tick;
+    }
     block[at + SLOT.present] = rung;
     block[at + SLOT.worst] = Math.max(worst, rung);
     block[at + SLOT.until] = tick;
@@ -183,7 +191,7 @@ export class Watch {
       block[at + SLOT.until] = tick;
       return;
     }
-    this.report(block, k, this.events.ends[k], block[at + SLOT.until], tick);
+    this.report(block, k, this.events.ends[k], block[at + SLOT.until] - block[at + SLOT.began], tick);
     if (block[at + SLOT.acknowledged] !== 0) this.close(block, k);
   }
 
@@ -196,17 +204,21 @@ export class Watch {
 
   /**
    * Acknowledges one open warning by its number among `ladders`, or all with -1. One that is over is closed; one that
-   * lasts is closed when it ends, and calls again when it climbs. Unknown numbers and closed ones do nothing.
+   * lasts is closed when it ends, and calls again when it climbs. Unknown numbers and closed ones do nothing. How many
+   * it were.
    */
-  acknowledge(block: Float64Array, index: number, tick: number): void {
+  acknowledge(block: Float64Array, index: number, tick: number): number {
+    let count = 0;
     for (let k = 0; k < this.ladders.length; k += 1) {
       const at = this.tables.slot + SLOT.count * k;
       if (index >= 0 && k !== index) continue;
       if (block[at + SLOT.worst] === 0 || block[at + SLOT.acknowledged] !== 0) continue;
       block[at + SLOT.acknowledged] = 1;
-      this.report(block, k, this.events.acknowledged[k], tick, tick);
+      this.report(block, k, this.events.acknowledged[k], tick - block[at + SLOT.since], tick);
       if (block[at + SLOT.present] === 0) this.close(block, k);
+      count += 1;
     }
+    return count;
   }
 
   private obey(block: Float64Array, tick: number): void {
@@ -216,12 +228,12 @@ export class Watch {
     else if (said >= 1) this.acknowledge(block, Math.floor(said) - 1, tick);
   }
 
-  /** Peak, setting of the worst level, and the time from the beginning to tick `until`. */
-  private report(block: Float64Array, k: number, kind: number, until: number, tick: number): void {
-    const at = this.tables.slot + SLOT.count * k;
-    const setting = this.tables.setting[this.tables.rungAt[k] + block[at + SLOT.worst] - 1];
-    const time = (until - block[at + SLOT.since]) * this.step;
-    this.journal.event(tick, kind, this.events.subjects[k], block[at + SLOT.peak], setting, time);
+  /** Peak, setting of the worst level, and a time in ticks. */
+  private report(block: Float64Array, k: number, kind: number, ticks: number, tick: number): void {
+    const { events, tables } = this;
+    const at = tables.slot + SLOT.count * k;
+    const setting = tables.setting[tables.rungAt[k] + block[at + SLOT.worst] - 1];
+    this.journal.event(tick, kind, events.subjects[k], block[at + SLOT.peak], setting, ticks * this.step);
   }
 
   private close(block: Float64Array, k: number): void {

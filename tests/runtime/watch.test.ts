@@ -345,6 +345,9 @@ describe('a warning', () => {
       rig.stay(bar(300), 400);
     }
     expect(rig.warnings).toMatchObject([{ since: 0, until: 1.099, times: 3, acknowledged: false, index: 0 }]);
+    expect(rig.told.filter((one) => one.kind === 'warning over, Pa').map((one) => one.c)).toEqual([
+      0.099, 0.099, 0.099,
+    ]);
     expect(rig.get('watch.worst')).toBe(0);
     expect(rig.get('watch.count')).toBe(1);
     rig.watch.acknowledge(rig.block, 0, rig.tick);

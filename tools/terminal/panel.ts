@@ -128,9 +128,13 @@ function headlineLines(headlines: readonly TerminalHeadline[], columns: number):
   return lines;
 }
 
-/** The most urgent of them, then those with most settings, in the order of the bench. */
+/**
+ * The most urgent of them, then those with most settings, in the order of the bench. Readings beside an element's own
+ * pressure (`highAccumulator.gasPressure`) come last.
+ */
 function byUrgency(pressures: readonly TerminalPressure[], most: number): TerminalPressure[] {
-  const weight = (one: TerminalPressure) => 100 * one.level + Object.keys(one.settings).length;
+  const weight = ({ level, label, settings }: TerminalPressure) =>
+    100 * level + Object.keys(settings).length - (label.includes('.') ? 50 : 0);
   const chosen = [...pressures].sort((a, b) => weight(b) - weight(a)).slice(0, most);
   return pressures.filter((one) => chosen.includes(one));
 }
