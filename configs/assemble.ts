@@ -2,6 +2,7 @@ import { Exchange } from '../bridge/exchange.js';
 import { BlockLayout } from '../runtime/block.js';
 import { buildCircuit, type Circuit, places } from '../runtime/circuit/build.js';
 import { BuildError, type Problem } from '../runtime/contract.js';
+import { HandStage, type HandTarget } from '../runtime/hand.js';
 import type { InstrumentUpdate } from '../runtime/instrument.js';
 import { EventCatalogue } from '../runtime/journal.js';
 import { Plant, type PlantPlaces } from '../runtime/plant.js';
@@ -34,6 +35,11 @@ export interface Assembly {
   /** Warnings so far, oldest first. Not for the tick. */
   warnings(): readonly WatchWarning[];
   readonly watch: Watch;
+  readonly hands: HandStage;
+  /** What a hand may take hold of, in the order of the numbers by which hands name it. */
+  readonly handTargets: readonly HandTarget[];
+  /** Slot of the ticks by which the timeline lags behind the clock because it was held. */
+  readonly scriptDelaySlot: number;
 }
 
 export interface AssemblyOptions {
@@ -95,6 +101,20 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     })),
   );
   const watch = new Watch({ watched: spec.watched, signals: table, layout, events, step: spec.step, ambientPressure: spec.ambient.pressure });
+  const handTargets = targetsOfHands(spec, commandAt, table);
+  const hands = new HandStage({
+    targets: handTargets,
+    reach: {
+      heldSlot: scriptStage.heldSlot,
+      scenario: script.name,
+      acknowledge: (values, warning, now) => watch.acknowledge(values, warning, now),
+      warnings: watch.ladders.map((ladder) => ladder.path),
+    },
+    layout,
+    events,
+    step: spec.step,
+    link: spec.map.links.length,
+  });
   commandAt.set('watch.acknowledge', watch.acknowledgeSlot);
 
   const block = layout.create();
@@ -107,6 +127,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     block,
     signals,
     exchange,
+    hands,
     script: scriptStage,
     before: stageOf(spec, instruments, 'before'),
     drives: { from: Int32Array.from(drives, (drive) => drive.from), to: Int32Array.from(drives, (drive) => drive.to) },
@@ -143,6 +164,9 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     target: targets.find,
     reset,
     watch,
+    hands,
+    handTargets,
+    scriptDelaySlot: scriptStage.delaySlot,
     warnings: () => watch.warnings(block),
   };
 }
@@ -234,6 +258,17 @@ class LifeSignals {
     add('supply', '1 while the controller has its supply', spec.life.supply);
     add('key', '1 while the key is on', spec.life.key);
   }
+}
+
+/** Every command, and what the instruments ahead of the plant say: pedals, selector, currents. */
+function targetsOfHands(spec: BenchSpec, commandAt: ReadonlyMap<string, number>, table: SignalTable): HandTarget[] {
+  const unitOf = (path: string) => table.all[table.find(path)]?.unit ?? '1';
+  const commands = [...commandAt].map(([path, slot]) => ({ path, unit: unitOf(path), slot, signal: -1 }));
+  const said = spec.instruments
+    .filter((instrument) => instrument.kind.stage === 'before')
+    .flatMap((instrument) => Object.keys(instrument.kind.outputs).map((output) => `${instrument.name}.${output}`))
+    .map((path) => ({ path, unit: unitOf(path), slot: -1, signal: table.find(path) }));
+  return [...commands, ...said];
 }
 
 /** Energy that machines took up while braking and gave back, by machine. */

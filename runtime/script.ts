@@ -43,6 +43,9 @@ const modes = { free: 0, held: 1, ramping: 2 } as const;
  * mode, the value and the ramp. A target that a step holds keeps its value against messages and instruments.
  */
 export class Script {
+  /** Slots: 1 while the timeline is held by hand; ticks that it lags behind the clock for that. */
+  readonly heldSlot: number;
+  readonly delaySlot: number;
   private readonly next: number;
   private readonly hold: { slot: number; mode: number; value: number; from: number; start: number; over: number }[] = [];
   private readonly holdOf: Int32Array;
@@ -69,6 +72,8 @@ export class Script {
     targets: { find(path: string): number },
   ) {
     this.next = layout.add('scenario.next');
+    this.heldSlot = layout.add('scenario.held');
+    this.delaySlot = layout.add('scenario.delay');
     const slots: number[] = [];
     this.holdOf = Int32Array.from(spec.steps, (one) => {
       if (one.target === '') return -1;
@@ -95,7 +100,7 @@ export class Script {
     this.driveTicks = Float64Array.from(spec.drive, (point) => point[0]);
     this.driveValues = Float64Array.from(spec.drive, (point) => point[1]);
     const signal = (name: string, unit: string, about: string) => signals.add({ path: `scenario.${name}`, unit, about, group: 'run' });
-    this.signalTime = signal('time', 's', 'time since tick 0');
+    this.signalTime = signal('time', 's', 'time of the timeline: since tick 0, less what it was held');
     this.signalStep = signal('step', '1', 'steps of the timeline done');
     this.signalTarget = signal('targetSpeed', 'm/s', 'speed that the driver is to follow');
     this.signalAhead = signal('targetSpeedAhead', 'm/s', 'the same, a preview time ahead');
@@ -107,7 +112,10 @@ export class Script {
   /** Stage `script`: advances the timeline; writes the scenario's signals and the traces' commands. */
   run(block: Float64Array, signals: Float64Array, tick: number, journal: Journal): void {
     const { spec } = this;
-    const at = tick < 0 ? 0 : tick;
+    if (tick >= 0 && block[this.heldSlot] !== 0) block[this.delaySlot] = block[this.delaySlot]! + 1;
+    // the time of the timeline, which stands while it is held
+    const now = tick - block[this.delaySlot]!;
+    const at = now < 0 ? 0 : now;
     signals[this.signalTime] = at * this.step;
     signals[this.signalRemaining] = (spec.ticks - at) * this.step;
     const pointers = this.tracePointers;
@@ -123,8 +131,8 @@ export class Script {
     while (block[this.next]! < spec.steps.length) {
       const number = block[this.next]!;
       const step = spec.steps[number]!;
-      if (step.at > tick) break;
-      this.begin(block, number, step, tick);
+      if (step.at > now) break;
+      this.begin(block, number, step, now);
       journal.event(tick, this.kindStep, this.subjects[number]!, step.value, step.over * this.step, 0);
       block[this.next] = number + 1;
     }
@@ -133,12 +141,13 @@ export class Script {
 
   /** What the steps hold, written over what messages and instruments said: just before the plant's step. */
   apply(block: Float64Array, tick: number): void {
+    const now = tick - block[this.delaySlot]!;
     for (let i = 0; i < this.hold.length; i += 1) {
       const held = this.hold[i]!;
       const mode = block[held.mode]!;
       if (mode === modes.free) continue;
       if (mode === modes.ramping) {
-        const passed = tick - block[held.start]!;
+        const passed = now - block[held.start]!;
         const over = block[held.over]!;
         const share = passed >= over ? 1 : passed / over;
         block[held.slot] = block[held.from]! + share * (block[held.value]! - block[held.from]!);
@@ -147,7 +156,7 @@ export class Script {
     }
   }
 
-  private begin(block: Float64Array, number: number, step: ScriptStep, tick: number): void {
+  private begin(block: Float64Array, number: number, step: ScriptStep, now: number): void {
     const at = this.holdOf[number]!;
     if (at < 0) return;
     const held = this.hold[at]!;
@@ -162,7 +171,7 @@ export class Script {
       case 'ramp':
         block[held.from] = block[held.slot]!;
         block[held.value] = step.value;
-        block[held.start] = tick;
+        block[held.start] = now;
         block[held.over] = step.over;
         block[held.mode] = step.over > 0 ? modes.ramping : modes.held;
         break;

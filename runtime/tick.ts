@@ -1,4 +1,5 @@
 import { hashBlock } from './block.js';
+import type { HandStage } from './hand.js';
 import type { Circuit } from './circuit/build.js';
 import { places } from './circuit/build.js';
 import type { InstrumentUpdate } from './instrument.js';
@@ -29,6 +30,7 @@ export interface TickParts {
   readonly block: Float64Array;
   readonly signals: Float64Array;
   readonly exchange: MessageStage;
+  readonly hands: HandStage;
   readonly script: Script;
   /** Driver and power stages; then what they drive: signal index to block slot. */
   readonly before: readonly InstrumentUpdate[];
@@ -44,7 +46,7 @@ export interface TickParts {
 }
 
 /**
- * One tick: take, script, plant, sense, watch, judge, publish, record. The same function runs live, at fast pace and
+ * One tick: take (messages, then hands), script, plant, sense, watch, judge, publish, record. The same function runs live, at fast pace and
  * again from a recording; only what stands behind `exchange` and `journal` differs. Allocates nothing.
  *
  * Ticks below 0 are the pre-roll: messages go both ways and sensors run, the plant stands in its rest state, nothing
@@ -64,15 +66,19 @@ export class Tick {
 
   run(tick: number): void {
     const { parts, meter, journal } = this;
-    const { block, signals, plant, exchange, script, before, after, drives, shown } = parts;
+    const { block, signals, plant, exchange, hands, script, before, after, drives, shown } = parts;
     meter.begin();
+    hands.lift(block);
     if (tick === 0) exchange.clearCounts(block);
     exchange.take(block, signals, tick);
+    hands.take(block, tick, journal);
     meter.end(0);
     script.run(block, signals, tick, journal);
     for (let i = 0; i < before.length; i += 1) before[i]!(block, signals, tick);
+    hands.applySignals(block, signals);
     for (let i = 0; i < drives.from.length; i += 1) block[drives.to[i]!] = signals[drives.from[i]!]!;
     script.apply(block, tick);
+    hands.apply(block);
     meter.end(1);
     if (tick >= 0) plant.step();
     else plant.observe();

@@ -20,8 +20,12 @@ export interface RecorderOptions {
   readonly onEvent?: (tick: number, code: number, subject: number, a: number, b: number, c: number) => void;
   /** Called for the last row of each look at the ring; `values` is a view that the next look overwrites. */
   readonly onRow?: (tick: number, values: Float32Array) => void;
+  /** Called for all rows, in batches: `count` ticks and their values row after row, in arrays that the next batch overwrites. */
+  readonly onRows?: (ticks: Float64Array, values: Float32Array, count: number) => void;
 }
 
+/** Rows in a batch for `onRows`. */
+const BATCH_ROWS = 64;
 const MOST_BACKLOG = 64 << 20;
 /** Inputs of a block, bytes, before it is closed early. */
 const MOST_INPUT_BYTES = 4 << 20;
@@ -49,6 +53,9 @@ export class Recorder {
   /** Column-major: values[signal * blockRows + row]. */
   private readonly values: Float32Array;
   private readonly latest: Float32Array;
+  private readonly batchTicks: Float64Array;
+  private readonly batch: Float32Array;
+  private batched = 0;
   private readonly inputColumns = new InputColumns();
   private readonly eventColumns = new EventColumns();
   private count = 0;
@@ -73,6 +80,9 @@ export class Recorder {
     this.hashes = new Int32Array(2 * this.blockRows);
     this.values = new Float32Array(this.blockRows * options.signals);
     this.latest = new Float32Array(options.signals);
+    const batchRows = options.onRows === undefined ? 0 : BATCH_ROWS;
+    this.batchTicks = new Float64Array(batchRows);
+    this.batch = new Float32Array(batchRows * options.signals);
   }
 
   /** Rows lost to a full ring. */
@@ -118,6 +128,7 @@ export class Recorder {
       this.options.onRow(ring.f64[rowAt >> 3]!, this.latest);
     }
     ring.release();
+    this.handBatch();
     if (Date.now() - this.lastFlush >= (this.options.flushEvery ?? 250)) this.flush();
     return bytes >= MOST_AT_ONCE;
   }
@@ -176,6 +187,8 @@ export class Recorder {
         break;
       }
       case RECORD.event: {
+        // in order: the rows before it first
+        this.handBatch();
         const first = (at + EVENT.values) >> 3;
         const code = ring.i32[(at + EVENT.code) >> 2]!;
         const subject = ring.i32[(at + EVENT.subject) >> 2]!;
@@ -197,8 +210,22 @@ export class Recorder {
     }
   }
 
+  private handBatch(): void {
+    if (this.batched === 0) return;
+    const count = this.batched;
+    this.batched = 0;
+    this.options.onRows?.(this.batchTicks, this.batch, count);
+  }
+
   private takeRow(at: number, tick: number): void {
     this.rows += 1;
+    if (this.batchTicks.length > 0) {
+      const row = (at + ROW.values) >> 2;
+      this.batchTicks[this.batched] = tick;
+      this.batch.set(this.ring.f32.subarray(row, row + this.signals), this.batched * this.signals);
+      this.batched += 1;
+      if (this.batched === this.batchTicks.length) this.handBatch();
+    }
     if (this.writer === undefined) return;
     const ring = this.ring;
     const row = this.count;

@@ -3,6 +3,7 @@ import { hashText } from '../../runtime/block.js';
 import { Clock } from '../../runtime/realtime/clock.js';
 import type { Pacer } from '../../runtime/realtime/pacer.js';
 import { PACER } from '../../runtime/realtime/pacer.js';
+import type { BoardWriter } from '../../runtime/status-board.js';
 import type { Barrier } from './controller-module.js';
 
 /** Words of the small shared memory between host and loop thread. */
@@ -30,6 +31,8 @@ export interface LoopOptions {
   readonly pacer?: Pacer;
   /** Live: indices of the signals that get lateness and step of the tick before, s. */
   readonly timingSignals?: { readonly lateness: number; readonly step: number };
+  /** What the host may look at between rows. */
+  readonly board?: BoardWriter;
   /** Largest values are kept of these signals. */
   readonly peaks: Int32Array;
   /** Called between the pre-roll and tick 0, and once after the last tick. */
@@ -53,19 +56,22 @@ export interface LoopEnd {
 /** Runs an assembled bench from its first tick. Nothing in the loop allocates. */
 export function runLoop(options: LoopOptions): LoopEnd {
   const { assembly, shared, pacer, barriers } = options;
-  const { tick: stage, signals, plant, firstTick } = assembly;
+  const { tick: stage, block, signals, plant, firstTick, hands } = assembly;
   const { control, progress } = shared;
   const clock = new Clock();
   const times = new Float64Array(4);
   const peaks = new Float64Array(options.peaks.length).fill(Number.NEGATIVE_INFINITY);
   const timing = options.timingSignals;
+  const board = options.board;
+  const delay = assembly.scriptDelaySlot;
   let tick = firstTick;
   let failure: string | undefined;
   const last = options.ticks;
   Atomics.store(control, CONTROL.phase, firstTick < 0 ? 2 : 3);
   try {
     pacer?.begin();
-    for (; tick < last; tick += 1) {
+    // a scenario that was held by hand ends later by as much
+    for (; tick < last + block[delay]!; tick += 1) {
       if (tick === 0) {
         options.onCount?.();
         pacer?.count();
@@ -91,12 +97,13 @@ export function runLoop(options: LoopOptions): LoopEnd {
         }
       }
       progress[PROGRESS.tick] = tick;
+      if (board && tick % board.every === 0) board.write(block, signals, tick);
       if (plant.solver.failed) {
         failure = `the plant has no finite state any more after tick ${tick}: see \`oilspring check\` for its fastest modes and accuracy`;
         tick += 1;
         break;
       }
-      if (control[CONTROL.stop] !== 0) {
+      if (control[CONTROL.stop] !== 0 || block[hands.endedSlot] !== 0) {
         tick += 1;
         break;
       }
@@ -107,12 +114,13 @@ export function runLoop(options: LoopOptions): LoopEnd {
   }
   clock.now(times, 2);
   clock.threadTime(times, 3);
+  board?.write(block, signals, tick - 1);
   options.onCount?.();
   Atomics.store(control, CONTROL.phase, failure === undefined ? 4 : 5);
   const counted = Math.max(0, tick);
   return {
     ticks: counted,
-    stopped: control[CONTROL.stop] !== 0,
+    stopped: control[CONTROL.stop] !== 0 || block[hands.endedSlot] !== 0,
     peaks,
     hash: hashText(stage.hash[0]!, stage.hash[1]!),
     ...(failure === undefined ? {} : { failure }),

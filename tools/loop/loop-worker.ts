@@ -7,19 +7,23 @@ import type { BenchSpec } from '../../configs/bench-spec.js';
 import { memoryFiles } from '../../configs/files.js';
 import { globTest } from '../../configs/signal-list.js';
 import { BuildError } from '../../runtime/contract.js';
+import { noHands } from '../../runtime/hand.js';
 import { noJournal } from '../../runtime/journal.js';
 import { CollectionMeter, collectNow } from '../../runtime/realtime/collection-meter.js';
 import { whyNotLive } from '../../runtime/realtime/ffi.js';
 import { Pacer } from '../../runtime/realtime/pacer.js';
 import { enterScheduling, type Scheduling } from '../../runtime/realtime/scheduling.js';
 import { TimingRecord } from '../../runtime/realtime/timing-record.js';
+import { HandRing } from '../../runtime/hand-ring.js';
 import { RingJournal } from '../../runtime/ring-journal.js';
 import { catalogue as library } from '../../configs/catalogue.js';
 import { attachLinks, attachModule } from './attach-links.js';
 import { loadController } from './controller-module.js';
 import { createLoopControl, runLoop } from './engine.js';
+import { rehearseHands } from './rehearse-hands.js';
 import type { LoopMessage, RunOrder } from './run-order.js';
 import { StageClock } from './stage-meter.js';
+import { statusBoard } from './status.js';
 
 /**
  * The loop thread: builds the bench, warms up, runs all ticks with its own sockets, and ends. It shares rings and a few
@@ -57,6 +61,8 @@ async function main(order: RunOrder): Promise<void> {
   assembly.exchange.setJournal(journal);
   assembly.tick.journal = journal;
   assembly.watch.journal = journal;
+  assembly.hands.source = order.hands === undefined ? noHands : new HandRing(order.hands);
+  const board = statusBoard(assembly);
   const meter = order.profile ? new StageClock() : undefined;
   if (meter) assembly.tick.meter = meter;
 
@@ -74,7 +80,9 @@ async function main(order: RunOrder): Promise<void> {
     }),
     paths: assembly.table.all.map((info) => info.path),
     events: { kinds: assembly.events.kinds, subjects: assembly.events.subjects },
-    links: spec.map.links.map((link) => link.name),
+    links: [...spec.map.links.map((link) => link.name), 'hands'],
+    hands: assembly.handTargets.map(({ path, unit }) => ({ path, unit })),
+    board: board.handle,
     block: Array.from({ length: assembly.layout.length }, (_, i) => assembly.layout.path(i)),
     scheduling: scheduling?.words ?? ['fast pace: no scheduling asked for'],
     policy: scheduling?.policy ?? 'SCHED_OTHER',
@@ -91,6 +99,7 @@ async function main(order: RunOrder): Promise<void> {
     ticks: order.ticks,
     shared: createLoopControl(order.control),
     barriers: links.barriers,
+    board: board.writer,
     ...(pacer ? { pacer } : {}),
     ...(pacer && lateness >= 0 ? { timingSignals: { lateness, step: assembly.table.find('timing.step') } } : {}),
     peaks: Int32Array.from(order.peaks, (path) => requireSignal(assembly, path)),
@@ -134,9 +143,9 @@ async function main(order: RunOrder): Promise<void> {
   });
 }
 
-/** Indices of the signals that any pattern names, in the order of the list; the watch's are always among them. */
+/** Indices of the signals that any pattern names, in the order of the list; those of watch, scenario and life always. */
 function choose(assembly: Assembly, patterns: readonly string[]): Int32Array {
-  const tests = [...patterns, 'watch.*', 'scenario.*'].map(globTest);
+  const tests = [...patterns, 'watch.*', 'scenario.*', 'life.*'].map(globTest);
   const found: number[] = [];
   assembly.table.all.forEach((info, i) => {
     if (tests.some((test) => test(info.path))) found.push(i);
@@ -156,18 +165,20 @@ async function warmUp(assembly: Assembly, spec: BenchSpec, order: RunOrder): Pro
   if (spec.map.links.length > 0 && spec.controller?.module !== undefined) {
     const factory = await loadController(order.folder, spec.controller.module);
     const barrier = attachModule(spec, assembly.exchange, factory, scriptEvery);
-    dryRun(assembly, (tick) => barrier.end(tick));
-  } else dryRun(assembly, () => {});
+    dryRun(assembly, order.hands !== undefined, (tick) => barrier.end(tick));
+  } else dryRun(assembly, order.hands !== undefined, () => {});
   for (const one of spec.map.links) assembly.exchange.attach(one.name, noTransport);
   assembly.reset();
 }
 
-function dryRun(assembly: Assembly, end: (tick: number) => void): void {
+function dryRun(assembly: Assembly, hands: boolean, end: (tick: number) => void): void {
   assembly.tick.journal = noJournal;
+  const rehearse = hands ? rehearseHands(assembly) : undefined;
   for (let round = 0; round < 2; round += 1) {
     assembly.reset();
     const last = assembly.firstTick + warmUpTicks.live / 2;
     for (let tick = assembly.firstTick; tick < last; tick += 1) {
+      rehearse?.(tick);
       assembly.tick.run(tick);
       end(tick);
     }

@@ -1,5 +1,6 @@
 import type { ScriptSpec } from '../../runtime/script.js';
 import type { RingHandle } from '../../runtime/ring.js';
+import type { BoardHandle } from '../../runtime/status-board.js';
 import type { WatchWarning } from '../../runtime/watch-log.js';
 
 /** What the host tells the loop thread to run: plain data, sent once. */
@@ -19,6 +20,8 @@ export interface RunOrder {
   readonly controller: { readonly kind: 'module'; readonly file: string } | { readonly kind: 'udp' } | { readonly kind: 'none' };
   readonly ring: RingHandle;
   readonly control: SharedArrayBuffer;
+  /** Where hands come from; undefined: none may act. */
+  readonly hands: RingHandle | undefined;
   readonly timing: SharedArrayBuffer;
   /** Patterns of the paths recorded in every row; `*` stands for any run of letters. */
   readonly patterns: readonly string[];
@@ -40,7 +43,11 @@ export interface RunReady {
     readonly kinds: readonly { readonly name: string; readonly severity: 'note' | 'warning' | 'alarm' | 'error'; readonly text: string }[];
     readonly subjects: readonly string[];
   };
+  /** Names of what inputs come from: the links, then `hands`. */
   readonly links: readonly string[];
+  /** What a hand may take hold of, in the order of the numbers by which hands name it. */
+  readonly hands: readonly { readonly path: string; readonly unit: string }[];
+  readonly board: BoardHandle;
   readonly block: readonly string[];
   /** What the loop thread got of scheduling, in words. */
   readonly scheduling: readonly string[];

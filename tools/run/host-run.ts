@@ -8,10 +8,12 @@ import { Recorder } from '../../runtime/recording/recorder.js';
 import { type RecordingHeader, FORMAT } from '../../runtime/recording/format.js';
 import { RecordingWriter } from '../../runtime/recording/writer.js';
 import { createRing } from '../../runtime/ring.js';
+import { BoardReader } from '../../runtime/status-board.js';
 import { packageRoot } from '../loop/controller-module.js';
 import { CONTROL, createLoopControl, phases, PROGRESS } from '../loop/engine.js';
 import type { LoopMessage, RunDone, RunFailed, RunOrder, RunReady } from '../loop/run-order.js';
 import { ControllerChild } from './controller-child.js';
+import { HandChannel } from './hand-channel.js';
 import type { RunPlan } from './plan.js';
 
 /** What the host sees of a run while it goes on. */
@@ -24,12 +26,20 @@ export interface RunView {
   readonly ready: RunReady | undefined;
   readonly timing: TimingRecord;
   readonly controller: ControllerChild | undefined;
+  /** What stands beside the rows: warnings, ages and counts; from `onReady` on. */
+  readonly board: BoardReader | undefined;
+  /** Only when hands may act. */
+  readonly hands: HandChannel | undefined;
 }
 
 export interface RunHooks {
   /** Everything is built; the recording is open. */
   onReady?(view: RunView): void;
-  /** A row as it arrived, and each event. */
+  /** Hands may act on the run. */
+  readonly control?: boolean;
+  /** All rows in batches, values row after row, in arrays that the next batch overwrites. */
+  onRows?(view: RunView, ticks: Float64Array, values: Float32Array, count: number): void;
+  /** The last row of each look at the ring, and each event. */
   onRow?(view: RunView, tick: number, values: Float32Array): void;
   onEvent?(view: RunView, event: { readonly tick: number; readonly code: number; readonly subject: number; readonly a: number; readonly b: number; readonly c: number }): void;
   /** From the host's timer, about every 200 ms. */
@@ -53,6 +63,8 @@ export interface RunOutcome {
   readonly controllerEnded: string | undefined;
   /** Why the run could not be finished without its controller; undefined when it could. */
   readonly controllerEndedEarly: string | undefined;
+  /** Hands that acted on the run, one sentence each. */
+  readonly hands: readonly string[];
   /** Completes the recording with the summary and closes it. */
   finish(summary: Readonly<Record<string, unknown>>): Promise<void>;
 }
@@ -65,6 +77,8 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
   const ring = createRing({ capacity: 16 << 20, whenFull: wish.pace === 'live' ? 'drop' : 'wait' });
   const shared = createLoopControl();
   const timing = new TimingRecord();
+  const hands = hooks.control ? new HandChannel(spec.step) : undefined;
+  let board: BoardReader | undefined;
   const order: RunOrder = {
     sources: plan.benchSources,
     script: plan.script,
@@ -75,6 +89,7 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     controller: plan.controller.kind === 'process' ? { kind: 'udp' } : plan.controller,
     ring,
     control: shared.memory,
+    hands: hands?.ring,
     timing: timing.memory,
     patterns: spec.record.patterns,
     peaks: spec.record.peaks,
@@ -94,6 +109,10 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     plan,
     timing,
     controller: child,
+    hands,
+    get board() {
+      return board;
+    },
     get phase() {
       return phases[Atomics.load(shared.control, CONTROL.phase)]!;
     },
@@ -123,6 +142,8 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
       worker.on('message', (message: LoopMessage) => {
         if (message.kind === 'ready') {
           ready = message;
+          board = new BoardReader(message.board);
+          hands?.know(message);
           try {
             if (plan.recording !== undefined) writer = new RecordingWriter(plan.recording, headerOf(plan, message));
           } catch (error) {
@@ -136,7 +157,13 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
               values = row;
               hooks.onRow?.(view, at, row);
             },
-            onEvent: (at, code, subject, a, b, c) => hooks.onEvent?.(view, { tick: at, code, subject, a, b, c }),
+            ...(hooks.onRows === undefined
+              ? {}
+              : { onRows: (ticks, rows, count) => hooks.onRows?.(view, ticks, rows, count) }),
+            onEvent: (at, code, subject, a, b, c) => {
+              hands?.answered(at, code, c);
+              hooks.onEvent?.(view, { tick: at, code, subject, a, b, c });
+            },
           });
           recorder.start();
           hooks.onReady?.(view);
@@ -171,6 +198,7 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     processor: (used.user + used.system) / 1e6,
     startUp,
     controllerEnded: child?.ended,
+    hands: hands?.sentences() ?? [],
     controllerEndedEarly: undefined,
     finish: async (summary) => {
       await recorder?.finish(summary);

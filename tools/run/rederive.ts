@@ -58,6 +58,9 @@ function derive(recording: Recording, onProgress: (share: number) => boolean): R
     };
     assembly.exchange.attach(link.name, transport);
   });
+  // what hands did came in behind the links
+  const handLink = spec.map.links.length;
+  if (header.links.length > handLink) assembly.hands.source = { poll: (into) => inputs.next(tick, handLink, into) };
   const remarks: string[] = [];
   if (header.software.node !== process.version) remarks.push(`recorded with Node ${header.software.node}, derived with ${process.version}: exp, tanh and sin may differ in the last bit`);
   if (header.software.version !== softwareVersion()) remarks.push(`recorded with oilspring ${header.software.version}, derived with ${softwareVersion()}`);
