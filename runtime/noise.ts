@@ -5,18 +5,19 @@
  * it Gaussian. Allocates nothing.
  */
 
-/** A uniform number in (0, 1), 53 bits. */
-export function uniform(seed: number, stream: number, tick: number): number {
+/** Writes a uniform number in (0, 1), 53 bits, into `out[at]`. */
+export function uniform(seed: number, stream: number, tick: number, out: Float64Array, at: number): void {
   const key = mix((seed | 0) ^ Math.imul((stream | 0) + 1, 0x9e3779b1));
   const word = mix(key ^ Math.imul((tick | 0) + 1, 0x85ebca6b));
   const high = mix((word + 0x243f6a88) | 0) >>> 5;
   const low = mix((word ^ key ^ 0x85a308d3) | 0) >>> 6;
-  return (high * 67108864 + low + 0.5) / 9007199254740992;
+  out[at] = (high * 67108864 + low + 0.5) / 9007199254740992;
 }
 
 /** Writes a number of the standard normal distribution (mean 0, variance 1) into `out[at]`. */
 export function gaussian(seed: number, stream: number, tick: number, out: Float64Array, at: number): void {
-  out[at] = inverseNormal(uniform(seed, stream, tick));
+  uniform(seed, stream, tick, out, at);
+  inverseNormal(out, at);
 }
 
 function mix(value: number): number {
@@ -29,8 +30,12 @@ function mix(value: number): number {
   return h;
 }
 
-/** The argument at which the standard normal distribution has the value p, 0 < p < 1. */
-export function inverseNormal(p: number): number {
+/**
+ * Replaces p = out[at], 0 < p < 1, by the argument at which the standard normal distribution has that value. Through the
+ * array, since a number passed to or from a function too large to be inlined is boxed.
+ */
+export function inverseNormal(out: Float64Array, at: number): void {
+  const p = out[at]!;
   const q = p - 0.5;
   if (Math.abs(q) <= 0.425) {
     const r = 0.180625 - q * q;
@@ -52,7 +57,8 @@ export function inverseNormal(p: number): number {
         42.31333070160091) *
         r +
       1;
-    return (q * above) / below;
+    out[at] = (q * above) / below;
+    return;
   }
   const tail = Math.sqrt(-Math.log(q < 0 ? p : 1 - p));
   const far = tail > 5;
@@ -96,5 +102,5 @@ export function inverseNormal(p: number): number {
         2.053191626637759) *
         r +
       1;
-  return q < 0 ? -above / below : above / below;
+  out[at] = q < 0 ? -above / below : above / below;
 }

@@ -10,7 +10,7 @@ import {
   type StateDeclaration,
 } from '../contract.js';
 import { type Elimination, eliminate } from './elimination.js';
-import { type Output, printFunction } from './emit.js';
+import { chunkSize, type Output, printFunction } from './emit.js';
 import { Graph, type NodeId } from './graph.js';
 import { type ReadContext, readFunction, type Table } from './read.js';
 
@@ -244,7 +244,13 @@ class ElementReader {
 /** Names of the ledger readings that each element gets besides its own. */
 const ledgerReadings = { energy: ['J', 'stored energy'], supply: ['W', 'power from outside'], loss: ['W', 'power dissipated'] } as const;
 
-export function buildCircuit(spec: CircuitSpec): Circuit {
+export interface BuildOptions {
+  /** Operations in one generated function, at most: for tests of the cutting. */
+  readonly chunkSize?: number;
+}
+
+export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Circuit {
+  const most = options.chunkSize ?? chunkSize;
   checkWiring(spec);
   const states: StateSlot[] = [];
   const memory: (Slot & { initial: number })[] = [];
@@ -374,16 +380,16 @@ export function buildCircuit(spec: CircuitSpec): Circuit {
   };
   const elimination = eliminate(states.length, rows, columns);
   const code = [
-    printFunction(graph, 'rates', ['y', 'u', 'm', 'd'], outputs.rates),
-    printFunction(graph, 'ratesAndJacobian', ['y', 'u', 'm', 'd', 'J'], outputs.ratesAndJacobian),
-    printFunction(graph, 'update', ['y', 'u', 'm', 'h', 'out'], outputs.update),
-    printFunction(graph, 'observe', ['y', 'u', 'm', 'out'], outputs.observe),
+    printFunction(graph, 'rates', ['y', 'u', 'm', 'd'], outputs.rates, most),
+    printFunction(graph, 'ratesAndJacobian', ['y', 'u', 'm', 'd', 'J'], outputs.ratesAndJacobian, most),
+    printFunction(graph, 'update', ['y', 'u', 'm', 'h', 'out'], outputs.update, most),
+    printFunction(graph, 'observe', ['y', 'u', 'm', 'out'], outputs.observe, most),
     elimination.factor,
     elimination.solve,
   ].join('\n\n');
   const functions = {
     ...(compile(code, ['rates', 'ratesAndJacobian', 'update', 'observe', 'factor', 'solve']) as unknown as CircuitFunctions),
-    audit: lazily(() => compile(printFunction(graph, 'audit', ['y', 'u', 'm', 'out'], outputs.audit), ['audit'])['audit'] as CircuitFunctions['audit']),
+    audit: lazily(() => compile(printFunction(graph, 'audit', ['y', 'u', 'm', 'out'], outputs.audit, most), ['audit'])['audit'] as CircuitFunctions['audit']),
   };
   train(functions, { states, memory, commands }, rows.length, elimination.size, outputs);
   return {

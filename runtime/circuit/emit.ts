@@ -64,8 +64,11 @@ export interface Chunk {
   readonly lines: string[];
 }
 
+/** Operations in one function, at most. */
+export const chunkSize = 1800;
+
 /** Cuts `outputs` into chunks of at most `most` operations. */
-export function printChunks(graph: Graph, outputs: readonly Output[], dialect: Dialect, most = 1800): { chunks: Chunk[]; spills: number } {
+export function printChunks(graph: Graph, outputs: readonly Output[], dialect: Dialect, most = chunkSize): { chunks: Chunk[]; spills: number } {
   const uses = new Map<NodeId, number>();
   const order: NodeId[] = [];
   const operandsOf = (id: NodeId) => graph.nodes[id]!.operands.map((operand) => throughLaw(graph, operand));
@@ -218,8 +221,8 @@ function isLeaf(graph: Graph, id: NodeId): boolean {
 }
 
 /** A JavaScript function over the arrays named in `parameters` that fills all outputs; `w` is its own spill array. */
-export function printFunction(graph: Graph, name: string, parameters: readonly string[], outputs: readonly Output[]): string {
-  const { chunks, spills } = printChunks(graph, outputs, javaScript);
+export function printFunction(graph: Graph, name: string, parameters: readonly string[], outputs: readonly Output[], most = chunkSize): string {
+  const { chunks, spills } = printChunks(graph, outputs, javaScript, most);
   const list = parameters.join(', ');
   if (chunks.length === 1) return `function ${name}(${list}) {\n${indent(chunks[0]!.lines)}\n}`;
   const parts = chunks.map((chunk, i) => `function ${name}${i}(${list}, w) {\n${indent(chunk.lines)}\n}`);
