@@ -4,11 +4,11 @@ import type { SignalTable } from './signals.js';
 import { laddersOf, type WatchInput, type WatchLadder } from './watch-ladders.js';
 
 /**
- * The prediction: the pressure against a lag of a quarter of the look-ahead time is its smoothed rate. Whatever is below
+ * The prediction: the pressure against a lag of an eighth of the look-ahead time is its smoothed rate. Whatever is below
  * half the gauge setting counts as half of it: a line that fills says nothing about its relief valve. It warns after the
  * predicted time has been within the look-ahead for a quarter of that, and keeps on up to 1.5 times of it.
  */
-const smoothing = 0.25;
+const smoothing = 0.125;
 const confirming = 0.25;
 export const keeping = 1.5;
 

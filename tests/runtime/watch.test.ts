@@ -255,6 +255,7 @@ describe('prediction', () => {
 
   it('is quiet on a fast jump that stops short, on ripple, and while a line fills', () => {
     const rig = new Rig([highLine], [bar(1)]);
+    rig.stay(bar(1), 300);
     rig.told.length = 0;
     rig.stay(bar(235), 500);
     rig.stay(bar(265), 500);
@@ -336,6 +337,17 @@ describe('a warning', () => {
     expect(rig.level).toBe('relief passing');
     rig.stay(bar(310), 150 + 200);
     expect(rig.level).toBe('nothing to say');
+  });
+
+  it('lasts within the hysteresis however long, and ends beyond it', () => {
+    const rig = new Rig([{ ...highLine, lookAhead: 0 }], [bar(300)]);
+    rig.stay(bar(330), 1);
+    expect(rig.level).toBe('near relief'); // at the setting is not beyond it
+    rig.stay(bar(330.1), 1);
+    rig.stay(bar(326.8), 5000);
+    expect(rig.level).toBe('relief passing');
+    rig.stay(bar(326.6), 200);
+    expect(rig.level).toBe('near relief');
   });
 
   it('stays open until acknowledged, and counts how often it came', () => {
