@@ -1,4 +1,5 @@
-import { existsSync } from 'node:fs';
+import { existsSync, mkdtempSync, rmSync } from 'node:fs';
+import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { type Browser, chromium, type Page } from 'playwright-core';
 import { build } from 'vite';
@@ -33,9 +34,10 @@ export function launch(): Promise<Browser> {
   });
 }
 
-/** Builds the page as it is shipped, into a folder of its own so that tests never touch what others serve. */
+/** Builds the page as it is shipped, into a folder of its own: test files run side by side. */
 export async function builtPage(): Promise<string> {
-  const outDir = join(root, 'dist', 'tests-page');
+  const outDir = mkdtempSync(join(tmpdir(), 'page-'));
+  process.once('exit', () => rmSync(outDir, { recursive: true, force: true }));
   await build({
     configFile: join(root, 'bridge', 'page', 'vite.config.mjs'),
     logLevel: 'error',

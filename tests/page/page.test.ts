@@ -43,6 +43,7 @@ describe.skipIf(reason !== undefined)('the page in a browser', () => {
     const context = await browser.newContext({ viewport: size, reducedMotion: 'no-preference' });
     const page = await context.newPage();
     pages.push(page);
+    page.setDefaultTimeout(90_000);
     wrong = complaints(page);
     await page.goto(`${server?.url}${fragment}`);
     await page.locator('.banner .words').waitFor();
@@ -85,7 +86,8 @@ describe.skipIf(reason !== undefined)('the page in a browser', () => {
     bench.spike(5321, 3e7);
     bench.advance(9999);
     await page.locator('.time', { hasText: '0:10.0' }).waitFor();
-    await page.waitForTimeout(500);
+    await page.locator('.plot[data-tick="9999"]').first().waitFor();
+    await page.evaluate('new Promise((resolve) => requestAnimationFrame(() => requestAnimationFrame(resolve)))');
     // columns of pixels of the plot in which the line's own colour stands in the uppermost fifth
     const columns = await page.evaluate<number[]>(`(() => {
       const canvas = document.querySelector('.plot canvas');

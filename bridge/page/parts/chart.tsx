@@ -9,6 +9,7 @@ import { Strip } from '../store/strip.js';
 import { clock, format, shownOf, withUnit } from '../store/units.js';
 import { beat, newest, subscribedSignals, usePaths } from '../store/values.js';
 import { ChartTable } from './chart-table.js';
+import { drawSoon, forgetDrawing } from './drawing.js';
 
 const dashes: (number[] | undefined)[] = [undefined, [7, 4], [2, 3], [12, 4, 2, 4], [4, 2], [1, 4]];
 const sync = uPlot.sync('time');
@@ -162,7 +163,6 @@ function draw(
   const shown = lines.map((line) => shownOf(line.info));
   let loading = false;
   let again = false;
-  let frame = 0;
 
   const axis = {
     stroke: colour('--quiet'),
@@ -284,13 +284,12 @@ function draw(
         }
       });
   }
-  function show(): void {
-    if (frame !== 0) return;
-    frame = requestAnimationFrame(() => {
-      frame = 0;
-      plot.setData(strip.points(step, (i, value) => value * shown[i].factor + shown[i].offset) as uPlot.AlignedData);
-    });
-  }
+  const picture = (): void => {
+    // the newest tick that is drawn, for measurements and tests
+    place.dataset['tick'] = String(strip.lastTick + strip.binTicks - 1);
+    plot.setData(strip.points(step, (i, value) => value * shown[i].factor + shown[i].offset) as uPlot.AlignedData);
+  };
+  const show = (): void => drawSoon(picture);
   let lastShown = 0;
   const offFrame = onFrame((message) => {
     const view = chartView.peek();
@@ -318,7 +317,7 @@ function draw(
     offView();
     offCursor();
     resize.disconnect();
-    cancelAnimationFrame(frame);
+    forgetDrawing(picture);
     plot.destroy();
   };
 }

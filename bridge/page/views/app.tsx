@@ -1,5 +1,6 @@
 import { signal } from '@preact/signals';
 import { connected, stale, subject } from '../store/connection.js';
+import { usePaths } from '../store/values.js';
 import { Banner, Caution, Stale, TopBar } from './banner.js';
 import { Charts } from './charts.js';
 import { Circuit } from './circuit.js';
@@ -37,6 +38,8 @@ const isWide = signal(wide.matches);
 wide.addEventListener('change', () => (isWide.value = wide.matches));
 
 export function App() {
+  // peaks and predictions go on whatever is shown
+  usePaths((subject.value?.bench.pressures ?? []).flatMap((pressure) => [pressure.path, pressure.timeToRelief]));
   if (subject.value === undefined) {
     return (
       <main class="waiting">
