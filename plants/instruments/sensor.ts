@@ -88,7 +88,8 @@ function build({
     if (noise > 0) gaussian(seed, identity, tick, block, draw);
     const raw = smooth * gain + zeroError + block[drift]! + noise * block[draw]!;
     const inside = raw >= least && raw <= most;
-    const clipped = inside ? raw : raw < least ? least : most;
+    // not a choice between `raw` and a captured constant: V8 boxes the outcome of one
+    const clipped = Math.min(Math.max(raw, least), most);
     const said = resolution > 0 ? least + Math.round((clipped - least) / resolution) * resolution : clipped;
     const isLost = block[lost]! >= 0.5;
     if (isLost) block[held] = least;
