@@ -24,9 +24,10 @@ function digest(paths, pattern) {
   return hash.digest('hex');
 }
 
-function step(name, stamp, key, command, args) {
+/** `made`: what the step makes; done again when it is gone. */
+function step(name, stamp, key, command, args, made = 'package.json') {
   const file = join('node_modules', '.oilspring', stamp);
-  if (existsSync(file) && readFileSync(file, 'utf8') === key) return;
+  if (existsSync(made) && existsSync(file) && readFileSync(file, 'utf8') === key) return;
   process.stderr.write(`oilspring: ${name} ...\n`);
   const began = Date.now();
   const result = spawnSync(command, args, { stdio: ['ignore', 'pipe', 'pipe'], encoding: 'utf8', shell: process.platform === 'win32' });
@@ -50,11 +51,14 @@ if (!existsSync(join('node_modules', '.oilspring', 'installed')) || readFileSync
   step('installing packages', 'installed', packages, 'npm', ['ci', '--no-fund', '--no-audit', '--loglevel=error']);
 }
 const sources = ['runtime', 'plants', 'bridge', 'configs', 'tools', 'tsconfig.json'];
-step('building', 'built', digest(sources, /\.(ts|tsx|json|css|html|mjs)$/) + packages + existsSync('dist'), process.execPath, [
+step('building', 'built', digest(sources, /\.(ts|tsx|json|css|html|mjs)$/) + packages, process.execPath, [
   join('node_modules', 'typescript', 'bin', 'tsc'), '-p', 'tools/tsconfig.build.json',
-]);
-if (existsSync(join('bridge', 'page', 'vite.config.ts'))) {
-  step('building the live page', 'page', digest(['bridge'], /\.(ts|tsx|json|css|html|svg)$/) + packages + existsSync(join('dist', 'bridge', 'page')), process.execPath, [
-    join('node_modules', 'vite', 'bin', 'vite.js'), 'build', 'bridge/page', '--logLevel', 'warn',
-  ]);
+], join('dist', 'tools', 'start.js'));
+const vite = join('node_modules', 'vite', 'bin', 'vite.js');
+// without it (an installation without development packages) runs go on without the live page, and say so
+if (existsSync(vite)) {
+  step('building the live page', 'page', digest(['bridge/page', 'bridge/live'], /\.(ts|tsx|json|css|html|svg|mjs)$/) + packages, process.execPath, [
+    vite, 'build', '--config', 'bridge/page/vite.config.mjs', '--logLevel', 'warn',
+  ], join('dist', 'bridge', 'page', 'index.html'));
 }
+
