@@ -10,7 +10,8 @@ import { emptyScript, Script, type ScriptSpec } from '../runtime/script.js';
 import { SignalTable } from '../runtime/signals.js';
 import { Watch } from '../runtime/watch.js';
 import type { WatchWarning } from '../runtime/watch-log.js';
-import { LedgerStage, type Stage, Tick, throughputs } from '../runtime/tick.js';
+import { JudgeStage } from '../runtime/judge/stage.js';
+import { LedgerStage, Tick, throughputs } from '../runtime/tick.js';
 import type { BenchSpec, InstrumentSpec } from './bench-spec.js';
 
 /** A bench put together: everything that one thread needs to run ticks. */
@@ -35,6 +36,8 @@ export interface Assembly {
   /** Warnings so far, oldest first. Not for the tick. */
   warnings(): readonly WatchWarning[];
   readonly watch: Watch;
+  /** All requirements, those of the bench first. */
+  readonly judge: JudgeStage;
   readonly hands: HandStage;
   /** What a hand may take hold of, in the order of the numbers by which hands name it. */
   readonly handTargets: readonly HandTarget[];
@@ -51,7 +54,6 @@ export interface AssemblyOptions {
   readonly circuit?: Circuit;
 }
 
-const nothingToJudge: Stage = { run() {} };
 
 /** Puts a checked bench together. Throws BuildError for what only the built circuit shows. */
 export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
@@ -116,6 +118,13 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     link: spec.map.links.length,
   });
   commandAt.set('watch.acknowledge', watch.acknowledgeSlot);
+  const judge = new JudgeStage({
+    requirements: [...spec.requirements, ...script.requirements],
+    signals: table,
+    layout,
+    events,
+    step: spec.step,
+  });
 
   const block = layout.create();
   const signals = new Float64Array(table.length);
@@ -134,13 +143,14 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     after: stageOf(spec, instruments, 'after'),
     ledger,
     watch,
-    judge: nothingToJudge,
+    judge,
     shown: { slots: Int32Array.from(shown.slots), signals: Int32Array.from(shown.signals) },
     snapshotEvery: Math.max(1, Math.round(1 / spec.step)),
   });
   const reset = () => {
     block.set(initial);
     signals.fill(0);
+    judge.reset();
     plant.reset();
     plant.solver.clear();
     signals.set(plant.observed, 0);
@@ -164,6 +174,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     target: targets.find,
     reset,
     watch,
+    judge,
     hands,
     handTargets,
     scriptDelaySlot: scriptStage.delaySlot,

@@ -10,6 +10,7 @@ import type {
   WatchLevel,
 } from '../runtime/contract.js';
 import type { InstrumentKind } from '../runtime/instrument.js';
+import type { Requirement } from '../runtime/judge/formula.js';
 import type { SourceText } from './source.js';
 
 /** What a bench file may draw from: everything in it is passed in, so that tests bring their own. */
@@ -34,6 +35,8 @@ export interface BenchSpec {
   readonly instruments: readonly InstrumentSpec[];
   readonly map: MessageMap;
   readonly watched: readonly WatchedSignal[];
+  /** Asked of every run on this bench. */
+  readonly requirements: readonly Requirement[];
   readonly life: LifeSpec;
   /** Scenario that `check` drives, path relative to the bench's folder. */
   readonly duty: string | undefined;
@@ -113,6 +116,8 @@ export interface LifeSpec {
   readonly frames: { readonly warmUp: Frames; readonly preRoll: Frames; readonly afterwards: Frames };
   /** Ticks that the bench keeps running after key off. */
   readonly afterRun: number;
+  /** A hand bench: hands in a run do not spoil it. */
+  readonly hands: boolean;
 }
 export type Frames = 'rest' | 'silence';
 

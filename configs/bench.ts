@@ -5,6 +5,7 @@ import { diskFiles, type Files } from './files.js';
 import { Drivers, declareInstruments, readInstruments } from './instruments.js';
 import { declareMessages, finishMessages } from './messages.js';
 import { Problems } from './problems.js';
+import { lookup, readRequirements } from './requirements.js';
 import { readAmbient, readBudgets, readController, readLife, readPath, readRecord } from './running.js';
 import { Section } from './section.js';
 import { SignalList } from './signal-list.js';
@@ -67,6 +68,11 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
   remarkReliefSettings(top, elements, sides);
   elements = fillReliefSettings(elements, sides);
   const watched = readWatched(top, elements, signals, sides, ambient);
+  signals.addMeters(elements);
+  signals.addWatch(watched);
+  const asked = top.section('requirements');
+  // Where elements could not be read, what requirements say of them cannot be judged.
+  const requirements = asked && signals.unread.size === 0 ? readRequirements(asked, { signals: lookup(signals.all), step }) : [];
   const life = readLife(top, step);
   const duty = readPath(top, 'duty', root, file, 'scenarios/round.yaml');
   const controller = readController(top, step, root, file);
@@ -89,6 +95,7 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
     instruments,
     map,
     watched,
+    requirements,
     life,
     duty,
     controller,

@@ -7,6 +7,7 @@ import { Section } from './section.js';
 import { parseText, type Scalar } from './source.js';
 
 const outcomes = ['undecided', 'pass', 'fail'] as const;
+const exercises = ['required', 'optional'] as const;
 
 /**
  * Reads the requirements of a bench or scenario, in the order of the file:
@@ -20,6 +21,7 @@ const outcomes = ['undecided', 'pass', 'fail'] as const;
  *       source: braking specification 3.1
  *       link: https://example.org/spec#3.1
  *       openAtEnd: fail               # when the run ended before it was decided: undecided, pass, fail
+ *       exercise: optional            # whether a run may pass in which its trigger never came: required, optional
  *
  * Adds what is wrong to the section's problems, and leaves out what could not be read.
  */
@@ -59,6 +61,7 @@ function readRequirement(id: string, section: Section, context: RequirementConte
   const source = section.text('source');
   const link = section.text('link');
   const openAtEnd = section.choice('openAtEnd', outcomes);
+  const exercise = section.choice('exercise', exercises);
   section.finish();
   if (!holds) return undefined;
   const tree = section.tree.entries.get('holds')!.value as Scalar;
@@ -74,6 +77,7 @@ function readRequirement(id: string, section: Section, context: RequirementConte
     ...(source === undefined ? {} : { source }),
     ...(link === undefined ? {} : { link }),
     ...(openAtEnd === undefined ? {} : { openAtEnd }),
+    ...(exercise === undefined ? {} : { exercise }),
   };
 }
 

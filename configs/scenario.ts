@@ -8,6 +8,7 @@ import { Problems } from './problems.js';
 import { type Expected, parseQuantity, QuantityError, shown } from './quantity.js';
 import { type Placed, Section, suggestion } from './section.js';
 import { SignalList } from './signal-list.js';
+import { lookup, readRequirements } from './requirements.js';
 import { readSource, type SourceText, type Tree } from './source.js';
 import { checkedTicks, toTicks } from './ticks.js';
 import { formatNumber, formatQuantity, tradeUnit } from './units.js';
@@ -70,13 +71,15 @@ class ScenarioReader {
     const grade = this.grade();
     const traces = [...(grade ? [grade] : []), ...this.traces(grade?.target)];
     const steps = this.steps();
+    const asked = top.section('requirements');
+    const requirements = asked ? readRequirements(asked, { signals: lookup(bench.signals), step: bench.step }) : [];
     top.finish();
     const ends = [drive, ...traces.map((trace) => trace.points)].map((points) => points.at(-1)?.[0] ?? 0);
     const ticks = given ?? Math.max(0, ...ends, ...steps.map((step) => step.at));
     // Where something else is wrong, the end may be missing only because of that.
     if (ticks === 0 && top.problems.count === 0)
       top.fail('lasts', 'missing', 'add lasts: 60 s, or a drive', {}, top.where);
-    return { name, about, ticks, drive, preview, traces, steps };
+    return { name, about, ticks, drive, preview, traces, steps, requirements };
   }
 
   private lasts(): number | undefined {

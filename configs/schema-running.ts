@@ -1,3 +1,4 @@
+import { severities } from '../runtime/judge/formula.js';
 import { flag, mapping, named, quantitySchema, type Schema, text, texts } from './schema-parts.js';
 
 /** Schemas of the parts of a bench file that no kind declares: links, messages, watch, life and the like. */
@@ -62,14 +63,42 @@ export function runningSchemas(): Record<string, Schema> {
         preRoll: time,
         bootWindow: time,
         afterRun: time,
+        hands: { enum: ['allowed', 'not allowed'], description: 'allowed: hands in a run do not spoil it' },
         frames: mapping({ warmUp: frames, preRoll: frames, afterwards: frames }),
       },
       [],
       'the life of the bench',
     ),
+    requirements: requirementsSchema(),
     duty: { ...text, description: 'scenario that check drives' },
     controller: mapping({ module: text, command: text, period: time, patience: time }, [], 'the controller to start'),
     record: mapping({ signals: texts, peaks: texts, every: time }, [], 'what is recorded'),
+  };
+}
+
+/** The section `requirements` of bench and scenario files. */
+export function requirementsSchema(): Schema {
+  return {
+    type: 'object',
+    description: 'what runs are judged by, by id',
+    propertyNames: { pattern: '^[A-Za-z0-9][A-Za-z0-9 ._-]{0,60}$' },
+    additionalProperties: {
+      anyOf: [
+        text,
+        mapping(
+          {
+            holds: { ...text, description: 'such as: always highLine.pressure < 345 bar(g)' },
+            text: { ...text, description: 'for people' },
+            severity: { enum: [...severities] },
+            source: text,
+            link: text,
+            openAtEnd: { enum: ['undecided', 'pass', 'fail'] },
+            exercise: { enum: ['required', 'optional'], description: 'optional: a run may pass in which its trigger never came' },
+          },
+          ['holds'],
+        ),
+      ],
+    },
   };
 }
 

@@ -1,6 +1,7 @@
 import { countsOfLink, countsOfMessage } from '../bridge/link-counts.js';
 import type { MessageMap } from '../bridge/message-map.js';
 import type { PortKinds, SignalGroup, SignalInfo } from '../runtime/contract.js';
+import type { WatchedSignal } from './bench-spec.js';
 import type { ReadElement } from './elements.js';
 import { shown } from './quantity.js';
 import { type Placed, type Section, suggestion } from './section.js';
@@ -46,6 +47,28 @@ export class SignalList {
     add('timing.lateness', 's', 'start of this tick after its deadline (live)', 'timing');
     add('timing.step', 's', 'length of the tick before (live)', 'timing');
     add('ledger.turnover', 'J', 'largest energy that passed through any one branch', 'ledger');
+  }
+
+  /** Energy that machines took up while braking and gave back. */
+  addMeters(elements: readonly ReadElement[]): void {
+    for (const { name, kind } of elements) {
+      if (kind.kind !== 'pump-motor') continue;
+      this.add({ path: `ledger.${name}.recovered`, unit: 'J', about: `energy of ${name} taken from its shaft while pumping`, group: 'ledger' });
+      this.add({ path: `ledger.${name}.returned`, unit: 'J', about: `energy of ${name} given to its shaft while motoring`, group: 'ledger' });
+    }
+  }
+
+  /** What the watch tells of itself. */
+  addWatch(watched: readonly WatchedSignal[]): void {
+    const add = (path: string, unit: string, about: string) => this.add({ path: `watch.${path}`, unit, about, group: 'run' });
+    add('worst', '1', 'the worst level that is present');
+    add('count', '1', 'warnings that are open');
+    add('unacknowledged', '1', 'warnings that nobody acknowledged');
+    for (const { path, unit, relief } of watched) {
+      add(`${path}.level`, '1', 'level that is present');
+      add(`${path}.peak`, unit, 'peak of the warning');
+      if (relief) add(`${path}.timeToRelief`, 's', 'predicted time to the relief setting');
+    }
   }
 
   /** The counts that links and messages keep of themselves. */

@@ -1,3 +1,4 @@
+import type { Severity } from './judge/formula.js';
 import type { RequirementVerdict } from './judge/result.js';
 import type { TimingSummary } from './realtime/timing-record.js';
 import type { Invalidity, RunVerdict } from './verdict.js';
@@ -23,6 +24,8 @@ export interface RunSummary {
   /** Why the run is not valid. */
   readonly reasons: readonly Invalidity[];
   readonly ending: 'complete' | 'stopped' | 'broken';
+  /** Hands that acted on the run, one sentence each; also where the bench allows them. */
+  readonly hands?: readonly string[];
   readonly requirements: readonly RunRequirement[];
 
   /** Simulated time, and what was planned, s. */
@@ -75,12 +78,19 @@ export interface RunTiming extends TimingSummary {
 export interface RunRequirement {
   readonly id: string;
   readonly text: string;
+  readonly severity: Severity;
   readonly verdict: RequirementVerdict;
   /** null where nothing was asked of the run. */
   readonly margin: number | null;
   readonly unit: string;
   /** Time that decided it, s; null where none did. */
   readonly at: number | null;
+  /** How often its trigger came; null without one. */
+  readonly triggers: number | null;
+  /** The run ended before it was decided. */
+  readonly open: boolean;
+  /** The run may pass though it was not exercised. */
+  readonly optional: boolean;
 }
 
 export interface RunLedger {

@@ -1,4 +1,5 @@
 import type { BlockLayout } from './block.js';
+import type { Requirement } from './judge/formula.js';
 import type { EventCatalogue, Journal } from './journal.js';
 import type { SignalTable } from './signals.js';
 
@@ -16,6 +17,8 @@ export interface ScriptSpec {
   readonly traces: readonly ScriptTrace[];
   /** In order of time. */
   readonly steps: readonly ScriptStep[];
+  /** Asked beside those of the bench. */
+  readonly requirements: readonly Requirement[];
 }
 export interface ScriptTrace {
   readonly target: string;
@@ -33,7 +36,7 @@ export interface ScriptStep {
   readonly over: number;
 }
 
-export const emptyScript: ScriptSpec = { name: 'no scenario', about: '', ticks: 0, drive: [], preview: 0, traces: [], steps: [] };
+export const emptyScript: ScriptSpec = { name: 'no scenario', about: '', ticks: 0, drive: [], preview: 0, traces: [], steps: [], requirements: [] };
 
 /** What a step does to its target until another step or `release` comes. */
 const modes = { free: 0, held: 1, ramping: 2 } as const;

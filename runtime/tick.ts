@@ -17,7 +17,7 @@ export const noMeter: StageMeter = { begin() {}, end() {} };
 
 /** Anything that runs in a stage of its own on block and signals. */
 export interface Stage {
-  run(block: Float64Array, signals: Float64Array, tick: number): void;
+  run(block: Float64Array, signals: Float64Array, tick: number, journal: Journal): void;
 }
 export interface MessageStage {
   take(block: Float64Array, signals: Float64Array, tick: number): void;
@@ -89,9 +89,9 @@ export class Tick {
     meter.end(3);
     if (tick >= 0) {
       parts.ledger.run(block, signals, tick);
-      parts.watch.run(block, signals, tick);
+      parts.watch.run(block, signals, tick, journal);
       meter.end(4);
-      parts.judge.run(block, signals, tick);
+      parts.judge.run(block, signals, tick, journal);
     } else meter.end(4);
     meter.end(5);
     exchange.publish(block, signals, tick);

@@ -61,7 +61,10 @@ export interface RunJudgement {
   readonly counts: {
     readonly pass: number;
     readonly fail: number;
+    /** Those that had to be exercised. */
     readonly notExercised: number;
+    /** Not exercised, and the run need not. */
+    readonly atRest: number;
     readonly undecided: number;
   };
   /** One sentence. */
@@ -71,8 +74,8 @@ export interface RunJudgement {
 /**
  * The verdict of a run. What spoils the evidence goes before everything: such a run is `not valid`, and its failures are
  * reported as what they are, not as failures of the controller. Then one failed requirement makes it `fail`; one that was not
- * exercised or not decided makes it `not exercised`, never `pass`. Observations decide nothing. Without requirements a valid
- * run passes.
+ * exercised or not decided makes it `not exercised`, never `pass`, unless it says that a run need not exercise it.
+ * Observations decide nothing. Without requirements a valid run passes.
  *
  * Exit codes: 5 when the run broke, 3 not valid, 1 fail, 0 otherwise. `strict` counts not exercised as 1, for release gates.
  */
@@ -85,10 +88,14 @@ export function judgeRun(
   const deciding = results.filter((result) => result.requirement.severity !== 'observation');
   const count = (verdict: RequirementResult['verdict']) =>
     deciding.filter((result) => result.verdict === verdict).length;
+  const atRest = deciding.filter(
+    ({ verdict, requirement }) => verdict === 'not exercised' && requirement.exercise === 'optional',
+  ).length;
   const counts = {
     pass: count('pass'),
     fail: count('fail'),
-    notExercised: count('not exercised'),
+    notExercised: count('not exercised') - atRest,
+    atRest,
     undecided: count('undecided'),
   };
   const valid = reasons.length === 0;
@@ -164,6 +171,9 @@ function summary(
       counts.undecided > 0 ? `${counts.undecided} still open when the run ended` : '',
     ].filter((part) => part !== '');
     return `Of ${total} requirements none failed, but ${parts.join(' and ')}.`;
+  }
+  if (counts.atRest > 0) {
+    return `${counts.pass} of ${total} requirements hold; ${counts.atRest} ${counts.atRest === 1 ? 'was' : 'were'} not exercised, which ${counts.atRest === 1 ? 'it' : 'they'} need not be in every run.`;
   }
   return total === 1 ? 'The requirement holds.' : `All ${total} requirements hold.`;
 }

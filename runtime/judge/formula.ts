@@ -87,6 +87,11 @@ export interface Requirement {
   readonly link?: string;
   /** What it counts as when the run ended before it was decided. Default: undecided. */
   readonly openAtEnd?: 'undecided' | 'pass' | 'fail';
+  /**
+   * `optional`: a run in which its trigger never came may pass all the same. It is shown as not exercised, and a suite
+   * in which no run exercised it does not pass. Default: required.
+   */
+  readonly exercise?: 'required' | 'optional';
 }
 
 /** Whether a margin means true: above zero, or a zero with a plus. */

@@ -82,7 +82,13 @@ export class Judge {
   }
 
   /** Judges the signals of `tick`; ticks come one after another from 0. */
-  tick(tick: number, signals: Float64Array, block: Float64Array, windows: Float64Array): void {
+  tick(
+    tick: number,
+    signals: Float64Array,
+    block: Float64Array,
+    windows: Float64Array,
+    journal: Journal = this.journal,
+  ): void {
     const { program, outermost } = this.compiled;
     if (tick === 0) outermost.reset();
     program.run(tick, signals, block, windows, 0, tick);
@@ -102,7 +108,7 @@ export class Judge {
       else if (holds(outermost.value[root]!) && !this.awaits(i, tick, block)) verdict = 1;
       block[at + 3] = verdict;
       if (verdict === 2 && before !== 2) {
-        this.journal.event(tick, this.failed, this.subjects[i]!, outermost.value[root]!, outermost.at[root]!, 0);
+        journal.event(tick, this.failed, this.subjects[i]!, outermost.value[root]!, outermost.at[root]!, 0);
       }
     }
   }

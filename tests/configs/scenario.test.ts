@@ -85,6 +85,7 @@ describe('a scenario file', () => {
         { at: 20_000, name: 'release isolation.open', action: 'release', target: 'isolation.open', value: 0, over: 0 },
         { at: 50_000, name: 'set life.key to off', action: 'set', target: 'life.key', value: 0, over: 0 },
       ],
+      requirements: [],
     });
     expect(read(round).sources).toEqual([{ name: 'round.yaml', text: round }]);
   });

@@ -81,4 +81,15 @@ describe('verdict of a run', () => {
     ];
     expect(judgeRun({ ...sound, timing }, []).verdict).toBe('pass');
   });
+
+  it('passes with a requirement at rest that need not be exercised in every run, and says so', () => {
+    const rest = result('not exercised');
+    const optional = { ...rest, requirement: { ...rest.requirement, exercise: 'optional' as const } };
+    const judged = judgeRun(sound, [result('pass'), optional], { strict: true });
+    expect(judged.verdict).toBe('pass');
+    expect(judged.exitCode).toBe(0);
+    expect(judged.counts).toMatchObject({ pass: 1, notExercised: 0, atRest: 1 });
+    expect(judged.summary).toContain('1 was not exercised');
+    expect(judgeRun(sound, [rest, optional]).verdict).toBe('not exercised');
+  });
 });

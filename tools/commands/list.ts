@@ -1,6 +1,7 @@
 import { Command } from 'commander';
 import { assemble } from '../../configs/assemble.js';
 import { catalogue } from '../../configs/catalogue.js';
+import { formulaText } from '../../configs/requirement-text.js';
 import { readScenario } from '../../configs/scenario.js';
 import type { ElementKind } from '../../runtime/contract.js';
 import path from 'node:path';
@@ -16,7 +17,8 @@ export function listCommand(): Command {
 Examples:
   oilspring list elements
   oilspring list elements pump-motor
-  oilspring list signals configs/harbour-truck/bench.yaml --json`,
+  oilspring list signals configs/harbour-truck/bench.yaml --json
+  oilspring list requirements configs/harbour-truck/bench.yaml`,
   );
   command
     .command('elements [KIND]')
@@ -41,6 +43,24 @@ Examples:
       const { all } = assemble(spec, { seed: spec.seed, ...(script ? { script } : {}) }).table;
       if (options.json) process.stdout.write(`${JSON.stringify(all, undefined, 2)}\n`);
       else process.stdout.write(`${table(all.map((info) => [info.path, info.unit, info.group, info.about]))}\n`);
+    });
+  command
+    .command('requirements BENCH')
+    .description('what runs on a bench are judged by, with what its scenario asks besides')
+    .option('--scenario <FILE>', "scenario; default: the bench's duty")
+    .option('--json', 'as JSON')
+    .exitOverride()
+    .action((bench: string, options: { scenario?: string; json?: boolean }) => {
+      const { spec, folder } = readBenchFile(bench);
+      const file = options.scenario ?? (spec.duty === undefined ? undefined : path.join(folder, spec.duty));
+      const script = file === undefined ? undefined : readScenario(file, spec).script;
+      // Compiled, so that what is listed can be judged.
+      const all = assemble(spec, { seed: spec.seed, ...(script ? { script } : {}) }).judge.judge.requirements;
+      const own = new Set(spec.requirements);
+      const rows = all.map((one) => ({ ...one, formula: formulaText(one.formula, spec.step), from: own.has(one) ? 'bench' : (script?.name ?? '') }));
+      if (options.json) process.stdout.write(`${JSON.stringify(rows, undefined, 2)}\n`);
+      else if (rows.length === 0) process.stdout.write('nothing is required of a run on this bench\n');
+      else process.stdout.write(`${rows.map((one) => `${one.id}  ${one.severity}${one.exercise === 'optional' ? ', need not be exercised in every run' : ''}, from ${one.from}\n    ${one.text}\n    ${one.formula}${one.source === undefined ? '' : `\n    source: ${one.source}`}\n`).join('')}`);
     });
   return command;
 }

@@ -9,6 +9,7 @@ import { globTest } from '../../configs/signal-list.js';
 import { BuildError } from '../../runtime/contract.js';
 import { noHands } from '../../runtime/hand.js';
 import { noJournal } from '../../runtime/journal.js';
+import { eachSignal } from '../../runtime/judge/formula.js';
 import { CollectionMeter, collectNow } from '../../runtime/realtime/collection-meter.js';
 import { whyNotLive } from '../../runtime/realtime/ffi.js';
 import { Pacer } from '../../runtime/realtime/pacer.js';
@@ -140,15 +141,18 @@ async function main(order: RunOrder): Promise<void> {
     stages: meter?.summary() ?? [],
     last: assembly.signals.slice(),
     warnings: assembly.warnings(),
+    requirements: assembly.judge.results(end.ticks, assembly.block),
   });
 }
 
-/** Indices of the signals that any pattern names, in the order of the list; those of watch, scenario and life always. */
+/** Indices of the signals that any pattern or requirement names, in the order of the list; those of watch, scenario, judge and life always. */
 function choose(assembly: Assembly, patterns: readonly string[]): Int32Array {
-  const tests = [...patterns, 'watch.*', 'scenario.*', 'life.*'].map(globTest);
+  const tests = [...patterns, 'watch.*', 'scenario.*', 'judge.*', 'life.*'].map(globTest);
+  const asked = new Set<string>();
+  for (const { formula } of assembly.judge.judge.requirements) eachSignal(formula, (path) => asked.add(path));
   const found: number[] = [];
   assembly.table.all.forEach((info, i) => {
-    if (tests.some((test) => test(info.path))) found.push(i);
+    if (asked.has(info.path) || tests.some((test) => test(info.path))) found.push(i);
   });
   return Int32Array.from(found);
 }

@@ -1,3 +1,4 @@
+import type { RequirementResult } from '../../runtime/judge/result.js';
 import type { ScriptSpec } from '../../runtime/script.js';
 import type { RingHandle } from '../../runtime/ring.js';
 import type { BoardHandle } from '../../runtime/status-board.js';
@@ -78,6 +79,7 @@ export interface RunDone {
   /** Last values of all signals. */
   readonly last: Float64Array;
   readonly warnings: readonly WatchWarning[];
+  readonly requirements: readonly RequirementResult[];
 }
 
 export interface RunFailed {

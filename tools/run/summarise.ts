@@ -1,4 +1,5 @@
-import type { RunSummary } from '../../runtime/run-summary.js';
+import type { RequirementResult } from '../../runtime/judge/result.js';
+import type { RunRequirement, RunSummary } from '../../runtime/run-summary.js';
 import { judgeRun, type Measured } from '../../runtime/verdict.js';
 import { pressureSettings } from '../../runtime/watch-settings.js';
 import { type RunOutcome, softwareVersion } from './host-run.js';
@@ -40,10 +41,10 @@ export function summarise(outcome: RunOutcome): RunSummary {
           ]
         : [],
       rowsLost: (done?.dropped ?? 0) + (done?.overflows ?? 0),
-      hands: [],
+      hands: spec.life.hands ? [] : outcome.hands,
       ...(outcome.recordingFailure === undefined ? {} : { otherwise: [outcome.recordingFailure] }),
     },
-    [],
+    done?.requirements ?? [],
   );
   const energies: { key: string; about: string; value: number }[] = [];
   for (const [path, energy] of last) {
@@ -66,7 +67,8 @@ export function summarise(outcome: RunOutcome): RunSummary {
     verdictText: judgement.summary,
     reasons: judgement.reasons,
     ending: broken !== undefined && broken !== null ? 'broken' : done?.stopped ? 'stopped' : 'complete',
-    requirements: [],
+    ...(outcome.hands.length > 0 ? { hands: outcome.hands } : {}),
+    requirements: (done?.requirements ?? []).map((result) => runRequirement(result, step)),
     simulated,
     planned: plan.ticks * step,
     realTimeFactor: done && done.wall > 0 ? simulated / done.wall : 0,
@@ -92,6 +94,23 @@ export function summarise(outcome: RunOutcome): RunSummary {
     stateHash: done?.hash ?? '',
     recording: outcome.recording ?? null,
     rowsLost: done?.dropped ?? 0,
+  };
+}
+
+/** As the summary carries it: what JSON has no number for is null. */
+export function runRequirement(result: RequirementResult, step: number): RunRequirement {
+  const { requirement, verdict, margin, unit, tick, triggers, open } = result;
+  return {
+    id: requirement.id,
+    text: requirement.text,
+    severity: requirement.severity,
+    verdict,
+    margin: Number.isFinite(margin) ? margin : null,
+    unit,
+    at: tick < 0 ? null : Number((tick * step).toFixed(9)),
+    triggers: triggers ?? null,
+    open,
+    optional: requirement.exercise === 'optional',
   };
 }
 

@@ -74,11 +74,22 @@ function reasonText({ what, value, bound, unit }: Invalidity): string {
 }
 
 function requirementLines(summary: RunSummary, columns: number): Line[] {
-  return summary.requirements.slice(0, most).flatMap(({ id, text, verdict, margin, unit }) => {
-    const room = margin === null ? '' : `, margin ${show(margin, unit)}`;
+  const urgency = ['fail', 'undecided', 'not exercised', 'pass'];
+  const sorted = [...summary.requirements].sort((a, b) => urgency.indexOf(a.verdict) - urgency.indexOf(b.verdict));
+  const lines = sorted.slice(0, most).flatMap(({ id, text, verdict, margin, unit }) => {
+    const room = margin === null ? '' : `, margin ${showMargin(margin, unit)}`;
     const tone: Tone = verdict === 'fail' ? 'alarm' : 'plain';
     return field('', columns, `- ${id} ${verdict}${room}: ${text}`, tone);
   });
+  if (sorted.length <= most) return lines;
+  return [...lines, ...field('', columns, `- and ${sorted.length - most} more that hold, in \`--json\` and the report`)];
+}
+
+/** Margins of pressures and temperatures are differences. */
+function showMargin(margin: number, unit: string): string {
+  if (unit === 'Pa') return `${Number((margin * 1e-5).toPrecision(4))} bar`;
+  if (unit === 'K') return `${Number(margin.toPrecision(4))} K`;
+  return show(margin, unit);
 }
 
 function runText(summary: RunSummary): string {
