@@ -39,6 +39,10 @@ export function benchSchema(catalogue: Catalogue): Schema {
       bench: { ...text, description: 'name of the bench' },
       about: text,
       include: { ...texts, description: 'further files or folders beside this one' },
+      base: {
+        ...texts,
+        description: 'a bench of which this one is a variant: what this file does not say is as there',
+      },
       step: { ...quantitySchema({ unit: 's' }), description: 'length of a tick' },
       substeps: { type: 'integer', minimum: 1, maximum: 64, description: 'substeps of the solver in a tick' },
       seed: { type: 'integer', minimum: 0, description: 'seed of the noise' },

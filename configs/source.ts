@@ -50,7 +50,7 @@ export interface SourceText {
 }
 
 export interface Source {
-  /** The top mapping with all includes merged in; undefined when the file could not be read at all. */
+  /** The top mapping with all includes merged in and what a base says besides; undefined when the file could not be read at all. */
   readonly root: Mapping | undefined;
   readonly texts: readonly SourceText[];
 }
@@ -99,27 +99,34 @@ export function readSource(path: string, problems: Problems, files: Files = disk
     const tree = parseText(text, file, problems);
     if (!tree) return undefined;
     const includes = tree.entries.get('include');
-    if (!includes) return tree;
+    const base = tree.entries.get('base');
+    if (!includes && !base) return tree;
     const merged = new Map(tree.entries);
     merged.delete('include');
-    for (const name of includedFiles(includes.value, file)) {
+    merged.delete('base');
+    for (const name of includes ? includedFiles(includes.value, file, 'include') : []) {
       const part = load(name.file, name.where);
       if (part) mergeInto(merged, part);
+    }
+    // A variant: all of the base but the top keys that this file says itself.
+    for (const name of base ? includedFiles(base.value, file, 'base') : []) {
+      const part = load(name.file, name.where);
+      for (const [key, entry] of part?.entries ?? []) if (!merged.has(key)) merged.set(key, entry);
     }
     return { kind: 'mapping', entries: merged, where: tree.where };
   };
 
-  const includedFiles = (value: Tree, file: string): { file: string; where: Position }[] => {
+  const includedFiles = (value: Tree, file: string, key: 'include' | 'base'): { file: string; where: Position }[] => {
     const named = value.kind === 'list' ? value.items : [value];
     const found: { file: string; where: Position }[] = [];
     for (const item of named) {
       if (item.kind !== 'scalar' || typeof item.value !== 'string') {
-        problems.add(item.where, 'include', 'not a file name', 'write the name of a file or a folder beside this one');
+        problems.add(item.where, key, 'not a file name', 'write the name of a file or a folder beside this one');
         continue;
       }
       const target = inside(root, file, item.value);
       if (target === undefined) {
-        problems.add(item.where, 'include', 'outside the folder of the bench', 'move the file into the folder', {
+        problems.add(item.where, key, 'outside the folder of the bench', 'move the file into the folder', {
           value: item.value,
         });
         continue;

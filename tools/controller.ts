@@ -5,21 +5,28 @@ import { parseArgs } from 'node:util';
 import { ControllerEndpoint, type ControllerModule } from '../bridge/controller-side.js';
 import { readBench } from '../configs/bench.js';
 import { catalogue as library } from '../configs/catalogue.js';
+import { startCanPeer } from './can-peer.js';
 import { loadController } from './loop/controller-module.js';
 
 /**
  * A controller as a process of its own: it knows the message map and nothing else of the bench. Live it answers each
- * trigger message at once; in lockstep it answers each `end` of the bench.
+ * trigger message at once; in lockstep (UDP only) it answers each `end` of the bench. On CAN it uses the package socketcan.
  *
  *   node dist/tools/controller.js BENCH [--lockstep] [--module FILE]
  */
 const { values, positionals } = parseArgs({
   allowPositionals: true,
-  options: { lockstep: { type: 'boolean', default: false }, module: { type: 'string' }, help: { type: 'boolean', default: false } },
+  options: {
+    lockstep: { type: 'boolean', default: false },
+    module: { type: 'string' },
+    help: { type: 'boolean', default: false },
+  },
 });
 const bench = positionals[0];
 if (values.help || bench === undefined) {
-  process.stdout.write('Usage: controller BENCH [--lockstep] [--module FILE]\n\nRuns the controller module of a bench as a process of its own, over UDP.\n');
+  process.stdout.write(
+    'Usage: controller BENCH [--lockstep] [--module FILE]\n\nRuns the controller module of a bench as a process of its own, over the links of the bench.\n',
+  );
   process.exit(values.help ? 0 : 2);
 }
 
@@ -35,8 +42,17 @@ async function main(file: string): Promise<void> {
   const moduleFile = values.module ?? spec.controller?.module;
   if (moduleFile === undefined) throw new Error('the bench names no controller module: give --module FILE');
   const factory = await loadController(path.dirname(file), moduleFile);
-  const link = spec.map.links.find((one) => one.kind === 'udp');
-  if (!link) throw new Error('the bench has no UDP link');
+  const link = spec.map.links[0];
+  if (!link) throw new Error('the bench has no link');
+  if (link.kind !== 'udp') {
+    if (values.lockstep)
+      throw new Error(
+        `link ${link.name} is CAN, which has no lockstep: run the bench with --pace live, or with --controller module`,
+      );
+    const peer = await startCanPeer(spec, factory);
+    endWith(() => peer.close());
+    return;
+  }
   const socket = createSocket({ type: 'udp4', reuseAddr: true });
   const local = { address: link.remoteAddress ?? '127.0.0.1', port: link.remotePort ?? 0 };
   const bench = { address: link.localAddress ?? '127.0.0.1', port: link.localPort ?? 0 };
@@ -69,6 +85,15 @@ async function main(file: string): Promise<void> {
     if (heard === 0 || silence > 2000) endpoint.hello();
     else if (!values.lockstep && silence > every) endpoint.elapse(Math.round(every / 1000 / spec.step));
   }, every);
-  for (const signal of ['SIGINT', 'SIGTERM'] as const) process.on(signal, () => process.exit(0));
-  process.on('disconnect', () => process.exit(0));
+  endWith(() => socket.close());
+}
+
+/** Ends the process when it is asked to or its parent is gone. */
+function endWith(close: () => void): void {
+  const end = () => {
+    close();
+    process.exit(0);
+  };
+  for (const signal of ['SIGINT', 'SIGTERM'] as const) process.on(signal, end);
+  process.on('disconnect', end);
 }
