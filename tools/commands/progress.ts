@@ -8,7 +8,7 @@ export class Progress {
   private shown = false;
 
   constructor(
-    private readonly title: string,
+    title: string,
     private readonly quiet = false,
   ) {
     this.bar = new SingleBar(
