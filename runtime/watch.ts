@@ -110,7 +110,7 @@ export class Watch {
     const low = predicted ? near[reliefOf[k]] : 0;
     let rung = rungAt[k + 1] - first;
     while (rung > low && !(value > begins[first + rung - 1])) rung -= 1;
-    const present = block[at + SLOT.present];
+    const present = block[at + SLOT.present] | 0;
     if (rung > present) this.climb(block, signals, k, rung, tick);
     else if (present > 0) this.stay(block, signals, k, tick);
     if (block[at + SLOT.present] > 0 && value > sign[k] * block[at + SLOT.peak])
@@ -119,7 +119,7 @@ export class Watch {
 
   /** Number of the present level of a ladder. */
   private levelOf(block: Float64Array, k: number): number {
-    const present = block[this.tables.slot + SLOT.count * k + SLOT.present];
+    const present = block[this.tables.slot + SLOT.count * k + SLOT.present] | 0;
     return present > 0 ? this.tables.number[this.tables.rungAt[k] + present - 1] : 0;
   }
 
@@ -133,11 +133,12 @@ export class Watch {
     block[at] = smoothed;
     const rate = (fed - smoothed) / lag[r];
     const gap = relief[r] - value;
-    let time = notApproaching;
-    if (gap <= 0) time = 0;
-    else if (rate * notApproaching > gap) time = gap / rate;
-    signals[timeSignal[r]] = time;
-    const ticks = time < lookAhead[r] ? block[at + 1] + 1 : 0;
+    const to = timeSignal[r];
+    // written in each branch: V8 boxes a choice between a computed number and a constant of the module
+    if (gap <= 0) signals[to] = 0;
+    else if (rate * notApproaching > gap) signals[to] = gap / rate;
+    else signals[to] = notApproaching;
+    const ticks = signals[to] < lookAhead[r] ? block[at + 1] + 1 : 0;
     block[at + 1] = ticks;
     return ticks > confirm[r];
   }
@@ -145,8 +146,9 @@ export class Watch {
   /** A level begins, or a warning that is on goes higher. Tells when that is more than was told or seen before. */
   private climb(block: Float64Array, signals: Float64Array, k: number, rung: number, tick: number): void {
     const at = this.tables.slot + SLOT.count * k;
-    const present = block[at + SLOT.present];
-    const worst = block[at + SLOT.worst];
+    // rungs are whole: as integers they pass between functions without a box
+    const present = block[at + SLOT.present] | 0;
+    const worst = block[at + SLOT.worst] | 0;
     const seen = block[at + SLOT.acknowledged] !== 0;
     if (worst === 0) {
       block[at + SLOT.since] = tick;
@@ -178,7 +180,7 @@ export class Watch {
   /** A level that is on: it lasts, or goes lower when its time has come. */
   private stay(block: Float64Array, signals: Float64Array, k: number, tick: number): void {
     const at = this.tables.slot + SLOT.count * k;
-    let rung = block[at + SLOT.present];
+    let rung = block[at + SLOT.present] | 0;
     if (this.lasts(signals, k, rung)) {
       block[at + SLOT.until] = tick;
       return;
