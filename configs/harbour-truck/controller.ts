@@ -5,9 +5,9 @@ import type { ControllerMirror, ControllerModule } from '../../bridge/controller
  * are values in the map's units. Written to be read; a real control unit does more.
  *
  * It splits the driver's wish between engine and pump-motor, recovers brake energy and blends it with the service
- * brakes, drives with the engine off while the accumulator holds, recharges while cruising, connects the pump-motor at
- * matched speed, gives way near full and near empty, and falls back to engine and brakes when the hydraulic sensors
- * fall silent.
+ * brakes, drives with the engine off while the accumulator holds, recharges with what the engine has to spare, connects
+ * the pump-motor at matched speed, gives way near full and near empty, and falls back to engine and brakes when the
+ * hydraulic sensors fall silent.
  */
 
 /** The truck as the controller's calibration has it. */
@@ -26,14 +26,20 @@ const truck = {
   frontBrake: 11500,
   rearBrake: 9500,
   frontShare: 0.55,
+  /** N m */
+  engineTorque: 600,
+  clutchTorque: 1100,
 };
+/** Force at the wheels to torque at the prop shaft. */
+const wheelPerProp = truck.tyreRadius / truck.axleRatio;
 
 /** Pressures in bar(g). */
 const pressures = {
-  /** Below it the accumulator counts as empty, from `filling` on as worth using. */
+  /** Below it the accumulator counts as empty, from `filled` on as worth driving with. */
   empty: 165,
-  filling: 190,
-  /** Recharging while cruising ends here. */
+  filled: 205,
+  /** Recharging by the engine fades out from here to `enough`. */
+  nearEnough: 205,
   enough: 215,
   /** Recovery fades out from `nearFull` to `full`, well below the relief valve. */
   nearFull: 312,
@@ -41,9 +47,46 @@ const pressures = {
   lowLeast: 7.5,
 };
 
+/** Speeds in rad/s. */
+const speeds = {
+  /** Below it the engine needs its starter. */
+  firing: 55,
+  running: 65,
+  /** The engine's speed while the clutch slips at a launch. */
+  launch: 95,
+  /** Gears change down below, and up above; by the accelerator up to `upAtFull` more. */
+  down: 88,
+  up: 165,
+  upAtFull: 70,
+  /** The clutch counts as closed within this slip. */
+  slip: 8,
+  /** The pump-motor lets go from here to `pumpMost`. */
+  pumpHigh: 320,
+  pumpMost: 350,
+};
+
+/** The controller steps once for each of the bench's fastest messages, s. */
 const period = 0.005;
 
-type Driving = 'hydraulic' | 'engine';
+/** What drives, and what the gearbox is about. Numbers, since they stand among numbers. */
+const source = { engine: 0, accumulator: 1 };
+const phase = { inGear: 0, unloading: 1, changing: 2 };
+
+/** All that is remembered from one step to the next. */
+const start = {
+  source: source.engine,
+  phase: phase.inGear,
+  gear: 1,
+  connected: 0,
+  ignition: 1,
+  /** N m; share; N m: as asked for in the last step. */
+  engineTorque: 0,
+  clutch: 0,
+  pumpTorque: 0,
+  /** s */
+  engineWantedFor: 0,
+  engineIdleFor: 0,
+};
 
 export function createController(mirror: ControllerMirror, _step: number): ControllerModule {
   const at = (path: string) => mirror.readIndex(path);
@@ -80,131 +123,132 @@ export function createController(mirror: ControllerMirror, _step: number): Contr
     frontBrake: to('drivelineRequest.frontBrake'),
     rearBrake: to('drivelineRequest.rearBrake'),
   };
-
-  let driving: Driving = 'engine';
-  let connected = 0;
-  let wantedGear = 1;
-  let clutch = 0;
-  let pumpTorque = 0;
-  let engineTorque = 0;
-  let ignition = 1;
-  let idleFor = 0;
-  let recharging = 0;
-
-  const restart = () => {
-    driving = 'engine';
-    connected = 0;
-    wantedGear = 1;
-    clutch = 0;
-    pumpTorque = 0;
-    engineTorque = 0;
-    ignition = 1;
-    idleFor = 0;
-    recharging = 0;
-  };
+  const now = { ...start };
 
   const step = (_tick: number, read: Float64Array, write: Float64Array): void => {
+    // what is known: a silent message leaves its part of the truck out
     const awake = read[input.vehicleAge]! < 100 && read[input.drivelineAge]! < 100;
-    const hydraulicsSeen = read[input.hydraulicAge]! < 50;
     const key = awake && read[input.key]! > 0.5;
-    const speed = read[input.speed]! / 3.6;
+    const hydraulics = key && read[input.hydraulicAge]! < 50;
     const forward = awake && read[input.direction]! > 0.5;
     const accelerator = awake ? read[input.accelerator]! : 0;
     const brake = awake ? read[input.brake]! : 0.35;
+    const speed = read[input.speed]! / 3.6;
+    const propSpeed = radians(read[input.propSpeed]!);
+    const pumpSpeed = radians(read[input.pumpSpeed]!);
+    const engineSpeed = radians(read[input.engineSpeed]!);
     const accumulator = read[input.accumulatorPressure]!;
-    const pumpSpeed = (read[input.pumpSpeed]! * Math.PI) / 30;
-    const propSpeed = (read[input.propSpeed]! * Math.PI) / 30;
-    const engineSpeed = (read[input.engineSpeed]! * Math.PI) / 30;
 
-    // what the driver wants at the prop shaft
-    const wheelPerProp = truck.tyreRadius / truck.axleRatio;
-    const drive = accelerator * Math.min(truck.acceleratorForce, truck.power / Math.max(Math.abs(speed), 2)) * wheelPerProp;
+    // what the driver wants, as torque at the prop shaft
+    const most = Math.min(truck.acceleratorForce, truck.power / Math.max(Math.abs(speed), 2));
+    const drive = accelerator * most * wheelPerProp;
     const retard = brake * truck.brakeForce * wheelPerProp;
 
-    // the accumulator: worth using, full, empty
-    if (accumulator < pressures.empty) driving = 'engine';
-    else if (accumulator > pressures.filling) driving = 'hydraulic';
-    const nearEmpty = ramp(accumulator, pressures.empty - 5, pressures.empty + 12);
+    // pump-motor: first to brake, and to drive while the accumulator holds
+    if (accumulator < pressures.empty || !hydraulics) now.source = source.engine;
+    else if (accumulator > pressures.filled) now.source = source.accumulator;
+    const nearEmpty = ramp(accumulator, pressures.empty - 5, pressures.empty + 15);
     const nearFull = ramp(accumulator, pressures.full, pressures.nearFull);
-    const usable = key && hydraulicsSeen;
-
-    // isolation valve and pump-motor
-    const open = usable && (forward || Math.abs(speed) > 0.3);
-    const target = propSpeed * truck.pumpRatio;
-    const tooFast = Math.abs(target) > 350;
-    const wanted = open && !tooFast;
-    if (!wanted) connected = 0;
-    else if (connected === 0 && Math.abs(pumpSpeed - target) < 6) connected = 1;
-    const range = ((truck.displacement * Math.max(read[input.highPressure]! - read[input.lowPressure]!, 0) * 1e5) / (2 * Math.PI)) * 0.95;
+    const open = hydraulics && (forward || Math.abs(speed) > 0.3);
+    const matched = propSpeed * truck.pumpRatio;
+    if (!open || Math.abs(matched) > speeds.pumpMost) now.connected = 0;
+    else if (Math.abs(pumpSpeed - matched) < 6) now.connected = 1;
+    const difference = Math.max(read[input.highPressure]! - read[input.lowPressure]!, 0) * 1e5;
+    const reach =
+      ((0.95 * truck.displacement * difference) / (2 * Math.PI)) *
+      ramp(Math.abs(matched), speeds.pumpMost, speeds.pumpHigh);
+    const spare = spareTorque(now, drive, accelerator);
     let pumpWanted = 0;
-    if (connected === 1) {
-      if (retard > 0) pumpWanted = -Math.min(retard / truck.pumpRatio, range) * nearFull * ramp(speed, 0.8, 2.2);
-      else if (drive > 0 && driving === 'hydraulic') pumpWanted = Math.min(drive / truck.pumpRatio, range) * nearEmpty;
-      else if (recharging === 1) pumpWanted = -60 * ramp(accumulator, pressures.enough, pressures.enough - 10);
-    } else if (wanted) pumpWanted = limit((target - pumpSpeed) * 0.9, -45, 45);
-    pumpTorque = slew(pumpTorque, pumpWanted, 4000 * period);
+    if (!open) pumpWanted = 0;
+    else if (now.connected === 0) pumpWanted = limit(0.9 * (matched - pumpSpeed), -45, 45);
+    else if (retard > 0) pumpWanted = -Math.min(retard / truck.pumpRatio, reach) * nearFull * ramp(speed, 0.8, 2.2);
+    else if (drive > 0 && now.source === source.accumulator)
+      pumpWanted = Math.min(drive / truck.pumpRatio, reach) * nearEmpty;
+    else if (speed > 4)
+      pumpWanted = -Math.min(spare / truck.pumpRatio, 70) * ramp(accumulator, pressures.enough, pressures.nearEnough);
+    const gentle = retard > 0 || now.source === source.accumulator ? 4000 : 300;
+    now.pumpTorque = slew(now.pumpTorque, pumpWanted, gentle * period);
+    const hydraulicShare = now.connected === 1 ? now.pumpTorque * truck.pumpRatio : 0;
 
-    // engine: off while the accumulator drives, on again in time
-    const hydraulicShare = connected === 1 && pumpTorque > 0 ? pumpTorque * truck.pumpRatio : 0;
+    // engine: gives what is missing and what recharges; off while the accumulator drives alone
     const missing = retard > 0 ? 0 : Math.max(0, drive - hydraulicShare);
-    const needsEngine = driving === 'engine' || missing > 0.12 * drive + 25;
-    if (!key) ignition = 0;
-    else if (needsEngine && accelerator > 0.02) {
-      ignition = 1;
-      idleFor = 0;
-    } else if (driving === 'engine') ignition = 1;
-    else {
-      idleFor += period;
-      if (idleFor > 1.5) ignition = 0;
-    }
-    recharging = ignition === 1 && driving === 'engine' && retard === 0 && speed > 3 ? 1 : 0;
-    write[output.starter] = ignition === 1 && engineSpeed < 55 ? 320 * ramp(engineSpeed, 55, 45) : 0;
+    const wanted = accelerator > 0.02 && (now.source === source.engine || missing > 0.1 * drive + 30);
+    now.engineWantedFor = wanted ? now.engineWantedFor + period : 0;
+    now.engineIdleFor = wanted || now.source === source.engine ? 0 : now.engineIdleFor + period;
+    if (now.source === source.engine || now.engineWantedFor > 0.15) now.ignition = 1;
+    if (!key || now.engineIdleFor > 1.5) now.ignition = 0;
+    const running = now.ignition === 1 && engineSpeed > speeds.running;
 
-    // gear by speed, with a gap between shifting up and down
-    const running = ignition === 1 && engineSpeed > 60;
-    const gear = Math.round(read[input.gear]!);
-    const shifting = read[input.shifting]! > 0.5;
-    wantedGear = chooseGear(wantedGear, propSpeed, clutch > 0.05 || shifting);
-    const ratio = truck.gears[wantedGear - 1]!;
-    const inGear = gear === wantedGear && !shifting;
-    const launching = propSpeed * ratio < 75;
-    let clutchWanted = 0;
+    // gears: unload the engine, open the clutch, change, match, close
+    const coupled = running && forward && retard === 0 && missing > 0;
+    const inGear = Math.round(read[input.gear]!) === now.gear && read[input.shifting]! < 0.5;
+    const better = betterGear(now.gear, propSpeed, accelerator);
+    if (now.phase === phase.inGear && better !== now.gear && inGear) now.phase = phase.unloading;
+    if (now.phase === phase.unloading && now.clutch < 0.02) {
+      now.gear = better;
+      now.phase = phase.changing;
+    } else if (now.phase === phase.changing && inGear) now.phase = phase.inGear;
+    const ratio = truck.gears[now.gear - 1]!;
+    const input1 = propSpeed * ratio;
+    const wish = limit(missing / ratio, 0, truck.engineTorque);
     let engineWanted = 0;
-    if (running && inGear && forward && missing > 0) {
-      engineWanted = limit(missing / ratio, 0, 620);
-      clutchWanted = launching ? limit(0.12 + 0.5 * (engineWanted / 620), 0, 0.65) : 1;
-      if (recharging === 1 && !launching) engineWanted = limit(engineWanted + (-pumpTorque * truck.pumpRatio) / ratio, 0, 620);
-      if (launching && engineSpeed < 78) clutchWanted *= ramp(engineSpeed, 62, 78);
-    } else if (running && inGear && forward && recharging === 1 && !launching) {
-      engineWanted = limit((-pumpTorque * truck.pumpRatio) / ratio, 0, 400);
-      clutchWanted = clutch > 0 || accelerator > 0 ? 1 : 0;
+    let clutchWanted = 0;
+    if (now.phase === phase.unloading) clutchWanted = now.engineTorque > 40 ? 1 : 0;
+    else if (now.phase === phase.changing) engineWanted = coupled ? limit(5 * (input1 - engineSpeed), 0, 250) : 0;
+    else if (coupled) {
+      const goal = Math.max(input1, speeds.launch);
+      if (input1 > speeds.launch - 10 && Math.abs(engineSpeed - input1) < speeds.slip) {
+        engineWanted = wish;
+        clutchWanted = 1;
+      } else {
+        // the engine comes to the speed of the gearbox or of a launch; a clutch that slips passes what is wanted
+        engineWanted = limit(wish + 6 * (goal - engineSpeed), 0, truck.engineTorque);
+        if (engineSpeed > input1 - speeds.slip)
+          clutchWanted =
+            limit(wish / truck.clutchTorque, 0.05, 0.5) * ramp(engineSpeed, speeds.running, speeds.launch - 10);
+      }
     }
-    if (retard > 0 || !inGear) clutchWanted = 0;
-    clutch = slew(clutch, clutchWanted, clutchWanted > clutch ? 2.5 * period : 12 * period);
-    // the engine comes to the gearbox's speed before the clutch takes it along
-    if (clutchWanted > 0 && clutch < 0.3 && !launching && engineSpeed < propSpeed * ratio - 5) engineWanted = Math.max(engineWanted, 160);
-    engineTorque = slew(engineTorque, clutch > 0.05 || clutchWanted > 0 ? engineWanted : 0, 8000 * period);
+    now.clutch = slew(now.clutch, clutchWanted, (clutchWanted > now.clutch ? 4 : 12) * period);
+    now.engineTorque = slew(now.engineTorque, engineWanted, 4000 * period);
 
     // service brakes: what the pump-motor does not take
-    const recovered = connected === 1 && pumpTorque < 0 ? -pumpTorque * truck.pumpRatio : 0;
-    const friction = (Math.max(0, retard - recovered) / wheelPerProp) * truck.tyreRadius;
-    const front = (friction * truck.frontShare) / truck.frontBrake;
-    const rear = (friction * (1 - truck.frontShare)) / truck.rearBrake;
+    const friction = (Math.max(0, retard + Math.min(hydraulicShare, 0)) / wheelPerProp) * truck.tyreRadius;
 
-    write[output.torque] = pumpTorque;
+    write[output.torque] = now.pumpTorque;
     write[output.enable] = open ? 1 : 0;
     write[output.isolation] = open ? 1 : 0;
-    write[output.connect] = connected;
-    write[output.chargeSpeed] = usable ? limit(300 + 900 * (pressures.lowLeast + 0.8 - read[input.lowPressure]!), 0, 2400) : 0;
-    write[output.engineTorque] = ignition === 1 ? engineTorque : 0;
-    write[output.ignition] = ignition;
-    write[output.clutch] = clutch;
-    write[output.gear] = key && (forward || Math.abs(speed) > 0.5) ? wantedGear : 0;
-    write[output.frontBrake] = limit(front, 0, 1);
-    write[output.rearBrake] = limit(rear, 0, 1);
+    write[output.connect] = now.connected;
+    write[output.chargeSpeed] = hydraulics
+      ? limit(300 + 900 * (pressures.lowLeast + 0.8 - read[input.lowPressure]!), 0, 2400)
+      : 0;
+    write[output.engineTorque] = now.ignition === 1 ? now.engineTorque : 0;
+    write[output.ignition] = now.ignition;
+    write[output.starter] = now.ignition === 1 ? 320 * ramp(engineSpeed, speeds.firing, speeds.firing - 10) : 0;
+    write[output.clutch] = now.clutch;
+    write[output.gear] = key && (forward || Math.abs(speed) > 0.5) ? now.gear : 0;
+    write[output.frontBrake] = limit((friction * truck.frontShare) / truck.frontBrake, 0, 1);
+    write[output.rearBrake] = limit((friction * (1 - truck.frontShare)) / truck.rearBrake, 0, 1);
   };
 
-  return { step, restart };
+  return { step, restart: () => void Object.assign(now, start) };
+}
+
+/** Torque at the prop shaft that the engine can give beyond what the driver wants, for recharging. */
+function spareTorque(now: Readonly<typeof start>, drive: number, accelerator: number): number {
+  if (now.source === source.accumulator || now.phase !== phase.inGear || now.clutch < 0.95) return 0;
+  return Math.max(0, 0.8 * truck.engineTorque * truck.gears[now.gear - 1]! - drive) * ramp(accelerator, 0.75, 0.55);
+}
+
+/** The gear for a speed: one up or down from the present one at most. */
+function betterGear(gear: number, propSpeed: number, accelerator: number): number {
+  const speed = propSpeed * truck.gears[gear - 1]!;
+  if (gear < 6 && speed > speeds.up + speeds.upAtFull * accelerator) return gear + 1;
+  if (gear > 1 && speed < speeds.down) return gear - 1;
+  return gear;
+}
+
+function radians(turnsPerMinute: number): number {
+  return (turnsPerMinute * Math.PI) / 30;
 }
 
 /** 0 at `from`, 1 at `to`, straight between; either may be the larger. */
@@ -213,21 +257,9 @@ function ramp(value: number, from: number, to: number): number {
 }
 
 function limit(value: number, least: number, most: number): number {
-  return value < least ? least : value > most ? most : value;
+  return Math.min(Math.max(value, least), most);
 }
 
 function slew(value: number, wanted: number, most: number): number {
   return value + limit(wanted - value, -most, most);
-}
-
-function chooseGear(gear: number, propSpeed: number, busy: boolean): number {
-  if (busy) {
-    // with the clutch closed only a clear reason changes the gear
-    if (propSpeed * truck.gears[gear - 1]! > 235 && gear < 6) return gear + 1;
-    if (propSpeed * truck.gears[gear - 1]! < 70 && gear > 1) return gear - 1;
-    return gear;
-  }
-  let best = 1;
-  for (let candidate = 2; candidate <= 6; candidate += 1) if (propSpeed * truck.gears[candidate - 1]! > 125) best = candidate;
-  return best;
 }

@@ -7,7 +7,8 @@ import type { InstrumentKind, InstrumentSetup, InstrumentUpdate } from '../../ru
  *
  * (proportional-integral with feedforward and preview). A positive force goes to the accelerator, a negative one to
  * the brake, never both; pedals move at a limited rate. The integral rests while the pedals are at their ends or on
- * their way (conditional integration), so it does not wind up. At a target of zero and standstill the driver holds with the brake and goes to neutral after a while.
+ * their way (conditional integration), so it does not wind up. At a target of zero the
+ * driver brakes to the end instead of creeping there, holds with the brake and goes to neutral after a while.
  */
 export const driver: InstrumentKind = {
   kind: 'driver',
@@ -36,6 +37,7 @@ export const driver: InstrumentKind = {
     previewTime: { unit: 's', about: 'how far ahead the driver looks', default: 0.5, least: 0.05, usual: [0.3, 1] },
     pedalRate: { unit: '1/s', about: 'greatest rate of a pedal', default: 2, least: 0.1, usual: [1, 3] },
     holdBrake: { unit: '1', about: 'brake pedal at standstill', default: 0.3, least: 0, most: 1 },
+    stopBrake: { unit: '1', about: 'least brake pedal on the last way to a stop', default: 0.12, least: 0, most: 1 },
     holdSpeed: { unit: 'm/s', about: 'below this it is standstill', default: 0.15, least: 0.01 },
     neutralAfter: { unit: 's', about: 'standstill until neutral', default: 3, least: 0 },
     brakeThreshold: {
@@ -66,6 +68,7 @@ function build({ parameter, input, output, memory, step }: InstrumentSetup): Ins
   const move = parameter['pedalRate']! * step;
   const slack = 0.02 * acceleratorForce;
   const holdBrake = parameter['holdBrake']!;
+  const stopBrake = parameter['stopBrake']!;
   const holdSpeed = parameter['holdSpeed']!;
   const neutralAfter = parameter['neutralAfter']!;
   const threshold = parameter['brakeThreshold']!;
@@ -87,7 +90,8 @@ function build({ parameter, input, output, memory, step }: InstrumentSetup): Ins
     const ahead = inAhead < 0 ? target : signals[inAhead]!;
     const velocity = signals[inVelocity]!;
     const error = target - velocity;
-    const stands = target < holdSpeed && ahead < holdSpeed && velocity < holdSpeed;
+    const stops = target < holdSpeed && ahead < holdSpeed;
+    const stands = stops && velocity < holdSpeed;
     let wantedAccelerator = 0;
     let wantedBrake = holdBrake;
     let force = 0;
@@ -96,6 +100,7 @@ function build({ parameter, input, output, memory, step }: InstrumentSetup): Ins
       force = load + (mass * (ahead - target)) / previewTime + gain * error + block[integral]!;
       wantedAccelerator = force > 0 ? Math.min(force / acceleratorForce, 1) : 0;
       wantedBrake = force < -threshold ? Math.min((-force - threshold) / brakeForce, 1) : 0;
+      if (stops) wantedBrake = Math.max(wantedBrake, stopBrake);
     }
     const pressing = block[accelerator]!;
     const braking = block[brake]!;
