@@ -2,6 +2,7 @@ import { Exchange } from '../bridge/exchange.js';
 import { BlockLayout } from '../runtime/block.js';
 import { buildCircuit, type Circuit, places } from '../runtime/circuit/build.js';
 import { BuildError, type Problem } from '../runtime/contract.js';
+import { EnergyParts } from '../runtime/energy-parts.js';
 import { HandStage, type HandTarget } from '../runtime/hand.js';
 import type { InstrumentUpdate } from '../runtime/instrument.js';
 import { EventCatalogue } from '../runtime/journal.js';
@@ -28,6 +29,8 @@ export interface Assembly {
   readonly exchange: Exchange;
   readonly tick: Tick;
   readonly ledger: LedgerStage;
+  /** Energy by element since the start. */
+  readonly energy: EnergyParts;
   readonly firstTick: number;
   /** Slot of a command by path, or -1. */
   readonly target: (path: string) => number;
@@ -130,6 +133,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   const signals = new Float64Array(table.length);
   const plant = new Plant(circuit, { step: spec.step, substeps: options.substeps ?? spec.substeps }, block, at);
   const ledger = new LedgerStage(circuit, plant, spec.step, ledgerSlots, ledgerSignals, meters);
+  const energy = new EnergyParts(circuit, table, spec.step);
   const initial = block.slice();
   const tick = new Tick({
     plant,
@@ -142,6 +146,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     drives: { from: Int32Array.from(drives, (drive) => drive.from), to: Int32Array.from(drives, (drive) => drive.to) },
     after: stageOf(spec, instruments, 'after'),
     ledger,
+    energy,
     watch,
     judge,
     shown: { slots: Int32Array.from(shown.slots), signals: Int32Array.from(shown.signals) },
@@ -155,6 +160,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     plant.solver.clear();
     signals.set(plant.observed, 0);
     ledger.begin(block);
+    energy.begin(signals);
   };
   reset();
   return {
@@ -170,6 +176,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     exchange,
     tick,
     ledger,
+    energy,
     firstTick,
     target: targets.find,
     reset,

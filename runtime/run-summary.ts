@@ -1,3 +1,4 @@
+import type { EnergyPart } from './energy-parts.js';
 import type { Severity } from './judge/formula.js';
 import type { RequirementVerdict } from './judge/result.js';
 import type { TimingSummary } from './realtime/timing-record.js';
@@ -53,12 +54,15 @@ export interface RunSummary {
 
   readonly ledger: RunLedger;
   readonly energies: readonly RunEnergy[];
+  /** By element, for the picture of energy. */
+  readonly energyParts: readonly EnergyPart[];
   /** Burnt over the run; null without an engine. */
   readonly fuel: { readonly mass: number; readonly energy: number } | null;
   /** Steps that the solver's safety net refined, and results that it replaced. */
   readonly solver: { readonly refined: number; readonly replaced: number };
 
   readonly links: readonly RunLink[];
+  readonly messages: readonly RunMessage[];
   /** Hash of the whole state after the last tick. */
   readonly stateHash: string;
   /** Path of the recording; null when nothing was recorded. */
@@ -111,6 +115,19 @@ export interface RunEnergy {
   readonly about: string;
   /** J */
   readonly value: number;
+}
+
+export interface RunMessage {
+  readonly link: string;
+  readonly message: string;
+  readonly direction: 'sent' | 'received';
+  readonly count: number;
+  /** By its cycle; null where it has none. */
+  readonly due: number | null;
+  readonly lost: number;
+  readonly late: number;
+  readonly malformed: number;
+  readonly timeOuts: number;
 }
 
 export interface RunLink {

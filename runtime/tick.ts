@@ -1,4 +1,5 @@
 import { hashBlock } from './block.js';
+import type { EnergyParts } from './energy-parts.js';
 import type { HandStage } from './hand.js';
 import type { Circuit } from './circuit/build.js';
 import { places } from './circuit/build.js';
@@ -37,6 +38,7 @@ export interface TickParts {
   readonly drives: { readonly from: Int32Array; readonly to: Int32Array };
   readonly after: readonly InstrumentUpdate[];
   readonly ledger: LedgerStage;
+  readonly energy: EnergyParts;
   readonly watch: Stage;
   readonly judge: Stage;
   /** What of the block is shown as signals after the step: slots and signal indices. */
@@ -89,6 +91,7 @@ export class Tick {
     meter.end(3);
     if (tick >= 0) {
       parts.ledger.run(block, signals, tick);
+      parts.energy.run(signals);
       parts.watch.run(block, signals, tick, journal);
       meter.end(4);
       parts.judge.run(block, signals, tick, journal);

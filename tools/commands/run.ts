@@ -1,15 +1,19 @@
 import { Command, InvalidArgumentError } from 'commander';
+import { BuildError } from '../../runtime/contract.js';
 import { exitCode } from '../../runtime/verdict.js';
 import { Frames } from '../run/frames.js';
 import { hostRun, type RunOutcome, softwareVersion } from '../run/host-run.js';
 import { planRun, type RunPlan, type RunWish } from '../run/plan.js';
 import { summarise } from '../run/summarise.js';
+import { type LivePage, type PageWish, readPageWish } from '../live/live-page.js';
+import { pageHooks, placeOfPage } from '../live/page-of-run.js';
 import { eventText } from '../terminal/event-text.js';
 import { renderStart } from '../terminal/start-up.js';
 import { styleOf } from '../terminal/style.js';
 import { renderSummary } from '../terminal/summary.js';
 import { TerminalView } from '../terminal/view.js';
 import { complain } from './failure.js';
+import { writeReports } from './report.js';
 
 interface RunFlags {
   readonly scenario?: string;
@@ -19,8 +23,12 @@ interface RunFlags {
   readonly record?: string | false;
   readonly seed?: number;
   readonly json?: boolean;
+  readonly report?: string;
   readonly profile?: boolean;
   readonly core?: number;
+  readonly page?: string | boolean;
+  readonly control?: boolean;
+  readonly liveName?: readonly string[];
 }
 
 export function runCommand(): Command {
@@ -35,6 +43,10 @@ export function runCommand(): Command {
     .option('--no-record', 'record nothing')
     .option('--seed <N>', "seed of all noise; default: the bench's", whole)
     .option('--core <N>', 'processor that the loop thread stays on (live)', whole)
+    .option('--page [ADDRESS:PORT]', 'serve the live page; default 127.0.0.1 and a free port; off: none')
+    .option('--control', 'let hands act through the live page, with the token that is printed (live)')
+    .option('--live-name <NAME...>', 'names by which other machines may call the live page')
+    .option('--report <FILE.html>', 'the report of the run, made from its recording')
     .option('--profile', 'measure each stage of the tick')
     .option('--json', 'one object on standard output at the end, and nothing else')
     .addHelpText(
@@ -43,6 +55,7 @@ export function runCommand(): Command {
 Examples:
   oilspring run configs/harbour-truck/bench.yaml
   oilspring run configs/harbour-truck/bench.yaml --pace fast --json
+  oilspring run configs/harbour-truck/bench.yaml --page --control
   oilspring run my/bench.yaml --scenario my/hill.yaml --controller external --for 2min
 
 Ctrl-C ends a run cleanly at any moment, with the recording whole.`,
@@ -50,19 +63,33 @@ Ctrl-C ends a run cleanly at any moment, with the recording whole.`,
     .action(async (bench: string, flags: RunFlags) => {
       const wish: RunWish = { ...flags, bench, record: flags.record === false ? '' : flags.record };
       const plan = planRun(wish);
-      process.exitCode = await runAndShow(plan, { json: flags.json ?? false });
+      if (flags.report !== undefined && plan.recording === undefined)
+        throw new BuildError([{ path: '--report', what: 'a report is made from the recording, and nothing is recorded', remedy: 'leave --no-record away' }]);
+      const page = readPageWish(flags.page, flags.control ?? false, flags.liveName);
+      process.exitCode = await runAndShow(plan, { json: flags.json ?? false, ...(flags.report === undefined ? {} : { report: flags.report }), ...(page === undefined ? {} : { page }) });
     });
 }
 
 export interface ShowOptions {
+  /** File for the report of the run. */
+  readonly report?: string;
   /** One object on standard output and nothing else. */
   readonly json?: boolean;
-  /** Serve the live page. */
-  readonly page?: boolean;
+  /** Serve the live page: where, and whether hands may act; true: at the usual place, without hands. */
+  readonly page?: PageWish | boolean;
 }
 
 /** Runs a plan with the terminal view, records, prints the summary; the exit code. */
 export async function runAndShow(plan: RunPlan, options: ShowOptions): Promise<number> {
+  const page = await placeOfPage(plan, options.page);
+  try {
+    return await runShown(plan, options, page);
+  } finally {
+    await page?.close();
+  }
+}
+
+async function runShown(plan: RunPlan, options: ShowOptions, page: LivePage | undefined): Promise<number> {
   const json = options.json ?? false;
   const abort = new AbortController();
   const onSignal = () => abort.abort();
@@ -70,15 +97,24 @@ export async function runAndShow(plan: RunPlan, options: ShowOptions): Promise<n
   process.on('SIGTERM', onSignal);
   let outcome: RunOutcome;
   const view = json ? undefined : new TerminalView({ stream: process.stdout });
-  if (view) process.stdout.write(startText(plan, view.columns));
+  if (view) process.stdout.write(startText(plan, view.columns, page?.invitation));
+  else if (page) process.stderr.write(`live page ${page.invitation}\n`);
   try {
     let frames: Frames | undefined;
+    const remark = (text: string) => {
+      if (view) view.note({ time: 0, severity: 'warning', text });
+      else process.stderr.write(`${text}\n`);
+    };
+    const live = page === undefined ? undefined : pageHooks(page, plan, remark);
     outcome = await hostRun(plan, {
+      ...live,
       abort: abort.signal,
       onReady: (run) => {
         frames = new Frames(run);
+        live?.onReady(run);
       },
-      onEvent: (_run, event) => {
+      onEvent: (run, event) => {
+        live?.onEvent(run, event);
         const note = frames?.note(event, eventText);
         if (note) view?.note(note);
       },
@@ -95,10 +131,14 @@ export async function runAndShow(plan: RunPlan, options: ShowOptions): Promise<n
   } catch (error) {
     complain(error);
   }
+  // pages see the last rows, and that it has ended
+  await page?.settle();
   if (outcome.failed) complainAboutLoop(outcome);
   const final = outcome.recordingFailure === undefined ? summary : summarise(outcome);
   if (json) process.stdout.write(`${JSON.stringify(final)}\n`);
   else if (outcome.done) process.stdout.write(renderSummary(final, process.stdout.columns ?? 80, styleOf(process.stdout), deriveCommand(final.recording)));
+  if (options.report !== undefined && final.recording !== null && outcome.recordingFailure === undefined)
+    writeReports(final.recording, { to: options.report });
   return final.exitCode;
 }
 
@@ -106,7 +146,7 @@ function deriveCommand(recording: string | null): string | undefined {
   return recording === null ? undefined : `npm run -s oilspring -- rederive ${recording}`;
 }
 
-function startText(plan: RunPlan, columns: number): string {
+function startText(plan: RunPlan, columns: number, page: string | undefined): string {
   const { spec, script, wish } = plan;
   const link = spec.map.links[0];
   const controllers = {
@@ -126,6 +166,7 @@ function startText(plan: RunPlan, columns: number): string {
       controller: controllers[plan.controller.kind],
       seed: plan.seed,
       recording: plan.recording ?? null,
+      ...(page === undefined ? {} : { page }),
       remarks: spec.remarks.map((remark) => `${remark.path}: ${remark.what}`),
       relief: Object.fromEntries(spec.watched.flatMap((input) => (input.relief ? [[input.path, input.relief.setting]] : []))),
     },

@@ -142,6 +142,7 @@ async function main(order: RunOrder): Promise<void> {
     last: assembly.signals.slice(),
     warnings: assembly.warnings(),
     requirements: assembly.judge.results(end.ticks, assembly.block),
+    energy: assembly.energy.list(assembly.signals),
   });
 }
 

@@ -1,3 +1,4 @@
+import type { EnergyPart } from '../../runtime/energy-parts.js';
 import type { RequirementResult } from '../../runtime/judge/result.js';
 import type { ScriptSpec } from '../../runtime/script.js';
 import type { RingHandle } from '../../runtime/ring.js';
@@ -80,6 +81,7 @@ export interface RunDone {
   readonly last: Float64Array;
   readonly warnings: readonly WatchWarning[];
   readonly requirements: readonly RequirementResult[];
+  readonly energy: readonly EnergyPart[];
 }
 
 export interface RunFailed {

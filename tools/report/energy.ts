@@ -7,7 +7,7 @@ interface Share {
   readonly kind: 'supplied' | 'taken' | 'fromStore' | 'toStore' | 'lost';
 }
 
-const width = 720;
+const width = 764;
 const trunk = 80;
 const gapBetween = 7;
 const tall = 230;
