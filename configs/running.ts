@@ -51,6 +51,7 @@ export function readLife(top: Section, step: number): LifeSpec {
       afterwards: seen('afterwards', 'silence'),
     },
     afterRun: ticks('afterRun', 0),
+    hands: (section?.choice('hands', ['allowed', 'not allowed'] as const) ?? 'not allowed') === 'allowed',
   };
   frames?.finish();
   section?.finish();

@@ -12,6 +12,8 @@ export interface HandEvents {
   readonly scenario: Int32Array;
   readonly acknowledges: number;
   readonly notes: number;
+  /** A hand lets go of what it no longer held. */
+  readonly letGoAlready: number;
   readonly refusesFull: number;
   readonly refusesFree: number;
   readonly refusesUnknown: number;
@@ -25,10 +27,15 @@ export const handEventNames = {
   acknowledges: 'hand acknowledged a warning',
   notes: 'note by hand',
   refusals: 'hand refused',
+  letGoAlready: 'hand refused: it had let go already',
 } as const;
 
 /** Kinds that only answer a hand: what they say is said by another event, or by nothing new. */
-export const quietHandEvents: readonly string[] = [handEventNames.renews, handEventNames.acknowledges];
+export const quietHandEvents: readonly string[] = [
+  handEventNames.renews,
+  handEventNames.acknowledges,
+  handEventNames.letGoAlready,
+];
 
 export function declareHandEvents(
   events: EventCatalogue,
@@ -55,6 +62,7 @@ export function declareHandEvents(
     ]),
     acknowledges: note(handEventNames.acknowledges, 'by hand: warning of {subject} acknowledged'),
     notes: note(handEventNames.notes, 'note: {subject}'),
+    letGoAlready: refusal('it had let go already'),
     refusesFull: refusal('too many hands hold something already'),
     refusesFree: refusal('there is nothing to be done: it is so already'),
     refusesUnknown: refusal('it was not understood'),

@@ -21,7 +21,7 @@ export class HandRing implements HandSource {
     const { ring } = this;
     if (!ring.next()) return -1;
     const { bytes, offset } = ring;
-    const length = ring.length < into.length ? ring.length : into.length;
+    const length = Math.min(ring.length, into.length);
     for (let i = 0; i < length; i += 1) into[i] = bytes[offset + i]!;
     ring.release();
     return length;

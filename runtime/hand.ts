@@ -98,7 +98,7 @@ export class HandStage {
     for (let i = 0; i < mostPerTick; i += 1) {
       const told = this.source.poll(this.bytes);
       if (told < 0) break;
-      const length = told < this.bytes.length ? told : this.bytes.length;
+      const length = Math.min(told, this.bytes.length);
       journal.input(tick, this.link, this.bytes, length);
       if (length >= handBytes.head) this.act(block, tick, journal);
     }
@@ -189,7 +189,7 @@ export class HandStage {
   private release(block: Float64Array, tick: number, target: number, request: number, journal: Journal): void {
     const at = target < 0 ? -1 : this.find(block, target + 1);
     if (at < 0) {
-      this.refuse(tick, this.events.refusesFree, request, journal);
+      this.refuse(tick, this.events.letGoAlready, request, journal);
       return;
     }
     this.drop(block, at);

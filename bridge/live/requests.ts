@@ -23,6 +23,10 @@ export function serve(client: Client, desk: Desk): void {
     recordings: desk.options.recordings !== undefined,
   });
   greet(client, desk);
+  if (desk.options.opening !== undefined)
+    open(client, desk, desk.options.opening).catch((error: Error) =>
+      client.send({ type: 'refusal', request: 0, what: error.message, remedy: 'choose another recording' }),
+    );
   client.socket.on('message', (data, binary) => {
     if (!client.requests.take()) {
       desk.counts.tooManyMessages += 1;

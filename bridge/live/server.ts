@@ -27,6 +27,8 @@ export interface LiveServerOptions {
   /** For control, and for everything at other addresses. */
   readonly token?: string;
   readonly recordings?: RecordingShelf;
+  /** A recording on the shelf that every page begins with. */
+  readonly opening?: string;
   /** Length of a display interval, s. Default 0.04. */
   readonly interval?: number;
   readonly mostClients?: number;

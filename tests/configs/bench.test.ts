@@ -22,6 +22,7 @@ describe('a right bench file', () => {
       supply: true,
       key: false,
       preRoll: 200,
+      hands: false,
       bootWindow: 500,
       frames: { warmUp: 'silence', preRoll: 'silence', afterwards: 'silence' },
       afterRun: 0,

@@ -13,7 +13,7 @@ export function statusBoard(assembly: Assembly): { writer: BoardWriter; handle: 
   const numbers = new Map(Array.from({ length: layout.length }, (_, i) => [layout.path(i), i]));
   const chosen = slots.map((path) => numbers.get(path)!);
   for (let i = 0; i < SLOT.count * watch.ladders.length; i += 1) chosen.push(watch.warningSlot + i);
-  const shown = table.all.flatMap((info, i) => (info.group === 'link' || info.path.startsWith('life.') ? [i] : []));
+  const shown = table.all.flatMap((info, i) => (info.group === 'link' || /^(life|judge)\./.test(info.path) ? [i] : []));
   const every = Math.max(1, Math.round(boardEvery / assembly.spec.step));
   const writer = new BoardWriter(Int32Array.from(chosen), Int32Array.from(shown), every);
   const names = [...chosen.map((slot) => layout.path(slot)), ...shown.map((i) => table.all[i]!.path)];

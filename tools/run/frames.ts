@@ -1,3 +1,4 @@
+import { quietHandEvents } from '../../runtime/hand-events.js';
 import type { EventKind } from '../../runtime/journal.js';
 import { watchLevelNames } from '../../runtime/watch-levels.js';
 import { pressureSettings } from '../../runtime/watch-settings.js';
@@ -60,7 +61,7 @@ export class Frames {
   ): TerminalNote | undefined {
     const { ready, plan } = this.view;
     const kind = ready?.events.kinds[event.code];
-    if (!ready || !kind) return undefined;
+    if (!ready || !kind || quietHandEvents.includes(kind.name)) return undefined;
     return { time: event.tick * plan.spec.step, severity: kind.severity, text: text(kind, ready.events.subjects[event.subject] ?? '?', event.a, event.b, event.c) };
   }
 

@@ -28,6 +28,8 @@ export interface RunView {
   readonly controller: ControllerChild | undefined;
   /** What stands beside the rows: warnings, ages and counts; from `onReady` on. */
   readonly board: BoardReader | undefined;
+  /** Rows that the ring dropped, and records that must not be lost and were. */
+  readonly droppedRows: number;
   /** Only when hands may act. */
   readonly hands: HandChannel | undefined;
 }
@@ -110,6 +112,9 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     timing,
     controller: child,
     hands,
+    get droppedRows() {
+      return (recorder?.dropped ?? 0) + (recorder?.overflows ?? 0);
+    },
     get board() {
       return board;
     },
@@ -178,6 +183,7 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     });
   } finally {
     clearInterval(timer);
+    hands?.end();
     hooks.abort?.removeEventListener('abort', stop);
     await child?.stop();
   }
