@@ -67,8 +67,9 @@ export function command(plant: Plant, path: string, value: number): void {
 /**
  * The exact Jacobian against central differences at the plant's present state; the worst error relative to its entry.
  * With several steps each entry counts with the one that fits it best: too long a step bends, too short a one is noise.
+ * `negligible`, 1/s: an error below that much of the states' scales does not count.
  */
-export function jacobianError(plant: Plant, relativeSteps: number | readonly number[] = 1e-6): { error: number; where: string } {
+export function jacobianError(plant: Plant, relativeSteps: number | readonly number[] = 1e-6, negligible = 0): { error: number; where: string } {
   const { circuit, y, u, m } = plant;
   const n = circuit.states.length;
   const J = new Float64Array(circuit.jacobian.rows.length);
@@ -99,7 +100,8 @@ export function jacobianError(plant: Plant, relativeSteps: number | readonly num
         // rounding noise of the difference quotient itself
         const noise = (4e-16 * (Math.abs(a[i]!) + Math.abs(b[i]!)) * 1e3) / size;
         const scale = Math.max(Math.abs(slope), Math.abs(exact[i]![k]!), 1e-12);
-        const error = Math.max(0, Math.abs(slope - exact[i]![k]!) - noise) / scale;
+        const small = (negligible * circuit.states[i]!.scale) / circuit.states[k]!.scale;
+        const error = Math.max(0, Math.abs(slope - exact[i]![k]!) - noise - small) / scale;
         // false for NaN too
         if (error < least[i]!) {
           least[i] = error;
