@@ -53,7 +53,7 @@ async function main(file: string): Promise<void> {
     endWith(() => peer.close());
     return;
   }
-  const socket = createSocket({ type: 'udp4', reuseAddr: true });
+  const socket = createSocket('udp4');
   const local = { address: link.remoteAddress ?? '127.0.0.1', port: link.remotePort ?? 0 };
   const bench = { address: link.localAddress ?? '127.0.0.1', port: link.localPort ?? 0 };
   let controller: ControllerModule | undefined;
@@ -73,8 +73,9 @@ async function main(file: string): Promise<void> {
     heard = Date.now();
     endpoint.receive(bytes, bytes.length);
   });
-  socket.on('error', (error) => {
-    process.stderr.write(`controller: ${error.message}\n`);
+  socket.on('error', (error: NodeJS.ErrnoException) => {
+    const remedy = error.code === 'EADDRINUSE' ? ': another controller holds this port, end it or change the link' : '';
+    process.stderr.write(`controller: ${error.message}${remedy}\n`);
     process.exit(2);
   });
   await new Promise<void>((resolve) => socket.bind(local.port, local.address, resolve));

@@ -19,7 +19,8 @@ export class ControllerChild {
         : [process.execPath, path.join(packageRoot(), 'dist', 'tools', 'controller.js'), path.resolve(plan.wish.bench), ...(lockstep ? ['--lockstep'] : [])];
     this.child = spawn(program!, words, {
       cwd: command.length > 0 ? plan.folder : process.cwd(),
-      stdio: ['ignore', 'pipe', 'pipe'],
+      // the channel tells our own controller when this process is gone, however it went
+      stdio: ['ignore', 'pipe', 'pipe', ...(command.length > 0 ? [] : (['ipc'] as const))],
       env: { ...process.env, OILSPRING_LOCKSTEP: lockstep ? '1' : '0' },
     });
     const keep = (chunk: Buffer) => {

@@ -1,5 +1,5 @@
 import type { Acknowledgement, Hand } from '../../bridge/live/source.js';
-import { handEventNames, quietHandEvents } from '../../runtime/hand-events.js';
+import { handEventNames, isHandAct } from '../../runtime/hand-events.js';
 import { createHandRing, HandRingWriter } from '../../runtime/hand-ring.js';
 import { HAND } from '../../runtime/hand-wire.js';
 import type { RunReady } from '../loop/run-order.js';
@@ -88,7 +88,10 @@ export class HandChannel {
   /** An event came from the loop; c is the number of a request where it answers one. */
   answered(tick: number, code: number, c: number): void {
     const kind = this.kinds[code];
-    const waiting = kind !== undefined && isAnswer(kind.name) ? this.waiting.get(c) : undefined;
+    const waiting =
+      kind !== undefined && (isHandAct(kind.name) || kind.name.startsWith(handEventNames.refusals))
+        ? this.waiting.get(c)
+        : undefined;
     if (waiting === undefined || kind === undefined) return;
     this.waiting.delete(c);
     clearTimeout(waiting.timer);
@@ -133,18 +136,6 @@ export class HandChannel {
     known.people.add(hand.who);
     this.touched.set(order.name, known);
   }
-}
-
-/** Whether an event of this kind carries the number of a request. */
-function isAnswer(name: string): boolean {
-  return (
-    quietHandEvents.includes(name) ||
-    name === handEventNames.notes ||
-    name.startsWith(handEventNames.refusals) ||
-    name.startsWith('hand sets') ||
-    name === 'hand lets go' ||
-    /^scenario (held|continued|ended) by hand$/.test(name)
-  );
 }
 
 function refused(text: string): Acknowledgement {

@@ -62,9 +62,8 @@ export interface RunOutcome {
   readonly processor: number;
   /** Wall time from the order to the first counted tick, s. */
   readonly startUp: number;
+  /** How a controller that we started ended before the run did; undefined when it did not. */
   readonly controllerEnded: string | undefined;
-  /** Why the run could not be finished without its controller; undefined when it could. */
-  readonly controllerEndedEarly: string | undefined;
   /** Hands that acted on the run, one sentence each. */
   readonly hands: readonly string[];
   /** Completes the recording with the summary and closes it. */
@@ -205,7 +204,6 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     startUp,
     controllerEnded: child?.ended,
     hands: hands?.sentences() ?? [],
-    controllerEndedEarly: undefined,
     finish: async (summary) => {
       await recorder?.finish(summary);
     },

@@ -18,7 +18,7 @@ export function summarise(outcome: RunOutcome): RunSummary {
   const links = spec.map.links.map((link) => linkOf(plan.spec, link.name, value));
   const expected = spec.map.messages.filter((message) => message.direction === 'received' && message.every > 0).reduce((sum, message) => sum + ticks / message.every, 0);
   const troubled = links.reduce((sum, link) => sum + link.lost + link.late + link.malformed, 0);
-  const broken = failed?.what ?? done?.failure ?? outcome.controllerEndedEarly;
+  const broken = failed?.what ?? done?.failure;
   const judgement = judgeRun(
     {
       ticks,
@@ -42,7 +42,10 @@ export function summarise(outcome: RunOutcome): RunSummary {
         : [],
       rowsLost: (done?.dropped ?? 0) + (done?.overflows ?? 0),
       hands: spec.life.hands ? [] : outcome.hands,
-      ...(outcome.recordingFailure === undefined ? {} : { otherwise: [outcome.recordingFailure] }),
+      otherwise: [
+        ...(outcome.recordingFailure === undefined ? [] : [outcome.recordingFailure]),
+        ...(outcome.controllerEnded === undefined ? [] : [`the controller ${outcome.controllerEnded}`]),
+      ],
     },
     done?.requirements ?? [],
   );
