@@ -23,7 +23,10 @@ export interface HandEvents {
 }
 
 export const handEventNames = {
+  sets: 'hand sets',
   renews: 'hand renewed',
+  releases: 'hand lets go',
+  lapses: 'hand not renewed',
   acknowledges: 'hand acknowledged a warning',
   notes: 'note by hand',
   refusals: 'hand refused',
@@ -37,6 +40,18 @@ export const quietHandEvents: readonly string[] = [
   handEventNames.letGoAlready,
 ];
 
+/** Whether an event of this kind says that a hand acted. */
+export function isHandAct(kind: string): boolean {
+  return (
+    kind === handEventNames.renews ||
+    kind === handEventNames.acknowledges ||
+    kind === handEventNames.notes ||
+    kind === handEventNames.releases ||
+    kind.startsWith(handEventNames.sets) ||
+    /^scenario (held|continued|ended) by hand$/.test(kind)
+  );
+}
+
 export function declareHandEvents(
   events: EventCatalogue,
   targets: readonly { readonly path: string; readonly unit: string }[],
@@ -46,11 +61,13 @@ export function declareHandEvents(
   const refusal = (why: string) =>
     events.kind({ name: `${handEventNames.refusals}: ${why}`, severity: 'warning', text: `by hand: refused, ${why}` });
   return {
-    sets: Int32Array.from(targets, ({ unit }) => note(`hand sets, ${unit}`, `by hand: {subject} = {a:${unit}}`)),
+    sets: Int32Array.from(targets, ({ unit }) =>
+      note(`${handEventNames.sets}, ${unit}`, `by hand: {subject} = {a:${unit}}`),
+    ),
     renews: note(handEventNames.renews, 'by hand: {subject} held on'),
-    releases: note('hand lets go', 'by hand: {subject} let go'),
+    releases: note(handEventNames.releases, 'by hand: {subject} let go'),
     lapses: events.kind({
-      name: 'hand not renewed',
+      name: handEventNames.lapses,
       severity: 'warning',
       text: '{subject} let go by itself: its hand was not renewed for {a:s}',
     }),

@@ -12,6 +12,7 @@ import type { SignalInfo } from '../../runtime/contract.js';
 import type { ScriptSpec } from '../../runtime/script.js';
 import { pressureSettings } from '../../runtime/watch-settings.js';
 import { elementFacts } from './element-facts.js';
+import { gasCurves } from './gas-curves.js';
 
 /** s after the last sign of the page at which a hand lets go. */
 const usualDeadMan = 0.6;
@@ -133,7 +134,7 @@ function pressureFacts(
 }
 
 function accumulators(spec: BenchSpec, byPath: ReadonlyMap<string, SignalInfo>): AccumulatorFacts[] {
-  return spec.circuit.elements.flatMap(({ name, parameters }) => {
+  return spec.circuit.elements.flatMap(({ name, kind, parameters }) => {
     const [pressure, volume, temperature] = [`${name}.gasPressure`, `${name}.gasVolume`, `${name}.gasTemperature`];
     const { precharge, volume: gasVolume, maximumAllowable } = parameters;
     if (!byPath.has(pressure) || !byPath.has(volume) || precharge === undefined || gasVolume === undefined) return [];
@@ -146,6 +147,7 @@ function accumulators(spec: BenchSpec, byPath: ReadonlyMap<string, SignalInfo>):
         precharge,
         prechargeTemperature: parameters['prechargeTemperature'] ?? 293.15,
         gasVolume,
+        ...(kind.kind === 'gas-accumulator' ? { curves: gasCurves(parameters) } : {}),
         ...(maximumAllowable === undefined || maximumAllowable === 0 ? {} : { maximumAllowable }),
       },
     ];

@@ -3,23 +3,29 @@ import { join } from 'node:path';
 import { setImmediate } from 'node:timers/promises';
 import { Decimator } from '../../bridge/live/decimate.js';
 import type {
+  EventNames,
   History,
   LiveEvent,
   LiveStatus,
   RecordingEntry,
   RecordingShelf,
   RecordingView,
+  RequirementStatus,
   WarningStatus,
 } from '../../bridge/live/source.js';
 import { readBench } from '../../configs/bench.js';
 import { catalogue } from '../../configs/catalogue.js';
 import { memoryFiles } from '../../configs/files.js';
 import type { SignalInfo } from '../../runtime/contract.js';
-import type { EndBlock, RowsBlock } from '../../runtime/recording/format.js';
+import { handEventNames, isHandAct, quietHandEvents } from '../../runtime/hand-events.js';
+import { HAND, readHand } from '../../runtime/hand-wire.js';
+import type { Requirement } from '../../runtime/judge/formula.js';
+import type { EndBlock, InputsBlock, RowsBlock } from '../../runtime/recording/format.js';
 import { RecordingError } from '../../runtime/recording/format.js';
 import { Recording } from '../../runtime/recording/reader.js';
 import { emptyScript, type ScriptSpec } from '../../runtime/script.js';
 import { benchFacts } from './bench-facts.js';
+import { judgedPaths, judgedStatus, requirementFacts } from './judged.js';
 import { warningsAt } from './recorded-warnings.js';
 
 /** Intervals of the overview that is held of an open recording. */
@@ -72,7 +78,7 @@ function scriptOf(recording: Recording): ScriptSpec {
 class RecordedRun implements RecordingView {
   readonly bench: RecordingView['bench'];
   readonly signals: readonly SignalInfo[];
-  readonly events: RecordingView['events'];
+  readonly events: EventNames & { readonly subjects: string[] };
   firstTick = 0;
   lastTick = 0;
   private overview: Decimator;
@@ -82,6 +88,12 @@ class RecordedRun implements RecordingView {
   private readonly index: { at: number; number: number; first: number; last: number }[] = [];
   private readonly spec;
   private readonly script: ScriptSpec;
+  private readonly asked: readonly Requirement[];
+  /** Number of the link that carries hands. */
+  private readonly handLink: number;
+  /** What was written with notes, by request, and ticks of hands that acted. */
+  private readonly notes = new Map<number, string>();
+  private readonly handTicks: number[] = [];
   private end: EndBlock | undefined;
 
   private constructor(private readonly recording: Recording) {
@@ -90,8 +102,15 @@ class RecordedRun implements RecordingView {
     this.spec = readBench(header.bench.files[0]!.path, catalogue, memoryFiles(texts));
     this.script = scriptOf(recording);
     this.signals = header.signals as readonly SignalInfo[];
-    this.events = header.events;
-    this.bench = benchFacts({ spec: this.spec, script: this.script, recorded: this.signals });
+    this.events = { kinds: header.events.kinds, subjects: [...header.events.subjects] };
+    this.handLink = this.spec.map.links.length;
+    this.asked = [...this.spec.requirements, ...(this.script.requirements ?? [])];
+    this.bench = benchFacts({
+      spec: this.spec,
+      script: this.script,
+      recorded: this.signals,
+      requirements: requirementFacts(this.asked, this.signals),
+    });
     this.overview = new Decimator({ signals: 0, interval: 1, tiers: [{ factor: 1, slots: 1 }] });
   }
 
@@ -109,7 +128,7 @@ class RecordedRun implements RecordingView {
   }
 
   private async survey(): Promise<void> {
-    const { rows, firstTick, lastTick } = this.recording.examine();
+    const { rows, firstTick, lastTick } = await this.extent();
     if (rows === 0) throw new RecordingError(`${this.recording.file}: there is no tick in it`);
     this.firstTick = Math.max(0, firstTick);
     this.lastTick = lastTick;
@@ -127,7 +146,7 @@ class RecordedRun implements RecordingView {
       } else if (block.kind === 'events') {
         for (let i = 0; i < block.count; i += 1) {
           const [a, b, c] = block.values.subarray(3 * i, 3 * i + 3);
-          this.found.push({
+          this.takeEvent({
             tick: block.ticks[i]!,
             kind: block.codes[i]!,
             subject: block.subjects[i]!,
@@ -136,10 +155,47 @@ class RecordedRun implements RecordingView {
             c: c!,
           });
         }
+      } else if (block.kind === 'inputs') {
+        this.takeHands(block);
       } else if (block.kind === 'stamp') this.stamps.push({ tick: block.tick, wall: block.wall });
       else if (block.kind === 'end') this.end = block;
       at = this.recording.position;
       if ((read += 1) % blocksAtOnce === 0) await setImmediate();
+    }
+  }
+
+  /** Rows, first and last tick; others get their turn in between, as a run that goes on may need this thread. */
+  private async extent(): Promise<{ rows: number; firstTick: number; lastTick: number }> {
+    let rows = 0;
+    let firstTick = Number.NaN;
+    let lastTick = Number.NaN;
+    let read = 0;
+    for (const block of this.recording.blocks()) {
+      if (block.kind === 'rows' && block.count > 0) {
+        if (rows === 0) firstTick = block.ticks[0]!;
+        rows += block.count;
+        lastTick = block.ticks[block.count - 1]!;
+      }
+      if ((read += 1) % blocksAtOnce === 0) await setImmediate();
+    }
+    return { rows, firstTick, lastTick };
+  }
+
+  private takeEvent(event: LiveEvent): void {
+    const name = this.events.kinds[event.kind]?.name ?? '';
+    if (isHandAct(name)) this.handTicks.push(event.tick);
+    if (quietHandEvents.includes(name)) return;
+    const note = name === handEventNames.notes ? this.notes.get(event.c) : undefined;
+    if (note === undefined) this.found.push(event);
+    else this.found.push({ ...event, subject: this.events.subjects.push(note) - 1 });
+  }
+
+  /** Inputs stand ahead of the events of their ticks. */
+  private takeHands(block: InputsBlock): void {
+    for (let i = 0; i < block.count; i += 1) {
+      if (block.links[i] !== this.handLink) continue;
+      const hand = readHand(block.bytes.subarray(block.offsets[i], block.offsets[i + 1]));
+      if (hand?.kind === HAND.note) this.notes.set(hand.request, `${hand.text.said} (${hand.text.who})`);
     }
   }
 
@@ -182,7 +238,7 @@ class RecordedRun implements RecordingView {
         tick,
         wallClock: stamp === undefined ? 0 : stamp.wall + (tick - stamp.tick) * this.spec.step * 1000,
         notValid: this.end === undefined ? ['the recording has no end: it was cut off'] : [],
-        hands: 0,
+        hands: this.handTicks.filter((at) => at <= tick).length,
         droppedRows: this.end?.dropped ?? 0,
       },
       scenario: {
@@ -195,8 +251,18 @@ class RecordedRun implements RecordingView {
       ),
       messages: [],
       timing: { lateness: nothing, stepTime: nothing, overruns: 0, collections: 0, drift: 0 },
-      requirements: [],
+      requirements: await this.judgedAt(tick),
     };
+  }
+
+  private async judgedAt(tick: number): Promise<RequirementStatus[]> {
+    const signals = this.asked.flatMap(judgedPaths).map((path) => this.signals.findIndex((info) => info.path === path));
+    const known = signals.filter((at) => at >= 0);
+    if (known.length === 0) return [];
+    const { most, ticks } = await this.history(known, tick, tick, 1);
+    const value = (at: number | undefined) =>
+      at === undefined || at < 0 ? undefined : most[known.indexOf(at) * ticks.length];
+    return this.asked.map((_, i) => judgedStatus(value(signals[2 * i]), value(signals[2 * i + 1]), tick));
   }
 
   /** The events say what a value was when a level began; how far it went stands in the rows. */

@@ -61,7 +61,7 @@ export class RunSource implements LiveSource {
     const { tick, code, a, b, c } = event;
     const kind = this.events.kinds[code];
     if (kind === undefined || quietHandEvents.includes(kind.name)) return;
-    if (kind.name === 'hand not renewed') this.held.delete(this.events.subjects[event.subject] ?? '');
+    if (kind.name === handEventNames.lapses) this.held.delete(this.events.subjects[event.subject] ?? '');
     const told: LiveEvent = { tick, kind: code, subject: this.subjectOf(kind.name, event.subject, c), a, b, c };
     for (const sink of this.sinks) sink.event(told);
   }

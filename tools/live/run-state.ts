@@ -8,6 +8,7 @@ import type {
   TimingStatus,
   WarningStatus,
 } from '../../bridge/live/source.js';
+import type { Requirement } from '../../runtime/judge/formula.js';
 import type { Histogram } from '../../runtime/realtime/histogram.js';
 import { judgeRun, type Measured } from '../../runtime/verdict.js';
 import { laddersOf } from '../../runtime/watch-ladders.js';
@@ -16,6 +17,7 @@ import { describeWarning } from '../../runtime/watch-log.js';
 import { SLOT } from '../../runtime/watch-tables.js';
 import type { RunReady } from '../loop/run-order.js';
 import type { RunView } from '../run/host-run.js';
+import { judgedPaths, judgedStatus, requirementFacts } from './judged.js';
 import { MessageRates } from './message-rates.js';
 
 /** Upper edges of the buckets that people see, s. */
@@ -26,7 +28,11 @@ const edges = [
 
 /** Everything about a run that is no signal, from the board, the timing counts and what the host knows itself. */
 export class RunState {
-  readonly requirements: readonly RequirementFacts[] = [];
+  readonly requirements: readonly RequirementFacts[];
+  private readonly asked: readonly Requirement[];
+  /** Margins as last seen, and when they came to be. */
+  private readonly margins: number[] = [];
+  private readonly since: number[] = [];
   private readonly messages: MessageRates;
   private readonly ladders;
   private readonly firstWarning: number;
@@ -35,9 +41,11 @@ export class RunState {
 
   constructor(
     private readonly view: RunView,
-    _ready: RunReady,
+    ready: RunReady,
   ) {
-    const { spec } = view.plan;
+    const { spec, script } = view.plan;
+    this.asked = [...spec.requirements, ...script.requirements];
+    this.requirements = requirementFacts(this.asked, ready.signals);
     this.messages = new MessageRates(spec);
     this.ladders = spec.watched.flatMap((watched) => laddersOf(watched, spec.ambient.pressure));
     const [first] = this.ladders;
@@ -54,7 +62,7 @@ export class RunState {
       warnings: this.warnings(),
       messages: this.messages.status(tick, (path) => this.view.board?.value(path)),
       timing: this.timing(),
-      requirements: this.judged(),
+      requirements: this.judged(tick),
     };
   }
 
@@ -183,8 +191,15 @@ export class RunState {
     };
   }
 
-  private judged(): RequirementStatus[] {
-    return [];
+  private judged(tick: number): RequirementStatus[] {
+    const { board } = this.view;
+    return this.asked.map((requirement, i) => {
+      const [verdict, margin] = judgedPaths(requirement);
+      const now = board?.value(margin) ?? Number.NaN;
+      if (!Object.is(now, this.margins[i])) this.since[i] = tick;
+      this.margins[i] = now;
+      return judgedStatus(board?.value(verdict), now, this.since[i]!);
+    });
   }
 }
 
