@@ -1,6 +1,7 @@
 import type { EnergyPart } from './energy-parts.js';
 import type { Severity } from './judge/formula.js';
 import type { RequirementVerdict } from './judge/result.js';
+import type { CodeReport } from './realtime/code-watch.js';
 import type { TimingSummary } from './realtime/timing-record.js';
 import type { Invalidity, RunVerdict } from './verdict.js';
 import type { WatchWarning } from './watch-log.js';
@@ -35,7 +36,21 @@ export interface RunSummary {
   /** Simulated time over wall time of the counted ticks. */
   readonly realTimeFactor: number;
   readonly timing: RunTiming;
-  readonly startUp: { readonly build: number; readonly warmUp: number; readonly total: number };
+  /** s, by part: loading the loop thread's modules, building the bench, dry run, taking links and rights, pre-roll. */
+  readonly startUp: {
+    readonly load?: number;
+    readonly build: number;
+    readonly warmUp: number;
+    readonly attach?: number;
+    readonly preRoll?: number;
+    readonly total: number;
+    /** Ticks of the dry run, processor time of one of its last, s, and whether that had settled. */
+    readonly dryTicks?: number;
+    readonly dryTick?: number;
+    readonly settled?: boolean;
+  };
+  /** Whether the code of the loop stayed what it was at the first counted tick; absent at fast pace. */
+  readonly code?: CodeReport;
   readonly scheduling: { readonly policy: string; readonly words: readonly string[] };
   /** Processor time in the counted ticks: of the loop thread, and of all threads of the process, s. */
   readonly processor: { readonly loop: number; readonly all: number };

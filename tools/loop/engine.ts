@@ -1,6 +1,7 @@
 import type { Assembly } from '../../configs/assemble.js';
 import { hashText } from '../../runtime/block.js';
 import { Clock } from '../../runtime/realtime/clock.js';
+import type { CodeWatch } from '../../runtime/realtime/code-watch.js';
 import type { Pacer } from '../../runtime/realtime/pacer.js';
 import { PACER } from '../../runtime/realtime/pacer.js';
 import type { BoardWriter } from '../../runtime/status-board.js';
@@ -24,19 +25,23 @@ export interface LoopOptions {
   readonly assembly: Assembly;
   /** Number of counted ticks to run. */
   readonly ticks: number;
+  /** The first tick; default: the bench's. */
+  readonly firstTick?: number | undefined;
   readonly shared: LoopControl;
   /** Barriers to be told the end of each tick. */
   readonly barriers: readonly Barrier[];
   /** Live: paces the ticks. Absent: as fast as it goes. */
-  readonly pacer?: Pacer;
+  readonly pacer?: Pacer | undefined;
   /** Live: indices of the signals that get lateness and step of the tick before, s. */
-  readonly timingSignals?: { readonly lateness: number; readonly step: number };
+  readonly timingSignals?: { readonly lateness: number; readonly step: number } | undefined;
   /** What the host may look at between rows. */
-  readonly board?: BoardWriter;
+  readonly board?: BoardWriter | undefined;
   /** Largest values are kept of these signals. */
   readonly peaks: Int32Array;
+  /** Asked in every tick whether the code is still what it was. */
+  readonly code?: CodeWatch | undefined;
   /** Called between the pre-roll and tick 0, and once after the last tick. */
-  readonly onCount?: () => void;
+  readonly onCount?: (() => void) | undefined;
 }
 
 export interface LoopEnd {
@@ -53,61 +58,108 @@ export interface LoopEnd {
   readonly processor: number;
 }
 
+/**
+ * What one tick of the loop does besides the bench's own tick, as a class: a method is compiled once and stays so, while
+ * the body of a function that runs for ever has to be replaced under way, and boxes every number until then.
+ */
+export class LoopBody {
+  readonly peaks: Float64Array;
+  private readonly assembly: Assembly;
+  private readonly block: Float64Array;
+  private readonly signals: Float64Array;
+  private readonly control: Int32Array;
+  private readonly progress: Float64Array;
+  private readonly ticks: number;
+  private readonly peakSignals: Int32Array;
+  private readonly barriers: readonly Barrier[];
+  private readonly pacer: Pacer | undefined;
+  private readonly board: BoardWriter | undefined;
+  private readonly code: CodeWatch | undefined;
+  private readonly lateness: number;
+  private readonly step: number;
+
+  constructor(options: LoopOptions) {
+    const { assembly, shared } = options;
+    this.assembly = assembly;
+    this.block = assembly.block;
+    this.signals = assembly.signals;
+    this.control = shared.control;
+    this.progress = shared.progress;
+    this.ticks = options.ticks;
+    this.peakSignals = options.peaks;
+    this.peaks = new Float64Array(options.peaks.length).fill(Number.NEGATIVE_INFINITY);
+    this.barriers = options.barriers;
+    this.pacer = options.pacer;
+    this.board = options.board;
+    this.code = options.code;
+    this.lateness = options.timingSignals?.lateness ?? -1;
+    this.step = options.timingSignals?.step ?? -1;
+  }
+
+  /** Waits for the tick's deadline (live) and shows how late the last one was. */
+  wait(tick: number): void {
+    const { pacer, signals, lateness } = this;
+    if (pacer === undefined) return;
+    pacer.wait();
+    if (lateness < 0 || tick <= 0) return;
+    signals[lateness] = pacer.times[PACER.lateness]! * 1e-9;
+    signals[this.step] = pacer.times[PACER.step]! * 1e-9;
+  }
+
+  /** Runs tick number `tick`; true when the loop is to go on. */
+  run(tick: number): boolean {
+    const { assembly, block, signals, barriers, board, peaks, peakSignals } = this;
+    assembly.tick.run(tick);
+    for (let i = 0; i < barriers.length; i += 1) barriers[i]!.end(tick);
+    if (tick >= 0) {
+      for (let i = 0; i < peaks.length; i += 1) {
+        const value = signals[peakSignals[i]!]!;
+        if (value > peaks[i]!) peaks[i] = value;
+      }
+    }
+    this.progress[PROGRESS.tick] = tick;
+    if (board !== undefined && tick % board.every === 0) board.write(block, signals, tick);
+    if (this.code !== undefined) this.code.check(tick);
+    return !(assembly.plant.solver.failed || this.control[CONTROL.stop] !== 0 || block[assembly.hands.endedSlot] !== 0);
+  }
+
+  /** True past the last counted tick: a scenario that was held by hand ends later by as much. */
+  over(tick: number): boolean {
+    return tick >= this.ticks + this.block[this.assembly.scriptDelaySlot]!;
+  }
+}
+
 /** Runs an assembled bench from its first tick. Nothing in the loop allocates. */
 export function runLoop(options: LoopOptions): LoopEnd {
-  const { assembly, shared, pacer, barriers } = options;
-  const { tick: stage, block, signals, plant, firstTick, hands } = assembly;
-  const { control, progress } = shared;
+  const { assembly, shared, pacer, board } = options;
+  const { tick: stage, block, signals, plant, hands } = assembly;
+  const firstTick = options.firstTick ?? assembly.firstTick;
+  const { control } = shared;
   const clock = new Clock();
   const times = new Float64Array(4);
-  const peaks = new Float64Array(options.peaks.length).fill(Number.NEGATIVE_INFINITY);
-  const timing = options.timingSignals;
-  const board = options.board;
-  const delay = assembly.scriptDelaySlot;
+  const body = new LoopBody(options);
   let tick = firstTick;
   let failure: string | undefined;
-  const last = options.ticks;
   Atomics.store(control, CONTROL.phase, firstTick < 0 ? 2 : 3);
   try {
     pacer?.begin();
-    // a scenario that was held by hand ends later by as much
-    for (; tick < last + block[delay]!; tick += 1) {
+    while (!body.over(tick)) {
       if (tick === 0) {
         options.onCount?.();
         pacer?.count();
       }
-      if (pacer) {
-        pacer.wait();
-        if (timing && tick > 0) {
-          signals[timing.lateness] = pacer.times[PACER.lateness]! * 1e-9;
-          signals[timing.step] = pacer.times[PACER.step]! * 1e-9;
-        }
-      }
+      body.wait(tick);
       if (tick === 0) {
         Atomics.store(control, CONTROL.phase, 3);
         clock.now(times, 0);
         clock.threadTime(times, 1);
       }
-      stage.run(tick);
-      for (let i = 0; i < barriers.length; i += 1) barriers[i]!.end(tick);
-      if (tick >= 0) {
-        for (let i = 0; i < peaks.length; i += 1) {
-          const value = signals[options.peaks[i]!]!;
-          if (value > peaks[i]!) peaks[i] = value;
-        }
-      }
-      progress[PROGRESS.tick] = tick;
-      if (board && tick % board.every === 0) board.write(block, signals, tick);
-      if (plant.solver.failed) {
-        failure = `the plant has no finite state any more after tick ${tick}: see \`oilspring check\` for its fastest modes and accuracy`;
-        tick += 1;
-        break;
-      }
-      if (control[CONTROL.stop] !== 0 || block[hands.endedSlot] !== 0) {
-        tick += 1;
-        break;
-      }
+      const goesOn = body.run(tick);
+      tick += 1;
+      if (!goesOn) break;
     }
+    if (plant.solver.failed)
+      failure = `the plant has no finite state any more after tick ${tick - 1}: see \`oilspring check\` for its fastest modes and accuracy`;
     pacer?.finish();
   } catch (error) {
     failure = error instanceof Error ? error.message : String(error);
@@ -121,7 +173,7 @@ export function runLoop(options: LoopOptions): LoopEnd {
   return {
     ticks: counted,
     stopped: control[CONTROL.stop] !== 0 || block[hands.endedSlot] !== 0,
-    peaks,
+    peaks: body.peaks,
     hash: hashText(stage.hash[0]!, stage.hash[1]!),
     ...(failure === undefined ? {} : { failure }),
     wall: counted > 0 ? (times[2]! - times[0]!) * 1e-9 : 0,

@@ -1,30 +1,30 @@
 import { parentPort, workerData } from 'node:worker_threads';
 import v8 from 'node:v8';
-import { noTransport } from '../../bridge/transport.js';
 import { type Assembly, assemble } from '../../configs/assemble.js';
 import { readBench } from '../../configs/bench.js';
-import type { BenchSpec } from '../../configs/bench-spec.js';
 import { memoryFiles } from '../../configs/files.js';
 import { globTest } from '../../configs/signal-list.js';
 import { BuildError } from '../../runtime/contract.js';
 import { noHands } from '../../runtime/hand.js';
-import { noJournal } from '../../runtime/journal.js';
 import { eachSignal } from '../../runtime/judge/formula.js';
 import { CollectionMeter, collectNow } from '../../runtime/realtime/collection-meter.js';
 import { whyNotLive } from '../../runtime/realtime/ffi.js';
+import { holdIdleStates } from '../../runtime/realtime/idle-states.js';
+import { lockMemory } from '../../runtime/realtime/memory-lock.js';
 import { Pacer } from '../../runtime/realtime/pacer.js';
-import { enterScheduling, type Scheduling } from '../../runtime/realtime/scheduling.js';
+import { enterScheduling } from '../../runtime/realtime/scheduling.js';
 import { TimingRecord } from '../../runtime/realtime/timing-record.js';
 import { HandRing } from '../../runtime/hand-ring.js';
 import { RingJournal } from '../../runtime/ring-journal.js';
+import { noMeter } from '../../runtime/tick.js';
 import { catalogue as library } from '../../configs/catalogue.js';
-import { attachLinks, attachModule } from './attach-links.js';
+import { attachLinks } from './attach-links.js';
 import { loadController } from './controller-module.js';
-import { createLoopControl, runLoop } from './engine.js';
-import { rehearseHands } from './rehearse-hands.js';
+import { CONTROL, createLoopControl, runLoop } from './engine.js';
 import type { LoopMessage, RunOrder } from './run-order.js';
 import { StageClock } from './stage-meter.js';
 import { statusBoard } from './status.js';
+import { hotCode, type WarmUpResult, warmUp } from './warm-up.js';
 
 /**
  * The loop thread: builds the bench, warms up, runs all ticks with its own sockets, and ends. It shares rings and a few
@@ -34,17 +34,20 @@ import { statusBoard } from './status.js';
 v8.setFlagsFromString('--max-inlined-bytecode-size=2000');
 v8.setFlagsFromString('--max-inlined-bytecode-size-cumulative=6000');
 
-/** Ticks of the dry run before a live run: after these, steps take what they will take. */
-const warmUpTicks = { live: 20_000, fast: 0 };
-const scriptEvery = 1;
+/** What was taken of the machine, to be given back on every way out. */
+const taken: { restore(): void }[] = [];
 
 const port = parentPort!;
 const say = (message: LoopMessage) => port.postMessage(message);
 
-void main(workerData as RunOrder).catch((error: unknown) => {
-  const code = error instanceof BuildError ? 2 : 5;
-  say({ kind: 'failed', what: error instanceof Error ? error.message : String(error), code });
-});
+void main(workerData as RunOrder)
+  .catch((error: unknown) => {
+    const code = error instanceof BuildError ? 2 : 5;
+    say({ kind: 'failed', what: error instanceof Error ? error.message : String(error), code });
+  })
+  .finally(() => {
+    for (const one of taken.reverse()) one.restore();
+  });
 
 async function main(order: RunOrder): Promise<void> {
   if (order.pace === 'live' && whyNotLive() !== '') throw new BuildError([{ path: 'run --pace live', what: whyNotLive(), remedy: 'use --pace fast here' }]);
@@ -54,25 +57,56 @@ async function main(order: RunOrder): Promise<void> {
   const assembly = assemble(spec, { seed: order.seed, script: order.script });
   const built = performance.now();
   const selection = choose(assembly, order.patterns);
+  const live = order.pace === 'live';
+  const shared = createLoopControl(order.control);
   const journal = new RingJournal(order.ring, selection);
+  const board = statusBoard(assembly);
+  const peaks = Int32Array.from(order.peaks, (path) => requireSignal(assembly, path));
+  const pacer = live ? new Pacer({ period: Math.round(spec.step * 1e9), record: new TimingRecord(order.timing) }) : undefined;
+  const lateness = assembly.table.find('timing.lateness');
+  const timingSignals = live && lateness >= 0 ? { lateness, step: assembly.table.find('timing.step') } : undefined;
+  const meter = order.profile ? new StageClock() : undefined;
+  if (meter) assembly.tick.meter = meter;
+  const code = hotCode(assembly, [journal, board.writer, ...(pacer ? [pacer, pacer.record.step] : [])]);
 
-  if (order.pace === 'live') await warmUp(assembly, spec, order);
-  const warmed = performance.now();
+  let warmed: WarmUpResult = { ticks: 0, tick: 0, settled: true };
+  if (live) {
+    Atomics.store(shared.control, CONTROL.phase, 1);
+    warmed = warmUp({
+      assembly,
+      selection,
+      partner: order.controller.kind,
+      factory: spec.controller?.module === undefined || spec.map.links.length === 0 ? undefined : await loadController(order.folder, spec.controller.module),
+      hands: order.hands !== undefined,
+      board: statusBoard(assembly).writer,
+      peaks,
+      timingSignals,
+      meter: meter ?? noMeter,
+      code,
+      stopped: () => Atomics.load(shared.control, CONTROL.stop) !== 0,
+    });
+  }
+  const warm = performance.now();
   const links = await attachLinks(order, spec, assembly.exchange);
+  taken.push({ restore: () => links.close() });
   assembly.exchange.setJournal(journal);
   assembly.tick.journal = journal;
   assembly.watch.journal = journal;
   assembly.hands.source = order.hands === undefined ? noHands : new HandRing(order.hands);
-  const board = statusBoard(assembly);
-  const meter = order.profile ? new StageClock() : undefined;
-  if (meter) assembly.tick.meter = meter;
 
-  let scheduling: Scheduling | undefined;
-  if (order.pace === 'live') {
-    Pacer.warmUp();
+  let policy = 'SCHED_OTHER';
+  let words = ['fast pace: no scheduling asked for'];
+  if (live) {
     collectNow();
+    const idle = holdIdleStates();
+    taken.push({ restore: () => idle.release() });
+    const memory = lockMemory([assembly.block, assembly.signals, new Uint8Array(order.ring.memory), new Uint8Array(order.timing)]);
+    taken.push({ restore: () => memory.release() });
+    const scheduling = enterScheduling(order.core === undefined ? {} : { core: order.core });
+    taken.push(scheduling);
+    policy = scheduling.policy;
+    words = [...scheduling.words, memory.words, idle.words];
   }
-  if (order.pace === 'live') scheduling = enterScheduling(order.core === undefined ? {} : { core: order.core });
   say({
     kind: 'ready',
     signals: [...selection].map((index) => {
@@ -85,36 +119,45 @@ async function main(order: RunOrder): Promise<void> {
     hands: assembly.handTargets.map(({ path, unit }) => ({ path, unit })),
     board: board.handle,
     block: Array.from({ length: assembly.layout.length }, (_, i) => assembly.layout.path(i)),
-    scheduling: scheduling?.words ?? ['fast pace: no scheduling asked for'],
-    policy: scheduling?.policy ?? 'SCHED_OTHER',
-    startUp: { build: (built - began) / 1000, warmUp: (warmed - built) / 1000 },
+    scheduling: words,
+    policy,
+    startUp: {
+      load: Math.max(0, performance.timeOrigin + began - order.ordered) / 1000,
+      build: (built - began) / 1000,
+      warmUp: (warm - built) / 1000,
+      attach: (performance.now() - warm) / 1000,
+      preRoll: live ? spec.life.preRoll * spec.step : 0,
+      dryTicks: warmed.ticks,
+      dryTick: warmed.tick * 1e-9,
+      settled: warmed.settled,
+    },
   });
 
   const meterOfCollections = new CollectionMeter();
   let collections = { collections: 0, longest: 0, allocated: 0 };
   let counting = false;
-  const pacer = order.pace === 'live' ? new Pacer({ period: Math.round(spec.step * 1e9), record: new TimingRecord(order.timing) }) : undefined;
-  const lateness = assembly.table.find('timing.lateness');
   const end = runLoop({
     assembly,
     ticks: order.ticks,
-    shared: createLoopControl(order.control),
+    firstTick: assembly.firstTick,
+    shared,
     barriers: links.barriers,
     board: board.writer,
-    ...(pacer ? { pacer } : {}),
-    ...(pacer && lateness >= 0 ? { timingSignals: { lateness, step: assembly.table.find('timing.step') } } : {}),
-    peaks: Int32Array.from(order.peaks, (path) => requireSignal(assembly, path)),
+    pacer,
+    timingSignals,
+    peaks,
+    code: live ? code : undefined,
     onCount: () => {
       if (!counting) {
         meter?.reset();
+        if (live) code.begin();
         meterOfCollections.start();
       } else collections = meterOfCollections.stop();
       counting = true;
     },
   });
-  scheduling?.restore();
+  code.finish(end.ticks);
   journal.close();
-  links.close();
   const shares = assembly.ledger.shares(assembly.block, assembly.signals);
   say({
     kind: 'done',
@@ -131,6 +174,7 @@ async function main(order: RunOrder): Promise<void> {
       turnover: assembly.signals[assembly.table.find('ledger.turnover')]!,
       stuffs: shares.stuffs,
     },
+    code: code.report(),
     collections: collections.collections,
     longestCollection: collections.longest,
     heapGrowth: collections.allocated,
@@ -163,29 +207,4 @@ function requireSignal(assembly: Assembly, path: string): number {
   if (index >= 0) return index;
   const near = assembly.table.nearest(path);
   throw new BuildError([{ path: 'record.signals', what: `no signal \`${path}\``, remedy: near.length > 0 ? `did you mean ${near.join(' or ')}?` : 'see `oilspring list signals BENCH`' }]);
-}
-
-/** Runs the very tick that will count, on the same arrays, and throws the state away: everything that it remembers stands in the block. */
-async function warmUp(assembly: Assembly, spec: BenchSpec, order: RunOrder): Promise<void> {
-  if (spec.map.links.length > 0 && spec.controller?.module !== undefined) {
-    const factory = await loadController(order.folder, spec.controller.module);
-    const barrier = attachModule(spec, assembly.exchange, factory, scriptEvery);
-    dryRun(assembly, order.hands !== undefined, (tick) => barrier.end(tick));
-  } else dryRun(assembly, order.hands !== undefined, () => {});
-  for (const one of spec.map.links) assembly.exchange.attach(one.name, noTransport);
-  assembly.reset();
-}
-
-function dryRun(assembly: Assembly, hands: boolean, end: (tick: number) => void): void {
-  assembly.tick.journal = noJournal;
-  const rehearse = hands ? rehearseHands(assembly) : undefined;
-  for (let round = 0; round < 2; round += 1) {
-    assembly.reset();
-    const last = assembly.firstTick + warmUpTicks.live / 2;
-    for (let tick = assembly.firstTick; tick < last; tick += 1) {
-      rehearse?.(tick);
-      assembly.tick.run(tick);
-      end(tick);
-    }
-  }
 }

@@ -1,5 +1,6 @@
 import type { EnergyPart } from '../../runtime/energy-parts.js';
 import type { RequirementResult } from '../../runtime/judge/result.js';
+import type { CodeReport } from '../../runtime/realtime/code-watch.js';
 import type { ScriptSpec } from '../../runtime/script.js';
 import type { RingHandle } from '../../runtime/ring.js';
 import type { BoardHandle } from '../../runtime/status-board.js';
@@ -32,6 +33,8 @@ export interface RunOrder {
   /** Measure each stage of the tick. */
   readonly profile: boolean;
   readonly core: number | undefined;
+  /** When the host gave the order, ms since 1970. */
+  readonly ordered: number;
 }
 
 /** What the loop thread says when the bench is built, before the first tick. */
@@ -55,7 +58,22 @@ export interface RunReady {
   readonly scheduling: readonly string[];
   readonly policy: string;
   /** s, by part. */
-  readonly startUp: { readonly build: number; readonly warmUp: number };
+  readonly startUp: StartUp;
+}
+
+/** What happens before the first tick, s, by part. */
+export interface StartUp {
+  /** From the order to the loaded modules of the loop thread. */
+  readonly load: number;
+  readonly build: number;
+  readonly warmUp: number;
+  /** Links, scheduling, locked memory, a clean heap. */
+  readonly attach: number;
+  readonly preRoll: number;
+  /** Ticks of the dry run, processor time of one of its last, s, and whether that had settled. */
+  readonly dryTicks: number;
+  readonly dryTick: number;
+  readonly settled: boolean;
 }
 
 /** What it says at the end. */
@@ -69,6 +87,8 @@ export interface RunDone {
   readonly hash: string;
   readonly peaks: Readonly<Record<string, number>>;
   readonly ledger: { readonly energyResidual: number; readonly oilResidual: number; readonly turnover: number; readonly stuffs: Readonly<Record<string, number>> };
+  /** Whether the code of the loop stayed what it was at the first counted tick. */
+  readonly code: CodeReport;
   readonly collections: number;
   readonly longestCollection: number;
   readonly heapGrowth: number;

@@ -96,6 +96,7 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     peaks: spec.record.peaks,
     profile: wish.profile ?? false,
     core: wish.core,
+    ordered: performance.timeOrigin + began,
   };
   const child = plan.controller.kind === 'process' && plan.controller.command !== undefined ? new ControllerChild(plan, plan.controller.command) : undefined;
   let ready: RunReady | undefined;
