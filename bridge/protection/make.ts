@@ -1,3 +1,4 @@
+import { bitsOf } from '../can-bits.js';
 import type { MessageSpec } from '../message-map.js';
 import { crcs } from './crc.js';
 import { type DataIdMode, ListProfile, LongProfile, NibbleProfile, ShortProfile } from './end-to-end.js';
@@ -39,9 +40,18 @@ export interface ProtectionFault {
   readonly remedy: string;
 }
 
+/** A field of the payload that the protection fills, numbered as in CAN database text. */
+export interface ProtectionField {
+  readonly name: 'counter' | 'checksum' | 'dataId' | 'length';
+  readonly startBit: number;
+  readonly length: number;
+  readonly byteOrder: 'little' | 'big';
+}
+
 export interface ReadProtection {
   readonly protector: Protector | undefined;
-  /** Bits of the payload that counter and check take, numbered as in CAN database text. */
+  readonly fields: readonly ProtectionField[];
+  /** All bits of the fields. */
   readonly bits: readonly number[];
   readonly faults: readonly ProtectionFault[];
 }
@@ -60,13 +70,14 @@ export function makeProtector(message: MessageSpec): Protector | undefined {
 /** Reads the settings of a message's protection. */
 export function readProtection(message: MessageSpec): ReadProtection {
   const { protection } = message;
-  if (!protection) return { protector: undefined, bits: [], faults: [] };
+  if (!protection) return { protector: undefined, fields: [], bits: [], faults: [] };
   const reader = new Reader(message);
   const { kind } = protection;
   if (!Object.hasOwn(protectionKinds, kind)) {
     const known = Object.keys(protectionKinds).join(', ');
     return {
       protector: undefined,
+      fields: [],
       bits: [],
       faults: [{ what: 'unknown protection', value: kind, bound: `known: ${known}`, remedy: 'choose one of them' }],
     };
@@ -75,7 +86,8 @@ export function readProtection(message: MessageSpec): ReadProtection {
   for (const key of Object.keys(protection.settings))
     if (!allowed.includes(key))
       reader.fail(`unknown setting of ${kind}`, key, `known: ${allowed.join(', ')}`, 'remove it');
-  const { protector, bits } = kind.startsWith('e2e-') ? endToEnd(kind, reader) : plain(kind, reader);
+  const { protector, fields } = kind.startsWith('e2e-') ? endToEnd(kind, reader) : plain(kind, reader);
+  const bits = fields.flatMap((field) => bitsOf({ ...field, signed: false, float: false, scale: 1, offset: 0 }));
   if (bits.some((bit) => bit >= reader.bytes * 8))
     reader.fail(
       'counter or check beyond the payload',
@@ -83,11 +95,30 @@ export function readProtection(message: MessageSpec): ReadProtection {
       `${reader.bytes} bytes`,
       'make the message longer',
     );
-  return { protector: reader.faults.length > 0 ? undefined : protector, bits, faults: reader.faults };
+  return { protector: reader.faults.length > 0 ? undefined : protector, fields, bits, faults: reader.faults };
 }
 
-function plain(kind: string, reader: Reader): { protector: Protector; bits: number[] } {
-  const bits: number[] = [];
+interface Made {
+  protector: Protector;
+  fields: ProtectionField[];
+}
+
+/** A field of whole bytes from byte `at` on. */
+function byteField(
+  name: ProtectionField['name'],
+  at: number,
+  bytes: number,
+  byteOrder: 'little' | 'big',
+): ProtectionField {
+  return { name, startBit: 8 * at + (byteOrder === 'big' ? 7 : 0), length: 8 * bytes, byteOrder };
+}
+
+function bitField(name: ProtectionField['name'], startBit: number, length: number): ProtectionField {
+  return { name, startBit, length, byteOrder: 'little' };
+}
+
+function plain(kind: string, reader: Reader): Made {
+  const fields: ProtectionField[] = [];
   let counter: CounterPlace | undefined;
   let check: CrcPlace | undefined;
   if (kind !== 'crc') {
@@ -95,7 +126,7 @@ function plain(kind: string, reader: Reader): { protector: Protector; bits: numb
     const length = reader.whole('length', 1, 16);
     const modulo = reader.whole('modulo', 2, 2 ** length, 2 ** length);
     counter = { start, length, modulo, mostStep: reader.mostStep(modulo) };
-    for (let i = 0; i < length; i += 1) bits.push(start + i);
+    fields.push(bitField('counter', start, length));
   }
   if (kind !== 'counter') {
     const crc = crcs[reader.choice('crc', Object.keys(crcs) as (keyof typeof crcs)[])];
@@ -109,15 +140,14 @@ function plain(kind: string, reader: Reader): { protector: Protector; bits: numb
       prefix: reader.bytesOf('prefix'),
       suffix: reader.bytesOf('suffix'),
     };
-    for (let i = 0; i < crc.width; i += 1) bits.push(8 * at + i);
+    fields.push(byteField('checksum', at, crc.width / 8, check.order));
   }
-  return { protector: new PlainProtector(counter, check), bits };
+  return { protector: new PlainProtector(counter, check), fields };
 }
 
-function endToEnd(kind: string, reader: Reader): { protector: Protector; bits: number[] } {
+function endToEnd(kind: string, reader: Reader): Made {
   const offset = reader.whole('offset', 0, 63, 0);
-  const first = 8 * offset;
-  const run = (from: number, count: number): number[] => Array.from({ length: count }, (_, i) => first + from + i);
+  const nibble = 8 * (offset + 1);
   switch (kind) {
     case 'e2e-1':
     case 'e2e-11': {
@@ -127,7 +157,11 @@ function endToEnd(kind: string, reader: Reader): { protector: Protector; bits: n
       const dataId = reader.whole('dataId', 0, mode === 'nibble' ? 0xfff : 0xffff);
       return {
         protector: new NibbleProfile(dataId, mode, offset, reader.mostStep(15)),
-        bits: run(0, mode === 'nibble' ? 16 : 12),
+        fields: [
+          byteField('checksum', offset, 1, 'little'),
+          bitField('counter', nibble, 4),
+          ...(mode === 'nibble' ? [bitField('dataId', nibble + 4, 4)] : []),
+        ],
       };
     }
     case 'e2e-2':
@@ -140,17 +174,25 @@ function endToEnd(kind: string, reader: Reader): { protector: Protector; bits: n
           '16 bytes',
           "write dataIds: '0x01 0x02 ...', one for each value of the counter",
         );
-      return { protector: new ListProfile(dataIds, offset, reader.mostStep(16)), bits: run(0, 12) };
+      return {
+        protector: new ListProfile(dataIds, offset, reader.mostStep(16)),
+        fields: [byteField('checksum', offset, 1, 'little'), bitField('counter', nibble, 4)],
+      };
     }
     case 'e2e-4':
       return {
         protector: new LongProfile(reader.whole('dataId', 0, 0xffffffff), offset, reader.mostStep(0x10000)),
-        bits: run(0, 96),
+        fields: [
+          byteField('length', offset, 2, 'big'),
+          byteField('counter', offset + 2, 2, 'big'),
+          byteField('dataId', offset + 4, 4, 'big'),
+          byteField('checksum', offset + 8, 4, 'big'),
+        ],
       };
     default:
       return {
         protector: new ShortProfile(reader.whole('dataId', 0, 0xffff), offset, reader.mostStep(0x100)),
-        bits: run(0, 24),
+        fields: [byteField('checksum', offset, 2, 'little'), byteField('counter', offset + 2, 1, 'little')],
       };
   }
 }
