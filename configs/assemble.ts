@@ -61,7 +61,7 @@ export interface AssemblyOptions {
 /** Puts a checked bench together. Throws BuildError for what only the built circuit shows. */
 export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   const script = options.script ?? emptyScript;
-  const circuit = options.circuit ?? buildCircuit(spec.circuit);
+  const circuit = options.circuit ?? buildCircuit(withStart(spec.circuit, script.start));
   const layout = new BlockLayout();
   const table = new SignalTable();
   const events = new EventCatalogue();
@@ -78,7 +78,15 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   const declared = spec.instruments.map((instrument) => declareInstrument(instrument, layout, table, spec.step, units, commandAt, shown));
   const targets = { find: (path: string) => commandAt.get(path) ?? -1, nearest: () => [...commandAt.keys()] };
 
-  const scriptStage = new Script(requireTargets(script, commandAt), spec.step, layout, table, events, targets);
+  const outputs = new Map(
+    spec.instruments
+      .filter((instrument) => instrument.kind.stage === 'before')
+      .flatMap((instrument) => Object.keys(instrument.kind.outputs).map((output) => `${instrument.name}.${output}`))
+      .map((path) => [path, table.find(path)]),
+  );
+  const said = { find: (path: string) => outputs.get(path) ?? -1 };
+  const known = new Set([...commandAt.keys(), ...outputs.keys()]);
+  const scriptStage = new Script(requireTargets(script, known), spec.step, layout, table, events, targets, said);
   const ledgerSignals = declareLedger(table, circuit);
   const ledgerSlots = {
     turnover: layout.addMany('ledger.turnover', throughputs(circuit).length),
@@ -121,6 +129,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     link: spec.map.links.length,
   });
   commandAt.set('watch.acknowledge', watch.acknowledgeSlot);
+  scriptStage.bind(table);
   const judge = new JudgeStage({
     requirements: [...spec.requirements, ...script.requirements],
     signals: table,
@@ -156,6 +165,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     block.set(initial);
     signals.fill(0);
     judge.reset();
+    scriptStage.reset();
     plant.reset();
     plant.solver.clear();
     signals.set(plant.observed, 0);
@@ -186,6 +196,18 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     handTargets,
     scriptDelaySlot: scriptStage.delaySlot,
     warnings: () => watch.warnings(block),
+  };
+}
+
+/** The circuit with a scenario's start values over those of the bench. */
+function withStart(circuit: BenchSpec['circuit'], start: ScriptSpec['start']): BenchSpec['circuit'] {
+  if (start === undefined) return circuit;
+  return {
+    ...circuit,
+    elements: circuit.elements.map((element) => {
+      const own = start[element.name];
+      return own === undefined ? element : { ...element, start: { ...element.start, ...own } };
+    }),
   };
 }
 
@@ -386,14 +408,14 @@ function stageOf(spec: BenchSpec, updates: readonly InstrumentUpdate[], stage: '
   return updates.filter((_, i) => spec.instruments[i]!.kind.stage === stage);
 }
 
-function requireTargets(script: ScriptSpec, commandAt: ReadonlyMap<string, number>): ScriptSpec {
+function requireTargets(script: ScriptSpec, known: ReadonlySet<string>): ScriptSpec {
   const problems: Problem[] = [];
   const named = [
     ...script.traces.map((trace) => ['traces', trace.target] as const),
     ...script.steps.map((step) => [`steps (${step.name})`, step.target] as const),
   ];
   for (const [where, target] of named) {
-    if (target !== '' && !commandAt.has(target))
+    if (target !== '' && !known.has(target))
       problems.push({
         path: `${script.name}: ${where}`,
         what: `no command \`${target}\``,

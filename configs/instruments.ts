@@ -65,21 +65,6 @@ export function declareInstruments(top: Section, catalogue: Catalogue, names: Na
     }
   }
   for (const { one } of waiting) signals.unread.add(one.name);
-  for (const { name, kind, said } of pending) {
-    const sensed = [...said].find(([input]) => kind.inputs[input]!.anyUnit);
-    const inputUnit = sensed && inputSignal({ name, kind }, sensed[0], sensed[1], signals)?.unit;
-    for (const [command, { unit, about, least, most }] of Object.entries(kind.commands ?? {})) {
-      if (unit === 'input' && inputUnit === undefined) continue;
-      signals.add({
-        path: `${name}.${command}`,
-        group: 'command',
-        unit: unit === 'input' ? inputUnit! : unit,
-        about,
-        ...(least === undefined ? {} : { least }),
-        ...(most === undefined ? {} : { most }),
-      });
-    }
-  }
   for (const one of pending) addCommands(one, signals);
   return pending;
 }
@@ -104,7 +89,7 @@ function outputInfo(one: Pending, output: string, signals: SignalList): SignalIn
 
 /** Commands of an instrument are signals like those of an element; `input` as unit stands for that of its input. */
 function addCommands(one: Pending, signals: SignalList): void {
-  for (const [name, { unit, about, least, most }] of Object.entries(one.kind.commands ?? {})) {
+  for (const [name, { unit, about, least, most, fault, rest, difference }] of Object.entries(one.kind.commands ?? {})) {
     const free = Object.entries(one.kind.inputs).find(([, declaration]) => declaration.anyUnit)?.[0];
     const said = free === undefined ? undefined : one.said.get(free);
     const ofInput = said && free !== undefined ? inputSignal(one, free, said, signals)?.unit : undefined;
@@ -115,6 +100,8 @@ function addCommands(one: Pending, signals: SignalList): void {
       about,
       ...(least === undefined ? {} : { least }),
       ...(most === undefined ? {} : { most }),
+      ...(difference === undefined ? {} : { difference }),
+      ...(fault ? { withoutFault: rest } : {}),
     });
   }
 }

@@ -22,6 +22,8 @@ export interface RequirementContext {
   readonly signals: { find(path: string): SignalInfo | undefined; nearest(path: string): readonly string[] };
   /** Tick length, s. */
   readonly step: number;
+  /** The text is a condition that something waits for, not a requirement: it does not say when. */
+  readonly present?: boolean;
 }
 
 const relations: readonly Relation[] = ['<=', '>=', '<', '>'];
@@ -70,7 +72,7 @@ export function parseFormula(
     report(error);
     return undefined;
   }
-  const wrong = examineFormula(formula);
+  const wrong = examineFormula(context.present ? { is: 'always', from: 0, to: null, of: { is: 'happens', of: formula } } : formula);
   for (const problem of wrong) report(new TextError(parser.places.get(problem.at) ?? 0, problem.what, problem.remedy));
   return wrong.length === 0 ? formula : undefined;
 }

@@ -1,12 +1,17 @@
 import type { SignalInfo } from '../runtime/contract.js';
-import type { ScriptSpec, ScriptStep, ScriptTrace } from '../runtime/script.js';
+import type { ScriptSpec, ScriptTrace } from '../runtime/script.js';
 import type { BenchSpec } from './bench-spec.js';
 import type { DriveCycle } from './cycles/cycle.js';
 import * as european from './cycles/europe.js';
-import { diskFiles, type Files } from './files.js';
+import { dirname, normalize } from 'node:path';
+import { diskFiles, type Files, inside } from './files.js';
 import { Problems } from './problems.js';
 import { type Expected, parseQuantity, QuantityError, shown } from './quantity.js';
-import { type Placed, Section, suggestion } from './section.js';
+import { csvPoints } from './scenario-csv.js';
+import { caseNames, chooseParameters, type ScenarioChoice } from './scenario-parameters.js';
+import { readStartState } from './scenario-start.js';
+import { StepReader } from './scenario-steps.js';
+import { type Placed, Section } from './section.js';
 import { SignalList } from './signal-list.js';
 import { lookup, readRequirements } from './requirements.js';
 import { readSource, type SourceText, type Tree } from './source.js';
@@ -21,7 +26,7 @@ export interface ScenarioSpec {
 }
 
 /** What a scenario needs to know of its bench. */
-export type ScenarioBench = Pick<BenchSpec, 'step' | 'signals'>;
+export type ScenarioBench = Pick<BenchSpec, 'step' | 'signals'> & Partial<Pick<BenchSpec, 'circuit' | 'ambient' | 'instruments'>>;
 
 /** Cycles that a scenario can name. */
 export const cycles: readonly DriveCycle[] = Object.values(european);
@@ -30,24 +35,44 @@ export const cycles: readonly DriveCycle[] = Object.values(european);
 const longest = 86_400;
 /** Signals of the runtime that a script may set beside commands. */
 const settableOfRun = new Set(['life.supply', 'life.key']);
-const actions = ['set', 'ramp', 'hold', 'release'] as const;
 
 /**
- * Reads a scenario file: `scenario` (name), `about`, `lasts`, `preview`, `drive` (points of time and speed, or the
- * name of a cycle), `grade` (points), `traces` (any command over time) and `steps`. Throws a BuildError with all that is
- * wrong.
+ * Reads a scenario file: `scenario` (name), `about`, `lasts`, `preview`, `parameters` and `cases`, `start` (state at the
+ * start), `drive` (points of time and speed, the name of a cycle, or a CSV file), `grade` and `traces` (any command over time or
+ * distance, from points or a CSV file), `steps` (the timeline) and `requirements`. Throws a BuildError with all that is wrong.
  */
-export function readScenario(path: string, bench: ScenarioBench, files: Files = diskFiles): ScenarioSpec {
+export function readScenario(path: string, bench: ScenarioBench, files: Files = diskFiles, choice: ScenarioChoice = {}): ScenarioSpec {
   const problems = new Problems();
   const source = readSource(path, problems, files);
   if (!source.root) {
     problems.throwIfAny();
     throw new Error(`${path} gave neither a scenario nor a problem`);
   }
-  const reader = new ScenarioReader(new Section(source.root, '', problems), bench);
+  const { root, values } = chooseParameters(source.root, choice, problems);
+  const texts = [...source.texts];
+  const file = normalize(path);
+  const beside = (name: string) => {
+    const found = inside(dirname(file), file, name);
+    const text = found === undefined ? undefined : files.read(found);
+    if (text !== undefined) texts.push({ name, text });
+    return text;
+  };
+  const reader = new ScenarioReader(new Section(root, '', problems), bench, beside);
   const script = reader.read();
   problems.throwIfAny();
-  return { script, sources: source.texts };
+  const named = choice.case === undefined ? script.name : `${script.name}, ${choice.case}`;
+  return {
+    script: { ...script, name: named, ...(Object.keys(values).length === 0 ? {} : { parameters: values }) },
+    sources: texts,
+  };
+}
+
+/** Names of a scenario file's cases; empty without any. Throws a BuildError when it is no YAML file. */
+export function scenarioCases(path: string, files: Files = diskFiles): string[] {
+  const problems = new Problems();
+  const source = readSource(path, problems, files);
+  problems.throwIfAny();
+  return source.root ? caseNames(source.root) : [];
 }
 
 class ScenarioReader {
@@ -56,9 +81,14 @@ class ScenarioReader {
   constructor(
     private readonly top: Section,
     private readonly bench: ScenarioBench,
+    /** Text of a file beside the scenario's. */
+    private readonly beside: (name: string) => string | undefined,
   ) {
+    const stages = new Set(
+      (bench.instruments ?? []).filter((one) => one.kind.stage === 'before').flatMap((one) => Object.keys(one.kind.outputs).map((output) => `${one.name}.${output}`)),
+    );
     for (const info of bench.signals)
-      this.signals.add(settableOfRun.has(info.path) ? { ...info, group: 'command' } : info);
+      this.signals.add(settableOfRun.has(info.path) || stages.has(info.path) ? { ...info, group: 'command' } : info);
   }
 
   read(): ScriptSpec {
@@ -70,16 +100,34 @@ class ScenarioReader {
     const drive = this.drive();
     const grade = this.grade();
     const traces = [...(grade ? [grade] : []), ...this.traces(grade?.target)];
-    const steps = this.steps();
+    const start = this.start();
+    const { steps, conditions } = new StepReader({
+      step: bench.step,
+      signals: bench.signals,
+      command: (section, key, said) => this.command(section, key, said),
+      value: (section, value, target, key) => this.value(section, value, expectedOf(target), key),
+      example: exampleOf,
+    }).read(top);
     const asked = top.section('requirements');
     const requirements = asked ? readRequirements(asked, { signals: lookup(bench.signals), step: bench.step }) : [];
     top.finish();
-    const ends = [drive, ...traces.map((trace) => trace.points)].map((points) => points.at(-1)?.[0] ?? 0);
+    const ends = [drive, ...traces.filter((trace) => trace.over === undefined).map((trace) => trace.points)].map((points) => points.at(-1)?.[0] ?? 0);
     const ticks = given ?? Math.max(0, ...ends, ...steps.map((step) => step.at));
     // Where something else is wrong, the end may be missing only because of that.
     if (ticks === 0 && top.problems.count === 0)
       top.fail('lasts', 'missing', 'add lasts: 60 s, or a drive', {}, top.where);
-    return { name, about, ticks, drive, preview, traces, steps, requirements };
+    return {
+      name,
+      about,
+      ticks,
+      drive,
+      preview,
+      traces,
+      steps,
+      requirements,
+      ...(conditions.length === 0 ? {} : { conditions }),
+      ...(start === undefined ? {} : { start }),
+    };
   }
 
   private lasts(): number | undefined {
@@ -99,7 +147,24 @@ class ScenarioReader {
       const cycle = cycles.find((candidate) => candidate.name === said);
       return cycle ? cycle.times.map((time, i) => [Math.round(time / this.bench.step), cycle.speeds[i]!]) : [];
     }
+    if (entry.value.kind === 'mapping') {
+      const section = this.top.sectionIn(entry.value, 'drive')!;
+      const points = this.fromFile(section, { unit: 'm/s', least: 0 }, false);
+      section.finish();
+      return points ?? [];
+    }
     return this.points(this.top, 'drive', entry.value, { unit: 'm/s', least: 0 });
+  }
+
+  /** `file:` of a section, with `time:` and `column:`; the first column is called `time` (or `distance`) unless said otherwise. */
+  private fromFile(section: Section, expected: Expected, distance: boolean): [number, number][] | undefined {
+    const file = section.text('file', { required: true }, 'drive.csv');
+    const time = section.text('time') ?? (distance ? 'distance' : 'time');
+    const column = section.text('column');
+    if (file === undefined) return undefined;
+    const text = this.beside(file);
+    if (text === undefined) return section.fail('file', 'no such file beside the scenario', 'name a CSV file in its folder or below');
+    return csvPoints(section, 'file', file, text, { time, column, expected, step: distance ? undefined : this.bench.step });
   }
 
   /** `grade:` goes to the one command of that name, or to the one that `of:` names. */
@@ -151,15 +216,28 @@ class ScenarioReader {
 
   private trace(section: Section, target: SignalInfo, known: readonly string[] = []): ScriptTrace | undefined {
     const between = section.choice('between', ['linear', 'hold'] as const) ?? 'linear';
-    const points = section.entry('points');
-    if (!points) section.fail('points', 'missing', `add points: [[0 s, ${exampleOf(target)}]]`, {}, section.where);
-    const read = points && this.points(section, 'points', points.value, expectedOf(target));
+    const over = section.choice('over', ['time', 'distance'] as const) === 'distance' ? this.way(section) : undefined;
+    const expected = expectedOf(target);
+    let read: [number, number][] | undefined;
+    if (section.has('file')) read = this.fromFile(section, expected, over !== undefined);
+    else {
+      const points = section.entry('points');
+      if (!points) section.fail('points', 'missing', `add points: [[0 s, ${exampleOf(target)}]]`, {}, section.where);
+      read = points && this.points(section, 'points', points.value, expected, over !== undefined);
+    }
     section.finish(known);
-    return read && { target: target.path, points: read, between };
+    return read && { target: target.path, points: read, between, ...(over === undefined ? {} : { over }) };
+  }
+
+  /** The distance that the one vehicle of the bench has come. */
+  private way(section: Section): string | undefined {
+    const ways = this.bench.signals.filter((info) => info.group === 'state' && info.path.endsWith('.distance') && info.unit === 'm');
+    if (ways.length === 1) return ways[0]!.path;
+    return section.fail('over', `the bench has ${ways.length === 0 ? 'no vehicle' : `${ways.length} vehicles`}`, 'write it over time');
   }
 
   /** `[[0 s, 0 km/h], [10 s, 30 km/h]]`: times in ticks, rising. */
-  private points(section: Section, key: string, value: Tree, expected: Expected): [number, number][] {
+  private points(section: Section, key: string, value: Tree, expected: Expected, overDistance = false): [number, number][] {
     if (value.kind !== 'list' || value.items.length === 0) {
       section.problems.add(
         value.where,
@@ -176,10 +254,10 @@ class ScenarioReader {
         section.problems.add(item.where, section.inner(where), 'not a point', 'write [time, value]');
         continue;
       }
-      const time = section.quantityIn(item.items[0]!, { unit: 's', least: 0, most: longest }, where)?.value;
+      const time = section.quantityIn(item.items[0]!, overDistance ? { unit: 'm' } : { unit: 's', least: 0, most: longest }, where)?.value;
       const number = this.value(section, item.items[1]!, expected, where);
       if (time === undefined || number === undefined) continue;
-      const tick = toTicks(time, this.bench.step);
+      const tick = overDistance ? time : toTicks(time, this.bench.step);
       if (tick === undefined) {
         section.problems.add(
           item.where,
@@ -194,9 +272,9 @@ class ScenarioReader {
         section.problems.add(
           item.where,
           section.inner(where),
-          'time does not rise',
-          'put the points in order of time',
-          { value: formatQuantity(time, 's') },
+          overDistance ? 'distance does not rise' : 'time does not rise',
+          overDistance ? 'put the points in order of distance' : 'put the points in order of time',
+          { value: formatQuantity(time, overDistance ? 'm' : 's') },
         );
       } else {
         points.push([tick, number]);
@@ -205,48 +283,12 @@ class ScenarioReader {
     return points;
   }
 
-  private steps(): ScriptStep[] {
-    const steps: ScriptStep[] = [];
-    for (const [i, item] of (this.top.list('steps')?.items ?? []).entries()) {
-      const section = this.top.sectionIn(item, `steps[${i}]`);
-      const step = section && this.step(section);
-      if (step) steps.push(step);
-    }
-    // Steps of the same time stay in the order of the file.
-    return steps.sort((a, b) => a.at - b.at);
-  }
-
-  /** One action, with or without a note; or a note alone. */
-  private step(section: Section): ScriptStep | undefined {
-    const at = checkedTicks(section, 'at', this.bench.step, { required: true });
-    const note = section.text('note');
-    const named = actions.filter((action) => section.has(action));
-    if (named.length > 1 || (named.length === 0 && !section.has('note'))) {
-      const known = ['at', 'to', 'over', 'note', ...actions];
-      const odd = section.keys().find((key) => !known.includes(key));
-      const remedy =
-        odd === undefined ? `write one of ${actions.join(', ')} or note` : suggestion(odd, [...actions, 'note']);
-      const what = named.length === 0 ? 'a step that does nothing' : `a step that does ${named.length} things`;
-      return section.fail('', what, remedy, odd === undefined ? {} : { value: odd });
-    }
-    const action = named[0];
-    if (action === undefined) {
-      section.finish();
-      return at === undefined || note === undefined
-        ? undefined
-        : { at, name: note, action: 'note', target: '', value: 0, over: 0 };
-    }
-    const target = this.command(section, action, section.placed(action, { required: true }, 'element.command'));
-    const takesValue = action === 'set' || action === 'ramp';
-    const entry = takesValue ? section.entry('to') : undefined;
-    if (takesValue && !entry)
-      section.fail('to', 'missing', `add to: ${target ? exampleOf(target) : 'and a value'}`, {}, section.where);
-    const value = entry && target ? this.value(section, entry.value, expectedOf(target), 'to') : 0;
-    const over = action === 'ramp' ? checkedTicks(section, 'over', this.bench.step, { required: true, least: 1 }) : 0;
-    section.finish();
-    if (at === undefined || !target || value === undefined || over === undefined) return undefined;
-    const written = takesValue ? ` to ${section.peek('to')}` : '';
-    return { at, name: note ?? `${action} ${target.path}${written}`, action, target: target.path, value, over };
+  private start(): ScriptSpec['start'] {
+    const section = this.top.section('start');
+    if (!section) return undefined;
+    const { circuit, ambient } = this.bench;
+    if (!circuit || !ambient) return this.top.fail('start', 'this bench has no circuit to start', 'leave it away');
+    return readStartState(section, circuit, ambient);
   }
 
   private command(section: Section, key: string, said: Placed | undefined): SignalInfo | undefined {

@@ -102,6 +102,7 @@ export class SignalList {
       ];
       for (const [group, declared] of groups) {
         for (const [signal, { unit, about, least, most, difference }] of Object.entries(declared)) {
+          const command = group === 'command' ? kind.commands[signal] : undefined;
           this.add({
             path: `${name}.${signal}`,
             group,
@@ -110,6 +111,7 @@ export class SignalList {
             ...(least === undefined ? {} : { least }),
             ...(most === undefined ? {} : { most }),
             ...(difference === undefined ? {} : { difference }),
+            ...(command?.fault ? { withoutFault: command.rest } : {}),
           });
         }
       }

@@ -210,6 +210,8 @@ export interface SignalInfo extends Quantity {
   readonly group: SignalGroup;
   readonly least?: number;
   readonly most?: number;
+  /** Only of commands that nothing but a fault touches: the value without the fault. */
+  readonly withoutFault?: number;
 }
 export type SignalGroup = 'state' | 'memory' | 'reading' | 'command' | 'instrument' | 'sent' | 'received' | 'link' | 'ledger' | 'timing' | 'run';
 

@@ -1,5 +1,6 @@
 import type { BlockLayout } from './block.js';
-import type { Requirement } from './judge/formula.js';
+import type { Formula, Requirement } from './judge/formula.js';
+import { ScriptConditions } from './script-conditions.js';
 import type { EventCatalogue, Journal } from './journal.js';
 import type { SignalTable } from './signals.js';
 
@@ -15,8 +16,14 @@ export interface ScriptSpec {
   readonly preview: number;
   /** Commands over time: linear between points, or held until the next point. */
   readonly traces: readonly ScriptTrace[];
-  /** In order of time. */
+  /** One after another: a step is looked at when the one before it is done. */
   readonly steps: readonly ScriptStep[];
+  /** What steps wait for. */
+  readonly conditions?: readonly Formula[];
+  /** Start values by element, over those of the bench; SI. */
+  readonly start?: Readonly<Record<string, Readonly<Record<string, number>>>>;
+  /** Parameters of the scenario as they were chosen, and the case. */
+  readonly parameters?: Readonly<Record<string, string>>;
   /** Asked beside those of the bench. */
   readonly requirements: readonly Requirement[];
 }
@@ -24,12 +31,24 @@ export interface ScriptTrace {
   readonly target: string;
   readonly points: readonly (readonly [number, number])[];
   readonly between: 'linear' | 'hold';
+  /** Signal that the points go over instead of ticks, such as a distance; SI. */
+  readonly over?: string;
 }
 export interface ScriptStep {
+  /** Not before this tick. */
   readonly at: number;
+  /** Not before so many ticks after the step before. */
+  readonly wait?: number;
+  /** Number of the condition that it waits for. */
+  readonly condition?: number;
+  /** Ticks that the condition has to hold without a break. */
+  readonly lasting?: number;
+  /** Ticks after the step before at which it gives up the condition and is left out; absent: never. */
+  readonly timeOut?: number;
   readonly name: string;
-  readonly action: 'set' | 'ramp' | 'hold' | 'release' | 'note';
-  /** Path of a command; '' for a note. */
+  /** `fault` holds a value like `set`, `clear` puts back what is there without a fault. */
+  readonly action: 'set' | 'ramp' | 'hold' | 'release' | 'note' | 'fault' | 'clear';
+  /** Path of a command or of what an instrument ahead of the plant says; '' for a note. */
   readonly target: string;
   readonly value: number;
   /** Ramp: ticks that it takes. */
@@ -39,7 +58,18 @@ export interface ScriptStep {
 export const emptyScript: ScriptSpec = { name: 'no scenario', about: '', ticks: 0, drive: [], preview: 0, traces: [], steps: [], requirements: [] };
 
 /** What a step does to its target until another step or `release` comes. */
-const modes = { free: 0, held: 1, ramping: 2 } as const;
+const modes = { free: 0, held: 1, ramping: 2, starting: 3, taking: 4, clearing: 5 } as const;
+
+/** Slots of a target that steps hold, and where it stands: in the block, or among the signals. */
+interface Held {
+  readonly slot: number;
+  readonly signal: number;
+  readonly mode: number;
+  readonly value: number;
+  readonly from: number;
+  readonly start: number;
+  readonly over: number;
+}
 
 /**
  * Runs the timeline on the loop thread. All that it remembers stands in the block: the next step, and per target the
@@ -50,9 +80,15 @@ export class Script {
   readonly heldSlot: number;
   readonly delaySlot: number;
   private readonly next: number;
-  private readonly hold: { slot: number; mode: number; value: number; from: number; start: number; over: number }[] = [];
+  /** Slots: time of the timeline at which the next step came up; ticks that its condition has held; steps left out. */
+  private readonly since: number;
+  private readonly lasted: number;
+  private readonly timeOuts: number;
+  private readonly hold: Held[] = [];
   private readonly holdOf: Int32Array;
   private readonly tracePointers: number;
+  private conditions: ScriptConditions | undefined;
+  private readonly traceOver: Int32Array;
   private readonly traceSlots: Int32Array;
   private readonly traceTicks: Float64Array[];
   private readonly traceValues: Float64Array[];
@@ -63,7 +99,10 @@ export class Script {
   private readonly signalTarget: number;
   private readonly signalAhead: number;
   private readonly signalRemaining: number;
+  private readonly signalTimeOuts: number;
   private readonly kindStep: number;
+  private readonly kindFault: number;
+  private readonly kindTimeOut: number;
   private readonly subjects: Int32Array;
 
   constructor(
@@ -73,20 +112,26 @@ export class Script {
     signals: SignalTable,
     events: EventCatalogue,
     targets: { find(path: string): number },
+    /** Index of what an instrument ahead of the plant says, by path, or -1. */
+    outputs: { find(path: string): number } = { find: () => -1 },
   ) {
     this.next = layout.add('scenario.next');
     this.heldSlot = layout.add('scenario.held');
     this.delaySlot = layout.add('scenario.delay');
-    const slots: number[] = [];
+    this.since = layout.add('scenario.since');
+    this.lasted = layout.add('scenario.lasted');
+    this.timeOuts = layout.add('scenario.timeOuts');
+    const paths: string[] = [];
     this.holdOf = Int32Array.from(spec.steps, (one) => {
       if (one.target === '') return -1;
-      const slot = targets.find(one.target);
-      let at = slots.indexOf(slot);
+      let at = paths.indexOf(one.target);
       if (at < 0) {
-        at = slots.length;
-        slots.push(slot);
+        at = paths.length;
+        paths.push(one.target);
+        const slot = targets.find(one.target);
         this.hold.push({
           slot,
+          signal: slot < 0 ? outputs.find(one.target) : -1,
           mode: layout.add(`scenario.${one.target}.mode`),
           value: layout.add(`scenario.${one.target}.value`),
           from: layout.add(`scenario.${one.target}.from`),
@@ -97,6 +142,7 @@ export class Script {
       return at;
     });
     this.tracePointers = layout.addMany('scenario.trace', spec.traces.length + 2);
+    this.traceOver = new Int32Array(spec.traces.length).fill(-1);
     this.traceSlots = Int32Array.from(spec.traces, (trace) => targets.find(trace.target));
     this.traceTicks = spec.traces.map((trace) => Float64Array.from(trace.points, (point) => point[0]));
     this.traceValues = spec.traces.map((trace) => Float64Array.from(trace.points, (point) => point[1]));
@@ -107,9 +153,27 @@ export class Script {
     this.signalStep = signal('step', '1', 'steps of the timeline done');
     this.signalTarget = signal('targetSpeed', 'm/s', 'speed that the driver is to follow');
     this.signalAhead = signal('targetSpeedAhead', 'm/s', 'the same, a preview time ahead');
+    this.signalTimeOuts = signal('timeOuts', '1', 'steps of the timeline that were left out because what they wait for did not come');
     this.signalRemaining = signal('remaining', 's', 'time to the end of the scenario');
     this.kindStep = events.kind({ name: 'scenario step', severity: 'note', text: 'scenario: {subject}' });
+    this.kindFault = events.kind({ name: 'fault', severity: 'warning', text: 'fault: {subject}, value {a}' });
+    this.kindTimeOut = events.kind({
+      name: 'scenario step left out',
+      severity: 'error',
+      text: 'scenario: left out after {a:s}, what it waits for did not come: {subject}',
+    });
     this.subjects = Int32Array.from(spec.steps, (one) => events.subject(one.name));
+  }
+
+  /** Ties traces over signals and conditions to the signals, when all of them are known. Throws BuildError. */
+  bind(signals: SignalTable): void {
+    this.traceOver.set(this.spec.traces.map((trace) => (trace.over === undefined ? -1 : signals.find(trace.over))));
+    this.conditions = new ScriptConditions(this.spec.conditions ?? [], signals, this.step);
+  }
+
+  /** What is remembered outside the block. */
+  reset(): void {
+    this.conditions?.reset();
   }
 
   /** Stage `script`: advances the timeline; writes the scenario's signals and the traces' commands. */
@@ -128,18 +192,48 @@ export class Script {
       signals[this.signalAhead] = this.lookUp(block, pointers + count + 1, this.driveTicks, this.driveValues, at + spec.preview, true);
     }
     for (let i = 0; i < count; i += 1) {
-      block[this.traceSlots[i]!] = this.lookUp(block, pointers + i, this.traceTicks[i]!, this.traceValues[i]!, at, spec.traces[i]!.between === 'linear');
+      const over = this.traceOver[i]!;
+      block[this.traceSlots[i]!] = this.lookUp(block, pointers + i, this.traceTicks[i]!, this.traceValues[i]!, over < 0 ? at : signals[over]!, spec.traces[i]!.between === 'linear');
     }
     if (tick < 0) return;
-    while (block[this.next]! < spec.steps.length) {
+    this.conditions!.run(tick, signals);
+    while (block[this.next]! < spec.steps.length && block[this.heldSlot] === 0) {
       const number = block[this.next]!;
       const step = spec.steps[number]!;
-      if (step.at > now) break;
-      this.begin(block, number, step, now);
-      journal.event(tick, this.kindStep, this.subjects[number]!, step.value, step.over * this.step, 0);
+      const passed = now - block[this.since]!;
+      if (step.at > now || (step.wait !== undefined && passed < step.wait)) break;
+      let out = false;
+      if (step.condition !== undefined) {
+        const lasted = this.conditions!.holds(step.condition) ? block[this.lasted]! + 1 : 0;
+        block[this.lasted] = lasted;
+        if (lasted <= (step.lasting ?? 0)) {
+          if (step.timeOut === undefined || passed < step.timeOut) break;
+          out = true;
+        }
+      }
+      if (out) {
+        block[this.timeOuts] = block[this.timeOuts]! + 1;
+        journal.event(tick, this.kindTimeOut, this.subjects[number]!, passed * this.step, 0, 0);
+      } else {
+        this.begin(block, number, step, now);
+        const faulty = step.action === 'fault' || step.action === 'clear';
+        journal.event(tick, faulty ? this.kindFault : this.kindStep, this.subjects[number]!, step.value, step.over * this.step, 0);
+      }
       block[this.next] = number + 1;
+      block[this.since] = now;
+      block[this.lasted] = 0;
     }
     signals[this.signalStep] = block[this.next]!;
+    signals[this.signalTimeOuts] = block[this.timeOuts]!;
+  }
+
+  /** What the steps hold of what instruments say: behind the instruments, ahead of what they drive. */
+  applySignals(block: Float64Array, signals: Float64Array, tick: number): void {
+    const now = tick - block[this.delaySlot]!;
+    for (let i = 0; i < this.hold.length; i += 1) {
+      const held = this.hold[i]!;
+      if (held.signal >= 0) this.applyOne(block, held, signals, held.signal, now);
+    }
   }
 
   /** What the steps hold, written over what messages and instruments said: just before the plant's step. */
@@ -147,15 +241,27 @@ export class Script {
     const now = tick - block[this.delaySlot]!;
     for (let i = 0; i < this.hold.length; i += 1) {
       const held = this.hold[i]!;
-      const mode = block[held.mode]!;
-      if (mode === modes.free) continue;
-      if (mode === modes.ramping) {
-        const passed = now - block[held.start]!;
-        const over = block[held.over]!;
-        const share = passed >= over ? 1 : passed / over;
-        block[held.slot] = block[held.from]! + share * (block[held.value]! - block[held.from]!);
-        if (share === 1) block[held.mode] = modes.held;
-      } else block[held.slot] = block[held.value]!;
+      if (held.slot >= 0) this.applyOne(block, held, block, held.slot, now);
+    }
+  }
+
+  /** Into `to[at]`; a ramp and a hold begin at what stands there. */
+  private applyOne(block: Float64Array, held: Held, to: Float64Array, at: number, now: number): void {
+    const mode = block[held.mode]!;
+    if (mode === modes.free) return;
+    if (mode === modes.taking) {
+      block[held.value] = to[at]!;
+      block[held.mode] = modes.held;
+    } else if (mode === modes.starting || mode === modes.ramping) {
+      if (mode === modes.starting) block[held.from] = to[at]!;
+      const passed = now - block[held.start]!;
+      const over = block[held.over]!;
+      const share = passed >= over ? 1 : passed / over;
+      to[at] = block[held.from]! + share * (block[held.value]! - block[held.from]!);
+      block[held.mode] = share === 1 ? modes.held : modes.ramping;
+    } else {
+      to[at] = block[held.value]!;
+      if (mode === modes.clearing) block[held.mode] = modes.free;
     }
   }
 
@@ -168,19 +274,17 @@ export class Script {
         block[held.mode] = modes.free;
         break;
       case 'hold':
-        block[held.value] = block[held.slot]!;
-        block[held.mode] = modes.held;
+        block[held.mode] = modes.taking;
         break;
-      case 'ramp':
-        block[held.from] = block[held.slot]!;
+      case 'clear':
         block[held.value] = step.value;
-        block[held.start] = now;
-        block[held.over] = step.over;
-        block[held.mode] = step.over > 0 ? modes.ramping : modes.held;
+        block[held.mode] = modes.clearing;
         break;
       default:
         block[held.value] = step.value;
-        block[held.mode] = modes.held;
+        block[held.start] = now;
+        block[held.over] = step.over;
+        block[held.mode] = step.over > 0 ? modes.starting : modes.held;
     }
   }
 
@@ -188,6 +292,7 @@ export class Script {
     let i = block[pointer]!;
     const last = ticks.length - 1;
     while (i < last && ticks[i + 1]! <= tick) i += 1;
+    while (i > 0 && ticks[i]! > tick) i -= 1;
     block[pointer] = i;
     if (i >= last || tick <= ticks[i]! || !linear) return values[i]!;
     return values[i]! + ((values[i + 1]! - values[i]!) * (tick - ticks[i]!)) / (ticks[i + 1]! - ticks[i]!);

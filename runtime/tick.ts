@@ -77,6 +77,7 @@ export class Tick {
     meter.end(0);
     script.run(block, signals, tick, journal);
     for (let i = 0; i < before.length; i += 1) before[i]!(block, signals, tick);
+    script.applySignals(block, signals, tick);
     hands.applySignals(block, signals);
     for (let i = 0; i < drives.from.length; i += 1) block[drives.to[i]!] = signals[drives.from[i]!]!;
     script.apply(block, tick);

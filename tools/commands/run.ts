@@ -17,6 +17,8 @@ import { writeReports } from './report.js';
 
 interface RunFlags {
   readonly scenario?: string;
+  readonly case?: string;
+  readonly set?: Readonly<Record<string, string>>;
   readonly for?: string;
   readonly pace: 'live' | 'fast';
   readonly controller?: string;
@@ -36,6 +38,8 @@ export function runCommand(): Command {
     .description('runs a bench: live in real time, or fast in lockstep')
     .argument('BENCH', 'bench file')
     .option('--scenario <FILE>', "scenario; default: the bench's duty")
+    .option('--case <NAME>', "one of the scenario's cases")
+    .option('--set <NAME=VALUE>', "a parameter of the scenario, such as payload='900 kg'; may be given again", setting)
     .option('--for <20s>', 'how long; default: as long as the scenario')
     .option('--pace <live|fast>', 'live: real time; fast: no waiting', pace, 'live')
     .option('--controller <CMD>', 'a command to start; or module, process, external (it is there already), none')
@@ -184,6 +188,13 @@ function complainAboutLoop(outcome: RunOutcome): void {
 function pace(value: string): 'live' | 'fast' {
   if (value !== 'live' && value !== 'fast') throw new InvalidArgumentError('live or fast');
   return value;
+}
+
+/** Collects `NAME=VALUE`. */
+export function setting(value: string, before: Readonly<Record<string, string>> = {}): Readonly<Record<string, string>> {
+  const at = value.indexOf('=');
+  if (at < 1) throw new InvalidArgumentError('write NAME=VALUE');
+  return { ...before, [value.slice(0, at).trim()]: value.slice(at + 1).trim() };
 }
 
 function whole(value: string): number {

@@ -13,6 +13,9 @@ import { emptyScript, type ScriptSpec } from '../../runtime/script.js';
 export interface RunWish {
   readonly bench: string;
   readonly scenario?: string | undefined;
+  /** One of the scenario's cases, and its parameters by hand. */
+  readonly case?: string | undefined;
+  readonly set?: Readonly<Record<string, string>> | undefined;
   /** `20s`, `2 min` */
   readonly for?: string | undefined;
   readonly pace: 'live' | 'fast';
@@ -51,7 +54,7 @@ export function readBenchFile(file: string): { spec: BenchSpec; folder: string; 
 export function planRun(wish: RunWish): RunPlan {
   const { spec, folder } = readBenchFile(wish.bench);
   const scenarioFile = wish.scenario ?? (spec.duty === undefined ? undefined : path.join(folder, spec.duty));
-  const scenario = scenarioFile === undefined ? undefined : readScenario(scenarioFile, spec);
+  const scenario = scenarioFile === undefined ? undefined : readScenario(scenarioFile, spec, diskFiles, { case: wish.case, set: wish.set });
   const script = scenario?.script ?? emptyScript;
   const ticks = wish.for === undefined ? script.ticks : ticksOf(wish.for, spec.step);
   if (ticks === 0) throw new BuildError([{ path: 'run', what: 'nothing says how long it runs', remedy: 'give --for 20s, or a scenario' }]);

@@ -43,6 +43,7 @@ export function summarise(outcome: RunOutcome): RunSummary {
       rowsLost: (done?.dropped ?? 0) + (done?.overflows ?? 0),
       hands: spec.life.hands ? [] : outcome.hands,
       otherwise: [
+        ...scenarioTrouble(outcome, value),
         ...(outcome.recordingFailure === undefined ? [] : [outcome.recordingFailure]),
         ...(outcome.controllerEnded === undefined ? [] : [`the controller ${outcome.controllerEnded}`]),
       ],
@@ -111,6 +112,17 @@ export function summarise(outcome: RunOutcome): RunSummary {
     recording: outcome.recording ?? null,
     rowsLost: done?.dropped ?? 0,
   };
+}
+
+/** What the scenario wanted and did not come to pass: then the run shows something else than it says. */
+function scenarioTrouble({ plan, done }: RunOutcome, value: (path: string) => number): string[] {
+  const trouble: string[] = [];
+  const left = value('scenario.timeOuts');
+  if (left > 0) trouble.push(`${left} step${left === 1 ? '' : 's'} of the scenario did not come to pass in time`);
+  const missing = plan.script.steps.length - value('scenario.step');
+  const whole = done !== undefined && !done.stopped && done.failure === null && done.ticks >= plan.script.ticks && plan.script.ticks > 0;
+  if (whole && missing > 0) trouble.push(`the scenario ended before ${missing === 1 ? 'its last step' : `its last ${missing} steps`} had come`);
+  return trouble;
 }
 
 /** As the summary carries it: what JSON has no number for is null. */
