@@ -73,8 +73,8 @@ export function reliefValves(elements: readonly ReadElement[]): ReliefValve[] {
 
 /**
  * The relief valve of each oil store's side: its own, the lowest of several; otherwise that of the nearest store behind
- * branches that join oil and nothing else (isolation valves, orifices, lines). Check and relief valves, and machines
- * with a shaft, end a side.
+ * branches that join oil and nothing else (isolation valves, orifices, lines). Check and relief valves, machines with a
+ * shaft, and stores that are open to the air end a side; those need no valve.
  */
 export function reliefOfSide(
   elements: readonly ReadElement[],
@@ -98,13 +98,19 @@ export function reliefOfSide(
     if (stores.length !== 2 || !Object.values(element.kind.ports).every((port) => port === 'oil')) continue;
     for (const [a, b] of [stores, [...stores].reverse()]) neighbours.set(a!, [...(neighbours.get(a!) ?? []), b!]);
   }
+  for (const element of elements) if (isOpen(element)) neighbours.delete(element.name);
   const found = new Map(own);
   for (const element of elements) {
-    if (element.kind.role !== 'store' || found.has(element.name)) continue;
+    if (element.kind.role !== 'store' || isOpen(element) || found.has(element.name)) continue;
     const nearest = search(element.name, neighbours, own);
     if (nearest) found.set(element.name, nearest);
   }
   return found;
+}
+
+/** Whether a store stands at the pressure of the air around it. */
+function isOpen(element: ReadElement): boolean {
+  return element.kind.role === 'store' && Object.hasOwn(element.kind.parameters, 'ambientPressure');
 }
 
 function search(
