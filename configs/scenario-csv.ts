@@ -17,10 +17,21 @@ export function csvPoints(
   key: string,
   file: string,
   text: string,
-  asked: { readonly time: string; readonly column: string | undefined; readonly expected: Expected; readonly step: number | undefined },
+  asked: {
+    readonly time: string;
+    readonly column: string | undefined;
+    readonly expected: Expected;
+    readonly step: number | undefined;
+  },
 ): [number, number][] {
   const fail = (line: number, column: number, what: string, remedy: string, value?: string) =>
-    section.problems.add({ file, line, column }, section.inner(key), what, remedy, value === undefined ? {} : { value: shown(value) });
+    section.problems.add(
+      { file, line, column },
+      section.inner(key),
+      what,
+      remedy,
+      value === undefined ? {} : { value: shown(value) },
+    );
   const lines = text.split(/\r?\n/);
   const points: [number, number][] = [];
   let head: { time: Column; value: Column; separator: string } | undefined;
@@ -33,11 +44,25 @@ export function csvPoints(
       const names = columns.map((one) => one.name);
       const time = columns.find((one) => one.name === asked.time);
       const rest = columns.filter((one) => one !== time);
-      const value = asked.column === undefined ? (rest.length === 1 ? rest[0] : undefined) : columns.find((one) => one.name === asked.column);
+      const value =
+        asked.column === undefined
+          ? rest.length === 1
+            ? rest[0]
+            : undefined
+          : columns.find((one) => one.name === asked.column);
       if (!time) fail(i + 1, 1, `no column \`${asked.time}\``, suggestion(asked.time, names));
-      if (!value) fail(i + 1, 1, asked.column === undefined ? 'more than one column that could be meant' : `no column \`${asked.column}\``, `name it with column:, one of ${names.join(', ')}`);
+      if (!value)
+        fail(
+          i + 1,
+          1,
+          asked.column === undefined ? 'more than one column that could be meant' : `no column \`${asked.column}\``,
+          `name it with column:, one of ${names.join(', ')}`,
+        );
       if (!time || !value) return [];
-      for (const [one, unit] of [[time, asked.step === undefined ? 'm' : 's'], [value, asked.expected.unit]] as const) {
+      for (const [one, unit] of [
+        [time, asked.step === undefined ? 'm' : 's'],
+        [value, asked.expected.unit],
+      ] as const) {
         if (!one.unit) {
           fail(i + 1, 1, `column ${one.name} says no unit`, `write it in brackets: ${one.name} [${unit}]`);
           return [];
@@ -47,7 +72,11 @@ export function csvPoints(
           return [];
         }
       }
-      head = { time: { ...time, at: columns.indexOf(time) }, value: { ...value, at: columns.indexOf(value) }, separator };
+      head = {
+        time: { ...time, at: columns.indexOf(time) },
+        value: { ...value, at: columns.indexOf(value) },
+        separator,
+      };
       continue;
     }
     const cells = line.split(head.separator);
@@ -93,7 +122,8 @@ function columnOf(heading: string): Column {
 
 function cell(cells: readonly string[], column: Column, expected: Expected): number | string {
   const text = cells[column.at!]?.trim().replace(/^"|"$/g, '');
-  if (text === undefined || !/^[-+]?(\d+\.?\d*|\.\d+)([eE][-+]?\d+)?$/.test(text)) return `no number in column ${column.name}`;
+  if (text === undefined || !/^[-+]?(\d+\.?\d*|\.\d+)([eE][-+]?\d+)?$/.test(text))
+    return `no number in column ${column.name}`;
   try {
     return parseQuantity(`${text} ${column.text}`, expected).value;
   } catch (error) {

@@ -35,10 +35,13 @@ export function chooseParameters(root: Mapping, choice: ScenarioChoice, problems
     if (key === choice.case) Object.assign(values, own);
   }
   if (choice.case !== undefined && !cases.has(choice.case))
-    problems.add(root.where, 'cases', 'no such case', suggestion(choice.case, cases.keys()), { value: shown(choice.case) });
+    problems.add(root.where, 'cases', 'no such case', suggestion(choice.case, cases.keys()), {
+      value: shown(choice.case),
+    });
   for (const [key, value] of Object.entries(choice.set ?? {})) {
     if (declared.has(key)) values[key] = value;
-    else problems.add(root.where, `--set ${key}`, 'no such parameter', suggestion(key, declared), { value: shown(value) });
+    else
+      problems.add(root.where, `--set ${key}`, 'no such parameter', suggestion(key, declared), { value: shown(value) });
   }
   const used = new Set<string>();
   const entries = new Map<string, Entry>();
@@ -47,7 +50,13 @@ export function chooseParameters(root: Mapping, choice: ScenarioChoice, problems
     entries.set(key, { where: entry.where, value: replaced(entry.value, key, values, used, problems) });
   }
   for (const key of declared)
-    if (!used.has(key)) problems.add(root.entries.get('parameters')!.where, `parameters.${key}`, 'nothing uses it', `write $${key} where it belongs, or leave it away`);
+    if (!used.has(key))
+      problems.add(
+        root.entries.get('parameters')!.where,
+        `parameters.${key}`,
+        'nothing uses it',
+        `write $${key} where it belongs, or leave it away`,
+      );
   return { root: { ...root, entries }, values };
 }
 
@@ -74,29 +83,45 @@ function take(
     return;
   }
   for (const [key, { value, where }] of entry.value.entries) {
-    if (value.kind !== 'scalar' || value.value === null) problems.add(where, `${path}.${key}`, 'no single value', 'write one value');
-    else if (!name.test(key)) problems.add(where, `${path}.${key}`, 'not a name', 'use letters and digits', { value: shown(key) });
-    else if (declared && !declared.has(key)) problems.add(where, `${path}.${key}`, 'no such parameter', suggestion(key, declared));
+    if (value.kind !== 'scalar' || value.value === null)
+      problems.add(where, `${path}.${key}`, 'no single value', 'write one value');
+    else if (!name.test(key))
+      problems.add(where, `${path}.${key}`, 'not a name', 'use letters and digits', { value: shown(key) });
+    else if (declared && !declared.has(key))
+      problems.add(where, `${path}.${key}`, 'no such parameter', suggestion(key, declared));
     else into[key] = value.text;
   }
 }
 
-function replaced(tree: Tree, path: string, values: Readonly<Record<string, string>>, used: Set<string>, problems: Problems): Tree {
-  if (tree.kind === 'list') return { ...tree, items: tree.items.map((item, i) => replaced(item, `${path}[${i}]`, values, used, problems)) };
+function replaced(
+  tree: Tree,
+  path: string,
+  values: Readonly<Record<string, string>>,
+  used: Set<string>,
+  problems: Problems,
+): Tree {
+  if (tree.kind === 'list')
+    return { ...tree, items: tree.items.map((item, i) => replaced(item, `${path}[${i}]`, values, used, problems)) };
   if (tree.kind === 'mapping') {
     const entries = new Map<string, Entry>();
-    for (const [key, entry] of tree.entries) entries.set(key, { where: entry.where, value: replaced(entry.value, `${path}.${key}`, values, used, problems) });
+    for (const [key, entry] of tree.entries)
+      entries.set(key, { where: entry.where, value: replaced(entry.value, `${path}.${key}`, values, used, problems) });
     return { ...tree, entries };
   }
   if (!tree.text.includes('$')) return tree;
-  const text = tree.text.replace(/\$(?:\{([A-Za-z0-9]+)\}|([A-Za-z][A-Za-z0-9]*))/g, (whole, braced?: string, plain?: string) => {
-    const key = braced ?? plain ?? '';
-    if (!Object.hasOwn(values, key)) {
-      problems.add(tree.where, path, 'no such parameter', suggestion(key, Object.keys(values)), { value: shown(whole) });
-      return whole;
-    }
-    used.add(key);
-    return values[key]!;
-  });
+  const text = tree.text.replace(
+    /\$(?:\{([A-Za-z0-9]+)\}|([A-Za-z][A-Za-z0-9]*))/g,
+    (whole, braced?: string, plain?: string) => {
+      const key = braced ?? plain ?? '';
+      if (!Object.hasOwn(values, key)) {
+        problems.add(tree.where, path, 'no such parameter', suggestion(key, Object.keys(values)), {
+          value: shown(whole),
+        });
+        return whole;
+      }
+      used.add(key);
+      return values[key]!;
+    },
+  );
   return { kind: 'scalar', value: text, text, where: tree.where };
 }

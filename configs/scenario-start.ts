@@ -29,7 +29,13 @@ export function readStartState(section: Section, circuit: CircuitSpec, ambient: 
     const element = circuit.elements.find((one) => one.name === name);
     const entry = section.entry(name)!;
     if (!element) {
-      section.fail(name, 'no such element', suggestion(name, [...circuit.elements.map((one) => one.name), ...shortcuts]), { value: shown(name) }, entry.where);
+      section.fail(
+        name,
+        'no such element',
+        suggestion(name, [...circuit.elements.map((one) => one.name), ...shortcuts]),
+        { value: shown(name) },
+        entry.where,
+      );
       continue;
     }
     const own = section.sectionIn(entry.value, name);
@@ -69,7 +75,8 @@ function consistent(circuit: CircuitSpec, said: Starts, { speed, temperature, ge
       if (other.kind.kind === 'oil-volume' && other.start['pressure'] === before) put(other, 'pressure', now);
   }
   for (const [name, values] of Object.entries(said)) all[name] = { ...all[name], ...values };
-  if (speed !== undefined) for (const [name, value] of turning(circuit, speed, all)) all[name] = { ...value, ...all[name] };
+  if (speed !== undefined)
+    for (const [name, value] of turning(circuit, speed, all)) all[name] = { ...value, ...all[name] };
   return all;
 }
 
@@ -108,15 +115,27 @@ function turning(circuit: CircuitSpec, velocity: number, said: Starts): Map<stri
     changed = false;
     for (const branch of circuit.elements) {
       const ties = branch.connections;
-      if (branch.kind.kind === 'tyre' && ties['wheel']) changed = give(ties['wheel'], velocity / (branch.parameters['radius'] ?? 1)) || changed;
+      if (branch.kind.kind === 'tyre' && ties['wheel'])
+        changed = give(ties['wheel'], velocity / (branch.parameters['radius'] ?? 1)) || changed;
       const gear = startOf(branch, 'gear');
       const [a, b, ratio] =
-        branch.kind.kind === 'compliant-shaft' || (branch.kind.kind === 'clutch' && startOf(branch, 'application') >= 0.5)
+        branch.kind.kind === 'compliant-shaft' ||
+        (branch.kind.kind === 'clutch' && startOf(branch, 'application') >= 0.5)
           ? [ties['a'], ties['b'], 1]
           : branch.kind.kind === 'stepped-gearbox' && gear !== 0
-            ? [ties['input'], ties['output'], gear > 0 ? (branch.parameters[`ratio${gear}`] ?? 1) : -(branch.parameters['reverseRatio'] ?? 1)]
+            ? [
+                ties['input'],
+                ties['output'],
+                gear > 0 ? (branch.parameters[`ratio${gear}`] ?? 1) : -(branch.parameters['reverseRatio'] ?? 1),
+              ]
             : [undefined, undefined, 1];
-      if (!a || !b || !portRatios[stores.get(a.store)?.kind.kind ?? ''] || !portRatios[stores.get(b.store)?.kind.kind ?? '']) continue;
+      if (
+        !a ||
+        !b ||
+        !portRatios[stores.get(a.store)?.kind.kind ?? ''] ||
+        !portRatios[stores.get(b.store)?.kind.kind ?? '']
+      )
+        continue;
       const atA = seen(a);
       const atB = seen(b);
       if (atA === undefined && atB !== undefined) changed = give(a, atB * ratio) || changed;

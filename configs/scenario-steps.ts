@@ -57,7 +57,11 @@ export class StepReader {
     let latest = 0;
     for (const step of steps) {
       if (step.at > 0 && step.at < latest)
-        top.fail('steps', `step \`${step.name}\` stands behind a later one`, 'steps that wait for something come one after another: put the times in order');
+        top.fail(
+          'steps',
+          `step \`${step.name}\` stands behind a later one`,
+          'steps that wait for something come one after another: put the times in order',
+        );
       latest = Math.max(latest, step.at);
     }
   }
@@ -109,7 +113,8 @@ export class StepReader {
     if (named.length > 1 || (idle && !section.has('wait') && !section.has('when'))) {
       const known = [...triggers, 'for', 'within', 'to', 'over', 'note', ...actions];
       const odd = section.keys().find((key) => !known.includes(key));
-      const remedy = odd === undefined ? `write one of ${actions.join(', ')} or note` : suggestion(odd, [...actions, 'note']);
+      const remedy =
+        odd === undefined ? `write one of ${actions.join(', ')} or note` : suggestion(odd, [...actions, 'note']);
       const what = named.length === 0 ? 'a step that does nothing' : `a step that does ${named.length} things`;
       return section.fail('', what, remedy, odd === undefined ? {} : { value: odd });
     }
@@ -128,35 +133,72 @@ export class StepReader {
     // A switch is thrown without saying to what.
     const thrown = action === 'fault' && target?.unit === '1' && target.least === 0 && target.most === 1 && fault === 0;
     if (takesValue && !entry && !thrown)
-      section.fail('to', 'missing', `add to: ${target ? this.context.example(target) : 'and a value'}`, {}, section.where);
+      section.fail(
+        'to',
+        'missing',
+        `add to: ${target ? this.context.example(target) : 'and a value'}`,
+        {},
+        section.where,
+      );
     const value = entry && target ? this.context.value(section, entry.value, target, 'to') : thrown ? 1 : (fault ?? 0);
     const mayRamp = action === 'ramp' || action === 'fault';
-    const over = mayRamp ? (checkedTicks(section, 'over', this.context.step, { required: action === 'ramp', least: 1 }) ?? (action === 'ramp' ? undefined : 0)) : 0;
+    const over = mayRamp
+      ? (checkedTicks(section, 'over', this.context.step, { required: action === 'ramp', least: 1 }) ??
+        (action === 'ramp' ? undefined : 0))
+      : 0;
     section.finish();
     if (!trigger || !target || value === undefined || over === undefined) return undefined;
     const written = entry ? ` to ${section.peek('to')}` : '';
     const plain = action === 'hold' || action === 'release' ? 0 : value;
-    return { ...trigger, name: note ?? `${action} ${target.path}${written}`, action, target: target.path, value: plain, over };
+    return {
+      ...trigger,
+      name: note ?? `${action} ${target.path}${written}`,
+      action,
+      target: target.path,
+      value: plain,
+      over,
+    };
   }
 
   private trigger(section: Section): Pick<ScriptStep, 'at' | 'wait' | 'condition' | 'lasting' | 'timeOut'> | undefined {
     const { step } = this.context;
     const named = triggers.filter((one) => section.has(one));
     if (named.length > 1) for (const key of named) section.skip(key);
-    if (named.length > 1) return section.fail(named[1]!, `a step that comes ${named.join(' and ')}`, 'keep one of them', {}, section.whereIs(named[1]!));
-    if (named.length === 0) return section.fail('at', 'missing', 'add at: 12 s, wait: 2 s, atDistance: 300 m or when: and a condition', {}, section.where);
+    if (named.length > 1)
+      return section.fail(
+        named[1]!,
+        `a step that comes ${named.join(' and ')}`,
+        'keep one of them',
+        {},
+        section.whereIs(named[1]!),
+      );
+    if (named.length === 0)
+      return section.fail(
+        'at',
+        'missing',
+        'add at: 12 s, wait: 2 s, atDistance: 300 m or when: and a condition',
+        {},
+        section.where,
+      );
     const before = section.problems.count;
     const timeOut = section.has('within') ? checkedTicks(section, 'within', step, { least: 1 }) : undefined;
     const lasting = section.has('for') ? checkedTicks(section, 'for', step) : undefined;
     if (named[0] === 'at' || named[0] === 'wait') {
-      for (const key of ['for', 'within']) if (section.has(key)) section.fail(key, 'only a step that waits for something has it', 'leave it away', {}, section.whereIs(key));
+      for (const key of ['for', 'within'])
+        if (section.has(key))
+          section.fail(key, 'only a step that waits for something has it', 'leave it away', {}, section.whereIs(key));
       const ticks = checkedTicks(section, named[0], step, { required: true });
       if (ticks === undefined) return undefined;
       return named[0] === 'at' ? { at: ticks } : { at: 0, wait: ticks };
     }
     const condition = named[0] === 'when' ? this.when(section) : this.atDistance(section);
     if (condition === undefined || section.problems.count > before) return undefined;
-    return { at: 0, condition, ...(lasting === undefined ? {} : { lasting }), ...(timeOut === undefined ? {} : { timeOut }) };
+    return {
+      at: 0,
+      condition,
+      ...(lasting === undefined ? {} : { lasting }),
+      ...(timeOut === undefined ? {} : { timeOut }),
+    };
   }
 
   private when(section: Section): number | undefined {
@@ -169,17 +211,35 @@ export class StepReader {
   private atDistance(section: Section): number | undefined {
     const wanted = section.quantity('atDistance', { unit: 'm' }, { required: true });
     if (wanted === undefined) return undefined;
-    const ways = this.context.signals.filter((info) => info.group === 'state' && info.path.endsWith('.distance') && info.unit === 'm');
+    const ways = this.context.signals.filter(
+      (info) => info.group === 'state' && info.path.endsWith('.distance') && info.unit === 'm',
+    );
     if (ways.length !== 1)
-      return section.fail('atDistance', `the bench has ${ways.length === 0 ? 'no' : ways.length} vehicles`, 'write when: VEHICLE.distance > 300 m');
+      return section.fail(
+        'atDistance',
+        `the bench has ${ways.length === 0 ? 'no' : ways.length} vehicles`,
+        'write when: VEHICLE.distance > 300 m',
+      );
     const where = section.whereIs('atDistance');
     return this.condition(section, 'atDistance', `${ways[0]!.path} >= ${wanted} m`, () => where);
   }
 
-  private condition(section: Section, key: string, text: string, place: (offset: number) => Position): number | undefined {
-    const formula = parseFormula(text, { signals: lookup(this.context.signals), step: this.context.step, present: true }, section.problems, section.inner(key), place);
+  private condition(
+    section: Section,
+    key: string,
+    text: string,
+    place: (offset: number) => Position,
+  ): number | undefined {
+    const formula = parseFormula(
+      text,
+      { signals: lookup(this.context.signals), step: this.context.step, present: true },
+      section.problems,
+      section.inner(key),
+      place,
+    );
     if (!formula) return undefined;
-    if (horizon(formula) > 0) return section.fail(key, 'a condition that looks ahead', 'say how long it has to hold with for:');
+    if (horizon(formula) > 0)
+      return section.fail(key, 'a condition that looks ahead', 'say how long it has to hold with for:');
     const once = JSON.stringify(formula);
     let number = this.known.get(once);
     if (number === undefined) {

@@ -1,19 +1,19 @@
+import { dirname, normalize } from 'node:path';
 import type { SignalInfo } from '../runtime/contract.js';
 import type { ScriptSpec, ScriptTrace } from '../runtime/script.js';
 import type { BenchSpec } from './bench-spec.js';
 import type { DriveCycle } from './cycles/cycle.js';
 import * as european from './cycles/europe.js';
-import { dirname, normalize } from 'node:path';
 import { diskFiles, type Files, inside } from './files.js';
 import { Problems } from './problems.js';
 import { type Expected, parseQuantity, QuantityError, shown } from './quantity.js';
+import { lookup, readRequirements } from './requirements.js';
 import { csvPoints } from './scenario-csv.js';
 import { caseNames, chooseParameters, type ScenarioChoice } from './scenario-parameters.js';
 import { readStartState } from './scenario-start.js';
 import { StepReader } from './scenario-steps.js';
 import { type Placed, Section } from './section.js';
 import { SignalList } from './signal-list.js';
-import { lookup, readRequirements } from './requirements.js';
 import { readSource, type SourceText, type Tree } from './source.js';
 import { checkedTicks, toTicks } from './ticks.js';
 import { formatNumber, formatQuantity, tradeUnit } from './units.js';
@@ -26,7 +26,8 @@ export interface ScenarioSpec {
 }
 
 /** What a scenario needs to know of its bench. */
-export type ScenarioBench = Pick<BenchSpec, 'step' | 'signals'> & Partial<Pick<BenchSpec, 'circuit' | 'ambient' | 'instruments'>>;
+export type ScenarioBench = Pick<BenchSpec, 'step' | 'signals'> &
+  Partial<Pick<BenchSpec, 'circuit' | 'ambient' | 'instruments'>>;
 
 /** Cycles that a scenario can name. */
 export const cycles: readonly DriveCycle[] = Object.values(european);
@@ -41,7 +42,12 @@ const settableOfRun = new Set(['life.supply', 'life.key']);
  * start), `drive` (points of time and speed, the name of a cycle, or a CSV file), `grade` and `traces` (any command over time or
  * distance, from points or a CSV file), `steps` (the timeline) and `requirements`. Throws a BuildError with all that is wrong.
  */
-export function readScenario(path: string, bench: ScenarioBench, files: Files = diskFiles, choice: ScenarioChoice = {}): ScenarioSpec {
+export function readScenario(
+  path: string,
+  bench: ScenarioBench,
+  files: Files = diskFiles,
+  choice: ScenarioChoice = {},
+): ScenarioSpec {
   const problems = new Problems();
   const source = readSource(path, problems, files);
   if (!source.root) {
@@ -85,7 +91,9 @@ class ScenarioReader {
     private readonly beside: (name: string) => string | undefined,
   ) {
     const stages = new Set(
-      (bench.instruments ?? []).filter((one) => one.kind.stage === 'before').flatMap((one) => Object.keys(one.kind.outputs).map((output) => `${one.name}.${output}`)),
+      (bench.instruments ?? [])
+        .filter((one) => one.kind.stage === 'before')
+        .flatMap((one) => Object.keys(one.kind.outputs).map((output) => `${one.name}.${output}`)),
     );
     for (const info of bench.signals)
       this.signals.add(settableOfRun.has(info.path) || stages.has(info.path) ? { ...info, group: 'command' } : info);
@@ -111,7 +119,9 @@ class ScenarioReader {
     const asked = top.section('requirements');
     const requirements = asked ? readRequirements(asked, { signals: lookup(bench.signals), step: bench.step }) : [];
     top.finish();
-    const ends = [drive, ...traces.filter((trace) => trace.over === undefined).map((trace) => trace.points)].map((points) => points.at(-1)?.[0] ?? 0);
+    const ends = [drive, ...traces.filter((trace) => trace.over === undefined).map((trace) => trace.points)].map(
+      (points) => points.at(-1)?.[0] ?? 0,
+    );
     const ticks = given ?? Math.max(0, ...ends, ...steps.map((step) => step.at));
     // Where something else is wrong, the end may be missing only because of that.
     if (ticks === 0 && top.problems.count === 0)
@@ -163,8 +173,14 @@ class ScenarioReader {
     const column = section.text('column');
     if (file === undefined) return undefined;
     const text = this.beside(file);
-    if (text === undefined) return section.fail('file', 'no such file beside the scenario', 'name a CSV file in its folder or below');
-    return csvPoints(section, 'file', file, text, { time, column, expected, step: distance ? undefined : this.bench.step });
+    if (text === undefined)
+      return section.fail('file', 'no such file beside the scenario', 'name a CSV file in its folder or below');
+    return csvPoints(section, 'file', file, text, {
+      time,
+      column,
+      expected,
+      step: distance ? undefined : this.bench.step,
+    });
   }
 
   /** `grade:` goes to the one command of that name, or to the one that `of:` names. */
@@ -231,13 +247,25 @@ class ScenarioReader {
 
   /** The distance that the one vehicle of the bench has come. */
   private way(section: Section): string | undefined {
-    const ways = this.bench.signals.filter((info) => info.group === 'state' && info.path.endsWith('.distance') && info.unit === 'm');
+    const ways = this.bench.signals.filter(
+      (info) => info.group === 'state' && info.path.endsWith('.distance') && info.unit === 'm',
+    );
     if (ways.length === 1) return ways[0]!.path;
-    return section.fail('over', `the bench has ${ways.length === 0 ? 'no vehicle' : `${ways.length} vehicles`}`, 'write it over time');
+    return section.fail(
+      'over',
+      `the bench has ${ways.length === 0 ? 'no vehicle' : `${ways.length} vehicles`}`,
+      'write it over time',
+    );
   }
 
   /** `[[0 s, 0 km/h], [10 s, 30 km/h]]`: times in ticks, rising. */
-  private points(section: Section, key: string, value: Tree, expected: Expected, overDistance = false): [number, number][] {
+  private points(
+    section: Section,
+    key: string,
+    value: Tree,
+    expected: Expected,
+    overDistance = false,
+  ): [number, number][] {
     if (value.kind !== 'list' || value.items.length === 0) {
       section.problems.add(
         value.where,
@@ -254,7 +282,11 @@ class ScenarioReader {
         section.problems.add(item.where, section.inner(where), 'not a point', 'write [time, value]');
         continue;
       }
-      const time = section.quantityIn(item.items[0]!, overDistance ? { unit: 'm' } : { unit: 's', least: 0, most: longest }, where)?.value;
+      const time = section.quantityIn(
+        item.items[0]!,
+        overDistance ? { unit: 'm' } : { unit: 's', least: 0, most: longest },
+        where,
+      )?.value;
       const number = this.value(section, item.items[1]!, expected, where);
       if (time === undefined || number === undefined) continue;
       const tick = overDistance ? time : toTicks(time, this.bench.step);

@@ -7,12 +7,29 @@ export function scenarioSchema(): Schema {
   const or = (schema: Schema): Schema => ({ anyOf: [schema, parameter] });
   const time = or(quantitySchema({ unit: 's' }));
   const value: Schema = { type: ['string', 'number', 'boolean'] };
-  const points: Schema = { type: 'array', minItems: 1, items: { type: 'array', minItems: 2, maxItems: 2, items: value } };
+  const points: Schema = {
+    type: 'array',
+    minItems: 1,
+    items: { type: 'array', minItems: 2, maxItems: 2, items: value },
+  };
   const file = { file: text, time: text, column: text };
   const trace: Schema = {
-    anyOf: [points, mapping({ of: text, points, ...file, between: { enum: ['linear', 'hold'] }, over: { enum: ['time', 'distance'] } })],
+    anyOf: [
+      points,
+      mapping({
+        of: text,
+        points,
+        ...file,
+        between: { enum: ['linear', 'hold'] },
+        over: { enum: ['time', 'distance'] },
+      }),
+    ],
   };
-  const names: Schema = { type: 'object', propertyNames: { pattern: '^[A-Za-z][A-Za-z0-9]*$' }, additionalProperties: value };
+  const names: Schema = {
+    type: 'object',
+    propertyNames: { pattern: '^[A-Za-z][A-Za-z0-9]*$' },
+    additionalProperties: value,
+  };
   const step: Schema = mapping(
     {
       at: { ...time, description: 'at this time' },
@@ -47,11 +64,19 @@ export function scenarioSchema(): Schema {
       lasts: time,
       preview: time,
       parameters: { ...names, description: 'names that stand for values, written $name' },
-      cases: { type: 'object', additionalProperties: names, description: 'other values of the parameters, each a run of its own' },
+      cases: {
+        type: 'object',
+        additionalProperties: names,
+        description: 'other values of the parameters, each a run of its own',
+      },
       start: {
         type: 'object',
         description: 'state at the start, over that of the bench: speed, gear, temperature, or start values by element',
-        properties: { speed: or(quantitySchema({ unit: 'm/s' })), temperature: or(quantitySchema({ unit: 'K' })), gear: value },
+        properties: {
+          speed: or(quantitySchema({ unit: 'm/s' })),
+          temperature: or(quantitySchema({ unit: 'K' })),
+          gear: value,
+        },
         additionalProperties: { type: 'object', additionalProperties: value },
       },
       drive: { anyOf: [text, points, mapping(file, ['file'])], description: 'speed that the driver follows' },

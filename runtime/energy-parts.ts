@@ -48,7 +48,8 @@ export class EnergyParts {
   begin(signals: Float64Array): void {
     this.supplied.fill(0);
     this.lost.fill(0);
-    for (let i = 0; i < this.energy.length; i += 1) this.started[i] = this.energy[i]! < 0 ? 0 : signals[this.energy[i]!]!;
+    for (let i = 0; i < this.energy.length; i += 1)
+      this.started[i] = this.energy[i]! < 0 ? 0 : signals[this.energy[i]!]!;
   }
 
   run(signals: Float64Array): void {

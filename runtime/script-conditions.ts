@@ -1,5 +1,5 @@
 import { BlockLayout } from './block.js';
-import { compile, type CompiledRequirements } from './judge/compile.js';
+import { type CompiledRequirements, compile } from './judge/compile.js';
 import { type Formula, holds } from './judge/formula.js';
 import type { SignalTable } from './signals.js';
 

@@ -1,7 +1,7 @@
 import type { BlockLayout } from './block.js';
+import type { EventCatalogue, Journal } from './journal.js';
 import type { Formula, Requirement } from './judge/formula.js';
 import { ScriptConditions } from './script-conditions.js';
-import type { EventCatalogue, Journal } from './journal.js';
 import type { SignalTable } from './signals.js';
 
 /** A scenario as plain data: SI, times in ticks from tick 0. Read from a file by configs/scenario.ts. */
@@ -55,7 +55,16 @@ export interface ScriptStep {
   readonly over: number;
 }
 
-export const emptyScript: ScriptSpec = { name: 'no scenario', about: '', ticks: 0, drive: [], preview: 0, traces: [], steps: [], requirements: [] };
+export const emptyScript: ScriptSpec = {
+  name: 'no scenario',
+  about: '',
+  ticks: 0,
+  drive: [],
+  preview: 0,
+  traces: [],
+  steps: [],
+  requirements: [],
+};
 
 /** What a step does to its target until another step or `release` comes. */
 const modes = { free: 0, held: 1, ramping: 2, starting: 3, taking: 4, clearing: 5 } as const;
@@ -148,12 +157,17 @@ export class Script {
     this.traceValues = spec.traces.map((trace) => Float64Array.from(trace.points, (point) => point[1]));
     this.driveTicks = Float64Array.from(spec.drive, (point) => point[0]);
     this.driveValues = Float64Array.from(spec.drive, (point) => point[1]);
-    const signal = (name: string, unit: string, about: string) => signals.add({ path: `scenario.${name}`, unit, about, group: 'run' });
+    const signal = (name: string, unit: string, about: string) =>
+      signals.add({ path: `scenario.${name}`, unit, about, group: 'run' });
     this.signalTime = signal('time', 's', 'time of the timeline: since tick 0, less what it was held');
     this.signalStep = signal('step', '1', 'steps of the timeline done');
     this.signalTarget = signal('targetSpeed', 'm/s', 'speed that the driver is to follow');
     this.signalAhead = signal('targetSpeedAhead', 'm/s', 'the same, a preview time ahead');
-    this.signalTimeOuts = signal('timeOuts', '1', 'steps of the timeline that were left out because what they wait for did not come');
+    this.signalTimeOuts = signal(
+      'timeOuts',
+      '1',
+      'steps of the timeline that were left out because what they wait for did not come',
+    );
     this.signalRemaining = signal('remaining', 's', 'time to the end of the scenario');
     this.kindStep = events.kind({ name: 'scenario step', severity: 'note', text: 'scenario: {subject}' });
     this.kindFault = events.kind({ name: 'fault', severity: 'warning', text: 'fault: {subject}, value {a}' });
@@ -189,11 +203,25 @@ export class Script {
     const count = spec.traces.length;
     if (this.driveTicks.length > 0) {
       signals[this.signalTarget] = this.lookUp(block, pointers + count, this.driveTicks, this.driveValues, at, true);
-      signals[this.signalAhead] = this.lookUp(block, pointers + count + 1, this.driveTicks, this.driveValues, at + spec.preview, true);
+      signals[this.signalAhead] = this.lookUp(
+        block,
+        pointers + count + 1,
+        this.driveTicks,
+        this.driveValues,
+        at + spec.preview,
+        true,
+      );
     }
     for (let i = 0; i < count; i += 1) {
       const over = this.traceOver[i]!;
-      block[this.traceSlots[i]!] = this.lookUp(block, pointers + i, this.traceTicks[i]!, this.traceValues[i]!, over < 0 ? at : signals[over]!, spec.traces[i]!.between === 'linear');
+      block[this.traceSlots[i]!] = this.lookUp(
+        block,
+        pointers + i,
+        this.traceTicks[i]!,
+        this.traceValues[i]!,
+        over < 0 ? at : signals[over]!,
+        spec.traces[i]!.between === 'linear',
+      );
     }
     if (tick < 0) return;
     this.conditions!.run(tick, signals);
@@ -217,7 +245,14 @@ export class Script {
       } else {
         this.begin(block, number, step, now);
         const faulty = step.action === 'fault' || step.action === 'clear';
-        journal.event(tick, faulty ? this.kindFault : this.kindStep, this.subjects[number]!, step.value, step.over * this.step, 0);
+        journal.event(
+          tick,
+          faulty ? this.kindFault : this.kindStep,
+          this.subjects[number]!,
+          step.value,
+          step.over * this.step,
+          0,
+        );
       }
       block[this.next] = number + 1;
       block[this.since] = now;
@@ -288,7 +323,14 @@ export class Script {
     }
   }
 
-  private lookUp(block: Float64Array, pointer: number, ticks: Float64Array, values: Float64Array, tick: number, linear: boolean): number {
+  private lookUp(
+    block: Float64Array,
+    pointer: number,
+    ticks: Float64Array,
+    values: Float64Array,
+    tick: number,
+    linear: boolean,
+  ): number {
     let i = block[pointer]!;
     const last = ticks.length - 1;
     while (i < last && ticks[i + 1]! <= tick) i += 1;

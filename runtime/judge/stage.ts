@@ -2,8 +2,8 @@ import { BlockLayout } from '../block.js';
 import type { EventCatalogue, Journal } from '../journal.js';
 import type { SignalTable } from '../signals.js';
 import type { Stage } from '../tick.js';
-import { compileRequirements, type Judge } from './monitor.js';
 import type { Requirement } from './formula.js';
+import { compileRequirements, type Judge } from './monitor.js';
 import type { RequirementResult } from './result.js';
 
 export interface JudgeStageOptions {
@@ -42,8 +42,21 @@ export class JudgeStage implements Stage {
       const unit = this.judge.unit(i);
       slots.push(at.verdict, at.margin);
       shown.push(
-        signals.add({ path: `${name}.verdict`, unit: '1', about: `verdict so far: ${requirement.text}`, group: 'run', least: 0, most: 3 }),
-        signals.add({ path: `${name}.margin`, unit, about: `margin so far: ${requirement.text}`, group: 'run', difference: true }),
+        signals.add({
+          path: `${name}.verdict`,
+          unit: '1',
+          about: `verdict so far: ${requirement.text}`,
+          group: 'run',
+          least: 0,
+          most: 3,
+        }),
+        signals.add({
+          path: `${name}.margin`,
+          unit,
+          about: `margin so far: ${requirement.text}`,
+          group: 'run',
+          difference: true,
+        }),
       );
     });
     this.slots = Int32Array.from(slots);

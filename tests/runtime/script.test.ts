@@ -54,7 +54,15 @@ const above = (value: number): Formula => ({
   right: { is: 'number', value },
   unit: '1',
 });
-const step = (over: Partial<ScriptStep>): ScriptStep => ({ at: 0, name: 'step', action: 'note', target: '', value: 0, over: 0, ...over });
+const step = (over: Partial<ScriptStep>): ScriptStep => ({
+  at: 0,
+  name: 'step',
+  action: 'note',
+  target: '',
+  value: 0,
+  over: 0,
+  ...over,
+});
 
 describe('a timeline', () => {
   it('waits for a condition to last, then for a time after it', () => {

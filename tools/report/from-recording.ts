@@ -60,7 +60,9 @@ function gather(recording: Recording, file: string): RecordedReport {
   for (const { formula } of requirements) eachSignal(formula, (one) => wanted.add(one));
   for (const one of ['timing.lateness', 'timing.step', 'scenario.targetSpeed']) wanted.add(one);
   const rows = new RecordedRows(recording, lastTick, wanted);
-  const results = summary ? resultsOf(summary, requirements, spec.step, remarks) : judgeAgain(requirements, rows, remarks);
+  const results = summary
+    ? resultsOf(summary, requirements, spec.step, remarks)
+    : judgeAgain(requirements, rows, remarks);
   const judgement = summary
     ? judgementOf(summary, results)
     : judgeRun(
@@ -78,17 +80,24 @@ function gather(recording: Recording, file: string): RecordedReport {
         results,
       );
   if (rows.missing > 0) remarks.push(`${rows.missing} ticks have no row in the recording`);
-  const warnings = (summary?.warnings ?? []).map((one): ReportedWarning => ({
-    ...one,
-    since: Math.round(one.since / spec.step),
-    until: one.until === null ? null : Math.round(one.until / spec.step),
-  }));
-  const settings = Object.fromEntries(spec.watched.filter((one) => one.unit === 'Pa').map((one) => [one.path, drawn(pressureSettings(one))]));
+  const warnings = (summary?.warnings ?? []).map(
+    (one): ReportedWarning => ({
+      ...one,
+      since: Math.round(one.since / spec.step),
+      until: one.until === null ? null : Math.round(one.until / spec.step),
+    }),
+  );
+  const settings = Object.fromEntries(
+    spec.watched.filter((one) => one.unit === 'Pa').map((one) => [one.path, drawn(pressureSettings(one))]),
+  );
   const data: RunReportData = {
     run: header.run,
     created: header.created,
     bench: { name: header.bench.name, files: header.bench.files.map(mark) },
-    scenario: header.scenario === null && script.name === 'no scenario' ? null : { name: script.name, ...(header.scenario ? { file: mark(header.scenario) } : {}) },
+    scenario:
+      header.scenario === null && script.name === 'no scenario'
+        ? null
+        : { name: script.name, ...(header.scenario ? { file: mark(header.scenario) } : {}) },
     software: [
       { name: 'oilspring', value: header.software.version },
       { name: 'Node', value: `${header.software.node}, V8 ${header.software.v8}` },
@@ -106,7 +115,11 @@ function gather(recording: Recording, file: string): RecordedReport {
     events: rows.events.map(({ tick, code, subject, values }) => {
       const kind = header.events.kinds[code];
       const name = header.events.subjects[subject] ?? '?';
-      return { tick, severity: kind?.severity ?? 'note', text: kind ? eventText(kind, name, ...values) : `event ${code}` };
+      return {
+        tick,
+        severity: kind?.severity ?? 'note',
+        text: kind ? eventText(kind, name, ...values) : `event ${code}`,
+      };
     }),
     eventsLeftOut: rows.eventsLeftOut,
     timing: timingOf(summary, spec, rows),
@@ -145,7 +158,12 @@ function believed(ending: Ending, remarks: string[]): RecordedSummary | undefine
   return undefined;
 }
 
-function resultsOf(summary: RecordedSummary, requirements: readonly Requirement[], step: number, remarks: string[]): RequirementResult[] {
+function resultsOf(
+  summary: RecordedSummary,
+  requirements: readonly Requirement[],
+  step: number,
+  remarks: string[],
+): RequirementResult[] {
   const byId = new Map(summary.requirements.map((one) => [one.id, one]));
   return requirements.flatMap((requirement) => {
     const said = byId.get(requirement.id);
@@ -173,7 +191,9 @@ function resultsOf(summary: RecordedSummary, requirements: readonly Requirement[
 function judgementOf(summary: RecordedSummary, results: readonly RequirementResult[]): RunJudgement {
   const deciding = results.filter(({ requirement }) => requirement.severity !== 'observation');
   const count = (verdict: RequirementResult['verdict']) => deciding.filter((one) => one.verdict === verdict).length;
-  const atRest = deciding.filter(({ verdict, requirement }) => verdict === 'not exercised' && requirement.exercise === 'optional').length;
+  const atRest = deciding.filter(
+    ({ verdict, requirement }) => verdict === 'not exercised' && requirement.exercise === 'optional',
+  ).length;
   return {
     verdict: summary.verdict,
     valid: summary.valid,
@@ -184,7 +204,13 @@ function judgementOf(summary: RecordedSummary, results: readonly RequirementResu
       ...(unit === undefined ? {} : { unit }),
     })),
     exitCode: summary.exitCode,
-    counts: { pass: count('pass'), fail: count('fail'), notExercised: count('not exercised') - atRest, atRest, undecided: count('undecided') },
+    counts: {
+      pass: count('pass'),
+      fail: count('fail'),
+      notExercised: count('not exercised') - atRest,
+      atRest,
+      undecided: count('undecided'),
+    },
     summary: summary.verdictText,
   };
 }
@@ -216,13 +242,21 @@ function drawn(settings: PressureSettings): { label: string; value: number }[] {
     maximumAllowable: 'PS',
     casePressure: 'greatest case pressure',
   };
-  return Object.entries(settings).map(([key, value]) => ({ label: words[key as keyof PressureSettings], value: value as number }));
+  return Object.entries(settings).map(([key, value]) => ({
+    label: words[key as keyof PressureSettings],
+    value: value as number,
+  }));
 }
 
 function timingOf(summary: RecordedSummary | undefined, spec: BenchSpec, rows: RecordedRows): ReportedTiming | null {
   if (!summary?.timing.measured) return null;
   const { timing } = summary;
-  const measure = (name: string, of: RecordedSummary['timing']['step'], path: string, budget?: number): ReportedDuration => ({
+  const measure = (
+    name: string,
+    of: RecordedSummary['timing']['step'],
+    path: string,
+    budget?: number,
+  ): ReportedDuration => ({
     name,
     p50: of.p50,
     p99: of.p99,
@@ -250,5 +284,7 @@ function buckets(column: Float32Array | undefined): ReportedDuration['buckets'] 
     const at = Math.floor(16 * Math.log2(value * 1e6));
     counts.set(at, (counts.get(at) ?? 0) + 1);
   }
-  return [...counts].sort((a, b) => a[0] - b[0]).map(([at, count]) => ({ from: 2 ** (at / 16), to: 2 ** ((at + 1) / 16), count }));
+  return [...counts]
+    .sort((a, b) => a[0] - b[0])
+    .map(([at, count]) => ({ from: 2 ** (at / 16), to: 2 ** ((at + 1) / 16), count }));
 }

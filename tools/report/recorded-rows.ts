@@ -52,7 +52,12 @@ export class RecordedRows implements PlotSource {
             continue;
           }
           const [a, b, c] = block.values.subarray(3 * i, 3 * i + 3);
-          events.push({ tick: block.ticks[i]!, code: block.codes[i]!, subject: block.subjects[i]!, values: [a!, b!, c!] });
+          events.push({
+            tick: block.ticks[i]!,
+            code: block.codes[i]!,
+            subject: block.subjects[i]!,
+            values: [a!, b!, c!],
+          });
         }
       }
     }

@@ -23,7 +23,15 @@ export const recordedSummary = z.object({
   verdictText: z.string(),
   reasons: z.array(
     z.object({
-      reason: z.enum(['timing budget', 'lost frames', 'ledger residual', 'ring overflow', 'hand in the run', 'ended early', 'evidence']),
+      reason: z.enum([
+        'timing budget',
+        'lost frames',
+        'ledger residual',
+        'ring overflow',
+        'hand in the run',
+        'ended early',
+        'evidence',
+      ]),
       what: z.string(),
       value: number.optional(),
       bound: number.optional(),
@@ -31,7 +39,15 @@ export const recordedSummary = z.object({
     }),
   ),
   requirements: z.array(requirement),
-  timing: z.object({ measured: z.boolean(), period: duration, lateness: duration, step: duration, overruns: number, drift: number, collections: number }),
+  timing: z.object({
+    measured: z.boolean(),
+    period: duration,
+    lateness: duration,
+    step: duration,
+    overruns: number,
+    drift: number,
+    collections: number,
+  }),
   warnings: z.array(
     z.object({
       path: z.string(),
