@@ -149,17 +149,25 @@ export class LivePage {
   }
 }
 
+/** Comes back by itself. Not by a header: that would not reload an address with a token behind its #. */
+const waitScript = `setInterval(() => {
+  fetch('/', { cache: 'no-store' }).then((answer) => { if (answer.ok || answer.status === 401) location.reload(); }, () => {});
+}, 500);
+`;
+const waitPage =
+  '<!doctype html><html lang="en"><meta charset="utf-8"><meta name="viewport" content="width=device-width">' +
+  '<title>oilspring</title><script src="/wait.js" defer></script><p role="status">The bench is being built.</p></html>';
+
 function placeholder(address: string, port: number): Promise<Server> {
   const server = createServer((request, response) => {
     for (const [name, value] of Object.entries(securityHeaders(request.headers.host))) response.setHeader(name, value);
-    // browsers come back by themselves
-    response.writeHead(503, {
-      'Content-Type': 'text/html; charset=utf-8',
+    const script = request.url === '/wait.js';
+    response.writeHead(script ? 200 : 503, {
+      'Content-Type': `${script ? 'text/javascript' : 'text/html'}; charset=utf-8`,
       'Cache-Control': 'no-store',
       'Retry-After': '1',
-      Refresh: '1',
     });
-    response.end('<!doctype html><html lang="en"><title>oilspring</title><p>The bench is being built.</p></html>');
+    response.end(script ? waitScript : waitPage);
   });
   return new Promise((resolve, reject) => {
     server.once('error', reject);

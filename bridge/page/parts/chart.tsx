@@ -7,7 +7,7 @@ import { askHistory, onFrame, onReset, subject, tick } from '../store/connection
 import { calm, coloursChanged, flowUnit, pressureUnit, speedUnit } from '../store/preferences.js';
 import { Strip } from '../store/strip.js';
 import { clock, format, shownOf, withUnit } from '../store/units.js';
-import { beat, newest, subscribedSignals, usePaths } from '../store/values.js';
+import { beat, newest, signalsOf, usePaths } from '../store/values.js';
 import { ChartTable } from './chart-table.js';
 import { drawSoon, forgetDrawing } from './drawing.js';
 
@@ -294,7 +294,10 @@ function draw(
   const offFrame = onFrame((message) => {
     const view = chartView.peek();
     if (!view.live) return;
-    strip.append(message, subscribedSignals());
+    const order = signalsOf(message);
+    // what it does not carry yet comes with the next
+    if (order === undefined || strip.signals.some((at) => !order.includes(at))) return;
+    strip.append(message, order);
     strip.forget(tick.peek() - view.seconds / step);
     if (calm.matches && performance.now() - lastShown < 500) return;
     lastShown = performance.now();

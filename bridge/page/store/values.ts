@@ -14,6 +14,8 @@ let least = new Float32Array(0);
 let most = new Float32Array(0);
 let subscribed: number[] = [];
 let subscription = 0;
+/** Signals of the newest subscriptions. */
+const orders = new Map<number, readonly number[]>();
 const wanted = new Map<number, number>();
 let scheduled = false;
 let lastBeat = 0;
@@ -28,9 +30,12 @@ export function rangeOf(path: string): [number, number] {
   const at = subject.value?.index.get(path);
   return at === undefined ? [Number.NaN, Number.NaN] : [least[at], most[at]];
 }
-/** The signals that frames carry at present, in their order. */
-export function subscribedSignals(): readonly number[] {
-  return subscribed;
+/**
+ * The signals that a frame carries, in its order. A frame that was under way when the subscription changed still has the
+ * order of the one before; undefined where that is no longer known.
+ */
+export function signalsOf(frame: Frame): readonly number[] | undefined {
+  return orders.get(frame.subscription);
 }
 
 /** Has the paths sent for as long as the component shows. */
@@ -76,6 +81,8 @@ function subscribe(): void {
     return;
   }
   subscription += 1;
+  orders.set(subscription, subscribed);
+  orders.delete(subscription - 8);
   send({ type: 'subscribe', subscription, signals: subscribed });
 }
 
