@@ -1,10 +1,16 @@
 import { UdpSocket } from '../../../bridge/udp-socket.js';
+import { BlockLayout } from '../../../runtime/block.js';
+import { HandStage } from '../../../runtime/hand.js';
+import { createHandRing, HandRing, HandRingWriter } from '../../../runtime/hand-ring.js';
+import { HAND } from '../../../runtime/hand-wire.js';
+import { EventCatalogue } from '../../../runtime/journal.js';
 import { Clock } from '../../../runtime/realtime/clock.js';
 import { CollectionMeter } from '../../../runtime/realtime/collection-meter.js';
 import { Histogram } from '../../../runtime/realtime/histogram.js';
 import { Pacer } from '../../../runtime/realtime/pacer.js';
 import { createRing, RingReader } from '../../../runtime/ring.js';
 import { RingJournal } from '../../../runtime/ring-journal.js';
+import { BoardWriter } from '../../../runtime/status-board.js';
 
 const meter = new CollectionMeter();
 const results: Record<string, { calls: number; collections: number; allocated: number }> = {};
@@ -111,6 +117,51 @@ measure('journal snapshots', 20_000, (calls) => {
     journal.snapshot(i, block);
     if ((i & 31) === 0) empty();
   }
+});
+
+const layout = new BlockLayout();
+const handTargets = Array.from({ length: 40 }, (_, i) => ({
+  path: `valve${i}.command`,
+  unit: '1',
+  slot: i < 20 ? layout.add(`valve${i}.command`) : -1,
+  signal: i < 20 ? -1 : i,
+}));
+const hands = new HandStage({
+  targets: handTargets,
+  reach: { heldSlot: layout.add('held'), scenario: '', acknowledge: () => 1, warnings: ['highLine.pressure'] },
+  layout,
+  events: new EventCatalogue(),
+  step: 0.001,
+  link: 1,
+});
+const handBlock = layout.create();
+const handRing = createHandRing();
+const handWriter = new HandRingWriter(handRing);
+hands.source = new HandRing(handRing);
+const tickOfHands = (tick: number) => {
+  hands.lift(handBlock);
+  hands.take(handBlock, tick, journal);
+  hands.applySignals(handBlock, signals);
+  hands.apply(handBlock);
+  if ((tick & 255) === 0) empty();
+};
+measure('ticks without a hand', CALLS, (calls) => {
+  for (let i = 0; i < calls; i += 1) tickOfHands(i);
+});
+const text = { who: 'N.', address: '', said: '' };
+for (const target of [0, 7, 25, 31])
+  handWriter.put({ kind: HAND.set, request: target, target, deadMan: 1e9, value: 0.3, text });
+tickOfHands(0);
+measure('ticks with four targets held', CALLS, (calls) => {
+  for (let i = 0; i < calls; i += 1) tickOfHands(i);
+});
+const board = new BoardWriter(
+  Int32Array.from({ length: 60 }, (_, i) => i),
+  selection,
+  20,
+);
+measure('status board', CALLS, (calls) => {
+  for (let i = 0; i < calls; i += 1) board.write(handBlock, signals, i);
 });
 
 let kept: number[] = [];
