@@ -2,12 +2,13 @@ import type { BlockLayout } from '../runtime/block.js';
 import { type Journal, noJournal } from '../runtime/journal.js';
 import { useErrorFrame, useNote } from './can-bus-state.js';
 import { CanCodec } from './can-codec.js';
-import { frameSizes, identifierFlags, identifierWord, payloadAt } from './can-frame.js';
+import { frameSizes, identifierFlags, identifierMasks, identifierWord, payloadAt } from './can-frame.js';
 import { noteSize } from './can-notes.js';
 import { CanReceiver } from './can-receiver.js';
 import { CanSender } from './can-sender.js';
 import type { CanFilter } from './can-socket.js';
 import { IdentifierTable } from './identifier-table.js';
+import { priorityBits } from './j1939/identifier.js';
 import type { Link } from './link.js';
 import { canLinkCounts } from './link-counts.js';
 import type { LinkSpec, MessageSpec } from './message-map.js';
@@ -155,7 +156,11 @@ export function kernelFilters(messages: readonly MessageSpec[], link: string): C
     .filter((message) => message.link === link && message.direction === 'received')
     .map((message) => ({
       identifier: message.identifier | (message.extended ? identifierFlags.extended : 0),
-      mask: (message.extended ? 0x1fffffff : 0x7ff) | identifierFlags.extended | identifierFlags.remote,
+      mask:
+        ((message.extended ? identifierMasks.extended : identifierMasks.standard) &
+          (message.anyPriority ? ~priorityBits : -1)) |
+        identifierFlags.extended |
+        identifierFlags.remote,
     }));
 }
 

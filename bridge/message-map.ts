@@ -75,6 +75,8 @@ export interface MessageSpec {
   /** Number of the message on the wire (UDP message number; CAN identifier). */
   readonly identifier: number;
   readonly extended?: boolean;
+  /** Received: the three bits of an SAE J1939 priority in the identifier are not looked at. */
+  readonly anyPriority?: boolean;
   readonly flexibleDataRate?: boolean;
   readonly bitRateSwitch?: boolean;
   /** Payload length on CAN, bytes. */

@@ -1,4 +1,5 @@
 import { examineMap } from '../bridge/examine-map.js';
+import { identifierOf, isDirected } from '../bridge/j1939/identifier.js';
 import type { LinkSpec, MapSignal, MessageMap, MessageSpec, Protection } from '../bridge/message-map.js';
 import type { Position } from '../runtime/contract.js';
 import { overlappingBits } from './can-bits.js';
@@ -115,12 +116,14 @@ function readMessage(
   const direction = section.choice('direction', ['sent', 'received'] as const, { required: true });
   const link = readLinkName(section, pending.links, pending.linkNames);
   const can = link !== undefined && link.kind !== 'udp';
-  const extended = section.flag('extended') ?? false;
-  const identifier = section.whole(
+  const group = can ? readParameterGroup(section) : undefined;
+  const extended = (section.flag('extended') ?? false) || group !== undefined;
+  const said = section.whole(
     'id',
     { least: can ? 0 : 1, most: can ? (extended ? 0x1fffffff : 0x7ff) : 0xffff },
-    { required: true },
+    { required: !section.has('j1939') },
   );
+  const identifier = group ?? said;
   const trigger = section.choice('trigger', ['cyclic', 'on-change', 'cyclic-and-change'] as const) ?? 'cyclic';
   const every = checkedTicks(section, 'every', step, { required: trigger !== 'on-change', least: 1 }) ?? 0;
   const phase = checkedTicks(section, 'phase', step) ?? 0;
@@ -158,6 +161,7 @@ function readMessage(
     direction,
     identifier,
     ...(extended ? { extended } : {}),
+    ...(group !== undefined && direction === 'received' ? { anyPriority: true } : {}),
     ...(flexibleDataRate === undefined ? {} : { flexibleDataRate }),
     ...(bitRateSwitch === undefined ? {} : { bitRateSwitch }),
     ...(bytes === undefined ? {} : { bytes }),
@@ -171,6 +175,29 @@ function readMessage(
     ...(protection === undefined ? {} : { protection }),
     signals: read,
   };
+}
+
+/** `j1939: { pgn: 65265, source: 0, priority: 6, destination: 255 }` in place of `id`: the identifier, or undefined. */
+function readParameterGroup(section: Section): number | undefined {
+  const inner = section.section('j1939');
+  if (!inner) return undefined;
+  if (section.has('id')) section.fail('id', 'an identifier and a parameter group', 'keep one of id: and j1939:');
+  const pgn = inner.whole('pgn', { least: 0, most: 0x3ffff }, { required: true });
+  const source = inner.whole('source', { least: 0, most: 253 }, { required: true });
+  const priority = inner.whole('priority', { least: 0, most: 7 }) ?? 6;
+  const destination = inner.whole('destination', { least: 0, most: 255 });
+  inner.finish();
+  if (pgn === undefined || source === undefined) return undefined;
+  if (!isDirected(pgn) && destination !== undefined)
+    return inner.fail('destination', 'a destination for a group that goes to everybody', 'leave it away', {
+      value: String(destination),
+      bound: 'PDU format 240 or more',
+    });
+  if (isDirected(pgn) && (pgn & 0xff) !== 0)
+    return inner.fail('pgn', 'the low byte of a group with a destination is 0', 'say the destination by destination:', {
+      value: String(pgn),
+    });
+  return identifierOf({ priority, pgn, source, ...(destination === undefined ? {} : { destination }) });
 }
 
 function readLinkName(section: Section, links: readonly LinkSpec[], names: readonly string[]): LinkSpec | undefined {

@@ -93,7 +93,10 @@ export function requirementsSchema(): Schema {
             source: text,
             link: text,
             openAtEnd: { enum: ['undecided', 'pass', 'fail'] },
-            exercise: { enum: ['required', 'optional'], description: 'optional: a run may pass in which its trigger never came' },
+            exercise: {
+              enum: ['required', 'optional'],
+              description: 'optional: a run may pass in which its trigger never came',
+            },
           },
           ['holds'],
         ),
@@ -148,6 +151,11 @@ function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: 
       trigger: { enum: ['cyclic', 'on-change', 'cyclic-and-change'] },
       outOfRange: { enum: ['saturate', 'refuse'] },
       extended: flag,
+      j1939: mapping(
+        { pgn: whole, source: whole, priority: whole, destination: whole },
+        ['pgn', 'source'],
+        'parameter group of SAE J1939, in place of id',
+      ),
       flexibleDataRate: flag,
       bitRateSwitch: flag,
       bytes: whole(0),
