@@ -43,7 +43,7 @@ export function readPageWish(
   const onlyPort = /^\d{1,5}$/.test(said);
   const port = onlyPort ? said : match?.[3];
   const address = onlyPort ? '' : (match?.[1] ?? match?.[2] ?? '');
-  if ((match === null && !onlyPort) || Number(port ?? 0) > 65_535)
+  if ((match === null && !onlyPort) || /^\d+$/.test(address) || Number(port ?? 0) > 65_535)
     throw wrong('--page', 'not understood', said, 'write it as 127.0.0.1:8080, 8080 or off');
   return {
     ...usual,
@@ -166,6 +166,8 @@ function placeholder(address: string, port: number): Promise<Server> {
       'Content-Type': `${script ? 'text/javascript' : 'text/html'}; charset=utf-8`,
       'Cache-Control': 'no-store',
       'Retry-After': '1',
+      // the port changes hands soon
+      Connection: 'close',
     });
     response.end(script ? waitScript : waitPage);
   });
