@@ -7,6 +7,7 @@ import { requireSoundMap } from './examine-map.js';
 import { ExchangeTables } from './exchange-tables.js';
 import type { Link } from './link.js';
 import { linkEvents } from './link-events.js';
+import { messageFaults } from './message-faults.js';
 import type { MessageMap } from './message-map.js';
 import type { Transport } from './transport.js';
 import { mapChecksum } from './udp-layout.js';
@@ -29,6 +30,8 @@ export interface ExchangeOptions {
   readonly targets: Targets;
   /** Length of a tick, s. */
   readonly step: number;
+  /** Seed of what faults of messages leave to chance. */
+  readonly seed?: number;
   /** Ticks, from the first, in which time-outs put substitutes in place but are not counted. Default 0. */
   readonly bootWindowTicks?: number;
   /** Number of the first tick; negative with a pre-roll. Default 0. */
@@ -48,6 +51,15 @@ export interface ExchangeOptions {
 export class Exchange {
   readonly checksum: number;
   readonly links: readonly Link[];
+  /** Faults of messages as commands, with their slots. */
+  readonly faults: readonly {
+    readonly path: string;
+    readonly unit: string;
+    readonly about: string;
+    readonly least: number;
+    readonly most: number;
+    readonly slot: number;
+  }[];
   private readonly tables: ExchangeTables;
   private readonly units: Float64Array;
   private readonly bootUntil: number;
@@ -87,6 +99,18 @@ export class Exchange {
         : new CanLink(spec, number, messages, layout, firstTick, most);
     });
     this.links = links;
+    const all = links.flatMap((link) => [...link.receivers, ...link.senders]);
+    for (const [stream, one] of all.entries()) one.addFaults(layout, step, options.seed ?? 0, 1000 + stream);
+    this.faults = all.flatMap(({ message, faults }) =>
+      Object.entries(messageFaults).map(([name, { unit, about, least, most }]) => ({
+        path: `${message.name}.${name}`,
+        unit,
+        about,
+        least,
+        most,
+        slot: faults!.slots[name as keyof typeof messageFaults],
+      })),
+    );
     this.tables = new ExchangeTables(links, options, problems);
     if (problems.length > 0) throw new BuildError(problems);
 

@@ -1,4 +1,5 @@
 import type { BlockLayout } from '../runtime/block.js';
+import { fates, MessageFaults } from './message-faults.js';
 import type { MessageSpec } from './message-map.js';
 
 /** What became of a datagram or frame of a message. */
@@ -32,6 +33,8 @@ export class ReceivedMessage {
   readonly restarts: number;
   /** Slot: 1 once a message has come and no time-out has put the substitutes in place since. */
   protected readonly alive: number;
+  /** On the bench's side only. */
+  faults: MessageFaults | undefined;
   protected readonly count: number;
   protected readonly fresh: Float64Array;
   private readonly substitutes: Float64Array;
@@ -81,6 +84,11 @@ export class ReceivedMessage {
   /** One tick has passed: before what came in a tick is looked at. */
   grow(memory: Float64Array): void {
     memory[this.age] += 1;
+    if (this.faults?.delays(memory) && this.faults.due(memory, this.fresh)) this.use(memory, false);
+  }
+
+  addFaults(layout: BlockLayout, step: number, seed: number, stream: number): void {
+    this.faults = new MessageFaults(this.message, layout, step, seed, stream);
   }
 
   /**
@@ -120,7 +128,19 @@ export class ReceivedMessage {
 
   /** The values in `fresh` count from now on. */
   protected hold(memory: Float64Array): void {
-    for (let i = 0; i < this.count; i += 1) memory[this.values + i] = this.fresh[i];
+    const { faults } = this;
+    if (faults === undefined) {
+      this.use(memory, false);
+      return;
+    }
+    const fate = faults.judge(memory, this.fresh, 0);
+    if (fate === fates.lost) return;
+    if (fate !== fates.frozen && faults.delays(memory)) faults.holdBack(memory, this.fresh, 0);
+    else this.use(memory, fate === fates.frozen);
+  }
+
+  private use(memory: Float64Array, frozen: boolean): void {
+    if (!frozen) for (let i = 0; i < this.count; i += 1) memory[this.values + i] = this.fresh[i];
     const age = memory[this.age];
     if (age > 0) {
       const every = this.message.every;

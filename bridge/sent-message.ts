@@ -1,4 +1,5 @@
 import type { BlockLayout } from '../runtime/block.js';
+import { fates, MessageFaults } from './message-faults.js';
 import type { MessageSpec } from './message-map.js';
 import { changeDistance, dueByCycle } from './schedule.js';
 
@@ -28,8 +29,11 @@ export class SentMessage {
   readonly sent: number;
   /** Slot: times that it was due and a value was not finite, or outside its range in a message that refuses that. */
   readonly unsendable: number;
+  /** On the bench's side only. */
+  faults: MessageFaults | undefined;
   private readonly lastTick: number;
   private readonly fresh: Float64Array;
+  private readonly held: Float64Array;
   private readonly onCycle: boolean;
   private readonly onChange: boolean;
   private readonly distance: number;
@@ -51,6 +55,7 @@ export class SentMessage {
     this.slots = { sent: this.sent, unsendable: this.unsendable };
     this.lastTick = layout.add(`${message.name}.lastTick`, Number.NEGATIVE_INFINITY);
     this.fresh = new Float64Array(this.count);
+    this.held = new Float64Array(this.count);
     this.onCycle = message.trigger !== 'on-change';
     this.onChange = message.trigger !== 'cyclic';
     this.distance = changeDistance(message);
@@ -61,6 +66,10 @@ export class SentMessage {
     if (this.onCycle && this.dueNow(tick)) return true;
     if (!this.onChange || tick - this.firstTick < this.message.startDelay) return false;
     return tick - memory[this.lastTick] >= this.distance;
+  }
+
+  addFaults(layout: BlockLayout, step: number, seed: number, stream: number): void {
+    this.faults = new MessageFaults(this.message, layout, step, seed, stream);
   }
 
   /** Another run begins: what was sent before is no measure for what is due now. The sequence goes on. */
@@ -78,6 +87,38 @@ export class SentMessage {
    * `notDue`, or `unsendable`: a value was not finite or not allowed, and it is not to be written.
    */
   protected prepare(memory: Float64Array, tick: number, values: Float64Array, from: number): number {
+    const { faults } = this;
+    if (faults === undefined) return this.ready(memory, tick, values, from);
+    const late = faults.delays(memory) && faults.due(memory, this.fresh);
+    if (late) {
+      // Held back on its way: what is due by itself in this tick waits like the others.
+      for (let i = 0; i < this.count; i += 1) this.held[i] = this.fresh[i];
+    }
+    let state: number = this.mayBeDue(memory, tick) ? preparations.ready : preparations.notDue;
+    if (state === preparations.ready) {
+      const fate = faults.judge(memory, values, from);
+      if (fate === fates.lost) state = preparations.notDue;
+      else if (fate === fates.frozen) {
+        if (memory[this.lastTick] > Number.NEGATIVE_INFINITY) return this.ready(memory, tick, memory, this.carried);
+      } else if (faults.delays(memory)) {
+        faults.holdBack(memory, values, from);
+        state = preparations.notDue;
+      }
+    }
+    if (late) return this.force(memory, tick, this.held, 0);
+    return state === preparations.ready ? this.ready(memory, tick, values, from) : state;
+  }
+
+  /** Out now, whatever the schedule says. */
+  private force(memory: Float64Array, tick: number, values: Float64Array, from: number): number {
+    if (this.quantiser.quantise(values, from, this.fresh, 0) < 0) return preparations.unsendable;
+    for (let i = 0; i < this.count; i += 1) memory[this.carried + i] = this.fresh[i];
+    memory[this.lastTick] = tick;
+    memory[this.sent] += 1;
+    return preparations.ready;
+  }
+
+  private ready(memory: Float64Array, tick: number, values: Float64Array, from: number): number {
     if (!this.mayBeDue(memory, tick)) return preparations.notDue;
     const saturated = this.quantiser.quantise(values, from, this.fresh, 0);
     if (saturated < 0 || (saturated > 0 && this.refuses)) {

@@ -85,8 +85,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
       .map((path) => [path, table.find(path)]),
   );
   const said = { find: (path: string) => outputs.get(path) ?? -1 };
-  const known = new Set([...commandAt.keys(), ...outputs.keys()]);
-  const scriptStage = new Script(requireTargets(script, known), spec.step, layout, table, events, targets, said);
+  const scriptStage = new Script(script, spec.step, layout, table, events, targets, said);
   const ledgerSignals = declareLedger(table, circuit);
   const ledgerSlots = {
     turnover: layout.addMany('ledger.turnover', throughputs(circuit).length),
@@ -103,7 +102,13 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     step: spec.step,
     bootWindowTicks: spec.life.bootWindow,
     firstTick,
+    seed: options.seed,
   });
+  for (const { slot, ...info } of exchange.faults) {
+    commandAt.set(info.path, slot);
+    shown.slots.push(slot);
+    shown.signals.push(table.add({ ...info, group: 'command' }));
+  }
   const instruments = spec.instruments.map((instrument, i) =>
     buildInstrument(instrument, declared[i]!, table, options.seed, i, spec.step),
   );
@@ -129,6 +134,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     link: spec.map.links.length,
   });
   commandAt.set('watch.acknowledge', watch.acknowledgeSlot);
+  requireTargets(script, new Set([...commandAt.keys(), ...outputs.keys()]));
   scriptStage.bind(table);
   const judge = new JudgeStage({
     requirements: [...spec.requirements, ...script.requirements],
@@ -408,7 +414,7 @@ function stageOf(spec: BenchSpec, updates: readonly InstrumentUpdate[], stage: '
   return updates.filter((_, i) => spec.instruments[i]!.kind.stage === stage);
 }
 
-function requireTargets(script: ScriptSpec, known: ReadonlySet<string>): ScriptSpec {
+function requireTargets(script: ScriptSpec, known: ReadonlySet<string>): void {
   const problems: Problem[] = [];
   const named = [
     ...script.traces.map((trace) => ['traces', trace.target] as const),
@@ -423,5 +429,4 @@ function requireTargets(script: ScriptSpec, known: ReadonlySet<string>): ScriptS
       });
   }
   if (problems.length > 0) throw new BuildError(problems);
-  return script;
 }

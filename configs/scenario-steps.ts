@@ -131,7 +131,13 @@ export class StepReader {
     if (target && fault === undefined && (action === 'fault' || action === 'clear'))
       section.fail(action, `${target.path} is no fault`, 'see `oilspring list faults BENCH`, or write set:');
     // A switch is thrown without saying to what.
-    const thrown = action === 'fault' && target?.unit === '1' && target.least === 0 && target.most === 1 && fault === 0;
+    const thrown =
+      action === 'fault' &&
+      target?.unit === '1' &&
+      target.least === 0 &&
+      target.most === 1 &&
+      fault === 0 &&
+      target.about.startsWith('1:');
     if (takesValue && !entry && !thrown)
       section.fail(
         'to',

@@ -1,4 +1,5 @@
 import { countsOfLink, countsOfMessage } from '../bridge/link-counts.js';
+import { messageFaults } from '../bridge/message-faults.js';
 import type { MessageMap } from '../bridge/message-map.js';
 import type { PortKinds, SignalGroup, SignalInfo } from '../runtime/contract.js';
 import type { WatchedSignal } from './bench-spec.js';
@@ -85,6 +86,8 @@ export class SignalList {
       });
     }
     for (const message of map.messages) {
+      for (const [name, { unit, about, least, most, rest }] of Object.entries(messageFaults))
+        this.add({ path: `${message.name}.${name}`, unit, about, group: 'command', least, most, withoutFault: rest });
       const kind = map.links.find((link) => link.name === message.link)?.kind ?? 'udp';
       for (const [count, { about, ticks }] of Object.entries(countsOfMessage(kind, message.direction)))
         this.add({ path: `${message.name}.${count}`, unit: ticks ? 's' : '1', about, group: 'link' });

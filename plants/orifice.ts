@@ -30,14 +30,17 @@ export const orifice = branch({
       difference: true,
     },
   },
+  commands: {
+    blocked: { unit: '1', about: 'share of the bore that is clogged', rest: 0, least: 0, most: 0.9999, fault: true },
+  },
   laws: flowLaws,
-  flows({ parameter, from, to, reading, law }) {
+  flows({ parameter, command, from, to, reading, law }) {
     const massFlow = law.orificeMassFlow(
       from.pressure,
       to.pressure,
       from.density,
       to.density,
-      parameter.dischargeCoefficient * parameter.area,
+      parameter.dischargeCoefficient * parameter.area * (1 - command.blocked),
       parameter.smoothing,
     );
     const carried = law.heatCarried(massFlow, from.heatCapacity * from.temperature, to.heatCapacity * to.temperature);
@@ -49,14 +52,14 @@ export const orifice = branch({
     reading.massFlow = massFlow;
     reading.flow = massFlow / (massFlow > 0 ? from.density : to.density);
   },
-  loss({ parameter, from, to, law }) {
+  loss({ parameter, command, from, to, law }) {
     return (
       law.orificeMassFlow(
         from.pressure,
         to.pressure,
         from.density,
         to.density,
-        parameter.dischargeCoefficient * parameter.area,
+        parameter.dischargeCoefficient * parameter.area * (1 - command.blocked),
         parameter.smoothing,
       ) *
       (from.potential - to.potential)

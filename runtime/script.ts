@@ -71,8 +71,10 @@ const modes = { free: 0, held: 1, ramping: 2, starting: 3, taking: 4, clearing: 
 
 /** Slots of a target that steps hold, and where it stands: in the block, or among the signals. */
 interface Held {
-  readonly slot: number;
-  readonly signal: number;
+  readonly path: string;
+  /** Set when all commands are known; one of the two is -1. */
+  slot: number;
+  signal: number;
   readonly mode: number;
   readonly value: number;
   readonly from: number;
@@ -120,9 +122,9 @@ export class Script {
     layout: BlockLayout,
     signals: SignalTable,
     events: EventCatalogue,
-    targets: { find(path: string): number },
+    private readonly targets: { find(path: string): number },
     /** Index of what an instrument ahead of the plant says, by path, or -1. */
-    outputs: { find(path: string): number } = { find: () => -1 },
+    private readonly outputs: { find(path: string): number } = { find: () => -1 },
   ) {
     this.next = layout.add('scenario.next');
     this.heldSlot = layout.add('scenario.held');
@@ -137,10 +139,10 @@ export class Script {
       if (at < 0) {
         at = paths.length;
         paths.push(one.target);
-        const slot = targets.find(one.target);
         this.hold.push({
-          slot,
-          signal: slot < 0 ? outputs.find(one.target) : -1,
+          path: one.target,
+          slot: -1,
+          signal: -1,
           mode: layout.add(`scenario.${one.target}.mode`),
           value: layout.add(`scenario.${one.target}.value`),
           from: layout.add(`scenario.${one.target}.from`),
@@ -152,7 +154,7 @@ export class Script {
     });
     this.tracePointers = layout.addMany('scenario.trace', spec.traces.length + 2);
     this.traceOver = new Int32Array(spec.traces.length).fill(-1);
-    this.traceSlots = Int32Array.from(spec.traces, (trace) => targets.find(trace.target));
+    this.traceSlots = new Int32Array(spec.traces.length);
     this.traceTicks = spec.traces.map((trace) => Float64Array.from(trace.points, (point) => point[0]));
     this.traceValues = spec.traces.map((trace) => Float64Array.from(trace.points, (point) => point[1]));
     this.driveTicks = Float64Array.from(spec.drive, (point) => point[0]);
@@ -179,8 +181,13 @@ export class Script {
     this.subjects = Int32Array.from(spec.steps, (one) => events.subject(one.name));
   }
 
-  /** Ties traces over signals and conditions to the signals, when all of them are known. Throws BuildError. */
+  /** Ties steps, traces and conditions to commands and signals, when all of them are known. Throws BuildError. */
   bind(signals: SignalTable): void {
+    for (const held of this.hold) {
+      held.slot = this.targets.find(held.path);
+      held.signal = held.slot < 0 ? this.outputs.find(held.path) : -1;
+    }
+    this.traceSlots.set(this.spec.traces.map((trace) => this.targets.find(trace.target)));
     this.traceOver.set(this.spec.traces.map((trace) => (trace.over === undefined ? -1 : signals.find(trace.over))));
     this.conditions = new ScriptConditions(this.spec.conditions ?? [], signals, this.step);
   }

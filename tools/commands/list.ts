@@ -1,6 +1,7 @@
 import { Command } from 'commander';
 import { assemble } from '../../configs/assemble.js';
 import { catalogue } from '../../configs/catalogue.js';
+import { faultCatalogue, faultPage } from '../../configs/faults.js';
 import { formulaText } from '../../configs/requirement-text.js';
 import { readScenario } from '../../configs/scenario.js';
 import type { ElementKind } from '../../runtime/contract.js';
@@ -18,7 +19,8 @@ Examples:
   oilspring list elements
   oilspring list elements pump-motor
   oilspring list signals configs/harbour-truck/bench.yaml --json
-  oilspring list requirements configs/harbour-truck/bench.yaml`,
+  oilspring list requirements configs/harbour-truck/bench.yaml
+  oilspring list faults configs/harbour-truck/bench.yaml --markdown`,
   );
   command
     .command('elements [KIND]')
@@ -43,6 +45,19 @@ Examples:
       const { all } = assemble(spec, { seed: spec.seed, ...(script ? { script } : {}) }).table;
       if (options.json) process.stdout.write(`${JSON.stringify(all, undefined, 2)}\n`);
       else process.stdout.write(`${table(all.map((info) => [info.path, info.unit, info.group, info.about]))}\n`);
+    });
+  command
+    .command('faults BENCH')
+    .description('all faults that a scenario on a bench can set')
+    .option('--json', 'as JSON')
+    .option('--markdown', 'a page of them')
+    .exitOverride()
+    .action((bench: string, options: { json?: boolean; markdown?: boolean }) => {
+      const { spec } = readBenchFile(bench);
+      const all = faultCatalogue(spec);
+      if (options.json) process.stdout.write(`${JSON.stringify(all, undefined, 2)}\n`);
+      else if (options.markdown) process.stdout.write(`${faultPage(spec)}\n`);
+      else process.stdout.write(`${table(all.map((one) => [one.path, one.group, one.isSwitch ? 'switch' : one.unit, String(one.withoutFault), one.about]))}\n`);
     });
   command
     .command('requirements BENCH')

@@ -108,6 +108,10 @@ export function summarise(outcome: RunOutcome): RunSummary {
       malformed: value(`${name}.outOfRange`),
       timeOuts: value(`${name}.timeOuts`),
     })),
+    faults: plan.script.steps
+      .slice(0, value('scenario.step'))
+      .filter((one) => one.action === 'fault')
+      .map((one) => ({ path: one.target, value: one.value, unit: spec.signals.find((info) => info.path === one.target)?.unit ?? '1', step: one.name })),
     stateHash: done?.hash ?? '',
     recording: outcome.recording ?? null,
     rowsLost: done?.dropped ?? 0,

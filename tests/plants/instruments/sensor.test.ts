@@ -149,4 +149,50 @@ describe('power-stage', () => {
     bench.set('stuck', 1);
     expect(bench.run({ request: 1 })).toBe(0.5);
   });
+
+  it('has the faults of a catalogue, each gone when it is cleared', () => {
+    const bench = pressure();
+    const says = () => bench.run({ of: 100 * bar }) / bar;
+    says();
+    const cases: [string, number, number, number][] = [
+      ['drift', 5 * bar, 105, 1],
+      ['gainFactor', 1.2, 120, 1],
+      ['shortToSupply', 1, 401, 0],
+      ['shortToGround', 1, 1, 0],
+      ['lost', 1, 1, 0],
+    ];
+    for (const [fault, value, said, valid] of cases) {
+      const rest = fault === 'gainFactor' ? 1 : 0;
+      bench.set(fault, value);
+      expect([fault, says(), bench.get('valid')]).toEqual([fault, expect.closeTo(said, 9), valid]);
+      bench.set(fault, rest);
+      expect([fault, says(), bench.get('valid')]).toEqual([fault, expect.closeTo(100, 9), 1]);
+    }
+  });
+
+  it('becomes slow: 63.2 % after the further time constant', () => {
+    const bench = pressure();
+    bench.run({ of: 100 * bar });
+    bench.set('addedLag', 0.02);
+    for (let i = 0; i < 20; i += 1) bench.run({ of: 200 * bar });
+    expect(bench.get('value') / bar).toBeCloseTo(100 + 100 * (1 - Math.exp(-1)), 9);
+  });
+
+  it('jumps and drops out by chance, in the stated share', () => {
+    const bench = pressure();
+    const n = 20_000;
+    bench.set('spikes', 0.1);
+    let count = 0;
+    for (let i = 0; i < n; i += 1) count += bench.run({ of: 100 * bar }) > 400 * bar ? 1 : 0;
+    expect(Math.abs(count / n - 0.1)).toBeLessThan(4 * Math.sqrt(0.09 / n));
+    bench.set('spikes', 0);
+    bench.set('dropouts', 0.2);
+    count = 0;
+    for (let i = 0; i < n; i += 1) {
+      const said = bench.run({ of: (50 + (i % 100)) * bar });
+      count += bench.get('valid') === 0 ? 1 : 0;
+      expect(bench.get('valid') === 1 ? said / bar : 50 + (i % 100)).toBeCloseTo(50 + (i % 100), 9);
+    }
+    expect(Math.abs(count / n - 0.2)).toBeLessThan(4 * Math.sqrt(0.16 / n));
+  });
 });
