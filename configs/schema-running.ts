@@ -152,7 +152,7 @@ function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: 
       outOfRange: { enum: ['saturate', 'refuse'] },
       extended: flag,
       j1939: mapping(
-        { pgn: whole, source: whole, priority: whole, destination: whole },
+        { pgn: whole(0), source: whole(0), priority: whole(0), destination: whole(0) },
         ['pgn', 'source'],
         'parameter group of SAE J1939, in place of id',
       ),
@@ -162,6 +162,6 @@ function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: 
       protection: { type: 'object', required: ['is'] },
       signals: named(signal, 'signals by name'),
     },
-    ['direction', 'id', 'signals'],
+    ['direction', 'signals'],
   );
 }
