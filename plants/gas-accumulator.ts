@@ -212,10 +212,10 @@ export const gasAccumulator = store({
       fluid.denominator,
     );
     const gasVolume = law.accumulatorGasVolume(oilVolume, parameter.volume, closing);
-    const gasPressure = law.gasPressure(state.gasMass / gasVolume, state.gasTemperature, real);
+    const gasPressure = law.gasPressure(state.gasMass * (1 / gasVolume), state.gasTemperature, real);
     const pressure =
       gasPressure * law.poppetShare(oilVolume, closing) + law.stopRise(oilVolume, closing, end, parameter.stopPressure);
-    const temperature = state.heat / (fluid.heatCapacity * mass);
+    const temperature = state.heat * (1 / fluid.heatCapacity) * (1 / mass);
     oil.pressure = pressure;
     oil.temperature = temperature;
     // below the least mass of the pressure law the density goes to zero with the oil that is left
@@ -235,7 +235,7 @@ export const gasAccumulator = store({
     reading.gasPressure = gasPressure;
     reading.gasVolume = gasVolume;
     reading.oilVolume = oilVolume;
-    reading.stateOfCharge = oilVolume / end;
+    reading.stateOfCharge = oilVolume * (1 / end);
     reading.oilTemperature = temperature;
   },
   derivatives({ parameter, state, command, fluid, oil, wall, reading, derivative, law }) {
@@ -245,7 +245,7 @@ export const gasAccumulator = store({
     const mass = Math.max(state.mass, 1e-8 * fluid.referenceDensity * parameter.volume);
     const oilVolume = reading.oilVolume;
     const gasVolume = reading.gasVolume;
-    const density = state.gasMass / gasVolume;
+    const density = state.gasMass * (1 / gasVolume);
     const heatCapacity = state.gasMass * law.gasHeatCapacity(density, state.gasTemperature, real);
     const byTemperature = law.gasPressureByTemperature(density, state.gasTemperature, real);
     const byMass = law.accumulatorVolumeByMass(
@@ -281,9 +281,9 @@ export const gasAccumulator = store({
     // the gas volume answers oil, gas temperature and gas loss: dVg = -share (byMass dm + byGas (pT dT + pm dmg))
     const share = law.poppetShare(oilVolume, closing);
     const gasLoss = -command.gasLeak;
-    const byGasMass = law.gasPressureByDensity(density, state.gasTemperature, real) / gasVolume;
+    const byGasMass = law.gasPressureByDensity(density, state.gasTemperature, real) * (1 / gasVolume);
     const shrinking = share * (byMass * oil.massFlow + byGas * byGasMass * gasLoss);
-    const heatFlow = (heatCapacity * (state.wallTemperature - state.gasTemperature)) / parameter.timeConstant;
+    const heatFlow = heatCapacity * (state.wallTemperature - state.gasTemperature) * (1 / parameter.timeConstant);
     const work = state.gasTemperature * byTemperature;
     const oilHeat = parameter.oilConductance * (oil.temperature - state.wallTemperature);
     derivative.mass = oil.massFlow;
@@ -296,8 +296,8 @@ export const gasAccumulator = store({
       (oilHeat -
         heatFlow +
         wall.heatFlow +
-        parameter.ambientConductance * (parameter.ambientTemperature - state.wallTemperature)) /
-      parameter.wallHeatCapacity;
+        parameter.ambientConductance * (parameter.ambientTemperature - state.wallTemperature)) *
+      (1 / parameter.wallHeatCapacity);
     reading.gasHeatFlow = heatFlow;
     reading.inflow = oil.massFlow / oil.density;
   },
@@ -309,7 +309,7 @@ export const gasAccumulator = store({
       state.mass * oil.potential -
       oil.pressure * reading.oilVolume +
       state.heat +
-      state.gasMass * law.gasEnergy(state.gasMass / reading.gasVolume, state.gasTemperature, real) +
+      state.gasMass * law.gasEnergy(state.gasMass * (1 / reading.gasVolume), state.gasTemperature, real) +
       law.stopEnergy(reading.oilVolume, closing, end, parameter.stopPressure) +
       parameter.foamHeatCapacity * state.gasTemperature +
       parameter.wallHeatCapacity * state.wallTemperature
@@ -318,7 +318,7 @@ export const gasAccumulator = store({
   /** Heat from the surroundings; gas that leaks takes its enthalpy along. */
   supply({ parameter, state, command, reading, law }) {
     const real = parameter.gas === 0 ? 1 : 0;
-    const density = state.gasMass / reading.gasVolume;
+    const density = state.gasMass * (1 / reading.gasVolume);
     const enthalpy = law.gasEnergy(density, state.gasTemperature, real) + reading.gasPressure / density;
     return (
       parameter.ambientConductance * (parameter.ambientTemperature - state.wallTemperature) - command.gasLeak * enthalpy

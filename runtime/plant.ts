@@ -52,7 +52,10 @@ export class Plant implements LedgerPart {
   }
 
   /** A plant with a block of its own: for checks, tests and references. */
-  static alone(circuit: Circuit, settings: { readonly step: number; readonly substeps: number; readonly net?: boolean }): Plant {
+  static alone(
+    circuit: Circuit,
+    settings: { readonly step: number; readonly substeps: number; readonly net?: boolean },
+  ): Plant {
     const n = circuit.states.length;
     const k = circuit.memory.length;
     const c = circuit.commands.length;
@@ -93,7 +96,7 @@ export class Plant implements LedgerPart {
     for (let i = 0; i < settings.substeps; i += 1) {
       if (circuit.hasMemory) {
         circuit.functions.update(y, u, m, h, next);
-        m.set(next);
+        for (let k = 0; k < m.length; k += 1) m[k] = next[k]!;
       }
       solver.substep(y, u, m, h, this);
     }
@@ -114,7 +117,8 @@ export class Plant implements LedgerPart {
 
   private close(): void {
     const { count, open, ledger, observed, observedLedger } = this;
-    for (let i = 0; i < count; i += 1) ledger[i] = ledger[i]! + 0.5 * (this.openLength * (open[i]! + observed[observedLedger + i]!));
+    for (let i = 0; i < count; i += 1)
+      ledger[i] = ledger[i]! + 0.5 * (this.openLength * (open[i]! + observed[observedLedger + i]!));
     this.openLength = 0;
   }
 }

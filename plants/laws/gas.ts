@@ -22,114 +22,137 @@ export const NITROGEN_VIBRATION = 3364.011;
 /** Pressure, Pa, at `density` kg/m3 and `temperature` K. */
 export function gasPressure(density: number, temperature: number, real: number): number {
   const square = density * density;
-  const cube = square * density;
   const rt = NITROGEN_GAS_CONSTANT * temperature;
-  const tt = temperature * temperature;
+  const reciprocal = 1 / temperature;
   const g = BWR_GAMMA * square;
-  return (
-    rt * density +
-    real *
-      ((BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) * square +
-        (BWR_B * rt - BWR_A) * cube +
-        BWR_A * BWR_ALPHA * cube * cube +
-        (BWR_C / tt) * cube * (1 + g) * Math.exp(-g))
-  );
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  return real > 0
+    ? rt * density +
+        real *
+          square *
+          (BWR_B0 * rt -
+            BWR_A0 -
+            BWR_C0 * (reciprocal * reciprocal) +
+            density * (BWR_B * rt - BWR_A + BWR_A * BWR_ALPHA * (square * density) + BWR_C * decayed * (1 + g)))
+    : rt * density;
 }
 
 /** (dp/dT) at constant volume, Pa/K. */
 export function gasPressureByTemperature(density: number, temperature: number, real: number): number {
   const square = density * density;
-  const cube = square * density;
-  const ttt = temperature * temperature * temperature;
+  const reciprocal = 1 / temperature;
   const g = BWR_GAMMA * square;
-  return (
-    NITROGEN_GAS_CONSTANT * density +
-    real *
-      ((BWR_B0 * NITROGEN_GAS_CONSTANT + (2 * BWR_C0) / ttt) * square +
-        BWR_B * NITROGEN_GAS_CONSTANT * cube -
-        ((2 * BWR_C) / ttt) * cube * (1 + g) * Math.exp(-g))
-  );
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  return real > 0
+    ? NITROGEN_GAS_CONSTANT * density +
+        real *
+          square *
+          (BWR_B0 * NITROGEN_GAS_CONSTANT +
+            BWR_B * NITROGEN_GAS_CONSTANT * density +
+            2 * reciprocal * (BWR_C0 * (reciprocal * reciprocal) - BWR_C * decayed * density * (1 + g)))
+    : NITROGEN_GAS_CONSTANT * density;
 }
 
 /** (dp/drho) at constant temperature, J/kg. */
 export function gasPressureByDensity(density: number, temperature: number, real: number): number {
   const square = density * density;
   const rt = NITROGEN_GAS_CONSTANT * temperature;
-  const tt = temperature * temperature;
+  const reciprocal = 1 / temperature;
   const g = BWR_GAMMA * square;
-  return (
-    rt +
-    real *
-      (2 * (BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) * density +
-        3 * (BWR_B * rt - BWR_A) * square +
-        6 * BWR_A * BWR_ALPHA * square * square * density +
-        (BWR_C / tt) * square * (3 + 3 * g - 2 * g * g) * Math.exp(-g))
-  );
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  return real > 0
+    ? rt +
+        real *
+          density *
+          (2 * (BWR_B0 * rt - BWR_A0 - BWR_C0 * (reciprocal * reciprocal)) +
+            density *
+              (3 * (BWR_B * rt - BWR_A) +
+                6 * BWR_A * BWR_ALPHA * (square * density) +
+                BWR_C * decayed * (3 + g * (3 - 2 * g))))
+    : rt;
 }
 
 /** Heat capacity at constant volume, J/(kg K). */
 export function gasHeatCapacity(density: number, temperature: number, real: number): number {
-  const y = NITROGEN_VIBRATION / temperature;
-  const e = Math.exp(-y);
-  const ttt = temperature * temperature * temperature;
   const square = density * density;
-  return (
-    2.5 * NITROGEN_GAS_CONSTANT +
-    real *
-      ((NITROGEN_GAS_CONSTANT * y * y * e) / ((1 - e) * (1 - e)) +
-        (6 / ttt) * (BWR_C0 * density - BWR_C / BWR_GAMMA) +
-        ((3 * BWR_C) / ttt) * (2 / BWR_GAMMA + square) * Math.exp(-BWR_GAMMA * square))
-  );
+  const reciprocal = 1 / temperature;
+  const y = NITROGEN_VIBRATION * reciprocal;
+  const e = Math.exp(-y);
+  const excited = y / (1 - e);
+  const g = BWR_GAMMA * square;
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  return real > 0
+    ? 2.5 * NITROGEN_GAS_CONSTANT +
+        real *
+          (NITROGEN_GAS_CONSTANT * e * excited * excited +
+            reciprocal *
+              (6 * (reciprocal * reciprocal) * (BWR_C0 * density - BWR_C / BWR_GAMMA) +
+                3 * BWR_C * decayed * (2 / BWR_GAMMA + square)))
+    : 2.5 * NITROGEN_GAS_CONSTANT;
 }
 
 /** Second derivative of pressure by temperature, Pa/K2. */
 export function gasCurvature(density: number, temperature: number, real: number): number {
   const square = density * density;
-  const tttt = temperature * temperature * temperature * temperature;
+  const reciprocal = 1 / temperature;
   const g = BWR_GAMMA * square;
-  return ((6 * real * square) / tttt) * (BWR_C * density * (1 + g) * Math.exp(-g) - BWR_C0);
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  return real > 0
+    ? 6 *
+        real *
+        square *
+        (reciprocal * reciprocal) *
+        (BWR_C * decayed * density * (1 + g) - BWR_C0 * (reciprocal * reciprocal))
+    : 0;
 }
 
 /** Mixed second derivative of pressure by density and temperature, J/(kg K). */
 export function gasMixedCurvature(density: number, temperature: number, real: number): number {
   const square = density * density;
-  const ttt = temperature * temperature * temperature;
+  const reciprocal = 1 / temperature;
   const g = BWR_GAMMA * square;
-  return (
-    NITROGEN_GAS_CONSTANT +
-    real *
-      (2 * (BWR_B0 * NITROGEN_GAS_CONSTANT + (2 * BWR_C0) / ttt) * density +
-        3 * BWR_B * NITROGEN_GAS_CONSTANT * square -
-        ((2 * BWR_C) / ttt) * square * (3 + 3 * g - 2 * g * g) * Math.exp(-g))
-  );
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  return real > 0
+    ? NITROGEN_GAS_CONSTANT +
+        real *
+          density *
+          (2 * (BWR_B0 * NITROGEN_GAS_CONSTANT + 2 * BWR_C0 * (reciprocal * reciprocal) * reciprocal) +
+            density * (3 * BWR_B * NITROGEN_GAS_CONSTANT - 2 * BWR_C * reciprocal * decayed * (3 + g * (3 - 2 * g))))
+    : NITROGEN_GAS_CONSTANT;
 }
 
 /** Second derivative of pressure by density, Pa m6/kg2. */
 export function gasDensityCurvature(density: number, temperature: number, real: number): number {
   const square = density * density;
   const rt = NITROGEN_GAS_CONSTANT * temperature;
-  const tt = temperature * temperature;
+  const reciprocal = 1 / temperature;
   const g = BWR_GAMMA * square;
-  return (
-    real *
-    (2 * (BWR_B0 * rt - BWR_A0 - BWR_C0 / tt) +
-      6 * (BWR_B * rt - BWR_A) * density +
-      30 * BWR_A * BWR_ALPHA * square * square +
-      ((2 * BWR_C) / tt) * density * (3 + g * (3 + g * (2 * g - 9))) * Math.exp(-g))
-  );
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  return real > 0
+    ? real *
+        (2 * (BWR_B0 * rt - BWR_A0 - BWR_C0 * (reciprocal * reciprocal)) +
+          density *
+            (6 * (BWR_B * rt - BWR_A) +
+              30 * BWR_A * BWR_ALPHA * (square * density) +
+              2 * BWR_C * decayed * (3 + g * (3 + g * (2 * g - 9)))))
+    : 0;
 }
 
 /** Derivative of the heat capacity by temperature, J/(kg K2). */
 export function gasHeatCapacityByTemperature(density: number, temperature: number, real: number): number {
-  const y = NITROGEN_VIBRATION / temperature;
-  const e = Math.exp(-y);
-  const ttt = temperature * temperature * temperature;
   const square = density * density;
-  const vibration = (NITROGEN_GAS_CONSTANT * y * y * e) / ((1 - e) * (1 - e));
+  const reciprocal = 1 / temperature;
+  const y = NITROGEN_VIBRATION * reciprocal;
+  const e = Math.exp(-y);
+  const excited = y / (1 - e);
+  const g = BWR_GAMMA * square;
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  const vibration = NITROGEN_GAS_CONSTANT * e * excited * excited;
   const residual =
-    (6 / ttt) * (BWR_C0 * density - BWR_C / BWR_GAMMA) +
-    ((3 * BWR_C) / ttt) * (2 / BWR_GAMMA + square) * Math.exp(-BWR_GAMMA * square);
-  return (-real / temperature) * (vibration * (2 - (y * (1 + e)) / (1 - e)) + 3 * residual);
+    reciprocal *
+    (6 * (reciprocal * reciprocal) * (BWR_C0 * density - BWR_C / BWR_GAMMA) +
+      3 * BWR_C * decayed * (2 / BWR_GAMMA + square));
+  return real > 0 ? -real * reciprocal * (vibration * (2 - excited * (1 + e)) + 3 * residual) : 0;
 }
 
 /**
@@ -163,19 +186,20 @@ export const gasHeatCapacitySlopes = {
 
 /** Internal energy, J/kg, zero for the dilute gas at 0 K. Consistent with the laws above: du/dT = c_v, du/dv = T p_T - p. */
 export function gasEnergy(density: number, temperature: number, real: number): number {
-  const e = Math.exp(-NITROGEN_VIBRATION / temperature);
-  const tt = temperature * temperature;
   const square = density * density;
+  const reciprocal = 1 / temperature;
+  const e = Math.exp(-(NITROGEN_VIBRATION * reciprocal));
   const g = BWR_GAMMA * square;
-  return (
-    2.5 * NITROGEN_GAS_CONSTANT * temperature +
-    real *
-      ((NITROGEN_GAS_CONSTANT * NITROGEN_VIBRATION * e) / (1 - e) -
-        (BWR_A0 + (3 * BWR_C0) / tt) * density -
-        0.5 * BWR_A * square +
-        0.2 * BWR_A * BWR_ALPHA * square * square * density +
-        ((1.5 * BWR_C) / (BWR_GAMMA * tt)) * (2 - (2 + g) * Math.exp(-g)))
-  );
+  const decayed = Math.exp(-g) * (reciprocal * reciprocal);
+  return real > 0
+    ? 2.5 * NITROGEN_GAS_CONSTANT * temperature +
+        real *
+          ((NITROGEN_GAS_CONSTANT * NITROGEN_VIBRATION * e) / (1 - e) -
+            (BWR_A0 + 3 * BWR_C0 * (reciprocal * reciprocal)) * density -
+            0.5 * BWR_A * square +
+            0.2 * BWR_A * BWR_ALPHA * square * (square * density) +
+            ((1.5 * BWR_C) / BWR_GAMMA) * (2 * (reciprocal * reciprocal) - decayed * (2 + g)))
+    : 2.5 * NITROGEN_GAS_CONSTANT * temperature;
 }
 
 /**
@@ -197,13 +221,13 @@ export function separatorTravel(oilVolume: number, closingVolume: number): numbe
 /** Pressure, Pa, that the end stop adds: a cubic spring past `fullVolume`, `stopPressure` at five closing volumes past it. */
 export function stopRise(oilVolume: number, closingVolume: number, fullVolume: number, stopPressure: number): number {
   const past = Math.max(0, oilVolume - fullVolume) * (0.2 / closingVolume);
-  return stopPressure * past * past * past;
+  return stopPressure * (past * past) * past;
 }
 
 /** Energy in that spring, J. */
 export function stopEnergy(oilVolume: number, closingVolume: number, fullVolume: number, stopPressure: number): number {
   const past = Math.max(0, oilVolume - fullVolume) * (0.2 / closingVolume);
-  return 1.25 * stopPressure * closingVolume * past * past * past * past;
+  return 1.25 * stopPressure * closingVolume * (past * past) * (past * past);
 }
 
 /** Gas volume, m3, never below half a percent of `volume`. */
@@ -222,7 +246,7 @@ export function accumulatorPressure(
   fullVolume: number,
   stopPressure: number,
 ): number {
-  const density = gasMass / accumulatorGasVolume(oilVolume, volume, closingVolume);
+  const density = gasMass * (1 / accumulatorGasVolume(oilVolume, volume, closingVolume));
   return (
     gasPressure(density, temperature, real) * poppetShare(oilVolume, closingVolume) +
     stopRise(oilVolume, closingVolume, fullVolume, stopPressure)
@@ -240,14 +264,14 @@ export function accumulatorStiffness(
   fullVolume: number,
   stopPressure: number,
 ): number {
-  const gasVolume = accumulatorGasVolume(oilVolume, volume, closingVolume);
-  const density = gasMass / gasVolume;
+  const reciprocal = 1 / accumulatorGasVolume(oilVolume, volume, closingVolume);
+  const density = gasMass * reciprocal;
   const closed = Math.max(0, 1 - oilVolume * (1 / closingVolume));
-  const share = 1 - closed * closed * closed;
+  const share = poppetShare(oilVolume, closingVolume);
   const past = Math.max(0, oilVolume - fullVolume) * (0.2 / closingVolume);
   return (
-    ((gasPressureByDensity(density, temperature, real) * density) / gasVolume) * share * share +
-    (gasPressure(density, temperature, real) * 3 * closed * closed + 0.6 * stopPressure * past * past) *
+    gasPressureByDensity(density, temperature, real) * density * reciprocal * (share * share) +
+    (gasPressure(density, temperature, real) * (3 * (closed * closed)) + 0.6 * stopPressure * (past * past)) *
       (1 / closingVolume)
   );
 }
@@ -255,13 +279,17 @@ export function accumulatorStiffness(
 /** Volume of oil as a share of its volume at the standard atmosphere; the same law as `oilVolumeRatio` of oil.ts. */
 export function storedOilRatio(pressure: number, freeAir: number, numerator: number, denominator: number): number {
   const above = pressure - 101325;
-  return (freeAir * 101325) / pressure + ((1 - freeAir) * (1 + numerator * above)) / (1 + denominator * above);
+  const air = freeAir * 101325 * (1 / pressure);
+  const thinning = 1 / (1 + denominator * above);
+  return air + (1 - freeAir) * (1 + numerator * above) * thinning;
 }
 
 /** Its derivative by pressure, 1/Pa; the same law as `oilVolumeSlope` of oil.ts. */
 export function storedOilSlope(pressure: number, freeAir: number, numerator: number, denominator: number): number {
-  const liquid = 1 + denominator * (pressure - 101325);
-  return (-freeAir * 101325) / (pressure * pressure) - ((1 - freeAir) * (denominator - numerator)) / (liquid * liquid);
+  const above = pressure - 101325;
+  const air = freeAir * 101325 * (1 / pressure);
+  const thinning = 1 / (1 + denominator * above);
+  return -(air * (1 / pressure)) - (1 - freeAir) * (denominator - numerator) * (thinning * thinning);
 }
 
 /** One Newton step towards the oil volume at which the oil, compressed by the accumulator's pressure, just fits. */
@@ -326,7 +354,7 @@ export function accumulatorOilVolume(
   numerator: number,
   denominator: number,
 ): number {
-  const relaxed = mass / referenceDensity;
+  const relaxed = mass * (1 / referenceDensity);
   const dilute = NITROGEN_GAS_CONSTANT * temperature * gasMass;
   const estimate = dilute / Math.max(volume - relaxed, 0.05 * volume) - 101325;
   const liquid = (relaxed * (1 - freeAir) * (1 + numerator * estimate)) / (1 + denominator * estimate);
@@ -398,8 +426,10 @@ export function accumulatorVolumeByMass(
     fullVolume,
     stopPressure,
   );
-  const slope = (mass / referenceDensity) * storedOilSlope(pressure, freeAir, numerator, denominator);
-  return storedOilRatio(pressure, freeAir, numerator, denominator) / (referenceDensity * (1 - slope * stiffness));
+  const slope = mass * (1 / referenceDensity) * storedOilSlope(pressure, freeAir, numerator, denominator);
+  return (
+    storedOilRatio(pressure, freeAir, numerator, denominator) * (1 / referenceDensity) * (1 / (1 - slope * stiffness))
+  );
 }
 
 /** How it answers a change of gas pressure by itself, m3/Pa, negative: (dV/dp_gas) at the solution `oilVolume`. */
@@ -438,8 +468,8 @@ export function accumulatorVolumeByGas(
     fullVolume,
     stopPressure,
   );
-  const slope = (mass / referenceDensity) * storedOilSlope(pressure, freeAir, numerator, denominator);
-  return (slope * poppetShare(oilVolume, closingVolume)) / (1 - slope * stiffness);
+  const slope = mass * (1 / referenceDensity) * storedOilSlope(pressure, freeAir, numerator, denominator);
+  return slope * poppetShare(oilVolume, closingVolume) * (1 / (1 - slope * stiffness));
 }
 
 /** Exact slopes of `accumulatorOilVolume` by the implicit function theorem; the other arguments are constants. */
@@ -503,7 +533,8 @@ export const accumulatorOilVolumeSlopes = {
       numerator,
       denominator,
       oilVolume,
-    ) * gasPressureByTemperature(gasMass / accumulatorGasVolume(oilVolume, volume, closingVolume), temperature, real),
+    ) *
+    gasPressureByTemperature(gasMass * (1 / accumulatorGasVolume(oilVolume, volume, closingVolume)), temperature, real),
   gasMass: (
     mass: number,
     temperature: number,
@@ -519,7 +550,7 @@ export const accumulatorOilVolumeSlopes = {
     denominator: number,
     oilVolume: number,
   ) =>
-    (accumulatorVolumeByGas(
+    accumulatorVolumeByGas(
       mass,
       temperature,
       gasMass,
@@ -534,6 +565,6 @@ export const accumulatorOilVolumeSlopes = {
       denominator,
       oilVolume,
     ) *
-      gasPressureByDensity(gasMass / accumulatorGasVolume(oilVolume, volume, closingVolume), temperature, real)) /
-    accumulatorGasVolume(oilVolume, volume, closingVolume),
+    gasPressureByDensity(gasMass * (1 / accumulatorGasVolume(oilVolume, volume, closingVolume)), temperature, real) *
+    (1 / accumulatorGasVolume(oilVolume, volume, closingVolume)),
 };

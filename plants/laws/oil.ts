@@ -31,18 +31,17 @@ export function liquidDenominator(modulus: number, modulusSlope: number): number
 /** Volume as a share of the volume at the standard atmosphere, x(p). `pressure` > 0. */
 export function oilVolumeRatio(pressure: number, freeAir: number, numerator: number, denominator: number): number {
   const above = pressure - STANDARD_PRESSURE;
-  return (
-    (freeAir * STANDARD_PRESSURE) / pressure + ((1 - freeAir) * (1 + numerator * above)) / (1 + denominator * above)
-  );
+  const air = freeAir * STANDARD_PRESSURE * (1 / pressure);
+  const thinning = 1 / (1 + denominator * above);
+  return air + (1 - freeAir) * (1 + numerator * above) * thinning;
 }
 
 /** dx/dp, 1/Pa, negative. */
 export function oilVolumeSlope(pressure: number, freeAir: number, numerator: number, denominator: number): number {
-  const liquid = 1 + denominator * (pressure - STANDARD_PRESSURE);
-  return (
-    (-freeAir * STANDARD_PRESSURE) / (pressure * pressure) -
-    ((1 - freeAir) * (denominator - numerator)) / (liquid * liquid)
-  );
+  const above = pressure - STANDARD_PRESSURE;
+  const air = freeAir * STANDARD_PRESSURE * (1 / pressure);
+  const thinning = 1 / (1 + denominator * above);
+  return -(air * (1 / pressure)) - (1 - freeAir) * (denominator - numerator) * (thinning * thinning);
 }
 
 /**
@@ -87,9 +86,9 @@ export function oilPotential(
 ): number {
   const above = pressure - STANDARD_PRESSURE;
   const share = numerator / denominator;
-  const air = freeAir * STANDARD_PRESSURE * Math.log(pressure / STANDARD_PRESSURE);
+  const air = freeAir * STANDARD_PRESSURE * Math.log(pressure * (1 / STANDARD_PRESSURE));
   const liquid = share * above + ((1 - share) / denominator) * Math.log(1 + denominator * above);
-  return (air + (1 - freeAir) * liquid) / referenceDensity;
+  return (air + (1 - freeAir) * liquid) * (1 / referenceDensity);
 }
 
 /** Its exact slope, 1/rho. */
@@ -101,7 +100,7 @@ export const oilPotentialSlopes = {
     numerator: number,
     denominator: number,
     _value: number,
-  ) => oilVolumeRatio(pressure, freeAir, numerator, denominator) / referenceDensity,
+  ) => oilVolumeRatio(pressure, freeAir, numerator, denominator) * (1 / referenceDensity),
 };
 
 /**

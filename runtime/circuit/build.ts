@@ -9,9 +9,11 @@ import {
   type SignalInfo,
   type StateDeclaration,
 } from '../contract.js';
-import { type Elimination, eliminate } from './elimination.js';
-import { chunkSize, type Output, printFunction } from './emit.js';
+import { rodas3Stages } from '../solver/rodas3-code.js';
+import { type Elimination, eliminate, printElimination, printPieces } from './elimination.js';
+import { chunkSize, javaScript, type Output, printFunction } from './emit.js';
 import { Graph, type NodeId } from './graph.js';
+import { jacobian } from './jacobian.js';
 import { type ReadContext, readFunction, type Table } from './read.js';
 
 /**
@@ -49,6 +51,20 @@ export interface CircuitFunctions {
   readonly audit: (y: Arrays, u: Arrays, m: Arrays, out: Arrays) => void;
   readonly factor: (J: Arrays, c: number, A: Arrays) => void;
   readonly solve: (A: Arrays, b: Arrays, x: Arrays) => void;
+  /** Stages of the solver's step: see solver/rodas3-code.ts. */
+  readonly stageOne: (A: Arrays, d: Arrays, y: Arrays, h: number, k1: Arrays, k2: Arrays, s: Arrays) => void;
+  readonly stageTwo: (A: Arrays, b: Arrays, h: number, k1: Arrays, k2: Arrays, k3: Arrays, s: Arrays) => void;
+  readonly stageThree: (
+    A: Arrays,
+    b: Arrays,
+    h: number,
+    k1: Arrays,
+    k2: Arrays,
+    k3: Arrays,
+    k4: Arrays,
+    s: Arrays,
+    e: Arrays,
+  ) => void;
 }
 
 export interface Circuit {
@@ -124,10 +140,17 @@ class ElementReader {
     return this.portKinds[this.element.kind.ports[port]!]!;
   }
 
-  read(phase: 'efforts' | 'flows' | 'derivatives' | 'update' | 'value', name: string, fn: ElementFunction): NodeId | undefined {
+  read(
+    phase: 'efforts' | 'flows' | 'derivatives' | 'update' | 'value',
+    name: string,
+    fn: ElementFunction,
+  ): NodeId | undefined {
     const { element, graph } = this;
     const { kind } = element;
-    const fixed = (table: ReadonlyMap<string, NodeId>): Table => ({ get: (key) => table.get(key), members: [...table.keys()] });
+    const fixed = (table: ReadonlyMap<string, NodeId>): Table => ({
+      get: (key) => table.get(key),
+      members: [...table.keys()],
+    });
     const numbers = (values: Readonly<Record<string, number>>): Table => ({
       get: (key) => (key in values ? graph.constant(values[key]!) : undefined),
       members: Object.keys(values),
@@ -162,10 +185,15 @@ class ElementReader {
               },
             }
           : fixed(this.memoryNodes),
-      reading: writable(this.readings, Object.keys(kind.readings), phase === 'efforts' || phase === 'flows' || phase === 'derivatives'),
+      reading: writable(
+        this.readings,
+        Object.keys(kind.readings),
+        phase === 'efforts' || phase === 'flows' || phase === 'derivatives',
+      ),
       derivative: writable(this.derivatives, Object.keys(kind.states), phase === 'derivatives' || phase === 'flows'),
     };
-    for (const port of Object.keys(kind.ports)) tables[port] = kind.role === 'store' ? this.storePort(port, phase) : this.branchPort(port, phase);
+    for (const port of Object.keys(kind.ports))
+      tables[port] = kind.role === 'store' ? this.storePort(port, phase) : this.branchPort(port, phase);
     const context: ReadContext = {
       graph,
       label: `${element.name} (${kind.kind}).${name}`,
@@ -242,7 +270,11 @@ class ElementReader {
 }
 
 /** Names of the ledger readings that each element gets besides its own. */
-const ledgerReadings = { energy: ['J', 'stored energy'], supply: ['W', 'power from outside'], loss: ['W', 'power dissipated'] } as const;
+const ledgerReadings = {
+  energy: ['J', 'stored energy'],
+  supply: ['W', 'power from outside'],
+  loss: ['W', 'power dissipated'],
+} as const;
 
 export interface BuildOptions {
   /** Operations in one generated function, at most: for tests of the cutting. */
@@ -264,7 +296,11 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     byName.set(element.name, reader);
     return reader;
   });
-  const tie = (slots: readonly Slot[], table: 'stateNodes' | 'memoryNodes' | 'commandNodes', node: (index: number) => NodeId) => {
+  const tie = (
+    slots: readonly Slot[],
+    table: 'stateNodes' | 'memoryNodes' | 'commandNodes',
+    node: (index: number) => NodeId,
+  ) => {
     slots.forEach((slot, i) => {
       byName.get(slot.element)![table].set(slot.name, node(i));
     });
@@ -289,7 +325,8 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     if (fn) reader.read('efforts', 'efforts', fn);
     for (const port of Object.keys(reader.element.kind.ports)) {
       for (const key of Object.keys(reader.portKind(port).efforts)) {
-        if (!reader.efforts.get(port)!.has(key)) fail(reader.element, `efforts does not write ${port}.${key}`, 'write every effort of every port');
+        if (!reader.efforts.get(port)!.has(key))
+          fail(reader.element, `efforts does not write ${port}.${key}`, 'write every effort of every port');
       }
     }
   }
@@ -303,25 +340,44 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
   }
   for (const reader of readers) {
     const { kind } = reader.element;
-    for (const name of Object.keys(kind.states)) if (!reader.derivatives.has(name)) fail(reader.element, `derivative.${name} is never written`, 'write the derivative of each state');
-    for (const name of Object.keys(kind.readings)) if (!reader.readings.has(name)) fail(reader.element, `reading.${name} is never written`, 'write each declared reading');
+    for (const name of Object.keys(kind.states))
+      if (!reader.derivatives.has(name))
+        fail(reader.element, `derivative.${name} is never written`, 'write the derivative of each state');
+    for (const name of Object.keys(kind.readings))
+      if (!reader.readings.has(name))
+        fail(reader.element, `reading.${name} is never written`, 'write each declared reading');
     if (kind.update) reader.read('update', 'update', kind.update);
   }
 
   // ledger
   const values = readers.map((reader) => {
     const { kind } = reader.element;
-    const of = (name: 'energy' | 'supply' | 'loss') => (kind[name] ? reader.read('value', name, kind[name]) : undefined);
+    const of = (name: 'energy' | 'supply' | 'loss') =>
+      kind[name] ? reader.read('value', name, kind[name]) : undefined;
     return { reader, energy: of('energy'), supply: of('supply'), loss: of('loss') };
   });
   const zero = graph.constant(0);
-  const total = (nodes: readonly (NodeId | undefined)[]) => nodes.reduce<NodeId>((sum, node) => (node === undefined ? sum : graph.sum(sum, node)), zero);
+  const total = (nodes: readonly (NodeId | undefined)[]) =>
+    nodes.reduce<NodeId>((sum, node) => (node === undefined ? sum : graph.sum(sum, node)), zero);
   const supplied = total(values.map((value) => value.supply));
   const left = total(values.map((value) => (value.reader.element.kind.heat === 'leaves' ? value.loss : undefined)));
   const energy = total(values.map((value) => value.energy));
-  const stuffs = [...new Set(spec.elements.flatMap((element) => [...Object.keys(element.kind.holds ?? {}), ...Object.keys(element.kind.brings ?? {})]))].sort();
+  const stuffs = [
+    ...new Set(
+      spec.elements.flatMap((element) => [
+        ...Object.keys(element.kind.holds ?? {}),
+        ...Object.keys(element.kind.brings ?? {}),
+      ]),
+    ),
+  ].sort();
   const stuffTotal = (table: 'holds' | 'brings', stuff: string) =>
-    total(readers.map((reader) => (reader.element.kind[table]?.[stuff] ? reader.read('value', `${table}.${stuff}`, reader.element.kind[table]![stuff]!) : undefined)));
+    total(
+      readers.map((reader) =>
+        reader.element.kind[table]?.[stuff]
+          ? reader.read('value', `${table}.${stuff}`, reader.element.kind[table]![stuff]!)
+          : undefined,
+      ),
+    );
   const brought = stuffs.map((stuff) => stuffTotal('brings', stuff));
   const holdings = stuffs.map((stuff) => stuffTotal('holds', stuff));
 
@@ -341,25 +397,15 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     }
     const passing = element.kind.role === 'branch' ? throughput(graph, reader) : undefined;
     if (passing !== undefined) {
-      readings.push(slot(element, 'throughput', { unit: 'W', about: 'mechanical and hydraulic power passing through' }, 'ledger'));
+      readings.push(
+        slot(element, 'throughput', { unit: 'W', about: 'mechanical and hydraulic power passing through' }, 'ledger'),
+      );
       readingNodes.push(passing);
     }
   }
 
   const rateNodes = states.map((state) => byName.get(state.element)!.derivatives.get(state.name)!);
-  const rows: number[] = [];
-  const columns: number[] = [];
-  const jacobianNodes: NodeId[] = [];
-  rateNodes.forEach((node, row) => {
-    for (let column = 0; column < states.length; column += 1) {
-      if (!graph.dependsOn(node, column)) continue;
-      const entry = graph.derivative(node, column);
-      if (graph.isZero(entry)) continue;
-      rows.push(row);
-      columns.push(column);
-      jacobianNodes.push(entry);
-    }
-  });
+  const { rows, columns, nodes: jacobianNodes } = jacobian(graph, rateNodes);
 
   const audit: NodeId[] = [];
   const auditScale: NodeId[] = [];
@@ -369,12 +415,24 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     auditScale.push(total(terms.map((term) => graph.apply('abs', [term]))));
   }
 
-  const list = (array: string, nodes: readonly NodeId[], from = 0): Output[] => nodes.map((node, i) => ({ array, index: from + i, node }));
+  const list = (array: string, nodes: readonly NodeId[], from = 0): Output[] =>
+    nodes.map((node, i) => ({ array, index: from + i, node }));
   const rates = list('d', rateNodes);
   const outputs: CircuitOutputs = {
     rates,
-    ratesAndJacobian: [...rates, ...list('d', [supplied, left, ...brought], states.length), ...list('J', jacobianNodes)],
-    update: list('out', memory.map((slotInfo) => byName.get(slotInfo.element)!.nextMemory.get(slotInfo.name) ?? byName.get(slotInfo.element)!.memoryNodes.get(slotInfo.name)!)),
+    ratesAndJacobian: [
+      ...rates,
+      ...list('d', [supplied, left, ...brought], states.length),
+      ...list('J', jacobianNodes),
+    ],
+    update: list(
+      'out',
+      memory.map(
+        (slotInfo) =>
+          byName.get(slotInfo.element)!.nextMemory.get(slotInfo.name) ??
+          byName.get(slotInfo.element)!.memoryNodes.get(slotInfo.name)!,
+      ),
+    ),
     observe: list('out', [...readingNodes, supplied, left, ...brought, energy, ...holdings]),
     audit: list('out', [...audit, ...auditScale]),
   };
@@ -384,12 +442,31 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     printFunction(graph, 'ratesAndJacobian', ['y', 'u', 'm', 'd', 'J'], outputs.ratesAndJacobian, most),
     printFunction(graph, 'update', ['y', 'u', 'm', 'h', 'out'], outputs.update, most),
     printFunction(graph, 'observe', ['y', 'u', 'm', 'out'], outputs.observe, most),
-    elimination.factor,
-    elimination.solve,
+    printElimination(elimination),
+    ...rodas3Stages(
+      elimination,
+      states.map((state) => state.errorWeight),
+      javaScript,
+    ).map(({ name, parameters, lines }) => printPieces(name, parameters.join(', '), lines, elimination.cut)),
   ].join('\n\n');
   const functions = {
-    ...(compile(code, ['rates', 'ratesAndJacobian', 'update', 'observe', 'factor', 'solve']) as unknown as CircuitFunctions),
-    audit: lazily(() => compile(printFunction(graph, 'audit', ['y', 'u', 'm', 'out'], outputs.audit, most), ['audit'])['audit'] as CircuitFunctions['audit']),
+    ...(compile(code, [
+      'rates',
+      'ratesAndJacobian',
+      'update',
+      'observe',
+      'factor',
+      'solve',
+      'stageOne',
+      'stageTwo',
+      'stageThree',
+    ]) as unknown as CircuitFunctions),
+    audit: lazily(
+      () =>
+        compile(printFunction(graph, 'audit', ['y', 'u', 'm', 'out'], outputs.audit, most), ['audit'])[
+          'audit'
+        ] as CircuitFunctions['audit'],
+    ),
   };
   train(functions, { states, memory, commands }, rows.length, elimination.size, outputs);
   return {
@@ -417,7 +494,11 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
  */
 function train(
   functions: CircuitFunctions,
-  circuit: { readonly states: readonly StateSlot[]; readonly memory: readonly { readonly initial: number }[]; readonly commands: readonly CommandSlot[] },
+  circuit: {
+    readonly states: readonly StateSlot[];
+    readonly memory: readonly { readonly initial: number }[];
+    readonly commands: readonly CommandSlot[];
+  },
   entries: number,
   factors: number,
   outputs: CircuitOutputs,
@@ -427,19 +508,37 @@ function train(
   const J = new Float64Array(entries);
   const A = new Float64Array(factors + 1);
   const out = new Float64Array(outputs.observe.length + outputs.update.length);
-  const x = new Float64Array(circuit.states.length);
+  const [x, k1, k2, k3, k4, s] = Array.from({ length: 6 }, () => new Float64Array(circuit.states.length)) as [
+    Arrays,
+    Arrays,
+    Arrays,
+    Arrays,
+    Arrays,
+    Arrays,
+  ];
+  const e = new Float64Array(1);
+  const h = 2.5e-4;
   for (let k = 0; k < 24; k += 1) {
-    const y = Float64Array.from(circuit.states, (state, i) => state.initial * (0.9 + 0.2 * odd(i, k)) + (state.initial === 0 ? state.scale * odd(i, k) * 0.1 : 0));
-    const u = Float64Array.from(circuit.commands, (command, i) => command.rest + (k % 2 === 0 ? odd(i, k) : -odd(i, k)));
+    const y = Float64Array.from(
+      circuit.states,
+      (state, i) => state.initial * (0.9 + 0.2 * odd(i, k)) + (state.initial === 0 ? state.scale * odd(i, k) * 0.1 : 0),
+    );
+    const u = Float64Array.from(
+      circuit.commands,
+      (command, i) => command.rest + (k % 2 === 0 ? odd(i, k) : -odd(i, k)),
+    );
     const m = Float64Array.from(circuit.memory, (slot, i) => slot.initial + odd(i, k));
     functions.rates(y, u, m, d);
-    functions.update(y, u, m, 2.5e-4, out);
+    functions.update(y, u, m, h, out);
     functions.observe(y, u, m, out);
     functions.ratesAndJacobian(y, u, m, d, J);
     functions.factor(J, 4000, A);
     for (let i = 0; i < A.length; i += 1) A[i] = odd(i, k);
     for (let i = 0; i < x.length; i += 1) y[i] = odd(i, k);
     functions.solve(A, y, x);
+    functions.stageOne(A, y, x, h, k1, k2, s);
+    functions.stageTwo(A, y, h, k1, k2, k3, s);
+    functions.stageThree(A, y, h, k1, k2, k3, k4, s, e);
   }
 }
 
@@ -475,7 +574,8 @@ function balanceTerms(
   for (const port of Object.keys(kind.ports)) {
     if (kind.role === 'store') {
       const efforts = reader.efforts.get(port)!;
-      for (const power of reader.portPower(port, (key) => efforts.get(key)!, reader.flows.get(port)!)) terms.push(negative(power));
+      for (const power of reader.portPower(port, (key) => efforts.get(key)!, reader.flows.get(port)!))
+        terms.push(negative(power));
     } else if (connections[port]) {
       const table = reader.effortsSeen(port);
       terms.push(...reader.portPower(port, table, reader.ownFlows.get(port)!));
@@ -500,8 +600,20 @@ function throughput(graph: Graph, reader: ElementReader): NodeId | undefined {
   return sum === undefined || graph.isConstant(sum) ? undefined : graph.product(graph.constant(0.5), sum);
 }
 
-function slot(element: ElementInstance, name: string, declaration: { unit: string; about: string }, group: SignalInfo['group']): Slot {
-  return { element: element.name, name, path: `${element.name}.${name}`, unit: declaration.unit, about: declaration.about, group };
+function slot(
+  element: ElementInstance,
+  name: string,
+  declaration: { unit: string; about: string },
+  group: SignalInfo['group'],
+): Slot {
+  return {
+    element: element.name,
+    name,
+    path: `${element.name}.${name}`,
+    unit: declaration.unit,
+    about: declaration.about,
+    group,
+  };
 }
 
 function bounds(declaration: { least?: number; most?: number }): { least?: number; most?: number } {
@@ -511,14 +623,24 @@ function bounds(declaration: { least?: number; most?: number }): { least?: numbe
   };
 }
 
-function declareSlots(element: ElementInstance, states: StateSlot[], memory: (Slot & { initial: number })[], commands: CommandSlot[]): void {
+function declareSlots(
+  element: ElementInstance,
+  states: StateSlot[],
+  memory: (Slot & { initial: number })[],
+  commands: CommandSlot[],
+): void {
   const { kind } = element;
   checkNames(element);
   const values = { parameter: element.parameters, fluid: element.fluid ?? {} };
   const initial = kind.initial ? kind.initial({ ...values, start: element.start }) : {};
   for (const [name, declaration] of Object.entries(kind.states) as [string, StateDeclaration][]) {
     const value = initial[name] ?? element.start[name] ?? declaration.initial ?? 0;
-    if (!Number.isFinite(value)) fail(element, `the start value of state ${name} is ${value}`, 'look at the start values and parameters of this element');
+    if (!Number.isFinite(value))
+      fail(
+        element,
+        `the start value of state ${name} is ${value}`,
+        'look at the start values and parameters of this element',
+      );
     states.push({
       ...slot(element, name, declaration, 'state'),
       ...bounds(declaration),
@@ -531,7 +653,12 @@ function declareSlots(element: ElementInstance, states: StateSlot[], memory: (Sl
     memory.push({ ...slot(element, name, declaration, 'memory'), initial: initial[name] ?? declaration.initial ?? 0 });
   }
   for (const [name, declaration] of Object.entries(kind.commands) as [string, CommandDeclaration][]) {
-    commands.push({ ...slot(element, name, declaration, 'command'), ...bounds(declaration), rest: (declaration.restFrom === undefined ? undefined : element.start[declaration.restFrom]) ?? declaration.rest, fault: declaration.fault ?? false });
+    commands.push({
+      ...slot(element, name, declaration, 'command'),
+      ...bounds(declaration),
+      rest: (declaration.restFrom === undefined ? undefined : element.start[declaration.restFrom]) ?? declaration.rest,
+      fault: declaration.fault ?? false,
+    });
   }
 }
 
@@ -541,15 +668,32 @@ const takenReadings = ['energy', 'supply', 'loss', 'throughput'];
 function checkNames(element: ElementInstance): void {
   const { kind } = element;
   const seen = new Set<string>();
-  for (const name of [...Object.keys(kind.states), ...Object.keys(kind.memory), ...Object.keys(kind.commands), ...Object.keys(kind.readings)]) {
-    if (seen.has(name)) fail(element, `the name ${name} is declared twice among states, memory, commands and readings`, 'give each its own name');
+  for (const name of [
+    ...Object.keys(kind.states),
+    ...Object.keys(kind.memory),
+    ...Object.keys(kind.commands),
+    ...Object.keys(kind.readings),
+  ]) {
+    if (seen.has(name))
+      fail(
+        element,
+        `the name ${name} is declared twice among states, memory, commands and readings`,
+        'give each its own name',
+      );
     if (takenReadings.includes(name)) fail(element, `the name ${name} belongs to the ledger`, 'choose another');
     seen.add(name);
   }
 }
 
 function fail(element: ElementInstance, what: string, remedy: string): never {
-  throw new BuildError([{ ...(element.where ? { where: element.where } : {}), path: `${element.name} (${element.kind.kind})`, what, remedy }]);
+  throw new BuildError([
+    {
+      ...(element.where ? { where: element.where } : {}),
+      path: `${element.name} (${element.kind.kind})`,
+      what,
+      remedy,
+    },
+  ]);
 }
 
 function checkWiring(spec: CircuitSpec): void {
@@ -557,7 +701,13 @@ function checkWiring(spec: CircuitSpec): void {
   const byName = new Map<string, ElementInstance>();
   for (const element of spec.elements) {
     const at = element.where ? { where: element.where } : {};
-    if (byName.has(element.name)) problems.push({ ...at, path: element.name, what: 'this name is taken', remedy: 'give each element a name of its own' });
+    if (byName.has(element.name))
+      problems.push({
+        ...at,
+        path: element.name,
+        what: 'this name is taken',
+        remedy: 'give each element a name of its own',
+      });
     byName.set(element.name, element);
   }
   for (const element of spec.elements) {
@@ -567,19 +717,42 @@ function checkWiring(spec: CircuitSpec): void {
       const connection = element.connections[port];
       const path = `${element.name}.${port}`;
       if (!connection) {
-        if (!element.kind.optionalPorts?.includes(port)) problems.push({ ...at, path, what: 'port is not connected', remedy: `connect it to a store with a port of kind ${kindName}` });
+        if (!element.kind.optionalPorts?.includes(port))
+          problems.push({
+            ...at,
+            path,
+            what: 'port is not connected',
+            remedy: `connect it to a store with a port of kind ${kindName}`,
+          });
         continue;
       }
       const target = byName.get(connection.store);
       if (!target || target.kind.role !== 'store') {
-        problems.push({ ...at, path, what: `no store \`${connection.store}\``, remedy: 'connect it to a store of this bench' });
+        problems.push({
+          ...at,
+          path,
+          what: `no store \`${connection.store}\``,
+          remedy: 'connect it to a store of this bench',
+        });
         continue;
       }
       const theirs = target.kind.ports[connection.port];
       if (theirs !== kindName) {
-        problems.push({ ...at, path, what: `port kinds differ: this is ${kindName}, ${connection.store}.${connection.port} is ${theirs ?? 'not there'}`, remedy: 'connect ports of one kind' });
+        problems.push({
+          ...at,
+          path,
+          what: `port kinds differ: this is ${kindName}, ${connection.store}.${connection.port} is ${theirs ?? 'not there'}`,
+          remedy: 'connect ports of one kind',
+        });
       }
-      if (connection.ratio !== 1 && !spec.portKinds[kindName]?.scaled) problems.push({ ...at, path, what: `a ${kindName} port takes no ratio`, value: String(connection.ratio), remedy: 'remove the ratio' });
+      if (connection.ratio !== 1 && !spec.portKinds[kindName]?.scaled)
+        problems.push({
+          ...at,
+          path,
+          what: `a ${kindName} port takes no ratio`,
+          value: String(connection.ratio),
+          remedy: 'remove the ratio',
+        });
     }
   }
   if (problems.length > 0) throw new BuildError(problems);

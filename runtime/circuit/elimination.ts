@@ -1,3 +1,5 @@
+import { type Dialect, javaScript } from './emit.js';
+
 /**
  * Sparse LU of M = c I - J without pivoting, as straight-line code. The order of elimination is chosen once by least
  * fill (Markowitz 1957) on the diagonal; circuits are nearly trees, so there is almost no fill.
@@ -8,10 +10,20 @@ export interface Elimination {
   /** Number of values in the factor array. */
   readonly size: number;
   readonly multiplications: number;
-  /** Code of `function factor(J, c, A)`: fills and factors; A[size] gets the least pivot over c. */
-  readonly factor: string;
-  /** Code of `function solve(A, b, x)`: x = M^-1 b; x may not be b. */
-  readonly solve: string;
+  /** Too large for one function: values stay in arrays between the pieces. */
+  readonly cut: boolean;
+  /** Statements that fill A from J and c and factor it; A[size] gets the least pivot over c. */
+  factorLines(dialect: Dialect): string[];
+  /**
+   * Statements that solve M x = right side into the array `into`. `right` and `after` get a state's index; `after` also
+   * how its solution is called, and gives further statements.
+   */
+  solveLines(
+    dialect: Dialect,
+    into: string,
+    right: (state: number) => string,
+    after?: (state: number, solution: string) => readonly string[],
+  ): string[];
 }
 
 export function eliminate(n: number, rows: readonly number[], columns: readonly number[]): Elimination {
@@ -29,7 +41,6 @@ export function eliminate(n: number, rows: readonly number[], columns: readonly 
   });
   // symbolic factorisation in permuted coordinates
   const entries: Set<number>[] = order.map((state) => new Set([...pattern[state]!].map((column) => position[column]!)));
-  const factorLines: string[] = [];
   const filled = entries.map((row) => new Set(row));
   let multiplications = 0;
   for (let k = 0; k < n; k += 1) {
@@ -39,74 +50,99 @@ export function eliminate(n: number, rows: readonly number[], columns: readonly 
     }
   }
   const index = new Map<number, number>();
-  for (let i = 0; i < n; i += 1) for (const j of [...filled[i]!].sort((a, b) => a - b)) index.set(i * n + j, index.size);
+  for (let i = 0; i < n; i += 1)
+    for (const j of [...filled[i]!].sort((a, b) => a - b)) index.set(i * n + j, index.size);
   const size = index.size;
   const at = (i: number, j: number) => `A[${index.get(i * n + j)!}]`;
   // Small circuits keep values in locals; large ones in the array, so that the code can be cut into functions.
   const cut = size > largestInOnePiece;
   const name = cut ? at : (i: number, k: number) => `a${i}_${k}`;
   const pivot = cut ? (i: number) => at(i, i) : (i: number) => `r${i}`;
-  // values, row by row (Doolittle)
   for (let i = 0; i < n; i += 1) {
-    const columnsHere = [...filled[i]!].sort((a, b) => a - b);
-    for (const j of columnsHere) {
-      const slot = slotOf.get(order[i]! * n + order[j]!);
-      const original = slot === undefined ? '' : `J[${slot}]`;
-      const start = i === j ? (original ? `c - ${original}` : 'c') : original ? `-${original}` : '';
-      const terms: string[] = [];
-      for (const k of filled[i]!) {
-        if (k >= Math.min(i, j) || !filled[k]!.has(j)) continue;
-        terms.push(`${name(i, k)} * ${name(k, j)}`);
-        multiplications += 1;
-      }
-      terms.sort();
-      const sum = terms.length === 0 ? start || '0' : `${start || '0'} - ${terms.join(' - ')}`;
-      const store = cut ? '' : `${at(i, j)} = `;
-      const declare = cut ? '' : 'const ';
-      if (j < i) {
-        factorLines.push(`${declare}${name(i, j)} = ${store}(${sum}) * ${pivot(j)};`);
-        multiplications += 1;
-      } else if (j === i) {
-        factorLines.push(`{ const d = ${sum}; A[${size}] = Math.min(A[${size}], d); ${at(i, i)} = 1 / d; }`);
-        if (!cut) factorLines.push(`const r${i} = ${at(i, i)};`);
-      } else factorLines.push(`${declare}${name(i, j)} = ${store}${sum};`);
+    for (const j of filled[i]!) {
+      for (const k of filled[i]!) if (k < Math.min(i, j) && filled[k]!.has(j)) multiplications += 1;
+      multiplications += 1;
     }
   }
 
-  const solveLines: string[] = [];
-  const z = cut ? (i: number) => `x[${order[i]!}]` : (i: number) => `z${i}`;
-  const x = cut ? (i: number) => `x[${order[i]!}]` : (i: number) => `x${i}`;
-  const declare = cut ? '' : 'const ';
-  for (let i = 0; i < n; i += 1) {
-    const terms = [...filled[i]!].filter((k) => k < i).sort((a, b) => a - b).map((k) => `${at(i, k)} * ${z(k)}`);
-    multiplications += terms.length;
-    solveLines.push(`${declare}${z(i)} = b[${order[i]!}]${terms.map((term) => ` - ${term}`).join('')};`);
-  }
-  for (let i = n - 1; i >= 0; i -= 1) {
-    const terms = [...filled[i]!].filter((j) => j > i).sort((a, b) => a - b).map((j) => `${at(i, j)} * ${x(j)}`);
-    multiplications += terms.length + 1;
-    const sum = terms.length === 0 ? z(i) : `(${z(i)}${terms.map((term) => ` - ${term}`).join('')})`;
-    solveLines.push(`${declare}${x(i)} = ${sum} * ${at(i, i)};`);
-    if (!cut) solveLines.push(`x[${order[i]!}] = x${i};`);
-  }
-  return {
-    order,
-    size,
-    multiplications,
-    factor: pieces('factor', 'J, c, A', [`A[${size}] = Infinity;`, ...factorLines, `A[${size}] /= c;`], cut),
-    solve: pieces('solve', 'A, b, x', solveLines, cut),
+  // values, row by row (Doolittle)
+  const factorLines = (dialect: Dialect): string[] => {
+    const lines = [`A[${size}] = ${dialect.infinity};`];
+    const declare = cut ? '' : dialect.local;
+    for (let i = 0; i < n; i += 1) {
+      const columnsHere = [...filled[i]!].sort((a, b) => a - b);
+      for (const j of columnsHere) {
+        const slot = slotOf.get(order[i]! * n + order[j]!);
+        const original = slot === undefined ? '' : `J[${slot}]`;
+        const start = i === j ? (original ? `c - ${original}` : 'c') : original ? `-${original}` : '';
+        const terms = columnsHere
+          .filter((k) => k < Math.min(i, j) && filled[k]!.has(j))
+          .map((k) => `${name(i, k)} * ${name(k, j)}`);
+        const sum = terms.length === 0 ? start || '0' : `${start || '0'} - ${terms.join(' - ')}`;
+        const store = cut ? '' : `${at(i, j)} = `;
+        if (j < i) lines.push(`${declare}${name(i, j)} = ${store}(${sum}) * ${pivot(j)};`);
+        else if (j === i) {
+          lines.push(
+            `{ ${dialect.local}d = ${sum}; A[${size}] = ${dialect.math('min')}(A[${size}], d); ${at(i, i)} = 1 / d; }`,
+          );
+          if (!cut) lines.push(`${dialect.local}r${i} = ${at(i, i)};`);
+        } else lines.push(`${declare}${name(i, j)} = ${store}${sum};`);
+      }
+    }
+    lines.push(`A[${size}] /= c;`);
+    return lines;
   };
+
+  const solveLines: Elimination['solveLines'] = (dialect, into, right, after) => {
+    const lines: string[] = [];
+    const z = cut ? (i: number) => `${into}[${order[i]!}]` : (i: number) => `${into}z${i}`;
+    const x = cut ? (i: number) => `${into}[${order[i]!}]` : (i: number) => `${into}x${i}`;
+    const declare = cut ? '' : dialect.local;
+    for (let i = 0; i < n; i += 1) {
+      const terms = [...filled[i]!]
+        .filter((k) => k < i)
+        .sort((a, b) => a - b)
+        .map((k) => `${at(i, k)} * ${z(k)}`);
+      lines.push(`${declare}${z(i)} = ${right(order[i]!)}${terms.map((term) => ` - ${term}`).join('')};`);
+    }
+    for (let i = n - 1; i >= 0; i -= 1) {
+      const terms = [...filled[i]!]
+        .filter((j) => j > i)
+        .sort((a, b) => a - b)
+        .map((j) => `${at(i, j)} * ${x(j)}`);
+      const sum = terms.length === 0 ? z(i) : `(${z(i)}${terms.map((term) => ` - ${term}`).join('')})`;
+      lines.push(`${declare}${x(i)} = ${sum} * ${at(i, i)};`);
+      if (!cut) lines.push(`${into}[${order[i]!}] = ${into}x${i};`);
+      if (after) lines.push(...after(order[i]!, x(i)));
+    }
+    return lines;
+  };
+  return { order, size, multiplications, cut, factorLines, solveLines };
 }
 
 const largestInOnePiece = 700;
 
-function pieces(name: string, parameters: string, lines: readonly string[], cut: boolean): string {
+/** A JavaScript function of these statements; cut into several where `cut`. */
+export function printPieces(name: string, parameters: string, lines: readonly string[], cut: boolean): string {
   const body = (part: readonly string[]) => part.map((line) => `  ${line}`).join('\n');
   if (!cut) return `function ${name}(${parameters}) {\n${body(lines)}\n}`;
   const parts: string[] = [];
-  for (let i = 0; i < lines.length; i += 400) parts.push(`function ${name}${parts.length}(${parameters}) {\n${body(lines.slice(i, i + 400))}\n}`);
+  for (let i = 0; i < lines.length; i += 400)
+    parts.push(`function ${name}${parts.length}(${parameters}) {\n${body(lines.slice(i, i + 400))}\n}`);
   const calls = parts.map((_, i) => `  ${name}${i}(${parameters});`).join('\n');
   return `${parts.join('\n')}\nfunction ${name}(${parameters}) {\n${calls}\n}`;
+}
+
+export function printElimination(elimination: Elimination): string {
+  return [
+    printPieces('factor', 'J, c, A', elimination.factorLines(javaScript), elimination.cut),
+    printPieces(
+      'solve',
+      'A, b, x',
+      elimination.solveLines(javaScript, 'x', (state) => `b[${state}]`),
+      elimination.cut,
+    ),
+  ].join('\n\n');
 }
 
 /** Least (row count - 1)(column count - 1) first; ties by index, so that the order is the same everywhere. */

@@ -21,6 +21,7 @@ export interface Dialect {
   readonly local: string;
   readonly equals: string;
   readonly differs: string;
+  readonly infinity: string;
 }
 
 export const javaScript: Dialect = {
@@ -33,6 +34,7 @@ export const javaScript: Dialect = {
   local: 'const ',
   equals: '===',
   differs: '!==',
+  infinity: 'Infinity',
 };
 
 export const cLanguage: Dialect = {
@@ -48,6 +50,7 @@ export const cLanguage: Dialect = {
   local: 'const double ',
   equals: '==',
   differs: '!=',
+  infinity: 'INFINITY',
 };
 
 function numberText(value: number): string {
@@ -68,7 +71,12 @@ export interface Chunk {
 export const chunkSize = 1800;
 
 /** Cuts `outputs` into chunks of at most `most` operations. */
-export function printChunks(graph: Graph, outputs: readonly Output[], dialect: Dialect, most = chunkSize): { chunks: Chunk[]; spills: number } {
+export function printChunks(
+  graph: Graph,
+  outputs: readonly Output[],
+  dialect: Dialect,
+  most = chunkSize,
+): { chunks: Chunk[]; spills: number } {
   const uses = new Map<NodeId, number>();
   const order: NodeId[] = [];
   const operandsOf = (id: NodeId) => graph.nodes[id]!.operands.map((operand) => throughLaw(graph, operand));
@@ -155,7 +163,9 @@ export function printChunks(graph: Graph, outputs: readonly Output[], dialect: D
   };
   /** A truth value as 1 or 0; a number counts as true when it is not 0. */
   const truth = (id: NodeId, at: number): string =>
-    boolean.has(graph.nodes[throughLaw(graph, id)]!.op) ? text(id, at) : `(${text(id, at)} ${dialect.differs} 0 ? 1 : 0)`;
+    boolean.has(graph.nodes[throughLaw(graph, id)]!.op)
+      ? text(id, at)
+      : `(${text(id, at)} ${dialect.differs} 0 ? 1 : 0)`;
   const expression = (id: NodeId, at: number): string => {
     const node = graph.nodes[id]!;
     const [a, b, c] = node.operands as [NodeId, NodeId, NodeId];
@@ -221,7 +231,13 @@ function isLeaf(graph: Graph, id: NodeId): boolean {
 }
 
 /** A JavaScript function over the arrays named in `parameters` that fills all outputs; `w` is its own spill array. */
-export function printFunction(graph: Graph, name: string, parameters: readonly string[], outputs: readonly Output[], most = chunkSize): string {
+export function printFunction(
+  graph: Graph,
+  name: string,
+  parameters: readonly string[],
+  outputs: readonly Output[],
+  most = chunkSize,
+): string {
   const { chunks, spills } = printChunks(graph, outputs, javaScript, most);
   const list = parameters.join(', ');
   if (chunks.length === 1) return `function ${name}(${list}) {\n${indent(chunks[0]!.lines)}\n}`;

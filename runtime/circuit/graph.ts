@@ -29,9 +29,32 @@ export type Operation =
   | 'law'
   | MathName;
 
-export type MathName = 'sqrt' | 'exp' | 'log' | 'tanh' | 'sin' | 'cos' | 'atan' | 'abs' | 'floor' | 'sign' | 'min' | 'max';
+export type MathName =
+  | 'sqrt'
+  | 'exp'
+  | 'log'
+  | 'tanh'
+  | 'sin'
+  | 'cos'
+  | 'atan'
+  | 'abs'
+  | 'floor'
+  | 'sign'
+  | 'min'
+  | 'max';
 export const mathNames: ReadonlySet<string> = new Set<MathName>([
-  'sqrt', 'exp', 'log', 'tanh', 'sin', 'cos', 'atan', 'abs', 'floor', 'sign', 'min', 'max',
+  'sqrt',
+  'exp',
+  'log',
+  'tanh',
+  'sin',
+  'cos',
+  'atan',
+  'abs',
+  'floor',
+  'sign',
+  'min',
+  'max',
 ]);
 
 interface GraphNode {
@@ -93,7 +116,12 @@ export class Graph {
     const [a, b, c] = operands as [NodeId, NodeId, NodeId];
     if (op === '?' && this.isConstant(a)) return this.constantValue(a) !== 0 ? b : c;
     if (operands.every((id) => this.isConstant(id))) {
-      return this.constant(fold(op, operands.map((id) => this.constantValue(id))));
+      return this.constant(
+        fold(
+          op,
+          operands.map((id) => this.constantValue(id)),
+        ),
+      );
     }
     switch (op) {
       case '+':
@@ -110,7 +138,8 @@ export class Graph {
         break;
       case '/':
         if (this.isExactly(b, 1)) return a;
-        if (this.isConstant(b) && isPowerOfTwo(this.constantValue(b))) return this.apply('*', [a, this.constant(1 / this.constantValue(b))]);
+        if (this.isConstant(b) && isPowerOfTwo(this.constantValue(b)))
+          return this.apply('*', [a, this.constant(1 / this.constantValue(b))]);
         break;
       case '?':
         if (b === c) return b;
@@ -151,86 +180,171 @@ export class Graph {
     return (this.reach(id)[state >>> 5]! & (1 << (state & 31))) !== 0;
   }
 
+  dependsOnStates(id: NodeId): boolean {
+    return this.reach(id).some((word) => word !== 0);
+  }
+
+  /** The index of the state that this node is, if it is one. */
+  stateOf(id: NodeId): number | undefined {
+    const node = this.nodes[id]!;
+    return node.op === 'state' ? node.value : undefined;
+  }
+
   /** d(node)/d(state), exact, simplified. */
   derivative(id: NodeId, state: number): NodeId {
     if (!this.dependsOn(id, state)) return this.constant(0);
+    if (this.stateOf(id) !== undefined) return this.constant(1);
     const key = id * this.stateCount + state;
     const known = this.derivatives.get(key);
     if (known !== undefined) return known;
-    const result = this.derive(id, state);
+    let result = this.constant(0);
+    for (const [operand, slope] of this.partials(id)) {
+      if (this.dependsOn(operand, state))
+        result = this.sum(result, this.product(slope, this.derivative(operand, state)));
+    }
     this.derivatives.set(key, result);
     return result;
   }
 
-  private derive(id: NodeId, state: number): NodeId {
-    const { op, operands, value } = this.nodes[id]!;
+  /** Each operand of an operation (of a law with slopes: each argument) with the exact derivative of the value by it. */
+  partials(id: NodeId): readonly (readonly [operand: NodeId, slope: NodeId])[] {
+    const { op, operands } = this.nodes[id]!;
     const [a, b, c] = operands as [NodeId, NodeId, NodeId];
-    const d = (operand: NodeId) => this.derivative(operand, state);
+    const zero = this.constant(0);
+    const one = this.constant(1);
+    const minus = this.constant(-1);
     switch (op) {
-      case 'state':
-        return this.constant(value === state ? 1 : 0);
       case '+':
-        return this.sum(d(a), d(b));
+        return [
+          [a, one],
+          [b, one],
+        ];
       case '-':
-        return this.difference(d(a), d(b));
+        return [
+          [a, one],
+          [b, minus],
+        ];
       case '*':
-        return this.sum(this.product(d(a), b), this.product(a, d(b)));
+        return [
+          [a, b],
+          [b, a],
+        ];
       case '/': {
-        const reciprocal = this.apply('/', [this.constant(1), b]);
-        return this.product(this.difference(d(a), this.product(id, d(b))), reciprocal);
+        const reciprocal = this.apply('/', [one, b]);
+        if (this.isConstant(b)) return [[a, reciprocal]];
+        return [
+          [a, reciprocal],
+          [b, this.product(minus, this.product(id, reciprocal))],
+        ];
       }
       case 'neg':
-        return this.product(this.constant(-1), d(a));
+        return [[a, minus]];
       case 'sqrt':
-        return this.product(d(a), this.apply('/', [this.constant(0.5), id]));
+        return [[a, this.apply('/', [this.constant(0.5), id])]];
       case 'exp':
-        return this.product(d(a), id);
+        return [[a, id]];
       case 'log':
-        return this.product(d(a), this.apply('/', [this.constant(1), a]));
+        return [[a, this.apply('/', [one, a])]];
       case 'tanh':
-        return this.product(d(a), this.difference(this.constant(1), this.product(id, id)));
+        return [[a, this.difference(one, this.product(id, id))]];
       case 'sin':
-        return this.product(d(a), this.apply('cos', [a]));
+        return [[a, this.apply('cos', [a])]];
       case 'cos':
-        return this.product(this.constant(-1), this.product(d(a), this.apply('sin', [a])));
+        return [[a, this.product(minus, this.apply('sin', [a]))]];
       case 'atan':
-        return this.product(d(a), this.apply('/', [this.constant(1), this.sum(this.constant(1), this.product(a, a))]));
+        return [[a, this.apply('/', [one, this.sum(one, this.product(a, a))])]];
       case 'abs':
-        return this.choice(this.apply('<', [a, this.constant(0)]), this.product(this.constant(-1), d(a)), d(a));
-      case 'min':
-        return this.choice(this.apply('<=', [a, b]), d(a), d(b));
-      case 'max':
-        return this.choice(this.apply('>=', [a, b]), d(a), d(b));
-      case '?':
-        return this.choice(a, d(b), d(c));
-      case 'law': {
-        let total = this.constant(0);
-        for (const { argument, slope } of this.lawSlopes.get(id)!) {
-          const inner = d(argument);
-          if (!(this.isConstant(inner) && this.constantValue(inner) === 0)) total = this.sum(total, this.product(slope(), inner));
-        }
-        return total;
+        return [[a, this.choice(this.apply('<', [a, zero]), minus, one)]];
+      case 'min': {
+        const first = this.apply('<=', [a, b]);
+        return [
+          [a, this.choice(first, one, zero)],
+          [b, this.choice(first, zero, one)],
+        ];
       }
+      case 'max': {
+        const first = this.apply('>=', [a, b]);
+        return [
+          [a, this.choice(first, one, zero)],
+          [b, this.choice(first, zero, one)],
+        ];
+      }
+      case '?':
+        return [
+          [b, this.choice(a, one, zero)],
+          [c, this.choice(a, zero, one)],
+        ];
+      case 'law':
+        return this.lawSlopes
+          .get(id)!
+          .map(({ argument, slope }) => [argument, this.dependsOnStates(argument) ? slope() : zero] as const);
       default:
-        return this.constant(0);
+        return [];
     }
   }
 
   sum(a: NodeId, b: NodeId): NodeId {
     if (this.isZero(a)) return b;
     if (this.isZero(b)) return a;
+    const first = this.nodes[a]!;
+    const second = this.nodes[b]!;
+    if (first.op === '?' && second.op === '?' && first.operands[0] === second.operands[0]) {
+      const [condition, a1, a2] = first.operands as [NodeId, NodeId, NodeId];
+      const [, b1, b2] = second.operands as [NodeId, NodeId, NodeId];
+      if (this.isZero(a1) || this.isZero(a2) || this.isZero(b1) || this.isZero(b2))
+        return this.choice(condition, this.sum(a1, b1), this.sum(a2, b2));
+    }
+    if (second.op === 'neg') return this.difference(a, second.operands[0]!);
+    if (first.op === 'neg') return this.difference(b, first.operands[0]!);
     return this.apply('+', [a, b]);
   }
   difference(a: NodeId, b: NodeId): NodeId {
     if (this.isZero(b)) return a;
-    if (this.isZero(a)) return this.product(this.constant(-1), b);
+    if (this.isZero(a)) return this.negative(b);
     return this.apply('-', [a, b]);
   }
-  product(a: NodeId, b: NodeId): NodeId {
+  /**
+   * A choice with an arm that is zero stays outermost: what it is multiplied by may be no number while that arm is taken
+   * (the slope of a root in the arm that is not). `numbers`: both are known to be numbers, whatever arms are taken.
+   */
+  product(a: NodeId, b: NodeId, numbers = false): NodeId {
     if (this.isZero(a) || this.isZero(b)) return this.constant(0);
-    if (this.isExactly(a, -1)) return this.apply('neg', [b]);
-    if (this.isExactly(b, -1)) return this.apply('neg', [a]);
-    return this.apply('*', [a, b]);
+    if (this.isExactly(a, 1)) return b;
+    if (this.isExactly(b, 1)) return a;
+    if (this.isExactly(a, -1)) return this.negative(b);
+    if (this.isExactly(b, -1)) return this.negative(a);
+    for (const [one, other] of [
+      [a, b],
+      [b, a],
+    ] as const) {
+      const { op, operands } = this.nodes[one]!;
+      if (op !== '?') continue;
+      const [condition, x, y] = operands as [NodeId, NodeId, NodeId];
+      const sign = (arm: NodeId) => this.isZero(arm) || this.isUnit(arm);
+      const guard = this.isZero(x) || this.isZero(y);
+      if ((guard && !numbers) || (sign(x) && sign(y)))
+        return this.choice(condition, this.product(x, other, numbers), this.product(y, other, numbers));
+    }
+    const left = this.nodes[a]!;
+    const right = this.nodes[b]!;
+    if (left.op === 'neg' && right.op === 'neg') return this.product(left.operands[0]!, right.operands[0]!, numbers);
+    if (left.op === 'neg') return this.negative(this.product(left.operands[0]!, b, numbers));
+    if (right.op === 'neg') return this.negative(this.product(a, right.operands[0]!, numbers));
+    return this.apply('*', a < b ? [a, b] : [b, a]);
+  }
+  private negative(id: NodeId): NodeId {
+    const { op, operands } = this.nodes[id]!;
+    if (op === 'neg') return operands[0]!;
+    if (op === '?') {
+      const [condition, x, y] = operands as [NodeId, NodeId, NodeId];
+      if (this.isZero(x) || this.isZero(y) || (this.isUnit(x) && this.isUnit(y)))
+        return this.choice(condition, this.negative(x), this.negative(y));
+    }
+    return this.isZero(id) ? id : this.apply('neg', [id]);
+  }
+  /** Is it 1 or -1? */
+  isUnit(id: NodeId): boolean {
+    return this.isConstant(id) && Math.abs(this.constantValue(id)) === 1;
   }
   private choice(condition: NodeId, a: NodeId, b: NodeId): NodeId {
     if (this.isZero(a) && this.isZero(b)) return a;
