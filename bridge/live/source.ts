@@ -250,6 +250,7 @@ export interface TimingStatus {
   readonly lateness: Histogram;
   readonly stepTime: Histogram;
   readonly overruns: number;
+  /** NaN while they are not known: a run counts them at its end. */
   readonly collections: number;
   /** Sum of re-phasings, s. */
   readonly drift: number;

@@ -186,7 +186,7 @@ export class RunState {
       lateness: bucketed(timing.lateness, budgets.lateness),
       stepTime: bucketed(timing.step, step),
       overruns: timing.counters[0]!,
-      collections: 0,
+      collections: Number.NaN,
       drift: timing.counters[1]! / 1e9,
     };
   }

@@ -117,7 +117,7 @@ function TimingFacts() {
       </div>
       <div>
         <dt>Collections</dt>
-        <dd class="number">{timing.collections}</dd>
+        <dd class="number">{Number.isFinite(timing.collections) ? timing.collections : 'counted at the end'}</dd>
       </div>
       <div>
         <dt>Drift</dt>
