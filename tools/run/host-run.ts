@@ -1,8 +1,8 @@
 import { readFileSync } from 'node:fs';
-import os from 'node:os';
 import path from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { Worker } from 'node:worker_threads';
+import { machineFacts } from '../../runtime/realtime/machine-facts.js';
 import { TimingRecord } from '../../runtime/realtime/timing-record.js';
 import { Recorder } from '../../runtime/recording/recorder.js';
 import { type RecordingHeader, FORMAT } from '../../runtime/recording/format.js';
@@ -12,6 +12,7 @@ import { BoardReader } from '../../runtime/status-board.js';
 import { packageRoot } from '../loop/controller-module.js';
 import { CONTROL, createLoopControl, phases, PROGRESS } from '../loop/engine.js';
 import type { LoopMessage, RunDone, RunFailed, RunOrder, RunReady } from '../loop/run-order.js';
+import { answerText, keptAnswer } from '../readiness/answer.js';
 import { ControllerChild } from './controller-child.js';
 import { HandChannel } from './hand-channel.js';
 import type { RunPlan } from './plan.js';
@@ -217,18 +218,15 @@ export function softwareVersion(): string {
 
 function headerOf(plan: RunPlan, ready: RunReady): RecordingHeader {
   const { wish, spec } = plan;
-  const cpus = os.cpus();
   return {
     format: FORMAT,
     run: `${new Date().toISOString()}-${process.pid}`,
     created: new Date().toISOString(),
     software: { version: softwareVersion(), node: process.version, v8: process.versions.v8 },
     machine: {
-      system: `${os.type()} ${os.release()} ${os.arch()}`,
-      processor: cpus[0]?.model ?? 'unknown',
-      processors: cpus.length,
-      memory: os.totalmem(),
+      ...machineFacts(),
       scheduling: ready.scheduling.join('; '),
+      ...(wish.pace === 'live' ? { readiness: answerText(keptAnswer()) } : {}),
     },
     bench: { name: spec.name, files: plan.benchSources.map((source) => ({ path: source.path, text: source.text })) },
     scenario: plan.scenarioSources.length === 0 ? null : { path: plan.scenarioSources[0]!.path, text: plan.scenarioSources[0]!.text },
