@@ -1,8 +1,9 @@
 import type { BlockLayout } from '../runtime/block.js';
 import { type Journal, noJournal } from '../runtime/journal.js';
+import { BusAdversary } from './bus-adversary.js';
 import { useErrorFrame, useNote } from './can-bus-state.js';
 import { CanCodec } from './can-codec.js';
-import { frameSizes, identifierFlags, identifierMasks, identifierWord, payloadAt } from './can-frame.js';
+import { frameSizes, identifierFlags, identifierMasks, identifierWord, payloadAt, payloadRoom } from './can-frame.js';
 import { noteSize } from './can-notes.js';
 import { CanReceiver } from './can-receiver.js';
 import { CanSender } from './can-sender.js';
@@ -16,7 +17,7 @@ import { makeProtector } from './protection/make.js';
 import { receptions } from './received-message.js';
 import { noTransport, type Transport } from './transport.js';
 
-type Slots = Readonly<Record<keyof typeof canLinkCounts, number>>;
+type Slots = Readonly<Record<keyof typeof canLinkCounts, number> & Record<string, number>>;
 
 /**
  * The bench's end of one CAN link, over whatever moves its frames: a raw socket, multicast datagrams, a queue in memory
@@ -33,6 +34,10 @@ export class CanLink implements Link {
   readonly slots: Slots;
   readonly awake: number;
   refusedSends = 0;
+  /** What the bus does to frames on their way in and on their way out. */
+  readonly adversaries: readonly BusAdversary[];
+  private readonly fromBus: BusAdversary;
+  private readonly toBus: BusAdversary;
   private readonly table: IdentifierTable;
   private readonly incoming = new Uint8Array(frameSizes.flexible);
   private readonly incomingPayload = this.incoming.subarray(payloadAt);
@@ -46,6 +51,9 @@ export class CanLink implements Link {
     layout: BlockLayout,
     firstTick: number,
     private readonly framesPerTick: number,
+    /** Length of a tick, s, and the seed of what the adversaries leave to chance. */
+    step: number,
+    seed = 0,
   ) {
     const own = messages.filter((message) => message.link === spec.name);
     const received = own.filter((message) => message.direction === 'received');
@@ -54,9 +62,14 @@ export class CanLink implements Link {
       .filter((message) => message.direction === 'sent')
       .map((message) => new CanSender(new CanCodec(message), makeProtector(message), layout, firstTick));
     this.table = new IdentifierTable(received);
-    const slots = {} as Record<keyof typeof canLinkCounts, number>;
+    const slots = {} as Record<keyof typeof canLinkCounts, number> & Record<string, number>;
     for (const name of Object.keys(canLinkCounts) as (keyof typeof canLinkCounts)[])
       slots[name] = layout.add(`${spec.name}.${name}`);
+    this.fromBus = new BusAdversary(spec.name, 'received', layout, step, seed, 2000 + 2 * number);
+    this.toBus = new BusAdversary(spec.name, 'sent', layout, step, seed, 2001 + 2 * number);
+    this.adversaries = [this.fromBus, this.toBus];
+    for (const { way, counts } of this.adversaries)
+      for (const [name, slot] of Object.entries(counts)) slots[`${way}${name}`] = slot;
     this.slots = slots;
     this.awake = layout.add(`${spec.name}.awake`);
   }
@@ -72,17 +85,44 @@ export class CanLink implements Link {
       if (whole < 0) break;
       const size = Math.min(whole, incoming.length);
       this.journal.input(tick, this.number, incoming, size);
-      if (whole !== noteSize) frames += 1;
-      this.judge(block, whole);
       taken += 1;
+      if (whole !== noteSize) frames += 1;
+      // Notes and error frames are the computer's own; what is no frame has no way on a bus.
+      if (
+        payloadRoom(whole) > 0 &&
+        incoming[4] <= payloadRoom(whole) &&
+        (identifierWord(incoming) & identifierFlags.error) === 0 &&
+        this.fromBus.acts(block)
+      )
+        this.fromBus.push(block, tick, incoming, whole);
+      else this.judge(block, whole);
+      for (
+        let size = this.fromBus.next(block, tick, incoming);
+        size >= 0;
+        size = this.fromBus.next(block, tick, incoming)
+      )
+        this.judge(block, size);
     }
+    for (
+      let size = this.fromBus.next(block, tick, incoming);
+      size >= 0;
+      size = this.fromBus.next(block, tick, incoming)
+    )
+      this.judge(block, size);
     block[this.slots.received] += frames;
     if (taken === this.framesPerTick) block[this.slots.floods] += 1;
   }
 
   send(block: Float64Array, tick: number, index: number, values: Float64Array, from: number): void {
-    const size = this.senders[index].write(block, tick, values, from, this.outgoing, this.outgoingPayload);
-    if (size >= 0 && this.transport.send(this.outgoing, size) < 0) this.refusedSends += 1;
+    const { outgoing, toBus } = this;
+    const size = this.senders[index].write(block, tick, values, from, outgoing, this.outgoingPayload);
+    if (!toBus.acts(block)) {
+      if (size >= 0) this.pass(size);
+      return;
+    }
+    if (size >= 0) toBus.push(block, tick, outgoing, size);
+    for (let next = toBus.next(block, tick, outgoing); next >= 0; next = toBus.next(block, tick, outgoing))
+      this.pass(next);
   }
 
   /** CAN has no word for it: a controller sees the first frames. */
@@ -108,8 +148,14 @@ export class CanLink implements Link {
     block[slots.dropped] = 0;
     block[slots.queueFull] = 0;
     block[slots.unsent] = 0;
+    this.fromBus.clearCounts(block);
+    this.toBus.clearCounts(block);
     for (const receiver of this.receivers) receiver.clearCounts(block);
     for (const sender of this.senders) sender.clearCounts(block);
+  }
+
+  private pass(size: number): void {
+    if (this.transport.send(this.outgoing, size) < 0) this.refusedSends += 1;
   }
 
   private judge(block: Float64Array, size: number): void {

@@ -2,6 +2,7 @@ import type { BlockLayout } from '../runtime/block.js';
 import { BuildError, type Problem } from '../runtime/contract.js';
 import { type EventCatalogue, type Journal, noJournal } from '../runtime/journal.js';
 import type { SignalTable } from '../runtime/signals.js';
+import { busFaults } from './bus-adversary.js';
 import { CanLink } from './can-link.js';
 import { requireSoundMap } from './examine-map.js';
 import { ExchangeTables } from './exchange-tables.js';
@@ -51,7 +52,7 @@ export interface ExchangeOptions {
 export class Exchange {
   readonly checksum: number;
   readonly links: readonly Link[];
-  /** Faults of messages as commands, with their slots. */
+  /** Faults of messages and of buses as commands, with their slots. */
   readonly faults: readonly {
     readonly path: string;
     readonly unit: string;
@@ -96,21 +97,35 @@ export class Exchange {
         Math.max(64, 4 * messages.filter((message) => message.direction === 'received').length);
       return spec.kind === 'udp'
         ? new UdpLink(spec, number, messages, this.checksum, layout, firstTick, most)
-        : new CanLink(spec, number, messages, layout, firstTick, most);
+        : new CanLink(spec, number, messages, layout, firstTick, most, step, options.seed ?? 0);
     });
     this.links = links;
     const all = links.flatMap((link) => [...link.receivers, ...link.senders]);
     for (const [stream, one] of all.entries()) one.addFaults(layout, step, options.seed ?? 0, 1000 + stream);
-    this.faults = all.flatMap(({ message, faults }) =>
-      Object.entries(messageFaults).map(([name, { unit, about, least, most }]) => ({
-        path: `${message.name}.${name}`,
-        unit,
-        about,
-        least,
-        most,
-        slot: faults!.slots[name as keyof typeof messageFaults],
-      })),
-    );
+    this.faults = [
+      ...all.flatMap(({ message, faults }) =>
+        Object.entries(messageFaults).map(([name, { unit, about, least, most }]) => ({
+          path: `${message.name}.${name}`,
+          unit,
+          about,
+          least,
+          most,
+          slot: faults!.slots[name as keyof typeof messageFaults],
+        })),
+      ),
+      ...links.flatMap((link) =>
+        (link.adversaries ?? []).flatMap(({ way, faults }) =>
+          Object.entries(busFaults).map(([name, { unit, about, most }]) => ({
+            path: `${link.spec.name}.${way}${name}`,
+            unit,
+            about: `${about}, ${way}`,
+            least: 0,
+            most,
+            slot: faults[name as keyof typeof busFaults],
+          })),
+        ),
+      ),
+    ];
     this.tables = new ExchangeTables(links, options, problems);
     if (problems.length > 0) throw new BuildError(problems);
 

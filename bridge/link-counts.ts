@@ -1,4 +1,5 @@
 import type { EventKind } from '../runtime/journal.js';
+import { busFaultCounts } from './bus-adversary.js';
 import { linkEvents } from './link-events.js';
 import type { LinkSpec } from './message-map.js';
 
@@ -78,8 +79,15 @@ export const sentCounts = {
   unsendable: { about: 'times not sent because a value was not finite or not allowed', event: linkEvents.unsendable },
 } as const satisfies Counts;
 
+/** What adversaries did on the two ways of a CAN link, named as their counts are. */
+const adversaryCounts: Counts = Object.fromEntries(
+  (['received', 'sent'] as const).flatMap((way) =>
+    Object.entries(busFaultCounts).map(([name, about]) => [`${way}${name}`, { about: `${about}, ${way}` }]),
+  ),
+);
+
 export function countsOfLink(kind: LinkSpec['kind']): Counts {
-  return kind === 'udp' ? udpLinkCounts : canLinkCounts;
+  return kind === 'udp' ? udpLinkCounts : { ...canLinkCounts, ...adversaryCounts };
 }
 
 export function countsOfMessage(kind: LinkSpec['kind'], direction: 'sent' | 'received'): Counts {

@@ -4,7 +4,7 @@ import { isPressure, parseUnit, tradeUnit } from './units.js';
 /** One fault that a scenario can set: `fault: PATH`, with `to:` unless it is a switch. */
 export interface FaultEntry {
   readonly path: string;
-  /** `sensor`, `power stage`, `component`, `message` */
+  /** `sensor`, `power stage`, `component`, `message`, `bus` */
   readonly group: string;
   /** What it sits in: `pressure-sensor`, `relief-valve`, `message from the controller`. */
   readonly of: string;
@@ -35,7 +35,9 @@ export function faultCatalogue(spec: BenchSpec): FaultEntry[] {
         ? ['component', element]
         : instrument !== undefined
           ? [instrument.includes('sensor') ? 'sensor' : 'power stage', instrument]
-          : ['message', direction === 'sent' ? 'message to the controller' : 'message from the controller'];
+          : direction === undefined
+            ? ['bus', 'CAN link']
+            : ['message', direction === 'sent' ? 'message to the controller' : 'message from the controller'];
     found.push({
       path: info.path,
       group,

@@ -1,3 +1,4 @@
+import { busFaults } from '../bridge/bus-adversary.js';
 import { countsOfLink, countsOfMessage } from '../bridge/link-counts.js';
 import { messageFaults } from '../bridge/message-faults.js';
 import type { MessageMap } from '../bridge/message-map.js';
@@ -54,14 +55,25 @@ export class SignalList {
   addMeters(elements: readonly ReadElement[]): void {
     for (const { name, kind } of elements) {
       if (kind.kind !== 'pump-motor') continue;
-      this.add({ path: `ledger.${name}.recovered`, unit: 'J', about: `energy of ${name} taken from its shaft while pumping`, group: 'ledger' });
-      this.add({ path: `ledger.${name}.returned`, unit: 'J', about: `energy of ${name} given to its shaft while motoring`, group: 'ledger' });
+      this.add({
+        path: `ledger.${name}.recovered`,
+        unit: 'J',
+        about: `energy of ${name} taken from its shaft while pumping`,
+        group: 'ledger',
+      });
+      this.add({
+        path: `ledger.${name}.returned`,
+        unit: 'J',
+        about: `energy of ${name} given to its shaft while motoring`,
+        group: 'ledger',
+      });
     }
   }
 
   /** What the watch tells of itself. */
   addWatch(watched: readonly WatchedSignal[]): void {
-    const add = (path: string, unit: string, about: string) => this.add({ path: `watch.${path}`, unit, about, group: 'run' });
+    const add = (path: string, unit: string, about: string) =>
+      this.add({ path: `watch.${path}`, unit, about, group: 'run' });
     add('worst', '1', 'the worst level that is present');
     add('count', '1', 'warnings that are open');
     add('unacknowledged', '1', 'warnings that nobody acknowledged');
@@ -77,7 +89,20 @@ export class SignalList {
     for (const link of map.links) {
       for (const [count, { about }] of Object.entries(countsOfLink(link.kind)))
         this.add({ path: `${link.name}.${count}`, unit: '1', about, group: 'link' });
-      if (link.kind !== 'udp') continue;
+      if (link.kind !== 'udp') {
+        for (const way of ['received', 'sent'])
+          for (const [name, { unit, about, most }] of Object.entries(busFaults))
+            this.add({
+              path: `${link.name}.${way}${name}`,
+              unit,
+              about: `${about}, ${way}`,
+              group: 'command',
+              least: 0,
+              most,
+              withoutFault: 0,
+            });
+        continue;
+      }
       this.add({
         path: `${link.name}.oneStepShare`,
         unit: '1',
