@@ -103,8 +103,7 @@ export function createController(mirror: ControllerMirror, _step: number): Contr
     const retard = brake * vehicle.brakeForce * torquePerForce;
     let wanted = 0;
     if (open && retard > 0)
-      wanted =
-        -Math.min(retard, reach) * ramp(accumulator, pressures.full, pressures.nearFull) * ramp(speed, 0.6, 1.8);
+      wanted = -Math.min(retard, reach) * ramp(accumulator, pressures.full, pressures.nearFull) * ramp(speed, 0.6, 1.8);
     else if (open) wanted = Math.min(drive, reach) * ramp(accumulator, pressures.empty, pressures.low);
     now.driveTorque = slew(now.driveTorque, wanted, 5000 * period);
 
@@ -113,21 +112,19 @@ export function createController(mirror: ControllerMirror, _step: number): Contr
       pressures.atRest + (pressures.atFast - pressures.atRest) * ramp(Math.abs(speed), 0, speeds.fast) ** 2;
     if (!open || accumulator > target) now.charging = 0;
     else if (accumulator < target - 20) now.charging = 1;
-    const most = Math.min(
-      (0.95 * vehicle.pumpDisplacement * difference) / (2 * Math.PI),
-      0.85 * vehicle.engineTorque,
-    );
+    const most = Math.min((0.95 * vehicle.pumpDisplacement * difference) / (2 * Math.PI), 0.85 * vehicle.engineTorque);
     const pump =
       now.charging === 1
-        ? most * ramp(accumulator, target + 2, target - 10) * ramp(engineSpeed, speeds.working - 40, speeds.working - 10)
+        ? most *
+          ramp(accumulator, target + 2, target - 10) *
+          ramp(engineSpeed, speeds.working - 40, speeds.working - 10)
         : 0;
     now.pumpTorque = slew(now.pumpTorque, pump, 900 * period);
     const goal = now.charging === 1 ? speeds.working : speeds.idle;
     const engine = now.pumpTorque + 12 * (goal - engineSpeed);
 
     // service brakes: what the drive unit does not take
-    const friction =
-      (Math.max(0, retard + Math.min(now.driveTorque, 0)) / torquePerForce) * vehicle.tyreRadius;
+    const friction = (Math.max(0, retard + Math.min(now.driveTorque, 0)) / torquePerForce) * vehicle.tyreRadius;
 
     write[output.torque] = now.driveTorque;
     write[output.enable] = open ? 1 : 0;
