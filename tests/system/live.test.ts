@@ -274,7 +274,7 @@ describe.skipIf(here !== '')('a live run with its page', () => {
 
   it('owns up to every row, whatever ten pages do, of which one does not read', () => {
     expect(result.output.trimEnd().split('\n')).toHaveLength(1);
-    expect(recorded.rows.length + summary.rowsLost).toBe(summary.simulated * 1000);
+    expect(recorded.rows.length + summary.rowsLost).toBe(Math.round(summary.simulated * 1000));
     expect(summary.rowsLost).toBe(0);
     const statuses = page.received.filter(isStatus);
     expect(Math.max(...statuses.map((one) => one.clients))).toBe(10);
