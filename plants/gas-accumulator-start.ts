@@ -11,7 +11,7 @@ export function poppetWidth(parameter: Numbers): number {
 
 /** Gas mass, kg, that gives the precharge at its temperature with no oil. */
 export function prechargeMass(parameter: Numbers): number {
-  const real = parameter.gas === 0 ? 1 : 0;
+  const real = parameter.gas === 1 ? 0 : parameter.gas === 0 ? 1 : 2;
   const density = bisect(
     1e-3,
     900,
@@ -34,7 +34,7 @@ export function restOilVolume(
       oilVolume,
       temperature,
       gasMass,
-      parameter.gas === 0 ? 1 : 0,
+      parameter.gas === 1 ? 0 : parameter.gas === 0 ? 1 : 2,
       volume,
       poppetWidth(parameter),
       end,

@@ -14,9 +14,10 @@ import * as oilLaws from './laws/oil.js';
 export const gasAccumulator = store({
   kind: 'gas-accumulator',
   about: 'bladder, piston or diaphragm accumulator with real or ideal nitrogen',
-  source: 'Otis and Pourmovahed 1985 (thermal time constant); Benedict, Webb and Rubin; Cooper and Goldfrank 1967',
+  source:
+    'Otis and Pourmovahed 1985 (thermal time constant); Benedict, Webb and Rubin; Cooper and Goldfrank 1967; Span et al. 2000',
   valid:
-    'gas 250 K to 450 K, up to 40 MPa; one thermal time constant: right for temperature and energy, weak for stiffness above 0.1 Hz (Hartig, Depp, Rexer and Pelz 2020)',
+    'gas 250 K to 450 K, up to 40 MPa (reference-nitrogen 230 K to 500 K, up to 60 MPa); one thermal time constant: right for temperature and energy, weak for stiffness above 0.1 Hz (Hartig, Depp, Rexer and Pelz 2020)',
   ports: { oil: 'oil', wall: 'heat' },
   fluid: true,
   states: {
@@ -57,9 +58,9 @@ export const gasAccumulator = store({
     },
     gas: {
       unit: '1',
-      about: 'nitrogen by Benedict, Webb and Rubin, or as an ideal gas',
+      about: 'nitrogen by Benedict, Webb and Rubin, as an ideal gas, or by the reference equation (fitted)',
       default: 0,
-      choices: ['nitrogen', 'ideal-nitrogen'],
+      choices: ['nitrogen', 'ideal-nitrogen', 'reference-nitrogen'],
     },
     separator: { unit: '1', about: 'kind of separator', default: 0, choices: ['bladder', 'piston', 'diaphragm'] },
     leastGasShare: {
@@ -193,7 +194,7 @@ export const gasAccumulator = store({
     },
   ],
   efforts({ parameter, state, fluid, oil, wall, reading, law }) {
-    const real = parameter.gas === 0 ? 1 : 0;
+    const real = parameter.gas === 1 ? 0 : parameter.gas === 0 ? 1 : 2;
     const closing = parameter.closingShare * parameter.volume;
     const end = (1 - parameter.leastGasShare) * parameter.volume;
     const mass = Math.max(state.mass, 1e-8 * fluid.referenceDensity * parameter.volume);
@@ -239,7 +240,7 @@ export const gasAccumulator = store({
     reading.oilTemperature = temperature;
   },
   derivatives({ parameter, state, command, fluid, oil, wall, reading, derivative, law }) {
-    const real = parameter.gas === 0 ? 1 : 0;
+    const real = parameter.gas === 1 ? 0 : parameter.gas === 0 ? 1 : 2;
     const closing = parameter.closingShare * parameter.volume;
     const end = (1 - parameter.leastGasShare) * parameter.volume;
     const mass = Math.max(state.mass, 1e-8 * fluid.referenceDensity * parameter.volume);
@@ -302,7 +303,7 @@ export const gasAccumulator = store({
     reading.inflow = oil.massFlow / oil.density;
   },
   energy({ parameter, state, oil, reading, law }) {
-    const real = parameter.gas === 0 ? 1 : 0;
+    const real = parameter.gas === 1 ? 0 : parameter.gas === 0 ? 1 : 2;
     const closing = parameter.closingShare * parameter.volume;
     const end = (1 - parameter.leastGasShare) * parameter.volume;
     return (
@@ -317,7 +318,7 @@ export const gasAccumulator = store({
   },
   /** Heat from the surroundings; gas that leaks takes its enthalpy along. */
   supply({ parameter, state, command, reading, law }) {
-    const real = parameter.gas === 0 ? 1 : 0;
+    const real = parameter.gas === 1 ? 0 : parameter.gas === 0 ? 1 : 2;
     const density = state.gasMass * (1 / reading.gasVolume);
     const enthalpy = law.gasEnergy(density, state.gasTemperature, real) + reading.gasPressure / density;
     return (

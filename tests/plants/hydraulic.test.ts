@@ -46,6 +46,23 @@ const circuits: Record<string, { elements: () => ElementInstance[]; drive: (benc
       bench.set('accumulator.gasLeak', time > 0.7 ? 0.05 : 0);
     },
   },
+  'gas-accumulator with reference nitrogen and foam': {
+    elements: () => [
+      accumulator(
+        'accumulator',
+        { volume: 10 * litre, precharge: 150 * bar, gas: 2, foamHeatCapacity: 500 },
+        { charge: 0.3 },
+      ),
+      line('line', 0.5, 200),
+      tank(),
+      element('pump', library.flowSource, { to: { from: 'tank.oil', to: 'line.oil' } }),
+      element('neck', library.orifice, { parameters: { area: 1e-4 }, to: { from: 'line.oil', to: 'accumulator.oil' } }),
+    ],
+    drive: (bench, time) => {
+      bench.set('pump.flowRequest', 150 * litresPerMinute * Math.sin(7 * time));
+      bench.set('accumulator.gasLeak', time > 0.7 ? 0.02 : 0);
+    },
+  },
   'relief-valve, check-valve, flow-source': {
     elements: () => [
       line('line', 0.5, 30),

@@ -288,6 +288,29 @@ describe('sizing: dV = V0 ((p0/p1)^(1/n) - (p0/p2)^(1/n))', () => {
   );
 });
 
+describe('reference nitrogen in the element: Span et al. 2000, computed with a general property library', () => {
+  it.each([
+    [90, 2, 423.52, 293.13],
+    [150, 1.5, 374.26, 322.15],
+    [150, 2, 446.25, 601.74],
+  ])('fast compression from 300 K and %s bar by %s', (precharge, ratio, temperature, pressure) => {
+    const bench = charged({ volume: 20 * litre, precharge: precharge * bar, gas: 2, start: { charge: 0 } }, 2e-3);
+    bench.set('pump.flowRequest', 2e-3);
+    const [p, T] = until(bench, 'accumulator.gasVolume', (20 * litre) / ratio, [
+      'accumulator.gasPressure',
+      'accumulator.gasTemperature',
+    ]);
+    expect(Math.abs(p! / bar / pressure - 1)).toBeLessThan(5e-4);
+    expect(Math.abs(T! / temperature - 1)).toBeLessThan(3e-4);
+  });
+
+  it('50 L at 150 bar and 300 K gives 15.370 L between 165 and 350 bar and holds 8.212 kg', () => {
+    const given = { volume: 50 * litre, precharge: 150 * bar, gas: 2, prechargeTemperature: 300 };
+    expect(prechargeMass(given)).toBeCloseTo(8.212, 3);
+    expect(usable(given, 165 * bar, 350 * bar, 5e-3) / litre).toBeCloseTo(15.37, 2);
+  });
+});
+
 describe('precharge and temperature', () => {
   const filled = (at: number, pressure: number, gas: number, now: number) => {
     const given = { volume: 0.01, precharge: pressure, prechargeTemperature: at, gas };

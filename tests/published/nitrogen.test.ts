@@ -134,7 +134,7 @@ describe('nitrogen by Benedict, Webb and Rubin, the gas of the accumulator', () 
   });
 
   it('is one consistent set: du/dT = c_v, du/dv = T p_T - p, and the slopes of p', () => {
-    for (const real of [0, 1]) {
+    for (const real of [0, 1, 2]) {
       for (const [density, temperature] of [
         [5, 260],
         [160, 300],
@@ -178,5 +178,56 @@ describe('nitrogen by Benedict, Webb and Rubin, the gas of the accumulator', () 
         expect(Math.abs(ur - expected)).toBeLessThan(1e-5 * Math.abs(expected) + 1e-6);
       }
     }
+  });
+});
+
+describe('the reference equation as the accumulator has it (fit of Span et al. 2000)', () => {
+  it('stays within the errors that it states, 230 K to 500 K, up to 60 MPa', () => {
+    const worst = { pressure: 0, heatCapacity: 0, byTemperature: 0, byDensity: 0, energy: 0 };
+    let points = 0;
+    for (let temperature = 230; temperature <= 500; temperature += 6) {
+      const shift = gas.gasEnergy(0.01, temperature, 2) - nitrogen(0.01, temperature).energy;
+      for (let density = 1; density <= 480; density += 9.7) {
+        const truth = nitrogen(density, temperature);
+        if (truth.pressure > 60e6) continue;
+        points += 1;
+        const note = (key: keyof typeof worst, error: number) => {
+          if (!(error <= worst[key])) worst[key] = error;
+        };
+        note('pressure', relative(gas.gasPressure(density, temperature, 2), truth.pressure));
+        note('heatCapacity', relative(gas.gasHeatCapacity(density, temperature, 2), truth.heatCapacity));
+        note(
+          'byTemperature',
+          relative(gas.gasPressureByTemperature(density, temperature, 2), truth.pressureByTemperature),
+        );
+        note('byDensity', relative(gas.gasPressureByDensity(density, temperature, 2), truth.pressureByDensity));
+        note('energy', Math.abs(gas.gasEnergy(density, temperature, 2) - shift - truth.energy));
+      }
+    }
+    expect(points).toBeGreaterThan(1500);
+    expect(worst.pressure).toBeLessThan(5e-5);
+    expect(worst.heatCapacity).toBeLessThan(1.1e-3);
+    expect(worst.byTemperature).toBeLessThan(1e-3);
+    expect(worst.byDensity).toBeLessThan(1e-3);
+    expect(worst.energy).toBeLessThan(30);
+  });
+
+  it('has the energy of the reference over temperature too', () => {
+    const rise = (of: (temperature: number) => number) => of(450) - of(250);
+    const fitted = rise((temperature) => gas.gasEnergy(150, temperature, 2));
+    expect(
+      relative(
+        fitted,
+        rise((temperature) => nitrogen(150, temperature).energy),
+      ),
+    ).toBeLessThan(1e-4);
+  });
+
+  it('rises in pressure with density far past its range, so that an overfilled accumulator stays solvable', () => {
+    for (let temperature = 200; temperature <= 700; temperature += 25)
+      for (let density = 1; density < 900; density += 20)
+        expect(gas.gasPressureByDensity(density, temperature, 2), `${density} kg/m3, ${temperature} K`).toBeGreaterThan(
+          0,
+        );
   });
 });
