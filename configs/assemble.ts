@@ -7,7 +7,7 @@ import { HandStage, type HandTarget } from '../runtime/hand.js';
 import type { InstrumentUpdate } from '../runtime/instrument.js';
 import { EventCatalogue } from '../runtime/journal.js';
 import { Plant, type PlantPlaces } from '../runtime/plant.js';
-import { emptyScript, Script, type ScriptSpec } from '../runtime/script.js';
+import { emptyScript, requirementsOf, Script, type ScriptSpec } from '../runtime/script.js';
 import { SignalTable } from '../runtime/signals.js';
 import { Watch } from '../runtime/watch.js';
 import type { WatchWarning } from '../runtime/watch-log.js';
@@ -137,7 +137,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   requireTargets(script, new Set([...commandAt.keys(), ...outputs.keys()]));
   scriptStage.bind(table);
   const judge = new JudgeStage({
-    requirements: [...spec.requirements, ...script.requirements],
+    requirements: requirementsOf(spec.requirements, script),
     signals: table,
     layout,
     events,

@@ -12,7 +12,7 @@ import { csvPoints } from './scenario-csv.js';
 import { caseNames, chooseParameters, type ScenarioChoice } from './scenario-parameters.js';
 import { readStartState } from './scenario-start.js';
 import { StepReader } from './scenario-steps.js';
-import { type Placed, Section } from './section.js';
+import { type Placed, Section, suggestion } from './section.js';
 import { SignalList } from './signal-list.js';
 import { readSource, type SourceText, type Tree } from './source.js';
 import { checkedTicks, toTicks } from './ticks.js';
@@ -27,7 +27,7 @@ export interface ScenarioSpec {
 
 /** What a scenario needs to know of its bench. */
 export type ScenarioBench = Pick<BenchSpec, 'step' | 'signals'> &
-  Partial<Pick<BenchSpec, 'circuit' | 'ambient' | 'instruments'>>;
+  Partial<Pick<BenchSpec, 'circuit' | 'ambient' | 'instruments' | 'requirements'>>;
 
 /** Cycles that a scenario can name. */
 export const cycles: readonly DriveCycle[] = Object.values(european);
@@ -118,6 +118,7 @@ class ScenarioReader {
     }).read(top);
     const asked = top.section('requirements');
     const requirements = asked ? readRequirements(asked, { signals: lookup(bench.signals), step: bench.step }) : [];
+    const waived = this.waived();
     top.finish();
     const ends = [drive, ...traces.filter((trace) => trace.over === undefined).map((trace) => trace.points)].map(
       (points) => points.at(-1)?.[0] ?? 0,
@@ -137,6 +138,7 @@ class ScenarioReader {
       requirements,
       ...(conditions.length === 0 ? {} : { conditions }),
       ...(start === undefined ? {} : { start }),
+      ...(waived === undefined ? {} : { waived }),
     };
   }
 
@@ -313,6 +315,20 @@ class ScenarioReader {
       }
     }
     return points;
+  }
+
+  /** `waive: { HP-2: the valve is stuck on purpose }`: requirements of the bench that make no sense in this run, and why. */
+  private waived(): Record<string, string> | undefined {
+    const section = this.top.section('waive');
+    if (!section) return undefined;
+    const known = (this.bench.requirements ?? []).map((one) => one.id);
+    const found: Record<string, string> = {};
+    for (const id of section.keys()) {
+      const why = section.text(id, { required: true }, 'the reason');
+      if (!known.includes(id)) section.fail(id, 'the bench has no such requirement', suggestion(id, known), {}, section.whereIs(id));
+      else if (why !== undefined) found[id] = why;
+    }
+    return found;
   }
 
   private start(): ScriptSpec['start'] {

@@ -29,6 +29,8 @@ export interface RunSummary {
   /** Hands that acted on the run, one sentence each; also where the bench allows them. */
   readonly hands?: readonly string[];
   readonly requirements: readonly RunRequirement[];
+  /** Requirements of the bench that the scenario does not ask, with the reason. */
+  readonly waived: Readonly<Record<string, string>>;
 
   /** Simulated time, and what was planned, s. */
   readonly simulated: number;

@@ -26,6 +26,8 @@ export interface ScriptSpec {
   readonly parameters?: Readonly<Record<string, string>>;
   /** Asked beside those of the bench. */
   readonly requirements: readonly Requirement[];
+  /** Requirements of the bench that are not asked of this run, with the reason. */
+  readonly waived?: Readonly<Record<string, string>>;
 }
 export interface ScriptTrace {
   readonly target: string;
@@ -53,6 +55,12 @@ export interface ScriptStep {
   readonly value: number;
   /** Ramp: ticks that it takes. */
   readonly over: number;
+}
+
+/** What a run is judged by: the requirements of its bench that the scenario does not waive, and its own. */
+export function requirementsOf(ofBench: readonly Requirement[], script: ScriptSpec): Requirement[] {
+  const waived = script.waived ?? {};
+  return [...ofBench.filter(({ id }) => !Object.hasOwn(waived, id)), ...script.requirements];
 }
 
 export const emptyScript: ScriptSpec = {

@@ -6,11 +6,13 @@ import { exportCommand } from './commands/export.js';
 import { complain } from './commands/failure.js';
 import { importCommand } from './commands/import.js';
 import { listCommand } from './commands/list.js';
+import { listenCommand, replayCommand } from './commands/listen.js';
 import { readinessCommand } from './commands/readiness.js';
 import { rederiveCommand } from './commands/rederive.js';
 import { reportCommand } from './commands/report.js';
 import { runCommand } from './commands/run.js';
 import { viewCommand } from './commands/view.js';
+import { suiteCommand } from './commands/suite.js';
 import { wireCommand } from './commands/wire.js';
 import { softwareVersion } from './run/host-run.js';
 
@@ -27,7 +29,7 @@ Exit codes: 0 fine, 1 a requirement failed, 2 bad input, 3 the run is not valid,
 oilspring is not a safety device. High-pressure oil and gas kill: a real bench has its own relief valves, interlocks
 and emergency stop, and its hydraulic work follows local codes and licensed practice.`,
   );
-for (const command of [checkCommand(), runCommand(), rederiveCommand(), exportCommand(), reportCommand(), listCommand(), wireCommand(), importCommand(), viewCommand(), readinessCommand()]) program.addCommand(command);
+for (const command of [checkCommand(), runCommand(), rederiveCommand(), exportCommand(), reportCommand(), suiteCommand(), listCommand(), wireCommand(), importCommand(), listenCommand(), replayCommand(), viewCommand(), readinessCommand()]) program.addCommand(command);
 program.exitOverride();
 for (const command of program.commands) command.exitOverride();
 

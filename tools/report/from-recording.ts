@@ -9,7 +9,7 @@ import { judgeTrace } from '../../runtime/judge/offline.js';
 import type { RequirementResult } from '../../runtime/judge/result.js';
 import { RecordingError, type RecordingHeader } from '../../runtime/recording/format.js';
 import { type Ending, Recording } from '../../runtime/recording/reader.js';
-import type { ScriptSpec } from '../../runtime/script.js';
+import { requirementsOf, type ScriptSpec } from '../../runtime/script.js';
 import { judgeRun, type RunJudgement } from '../../runtime/verdict.js';
 import { type PressureSettings, pressureSettings } from '../../runtime/watch-settings.js';
 import { eventText } from '../terminal/event-text.js';
@@ -54,7 +54,8 @@ function gather(recording: Recording, file: string): RecordedReport {
   const { ending, lastTick } = recording.examine();
   const remarks: string[] = [];
   const summary = believed(ending, remarks);
-  const requirements = [...spec.requirements, ...script.requirements];
+  const requirements = requirementsOf(spec.requirements, script);
+  for (const [id, why] of Object.entries(script.waived ?? {})) remarks.push(`requirement ${id} was not asked: ${why}`);
   const watched = spec.watched.map((one) => one.path);
   const wanted = new Set<string>(watched);
   for (const { formula } of requirements) eachSignal(formula, (one) => wanted.add(one));

@@ -108,6 +108,7 @@ export function summarise(outcome: RunOutcome): RunSummary {
       malformed: value(`${name}.outOfRange`),
       timeOuts: value(`${name}.timeOuts`),
     })),
+    waived: plan.script.waived ?? {},
     faults: plan.script.steps
       .slice(0, value('scenario.step'))
       .filter((one) => one.action === 'fault')
