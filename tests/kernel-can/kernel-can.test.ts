@@ -86,6 +86,78 @@ describe.runIf(canRun)('on the CAN stack of Linux', { timeout: 240_000 }, () => 
       expect([name, counts[name]! > 100]).toEqual([name, true]);
   });
 
+  it('misbehaves as it counts: candump sees every frame that was dropped, doubled, swapped, damaged or shortened', () => {
+    const { ticks, found } = runInside('adversary.ts') as {
+      ticks: number;
+      found: { faults: Record<string, number>; frames: string[]; own: Record<string, number> }[];
+    };
+    for (const { faults, frames, own } of found) {
+      const payloads = frames.map((frame) => frame.slice('100#'.length));
+      const values = payloads.map((payload) => Number.parseInt(payload.slice(2, 4) + payload.slice(0, 2), 16));
+      const seen = new Set(payloads);
+      const witnessed = {
+        Dropped: Array.from({ length: ticks }, (_, i) => i).filter((value) => !values.includes(value)).length,
+        Duplicated: frames.length - seen.size,
+        Reordered: values.filter((value, i) => i > 0 && value < values[i - 1]!).length,
+        Corrupted: payloads.filter(
+          (payload, i) => Number.parseInt(payload, 16) !== 0 && (values[i] !== i || !/^.{4}0*$/.test(payload)),
+        ).length,
+        Shortened: payloads.filter((payload) => payload.length === 14).length,
+      };
+      const [fault] = Object.keys(faults);
+      const name =
+        fault === undefined
+          ? undefined
+          : {
+              sentDrop: 'Dropped',
+              sentDuplicate: 'Duplicated',
+              sentReorder: 'Reordered',
+              sentCorrupt: 'Corrupted',
+              sentShorten: 'Shortened',
+              sentSilence: 'Dropped',
+            }[fault];
+      if (name === undefined) expect(payloads.length).toBe(ticks);
+      else {
+        // A frame that waits for a next one when the capture ends was not seen yet.
+        const waits = name === 'Reordered' ? own['Reordered']! - witnessed.Reordered : 0;
+        expect([0, 1]).toContain(waits);
+        expect([fault, witnessed[name as keyof typeof witnessed] + waits]).toEqual([fault, own[name]]);
+        expect(own[name]).toBeGreaterThan(50);
+      }
+    }
+  });
+
+  it('writes logs that canplayer plays, reads those of candump, and listens and replays as can-utils do', () => {
+    const folder = mkdtempSync(path.join(tmpdir(), 'kernel-can-'));
+    try {
+      const found = runInside('log.ts', [folder], 200) as {
+        sent: string[];
+        played: string[];
+        candump: string[];
+        listened: string[];
+        replayed: number;
+        words: string;
+        decoded: string;
+      };
+      // Frames of the kernel say that they are FD by a flag of their own.
+      const sent = found.sent.map((frame) =>
+        frame.length === 144
+          ? `${frame.slice(0, 10)}0${(Number.parseInt(frame.slice(11, 12), 16) | 4).toString(16)}${frame.slice(12)}`
+          : frame,
+      );
+      expect(found.played).toEqual(sent);
+      expect(found.candump).toEqual(sent);
+      expect(found.listened).toEqual(sent);
+      expect(found.replayed).toBe(sent.length);
+      expect(found.words).toContain('200 frames sent');
+      expect(found.decoded).toMatch(
+        /^\(\d+\.\d{6}\) vehicleStatus: speed -0\.02 km\/h, accelerator 0, brake 0\.004, direction 1, key 1, counter 0\n$/,
+      );
+    } finally {
+      rmSync(folder, { recursive: true });
+    }
+  });
+
   it('closes the loop with the controller in its own process, candump as the witness, and derives the run again', async () => {
     const folder = mkdtempSync(path.join(tmpdir(), 'kernel-can-'));
     try {
