@@ -1,6 +1,14 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import type { HandCommand, LiveStatus } from '../../bridge/live/source.js';
-import type { Answer, Frame, Hello, Opened, ServerMessage, StatusMessage } from '../../bridge/live/wire.js';
+import type {
+  Answer,
+  Frame,
+  Hello,
+  HistoryAnswer,
+  Opened,
+  ServerMessage,
+  StatusMessage,
+} from '../../bridge/live/wire.js';
 import { doublesOf, floatsOf } from '../../bridge/live/wire.js';
 import { handEventNames } from '../../runtime/hand-events.js';
 import { HAND, type HandMessage, readHand } from '../../runtime/hand-wire.js';
@@ -12,10 +20,18 @@ import { PageClient } from '../bridge/live/page-client.js';
 import { type ChildResult, finished } from '../support/child.js';
 import { runCommand, scratch, startCommand, truck } from './command.js';
 
-/** A live run of the reference truck with its page, ten pages open, one of which never reads, and hands on the pedals. */
+/**
+ * A live run of the reference truck with its page, ten pages open, one of which does not read, and hands on the pedals.
+ * The last hand ends it, so that nothing depends on how fast this computer is.
+ */
 const folder = scratch();
 const file = folder.file('live.osrec');
-afterAll(() => folder.remove());
+let running: ReturnType<typeof startCommand> | undefined;
+afterAll(() => {
+  // it has ended by itself unless something failed
+  running?.kill('SIGKILL');
+  folder.remove();
+});
 
 const isHello = (message: ServerMessage): message is Hello => message.type === 'hello';
 const isFrame = (message: ServerMessage): message is Frame => message.type === 'frame';
@@ -77,6 +93,20 @@ async function addressOf(child: ReturnType<typeof startCommand>): Promise<URL> {
   throw new Error(`no address of a live page: ${said}`);
 }
 
+/** A busy computer may take its time. */
+async function find<T extends ServerMessage>(
+  client: PageClient,
+  wanted: (message: ServerMessage) => message is T,
+): Promise<T> {
+  for (let tries = 0; ; tries += 1) {
+    try {
+      return await client.find(wanted);
+    } catch (error) {
+      if (tries === 5 || client.closeCode !== 0) throw error;
+    }
+  }
+}
+
 async function connect(url: URL): Promise<PageClient> {
   for (let tries = 0; ; tries += 1) {
     try {
@@ -105,9 +135,10 @@ describe.skipIf(here !== '')('a live run with its page', () => {
 
   beforeAll(async () => {
     const child = startCommand([
-      ...['run', truck, '--pace', 'live', '--for', '6s', '--controller', 'module', '--json', '--record', file],
+      ...['run', truck, '--pace', 'live', '--for', '10min', '--controller', 'module', '--json', '--record', file],
       ...['--page', '127.0.0.1:0', '--control'],
     ]);
+    running = child;
     let output = '';
     child.stdout!.setEncoding('utf8').on('data', (text: string) => (output += text));
     const url = await addressOf(child);
@@ -115,7 +146,7 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     placeholder = { status: early.status, text: await early.text() };
     const end = finished(child);
     page = await connect(url);
-    hello = await page.find(isHello);
+    hello = await find(page, isHello);
     page.send({ type: 'subscribe', subscription: 1, signals: hello.signals.map((_, i) => i) });
     others = await Promise.all(Array.from({ length: 9 }, () => connect(url)));
     others.forEach((other, i) => {
@@ -126,13 +157,13 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     const ask = async (name: string, message: (number: number) => Parameters<PageClient['send']>[0]) => {
       const number = (request += 1);
       page.send(message(number));
-      const found = await page.find((one): one is Answer => one.type === 'answer' && one.request === number);
+      const found = await find(page, (one): one is Answer => one.type === 'answer' && one.request === number);
       answers.set(name, found.acknowledgement);
     };
     const order = (name: string, command: HandCommand) =>
       ask(name, (number) => ({ type: 'command', request: number, who: 'the tester', command }));
     const status = async (wanted: (status: LiveStatus) => boolean) =>
-      (await page.find((one): one is StatusMessage => isStatus(one) && wanted(one.status))).status;
+      (await find(page, (one): one is StatusMessage => isStatus(one) && wanted(one.status))).status;
 
     await order('without token', { kind: 'set', path: 'driver.accelerator', value: 1 });
     await ask('wrong token', (number) => ({ type: 'token', request: number, token: 'not the token at all' }));
@@ -155,7 +186,9 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     await order('no leak', { kind: 'set', path: 'highAccumulator.gasLeak', value: 0 });
     await order('outside', { kind: 'set', path: 'driver.accelerator', value: 2 });
     await order('continue', { kind: 'scenario', action: 'continue' });
+    await status((now) => now.run.tick > answers.get('continue')!.tick + 500);
     others[0]!.socket.resume();
+    await order('end', { kind: 'scenario', action: 'end' });
     result = await end;
     result = { ...result, output };
     summary = JSON.parse(output) as RunSummary;
@@ -191,8 +224,8 @@ describe.skipIf(here !== '')('a live run with its page', () => {
         }
       }
     }
-    expect(compared).toBeGreaterThan(50 * recorded.paths.length);
-    expect(page.received.filter(isFrame).at(-1)!.to).toBeGreaterThan(5900);
+    expect(compared).toBeGreaterThan(10 * recorded.paths.length);
+    expect(page.received.filter(isFrame).at(-1)!.to).toBeGreaterThan(recorded.rows.length - 100);
   });
 
   it('refuses hands without the token, and with a wrong one', () => {
@@ -222,8 +255,7 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     ] as const)
       expect(done).toContainEqual([at(name), kind, 'the tester']);
     expect(recorded.hands.find(({ hand }) => hand.kind === HAND.note)!.hand.text.said).toBe('the oil looks milky');
-    for (let tick = at('pedal'); tick <= at('renewed'); tick += 1)
-      expect(value('driver.accelerator', tick)).toBe(0.375);
+    for (const name of ['pedal', 'renewed']) expect(value('driver.accelerator', at(name))).toBe(0.375);
     expect(value('driver.accelerator', at('pedal') - 1)).not.toBe(0.375);
     expect(value('highAccumulator.gasLeak', at('leak'))).toBe(10);
     expect(value('highAccumulator.gasLeak', at('no leak') - 1)).toBe(10);
@@ -231,14 +263,21 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     expect(answers.get('outside')).toMatchObject({ ok: false });
   });
 
-  it('lets go of a pedal that nobody renews', () => {
-    const lapse = recorded.events.find(
+  it('holds a pedal as long as it is renewed in time, and no longer', () => {
+    const column = recorded.paths.indexOf('driver.accelerator');
+    const sets = recorded.hands.filter(({ hand }) => hand.kind === HAND.set && hand.deadMan > 0);
+    const ends = recorded.events.filter(
       ({ name, subject }) =>
         (name === handEventNames.lapses || name === handEventNames.releases) && subject === 'driver.accelerator',
-    )!;
-    const hand = recorded.hands.find(({ hand }) => hand.kind === HAND.set && hand.deadMan > 0)!.hand;
-    expect(lapse.tick).toBeGreaterThan(answers.get('renewed')!.tick);
-    expect(lapse.tick).toBeLessThanOrEqual(answers.get('renewed')!.tick + hand.deadMan + 1);
+    );
+    expect(sets.map(({ tick }) => tick)).toEqual([answers.get('pedal')!.tick, answers.get('renewed')!.tick]);
+    for (const { tick, hand } of sets) {
+      const end = ends.find((event) => event.tick > tick)!.tick;
+      const renewed = sets.findLast((other) => other.tick < end)!.tick;
+      expect(end).toBeLessThanOrEqual(renewed + hand.deadMan + 1);
+      for (let at = tick; at < end; at += 1) expect(recorded.rows[at]![column]).toBe(0.375);
+      expect(recorded.rows[end]![column]).not.toBe(0.375);
+    }
   });
 
   it('holds the scenario: its time stands, and goes on where it stood', () => {
@@ -247,7 +286,11 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     const stood = recorded.rows[from - 1]![time]!;
     for (let tick = from; tick < to; tick += 1) expect(recorded.rows[tick]![time]).toBe(stood);
     expect(recorded.rows[to]![time]).toBeCloseTo(stood + 0.001, 5);
-    expect(recorded.rows.length).toBe(6000 + to - from);
+  });
+
+  it('ends the run in the tick of the hand that ends it, and says so', () => {
+    expect(answers.get('end')).toMatchObject({ ok: true, tick: recorded.rows.length - 1 });
+    expect(summary).toMatchObject({ ending: 'stopped' });
   });
 
   it('acknowledges a warning', () => {
@@ -266,7 +309,7 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     expect(result.code).toBe(3);
     expect(summary).toMatchObject({ verdict: 'not valid', valid: false });
     expect(summary.reasons.filter(({ reason }) => reason === 'hand in the run').map(({ what }) => what)).toEqual([
-      expect.stringMatching(/^scenario by hand of the tester, 2 times/),
+      expect.stringMatching(/^scenario by hand of the tester, 3 times/),
       expect.stringMatching(/^driver\.accelerator by hand of the tester/),
       expect.stringMatching(/^highAccumulator\.gasLeak by hand of the tester, 2 times/),
     ]);
@@ -288,7 +331,7 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     const { status } = page.received.filter(isStatus).at(-1)!;
     expect(status.messages).toHaveLength(hello.bench.messages.length);
     for (const message of status.messages) {
-      expect(message.count).toBeGreaterThan(500);
+      expect(message.count).toBeGreaterThan(50);
       expect(message).toMatchObject({ lost: 0, late: 0, malformed: 0, timedOut: false });
     }
     const counted = status.timing.stepTime.counts.reduce((sum, count) => sum + count, 0);
@@ -314,12 +357,13 @@ describe.skipIf(here !== '')('a live run with its page', () => {
     for await (const chunk of child.stdout!) if ((said += String(chunk)).includes('\n')) break;
     const end = finished(child);
     const client = await connect(new URL(said.trim()));
-    const opened = await client.find((message): message is Opened => message.type === 'opened');
+    const opened = await find(client, (message): message is Opened => message.type === 'opened');
     expect(opened).toMatchObject({ name: 'live.osrec', firstTick: 0, lastTick: recorded.rows.length - 1 });
     expect(opened.events.subjects).toContain('the oil looks milky (the tester)');
     const asked = answers.get('pedal')!.tick;
     client.send({ type: 'moment', request: 77, tick: asked });
-    const moment = await client.find(
+    const moment = await find(
+      client,
       (message): message is StatusMessage => isStatus(message) && message.request === 77,
     );
     expect(moment.status.run).toMatchObject({ phase: 'recorded', tick: asked, hands: 3 });
@@ -331,8 +375,8 @@ describe.skipIf(here !== '')('a live run with its page', () => {
       to: asked,
       bins: 2,
     });
-    const history = await client.find((message) => message.type === 'history');
-    expect([...floatsOf((history as { most: Uint8Array }).most)][1]).toBe(0.375);
+    const history = await find(client, (message): message is HistoryAnswer => message.type === 'history');
+    expect([...floatsOf(history.most)][1]).toBe(0.375);
     client.close();
     child.kill('SIGTERM');
     expect((await end).code).toBe(0);
