@@ -1,5 +1,5 @@
 import type { Assembly } from '../../configs/assemble.js';
-import type { LockstepTransport } from '../../bridge/lockstep.js';
+import type { Barrier } from '../loop/controller-module.js';
 import type { Circuit } from '../../runtime/circuit/build.js';
 import { Plant } from '../../runtime/plant.js';
 import { type Mode, modesAt } from './modes.js';
@@ -48,7 +48,7 @@ export interface FrozenDrive {
 }
 
 /** Drives the bench's duty once at fast pace, closed loop, and keeps what the plant was told in each tick. */
-export function freeze(assembly: Assembly, barriers: readonly LockstepTransport[], ticks: number, onTick: (tick: number) => boolean): FrozenDrive {
+export function freeze(assembly: Assembly, barriers: readonly Barrier[], ticks: number, onTick: (tick: number) => boolean): FrozenDrive {
   const { plant, tick: stage, firstTick } = assembly;
   const count = assembly.circuit.commands.length;
   const commands = new Float64Array(ticks * count);

@@ -1,7 +1,6 @@
 import path from 'node:path';
 import { Command } from 'commander';
 import pc from 'picocolors';
-import type { LockstepTransport } from '../../bridge/lockstep.js';
 import { assemble } from '../../configs/assemble.js';
 import { readScenario } from '../../configs/scenario.js';
 import { problemText } from '../../runtime/contract.js';
@@ -9,7 +8,7 @@ import { exitCode } from '../../runtime/verdict.js';
 import { type AccuracySheet, freeze, measureAccuracy } from '../check/accuracy.js';
 import { modesAt } from '../check/modes.js';
 import { accuracyLimits, scaleOf, sheetText, verdictOf } from '../check/sheet.js';
-import { loadController, moduleTransport } from '../loop/controller-module.js';
+import { type Barrier, loadController, moduleBarrier } from '../loop/controller-module.js';
 import { readBenchFile } from '../run/plan.js';
 import { CommandError } from './failure.js';
 import { Progress } from './progress.js';
@@ -47,11 +46,11 @@ export function checkCommand(): Command {
         else say(`\nno scenario to drive: accuracy is not measured; fastest time constant at the start ${modes[0] ? (modes[0].timeConstant * 1e6).toPrecision(3) : '-'} us`);
         return;
       }
-      const barriers: LockstepTransport[] = [];
+      const barriers: Barrier[] = [];
       if (spec.map.links[0] && spec.controller?.module !== undefined) {
-        const transport = moduleTransport(spec.map, assembly.exchange.checksum, await loadController(folder, spec.controller.module), spec.step, spec.controller.period);
-        assembly.exchange.attach(spec.map.links[0].name, transport);
-        barriers.push(transport);
+        const { barrier, transports } = moduleBarrier(spec.map, assembly.exchange.checksum, await loadController(folder, spec.controller.module), spec.step, spec.controller.period);
+        for (const { link, transport } of transports) assembly.exchange.attach(link, transport);
+        barriers.push(barrier);
       }
       const progress = new Progress('accuracy', options.json);
       let sheet: AccuracySheet;
