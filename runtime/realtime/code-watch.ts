@@ -124,9 +124,14 @@ export class CodeWatch {
 export function methodsOf(objects: readonly object[]): Map<string, unknown> {
   const found = new Map<string, unknown>();
   for (const object of objects) {
-    for (let proto = Object.getPrototypeOf(object); proto !== null && proto !== Object.prototype; proto = Object.getPrototypeOf(proto)) {
+    for (
+      let proto = Object.getPrototypeOf(object);
+      proto !== null && proto !== Object.prototype;
+      proto = Object.getPrototypeOf(proto)
+    ) {
       for (const [name, { value }] of Object.entries(Object.getOwnPropertyDescriptors(proto))) {
-        if (name !== 'constructor' && typeof value === 'function') found.set(`${proto.constructor.name}.${name}`, value);
+        if (name !== 'constructor' && typeof value === 'function')
+          found.set(`${proto.constructor.name}.${name}`, value);
       }
     }
   }

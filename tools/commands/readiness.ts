@@ -35,23 +35,34 @@ export function readinessCommand(): Command {
     .option('--core <N>', 'processor to measure on; default: as the kernel likes', whole)
     .option('--unit', 'print a systemd unit that gives a live run its rights and no more, and stop')
     .option('--json', 'one object on standard output')
-    .addHelpText('after', '\nExample:\n  oilspring readiness --for 10s\n\nExit code 0: live runs are possible, 3: they are not, 5: stopped.')
+    .addHelpText(
+      'after',
+      '\nExample:\n  oilspring readiness --for 10s\n\nExit code 0: live runs are possible, 3: they are not, 5: stopped.',
+    )
     .action(async (flags: ReadinessFlags) => {
       if (flags.unit) {
-        process.stdout.write(systemdUnit({ folder: packageRoot(), node: process.execPath, user: os.userInfo().username }));
+        process.stdout.write(
+          systemdUnit({ folder: packageRoot(), node: process.execPath, user: os.userInfo().username }),
+        );
         return;
       }
       const machine = thisMachine();
       const found = findings(machine);
       const disk = tryDisk();
       const answer = await measure(flags, found, disk, machine.notLive === '');
-      if (answer.lateness.count > 0 && !keepAnswer(answer)) process.stderr.write(`not kept for the records of later runs: ${answerFile()} cannot be written\n`);
+      if (answer.lateness.count > 0 && !keepAnswer(answer))
+        process.stderr.write(`not kept for the records of later runs: ${answerFile()} cannot be written\n`);
       process.stdout.write(flags.json ? `${JSON.stringify(answer, undefined, 2)}\n` : `${report(answer)}\n`);
       process.exitCode = machine.notLive === '' ? exitCode.fine : exitCode.notValid;
     });
 }
 
-async function measure(flags: ReadinessFlags, found: readonly Finding[], disk: DiskSpeed | undefined, possible: boolean): Promise<ReadinessAnswer> {
+async function measure(
+  flags: ReadinessFlags,
+  found: readonly Finding[],
+  disk: DiskSpeed | undefined,
+  possible: boolean,
+): Promise<ReadinessAnswer> {
   const answer: ReadinessAnswer = {
     measured: new Date().toISOString(),
     computer: thisComputer(),
@@ -85,9 +96,17 @@ async function measure(flags: ReadinessFlags, found: readonly Finding[], disk: D
       pool(floor, (await runCyclictest({ ...wish, interval: 1000 })) ?? new Map());
       if (progress.signal.aborted) throw new Error('stopped');
     }
-    return { ...answer, policy, share, lateness: quantiles(own), cyclictest: floor.size > 0 ? quantiles(floor) : null, steps: stepsHeld(own, STEPS) };
+    return {
+      ...answer,
+      policy,
+      share,
+      lateness: quantiles(own),
+      cyclictest: floor.size > 0 ? quantiles(floor) : null,
+      steps: stepsHeld(own, STEPS),
+    };
   } catch (error) {
-    if (progress.signal.aborted) throw new CommandError('stopped before the end of the measurement', exitCode.unfinished);
+    if (progress.signal.aborted)
+      throw new CommandError('stopped before the end of the measurement', exitCode.unfinished);
     throw error;
   } finally {
     clearInterval(timer);
@@ -103,7 +122,12 @@ function tryDisk(): DiskSpeed | undefined {
   }
 }
 
-const marks = { good: pc.green('good'), 'could be better': pc.yellow('could be better'), bad: pc.red('bad'), unknown: 'unknown' } as const;
+const marks = {
+  good: pc.green('good'),
+  'could be better': pc.yellow('could be better'),
+  bad: pc.red('bad'),
+  unknown: 'unknown',
+} as const;
 
 /** The answer in plain words. */
 export function report(answer: ReadinessAnswer): string {
@@ -120,22 +144,37 @@ export function report(answer: ReadinessAnswer): string {
     '    a bench of 500 signals records about 2.5 MB/s; a slow disk delays no step, it only loses rows in the end',
   );
   if (answer.lateness.count === 0) return [...lines, '', 'wake-ups: not measured'].join('\n');
-  const row = (name: string, q: ReadinessAnswer['lateness'], note: string) => [name, String(q.count), ...[q.p50, q.p99, q.p999, q.max].map((value) => value.toFixed(1)), note];
+  const row = (name: string, q: ReadinessAnswer['lateness'], note: string) => [
+    name,
+    String(q.count),
+    ...[q.p50, q.p99, q.p999, q.max].map((value) => value.toFixed(1)),
+    note,
+  ];
   const rows = [
     ['', 'wake-ups', 'median', '99 %', '99.9 %', 'worst', ''],
     row("the loop's waiting", answer.lateness, `${answer.policy}, ${(100 * answer.share).toFixed(1)} % of a processor`),
     ...(answer.cyclictest ? [row('cyclictest', answer.cyclictest, 'same policy, in turns with it')] : []),
   ];
-  lines.push('', `lateness over ${answer.seconds} s at 1 kHz, µs; load of the computer ${answer.load.toFixed(1)}`, table(rows, [1, 2, 3, 4, 5]));
+  lines.push(
+    '',
+    `lateness over ${answer.seconds} s at 1 kHz, µs; load of the computer ${answer.load.toFixed(1)}`,
+    table(rows, [1, 2, 3, 4, 5]),
+  );
   if (!answer.cyclictest) lines.push('cyclictest: not run: not installed (sudo apt install rt-tests)');
   lines.push('', 'steps that start within half their length, from these wake-ups alone and nothing beyond them:');
   lines.push(table([['step', 'later', 'with 95 % confidence at most'], ...answer.steps.map(stepRow)], [0, 1]));
-  lines.push('Late wake-ups come in bursts: measure for minutes, under the load of the day. A run judges its own timing in any case.');
+  lines.push(
+    'Late wake-ups come in bursts: measure for minutes, under the load of the day. A run judges its own timing in any case.',
+  );
   return lines.join('\n');
 }
 
 function stepRow({ step, later, of, atMost }: StepVerdict): string[] {
-  return [`${step * 1000} ms`, `${later} of ${of}`, `1 step in ${Math.floor(1 / atMost)}${atMost <= 1e-3 ? '' : ': not held'}`];
+  return [
+    `${step * 1000} ms`,
+    `${later} of ${of}`,
+    `1 step in ${Math.floor(1 / atMost)}${atMost <= 1e-3 ? '' : ': not held'}`,
+  ];
 }
 
 function seconds(text: string): number {
@@ -150,6 +189,7 @@ function seconds(text: string): number {
 
 function whole(value: string): number {
   const number = Number(value);
-  if (!Number.isInteger(number) || number < 0 || number >= os.cpus().length) throw new InvalidArgumentError(`a processor number 0 .. ${os.cpus().length - 1}`);
+  if (!Number.isInteger(number) || number < 0 || number >= os.cpus().length)
+    throw new InvalidArgumentError(`a processor number 0 .. ${os.cpus().length - 1}`);
   return number;
 }

@@ -1,5 +1,4 @@
 import { parentPort, workerData } from 'node:worker_threads';
-import v8 from 'node:v8';
 import { type Assembly, assemble } from '../../configs/assemble.js';
 import { readBench } from '../../configs/bench.js';
 import { memoryFiles } from '../../configs/files.js';
@@ -21,6 +20,7 @@ import { catalogue as library } from '../../configs/catalogue.js';
 import { attachLinks } from './attach-links.js';
 import { loadController } from './controller-module.js';
 import { CONTROL, createLoopControl, runLoop } from './engine.js';
+import { inlineMore } from './engine-flags.js';
 import type { LoopMessage, RunOrder } from './run-order.js';
 import { StageClock } from './stage-meter.js';
 import { statusBoard } from './status.js';
@@ -31,8 +31,7 @@ import { hotCode, type WarmUpResult, warmUp } from './warm-up.js';
  * words with the host and nothing else; no file, no terminal and no browser is touched here while ticks run.
  */
 // before the hot code compiles; process-wide, so the host keeps its defaults only until here
-v8.setFlagsFromString('--max-inlined-bytecode-size=2000');
-v8.setFlagsFromString('--max-inlined-bytecode-size-cumulative=6000');
+inlineMore();
 
 /** What was taken of the machine, to be given back on every way out. */
 const taken: { restore(): void }[] = [];

@@ -141,7 +141,12 @@ function sweep(endpoint: ControllerEndpoint): ControllerModule {
 }
 
 /** Attaches partners to all UDP links of a bench. */
-export function rehearse(map: MessageMap, exchange: Exchange, factory: ControllerFactory | undefined, step: number): RehearsalPartner[] {
+export function rehearse(
+  map: MessageMap,
+  exchange: Exchange,
+  factory: ControllerFactory | undefined,
+  step: number,
+): RehearsalPartner[] {
   return map.links
     .filter((link) => link.kind === 'udp' && map.messages.some((message) => message.link === link.name))
     .map((link, i) => {

@@ -1,10 +1,10 @@
 import v8 from 'node:v8';
 import { noTransport } from '../../bridge/transport.js';
 import type { Assembly } from '../../configs/assemble.js';
+import { noHands } from '../../runtime/hand.js';
 import { Clock } from '../../runtime/realtime/clock.js';
 import { CodeWatch, methodsOf } from '../../runtime/realtime/code-watch.js';
 import { collectNow } from '../../runtime/realtime/collection-meter.js';
-import { noHands } from '../../runtime/hand.js';
 import { Pacer } from '../../runtime/realtime/pacer.js';
 import { createRing, RingReader } from '../../runtime/ring.js';
 import { RingJournal } from '../../runtime/ring-journal.js';
@@ -13,8 +13,8 @@ import type { StageMeter } from '../../runtime/tick.js';
 import { attachModule } from './attach-links.js';
 import type { Barrier, ControllerFactory } from './controller-module.js';
 import { createLoopControl, LoopBody, type LoopOptions, runLoop } from './engine.js';
-import { rehearseHands } from './rehearse-hands.js';
 import { rehearse } from './rehearsal-partner.js';
+import { rehearseHands } from './rehearse-hands.js';
 
 /** A round of the dry run, ticks; how many rounds at least and at most; rounds that have to agree. */
 const ROUND = 1000;
@@ -82,7 +82,8 @@ export function warmUp(options: WarmUpOptions): WarmUpResult {
   assembly.tick.meter = options.meter;
   const partners = options.partner === 'udp' ? rehearse(spec.map, exchange, options.factory, spec.step) : [];
   const barriers: Barrier[] = [...partners];
-  if (options.partner === 'module' && options.factory) barriers.push(attachModule(spec, exchange, options.factory, spec.controller?.period ?? 1));
+  if (options.partner === 'module' && options.factory)
+    barriers.push(attachModule(spec, exchange, options.factory, spec.controller?.period ?? 1));
   barriers.push({
     end(tick) {
       if (tick % 64 !== 0) return;
@@ -113,7 +114,20 @@ export function warmUp(options: WarmUpOptions): WarmUpResult {
   const run = (from: number, ticks: number, pacer: Pacer) => {
     runLoop(optionsOf(from, ticks, pacer));
   };
-  kept.push(options, journal, reader, partners, barriers, fast, slow, shared, run, onCount, new LoopBody(optionsOf(0, 0, fast)), optionsOf(0, 0, fast));
+  kept.push(
+    options,
+    journal,
+    reader,
+    partners,
+    barriers,
+    fast,
+    slow,
+    shared,
+    run,
+    onCount,
+    new LoopBody(optionsOf(0, 0, fast)),
+    optionsOf(0, 0, fast),
+  );
   // a field that was written only once counts as constant, and the code that relies on it is given up at the next write
   assembly.hands.source = { poll: () => -1 };
   assembly.hands.source = noHands;
@@ -157,7 +171,12 @@ export function warmUp(options: WarmUpOptions): WarmUpResult {
 }
 
 /** Everything that seldom runs, a few times each. */
-function rareBranches(assembly: Assembly, run: (from: number, ticks: number, pacer: Pacer) => void, fast: Pacer, slow: Pacer): void {
+function rareBranches(
+  assembly: Assembly,
+  run: (from: number, ticks: number, pacer: Pacer) => void,
+  fast: Pacer,
+  slow: Pacer,
+): void {
   const { block, signals, plant, watch, table, spec, tick, script } = assembly;
   for (let round = 0; round < 6; round += 1) {
     const pacer = round % 2 === 0 ? slow : fast;
@@ -189,7 +208,11 @@ function rareBranches(assembly: Assembly, run: (from: number, ticks: number, pac
   }
   // every pressure through all levels and back, with acknowledgements
   assembly.reset();
-  const watched = spec.watched.map((input) => ({ index: table.find(input.path), least: -1e5, most: 1.5 * Math.max(1e5, ...settings(input)) }));
+  const watched = spec.watched.map((input) => ({
+    index: table.find(input.path),
+    least: -1e5,
+    most: 1.5 * Math.max(1e5, ...settings(input)),
+  }));
   for (let at = 0; at < 1200; at += 1) {
     const share = 0.5 - 0.5 * Math.cos((at * 2 * Math.PI) / 600);
     for (const { index, least, most } of watched) signals[index] = least + share * (most - least);
@@ -219,18 +242,36 @@ function hands(assembly: Assembly): void {
 /** All numbers in what is declared of a watched signal. */
 function settings(input: object): number[] {
   return Object.values(input).flatMap((value) =>
-    typeof value === 'number' && Number.isFinite(value) ? [value] : value !== null && typeof value === 'object' ? settings(value) : [],
+    typeof value === 'number' && Number.isFinite(value)
+      ? [value]
+      : value !== null && typeof value === 'object'
+        ? settings(value)
+        : [],
   );
 }
 
 /** What a live loop calls in every tick. */
 export function hotCode(assembly: Assembly, others: readonly object[]): CodeWatch {
   const { tick, plant, exchange, watch, ledger, circuit } = assembly;
-  const { script, before, after } = tick.parts;
-  const found = methodsOf([tick, plant, plant.solver, exchange, watch, ledger, script, ...exchange.links, ...exchange.links.flatMap((link) => [...link.receivers, ...link.senders]), ...others]);
-  for (const [name, one] of Object.entries(circuit.functions)) if (typeof one === 'function') found.set(`circuit.${name}`, one);
-  before.forEach((update, i) => found.set(`instrument before ${i}`, update));
-  after.forEach((update, i) => found.set(`instrument after ${i}`, update));
+  const { script, before, after, judge, hands } = tick.parts;
+  const found = methodsOf([
+    tick,
+    plant,
+    plant.solver,
+    exchange,
+    watch,
+    ledger,
+    script,
+    judge,
+    hands,
+    ...exchange.links,
+    ...exchange.links.flatMap((link) => [...link.receivers, ...link.senders]),
+    ...others,
+  ]);
+  for (const [name, one] of Object.entries(circuit.functions))
+    if (typeof one === 'function') found.set(`circuit.${name}`, one);
+  for (const [i, update] of before.entries()) found.set(`instrument before ${i}`, update);
+  for (const [i, update] of after.entries()) found.set(`instrument after ${i}`, update);
   for (const name of ['wait', 'run', 'over'] as const) found.set(`LoopBody.${name}`, LoopBody.prototype[name]);
   found.set('runLoop', runLoop);
   return new CodeWatch(found);

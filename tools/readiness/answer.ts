@@ -17,9 +17,19 @@ export const answerSchema = z.object({
   share: z.number(),
   lateness: quantiles,
   cyclictest: quantiles.nullable(),
-  steps: z.array(z.object({ step: z.number(), allowed: z.number(), later: z.number(), of: z.number(), atMost: z.number() })),
+  steps: z.array(
+    z.object({ step: z.number(), allowed: z.number(), later: z.number(), of: z.number(), atMost: z.number() }),
+  ),
   disk: z.object({ rate: z.number(), longest: z.number(), free: z.number() }).nullable(),
-  findings: z.array(z.object({ name: z.string(), found: z.string(), verdict: z.enum(['good', 'could be better', 'bad', 'unknown']), meaning: z.string(), remedy: z.array(z.string()) })),
+  findings: z.array(
+    z.object({
+      name: z.string(),
+      found: z.string(),
+      verdict: z.enum(['good', 'could be better', 'bad', 'unknown']),
+      meaning: z.string(),
+      remedy: z.array(z.string()),
+    }),
+  ),
 });
 export type ReadinessAnswer = z.infer<typeof answerSchema>;
 

@@ -22,11 +22,27 @@ const MOST = 50_000;
 export function runCyclictest(wish: CyclictestWish): Promise<LatenessCounts | undefined> {
   const trial = enterScheduling({});
   trial.restore();
-  const policy = trial.policy === 'SCHED_FIFO' ? ['--priority', String(trial.priority), '--policy', 'fifo'] : ['--priority', '0', '--policy', 'other'];
+  const policy =
+    trial.policy === 'SCHED_FIFO'
+      ? ['--priority', String(trial.priority), '--policy', 'fifo']
+      : ['--priority', '0', '--policy', 'other'];
   const pin = wish.core === undefined ? [] : ['-a', String(wish.core)];
   const loops = Math.max(1, Math.round((wish.seconds * 1e6) / wish.interval));
   // `--latency` large: it leaves the idle states as the loop finds them
-  const words = ['-q', '-t', '1', ...pin, '-i', String(wish.interval), '-l', String(loops), '-h', String(MOST), '--latency=1000000', ...policy];
+  const words = [
+    '-q',
+    '-t',
+    '1',
+    ...pin,
+    '-i',
+    String(wish.interval),
+    '-l',
+    String(loops),
+    '-h',
+    String(MOST),
+    '--latency=1000000',
+    ...policy,
+  ];
   return new Promise((resolve) => {
     const child = spawn('cyclictest', words, { stdio: ['ignore', 'pipe', 'ignore'] });
     let text = '';

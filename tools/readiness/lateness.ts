@@ -42,7 +42,8 @@ interface Reply {
 const WARM_UP = 500;
 const MARK = 'oilspring lateness';
 
-if (!isMainThread && (workerData as { mark?: string } | null)?.mark === MARK) loop((workerData as { wish: LatenessWish }).wish);
+if (!isMainThread && (workerData as { mark?: string } | null)?.mark === MARK)
+  loop((workerData as { wish: LatenessWish }).wish);
 
 function loop(wish: LatenessWish): void {
   Pacer.warmUp();
@@ -67,7 +68,13 @@ function loop(wish: LatenessWish): void {
     clock.threadTime(times, 3);
     const { collections } = meter.stop();
     const share = (times[3]! - times[1]!) / (times[2]! - times[0]!);
-    const reply: Reply = { memory: pacer.record.memory, policy: scheduling.policy, words: [...scheduling.words, ...(idle ? [idle.words] : [])], share, collections };
+    const reply: Reply = {
+      memory: pacer.record.memory,
+      policy: scheduling.policy,
+      words: [...scheduling.words, ...(idle ? [idle.words] : [])],
+      share,
+      collections,
+    };
     parentPort!.postMessage(reply);
   } finally {
     scheduling.restore();
@@ -78,7 +85,10 @@ function loop(wish: LatenessWish): void {
 /** Measures in a worker. Rejects when `abort` comes first. */
 export function measureLateness(wish: LatenessWish, abort?: AbortSignal): Promise<LatenessResult> {
   return new Promise((resolve, reject) => {
-    const worker = new Worker(new URL(import.meta.url), { workerData: { mark: MARK, wish }, execArgv: process.execArgv });
+    const worker = new Worker(new URL(import.meta.url), {
+      workerData: { mark: MARK, wish },
+      execArgv: process.execArgv,
+    });
     const stop = () => {
       void worker.terminate();
       reject(new Error('stopped'));
@@ -89,7 +99,14 @@ export function measureLateness(wish: LatenessWish, abort?: AbortSignal): Promis
       const record = new TimingRecord(reply.memory);
       worker.once('exit', () => {
         abort?.removeEventListener('abort', stop);
-        resolve({ timing: record.summary(), counts: new Map(record.lateness.counts()), policy: reply.policy, words: reply.words, share: reply.share, collections: reply.collections });
+        resolve({
+          timing: record.summary(),
+          counts: new Map(record.lateness.counts()),
+          policy: reply.policy,
+          words: reply.words,
+          share: reply.share,
+          collections: reply.collections,
+        });
       });
     });
   });

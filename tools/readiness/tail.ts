@@ -55,7 +55,13 @@ export function stepsHeld(counts: LatenessCounts, steps: readonly number[]): Ste
     const allowed = PART * step;
     let later = 0;
     for (const [value, part] of counts) if (value > allowed * 1e6) later += part;
-    return { step, allowed, later, of: count, atMost: count === 0 ? 1 : Math.min(1, poissonBound(later, CONFIDENCE) / count) };
+    return {
+      step,
+      allowed,
+      later,
+      of: count,
+      atMost: count === 0 ? 1 : Math.min(1, poissonBound(later, CONFIDENCE) / count),
+    };
   });
 }
 

@@ -13,7 +13,12 @@ describe('code watch', () => {
   it('sees code that is given up and code that is compiled later, names it with its tick, and allocates nothing', async () => {
     const result = await runChild(new URL('./code-watch-child.ts', import.meta.url));
     expect(result.errors).toBe('');
-    const { quiet, troubled, bytes, finished } = JSON.parse(result.output) as { quiet: Seen; troubled: Seen; bytes: number; finished: Seen };
+    const { quiet, troubled, bytes, finished } = JSON.parse(result.output) as {
+      quiet: Seen;
+      troubled: Seen;
+      bytes: number;
+      finished: Seen;
+    };
     expect(quiet).toMatchObject({ known: true, functions: 3, optimised: 1, lost: [], late: [] });
     expect(troubled.lost.map((one) => one.name)).toEqual(['Sum.of']);
     // three functions, one a tick

@@ -3,19 +3,37 @@ import os from 'node:os';
 import path from 'node:path';
 import { describe, expect, it } from 'vitest';
 import type { SchedulingRights } from '../../../runtime/realtime/scheduling.js';
-import { answerText, keepAnswer, keptAnswer, type ReadinessAnswer, thisComputer } from '../../../tools/readiness/answer.js';
+import {
+  answerText,
+  keepAnswer,
+  keptAnswer,
+  type ReadinessAnswer,
+  thisComputer,
+} from '../../../tools/readiness/answer.js';
 import { countsOf } from '../../../tools/readiness/cyclictest.js';
 import { measureDisk } from '../../../tools/readiness/disk.js';
 import { findings, type Machine, thisMachine } from '../../../tools/readiness/findings.js';
 import { poissonBound, pool, quantiles, stepsHeld } from '../../../tools/readiness/tail.js';
 import { systemdUnit } from '../../../tools/readiness/unit.js';
 
-const rights: SchedulingRights = { niceCapability: false, priorityLimit: 0, lockCapability: false, lockLimit: 8 << 20, words: '' };
+const rights: SchedulingRights = {
+  niceCapability: false,
+  priorityLimit: 0,
+  lockCapability: false,
+  lockLimit: 8 << 20,
+  words: '',
+};
 
 function machine(files: Record<string, string>, more: Partial<Machine> = {}): Machine {
   return {
     read: (file) => files[file] ?? '',
-    list: (folder) => [...new Set(Object.keys(files).filter((file) => file.startsWith(`${folder}/`)).map((file) => file.slice(folder.length + 1).split('/')[0]!))],
+    list: (folder) => [
+      ...new Set(
+        Object.keys(files)
+          .filter((file) => file.startsWith(`${folder}/`))
+          .map((file) => file.slice(folder.length + 1).split('/')[0]!),
+      ),
+    ],
     rights,
     processors: 4,
     notLive: '',
@@ -72,11 +90,25 @@ describe('what readiness finds', () => {
         '/proc/swaps': 'Filename Type Size\n/dev/sda2 partition 1',
       }),
     );
-    expect(of(found, 'kernel preemption')).toMatchObject({ found: 'PREEMPT_DYNAMIC (preempt=voluntary)', verdict: 'could be better' });
+    expect(of(found, 'kernel preemption')).toMatchObject({
+      found: 'PREEMPT_DYNAMIC (preempt=voluntary)',
+      verdict: 'could be better',
+    });
     expect(of(found, 'right to real-time scheduling').verdict).toBe('bad');
     expect(of(found, 'frequency governor').found).toBe('powersave, performance');
     expect(of(found, 'idle states').meaning).toContain('200 µs');
-    for (const name of ['kernel preemption', 'right to real-time scheduling', 'memory-lock limit', 'isolated processors', 'frequency governor', 'idle states', 'sibling threads', 'clock source', 'hardware', 'swap']) {
+    for (const name of [
+      'kernel preemption',
+      'right to real-time scheduling',
+      'memory-lock limit',
+      'isolated processors',
+      'frequency governor',
+      'idle states',
+      'sibling threads',
+      'clock source',
+      'hardware',
+      'swap',
+    ]) {
       expect(of(found, name).verdict, name).toMatch(/could be better|bad/);
       expect(of(found, name).remedy.length, name).toBeGreaterThan(0);
     }
@@ -85,7 +117,15 @@ describe('what readiness finds', () => {
   it('where nothing can be read: unknown, never good', () => {
     const found = findings(machine({}, { notLive: 'live runs need Linux (this is darwin); use --pace fast here' }));
     expect(of(found, 'live runs').verdict).toBe('bad');
-    for (const name of ['kernel preemption', 'frequency governor', 'idle states', 'sibling threads', 'clock source', 'timer slack']) expect(of(found, name).verdict, name).toBe('unknown');
+    for (const name of [
+      'kernel preemption',
+      'frequency governor',
+      'idle states',
+      'sibling threads',
+      'clock source',
+      'timer slack',
+    ])
+      expect(of(found, name).verdict, name).toBe('unknown');
   });
 
   it('reads this computer without an error', () => {
@@ -132,7 +172,8 @@ describe('the tail of the wake-ups', () => {
   });
 
   it('reads what cyclictest prints', () => {
-    const text = '# /dev/cpu_dma_latency set to 0us\n# Histogram\n000000 000000\n000003 000120\n000017 000002\n# Total: 000000122\n# Histogram Overflows: 00001\n';
+    const text =
+      '# /dev/cpu_dma_latency set to 0us\n# Histogram\n000000 000000\n000003 000120\n000017 000002\n# Total: 000000122\n# Histogram Overflows: 00001\n';
     expect([...countsOf(text)]).toEqual([
       [3, 120],
       [17, 2],
@@ -163,7 +204,9 @@ describe('the answer and the unit', () => {
     expect(keptAnswer(file)).toBeUndefined();
     expect(keepAnswer(answer, file)).toBe(true);
     expect(keptAnswer(file)).toEqual(answer);
-    expect(answerText(keptAnswer(file))).toMatch(/SCHED_FIFO.*p99 3.0 µs.*cyclictest p99 9.0 µs.*1 ms step: 0 of 10000/);
+    expect(answerText(keptAnswer(file))).toMatch(
+      /SCHED_FIFO.*p99 3.0 µs.*cyclictest p99 9.0 µs.*1 ms step: 0 of 10000/,
+    );
     keepAnswer({ ...answer, computer: 'another one' }, file);
     expect(keptAnswer(file)).toBeUndefined();
     fs.writeFileSync(file, '{');
