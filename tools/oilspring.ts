@@ -2,6 +2,7 @@
 import { Command, CommanderError } from 'commander';
 import { exitCode } from '../runtime/verdict.js';
 import { checkCommand } from './commands/check.js';
+import { compareCommand } from './commands/compare.js';
 import { exportCommand } from './commands/export.js';
 import { complain } from './commands/failure.js';
 import { importCommand } from './commands/import.js';
@@ -29,7 +30,7 @@ Exit codes: 0 fine, 1 a requirement failed, 2 bad input, 3 the run is not valid,
 oilspring is not a safety device. High-pressure oil and gas kill: a real bench has its own relief valves, interlocks
 and emergency stop, and its hydraulic work follows local codes and licensed practice.`,
   );
-for (const command of [checkCommand(), runCommand(), rederiveCommand(), exportCommand(), reportCommand(), suiteCommand(), listCommand(), wireCommand(), importCommand(), listenCommand(), replayCommand(), viewCommand(), readinessCommand()]) program.addCommand(command);
+for (const command of [checkCommand(), runCommand(), rederiveCommand(), exportCommand(), reportCommand(), suiteCommand(), compareCommand(), listCommand(), wireCommand(), importCommand(), listenCommand(), replayCommand(), viewCommand(), readinessCommand()]) program.addCommand(command);
 program.exitOverride();
 for (const command of program.commands) command.exitOverride();
 

@@ -37,7 +37,12 @@ export function suiteCommand(): Command {
     .option('--resume', 'go on where an earlier suite stopped: runs whose files have not changed are not run again')
     .option('--controller <CMD>', 'as of run')
     .option('--seed <N>', "seed of all noise; default: the bench's", whole)
-    .option('--keep <rule|all|none>', 'recordings: those of runs that did not pass and those with the least margins; all; none', keep, 'rule')
+    .option(
+      '--keep <rule|all|none>',
+      'recordings: those of runs that did not pass and those with the least margins; all; none',
+      keep,
+      'rule',
+    )
     .option('--junit <FILE>', 'JUnit XML of all runs')
     .option('--report <FILE.html>', 'a page over all runs, and one for each run that did not pass, beside it')
     .option('--json', 'one object on standard output at the end, and nothing else')
@@ -94,24 +99,47 @@ async function suite(folder: string, flags: SuiteFlags): Promise<number> {
       pages.set(one.name, page);
     }
     const created = `${new Date().toISOString().replace('T', ' ').replace(/\..*/, '')} UTC`;
-    writeFileSync(flags.report, suiteHtml({ title: path.basename(path.resolve(folder)), bench: spec.name, created, took, jobs: flags.jobs, judgement, results, pages }));
+    writeFileSync(
+      flags.report,
+      suiteHtml({
+        title: path.basename(path.resolve(folder)),
+        bench: spec.name,
+        created,
+        took,
+        jobs: flags.jobs,
+        judgement,
+        results,
+        pages,
+      }),
+    );
   }
-  if (flags.json) process.stdout.write(`${JSON.stringify({ ...judgement, took, runs: results.map(({ summary: _, ...one }) => one) })}\n`);
+  if (flags.json)
+    process.stdout.write(
+      `${JSON.stringify({ ...judgement, took, runs: results.map(({ summary: _, ...one }) => one) })}\n`,
+    );
   say('');
   for (const one of judgement.requirements) {
     if (one.failed.length === 0) continue;
-    say(`${pc.red(`${one.id} failed`)} in ${one.failed.join(', ')}, worst margin ${one.least ? marginText(one.least.margin, one.unit) : '-'}: ${one.text}`);
+    say(
+      `${pc.red(`${one.id} failed`)} in ${one.failed.join(', ')}, worst margin ${one.least ? marginText(one.least.margin, one.unit) : '-'}: ${one.text}`,
+    );
   }
   say(`${judgement.verdict.toUpperCase()}  ${judgement.summary}`);
   say(`${results.length} runs in ${took.toFixed(0)} s: ${((60 * results.length) / took).toFixed(1)} a minute`);
-  if (progress.signal.aborted) throw new CommandError(`stopped: ${entries.length - results.length} runs are left, --resume goes on from here`, 5);
+  if (progress.signal.aborted)
+    throw new CommandError(`stopped: ${entries.length - results.length} runs are left, --resume goes on from here`, 5);
   return judgement.exitCode;
 }
 
 function line(result: SuiteResult, again: boolean): string {
   const colour = result.verdict === 'pass' ? pc.green : result.verdict === 'fail' ? pc.red : pc.yellow;
   const failed = (result.summary?.requirements ?? []).filter((one) => one.verdict === 'fail').map((one) => one.id);
-  const idle = result.verdict === 'not exercised' ? (result.summary?.requirements ?? []).filter((one) => one.verdict !== 'pass' && !one.optional && one.verdict !== 'fail').map((one) => one.id) : [];
+  const idle =
+    result.verdict === 'not exercised'
+      ? (result.summary?.requirements ?? [])
+          .filter((one) => one.verdict !== 'pass' && !one.optional && one.verdict !== 'fail')
+          .map((one) => one.id)
+      : [];
   const why = [...failed, ...idle, ...result.why].join('; ');
   return `${colour(result.verdict.padEnd(13))} ${result.name.padEnd(34)} ${again ? 'from before' : `${result.took.toFixed(1)} s`}${why === '' ? '' : `  ${why}`}`;
 }

@@ -61,7 +61,9 @@ export function judgeSuite(results: readonly SuiteResult[], planned: number): Su
   const counts = { pass: 0, fail: 0, 'not exercised': 0, 'not valid': 0, broken: 0 };
   for (const one of results) counts[one.verdict] += 1;
   const requirements = tally(results);
-  const idle = requirements.filter((one) => one.severity !== 'observation' && one.passed + one.failed.length + one.undecided === 0);
+  const idle = requirements.filter(
+    (one) => one.severity !== 'observation' && one.passed + one.failed.length + one.undecided === 0,
+  );
   const missing = planned - results.length;
   let verdict: RunVerdict = 'pass';
   if (counts.fail > 0) verdict = 'fail';
@@ -77,7 +79,13 @@ export function judgeSuite(results: readonly SuiteResult[], planned: number): Su
     idle.length > 0 ? `no run exercised ${idle.map((one) => one.id).join(', ')}` : '',
   ];
   const codes = { pass: 0, fail: 1, 'not valid': 3, 'not exercised': 0 };
-  return { verdict, exitCode: missing > 0 ? 5 : codes[verdict], summary: `${parts.filter(Boolean).join(', ')}.`, counts, requirements };
+  return {
+    verdict,
+    exitCode: missing > 0 ? 5 : codes[verdict],
+    summary: `${parts.filter(Boolean).join(', ')}.`,
+    counts,
+    requirements,
+  };
 }
 
 function tally(results: readonly SuiteResult[]): RequirementTally[] {
@@ -87,14 +95,25 @@ function tally(results: readonly SuiteResult[]): RequirementTally[] {
     for (const one of summary.requirements) {
       let so = found.get(one.id);
       if (!so) {
-        so = { id: one.id, text: one.text, severity: one.severity, unit: one.unit, passed: 0, failed: [], notExercised: 0, undecided: 0, least: null };
+        so = {
+          id: one.id,
+          text: one.text,
+          severity: one.severity,
+          unit: one.unit,
+          passed: 0,
+          failed: [],
+          notExercised: 0,
+          undecided: 0,
+          least: null,
+        };
         found.set(one.id, so);
       }
       if (one.verdict === 'pass') so.passed += 1;
       else if (one.verdict === 'fail') so.failed = [...so.failed, name];
       else if (one.verdict === 'not exercised') so.notExercised += 1;
       else so.undecided += 1;
-      if (one.verdict !== 'not exercised' && one.margin !== null && (so.least === null || one.margin < so.least.margin)) so.least = { margin: one.margin, run: name };
+      if (one.verdict !== 'not exercised' && one.margin !== null && (so.least === null || one.margin < so.least.margin))
+        so.least = { margin: one.margin, run: name };
     }
   }
   return [...found.values()];

@@ -110,7 +110,9 @@ async function runOne(options: SuiteOptions, entry: SuiteEntry, children: Set<Ch
     key: entry.key,
     verdict: summary?.ending === 'broken' || !summary ? 'broken' : summary.verdict,
     exitCode: summary?.exitCode ?? 5,
-    why: summary ? summary.reasons.map((one) => one.what) : [`the process ended with ${ended}`, ...errors.trim().split('\n').slice(-3)].filter(Boolean),
+    why: summary
+      ? summary.reasons.map((one) => one.what)
+      : [`the process ended with ${ended}`, ...errors.trim().split('\n').slice(-3)].filter(Boolean),
     summary,
     took: (performance.now() - began) / 1000,
     recording: keep === 'none' || !summary?.recording ? null : path.basename(recording),

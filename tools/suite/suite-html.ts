@@ -28,11 +28,15 @@ export interface SuitePage {
 export function suiteHtml(page: SuitePage): string {
   const { judgement, results } = page;
   const [, kind] = signs[judgement.verdict];
-  const word = (verdict: SuiteResult['verdict']) => `<span class="word ${signs[verdict][1]}">${signs[verdict][0]} ${verdict}</span>`;
+  const word = (verdict: SuiteResult['verdict']) =>
+    `<span class="word ${signs[verdict][1]}">${signs[verdict][0]} ${verdict}</span>`;
   const runs = results.map((one) => {
     const link = page.pages.get(one.name);
-    const title = link === undefined ? escaped(one.name) : `<a href="${escaped(encodeURI(link))}">${escaped(one.name)}</a>`;
-    const failed = (one.summary?.requirements ?? []).filter((r) => r.verdict === 'fail').map((r) => `${r.id} ${marginText(r.margin ?? Number.NEGATIVE_INFINITY, r.unit)}`);
+    const title =
+      link === undefined ? escaped(one.name) : `<a href="${escaped(encodeURI(link))}">${escaped(one.name)}</a>`;
+    const failed = (one.summary?.requirements ?? [])
+      .filter((r) => r.verdict === 'fail')
+      .map((r) => `${r.id} ${marginText(r.margin ?? Number.NEGATIVE_INFINITY, r.unit)}`);
     const faults = (one.summary?.faults ?? []).map((fault) => fault.path);
     const notes = [...failed, ...one.why, ...(faults.length > 0 ? [`faults: ${[...new Set(faults)].join(', ')}`] : [])];
     return `<tr><td class="w">${word(one.verdict)}</td><td class="wrap name"><strong>${title}</strong> ${escaped(one.title)}<br><span class="quiet">${notes.map(escaped).join(' · ')}</span></td><td class="n">${one.summary ? `${one.summary.simulated.toFixed(0)} s` : '–'}</td><td class="n">${one.took.toFixed(1)} s</td></tr>`;
@@ -40,7 +44,10 @@ export function suiteHtml(page: SuitePage): string {
   const requirements = judgement.requirements.map((one) => {
     const verdict = one.failed.length > 0 ? 'fail' : one.passed > 0 ? 'pass' : 'not exercised';
     const least = one.least === null ? '–' : escaped(marginText(one.least.margin, one.unit));
-    const where = one.least === null ? '' : `<br><span class="quiet">least in ${escaped(one.least.run)}${one.failed.length > 0 ? `; failed in ${one.failed.map(escaped).join(', ')}` : ''}</span>`;
+    const where =
+      one.least === null
+        ? ''
+        : `<br><span class="quiet">least in ${escaped(one.least.run)}${one.failed.length > 0 ? `; failed in ${one.failed.map(escaped).join(', ')}` : ''}</span>`;
     return `<tr><td class="w">${word(verdict)}</td><td class="wrap name"><strong>${escaped(one.id)}</strong> ${escaped(one.text)}${where}</td><td class="n">${least}</td><td class="n">${one.passed}</td><td class="n">${one.failed.length}</td><td class="n">${one.notExercised + one.undecided}</td></tr>`;
   });
   const table = (heads: readonly string[], rows: readonly string[]) =>

@@ -24,7 +24,9 @@ function suite({ name, title, summary, verdict, why, took }: SuiteResult): strin
     }
     return `    <testcase ${label} name="${escaped(`${one.id} ${one.text}`)}">${inside}</testcase>\n`;
   });
-  const error = sound ? '' : `<error type="${verdict}" message="${escaped(why[0] ?? verdict)}">${escaped(why.join('\n'))}</error>`;
+  const error = sound
+    ? ''
+    : `<error type="${verdict}" message="${escaped(why[0] ?? verdict)}">${escaped(why.join('\n'))}</error>`;
   cases.push(`    <testcase ${label} name="the run is valid">${error}</testcase>\n`);
   return `  <testsuite name="${escaped(`${name}: ${title}`)}" tests="${cases.length}" failures="${failures}" errors="${sound ? 0 : 1}" skipped="${skipped}" time="${took.toFixed(3)}">\n${cases.join('')}  </testsuite>\n`;
 }
