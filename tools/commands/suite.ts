@@ -68,6 +68,7 @@ async function suite(folder: string, flags: SuiteFlags): Promise<number> {
   const progress = new Progress('suite', flags.json ?? false);
   const began = performance.now();
   let results: SuiteResult[];
+  let fresh = 0;
   try {
     results = await runSuite({
       bench,
@@ -82,7 +83,10 @@ async function suite(folder: string, flags: SuiteFlags): Promise<number> {
       onProgress: (share) => {
         progress.update(share);
       },
-      onResult: (result, again) => say(line(result, again)),
+      onResult: (result, again) => {
+        if (!again) fresh += 1;
+        say(line(result, again));
+      },
     });
   } finally {
     progress.done();
@@ -125,7 +129,7 @@ async function suite(folder: string, flags: SuiteFlags): Promise<number> {
     );
   }
   say(`${judgement.verdict.toUpperCase()}  ${judgement.summary}`);
-  say(`${results.length} runs in ${took.toFixed(0)} s: ${((60 * results.length) / took).toFixed(1)} a minute`);
+  if (fresh > 0) say(`${fresh} runs in ${took.toFixed(0)} s: ${((60 * fresh) / took).toFixed(1)} a minute`);
   if (progress.signal.aborted)
     throw new CommandError(`stopped: ${entries.length - results.length} runs are left, --resume goes on from here`, 5);
   return judgement.exitCode;
