@@ -33,16 +33,20 @@ const spy = spawn(process.execPath, ['dist/tools/oilspring.js', 'listen', bench,
 let heard = '';
 spy.stdout.setEncoding('utf8').on('data', (chunk: string) => (heard += chunk));
 for (let i = 0; i < 300 && !heard.includes('7FE#'); i += 1) {
+  if (spy.exitCode !== null) throw new Error(`listen ended with ${spy.exitCode}`);
   sh('cansend vcan0 7FE#');
   await sleep(50);
 }
+if (!heard.includes('7FE#')) throw new Error('listen does not hear');
 sh(`canplayer -I ${log} -t vcan0=vcan0`);
 const played = (await drain(socket)).filter((frame) => !frame.startsWith('fe07'));
 await sleep(300);
+const closed = new Promise((done) => spy.once('close', done));
 spy.kill('SIGINT');
-await new Promise((done) => spy.once('close', done));
+await closed;
+const witnessed = new Promise((done) => witness.once('close', done));
 witness.kill('SIGTERM');
-await new Promise((done) => witness.once('close', done));
+await witnessed;
 writeFileSync(listening, heard);
 const bare = (file: string): string[] =>
   parseCandump(readFileSync(file, 'utf8'))
@@ -52,9 +56,16 @@ const bare = (file: string): string[] =>
 const again = await capture();
 const words = sh(`node dist/tools/oilspring.js replay ${log} ${bench} 2>&1`);
 const replayed = await again.stop();
-const decoded = sh(
-  `(sleep 3; cansend vcan0 002#1A30FEFF00100000) & node dist/tools/oilspring.js listen ${bench} --count 1; wait`,
-);
+const single = spawn(process.execPath, ['dist/tools/oilspring.js', 'listen', bench, '--count', '1'], {
+  stdio: ['ignore', 'pipe', 'inherit'],
+});
+let decoded = '';
+single.stdout.setEncoding('utf8').on('data', (chunk: string) => (decoded += chunk));
+for (let i = 0; i < 600 && single.exitCode === null; i += 1) {
+  sh('cansend vcan0 002#1A30FEFF00100000');
+  await sleep(50);
+}
+if (single.exitCode !== 0) throw new Error(`listen --count 1 ended with ${single.exitCode}`);
 report({
   sent: frames.map(hex),
   played,
