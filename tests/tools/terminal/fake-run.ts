@@ -218,5 +218,9 @@ export const fakeSummary: RunSummary = {
   ],
   stateHash: '5d1c0a9be2f47713',
   recording: 'recordings/harbour-truck-1.osr',
+  waived: {},
+  energyParts: [],
+  messages: [],
+  faults: [],
   rowsLost: 0,
 };
