@@ -2,6 +2,7 @@ import v8 from 'node:v8';
 import { noTransport } from '../../bridge/transport.js';
 import type { Assembly } from '../../configs/assemble.js';
 import { noHands } from '../../runtime/hand.js';
+import { eachSignal } from '../../runtime/judge/formula.js';
 import { Clock } from '../../runtime/realtime/clock.js';
 import { CodeWatch, methodsOf } from '../../runtime/realtime/code-watch.js';
 import { collectNow } from '../../runtime/realtime/collection-meter.js';
@@ -131,9 +132,7 @@ export function warmUp(options: WarmUpOptions): WarmUpResult {
   // a field that was written only once counts as constant, and the code that relies on it is given up at the next write
   assembly.hands.source = { poll: () => -1 };
   assembly.hands.source = noHands;
-  code.begin();
-  code.finish(0);
-  code.begin();
+  code.rehearse();
   let ticks = 0;
   try {
     rareBranches(assembly, run, fast, slow);
@@ -197,28 +196,44 @@ function rareBranches(
       }
     }
   }
-  // the whole scenario in leaps
-  for (let round = 0; round < 2; round += 1) {
+  // the whole scenario in leaps, with what stands ahead of the plant: as if the vehicle followed, lagged and ran ahead
+  const { script: timeline, before } = tick.parts;
+  const target = table.find('scenario.targetSpeed');
+  const inputs = spec.instruments
+    .filter((instrument) => instrument.kind.stage === 'before')
+    .flatMap((instrument) => Object.values(instrument.inputs))
+    .map((path) => (path.startsWith('scenario.') ? -1 : table.find(path)))
+    .filter((index) => index >= 0);
+  for (const follows of [0, 0.8, 1, 1.2, 2, 1]) {
     assembly.reset();
-    const leap = Math.max(1, Math.floor(script.ticks / 200));
+    const leap = Math.max(1, Math.floor(script.ticks / 500));
     for (let at = 0; at < script.ticks; at += leap) {
-      tick.parts.script.run(block, signals, at, tick.journal);
-      tick.parts.script.apply(block, at);
+      timeline.run(block, signals, at, tick.journal);
+      for (const index of inputs) signals[index] = follows * Math.max(1, target < 0 ? 1 : signals[target]!);
+      for (let i = 0; i < before.length; i += 1) before[i]!(block, signals, at);
+      timeline.apply(block, at);
     }
   }
-  // every pressure through all levels and back, with acknowledgements
-  assembly.reset();
+  // every pressure through all levels and back, with acknowledgements: all at once, then slowly and one after the other
   const watched = spec.watched.map((input) => ({
     index: table.find(input.path),
     least: -1e5,
-    most: 1.5 * Math.max(1e5, ...settings(input)),
+    most: 1.5 * Math.max(1e5, ...numbersIn(input)),
   }));
-  for (let at = 0; at < 1200; at += 1) {
-    const share = 0.5 - 0.5 * Math.cos((at * 2 * Math.PI) / 600);
-    for (const { index, least, most } of watched) signals[index] = least + share * (most - least);
-    if (at % 250 === 249) block[watch.acknowledgeSlot] = block[watch.acknowledgeSlot]! === -1 ? 1 : -1;
-    watch.run(block, signals, at);
+  for (const [period, apart] of [
+    [600, 0],
+    [5000, 1.7],
+  ] as const) {
+    assembly.reset();
+    for (let at = 0; at < 2 * period; at += 1) {
+      watched.forEach(({ index, least, most }, i) => {
+        signals[index] = least + (0.5 - 0.5 * Math.cos((at * 2 * Math.PI) / period + apart * i)) * (most - least);
+      });
+      if (at % 250 === 249) block[watch.acknowledgeSlot] = block[watch.acknowledgeSlot]! === -1 ? 1 : -1;
+      watch.run(block, signals, at);
+    }
   }
+  rehearseJudge(assembly);
   // a state that is no number: the solver's safety net to its end
   for (let round = 0; round < 20; round += 1) {
     assembly.reset();
@@ -226,6 +241,33 @@ function rareBranches(
     plant.step();
   }
   assembly.reset();
+}
+
+/** Signals that requirements ask about, each now on one side and now on the other of every number in its requirement. */
+function rehearseJudge(assembly: Assembly): void {
+  const { block, signals, table, tick } = assembly;
+  const asked = assembly.judge.judge.requirements.map(({ formula }) => {
+    const indices: number[] = [];
+    eachSignal(formula, (path) => indices.push(table.find(path)));
+    return {
+      indices: indices.filter((index) => index >= 0),
+      values: [0, 1, -1, ...numbersIn(formula).flatMap((value) => [0.9 * value, 1.1 * value])],
+    };
+  });
+  assembly.reset();
+  let draw = 1;
+  for (let at = 0; at < 6000; at += 1) {
+    // for a while the same, so that what has to last does, and then ever more often another
+    if (at % Math.max(1, 60 - Math.floor(at / 100)) === 0) {
+      for (const { indices, values } of asked) {
+        for (const index of indices) {
+          draw = (Math.imul(draw, 1664525) + 1013904223) | 0;
+          signals[index] = values[(draw >>> 16) % values.length]!;
+        }
+      }
+    }
+    assembly.judge.run(block, signals, at, tick.journal);
+  }
 }
 
 /** One hand of each kind, again and again. */
@@ -239,13 +281,13 @@ function hands(assembly: Assembly): void {
   assembly.hands.source = noHands;
 }
 
-/** All numbers in what is declared of a watched signal. */
-function settings(input: object): number[] {
+/** All numbers in a declaration. */
+function numbersIn(input: object): number[] {
   return Object.values(input).flatMap((value) =>
     typeof value === 'number' && Number.isFinite(value)
       ? [value]
       : value !== null && typeof value === 'object'
-        ? settings(value)
+        ? numbersIn(value)
         : [],
   );
 }
