@@ -26,6 +26,8 @@ export interface RunReportData {
   /** Events beyond those listed. */
   readonly eventsLeftOut: number;
   readonly timing: ReportedTiming | null;
+  /** How well the drive was followed; absent or empty when there was none. */
+  readonly drive?: readonly Fact[];
   readonly bus: readonly ReportedMessage[];
   readonly energy: ReportedEnergy | null;
   readonly derive: { readonly command: string; readonly recording: string; readonly stateHash: string };

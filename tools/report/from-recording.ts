@@ -14,6 +14,7 @@ import { judgeRun, type RunJudgement } from '../../runtime/verdict.js';
 import { type PressureSettings, pressureSettings } from '../../runtime/watch-settings.js';
 import { eventText } from '../terminal/event-text.js';
 import type { ReportedDuration, ReportedTiming, ReportedWarning, RunReportData } from './data.js';
+import { driveFacts, driveSignals } from './drive-trace.js';
 import { gatherPlots, reportedRequirement } from './gather.js';
 import { RecordedRows } from './recorded-rows.js';
 import { type RecordedSummary, recordedSummary } from './recorded-summary.js';
@@ -59,7 +60,8 @@ function gather(recording: Recording, file: string): RecordedReport {
   const watched = spec.watched.map((one) => one.path);
   const wanted = new Set<string>(watched);
   for (const { formula } of requirements) eachSignal(formula, (one) => wanted.add(one));
-  for (const one of ['timing.lateness', 'timing.step', 'scenario.targetSpeed']) wanted.add(one);
+  const followed = driveSignals(spec);
+  for (const one of ['timing.lateness', 'timing.step', ...Object.values(followed ?? {})]) wanted.add(one);
   const rows = new RecordedRows(recording, lastTick, wanted);
   const results = summary
     ? resultsOf(summary, requirements, spec.step, remarks)
@@ -91,6 +93,8 @@ function gather(recording: Recording, file: string): RecordedReport {
   const settings = Object.fromEntries(
     spec.watched.filter((one) => one.unit === 'Pa').map((one) => [one.path, drawn(pressureSettings(one))]),
   );
+  const target = followed && rows.column(followed.target);
+  const driven = followed && rows.column(followed.driven);
   const data: RunReportData = {
     run: header.run,
     created: header.created,
@@ -124,6 +128,7 @@ function gather(recording: Recording, file: string): RecordedReport {
     }),
     eventsLeftOut: rows.eventsLeftOut,
     timing: timingOf(summary, spec, rows),
+    drive: target && driven ? driveFacts(spec, target, driven) : [],
     bus: (summary?.messages ?? []).map(({ direction, due, ...one }) => ({
       ...one,
       direction: direction === 'sent' ? ('to the controller' as const) : ('from the controller' as const),

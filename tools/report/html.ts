@@ -26,6 +26,7 @@ export function reportHtml(data: RunReportData): string {
     ['warnings', 'Warnings', warnings(data)],
     ['plots', 'Around each least margin and each warning', plots(data, samples)],
     ['events', 'Events', events(data)],
+    ...((data.drive ?? []).length === 0 ? [] : ([['drive', 'Drive trace', drive(data)]] as [string, string, string][])),
     ['timing', 'Timing', timing(data)],
     ['bus', 'Bus', bus(data)],
     ['energy', 'Energy', energy(data)],
@@ -166,6 +167,13 @@ function timing(data: RunReportData): string {
       (one) => `<figure>${histogramSvg(one)}<figcaption>${escaped(one.name)}, ticks by duration</figcaption></figure>`,
     );
   return table(['Duration', '>Median', '>99 %', '>99.9 %', '>Largest', '>Budget'], rows) + counts + drawn.join('');
+}
+
+function drive(data: RunReportData): string {
+  const rows = (data.drive ?? []).map(
+    (fact) => `<tr><td>${escaped(fact.name)}</td><td class="wrap">${escaped(fact.value)}</td></tr>`,
+  );
+  return `<p class="quiet">How well the driver followed the drive, sampled at 10 Hz.</p>${table(['Measure', 'Value'], rows)}`;
 }
 
 function bus(data: RunReportData): string {

@@ -37,6 +37,7 @@ describe('the report of a recording', () => {
     expect(lost).toBeGreaterThan(100);
     expect(Math.abs(sum('supplied') - sum('stored') - lost)).toBeLessThan(0.05 * lost);
     expect(reportHtml(data)).toContain('HP-2');
+    expect(data.drive!.map((fact) => fact.name)).toContain('Speed regression (40 CFR 1037.555)');
   });
 
   it('without an end is not valid: ended early, judged by what is left', async () => {
