@@ -49,6 +49,26 @@ export function softPlus(x: number, width: number): number {
   return x > 0 ? 0.5 * (x + root) : (0.5 * width * width) / (root - x);
 }
 
+/** Share of the area of a spool at `position` that begins to open at `overlap` and is open at 1. */
+export function meteredShare(position: number, overlap: number): number {
+  return Math.max(0, Math.min(1, (position - overlap) / (1 - overlap)));
+}
+
+/** `x` less `half` in size, nothing within it, the corner rounded over `width`; odd and never falling. */
+export function deadZone(x: number, half: number, width: number): number {
+  const past = Math.max(0, Math.abs(x) - half);
+  return (Math.sign(x) * past * past) / (past + width);
+}
+
+/**
+ * Volume flow, m3/s, at which a viscous and an inertial resistance together, R q + B q |q|, make `difference` Pa. R > 0.
+ * The size of the difference is rounded over `smoothing` Pa.
+ */
+export function filterFlow(difference: number, viscous: number, inertial: number, smoothing: number): number {
+  const size = Math.sqrt(difference * difference + smoothing * smoothing);
+  return (2 * difference) / (viscous + Math.sqrt(viscous * viscous + 4 * inertial * size));
+}
+
 /** Volume flow of a relief valve as a share of its rated flow: 0 at `cracking`, 1 at `fullFlow`, straight between. */
 export function reliefShare(pressure: number, cracking: number, fullFlow: number, width: number): number {
   return softPlus(pressure - cracking, width) / (fullFlow - cracking);

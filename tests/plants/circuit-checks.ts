@@ -1,9 +1,9 @@
 import { expect } from 'vitest';
+import { portKinds } from '../../plants/ports.js';
 import { buildCircuit, type Circuit, places } from '../../runtime/circuit/build.js';
 import { unfuse } from '../../runtime/circuit/unfused.js';
 import type { Connection, ElementInstance, ElementKind } from '../../runtime/contract.js';
 import { Plant } from '../../runtime/plant.js';
-import { portKinds } from '../../plants/ports.js';
 
 /** Helpers for tests that put elements on a small circuit and run them through the real builder and solver. */
 
@@ -25,9 +25,11 @@ export function circuitOf(elements: Record<string, Placed>, fluid?: Record<strin
       if (value === undefined) throw new Error(`${name}: parameter ${key} is required`);
       parameters[key] = value;
     }
-    for (const key of Object.keys(placed.parameters ?? {})) if (!(key in placed.kind.parameters)) throw new Error(`${name}: no parameter ${key}`);
+    for (const key of Object.keys(placed.parameters ?? {}))
+      if (!(key in placed.kind.parameters)) throw new Error(`${name}: no parameter ${key}`);
     const start: Record<string, number> = {};
-    for (const [key, declaration] of Object.entries(placed.kind.starts)) if (declaration.default !== undefined) start[key] = declaration.default;
+    for (const [key, declaration] of Object.entries(placed.kind.starts))
+      if (declaration.default !== undefined) start[key] = declaration.default;
     Object.assign(start, placed.start);
     const connections: Record<string, Connection> = {};
     for (const [port, to] of Object.entries(placed.ports ?? {})) {
@@ -39,7 +41,14 @@ export function circuitOf(elements: Record<string, Placed>, fluid?: Record<strin
       connections[port] = { store: store!, port: port2, ratio };
     }
     const own = placed.fluid ?? fluid;
-    return { name, kind: placed.kind, parameters, start, connections, ...(placed.kind.fluid && own ? { fluid: own } : {}) };
+    return {
+      name,
+      kind: placed.kind,
+      parameters,
+      start,
+      connections,
+      ...(placed.kind.fluid && own ? { fluid: own } : {}),
+    };
   });
   return buildCircuit({ name: 'test', portKinds, elements: instances });
 }
@@ -69,7 +78,11 @@ export function command(plant: Plant, path: string, value: number): void {
  * With several steps each entry counts with the one that fits it best: too long a step bends, too short a one is noise.
  * `negligible`, 1/s: an error below that much of the states' scales does not count.
  */
-export function jacobianError(plant: Plant, relativeSteps: number | readonly number[] = 1e-6, negligible = 0): { error: number; where: string } {
+export function jacobianError(
+  plant: Plant,
+  relativeSteps: number | readonly number[] = 1e-6,
+  negligible = 0,
+): { error: number; where: string } {
   const { circuit, y, u, m } = plant;
   const n = circuit.states.length;
   const J = new Float64Array(circuit.jacobian.rows.length);
@@ -145,7 +158,8 @@ export function expectSameBits(plant: Plant): void {
   const readings = slow.readings(y, u, m);
   circuit.readings.forEach((slot, i) => {
     const plainValue = readings.get(slot.path);
-    if (plainValue !== undefined && slot.group === 'reading' && !Object.is(out[i], plainValue)) expect.fail(`${slot.path}: fused ${out[i]}, unfused ${plainValue}`);
+    if (plainValue !== undefined && slot.group === 'reading' && !Object.is(out[i], plainValue))
+      expect.fail(`${slot.path}: fused ${out[i]}, unfused ${plainValue}`);
   });
 }
 

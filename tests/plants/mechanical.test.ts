@@ -72,6 +72,28 @@ const circuits: Record<string, () => ElementInstance[]> = {
       to: { input: 'crank.shaft', output: 'output.shaft' },
     }),
   ],
+  'starter-motor, accessory, torque-converter, retarder, park-brake': () => [
+    element('crank', library.inertia, { parameters: { inertia: 0.4 } }),
+    element('turbine', library.inertia, { parameters: { inertia: 0.6 }, start: { speed: 5 } }),
+    element('starter', library.starterMotor, {
+      parameters: { stallTorque: 300, freeSpeed: 45 },
+      to: { shaft: 'crank.shaft' },
+    }),
+    element('pusher', library.torqueSource, { to: { shaft: 'crank.shaft' } }),
+    element('alternator', library.accessory, {
+      parameters: { constantPower: 900, leastSpeed: 30 },
+      to: { shaft: ['crank.shaft', 2.5] },
+    }),
+    element('converter', library.torqueConverter, {
+      parameters: { capacity: 6e-3 },
+      to: { pump: 'crank.shaft', turbine: 'turbine.shaft' },
+    }),
+    element('retarder', library.retarder, {
+      parameters: { maximumTorque: 500, maximumPower: 2e4 },
+      to: { shaft: 'turbine.shaft' },
+    }),
+    element('park', library.parkBrake, { parameters: { maximumTorque: 900 }, to: { shaft: 'turbine.shaft' } }),
+  ],
   'vehicle, tyre, force-source': () => [
     element('body', library.vehicle, {
       parameters: {
@@ -118,6 +140,13 @@ const drive: Record<string, (bench: Bench, time: number) => void> = {
     bench.set('engine.ignition', 1);
     bench.set('engine.torqueRequest', time < 0.3 ? 300 : time < 0.6 ? -200 : 100);
     bench.set('gearbox.gearRequest', time < 0.3 ? 1 : 2);
+  },
+  'starter-motor, accessory, torque-converter, retarder, park-brake': (bench, time) => {
+    bench.set('starter.engage', time < 0.3 ? 1 : 0);
+    bench.set('pusher.torque', time < 0.2 ? 0 : time < 0.7 ? 250 : -200);
+    bench.set('alternator.powerRequest', time > 0.4 ? 1500 : 0);
+    bench.set('retarder.demand', time > 0.6 ? 0.8 : 0);
+    bench.set('park.release', time < 0.9 ? 1 : 0);
   },
   'vehicle, tyre, force-source': (bench, time) => {
     bench.set('body.grade', 0.06);
