@@ -156,7 +156,10 @@ function startText(plan: RunPlan, columns: number, page: string | undefined): st
   const controllers = {
     module: 'a module in the loop thread, in lockstep',
     none: 'nobody: substitutes count',
-    process: `a process of its own over UDP${link?.remoteAddress ? `, ${link.remoteAddress}:${link.remotePort}` : ''}`,
+    process:
+      link?.kind === 'udp' && link.remoteAddress
+        ? `a process of its own over UDP, ${link.remoteAddress}:${link.remotePort}`
+        : `a process of its own over ${link?.kind ?? 'no link'}${link?.interface ? `, ${link.interface}` : ''}`,
   };
   return renderStart(
     {
