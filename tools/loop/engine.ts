@@ -58,6 +58,8 @@ export interface LoopEnd {
   readonly processor: number;
 }
 
+const nobody: Barrier = { end() {} };
+
 /**
  * What one tick of the loop does besides the bench's own tick, as a class: a method is compiled once and stays so, while
  * the body of a function that runs for ever has to be replaced under way, and boxes every number until then.
@@ -72,6 +74,7 @@ export class LoopBody {
   private readonly ticks: number;
   private readonly peakSignals: Int32Array;
   private readonly barriers: readonly Barrier[];
+  private readonly barrierCount: number;
   private readonly pacer: Pacer | undefined;
   private readonly board: BoardWriter | undefined;
   private readonly code: CodeWatch | undefined;
@@ -88,7 +91,9 @@ export class LoopBody {
     this.ticks = options.ticks;
     this.peakSignals = options.peaks;
     this.peaks = new Float64Array(options.peaks.length).fill(Number.NEGATIVE_INFINITY);
-    this.barriers = options.barriers;
+    // with a place more than is used: to the engine an empty array is of another kind than one that holds objects
+    this.barriers = [...options.barriers, nobody];
+    this.barrierCount = options.barriers.length;
     this.pacer = options.pacer;
     this.board = options.board;
     this.code = options.code;
@@ -108,9 +113,9 @@ export class LoopBody {
 
   /** Runs tick number `tick`; true when the loop is to go on. */
   run(tick: number): boolean {
-    const { assembly, block, signals, barriers, board, peaks, peakSignals } = this;
+    const { assembly, block, signals, barriers, barrierCount, board, peaks, peakSignals } = this;
     assembly.tick.run(tick);
-    for (let i = 0; i < barriers.length; i += 1) barriers[i]!.end(tick);
+    for (let i = 0; i < barrierCount; i += 1) barriers[i]!.end(tick);
     if (tick >= 0) {
       for (let i = 0; i < peaks.length; i += 1) {
         const value = signals[peakSignals[i]!]!;
