@@ -14,12 +14,20 @@ import * as pumpMotorLaws from './laws/pump-motor.js';
 export const pumpMotor = branch({
   kind: 'pump-motor',
   about: 'over-centre pump-motor with displacement actuator, leakage to the case and losses in four quadrants',
-  source: 'Wilson 1946 (losses); terms of ISO 4391',
-  valid: 'mean values: no flow ripple; loss coefficients constant',
+  source: 'losses: Wilson 1946, Willans lines, Schloesser 1961, McCandlish and Dorey 1984; terms of ISO 4391',
+  valid:
+    'mean values: no flow ripple, which a step of a millisecond cannot carry (nine pistons at 2000 rpm: 600 Hz); loss coefficients constant',
   ports: { high: 'oil', low: 'oil', caseDrain: 'oil', shaft: 'shaft' },
   states: {
     displacement: { unit: '1', about: 'displacement as a share of the full one', least: -1.05, most: 1.05 },
     displacementRate: { unit: '1/s', about: 'its rate', scale: 10 },
+  },
+  memory: {
+    viscosity: {
+      unit: 'Pa s',
+      about: 'dynamic viscosity of the oil in it, once a substep: it changes by nothing meanwhile',
+      initial: 0.04,
+    },
   },
   commands: {
     torqueRequest: { unit: 'N m', about: 'wanted torque on the shaft, before losses', rest: 0 },
@@ -56,6 +64,7 @@ export const pumpMotor = branch({
     highFlow: { unit: 'm3/s', about: 'volume flow out of the high side, leakage included' },
     leakage: { unit: 'm3/s', about: 'leakage out of the high side' },
     wantedDisplacement: { unit: '1', about: 'displacement that the actuator is driven to' },
+    following: { unit: '1', about: 'that less the displacement, without its sign', least: 0 },
     shaftPower: { unit: 'W', about: 'power given to the shaft' },
     hydraulicPower: { unit: 'W', about: 'power taken from the oil' },
     speed: { unit: 'rad/s', about: 'shaft speed' },
@@ -79,7 +88,18 @@ export const pumpMotor = branch({
       least: -1,
       most: 0,
     },
-    request: { unit: '1', about: 'what it obeys', default: 0, choices: ['torque', 'displacement'] },
+    request: {
+      unit: '1',
+      about: 'what it obeys; fixed: a unit without actuator, always at full displacement',
+      default: 0,
+      choices: ['torque', 'displacement', 'fixed'],
+    },
+    losses: {
+      unit: '1',
+      about: 'form of the losses',
+      default: 0,
+      choices: ['wilson', 'constant efficiencies', 'willans', 'extended'],
+    },
     leastDifference: {
       unit: 'Pa',
       about: 'pressure difference below which a torque request is not fully followed',
@@ -129,7 +149,73 @@ export const pumpMotor = branch({
       most: 0.5,
       usual: [0.01, 0.1],
     },
-    dryTorque: { unit: 'N m', about: 'friction torque without pressure', default: 1, least: 0, most: 1000 },
+    dryTorque: {
+      unit: 'N m',
+      about: 'friction torque without pressure; the constant part of a Willans line',
+      default: 1,
+      least: 0,
+      most: 1000,
+    },
+    volumetricEfficiency: {
+      unit: '1',
+      about: 'pumped over ideal flow, for constant efficiencies and Willans lines',
+      default: 0.96,
+      least: 0.5,
+      most: 1,
+      usual: [0.92, 0.99],
+    },
+    mechanicalEfficiency: {
+      unit: '1',
+      about: 'motor torque over ideal torque, for constant efficiencies and Willans lines',
+      default: 0.94,
+      least: 0.5,
+      most: 1,
+      usual: [0.88, 0.97],
+    },
+    idleLeakage: {
+      unit: 'm3/s',
+      about: 'leakage at standstill and the rated difference, for Willans lines',
+      default: 2e-5,
+      least: 0,
+      most: 1e-2,
+    },
+    ratedDifference: {
+      unit: 'Pa',
+      about: 'pressure difference at which it is given',
+      default: 250e5,
+      least: 1e6,
+      most: 1e8,
+      difference: true,
+    },
+    turbulentCoefficient: {
+      unit: '1',
+      about: 'turbulent leakage coefficient Cst after Schloesser, extended form',
+      default: 1e-5,
+      least: 0,
+      most: 1e-2,
+    },
+    hydrodynamicCoefficient: {
+      unit: '1',
+      about: 'hydrodynamic torque coefficient Ch after Schloesser, extended form',
+      default: 20,
+      least: 0,
+      most: 1e4,
+    },
+    deadVolumeShare: {
+      unit: '1',
+      about: 'volume left in the cylinders at full displacement over the displaced one, extended form',
+      default: 0.15,
+      least: 0,
+      most: 3,
+    },
+    bulkModulus: {
+      unit: 'Pa',
+      about: 'bulk modulus of the oil in the cylinders, extended form',
+      default: 1.5e9,
+      least: 1e8,
+      most: 1e11,
+      difference: true,
+    },
     caseLeakShare: { unit: '1', about: 'share of the leakage that goes to the case', default: 0.5, least: 0, most: 1 },
     caseHeatShare: {
       unit: '1',
@@ -146,6 +232,13 @@ export const pumpMotor = branch({
       most: 20,
     },
     maximumSpeed: { unit: 'rad/s', about: 'greatest permitted speed; 0: not watched', default: 0, least: 0 },
+    notFollowing: {
+      unit: '1',
+      about: 'error of the displacement that is watched; 0: not watched',
+      default: 0,
+      least: 0,
+      most: 2,
+    },
     leastInletPressure: { unit: 'Pa', about: 'least inlet pressure; 0: not watched', default: 0.8e5, least: 0 },
     maximumCasePressure: { unit: 'Pa', about: 'greatest case pressure; 0: not watched', default: 3e5, least: 0 },
   },
@@ -173,41 +266,63 @@ export const pumpMotor = branch({
       meaning: 'the shaft seal is pressed out and the case leaks',
     },
   ],
-  flows({ parameter, high, low, caseDrain, shaft, state, command, derivative, reading, law }) {
+  update({ high, low, memory }) {
+    memory.viscosity = 0.5 * (high.viscosity + low.viscosity);
+  },
+  flows({ parameter, high, low, caseDrain, shaft, state, memory, command, derivative, reading, law }) {
     const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
     const stroke = Math.max(-1, Math.min(1, state.displacement));
     const difference = high.pressure - low.pressure;
-    const viscosity = 0.5 * (high.viscosity + low.viscosity);
+    const viscosity = memory.viscosity;
     const drawing = stroke * shaft.speed;
     const density = law.carriedDensity(high.density, low.density, drawing, parameter.smoothSpeed);
 
     const lossTorque =
       command.frictionFactor *
-      law.wilsonTorque(
+      law.lossTorque(
+        parameter.losses,
         difference,
         shaft.speed,
+        stroke,
         viscosity,
+        low.density,
         radian,
         parameter.viscousCoefficient,
         parameter.frictionCoefficient,
         parameter.dryTorque,
+        parameter.mechanicalEfficiency,
+        parameter.hydrodynamicCoefficient,
         parameter.smoothSpeed,
       );
 
-    const slip = parameter.slipCoefficient * command.wear;
-    const across = law.wilsonLeakage(difference, viscosity, radian, slip * (1 - parameter.caseLeakShare));
-    const highLeak = law.wilsonLeakage(
-      high.pressure - caseDrain.pressure,
-      viscosity,
-      radian,
-      slip * parameter.caseLeakShare,
-    );
-    const lowLeak = law.wilsonLeakage(
-      low.pressure - caseDrain.pressure,
-      viscosity,
-      radian,
-      slip * parameter.caseLeakShare,
-    );
+    const conductance =
+      command.wear *
+      law.leakConductance(
+        parameter.losses,
+        viscosity,
+        radian,
+        parameter.slipCoefficient,
+        parameter.idleLeakage,
+        parameter.ratedDifference,
+      );
+    const further =
+      command.wear *
+      law.furtherLeakage(
+        parameter.losses,
+        difference,
+        shaft.speed,
+        stroke,
+        low.density,
+        radian,
+        parameter.volumetricEfficiency,
+        parameter.turbulentCoefficient,
+        parameter.deadVolumeShare,
+        parameter.bulkModulus,
+      );
+    const across = (1 - parameter.caseLeakShare) * conductance * difference + further;
+    const toCase = parameter.caseLeakShare * conductance;
+    const highLeak = toCase * (high.pressure - caseDrain.pressure);
+    const lowLeak = toCase * (low.pressure - caseDrain.pressure);
     const acrossMass = across * (across > 0 ? high.density : low.density);
     const highMass = highLeak * (highLeak > 0 ? high.density : caseDrain.density);
     const lowMass = lowLeak * (lowLeak > 0 ? low.density : caseDrain.density);
@@ -252,7 +367,8 @@ export const pumpMotor = branch({
 
     const byTorque = law.displacementForTorque(command.torqueRequest, difference, radian, parameter.leastDifference);
     const asked = parameter.request === 0 ? byTorque : command.displacementRequest;
-    const wanted = command.enable > 0.5 ? Math.max(parameter.leastDisplacement, Math.min(1, asked)) : 0;
+    const stroked = command.enable > 0.5 ? Math.max(parameter.leastDisplacement, Math.min(1, asked)) : 0;
+    const wanted = parameter.request === 2 ? 1 : stroked;
     const approach = (parameter.naturalFrequency / (2 * parameter.damping)) * (wanted - state.displacement);
     const limited = Math.max(-parameter.rateLimit, Math.min(parameter.rateLimit, approach));
     const rate = command.stuck > 0.5 ? 0 : limited;
@@ -264,6 +380,7 @@ export const pumpMotor = branch({
     reading.leakage = across + highLeak;
     reading.highFlow = massFlow / density + across + highLeak;
     reading.wantedDisplacement = wanted;
+    reading.following = Math.abs(wanted - state.displacement);
     reading.shaftPower = torque * shaft.speed;
     reading.hydraulicPower = massFlow * (high.potential - low.potential) + acrossLoss + highLoss + lowLoss;
     reading.speed = shaft.speed;
@@ -272,38 +389,58 @@ export const pumpMotor = branch({
     reading.inletPressure = Math.min(high.pressure, low.pressure);
     reading.casePressure = caseDrain.pressure;
   },
-  /** Friction after Wilson, and what leaks from a higher to a lower potential. */
-  loss({ parameter, high, low, caseDrain, shaft, command, law }) {
+  /** Friction, and what leaks from a higher to a lower potential. */
+  loss({ parameter, high, low, caseDrain, shaft, state, memory, command, law }) {
     const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
+    const stroke = Math.max(-1, Math.min(1, state.displacement));
     const difference = high.pressure - low.pressure;
-    const viscosity = 0.5 * (high.viscosity + low.viscosity);
+    const viscosity = memory.viscosity;
     const lossTorque =
       command.frictionFactor *
-      law.wilsonTorque(
+      law.lossTorque(
+        parameter.losses,
         difference,
         shaft.speed,
+        stroke,
         viscosity,
+        low.density,
         radian,
         parameter.viscousCoefficient,
         parameter.frictionCoefficient,
         parameter.dryTorque,
+        parameter.mechanicalEfficiency,
+        parameter.hydrodynamicCoefficient,
         parameter.smoothSpeed,
       );
 
-    const slip = parameter.slipCoefficient * command.wear;
-    const across = law.wilsonLeakage(difference, viscosity, radian, slip * (1 - parameter.caseLeakShare));
-    const highLeak = law.wilsonLeakage(
-      high.pressure - caseDrain.pressure,
-      viscosity,
-      radian,
-      slip * parameter.caseLeakShare,
-    );
-    const lowLeak = law.wilsonLeakage(
-      low.pressure - caseDrain.pressure,
-      viscosity,
-      radian,
-      slip * parameter.caseLeakShare,
-    );
+    const conductance =
+      command.wear *
+      law.leakConductance(
+        parameter.losses,
+        viscosity,
+        radian,
+        parameter.slipCoefficient,
+        parameter.idleLeakage,
+        parameter.ratedDifference,
+      );
+    const further =
+      command.wear *
+      law.furtherLeakage(
+        parameter.losses,
+        difference,
+        shaft.speed,
+        stroke,
+        low.density,
+        radian,
+        parameter.volumetricEfficiency,
+        parameter.turbulentCoefficient,
+        parameter.deadVolumeShare,
+        parameter.bulkModulus,
+      );
+    const across = (1 - parameter.caseLeakShare) * conductance * difference + further;
+    const toCase = parameter.caseLeakShare * conductance;
+    const highLeak = toCase * (high.pressure - caseDrain.pressure);
+    const lowLeak = toCase * (low.pressure - caseDrain.pressure);
     const acrossMass = across * (across > 0 ? high.density : low.density);
     const highMass = highLeak * (highLeak > 0 ? high.density : caseDrain.density);
     const lowMass = lowLeak * (lowLeak > 0 ? low.density : caseDrain.density);
@@ -313,14 +450,17 @@ export const pumpMotor = branch({
 
     return lossTorque * shaft.speed + acrossLoss + highLoss + lowLoss;
   },
-  examine: ({ parameter }) =>
-    parameter.caseHeatShare! > 0 && parameter.slipCoefficient! * parameter.caseLeakShare! === 0
+  initial: ({ parameter }) => (parameter.request === 2 ? { displacement: 1 } : {}),
+  examine: ({ parameter }) => {
+    const laminar = [parameter.slipCoefficient!, 0, parameter.idleLeakage!, parameter.slipCoefficient!];
+    return parameter.caseHeatShare! > 0 && laminar[parameter.losses!]! * parameter.caseLeakShare! === 0
       ? [
           {
-            parameter: 'caseLeakShare',
+            parameter: 'caseHeatShare',
             what: 'friction heats the case, and no leakage flows through it',
-            remedy: 'give a slipCoefficient and a caseLeakShare above 0, or set caseHeatShare to 0',
+            remedy: 'set caseHeatShare to 0, or take losses that leak into the case',
           },
         ]
-      : [],
+      : [];
+  },
 });

@@ -1,8 +1,81 @@
 /**
  * Laws of hydrostatic pump-motors. Pure numbers, SI. `radianDisplacement` D is the displacement per radian, m3/rad
- * (displacement per turn over 2 pi). Losses after Wilson (1946), additive, valid in all four quadrants: leakage from
- * high to low pressure, torque against the rotation. Coefficients are pure numbers.
+ * (displacement per turn over 2 pi). Losses are additive and valid in all four quadrants: leakage from high to low
+ * pressure, torque against the rotation. `form` chooses them: 0 Wilson (1946); 1 constant efficiencies, as shares of the
+ * ideal flow and torque; 2 Willans lines, such shares and constant parts; 3 extended, Wilson with turbulent leakage and
+ * hydrodynamic torque (Schloesser 1961) and compression of the dead volume (McCandlish and Dorey 1984). Coefficients are
+ * pure numbers.
  */
+
+/** Laminar leakage per pressure difference, m3/(s Pa). */
+export function leakConductance(
+  form: number,
+  viscosity: number,
+  radianDisplacement: number,
+  slipCoefficient: number,
+  idleLeakage: number,
+  ratedDifference: number,
+): number {
+  const wilson = (slipCoefficient * radianDisplacement) / viscosity;
+  return form === 1 ? 0 : form === 2 ? idleLeakage / ratedDifference : wilson;
+}
+
+/** Leakage from high to low beside the laminar one, m3/s, with the sign of the difference. */
+export function furtherLeakage(
+  form: number,
+  difference: number,
+  speed: number,
+  stroke: number,
+  density: number,
+  radianDisplacement: number,
+  volumetricEfficiency: number,
+  turbulentCoefficient: number,
+  deadVolumeShare: number,
+  bulkModulus: number,
+): number {
+  const turning = radianDisplacement * softMagnitude(speed, 0.01);
+  const direction = difference / softMagnitude(difference, 1e5);
+  const share = (1 - volumetricEfficiency) * softMagnitude(stroke, 1e-3) * turning * direction;
+  const size = softMagnitude(difference, 2e4);
+  const twoThirds = Math.exp((2 / 3) * Math.log(radianDisplacement));
+  const turbulent = turbulentCoefficient * twoThirds * Math.sqrt(2 / density) * (difference / Math.sqrt(size));
+  const dead = deadVolumeShare + 0.5 * (1 - softMagnitude(stroke, 1e-3));
+  const compressed = Math.max(0, dead) * turning * (difference / bulkModulus);
+  return form === 1 || form === 2 ? share : form === 3 ? turbulent + compressed : 0;
+}
+
+/** Loss torque, N m, with the sign of the speed: see `wilsonTorque`; by the other forms from shares and constant parts. */
+export function lossTorque(
+  form: number,
+  difference: number,
+  speed: number,
+  stroke: number,
+  viscosity: number,
+  density: number,
+  radianDisplacement: number,
+  viscousCoefficient: number,
+  frictionCoefficient: number,
+  dryTorque: number,
+  mechanicalEfficiency: number,
+  hydrodynamicCoefficient: number,
+  smoothSpeed: number,
+): number {
+  const wilson = wilsonTorque(
+    difference,
+    speed,
+    viscosity,
+    radianDisplacement,
+    viscousCoefficient,
+    frictionCoefficient,
+    dryTorque,
+    smoothSpeed,
+  );
+  const ideal = softMagnitude(stroke, 1e-3) * radianDisplacement * softMagnitude(difference, 2e5);
+  const share = (1 - mechanicalEfficiency) * ideal + (form === 2 ? dryTorque : 0);
+  const fiveThirds = radianDisplacement * Math.exp((2 / 3) * Math.log(radianDisplacement));
+  const churning = hydrodynamicCoefficient * density * fiveThirds * speed * Math.abs(speed);
+  return form === 1 || form === 2 ? share * Math.tanh(speed / smoothSpeed) : form === 3 ? wilson + churning : wilson;
+}
 
 /** Leakage volume flow, m3/s, Cs D dp / mu; from the side that `difference` counts from. */
 export function wilsonLeakage(
@@ -14,13 +87,23 @@ export function wilsonLeakage(
   return (slipCoefficient * radianDisplacement * difference) / viscosity;
 }
 
+/** -1 to 1, x/sqrt(1 + x^2): the sign of x with its step made smooth. */
+export function smoothSign(x: number): number {
+  return x / Math.sqrt(1 + x * x);
+}
+
+/** Its exact slope. */
+export const smoothSignSlopes = {
+  x: (x: number, _value: number) => 1 / ((1 + x * x) * Math.sqrt(1 + x * x)),
+};
+
 /** sqrt(x^2 + width^2): |x| with a rounded corner. */
 export function softMagnitude(x: number, width: number): number {
   return Math.sqrt(x * x + width * width);
 }
 
 /**
- * Loss torque, N m, with the sign of the speed: Cv D mu w viscous, (Cf D |dp| + T_c) tanh(w/w0) dry. `dryTorque` T_c is
+ * Loss torque, N m, with the sign of the speed: Cv D mu w viscous, (Cf D |dp| + T_c) x/sqrt(1 + x^2) with x = w/w0 dry. `dryTorque` T_c is
  * what is left without pressure; `smoothSpeed` w0, rad/s. Times speed it is never negative.
  */
 export function wilsonTorque(
@@ -34,7 +117,7 @@ export function wilsonTorque(
   smoothSpeed: number,
 ): number {
   const dry = frictionCoefficient * radianDisplacement * softMagnitude(difference, 2e5) + dryTorque;
-  return viscousCoefficient * radianDisplacement * viscosity * speed + dry * Math.tanh(speed / smoothSpeed);
+  return viscousCoefficient * radianDisplacement * viscosity * speed + dry * smoothSign(speed * (1 / smoothSpeed));
 }
 
 /**
@@ -43,7 +126,7 @@ export function wilsonTorque(
  * standstill.
  */
 export function carriedDensity(densityHigh: number, densityLow: number, drawing: number, smoothSpeed: number): number {
-  return densityLow + 0.5 * (densityHigh - densityLow) * (1 + Math.tanh(drawing / smoothSpeed));
+  return densityLow + 0.5 * (densityHigh - densityLow) * (1 + smoothSign(drawing * (1 / smoothSpeed)));
 }
 
 /**
