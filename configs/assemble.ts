@@ -6,13 +6,13 @@ import { EnergyParts } from '../runtime/energy-parts.js';
 import { HandStage, type HandTarget } from '../runtime/hand.js';
 import type { InstrumentUpdate } from '../runtime/instrument.js';
 import { EventCatalogue } from '../runtime/journal.js';
+import { JudgeStage } from '../runtime/judge/stage.js';
 import { Plant, type PlantPlaces } from '../runtime/plant.js';
 import { emptyScript, requirementsOf, Script, type ScriptSpec } from '../runtime/script.js';
 import { SignalTable } from '../runtime/signals.js';
+import { LedgerStage, Tick, throughputs } from '../runtime/tick.js';
 import { Watch } from '../runtime/watch.js';
 import type { WatchWarning } from '../runtime/watch-log.js';
-import { JudgeStage } from '../runtime/judge/stage.js';
-import { LedgerStage, Tick, throughputs } from '../runtime/tick.js';
 import type { BenchSpec, InstrumentSpec } from './bench-spec.js';
 
 /** A bench put together: everything that one thread needs to run ticks. */
@@ -57,7 +57,6 @@ export interface AssemblyOptions {
   readonly circuit?: Circuit;
 }
 
-
 /** Puts a checked bench together. Throws BuildError for what only the built circuit shows. */
 export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   const script = options.script ?? emptyScript;
@@ -75,7 +74,9 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   shown.slots.push(...life.shownSlots);
   shown.signals.push(...life.shownSignals);
   const units = new Map(spec.signals.map((info) => [info.path, info.unit]));
-  const declared = spec.instruments.map((instrument) => declareInstrument(instrument, layout, table, spec.step, units, commandAt, shown));
+  const declared = spec.instruments.map((instrument) =>
+    declareInstrument(instrument, layout, table, spec.step, units, commandAt, shown),
+  );
   const targets = { find: (path: string) => commandAt.get(path) ?? -1, nearest: () => [...commandAt.keys()] };
 
   const outputs = new Map(
@@ -118,7 +119,14 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
       to: targets.find(path),
     })),
   );
-  const watch = new Watch({ watched: spec.watched, signals: table, layout, events, step: spec.step, ambientPressure: spec.ambient.pressure });
+  const watch = new Watch({
+    watched: spec.watched,
+    signals: table,
+    layout,
+    events,
+    step: spec.step,
+    ambientPressure: spec.ambient.pressure,
+  });
   const handTargets = targetsOfHands(spec, commandAt, table);
   const hands = new HandStage({
     targets: handTargets,
@@ -318,20 +326,39 @@ function targetsOfHands(spec: BenchSpec, commandAt: ReadonlyMap<string, number>,
 }
 
 /** Energy that machines took up while braking and gave back, by machine. */
-function declareMeters(circuit: Circuit, layout: BlockLayout, table: SignalTable): { power: number; sign: 1 | -1; slot: number; signal: number }[] {
+function declareMeters(
+  circuit: Circuit,
+  layout: BlockLayout,
+  table: SignalTable,
+): { power: number; sign: 1 | -1; slot: number; signal: number }[] {
   return circuit.spec.elements
     .filter((element) => element.kind.kind === 'pump-motor')
     .flatMap((element) =>
-      ([['recovered', -1, 'taken from its shaft while pumping'], ['returned', 1, 'given to its shaft while motoring']] as const).map(([name, sign, about]) => {
+      (
+        [
+          ['recovered', -1, 'taken from its shaft while pumping'],
+          ['returned', 1, 'given to its shaft while motoring'],
+        ] as const
+      ).map(([name, sign, about]) => {
         const path = `ledger.${element.name}.${name}`;
-        return { power: table.find(`${element.name}.shaftPower`), sign, slot: layout.add(path), signal: table.add({ path, unit: 'J', about: `energy of ${element.name} ${about}`, group: 'ledger' }) };
+        return {
+          power: table.find(`${element.name}.shaftPower`),
+          sign,
+          slot: layout.add(path),
+          signal: table.add({ path, unit: 'J', about: `energy of ${element.name} ${about}`, group: 'ledger' }),
+        };
       }),
     );
 }
 
 /** What a live run says of each tick besides: not part of the block, zero at fast pace. */
 function declareTiming(table: SignalTable): void {
-  table.add({ path: 'timing.lateness', unit: 's', about: 'start of this tick after its deadline (live)', group: 'timing' });
+  table.add({
+    path: 'timing.lateness',
+    unit: 's',
+    about: 'start of this tick after its deadline (live)',
+    group: 'timing',
+  });
   table.add({ path: 'timing.step', unit: 's', about: 'length of the tick before (live)', group: 'timing' });
 }
 
@@ -358,7 +385,11 @@ function declareInstrument(
   const inputUnit = units.get(spec.inputs[sensed ?? ''] ?? '') ?? '1';
   for (const [name, declaration] of Object.entries(spec.kind.outputs)) {
     const from = declaration.unitOf === undefined ? undefined : units.get(spec.inputs[declaration.unitOf] ?? '');
-    output[name] = table.add({ ...plain({ ...declaration, path: '', group: 'instrument' }), path: `${spec.name}.${name}`, unit: from ?? declaration.unit });
+    output[name] = table.add({
+      ...plain({ ...declaration, path: '', group: 'instrument' }),
+      path: `${spec.name}.${name}`,
+      unit: from ?? declaration.unit,
+    });
   }
   for (const [name, declaration] of Object.entries(spec.kind.commands ?? {})) {
     const path = `${spec.name}.${name}`;
@@ -366,9 +397,15 @@ function declareInstrument(
     command[name] = slot;
     commandAt.set(path, slot);
     shown.slots.push(slot);
-    shown.signals.push(table.add({ ...plain({ ...declaration, path, group: 'command' }), unit: declaration.unit === 'input' ? inputUnit : declaration.unit }));
+    shown.signals.push(
+      table.add({
+        ...plain({ ...declaration, path, group: 'command' }),
+        unit: declaration.unit === 'input' ? inputUnit : declaration.unit,
+      }),
+    );
   }
-  for (const [name, declaration] of Object.entries(spec.kind.memory)) memory[name] = layout.add(`${spec.name}.${name}`, declaration.initial ?? 0);
+  for (const [name, declaration] of Object.entries(spec.kind.memory))
+    memory[name] = layout.add(`${spec.name}.${name}`, declaration.initial ?? 0);
   const count = spec.kind.extraMemory?.(spec.parameters, step) ?? 0;
   return { output, memory, command, extra: layout.addMany(`${spec.name}.memory`, count) };
 }

@@ -72,7 +72,8 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
   signals.addWatch(watched);
   const asked = top.section('requirements');
   // Where elements could not be read, what requirements say of them cannot be judged.
-  const requirements = asked && signals.unread.size === 0 ? readRequirements(asked, { signals: lookup(signals.all), step }) : [];
+  const requirements =
+    asked && signals.unread.size === 0 ? readRequirements(asked, { signals: lookup(signals.all), step }) : [];
   const life = readLife(top, step);
   const duty = readPath(top, 'duty', root, file, 'scenarios/round.yaml');
   const controller = readController(top, step, root, file);

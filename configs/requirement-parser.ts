@@ -72,7 +72,9 @@ export function parseFormula(
     report(error);
     return undefined;
   }
-  const wrong = examineFormula(context.present ? { is: 'always', from: 0, to: null, of: { is: 'happens', of: formula } } : formula);
+  const wrong = examineFormula(
+    context.present ? { is: 'always', from: 0, to: null, of: { is: 'happens', of: formula } } : formula,
+  );
   for (const problem of wrong) report(new TextError(parser.places.get(problem.at) ?? 0, problem.what, problem.remedy));
   return wrong.length === 0 ? formula : undefined;
 }

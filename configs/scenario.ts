@@ -325,7 +325,8 @@ class ScenarioReader {
     const found: Record<string, string> = {};
     for (const id of section.keys()) {
       const why = section.text(id, { required: true }, 'the reason');
-      if (!known.includes(id)) section.fail(id, 'the bench has no such requirement', suggestion(id, known), {}, section.whereIs(id));
+      if (!known.includes(id))
+        section.fail(id, 'the bench has no such requirement', suggestion(id, known), {}, section.whereIs(id));
       else if (why !== undefined) found[id] = why;
     }
     return found;

@@ -83,7 +83,11 @@ export function scenarioSchema(): Schema {
       grade: trace,
       traces: { type: 'object', additionalProperties: trace },
       steps: { type: 'array', items: { $ref: '#/$defs/step' } },
-      waive: { type: 'object', additionalProperties: text, description: 'requirements of the bench that are not asked of this run, and why' },
+      waive: {
+        type: 'object',
+        additionalProperties: text,
+        description: 'requirements of the bench that are not asked of this run, and why',
+      },
       requirements: requirementsSchema(),
     },
     required: ['scenario'],

@@ -166,9 +166,13 @@ export interface ElementKind {
   readonly brings?: Readonly<Record<string, ValueFunction>>;
 
   /** Values at the start from the user's start values, SI. Plain code at build time. States not named take `initial`. */
-  readonly initial?: (values: BuildValues & { readonly start: Readonly<Record<string, number>> }) => Record<string, number>;
+  readonly initial?: (
+    values: BuildValues & { readonly start: Readonly<Record<string, number>> },
+  ) => Record<string, number>;
   /** Remarks on parameters that only make sense together; an empty list is fine. Plain code at build time. */
-  readonly examine?: (values: BuildValues) => readonly { readonly parameter: string; readonly what: string; readonly remedy: string }[];
+  readonly examine?: (
+    values: BuildValues,
+  ) => readonly { readonly parameter: string; readonly what: string; readonly remedy: string }[];
 }
 
 export interface Position {
@@ -213,14 +217,23 @@ export interface SignalInfo extends Quantity {
   /** Only of commands that nothing but a fault touches: the value without the fault. */
   readonly withoutFault?: number;
 }
-export type SignalGroup = 'state' | 'memory' | 'reading' | 'command' | 'instrument' | 'sent' | 'received' | 'link' | 'ledger' | 'timing' | 'run';
+export type SignalGroup =
+  | 'state'
+  | 'memory'
+  | 'reading'
+  | 'command'
+  | 'instrument'
+  | 'sent'
+  | 'received'
+  | 'link'
+  | 'ledger'
+  | 'timing'
+  | 'run';
 
 /** An error that a user can act on. `at` is `file:line:column` where known. */
 export class BuildError extends Error {
   override readonly name = 'BuildError';
-  constructor(
-    readonly problems: readonly Problem[],
-  ) {
+  constructor(readonly problems: readonly Problem[]) {
     super(problems.map(problemText).join('\n'));
   }
 }
@@ -235,6 +248,8 @@ export interface Problem {
 /** `file:line:column path: what, value, bound, remedy` */
 export function problemText(problem: Problem): string {
   const place = problem.where ? `${problem.where.file}:${problem.where.line}:${problem.where.column} ` : '';
-  const parts = [problem.what, problem.value, problem.bound, problem.remedy].filter((part) => part !== undefined && part !== '');
+  const parts = [problem.what, problem.value, problem.bound, problem.remedy].filter(
+    (part) => part !== undefined && part !== '',
+  );
   return `${place}${problem.path}: ${parts.join(', ')}`;
 }

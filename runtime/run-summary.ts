@@ -81,7 +81,12 @@ export interface RunSummary {
   readonly links: readonly RunLink[];
   readonly messages: readonly RunMessage[];
   /** Faults that the scenario set, in order; their ticks stand among the events. */
-  readonly faults: readonly { readonly path: string; readonly value: number; readonly unit: string; readonly step: string }[];
+  readonly faults: readonly {
+    readonly path: string;
+    readonly value: number;
+    readonly unit: string;
+    readonly step: string;
+  }[];
   /** Hash of the whole state after the last tick. */
   readonly stateHash: string;
   /** Path of the recording; null when nothing was recorded. */

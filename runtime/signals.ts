@@ -33,7 +33,8 @@ export function nearest(word: string, candidates: Iterable<string>, count = 1): 
   const scored: [number, string][] = [];
   for (const candidate of candidates) {
     const distance = editDistance(word.toLowerCase(), candidate.toLowerCase());
-    if (distance <= Math.max(2, Math.floor(Math.max(word.length, candidate.length) * 0.45))) scored.push([distance, candidate]);
+    if (distance <= Math.max(2, Math.floor(Math.max(word.length, candidate.length) * 0.45)))
+      scored.push([distance, candidate]);
   }
   scored.sort((a, b) => a[0] - b[0] || (a[1] < b[1] ? -1 : 1));
   return scored.slice(0, count).map((entry) => entry[1]);

@@ -1,8 +1,8 @@
 import { hashBlock } from './block.js';
-import type { EnergyParts } from './energy-parts.js';
-import type { HandStage } from './hand.js';
 import type { Circuit } from './circuit/build.js';
 import { places } from './circuit/build.js';
+import type { EnergyParts } from './energy-parts.js';
+import type { HandStage } from './hand.js';
 import type { InstrumentUpdate } from './instrument.js';
 import { type Journal, noJournal } from './journal.js';
 import type { Plant } from './plant.js';
@@ -125,7 +125,12 @@ export class LedgerStage implements Stage {
     slots: { readonly turnover: number; readonly start: number },
     private readonly signal: { readonly residual: number; readonly turnover: number; readonly stuffs: number },
     /** Signals of power, W, whose positive part is integrated: slot and signal of each integral. */
-    private readonly meters: readonly { readonly power: number; readonly sign: 1 | -1; readonly slot: number; readonly signal: number }[] = [],
+    private readonly meters: readonly {
+      readonly power: number;
+      readonly sign: 1 | -1;
+      readonly slot: number;
+      readonly signal: number;
+    }[] = [],
   ) {
     this.at = places(circuit);
     this.through = Int32Array.from(throughputs(circuit));
@@ -177,5 +182,7 @@ export class LedgerStage implements Stage {
 
 /** Places of the branches' throughput among the readings. */
 export function throughputs(circuit: Circuit): number[] {
-  return circuit.readings.flatMap((reading, i) => (reading.group === 'ledger' && reading.name === 'throughput' ? [i] : []));
+  return circuit.readings.flatMap((reading, i) =>
+    reading.group === 'ledger' && reading.name === 'throughput' ? [i] : [],
+  );
 }

@@ -6,7 +6,12 @@ import { beforeAll, describe, expect, it } from 'vitest';
 /** The directions of the house: plants -> runtime <- bridge; configs -> all three; tools, tests -> anything. */
 const root = path.resolve(import.meta.dirname, '..');
 const own = ['runtime', 'plants', 'bridge', 'configs', 'tools', 'tests'];
-const may: Record<string, string[]> = { runtime: [], plants: ['runtime'], bridge: ['runtime'], configs: ['runtime', 'plants', 'bridge'] };
+const may: Record<string, string[]> = {
+  runtime: [],
+  plants: ['runtime'],
+  bridge: ['runtime'],
+  configs: ['runtime', 'plants', 'bridge'],
+};
 const forbidden: IForbiddenRuleType[] = Object.entries(may).map(([from, to]) => ({
   name: `${from} knows only ${to.join(', ') || 'itself'}`,
   severity: 'error',
@@ -14,13 +19,21 @@ const forbidden: IForbiddenRuleType[] = Object.entries(may).map(([from, to]) => 
   to: { path: `^(${own.filter((layer) => layer !== from && !to.includes(layer)).join('|')})/` },
 }));
 
-let modules: { source: string; dependencies: { resolved: string; circular?: boolean; dependencyTypes: string[] }[] }[] = [];
+let modules: { source: string; dependencies: { resolved: string; circular?: boolean; dependencyTypes: string[] }[] }[] =
+  [];
 let violations: { from: string; to: string; rule: { name: string } }[] = [];
 
 beforeAll(async () => {
   const result = await cruise(
     ['runtime', 'plants', 'bridge', 'configs', 'tools'],
-    { baseDir: root, ruleSet: { forbidden }, validate: true, tsPreCompilationDeps: true, exclude: { path: '^(dist|node_modules)/' }, doNotFollow: { path: 'node_modules' } },
+    {
+      baseDir: root,
+      ruleSet: { forbidden },
+      validate: true,
+      tsPreCompilationDeps: true,
+      exclude: { path: '^(dist|node_modules)/' },
+      doNotFollow: { path: 'node_modules' },
+    },
     { extensions: ['.ts', '.tsx', '.js'], extensionAlias: { '.js': ['.ts', '.tsx', '.js'] } } as never,
   );
   if (typeof result.output === 'string') throw new Error('dependency-cruiser printed instead of telling');
@@ -33,7 +46,12 @@ describe('layers', () => {
     expect(modules.length).toBeGreaterThan(150);
     expect(modules.some((module) => module.source === 'runtime/tick.ts')).toBe(true);
     // the rules can fail: configs really does look at plants
-    expect(modules.some((module) => module.source.startsWith('configs/') && module.dependencies.some((to) => to.resolved.startsWith('plants/')))).toBe(true);
+    expect(
+      modules.some(
+        (module) =>
+          module.source.startsWith('configs/') && module.dependencies.some((to) => to.resolved.startsWith('plants/')),
+      ),
+    ).toBe(true);
   });
 
   it('keeps the directions', () => {
@@ -43,7 +61,10 @@ describe('layers', () => {
   it('lets laws import nothing', () => {
     const laws = modules.filter((module) => module.source.startsWith('plants/laws/'));
     expect(laws.length).toBeGreaterThan(5);
-    for (const law of laws) expect(`${law.source} imports ${law.dependencies.map((to) => to.resolved).join(' ')}`).toBe(`${law.source} imports `);
+    for (const law of laws)
+      expect(`${law.source} imports ${law.dependencies.map((to) => to.resolved).join(' ')}`).toBe(
+        `${law.source} imports `,
+      );
   });
 });
 
@@ -57,7 +78,8 @@ describe('what runs in a tick', () => {
         if (statSync(path.join(root, file)).isDirectory()) visit(file);
         else if (file.endsWith('.ts') && !allowed.test(file)) {
           const text = readFileSync(path.join(root, file), 'utf8').replace(/\/\*[\s\S]*?\*\/|\/\/.*$/gm, '');
-          if (/\bMath\.random\b|\bDate\.now\b|\bnew Date\b|\bperformance\.now\b|\bprocess\.hrtime\b/.test(text)) found.push(file);
+          if (/\bMath\.random\b|\bDate\.now\b|\bnew Date\b|\bperformance\.now\b|\bprocess\.hrtime\b/.test(text))
+            found.push(file);
         }
       }
     };

@@ -8,7 +8,9 @@ import { fileURLToPath, pathToFileURL } from 'node:url';
 const root = resolve(dirname(realpathSync(fileURLToPath(import.meta.url))), '..');
 const program = join(root, 'dist', 'tools', 'oilspring.js');
 if (!existsSync(program) || !existsSync(join(root, 'node_modules', 'koffi'))) {
-  const { status } = spawnSync(process.execPath, [join(root, 'tools', 'prepare.mjs')], { stdio: ['ignore', 'ignore', 'inherit'] });
+  const { status } = spawnSync(process.execPath, [join(root, 'tools', 'prepare.mjs')], {
+    stdio: ['ignore', 'ignore', 'inherit'],
+  });
   if (status !== 0) process.exit(2);
 }
 await import(pathToFileURL(program).href);

@@ -12,8 +12,8 @@ import { readinessCommand } from './commands/readiness.js';
 import { rederiveCommand } from './commands/rederive.js';
 import { reportCommand } from './commands/report.js';
 import { runCommand } from './commands/run.js';
-import { viewCommand } from './commands/view.js';
 import { suiteCommand } from './commands/suite.js';
+import { viewCommand } from './commands/view.js';
 import { wireCommand } from './commands/wire.js';
 import { softwareVersion } from './run/host-run.js';
 
@@ -30,12 +30,30 @@ Exit codes: 0 fine, 1 a requirement failed, 2 bad input, 3 the run is not valid,
 oilspring is not a safety device. High-pressure oil and gas kill: a real bench has its own relief valves, interlocks
 and emergency stop, and its hydraulic work follows local codes and licensed practice.`,
   );
-for (const command of [checkCommand(), runCommand(), rederiveCommand(), exportCommand(), reportCommand(), suiteCommand(), compareCommand(), listCommand(), wireCommand(), importCommand(), listenCommand(), replayCommand(), viewCommand(), readinessCommand()]) program.addCommand(command);
+for (const command of [
+  checkCommand(),
+  runCommand(),
+  rederiveCommand(),
+  exportCommand(),
+  reportCommand(),
+  suiteCommand(),
+  compareCommand(),
+  listCommand(),
+  wireCommand(),
+  importCommand(),
+  listenCommand(),
+  replayCommand(),
+  viewCommand(),
+  readinessCommand(),
+])
+  program.addCommand(command);
 program.exitOverride();
 for (const command of program.commands) command.exitOverride();
 
 // a closed pipe (`oilspring list ... | head`) is not an error
-process.stdout.on('error', (error: NodeJS.ErrnoException) => process.exit(error.code === 'EPIPE' ? 0 : exitCode.unfinished));
+process.stdout.on('error', (error: NodeJS.ErrnoException) =>
+  process.exit(error.code === 'EPIPE' ? 0 : exitCode.unfinished),
+);
 
 try {
   await program.parseAsync();

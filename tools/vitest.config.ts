@@ -7,6 +7,10 @@ export default defineConfig({
     testTimeout: 120_000,
     hookTimeout: 120_000,
     pool: 'forks',
-    coverage: { provider: 'v8', include: ['runtime/**', 'plants/**', 'bridge/**', 'configs/**', 'tools/**'], reporter: ['text-summary'] },
+    coverage: {
+      provider: 'v8',
+      include: ['runtime/**', 'plants/**', 'bridge/**', 'configs/**', 'tools/**'],
+      reporter: ['text-summary'],
+    },
   },
 });

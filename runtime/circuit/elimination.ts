@@ -32,7 +32,9 @@ export function eliminate(n: number, rows: readonly number[], columns: readonly 
     slotOf.set(row * n + columns[i]!, i);
   });
   const pattern: Set<number>[] = Array.from({ length: n }, (_, i) => new Set([i]));
-  rows.forEach((row, i) => pattern[row]!.add(columns[i]!));
+  rows.forEach((row, i) => {
+    pattern[row]!.add(columns[i]!);
+  });
 
   const order = chooseOrder(n, pattern);
   const position = new Array<number>(n);

@@ -1,4 +1,12 @@
-import { type Expression, type FunctionExpression, type Node, type ObjectPattern, type Pattern, parseExpressionAt, type Statement } from 'acorn';
+import {
+  type Expression,
+  type FunctionExpression,
+  type Node,
+  type ObjectPattern,
+  type Pattern,
+  parseExpressionAt,
+  type Statement,
+} from 'acorn';
 import { BuildError, type Laws, type Position } from '../contract.js';
 import { type Graph, mathNames, type NodeId, type Operation } from './graph.js';
 
@@ -34,7 +42,11 @@ function parse(fn: AnyFunction, label: string): { tree: FunctionExpression; text
   const known = parsed.get(fn);
   if (known) return known;
   const source = fn.toString();
-  const wrappings: [string, string][] = [['({ ', ' })'], ['(', ')'], ['({ f: ', ' })']];
+  const wrappings: [string, string][] = [
+    ['({ ', ' })'],
+    ['(', ')'],
+    ['({ f: ', ' })'],
+  ];
   for (const [before, after] of wrappings) {
     const text = before + source + after;
     let tree: Expression;
@@ -54,7 +66,9 @@ function parse(fn: AnyFunction, label: string): { tree: FunctionExpression; text
       return result;
     }
   }
-  throw new BuildError([{ path: label, what: 'cannot read the source of this function', remedy: 'write it as a plain method or function' }]);
+  throw new BuildError([
+    { path: label, what: 'cannot read the source of this function', remedy: 'write it as a plain method or function' },
+  ]);
 }
 
 class Reader {
@@ -87,7 +101,8 @@ class Reader {
     for (const statement of statements) {
       switch (statement.type) {
         case 'VariableDeclaration':
-          if (statement.kind !== 'const') this.refuse(statement, `\`${statement.kind}\` is not in the subset`, 'use const');
+          if (statement.kind !== 'const')
+            this.refuse(statement, `\`${statement.kind}\` is not in the subset`, 'use const');
           for (const declaration of statement.declarations) {
             if (declaration.id.type !== 'Identifier' || !declaration.init) {
               this.refuse(declaration, 'only `const name = expression` is in the subset', 'name each value by itself');
@@ -104,14 +119,19 @@ class Reader {
         case 'EmptyStatement':
           break;
         default:
-          this.refuse(statement, `${statement.type} is not in the subset`, 'use `const`, assignments and `?:`; see DEVELOPERS.md, the subset');
+          this.refuse(
+            statement,
+            `${statement.type} is not in the subset`,
+            'use `const`, assignments and `?:`; see DEVELOPERS.md, the subset',
+          );
       }
     }
     return undefined;
   }
 
   private assignment(expression: Expression): void {
-    if (expression.type !== 'AssignmentExpression') this.refuse(expression, 'a statement that assigns nothing', 'remove it');
+    if (expression.type !== 'AssignmentExpression')
+      this.refuse(expression, 'a statement that assigns nothing', 'remove it');
     const { left, operator, right } = expression as Extract<Expression, { type: 'AssignmentExpression' }>;
     const how = operator === '=' ? 'set' : operator === '+=' ? 'add' : operator === '-=' ? 'subtract' : undefined;
     if (!how) this.refuse(expression, `operator ${operator} is not in the subset`, 'use =, += or -=');
@@ -120,12 +140,17 @@ class Reader {
     const [table, name] = member!;
     const value = this.value(right);
     if (!table.set?.(name, value, how!)) {
-      this.refuse(left, `\`${name}\` cannot be written here with ${operator}`, `can be written: ${table.set ? table.members.join(', ') || 'nothing' : 'nothing'}`);
+      this.refuse(
+        left,
+        `\`${name}\` cannot be written here with ${operator}`,
+        `can be written: ${table.set ? table.members.join(', ') || 'nothing' : 'nothing'}`,
+      );
     }
   }
 
   private member(expression: Expression | Pattern): [Table, string] | undefined {
-    if (expression.type !== 'MemberExpression' || expression.computed || expression.object.type !== 'Identifier') return undefined;
+    if (expression.type !== 'MemberExpression' || expression.computed || expression.object.type !== 'Identifier')
+      return undefined;
     if (this.insideLaw) return undefined;
     const table = this.context.tables[expression.object.name];
     if (!table || this.scope.has(expression.object.name)) return undefined;
@@ -136,7 +161,8 @@ class Reader {
     const { graph } = this.context;
     switch (expression.type) {
       case 'Literal':
-        if (typeof expression.value !== 'number') this.refuse(expression, 'only numbers are in the subset', 'use a number');
+        if (typeof expression.value !== 'number')
+          this.refuse(expression, 'only numbers are in the subset', 'use a number');
         return graph.constant(expression.value as number);
       case 'ParenthesizedExpression':
         return this.value(expression.expression);
@@ -150,19 +176,37 @@ class Reader {
           const constant = this.context.laws[expression.name];
           if (typeof constant === 'number') return graph.constant(constant);
         }
-        return this.refuse(expression, `unknown name \`${expression.name}\``, 'everything a function uses comes in its argument; constants come as law.NAME');
+        return this.refuse(
+          expression,
+          `unknown name \`${expression.name}\``,
+          'everything a function uses comes in its argument; constants come as law.NAME',
+        );
       }
       case 'MemberExpression': {
-        if (!this.insideLaw && !expression.computed && expression.object.type === 'Identifier' && expression.object.name === 'law') {
+        if (
+          !this.insideLaw &&
+          !expression.computed &&
+          expression.object.type === 'Identifier' &&
+          expression.object.name === 'law'
+        ) {
           const name = (expression.property as { name: string }).name;
           const constant = this.context.laws[name];
           if (typeof constant === 'number') return graph.constant(constant);
-          return this.refuse(expression, `no number \`${name}\` among the element's laws`, 'export it from the law file and list the file under `laws`');
+          return this.refuse(
+            expression,
+            `no number \`${name}\` among the element's laws`,
+            'export it from the law file and list the file under `laws`',
+          );
         }
         const member = this.member(expression);
         if (!member) return this.refuse(expression, 'this member cannot be read', 'read members of the argument only');
         const node = member[0].get(member[1]);
-        if (node === undefined) return this.refuse(expression, `\`${member[1]}\` is not there to read`, `there are: ${member[0].members.join(', ') || 'none'}`);
+        if (node === undefined)
+          return this.refuse(
+            expression,
+            `\`${member[1]}\` is not there to read`,
+            `there are: ${member[0].members.join(', ') || 'none'}`,
+          );
         return node;
       }
       case 'UnaryExpression':
@@ -172,15 +216,29 @@ class Reader {
         return this.refuse(expression, `operator ${expression.operator} is not in the subset`, 'write it otherwise');
       case 'BinaryExpression': {
         if (!['+', '-', '*', '/', '<', '<=', '>', '>=', '===', '!=='].includes(expression.operator)) {
-          this.refuse(expression, `operator ${expression.operator} is not in the subset`, 'use + - * / and comparisons; powers by multiplication or exp(log)');
+          this.refuse(
+            expression,
+            `operator ${expression.operator} is not in the subset`,
+            'use + - * / and comparisons; powers by multiplication or exp(log)',
+          );
         }
-        return graph.apply(expression.operator as Operation, [this.value(expression.left as Expression), this.value(expression.right)]);
+        return graph.apply(expression.operator as Operation, [
+          this.value(expression.left as Expression),
+          this.value(expression.right),
+        ]);
       }
       case 'LogicalExpression':
         if (expression.operator === '??') this.refuse(expression, 'operator ?? is not in the subset', 'use && and ||');
-        return graph.apply(expression.operator as Operation, [this.value(expression.left), this.value(expression.right)]);
+        return graph.apply(expression.operator as Operation, [
+          this.value(expression.left),
+          this.value(expression.right),
+        ]);
       case 'ConditionalExpression':
-        return graph.apply('?', [this.value(expression.test), this.value(expression.consequent), this.value(expression.alternate)]);
+        return graph.apply('?', [
+          this.value(expression.test),
+          this.value(expression.consequent),
+          this.value(expression.alternate),
+        ]);
       case 'CallExpression':
         return this.call(expression);
       default:
@@ -192,13 +250,15 @@ class Reader {
     const { graph, laws } = this.context;
     const callee = expression.callee;
     const operands = expression.arguments.map((argument) => {
-      if (argument.type === 'SpreadElement') this.refuse(argument, 'a spread argument is not in the subset', 'name each argument');
+      if (argument.type === 'SpreadElement')
+        this.refuse(argument, 'a spread argument is not in the subset', 'name each argument');
       return this.value(argument as Expression);
     });
     if (callee.type === 'MemberExpression' && callee.object.type === 'Identifier' && !callee.computed) {
       const name = (callee.property as { name: string }).name;
       if (callee.object.name === 'Math') {
-        if (!mathNames.has(name)) this.refuse(callee, `Math.${name} is not in the subset`, `there are ${[...mathNames].join(', ')}`);
+        if (!mathNames.has(name))
+          this.refuse(callee, `Math.${name} is not in the subset`, `there are ${[...mathNames].join(', ')}`);
         const wanted = name === 'min' || name === 'max' ? 2 : 1;
         if (operands.length !== wanted) this.refuse(expression, `Math.${name} takes ${wanted} here`, 'nest the calls');
         return graph.apply(name as Operation, operands);
@@ -214,7 +274,8 @@ class Reader {
   private callLaw(expression: Node, name: string, operands: NodeId[]): NodeId {
     const { graph, laws, label } = this.context;
     const law = laws[name];
-    if (typeof law !== 'function') this.refuse(expression, `no law \`${name}\` among the element's laws`, 'list its file under `laws`');
+    if (typeof law !== 'function')
+      this.refuse(expression, `no law \`${name}\` among the element's laws`, 'list its file under `laws`');
     if (this.depth > 40) this.refuse(expression, 'laws call each other without end', 'break the recursion');
     const value = inlineLaw(this.context, name, law as AnyFunction, operands, this.depth + 1);
     const slopes = laws[`${name}Slopes`] as Record<string, AnyFunction> | undefined;
@@ -223,7 +284,13 @@ class Reader {
     const list = names.flatMap((argumentName, i) => {
       const slope = slopes[argumentName];
       if (!slope) return [];
-      return [{ argument: operands[i]!, slope: () => inlineLaw(this.context, `${name}Slopes.${argumentName}`, slope, [...operands, value], this.depth + 1) }];
+      return [
+        {
+          argument: operands[i]!,
+          slope: () =>
+            inlineLaw(this.context, `${name}Slopes.${argumentName}`, slope, [...operands, value], this.depth + 1),
+        },
+      ];
     });
     return graph.law(value, list);
   }
@@ -233,20 +300,39 @@ function parameterNames(tree: FunctionExpression): string[] {
   return tree.params.map((parameter) => (parameter.type === 'Identifier' ? parameter.name : '?'));
 }
 
-function inlineLaw(context: ReadContext, name: string, law: AnyFunction, operands: readonly NodeId[], depth: number): NodeId {
+function inlineLaw(
+  context: ReadContext,
+  name: string,
+  law: AnyFunction,
+  operands: readonly NodeId[],
+  depth: number,
+): NodeId {
   const { tree, text } = parse(law, `${context.label}, law ${name}`);
   const scope = new Map<string, NodeId>();
   const names = parameterNames(tree);
   if (names.length !== operands.length) {
-    throw new BuildError([{ path: `${context.label}, law ${name}`, what: `takes ${names.length} numbers`, value: `${operands.length} given`, remedy: 'give each argument' }]);
+    throw new BuildError([
+      {
+        path: `${context.label}, law ${name}`,
+        what: `takes ${names.length} numbers`,
+        value: `${operands.length} given`,
+        remedy: 'give each argument',
+      },
+    ]);
   }
   names.forEach((parameter, i) => {
     scope.set(parameter, operands[i]!);
   });
   const reader = new Reader(context, text, scope, name, depth);
   const body = tree.body as unknown as Node;
-  const result = body.type === 'BlockStatement' ? reader.run((body as unknown as { body: Statement[] }).body) : reader.value(body as unknown as Expression);
-  if (result === undefined) throw new BuildError([{ path: `${context.label}, law ${name}`, what: 'returns nothing', remedy: 'end it with `return`' }]);
+  const result =
+    body.type === 'BlockStatement'
+      ? reader.run((body as unknown as { body: Statement[] }).body)
+      : reader.value(body as unknown as Expression);
+  if (result === undefined)
+    throw new BuildError([
+      { path: `${context.label}, law ${name}`, what: 'returns nothing', remedy: 'end it with `return`' },
+    ]);
   return result;
 }
 
@@ -255,10 +341,16 @@ export function readFunction(context: ReadContext, fn: AnyFunction): NodeId | un
   const { tree, text } = parse(fn, context.label);
   const pattern = tree.params[0];
   if (pattern && pattern.type !== 'ObjectPattern') {
-    throw new BuildError([{ path: context.label, what: 'takes its argument whole', remedy: 'destructure it: ({ parameter, state, ... })' }]);
+    throw new BuildError([
+      { path: context.label, what: 'takes its argument whole', remedy: 'destructure it: ({ parameter, state, ... })' },
+    ]);
   }
   for (const property of (pattern as ObjectPattern | undefined)?.properties ?? []) {
-    const plain = property.type === 'Property' && property.key.type === 'Identifier' && property.value.type === 'Identifier' && property.key.name === property.value.name;
+    const plain =
+      property.type === 'Property' &&
+      property.key.type === 'Identifier' &&
+      property.value.type === 'Identifier' &&
+      property.key.name === property.value.name;
     const name = plain ? (property.key as { name: string }).name : undefined;
     const known = name !== undefined && (name === 'law' || name in context.tables || name in context.numbers);
     if (!known) {
@@ -273,5 +365,7 @@ export function readFunction(context: ReadContext, fn: AnyFunction): NodeId | un
   }
   const body = tree.body as unknown as Node;
   const reader = new Reader(context, text, new Map(), undefined, 0);
-  return body.type === 'BlockStatement' ? reader.run((body as unknown as { body: Statement[] }).body) : reader.value(body as unknown as Expression);
+  return body.type === 'BlockStatement'
+    ? reader.run((body as unknown as { body: Statement[] }).body)
+    : reader.value(body as unknown as Expression);
 }

@@ -59,7 +59,8 @@ export function unfuse(circuit: Circuit): Unfused {
   const evaluate = (y: Float64Array, u: Float64Array, m: Float64Array) => {
     load(y, u, m);
     for (const one of stores) {
-      for (const port of Object.keys(one.ports)) for (const flow of Object.keys(portKind(one.element, port).flows)) one.ports[port]![flow] = -0;
+      for (const port of Object.keys(one.ports))
+        for (const flow of Object.keys(portKind(one.element, port).flows)) one.ports[port]![flow] = -0;
       one.element.kind.efforts?.(one.argument);
     }
     for (const one of branches) {
@@ -123,7 +124,9 @@ export function unfuse(circuit: Circuit): Unfused {
     readings(y, u, m) {
       evaluate(y, u, m);
       const result = new Map<string, number>();
-      for (const one of all) for (const [name, value] of Object.entries(one.tables.reading)) result.set(`${one.element.name}.${name}`, Number(value));
+      for (const one of all)
+        for (const [name, value] of Object.entries(one.tables.reading))
+          result.set(`${one.element.name}.${name}`, Number(value));
       return result;
     },
   };

@@ -144,7 +144,9 @@ describe('a scenario file', () => {
     [
       'note: pulling out',
       'hold: truck.grade, set: isolation.open, to: 1',
-      ['round.yaml:17:5 steps[4]: a step that does 2 things, write one of set, ramp, hold, release, fault, clear or note'],
+      [
+        'round.yaml:17:5 steps[4]: a step that does 2 things, write one of set, ramp, hold, release, fault, clear or note',
+      ],
     ],
     ['at: 1 s', 'at: 1', ['round.yaml:17:11 steps[4].at: no unit, 1, write a time with its unit, for example 5 ms']],
     ['steps:\n', 'step: []\nsteps:\n', ['round.yaml:12:1 step: unknown key, did you mean steps?']],

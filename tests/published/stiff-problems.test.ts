@@ -21,9 +21,24 @@ const robertson = () =>
   });
 
 describe('stability function of RODAS3 (Sandu et al. 1997), R(z) on the real axis', () => {
-  for (const [z, expected] of [[-1, 0.3621399], [-10, -0.1201131], [-100, -0.0246209]] as const) {
+  for (const [z, expected] of [
+    [-1, 0.3621399],
+    [-10, -0.1201131],
+    [-100, -0.0246209],
+  ] as const) {
     it(`R(${z})`, () => {
-      const circuit = z === -1 ? problem({ a: 1 }, ({ state, derivative }) => { derivative.a = -1 * state.a; }) : z === -10 ? problem({ a: 1 }, ({ state, derivative }) => { derivative.a = -10 * state.a; }) : problem({ a: 1 }, ({ state, derivative }) => { derivative.a = -100 * state.a; });
+      const circuit =
+        z === -1
+          ? problem({ a: 1 }, ({ state, derivative }) => {
+              derivative.a = -1 * state.a;
+            })
+          : z === -10
+            ? problem({ a: 1 }, ({ state, derivative }) => {
+                derivative.a = -10 * state.a;
+              })
+            : problem({ a: 1 }, ({ state, derivative }) => {
+                derivative.a = -100 * state.a;
+              });
       expect(integrate(circuit, 1, 1)[0]).toBeCloseTo(expected, 6);
     });
   }
@@ -60,18 +75,24 @@ describe('Robertson (1966), reference values of the IVP Test Set', () => {
 
 describe('HIRES (Schäfer 1975), IVP Test Set reference at t = 321.8122', () => {
   it('all eight components', () => {
-    const circuit = problem({ y1: 1, y2: 0, y3: 0, y4: 0, y5: 0, y6: 0, y7: 0, y8: 0.0057 }, ({ state, derivative }) => {
-      const product = 280 * state.y6 * state.y8;
-      derivative.y1 = -1.71 * state.y1 + 0.43 * state.y2 + 8.32 * state.y3 + 0.0007;
-      derivative.y2 = 1.71 * state.y1 - 8.75 * state.y2;
-      derivative.y3 = -10.03 * state.y3 + 0.43 * state.y4 + 0.035 * state.y5;
-      derivative.y4 = 8.32 * state.y2 + 1.71 * state.y3 - 1.12 * state.y4;
-      derivative.y5 = -1.745 * state.y5 + 0.43 * state.y6 + 0.43 * state.y7;
-      derivative.y6 = -product + 0.69 * state.y4 + 1.71 * state.y5 - 0.43 * state.y6 + 0.69 * state.y7;
-      derivative.y7 = product - 1.81 * state.y7;
-      derivative.y8 = -product + 1.81 * state.y7;
-    });
-    const reference = [0.7371312573325668e-3, 0.1442485726316185e-3, 0.5888729740967575e-4, 0.1175651343283149e-2, 0.2386356198831331e-2, 0.6238968252742796e-2, 0.2849998395185769e-2, 0.2850001604814231e-2];
+    const circuit = problem(
+      { y1: 1, y2: 0, y3: 0, y4: 0, y5: 0, y6: 0, y7: 0, y8: 0.0057 },
+      ({ state, derivative }) => {
+        const product = 280 * state.y6 * state.y8;
+        derivative.y1 = -1.71 * state.y1 + 0.43 * state.y2 + 8.32 * state.y3 + 0.0007;
+        derivative.y2 = 1.71 * state.y1 - 8.75 * state.y2;
+        derivative.y3 = -10.03 * state.y3 + 0.43 * state.y4 + 0.035 * state.y5;
+        derivative.y4 = 8.32 * state.y2 + 1.71 * state.y3 - 1.12 * state.y4;
+        derivative.y5 = -1.745 * state.y5 + 0.43 * state.y6 + 0.43 * state.y7;
+        derivative.y6 = -product + 0.69 * state.y4 + 1.71 * state.y5 - 0.43 * state.y6 + 0.69 * state.y7;
+        derivative.y7 = product - 1.81 * state.y7;
+        derivative.y8 = -product + 1.81 * state.y7;
+      },
+    );
+    const reference = [
+      0.7371312573325668e-3, 0.1442485726316185e-3, 0.5888729740967575e-4, 0.1175651343283149e-2, 0.2386356198831331e-2,
+      0.6238968252742796e-2, 0.2849998395185769e-2, 0.2850001604814231e-2,
+    ];
     const y = integrate(circuit, 321.8122, 32_000);
     reference.forEach((value, i) => {
       expect(Math.abs(y[i]! / value - 1)).toBeLessThan(1e-5);

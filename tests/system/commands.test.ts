@@ -12,7 +12,8 @@ import { runCommand, scratch, startCommand, truck } from './command.js';
 const folder = scratch();
 afterAll(() => folder.remove());
 
-const fast = (record: string, ...more: string[]) => runCommand('run', truck, '--pace', 'fast', '--for', '4s', '--json', '--record', folder.file(record), ...more);
+const fast = (record: string, ...more: string[]) =>
+  runCommand('run', truck, '--pace', 'fast', '--for', '4s', '--json', '--record', folder.file(record), ...more);
 const summaryOf = (output: string): RunSummary => {
   const lines = output.split('\n').filter((line) => line !== '');
   expect(lines).toHaveLength(1);
@@ -37,8 +38,15 @@ describe('run --pace fast', () => {
   });
 
   it('prints one object that says all that was promised', () => {
-    expect(summary).toMatchObject({ verdict: 'pass', valid: true, simulated: 4, seed: 1, recording: folder.file('one.osrec') });
-    for (const key of ['period', 'lateness', 'step'] as const) expect(Object.keys(summary.timing[key]).sort()).toEqual(['max', 'p50', 'p99', 'p999']);
+    expect(summary).toMatchObject({
+      verdict: 'pass',
+      valid: true,
+      simulated: 4,
+      seed: 1,
+      recording: folder.file('one.osrec'),
+    });
+    for (const key of ['period', 'lateness', 'step'] as const)
+      expect(Object.keys(summary.timing[key]).sort()).toEqual(['max', 'p50', 'p99', 'p999']);
     expect(summary.timing).toMatchObject({ overruns: 0, drift: 0 });
     expect(summary.realTimeFactor).toBeGreaterThan(0);
     expect(summary.peaks['highLine.pressure']).toBeGreaterThan(2e7);
@@ -75,7 +83,8 @@ describe('run --pace fast', () => {
     const bytes = (view: ArrayBufferView) => Buffer.from(view.buffer as ArrayBuffer, view.byteOffset, view.byteLength);
     let changed = -1;
     for (const block of from.blocks()) {
-      if (block.kind === 'rows') writer.add('rows', { ticks: bytes(block.ticks), hashes: bytes(block.hashes), data: bytes(block.data) });
+      if (block.kind === 'rows')
+        writer.add('rows', { ticks: bytes(block.ticks), hashes: bytes(block.hashes), data: bytes(block.data) });
       else if (block.kind === 'snapshot') writer.add('snapshot', { tick: block.tick, block: bytes(block.block) });
       else if (block.kind === 'inputs') {
         const data = Uint8Array.from(block.bytes);
@@ -85,7 +94,12 @@ describe('run --pace fast', () => {
           changed = block.ticks[i]!;
           data[block.offsets[i]! + 30]! ^= 1;
         }
-        writer.add('inputs', { ticks: bytes(block.ticks), links: bytes(block.links), lengths: bytes(Uint32Array.from(block.ticks, (_, i) => block.offsets[i + 1]! - block.offsets[i]!)), bytes: data });
+        writer.add('inputs', {
+          ticks: bytes(block.ticks),
+          links: bytes(block.links),
+          lengths: bytes(Uint32Array.from(block.ticks, (_, i) => block.offsets[i + 1]! - block.offsets[i]!)),
+          bytes: data,
+        });
       }
     }
     await writer.close();
@@ -101,12 +115,28 @@ describe('run --pace fast', () => {
   });
 
   it('is exported with units in the heading', async () => {
-    const run = await runCommand('export', folder.file('one.osrec'), '--signals', 'highLine.pressure,body.velocity', '--every', '100ms', '--to', folder.file('one.csv'));
+    const run = await runCommand(
+      'export',
+      folder.file('one.osrec'),
+      '--signals',
+      'highLine.pressure,body.velocity',
+      '--every',
+      '100ms',
+      '--to',
+      folder.file('one.csv'),
+    );
     expect(run.code).toBe(0);
     const lines = readFileSync(folder.file('one.csv'), 'utf8').trim().split('\n');
     expect(lines[0]).toBe('time (s),highLine.pressure (Pa),body.velocity (m/s)');
     expect(lines).toHaveLength(51);
-    const wrong = await runCommand('export', folder.file('one.osrec'), '--signals', 'highLine.presure', '--to', folder.file('no.csv'));
+    const wrong = await runCommand(
+      'export',
+      folder.file('one.osrec'),
+      '--signals',
+      'highLine.presure',
+      '--to',
+      folder.file('no.csv'),
+    );
     expect(wrong.code).toBe(2);
     expect(wrong.errors).toContain('did you mean highLine.pressure');
     expect(existsSync(folder.file('no.csv'))).toBe(false);
@@ -166,7 +196,18 @@ describe('a controller that does not answer in lockstep', () => {
   it('ends the run with exit code 5 and a message, never as data', async () => {
     const stub = folder.file('stub.mjs');
     writeFileSync(stub, 'setTimeout(() => {}, 20000);\n');
-    const run = await runCommand('run', truck, '--pace', 'fast', '--for', '1s', '--controller', `${process.execPath} ${stub}`, '--no-record', '--json');
+    const run = await runCommand(
+      'run',
+      truck,
+      '--pace',
+      'fast',
+      '--for',
+      '1s',
+      '--controller',
+      `${process.execPath} ${stub}`,
+      '--no-record',
+      '--json',
+    );
     expect(run.code).toBe(5);
     expect(run.errors).toContain('no controller said hello');
   });
@@ -175,7 +216,13 @@ describe('a controller that does not answer in lockstep', () => {
 describe('bad input', () => {
   it('is answered with file, line, column, value and remedy, and exit code 2', async () => {
     const file = folder.file('wrong.yaml');
-    writeFileSync(file, readFileSync(truck, 'utf8').replace('include: messages.yaml\n', '').replace('volume: 50 L\n', 'volume: 50 bar\n').replace('cracking: 330 bar(g)', 'cracking: 360 bar'));
+    writeFileSync(
+      file,
+      readFileSync(truck, 'utf8')
+        .replace('include: messages.yaml\n', '')
+        .replace('volume: 50 L\n', 'volume: 50 bar\n')
+        .replace('cracking: 330 bar(g)', 'cracking: 360 bar'),
+    );
     const run = await runCommand('check', file);
     expect(run.code).toBe(2);
     expect(run.errors).toMatch(/wrong\.yaml:\d+:\d+ .*50 bar/);
@@ -212,10 +259,16 @@ describe('help', () => {
     });
   }
   it('lists elements and signals, readable and as JSON', async () => {
-    const elements = JSON.parse((await runCommand('list', 'elements', '--json')).output) as { kind: string; source: string }[];
+    const elements = JSON.parse((await runCommand('list', 'elements', '--json')).output) as {
+      kind: string;
+      source: string;
+    }[];
     expect(elements.length).toBeGreaterThan(25);
     for (const element of elements) expect(element.source.length).toBeGreaterThan(3);
-    const signals = JSON.parse((await runCommand('list', 'signals', truck, '--json')).output) as { path: string; unit: string }[];
+    const signals = JSON.parse((await runCommand('list', 'signals', truck, '--json')).output) as {
+      path: string;
+      unit: string;
+    }[];
     expect(signals.find((signal) => signal.path === 'highLine.pressure')?.unit).toBe('Pa');
     expect((await runCommand('list', 'elements', 'pump-motor')).output).toContain('Wilson');
   });

@@ -27,7 +27,9 @@ describe('the README', () => {
 
   it('names every command that there is', async () => {
     const { output } = await (await import('./command.js')).runCommand('--help');
-    const commands = [...output.matchAll(/^ {2}([a-z]+)(?: |\n)/gm)].map((match) => match[1]!).filter((name) => name !== 'help');
+    const commands = [...output.matchAll(/^ {2}([a-z]+)(?: |\n)/gm)]
+      .map((match) => match[1]!)
+      .filter((name) => name !== 'help');
     expect(commands.length).toBeGreaterThan(5);
     for (const name of commands) expect(readme).toContain(`\`${name}`);
   });

@@ -1,7 +1,7 @@
 import type { Assembly } from '../../configs/assemble.js';
-import type { Barrier } from '../loop/controller-module.js';
 import type { Circuit } from '../../runtime/circuit/build.js';
 import { Plant } from '../../runtime/plant.js';
+import type { Barrier } from '../loop/controller-module.js';
 import { type Mode, modesAt } from './modes.js';
 
 /** How far the bench's step is from the converged solution, for one signal. */
@@ -48,7 +48,12 @@ export interface FrozenDrive {
 }
 
 /** Drives the bench's duty once at fast pace, closed loop, and keeps what the plant was told in each tick. */
-export function freeze(assembly: Assembly, barriers: readonly Barrier[], ticks: number, onTick: (tick: number) => boolean): FrozenDrive {
+export function freeze(
+  assembly: Assembly,
+  barriers: readonly Barrier[],
+  ticks: number,
+  onTick: (tick: number) => boolean,
+): FrozenDrive {
   const { plant, tick: stage, firstTick } = assembly;
   const count = assembly.circuit.commands.length;
   const commands = new Float64Array(ticks * count);
@@ -122,9 +127,11 @@ export function measureAccuracy(
     compare(compared, plants, tick * spec.step, 'the duty', largest);
     for (const valve of valves) {
       const size = Math.abs(plants[0].observed[valve.flow]!);
-      if (size > valve.worst && plants[0].u[valve.command]! > 0.5) Object.assign(valve, { worst: size, tick, state: plants[2].y.slice(), memory: plants[2].m.slice() });
+      if (size > valve.worst && plants[0].u[valve.command]! > 0.5)
+        Object.assign(valve, { worst: size, tick, state: plants[2].y.slice(), memory: plants[2].m.slice() });
     }
-    if (tick % Math.max(1, Math.floor(drive.ticks / 8)) === 0) modesFound.push(...modesAt(circuit, plants[2].y, plants[2].u, plants[2].m).slice(0, 12));
+    if (tick % Math.max(1, Math.floor(drive.ticks / 8)) === 0)
+      modesFound.push(...modesAt(circuit, plants[2].y, plants[2].u, plants[2].m).slice(0, 12));
     done += 1;
     if (tick % 500 === 0) aborted = !onProgress(done * share);
   }
@@ -157,10 +164,21 @@ export function measureAccuracy(
   costs.sort((a, b) => a - b);
   const finish = (one: Compared): SignalError => {
     const scale = one.kind === 'speed' ? Math.max(largest[compared.indexOf(one)]!, 1e-3) : one.scale;
-    return { path: one.path, error: one.error, scale, share: one.error / scale, at: one.at, event: one.event, reference: one.reference / scale };
+    return {
+      path: one.path,
+      error: one.error,
+      scale,
+      share: one.error / scale,
+      at: one.at,
+      event: one.event,
+      reference: one.reference / scale,
+    };
   };
   const byShare = (a: SignalError, b: SignalError) => b.share - a.share;
-  const pressures = compared.filter((one) => one.kind === 'pressure').map(finish).sort(byShare);
+  const pressures = compared
+    .filter((one) => one.kind === 'pressure')
+    .map(finish)
+    .sort(byShare);
   const speedErrors = speeds.map(finish).sort(byShare);
   const over = compared
     .filter((one) => one.kind === 'pressure')
@@ -188,7 +206,16 @@ export function measureAccuracy(
 function choose(circuit: Circuit, scaleOf: (path: string) => number | undefined): Compared[] {
   return circuit.readings.flatMap((reading, index): Compared[] => {
     if (reading.group !== 'reading') return [];
-    const base = { index, path: reading.path, error: 0, at: 0, event: '', reference: 0, peak: Number.NEGATIVE_INFINITY, truePeak: Number.NEGATIVE_INFINITY };
+    const base = {
+      index,
+      path: reading.path,
+      error: 0,
+      at: 0,
+      event: '',
+      reference: 0,
+      peak: Number.NEGATIVE_INFINITY,
+      truePeak: Number.NEGATIVE_INFINITY,
+    };
     if (reading.unit === 'Pa') {
       const scale = scaleOf(reading.path);
       return scale === undefined ? [] : [{ ...base, kind: 'pressure', scale }];
@@ -197,7 +224,13 @@ function choose(circuit: Circuit, scaleOf: (path: string) => number | undefined)
   });
 }
 
-function compare(compared: Compared[], plants: readonly [Plant, Plant, Plant], at: number, event: string, largest: Float64Array): void {
+function compare(
+  compared: Compared[],
+  plants: readonly [Plant, Plant, Plant],
+  at: number,
+  event: string,
+  largest: Float64Array,
+): void {
   for (let i = 0; i < compared.length; i += 1) {
     const one = compared[i]!;
     const coarse = plants[0].observed[one.index]!;
@@ -215,7 +248,12 @@ function compare(compared: Compared[], plants: readonly [Plant, Plant, Plant], a
   }
 }
 
-function residuals(circuit: Circuit, plant: Plant, start: Float64Array, assembly: Assembly): { energy: number; oil: number } {
+function residuals(
+  circuit: Circuit,
+  plant: Plant,
+  start: Float64Array,
+  assembly: Assembly,
+): { energy: number; oil: number } {
   const energyAt = circuit.readings.length + 2 + circuit.stuffs.length;
   const residual = plant.observed[energyAt]! - start[energyAt]! - plant.ledger[0]! + plant.ledger[1]!;
   const turnover = assembly.signals[assembly.table.find('ledger.turnover')]!;
@@ -235,5 +273,7 @@ function distinct(modes: readonly Mode[]): Mode[] {
     const other = seen.get(key);
     if (!other || Math.hypot(mode.real, mode.imaginary) > Math.hypot(other.real, other.imaginary)) seen.set(key, mode);
   }
-  return [...seen.values()].sort((a, b) => Math.hypot(b.real, b.imaginary) - Math.hypot(a.real, a.imaginary)).slice(0, 8);
+  return [...seen.values()]
+    .sort((a, b) => Math.hypot(b.real, b.imaginary) - Math.hypot(a.real, a.imaginary))
+    .slice(0, 8);
 }

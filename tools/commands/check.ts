@@ -22,7 +22,10 @@ export function checkCommand(): Command {
     .option('--quick', 'without the accuracy sheet')
     .option('--code', 'print the generated JavaScript of the circuit and stop')
     .option('--json', 'one object on standard output')
-    .addHelpText('after', '\nExample:\n  oilspring check configs/harbour-truck/bench.yaml\n\nExit code 0: fit to run live, 2: the file is wrong or the bench is not accurate enough at its step.')
+    .addHelpText(
+      'after',
+      '\nExample:\n  oilspring check configs/harbour-truck/bench.yaml\n\nExit code 0: fit to run live, 2: the file is wrong or the bench is not accurate enough at its step.',
+    )
     .action(async (bench: string, options: { scenario?: string; quick?: boolean; code?: boolean; json?: boolean }) => {
       const { spec, folder } = readBenchFile(bench);
       const scenarioFile = options.scenario ?? (spec.duty === undefined ? undefined : path.join(folder, spec.duty));
@@ -37,33 +40,71 @@ export function checkCommand(): Command {
         if (!options.json) process.stdout.write(`${text}\n`);
       };
       say(`${pc.bold(spec.name)}  ${spec.about}`);
-      say(`${circuit.spec.elements.length} elements, ${circuit.states.length} states, ${circuit.jacobian.rows.length} Jacobian entries, ${assembly.table.length} signals, step ${spec.step * 1000} ms in ${spec.substeps} substeps\n`);
-      say(table([['element', 'kind', 'states', 'tied to'], ...circuit.spec.elements.map((element) => [element.name, element.kind.kind, String(Object.keys(element.kind.states).length), Object.entries(element.connections).map(([port, to]) => `${port}:${to.store}${to.ratio === 1 ? '' : ` x${to.ratio}`}`).join(' ')])], [2]));
+      say(
+        `${circuit.spec.elements.length} elements, ${circuit.states.length} states, ${circuit.jacobian.rows.length} Jacobian entries, ${assembly.table.length} signals, step ${spec.step * 1000} ms in ${spec.substeps} substeps\n`,
+      );
+      say(
+        table(
+          [
+            ['element', 'kind', 'states', 'tied to'],
+            ...circuit.spec.elements.map((element) => [
+              element.name,
+              element.kind.kind,
+              String(Object.keys(element.kind.states).length),
+              Object.entries(element.connections)
+                .map(([port, to]) => `${port}:${to.store}${to.ratio === 1 ? '' : ` x${to.ratio}`}`)
+                .join(' '),
+            ]),
+          ],
+          [2],
+        ),
+      );
       for (const remark of spec.remarks) say(`${pc.yellow('remark')} ${problemText(remark)}`);
       if (options.quick || script === undefined) {
         const modes = modesAt(circuit, assembly.plant.y, assembly.plant.u, assembly.plant.m).slice(0, 8);
-        if (options.json) process.stdout.write(`${JSON.stringify({ bench: spec.name, states: circuit.states.length, modes }, undefined, 2)}\n`);
-        else say(`\nno scenario to drive: accuracy is not measured; fastest time constant at the start ${modes[0] ? (modes[0].timeConstant * 1e6).toPrecision(3) : '-'} us`);
+        if (options.json)
+          process.stdout.write(
+            `${JSON.stringify({ bench: spec.name, states: circuit.states.length, modes }, undefined, 2)}\n`,
+          );
+        else
+          say(
+            `\nno scenario to drive: accuracy is not measured; fastest time constant at the start ${modes[0] ? (modes[0].timeConstant * 1e6).toPrecision(3) : '-'} us`,
+          );
         return;
       }
       const barriers: Barrier[] = [];
       if (spec.map.links[0] && spec.controller?.module !== undefined) {
-        const { barrier, transports } = moduleBarrier(spec.map, assembly.exchange.checksum, await loadController(folder, spec.controller.module), spec.step, spec.controller.period);
+        const { barrier, transports } = moduleBarrier(
+          spec.map,
+          assembly.exchange.checksum,
+          await loadController(folder, spec.controller.module),
+          spec.step,
+          spec.controller.period,
+        );
         for (const { link, transport } of transports) assembly.exchange.attach(link, transport);
         barriers.push(barrier);
       }
       const progress = new Progress('accuracy', options.json);
       let sheet: AccuracySheet;
       try {
-        const drive = freeze(assembly, barriers, script.ticks, (tick) => progress.update((0.1 * Math.max(0, tick)) / script.ticks));
+        const drive = freeze(assembly, barriers, script.ticks, (tick) =>
+          progress.update((0.1 * Math.max(0, tick)) / script.ticks),
+        );
         sheet = measureAccuracy(assembly, drive, scaleOf(spec), (share) => progress.update(0.1 + 0.9 * share));
-        if (progress.signal.aborted) throw new CommandError('stopped: the accuracy was not measured', exitCode.unfinished);
+        if (progress.signal.aborted)
+          throw new CommandError('stopped: the accuracy was not measured', exitCode.unfinished);
       } finally {
         progress.done();
       }
       const verdict = verdictOf(sheet, accuracyLimits, spec);
-      if (options.json) process.stdout.write(`${JSON.stringify({ bench: spec.name, states: circuit.states.length, fit: verdict.fit, why: verdict.why, sheet }, undefined, 2)}\n`);
-      else say(`\n${sheetText(sheet, spec)}\n${verdict.fit ? pc.green('fit to run live') : pc.red('not fit to run live')}: ${verdict.why}`);
+      if (options.json)
+        process.stdout.write(
+          `${JSON.stringify({ bench: spec.name, states: circuit.states.length, fit: verdict.fit, why: verdict.why, sheet }, undefined, 2)}\n`,
+        );
+      else
+        say(
+          `\n${sheetText(sheet, spec)}\n${verdict.fit ? pc.green('fit to run live') : pc.red('not fit to run live')}: ${verdict.why}`,
+        );
       process.exitCode = verdict.fit ? exitCode.fine : exitCode.badInput;
     });
 }

@@ -1,8 +1,8 @@
 import { Command } from 'commander';
-import { exportCsv } from '../../runtime/recording/export-csv.js';
-import { Recording } from '../../runtime/recording/reader.js';
 import { parseQuantity } from '../../configs/quantity.js';
 import { globTest } from '../../configs/signal-list.js';
+import { exportCsv } from '../../runtime/recording/export-csv.js';
+import { Recording } from '../../runtime/recording/reader.js';
 import { nearest } from '../../runtime/signals.js';
 import { CommandError } from './failure.js';
 import { Progress } from './progress.js';
@@ -14,7 +14,10 @@ export function exportCommand(): Command {
     .requiredOption('--to <FILE.csv>', 'file to write')
     .option('--signals <a,b>', 'paths, with * for any run of letters; default: all that were recorded')
     .option('--every <10ms>', 'distance of the rows; default: every tick')
-    .addHelpText('after', "\nExample:\n  oilspring export recordings/harbour-truck.osrec --signals 'highLine.pressure,body.*' --every 10ms --to run.csv")
+    .addHelpText(
+      'after',
+      "\nExample:\n  oilspring export recordings/harbour-truck.osrec --signals 'highLine.pressure,body.*' --every 10ms --to run.csv",
+    )
     .action(async (file: string, options: { to: string; signals?: string; every?: string }) => {
       const recording = new Recording(file);
       const progress = new Progress('export');
@@ -46,7 +49,9 @@ function match(patterns: readonly string[], known: readonly string[]): string[] 
     const hits = known.filter(test);
     if (hits.length === 0) {
       const near = nearest(pattern.trim(), known, 3);
-      throw new CommandError(`--signals: no recorded signal \`${pattern.trim()}\`${near.length > 0 ? `, did you mean ${near.join(' or ')}?` : ''}`);
+      throw new CommandError(
+        `--signals: no recorded signal \`${pattern.trim()}\`${near.length > 0 ? `, did you mean ${near.join(' or ')}?` : ''}`,
+      );
     }
     for (const hit of hits) found.add(hit);
   }
@@ -56,6 +61,7 @@ function match(patterns: readonly string[], known: readonly string[]): string[] 
 function ticks(text: string, step: number): number {
   const seconds = parseQuantity(text.trim().replace(/^([\d.]+)\s*([a-z]+)$/i, '$1 $2'), { unit: 's' }).value;
   const count = Math.round(seconds / step);
-  if (count < 1 || Math.abs(count * step - seconds) > 1e-6 * step) throw new CommandError(`--every ${text}: not a whole number of ticks of ${step * 1000} ms`);
+  if (count < 1 || Math.abs(count * step - seconds) > 1e-6 * step)
+    throw new CommandError(`--every ${text}: not a whole number of ticks of ${step * 1000} ms`);
   return count;
 }

@@ -17,7 +17,8 @@ export class CommandError extends Error {
 /** Says on standard error what is wrong; the exit code. */
 export function complain(error: unknown): number {
   if (error instanceof BuildError) {
-    for (const problem of error.problems) process.stderr.write(`${pc.red('error')} ${printable(problemText(problem))}\n`);
+    for (const problem of error.problems)
+      process.stderr.write(`${pc.red('error')} ${printable(problemText(problem))}\n`);
     if (error.problems.length > 1) process.stderr.write(`${error.problems.length} errors\n`);
     return exitCode.badInput;
   }
@@ -30,12 +31,16 @@ export function complain(error: unknown): number {
     process.stderr.write(`${pc.red('error')} ${printable(message)}: name a file that exists and may be read\n`);
     return exitCode.badInput;
   }
-  process.stderr.write(`${pc.red('error')} ${printable(error instanceof Error ? (error.stack ?? error.message) : String(error))}\n`);
+  process.stderr.write(
+    `${pc.red('error')} ${printable(error instanceof Error ? (error.stack ?? error.message) : String(error))}\n`,
+  );
   return exitCode.unfinished;
 }
 
 /** Text from files and names, without what a terminal would act on. */
 export function printable(text: string): string {
-  // biome-ignore lint/suspicious/noControlCharactersInRegex: control characters are what is looked for
-  return text.replace(/[\u0000-\u0008\u000b-\u001f\u007f-\u009f]/g, (character) => `\\x${character.charCodeAt(0).toString(16).padStart(2, '0')}`);
+  return text.replace(control, (character) => `\\x${character.charCodeAt(0).toString(16).padStart(2, '0')}`);
 }
+
+// biome-ignore lint/suspicious/noControlCharactersInRegex: control characters are what is looked for
+const control = /[\u0000-\u0008\u000b-\u001f\u007f-\u009f]/g;

@@ -12,7 +12,15 @@ export class Progress {
     private readonly quiet = false,
   ) {
     this.bar = new SingleBar(
-      { format: `${title} {bar} {percentage} %`, hideCursor: true, clearOnComplete: true, stream: process.stderr, barsize: 30, noTTYOutput: false, gracefulExit: false },
+      {
+        format: `${title} {bar} {percentage} %`,
+        hideCursor: true,
+        clearOnComplete: true,
+        stream: process.stderr,
+        barsize: 30,
+        noTTYOutput: false,
+        gracefulExit: false,
+      },
       Presets.legacy,
     );
     process.on('SIGINT', this.onSignal);

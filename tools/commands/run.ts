@@ -1,12 +1,12 @@
 import { Command, InvalidArgumentError } from 'commander';
 import { BuildError } from '../../runtime/contract.js';
 import { exitCode } from '../../runtime/verdict.js';
+import { type LivePage, type PageWish, readPageWish } from '../live/live-page.js';
+import { pageHooks, placeOfPage } from '../live/page-of-run.js';
 import { Frames } from '../run/frames.js';
 import { hostRun, type RunOutcome, softwareVersion } from '../run/host-run.js';
 import { planRun, type RunPlan, type RunWish } from '../run/plan.js';
 import { summarise } from '../run/summarise.js';
-import { type LivePage, type PageWish, readPageWish } from '../live/live-page.js';
-import { pageHooks, placeOfPage } from '../live/page-of-run.js';
 import { eventText } from '../terminal/event-text.js';
 import { renderStart } from '../terminal/start-up.js';
 import { styleOf } from '../terminal/style.js';
@@ -68,9 +68,19 @@ Ctrl-C ends a run cleanly at any moment, with the recording whole.`,
       const wish: RunWish = { ...flags, bench, record: flags.record === false ? '' : flags.record };
       const plan = planRun(wish);
       if (flags.report !== undefined && plan.recording === undefined)
-        throw new BuildError([{ path: '--report', what: 'a report is made from the recording, and nothing is recorded', remedy: 'leave --no-record away' }]);
+        throw new BuildError([
+          {
+            path: '--report',
+            what: 'a report is made from the recording, and nothing is recorded',
+            remedy: 'leave --no-record away',
+          },
+        ]);
       const page = readPageWish(flags.page, flags.control ?? false, flags.liveName);
-      process.exitCode = await runAndShow(plan, { json: flags.json ?? false, ...(flags.report === undefined ? {} : { report: flags.report }), ...(page === undefined ? {} : { page }) });
+      process.exitCode = await runAndShow(plan, {
+        json: flags.json ?? false,
+        ...(flags.report === undefined ? {} : { report: flags.report }),
+        ...(page === undefined ? {} : { page }),
+      });
     });
 }
 
@@ -140,7 +150,10 @@ async function runShown(plan: RunPlan, options: ShowOptions, page: LivePage | un
   if (outcome.failed) complainAboutLoop(outcome);
   const final = outcome.recordingFailure === undefined ? summary : summarise(outcome);
   if (json) process.stdout.write(`${JSON.stringify(final)}\n`);
-  else if (outcome.done) process.stdout.write(renderSummary(final, process.stdout.columns ?? 80, styleOf(process.stdout), deriveCommand(final.recording)));
+  else if (outcome.done)
+    process.stdout.write(
+      renderSummary(final, process.stdout.columns ?? 80, styleOf(process.stdout), deriveCommand(final.recording)),
+    );
   if (options.report !== undefined && final.recording !== null && outcome.recordingFailure === undefined)
     writeReports(final.recording, { to: options.report });
   return final.exitCode;
@@ -175,7 +188,9 @@ function startText(plan: RunPlan, columns: number, page: string | undefined): st
       recording: plan.recording ?? null,
       ...(page === undefined ? {} : { page }),
       remarks: spec.remarks.map((remark) => `${remark.path}: ${remark.what}`),
-      relief: Object.fromEntries(spec.watched.flatMap((input) => (input.relief ? [[input.path, input.relief.setting]] : []))),
+      relief: Object.fromEntries(
+        spec.watched.flatMap((input) => (input.relief ? [[input.path, input.relief.setting]] : [])),
+      ),
     },
     columns,
     styleOf(process.stdout),
@@ -185,7 +200,8 @@ function startText(plan: RunPlan, columns: number, page: string | undefined): st
 function complainAboutLoop(outcome: RunOutcome): void {
   process.stderr.write(`error ${outcome.failed!.what}\n`);
   if (outcome.controllerEnded !== undefined) process.stderr.write(`error the controller ${outcome.controllerEnded}\n`);
-  if (outcome.failed!.code === exitCode.unfinished && outcome.recording !== undefined) process.stderr.write(`what was recorded until then is in ${outcome.recording}\n`);
+  if (outcome.failed!.code === exitCode.unfinished && outcome.recording !== undefined)
+    process.stderr.write(`what was recorded until then is in ${outcome.recording}\n`);
 }
 
 function pace(value: string): 'live' | 'fast' {
@@ -194,7 +210,10 @@ function pace(value: string): 'live' | 'fast' {
 }
 
 /** Collects `NAME=VALUE`. */
-export function setting(value: string, before: Readonly<Record<string, string>> = {}): Readonly<Record<string, string>> {
+export function setting(
+  value: string,
+  before: Readonly<Record<string, string>> = {},
+): Readonly<Record<string, string>> {
   const at = value.indexOf('=');
   if (at < 1) throw new InvalidArgumentError('write NAME=VALUE');
   return { ...before, [value.slice(0, at).trim()]: value.slice(at + 1).trim() };

@@ -16,10 +16,14 @@ export function wireCommand(): Command {
     .option('--table <FILE.html>', 'a page of all messages and signals')
     .option('--dbc <FILE.dbc>', 'CAN database of a link that is CAN')
     .option('--link <NAME>', 'the link of the database; default: the first that is CAN')
-    .addHelpText('after', '\nExample:\n  oilspring wire configs/harbour-truck/bench.yaml --c truck.h --table truck.html')
+    .addHelpText(
+      'after',
+      '\nExample:\n  oilspring wire configs/harbour-truck/bench.yaml --c truck.h --table truck.html',
+    )
     .action((bench: string, options: { c?: string; table?: string; dbc?: string; link?: string }) => {
       const { spec } = readBenchFile(bench);
-      if (options.c === undefined && options.table === undefined && options.dbc === undefined) throw new CommandError('say what to write: --c FILE.h, --table FILE.html, --dbc FILE.dbc');
+      if (options.c === undefined && options.table === undefined && options.dbc === undefined)
+        throw new CommandError('say what to write: --c FILE.h, --table FILE.html, --dbc FILE.dbc');
       if (spec.map.messages.length === 0) throw new CommandError(`${bench} has no messages: there is nothing to write`);
       const write = (file: string, text: string | Uint8Array) => {
         writeFileSync(file, text);
@@ -29,7 +33,10 @@ export function wireCommand(): Command {
       if (options.dbc !== undefined) {
         const link = options.link ?? spec.map.links.find((one) => one.kind !== 'udp')?.name;
         const found = spec.map.links.find((one) => one.name === link);
-        if (!link || !found || found.kind === 'udp') throw new CommandError(`${link === undefined ? `${bench} has no link that is CAN` : `link ${link} is not CAN`}: a CAN database needs one`);
+        if (!link || !found || found.kind === 'udp')
+          throw new CommandError(
+            `${link === undefined ? `${bench} has no link that is CAN` : `link ${link} is not CAN`}: a CAN database needs one`,
+          );
         write(options.dbc, encodeDatabase(writeDatabase(databaseOf(spec.map, link, { step: spec.step }))));
       }
       if (options.table !== undefined) write(options.table, mapTable(spec.map, spec.name, spec.step));

@@ -17,8 +17,14 @@ export interface LoopControl {
   readonly progress: Float64Array;
 }
 
-export function createLoopControl(memory: SharedArrayBuffer = new SharedArrayBuffer(4 * CONTROL.words + 8 * PROGRESS.words)): LoopControl & { memory: SharedArrayBuffer } {
-  return { memory, control: new Int32Array(memory, 0, CONTROL.words), progress: new Float64Array(memory, 4 * CONTROL.words, PROGRESS.words) };
+export function createLoopControl(
+  memory: SharedArrayBuffer = new SharedArrayBuffer(4 * CONTROL.words + 8 * PROGRESS.words),
+): LoopControl & { memory: SharedArrayBuffer } {
+  return {
+    memory,
+    control: new Int32Array(memory, 0, CONTROL.words),
+    progress: new Float64Array(memory, 4 * CONTROL.words, PROGRESS.words),
+  };
 }
 
 export interface LoopOptions {

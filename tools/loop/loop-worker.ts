@@ -1,10 +1,12 @@
 import { parentPort, workerData } from 'node:worker_threads';
 import { type Assembly, assemble } from '../../configs/assemble.js';
 import { readBench } from '../../configs/bench.js';
+import { catalogue as library } from '../../configs/catalogue.js';
 import { memoryFiles } from '../../configs/files.js';
 import { globTest } from '../../configs/signal-list.js';
 import { BuildError } from '../../runtime/contract.js';
 import { noHands } from '../../runtime/hand.js';
+import { HandRing } from '../../runtime/hand-ring.js';
 import { eachSignal } from '../../runtime/judge/formula.js';
 import { CollectionMeter, collectNow } from '../../runtime/realtime/collection-meter.js';
 import { whyNotLive } from '../../runtime/realtime/ffi.js';
@@ -13,10 +15,8 @@ import { lockMemory } from '../../runtime/realtime/memory-lock.js';
 import { Pacer } from '../../runtime/realtime/pacer.js';
 import { enterScheduling } from '../../runtime/realtime/scheduling.js';
 import { TimingRecord } from '../../runtime/realtime/timing-record.js';
-import { HandRing } from '../../runtime/hand-ring.js';
 import { RingJournal } from '../../runtime/ring-journal.js';
 import { noMeter } from '../../runtime/tick.js';
-import { catalogue as library } from '../../configs/catalogue.js';
 import { attachLinks } from './attach-links.js';
 import { loadController } from './controller-module.js';
 import { CONTROL, createLoopControl, runLoop } from './engine.js';
@@ -49,7 +49,8 @@ void main(workerData as RunOrder)
   });
 
 async function main(order: RunOrder): Promise<void> {
-  if (order.pace === 'live' && whyNotLive() !== '') throw new BuildError([{ path: 'run --pace live', what: whyNotLive(), remedy: 'use --pace fast here' }]);
+  if (order.pace === 'live' && whyNotLive() !== '')
+    throw new BuildError([{ path: 'run --pace live', what: whyNotLive(), remedy: 'use --pace fast here' }]);
   const began = performance.now();
   const texts = Object.fromEntries(order.sources.map((source) => [source.path, source.text]));
   const spec = readBench(order.sources[0]!.path, library, memoryFiles(texts));
@@ -61,7 +62,9 @@ async function main(order: RunOrder): Promise<void> {
   const journal = new RingJournal(order.ring, selection);
   const board = statusBoard(assembly);
   const peaks = Int32Array.from(order.peaks, (path) => requireSignal(assembly, path));
-  const pacer = live ? new Pacer({ period: Math.round(spec.step * 1e9), record: new TimingRecord(order.timing) }) : undefined;
+  const pacer = live
+    ? new Pacer({ period: Math.round(spec.step * 1e9), record: new TimingRecord(order.timing) })
+    : undefined;
   const lateness = assembly.table.find('timing.lateness');
   const timingSignals = live && lateness >= 0 ? { lateness, step: assembly.table.find('timing.step') } : undefined;
   const meter = order.profile ? new StageClock() : undefined;
@@ -75,7 +78,10 @@ async function main(order: RunOrder): Promise<void> {
       assembly,
       selection,
       partner: order.controller.kind,
-      factory: spec.controller?.module === undefined || spec.map.links.length === 0 ? undefined : await loadController(order.folder, spec.controller.module),
+      factory:
+        spec.controller?.module === undefined || spec.map.links.length === 0
+          ? undefined
+          : await loadController(order.folder, spec.controller.module),
       hands: order.hands !== undefined,
       board: statusBoard(assembly).writer,
       peaks,
@@ -99,7 +105,12 @@ async function main(order: RunOrder): Promise<void> {
     collectNow();
     const idle = holdIdleStates();
     taken.push({ restore: () => idle.release() });
-    const memory = lockMemory([assembly.block, assembly.signals, new Uint8Array(order.ring.memory), new Uint8Array(order.timing)]);
+    const memory = lockMemory([
+      assembly.block,
+      assembly.signals,
+      new Uint8Array(order.ring.memory),
+      new Uint8Array(order.timing),
+    ]);
     taken.push({ restore: () => memory.release() });
     const scheduling = enterScheduling(order.core === undefined ? {} : { core: order.core });
     taken.push(scheduling);
@@ -205,5 +216,11 @@ function requireSignal(assembly: Assembly, path: string): number {
   const index = assembly.table.find(path);
   if (index >= 0) return index;
   const near = assembly.table.nearest(path);
-  throw new BuildError([{ path: 'record.signals', what: `no signal \`${path}\``, remedy: near.length > 0 ? `did you mean ${near.join(' or ')}?` : 'see `oilspring list signals BENCH`' }]);
+  throw new BuildError([
+    {
+      path: 'record.signals',
+      what: `no signal \`${path}\``,
+      remedy: near.length > 0 ? `did you mean ${near.join(' or ')}?` : 'see `oilspring list signals BENCH`',
+    },
+  ]);
 }

@@ -1,8 +1,8 @@
 import type { EnergyPart } from '../../runtime/energy-parts.js';
 import type { RequirementResult } from '../../runtime/judge/result.js';
 import type { CodeReport } from '../../runtime/realtime/code-watch.js';
-import type { ScriptSpec } from '../../runtime/script.js';
 import type { RingHandle } from '../../runtime/ring.js';
+import type { ScriptSpec } from '../../runtime/script.js';
 import type { BoardHandle } from '../../runtime/status-board.js';
 import type { WatchWarning } from '../../runtime/watch-log.js';
 
@@ -20,7 +20,10 @@ export interface RunOrder {
   /**
    * Who answers: a module in the loop thread, a process over UDP (in lockstep at fast pace), or nobody.
    */
-  readonly controller: { readonly kind: 'module'; readonly file: string } | { readonly kind: 'udp' } | { readonly kind: 'none' };
+  readonly controller:
+    | { readonly kind: 'module'; readonly file: string }
+    | { readonly kind: 'udp' }
+    | { readonly kind: 'none' };
   readonly ring: RingHandle;
   readonly control: SharedArrayBuffer;
   /** Where hands come from; undefined: none may act. */
@@ -41,11 +44,20 @@ export interface RunOrder {
 export interface RunReady {
   readonly kind: 'ready';
   /** What is recorded, in the order of the rows. */
-  readonly signals: readonly { readonly path: string; readonly unit: string; readonly about: string; readonly group: string }[];
+  readonly signals: readonly {
+    readonly path: string;
+    readonly unit: string;
+    readonly about: string;
+    readonly group: string;
+  }[];
   /** Paths of all signals, in the order of `last`. */
   readonly paths: readonly string[];
   readonly events: {
-    readonly kinds: readonly { readonly name: string; readonly severity: 'note' | 'warning' | 'alarm' | 'error'; readonly text: string }[];
+    readonly kinds: readonly {
+      readonly name: string;
+      readonly severity: 'note' | 'warning' | 'alarm' | 'error';
+      readonly text: string;
+    }[];
     readonly subjects: readonly string[];
   };
   /** Names of what inputs come from: the links, then `hands`. */
@@ -86,7 +98,12 @@ export interface RunDone {
   readonly processor: number;
   readonly hash: string;
   readonly peaks: Readonly<Record<string, number>>;
-  readonly ledger: { readonly energyResidual: number; readonly oilResidual: number; readonly turnover: number; readonly stuffs: Readonly<Record<string, number>> };
+  readonly ledger: {
+    readonly energyResidual: number;
+    readonly oilResidual: number;
+    readonly turnover: number;
+    readonly stuffs: Readonly<Record<string, number>>;
+  };
   /** Whether the code of the loop stayed what it was at the first counted tick. */
   readonly code: CodeReport;
   readonly collections: number;
@@ -96,7 +113,12 @@ export interface RunDone {
   readonly replaced: number;
   readonly overflows: number;
   readonly dropped: number;
-  readonly stages: readonly { readonly stage: string; readonly p50: number; readonly p99: number; readonly max: number }[];
+  readonly stages: readonly {
+    readonly stage: string;
+    readonly p50: number;
+    readonly p99: number;
+    readonly max: number;
+  }[];
   /** Last values of all signals. */
   readonly last: Float64Array;
   readonly warnings: readonly WatchWarning[];

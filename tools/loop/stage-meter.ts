@@ -1,5 +1,5 @@
-import { Histogram } from '../../runtime/realtime/histogram.js';
 import { Clock } from '../../runtime/realtime/clock.js';
+import { Histogram } from '../../runtime/realtime/histogram.js';
 import { type StageMeter, stages } from '../../runtime/tick.js';
 
 /** Measures each stage of the tick on the loop thread, without allocation. */

@@ -221,13 +221,11 @@ function governor(machine: Machine): Finding {
 function idleStates(machine: Machine): Finding {
   const name = 'idle states';
   const folder = `${CPU}/cpu0/cpuidle`;
-  const states = machine
-    .list(folder)
-    .map((one) => ({
-      name: machine.read(`${folder}/${one}/name`),
-      latency: Number(machine.read(`${folder}/${one}/latency`)),
-      off: machine.read(`${folder}/${one}/disable`) === '1',
-    }));
+  const states = machine.list(folder).map((one) => ({
+    name: machine.read(`${folder}/${one}/name`),
+    latency: Number(machine.read(`${folder}/${one}/latency`)),
+    off: machine.read(`${folder}/${one}/disable`) === '1',
+  }));
   if (states.length === 0)
     return {
       name,

@@ -16,7 +16,12 @@ export class ControllerChild {
     const [program, ...words] =
       command.length > 0
         ? command
-        : [process.execPath, path.join(packageRoot(), 'dist', 'tools', 'controller.js'), path.resolve(plan.wish.bench), ...(lockstep ? ['--lockstep'] : [])];
+        : [
+            process.execPath,
+            path.join(packageRoot(), 'dist', 'tools', 'controller.js'),
+            path.resolve(plan.wish.bench),
+            ...(lockstep ? ['--lockstep'] : []),
+          ];
     this.child = spawn(program!, words, {
       cwd: command.length > 0 ? plan.folder : process.cwd(),
       // the channel tells our own controller when this process is gone, however it went
@@ -32,7 +37,8 @@ export class ControllerChild {
       this.ended = `cannot be started: ${error.message}`;
     });
     this.child.on('exit', (code, signal) => {
-      if (!this.stopping) this.ended ??= `ended with ${signal ?? `exit code ${code}`}${this.words === '' ? '' : `: ${this.words}`}`;
+      if (!this.stopping)
+        this.ended ??= `ended with ${signal ?? `exit code ${code}`}${this.words === '' ? '' : `: ${this.words}`}`;
     });
   }
 

@@ -50,19 +50,32 @@ export class Frames {
       pressures: this.pressures(),
       charges: this.charges(),
       links: this.links(),
-      ...(live && timing.lateness.max > 0 ? { timing: { lateness: timing.lateness, step: timing.step, overruns: timing.overruns, drift: timing.drift } } : {}),
+      ...(live && timing.lateness.max > 0
+        ? { timing: { lateness: timing.lateness, step: timing.step, overruns: timing.overruns, drift: timing.drift } }
+        : {}),
       warnings: { open: this.value('watch.count') ?? 0, present: this.present() },
     };
   }
 
   note(
-    event: { readonly tick: number; readonly code: number; readonly subject: number; readonly a: number; readonly b: number; readonly c: number },
+    event: {
+      readonly tick: number;
+      readonly code: number;
+      readonly subject: number;
+      readonly a: number;
+      readonly b: number;
+      readonly c: number;
+    },
     text: (kind: EventKind, subject: string, a: number, b: number, c: number) => string,
   ): TerminalNote | undefined {
     const { ready, plan } = this.view;
     const kind = ready?.events.kinds[event.code];
     if (!ready || !kind || quietHandEvents.includes(kind.name)) return undefined;
-    return { time: event.tick * plan.spec.step, severity: kind.severity, text: text(kind, ready.events.subjects[event.subject] ?? '?', event.a, event.b, event.c) };
+    return {
+      time: event.tick * plan.spec.step,
+      severity: kind.severity,
+      text: text(kind, ready.events.subjects[event.subject] ?? '?', event.a, event.b, event.c),
+    };
   }
 
   private value(path: string): number | undefined {
@@ -117,7 +130,10 @@ export class Frames {
             label: input.path.replace(/\.pressure$/, ''),
             value,
             peak: this.value(`watch.${input.path}.peak`) ?? value,
-            level: Math.min(watchLevelNames.length - 1, Math.max(0, Math.round(this.value(`watch.${input.path}.level`) ?? 0))),
+            level: Math.min(
+              watchLevelNames.length - 1,
+              Math.max(0, Math.round(this.value(`watch.${input.path}.level`) ?? 0)),
+            ),
             ...(timeToRelief === undefined || timeToRelief > 1e5 ? {} : { timeToRelief }),
             settings: pressureSettings(input),
           },
@@ -131,7 +147,9 @@ export class Frames {
       .flatMap(({ name }) => {
         const charge = this.value(`${name}.stateOfCharge`);
         const gasTemperature = this.value(`${name}.gasTemperature`);
-        return charge === undefined ? [] : [{ label: name, charge, ...(gasTemperature === undefined ? {} : { gasTemperature }) }];
+        return charge === undefined
+          ? []
+          : [{ label: name, charge, ...(gasTemperature === undefined ? {} : { gasTemperature }) }];
       });
   }
 
@@ -139,14 +157,22 @@ export class Frames {
     const { spec } = this.view.plan;
     const tick = this.view.tick;
     return spec.map.links.map((link) => {
-      const received = spec.map.messages.filter((message) => message.link === link.name && message.direction === 'received');
-      const ages = received.map((message) => this.value(`${message.name}.age`)).filter((age): age is number => age !== undefined);
-      const sum = (name: string) => received.reduce((total, message) => total + (this.value(`${message.name}.${name}`) ?? 0), 0);
+      const received = spec.map.messages.filter(
+        (message) => message.link === link.name && message.direction === 'received',
+      );
+      const ages = received
+        .map((message) => this.value(`${message.name}.age`))
+        .filter((age): age is number => age !== undefined);
+      const sum = (name: string) =>
+        received.reduce((total, message) => total + (this.value(`${message.name}.${name}`) ?? 0), 0);
       const count = sum('received');
       const before = this.counts.get(link.name);
       let rate = before?.rate ?? 0;
       if (!before || tick - before.tick >= 1 / spec.step || count < before.count) {
-        rate = before && tick > before.tick && count >= before.count ? (count - before.count) / ((tick - before.tick) * spec.step) : rate;
+        rate =
+          before && tick > before.tick && count >= before.count
+            ? (count - before.count) / ((tick - before.tick) * spec.step)
+            : rate;
         this.counts.set(link.name, { tick, count, rate });
       }
       const silent = received.some((message) => (this.value(`${message.name}.timedOut`) ?? 0) > 0);

@@ -4,13 +4,13 @@ import { fileURLToPath } from 'node:url';
 import { Worker } from 'node:worker_threads';
 import { machineFacts } from '../../runtime/realtime/machine-facts.js';
 import { TimingRecord } from '../../runtime/realtime/timing-record.js';
+import { FORMAT, type RecordingHeader } from '../../runtime/recording/format.js';
 import { Recorder } from '../../runtime/recording/recorder.js';
-import { type RecordingHeader, FORMAT } from '../../runtime/recording/format.js';
 import { RecordingWriter } from '../../runtime/recording/writer.js';
 import { createRing } from '../../runtime/ring.js';
 import { BoardReader } from '../../runtime/status-board.js';
 import { packageRoot } from '../loop/controller-module.js';
-import { CONTROL, createLoopControl, phases, PROGRESS } from '../loop/engine.js';
+import { CONTROL, createLoopControl, PROGRESS, phases } from '../loop/engine.js';
 import type { LoopMessage, RunDone, RunFailed, RunOrder, RunReady } from '../loop/run-order.js';
 import { answerText, keptAnswer } from '../readiness/answer.js';
 import { ControllerChild } from './controller-child.js';
@@ -44,7 +44,17 @@ export interface RunHooks {
   onRows?(view: RunView, ticks: Float64Array, values: Float32Array, count: number): void;
   /** The last row of each look at the ring, and each event. */
   onRow?(view: RunView, tick: number, values: Float32Array): void;
-  onEvent?(view: RunView, event: { readonly tick: number; readonly code: number; readonly subject: number; readonly a: number; readonly b: number; readonly c: number }): void;
+  onEvent?(
+    view: RunView,
+    event: {
+      readonly tick: number;
+      readonly code: number;
+      readonly subject: number;
+      readonly a: number;
+      readonly b: number;
+      readonly c: number;
+    },
+  ): void;
   /** From the host's timer, about every 200 ms. */
   onTimer?(view: RunView): void;
   readonly abort?: AbortSignal;
@@ -99,7 +109,10 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     core: wish.core,
     ordered: performance.timeOrigin + began,
   };
-  const child = plan.controller.kind === 'process' && plan.controller.command !== undefined ? new ControllerChild(plan, plan.controller.command) : undefined;
+  const child =
+    plan.controller.kind === 'process' && plan.controller.command !== undefined
+      ? new ControllerChild(plan, plan.controller.command)
+      : undefined;
   let ready: RunReady | undefined;
   let done: RunDone | undefined;
   let failed: RunFailed | undefined;
@@ -138,7 +151,11 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
   };
   hooks.abort?.addEventListener('abort', stop);
   const here = fileURLToPath(import.meta.url);
-  const worker = new Worker(path.join(path.dirname(here), '..', 'loop', 'loop-worker.js'), { workerData: order, stdout: false, stderr: false });
+  const worker = new Worker(path.join(path.dirname(here), '..', 'loop', 'loop-worker.js'), {
+    workerData: order,
+    stdout: false,
+    stderr: false,
+  });
   const timer = setInterval(() => {
     if (startUp === 0 && Atomics.load(shared.control, CONTROL.phase) >= 3) startUp = (performance.now() - began) / 1000;
     hooks.onTimer?.(view);
@@ -229,7 +246,10 @@ function headerOf(plan: RunPlan, ready: RunReady): RecordingHeader {
       ...(wish.pace === 'live' ? { readiness: answerText(keptAnswer()) } : {}),
     },
     bench: { name: spec.name, files: plan.benchSources.map((source) => ({ path: source.path, text: source.text })) },
-    scenario: plan.scenarioSources.length === 0 ? null : { path: plan.scenarioSources[0]!.path, text: plan.scenarioSources[0]!.text },
+    scenario:
+      plan.scenarioSources.length === 0
+        ? null
+        : { path: plan.scenarioSources[0]!.path, text: plan.scenarioSources[0]!.text },
     seed: plan.seed,
     step: spec.step,
     pace: wish.pace,

@@ -3,8 +3,8 @@ import { readBench } from '../../configs/bench.js';
 import type { BenchSpec } from '../../configs/bench-spec.js';
 import { catalogue } from '../../configs/catalogue.js';
 import { diskFiles, type Files } from '../../configs/files.js';
-import { readScenario } from '../../configs/scenario.js';
 import { parseQuantity } from '../../configs/quantity.js';
+import { readScenario } from '../../configs/scenario.js';
 import type { SourceText } from '../../configs/source.js';
 import { BuildError } from '../../runtime/contract.js';
 import { emptyScript, type ScriptSpec } from '../../runtime/script.js';
@@ -37,13 +37,19 @@ export interface RunPlan {
   readonly folder: string;
   readonly ticks: number;
   readonly seed: number;
-  readonly controller: { readonly kind: 'module'; readonly file: string } | { readonly kind: 'process'; readonly command: readonly string[] | undefined } | { readonly kind: 'none' };
+  readonly controller:
+    | { readonly kind: 'module'; readonly file: string }
+    | { readonly kind: 'process'; readonly command: readonly string[] | undefined }
+    | { readonly kind: 'none' };
   readonly recording: string | undefined;
 }
 
 /** Files below a folder, by names relative to it: what is read of a bench keeps the names that a recording carries. */
 export function filesIn(folder: string): Files {
-  return { read: (name) => diskFiles.read(path.join(folder, name)), list: (name) => diskFiles.list(path.join(folder, name)) };
+  return {
+    read: (name) => diskFiles.read(path.join(folder, name)),
+    list: (name) => diskFiles.list(path.join(folder, name)),
+  };
 }
 
 export function readBenchFile(file: string): { spec: BenchSpec; folder: string; name: string } {
@@ -54,10 +60,16 @@ export function readBenchFile(file: string): { spec: BenchSpec; folder: string; 
 export function planRun(wish: RunWish): RunPlan {
   const { spec, folder } = readBenchFile(wish.bench);
   const scenarioFile = wish.scenario ?? (spec.duty === undefined ? undefined : path.join(folder, spec.duty));
-  const scenario = scenarioFile === undefined ? undefined : readScenario(scenarioFile, spec, diskFiles, { case: wish.case, set: wish.set });
+  const scenario =
+    scenarioFile === undefined
+      ? undefined
+      : readScenario(scenarioFile, spec, diskFiles, { case: wish.case, set: wish.set });
   const script = scenario?.script ?? emptyScript;
   const ticks = wish.for === undefined ? script.ticks : ticksOf(wish.for, spec.step);
-  if (ticks === 0) throw new BuildError([{ path: 'run', what: 'nothing says how long it runs', remedy: 'give --for 20s, or a scenario' }]);
+  if (ticks === 0)
+    throw new BuildError([
+      { path: 'run', what: 'nothing says how long it runs', remedy: 'give --for 20s, or a scenario' },
+    ]);
   return {
     wish,
     spec,
@@ -83,7 +95,9 @@ function ticksOf(text: string, step: number): number {
     const seconds = parseQuantity(spaced, { unit: 's' }).value;
     return Math.max(1, Math.round(seconds / step));
   } catch (error) {
-    throw new BuildError([{ path: '--for', what: (error as Error).message, value: text, remedy: 'write it as 20s or 2 min' }]);
+    throw new BuildError([
+      { path: '--for', what: (error as Error).message, value: text, remedy: 'write it as 20s or 2 min' },
+    ]);
   }
 }
 
@@ -92,7 +106,14 @@ function chooseController(wish: RunWish, spec: BenchSpec): RunPlan['controller']
   const module = spec.controller?.module;
   if (spec.map.links.length === 0 || said === 'none') return { kind: 'none' };
   if (said === 'module') {
-    if (module === undefined) throw new BuildError([{ path: '--controller module', what: 'the bench names no controller module', remedy: 'add controller: { module: FILE } to the bench file' }]);
+    if (module === undefined)
+      throw new BuildError([
+        {
+          path: '--controller module',
+          what: 'the bench names no controller module',
+          remedy: 'add controller: { module: FILE } to the bench file',
+        },
+      ]);
     return { kind: 'module', file: module };
   }
   if (said === 'external') return { kind: 'process', command: undefined };
@@ -105,5 +126,8 @@ function chooseController(wish: RunWish, spec: BenchSpec): RunPlan['controller']
 
 function defaultRecording(name: string): string {
   const stamp = new Date().toISOString().replace(/\..*/, '').replace(/[-:]/g, '').replace('T', '-');
-  return path.join('recordings', `${name.replace(/[^A-Za-z0-9]+/g, '-').replace(/^-|-$/g, '') || 'bench'}-${stamp}.osrec`);
+  return path.join(
+    'recordings',
+    `${name.replace(/[^A-Za-z0-9]+/g, '-').replace(/^-|-$/g, '') || 'bench'}-${stamp}.osrec`,
+  );
 }

@@ -62,8 +62,12 @@ function derive(recording: Recording, onProgress: (share: number) => boolean): R
   const handLink = spec.map.links.length;
   if (header.links.length > handLink) assembly.hands.source = { poll: (into) => inputs.next(tick, handLink, into) };
   const remarks: string[] = [];
-  if (header.software.node !== process.version) remarks.push(`recorded with Node ${header.software.node}, derived with ${process.version}: exp, tanh and sin may differ in the last bit`);
-  if (header.software.version !== softwareVersion()) remarks.push(`recorded with oilspring ${header.software.version}, derived with ${softwareVersion()}`);
+  if (header.software.node !== process.version)
+    remarks.push(
+      `recorded with Node ${header.software.node}, derived with ${process.version}: exp, tanh and sin may differ in the last bit`,
+    );
+  if (header.software.version !== softwareVersion())
+    remarks.push(`recorded with oilspring ${header.software.version}, derived with ${softwareVersion()}`);
   if (overview.ending.how !== 'complete') remarks.push(`the recording ${overview.ending.how}: ${overview.ending.what}`);
 
   const last = overview.lastTick;
@@ -82,9 +86,25 @@ function derive(recording: Recording, onProgress: (share: number) => boolean): R
       // on to the next snapshot, to name the states
       const snapshot = states.snapshot(tick);
       if (snapshot !== undefined) {
-        const different = Array.from(snapshot, (recorded, i) => ({ path: assembly.layout.path(i), recorded, derived: assembly.block[i]! })).filter((one) => !Object.is(one.recorded, one.derived));
+        const different = Array.from(snapshot, (recorded, i) => ({
+          path: assembly.layout.path(i),
+          recorded,
+          derived: assembly.block[i]!,
+        })).filter((one) => !Object.is(one.recorded, one.derived));
         if (different.length > 0) {
-          return { identical: false, compared, missing, hash: hashNow(), step: header.step, firstTick, snapshotTick: tick, states: different, ending: overview.ending.how, remarks, stopped };
+          return {
+            identical: false,
+            compared,
+            missing,
+            hash: hashNow(),
+            step: header.step,
+            firstTick,
+            snapshotTick: tick,
+            states: different,
+            ending: overview.ending.how,
+            remarks,
+            stopped,
+          };
         }
       }
     }

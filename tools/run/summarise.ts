@@ -16,7 +16,9 @@ export function summarise(outcome: RunOutcome): RunSummary {
   const value = (path: string) => last.get(path) ?? 0;
   const timing = outcome.timing.summary();
   const links = spec.map.links.map((link) => linkOf(plan.spec, link.name, value));
-  const expected = spec.map.messages.filter((message) => message.direction === 'received' && message.every > 0).reduce((sum, message) => sum + ticks / message.every, 0);
+  const expected = spec.map.messages
+    .filter((message) => message.direction === 'received' && message.every > 0)
+    .reduce((sum, message) => sum + ticks / message.every, 0);
   const troubled = links.reduce((sum, link) => sum + link.lost + link.late + link.malformed, 0);
   const broken = failed?.what ?? done?.failure;
   const judgement = judgeRun(
@@ -33,10 +35,18 @@ export function summarise(outcome: RunOutcome): RunSummary {
             measured('drift against wall time', timing.drift, budgets.drift, 's'),
           ]
         : [],
-      frames: expected > 0 && plan.controller.kind !== 'none' ? [measured('share of lost, late and malformed messages', troubled / expected, budgets.lostFrames, '1')] : [],
+      frames:
+        expected > 0 && plan.controller.kind !== 'none'
+          ? [measured('share of lost, late and malformed messages', troubled / expected, budgets.lostFrames, '1')]
+          : [],
       ledger: done
         ? [
-            measured('energy residual as a share of the turnover', done.ledger.energyResidual, budgets.energyResidual, '1'),
+            measured(
+              'energy residual as a share of the turnover',
+              done.ledger.energyResidual,
+              budgets.energyResidual,
+              '1',
+            ),
             measured('oil residual as a share of the oil', done.ledger.oilResidual, budgets.oilResidual, '1'),
           ]
         : [],
@@ -53,10 +63,20 @@ export function summarise(outcome: RunOutcome): RunSummary {
   const energies: { key: string; about: string; value: number }[] = [];
   for (const [path, energy] of last) {
     const match = /^ledger\.(\w+)\.(recovered|returned)$/.exec(path);
-    if (match) energies.push({ key: match[2]!, about: `${match[2] === 'recovered' ? 'taken up' : 'given back'} by ${match[1]}`, value: energy });
+    if (match)
+      energies.push({
+        key: match[2]!,
+        about: `${match[2] === 'recovered' ? 'taken up' : 'given back'} by ${match[1]}`,
+        value: energy,
+      });
   }
   for (const element of spec.circuit.elements) {
-    if (element.kind.kind === 'service-brake') energies.push({ key: 'braked', about: `turned to heat in ${element.name}`, value: value(`${element.name}.brakeEnergy`) });
+    if (element.kind.kind === 'service-brake')
+      energies.push({
+        key: 'braked',
+        about: `turned to heat in ${element.name}`,
+        value: value(`${element.name}.brakeEnergy`),
+      });
   }
   const engine = spec.circuit.elements.find((element) => element.kind.kind === 'combustion-engine');
   return {
@@ -76,14 +96,21 @@ export function summarise(outcome: RunOutcome): RunSummary {
     simulated,
     planned: plan.ticks * step,
     realTimeFactor: done && done.wall > 0 ? simulated / done.wall : 0,
-    timing: { ...timing, measured: live, collections: done?.collections ?? 0, heapGrowth: done && ticks > 0 ? done.heapGrowth / ticks : 0 },
+    timing: {
+      ...timing,
+      measured: live,
+      collections: done?.collections ?? 0,
+      heapGrowth: done && ticks > 0 ? done.heapGrowth / ticks : 0,
+    },
     startUp: { build: 0, warmUp: 0, ...ready?.startUp, total: outcome.startUp },
     ...(live && done ? { code: done.code } : {}),
     scheduling: { policy: ready?.policy ?? 'unknown', words: ready?.scheduling ?? [] },
     processor: { loop: done?.processor ?? 0, all: outcome.processor },
     stages: done?.stages ?? [],
     peaks: done?.peaks ?? {},
-    settings: Object.fromEntries(spec.watched.filter((input) => input.unit === 'Pa').map((input) => [input.path, pressureSettings(input)])),
+    settings: Object.fromEntries(
+      spec.watched.filter((input) => input.unit === 'Pa').map((input) => [input.path, pressureSettings(input)]),
+    ),
     warnings: done?.warnings ?? [],
     ledger: {
       energyResidual: done?.ledger.energyResidual ?? 0,
@@ -94,7 +121,13 @@ export function summarise(outcome: RunOutcome): RunSummary {
     },
     energies,
     energyParts: done?.energy ?? [],
-    fuel: engine === undefined || !done ? null : { mass: value(`${engine.name}.fuelMass`), energy: value(`${engine.name}.fuelMass`) * (engine.parameters['heatingValue'] ?? 0) },
+    fuel:
+      engine === undefined || !done
+        ? null
+        : {
+            mass: value(`${engine.name}.fuelMass`),
+            energy: value(`${engine.name}.fuelMass`) * (engine.parameters['heatingValue'] ?? 0),
+          },
     solver: { refined: done?.refined ?? 0, replaced: done?.replaced ?? 0 },
     links,
     messages: spec.map.messages.map(({ link, name, direction, every }) => ({
@@ -112,7 +145,12 @@ export function summarise(outcome: RunOutcome): RunSummary {
     faults: plan.script.steps
       .slice(0, value('scenario.step'))
       .filter((one) => one.action === 'fault')
-      .map((one) => ({ path: one.target, value: one.value, unit: spec.signals.find((info) => info.path === one.target)?.unit ?? '1', step: one.name })),
+      .map((one) => ({
+        path: one.target,
+        value: one.value,
+        unit: spec.signals.find((info) => info.path === one.target)?.unit ?? '1',
+        step: one.name,
+      })),
     stateHash: done?.hash ?? '',
     recording: outcome.recording ?? null,
     rowsLost: done?.dropped ?? 0,
@@ -125,8 +163,14 @@ function scenarioTrouble({ plan, done }: RunOutcome, value: (path: string) => nu
   const left = value('scenario.timeOuts');
   if (left > 0) trouble.push(`${left} step${left === 1 ? '' : 's'} of the scenario did not come to pass in time`);
   const missing = plan.script.steps.length - value('scenario.step');
-  const whole = done !== undefined && !done.stopped && done.failure === null && done.ticks >= plan.script.ticks && plan.script.ticks > 0;
-  if (whole && missing > 0) trouble.push(`the scenario ended before ${missing === 1 ? 'its last step' : `its last ${missing} steps`} had come`);
+  const whole =
+    done !== undefined &&
+    !done.stopped &&
+    done.failure === null &&
+    done.ticks >= plan.script.ticks &&
+    plan.script.ticks > 0;
+  if (whole && missing > 0)
+    trouble.push(`the scenario ended before ${missing === 1 ? 'its last step' : `its last ${missing} steps`} had come`);
   return trouble;
 }
 
@@ -151,9 +195,16 @@ function measured(name: string, value: number, bound: number, unit: string): Mea
   return { name, value, bound, unit };
 }
 
-function linkOf(spec: RunOutcome['plan']['spec'], name: string, value: (path: string) => number): RunSummary['links'][number] {
+function linkOf(
+  spec: RunOutcome['plan']['spec'],
+  name: string,
+  value: (path: string) => number,
+): RunSummary['links'][number] {
   const own = spec.map.messages.filter((message) => message.link === name);
-  const sum = (direction: string, count: string) => own.filter((message) => message.direction === direction).reduce((total, message) => total + value(`${message.name}.${count}`), 0);
+  const sum = (direction: string, count: string) =>
+    own
+      .filter((message) => message.direction === direction)
+      .reduce((total, message) => total + value(`${message.name}.${count}`), 0);
   const replies = value(`${name}.replies`);
   return {
     name,
@@ -161,7 +212,10 @@ function linkOf(spec: RunOutcome['plan']['spec'], name: string, value: (path: st
     sent: sum('sent', 'sent'),
     lost: sum('received', 'lost'),
     late: sum('received', 'late'),
-    malformed: ['malformed', 'wrongChecksum', 'wrongMap', 'wrongLength'].reduce((total, count) => total + value(`${name}.${count}`), 0),
+    malformed: ['malformed', 'wrongChecksum', 'wrongMap', 'wrongLength'].reduce(
+      (total, count) => total + value(`${name}.${count}`),
+      0,
+    ),
     timeOuts: sum('received', 'timeOuts'),
     oneStepShare: replies > 0 ? value(`${name}.oneStepShare`) : null,
   };

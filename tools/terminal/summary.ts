@@ -82,7 +82,10 @@ function requirementLines(summary: RunSummary, columns: number): Line[] {
     return field('', columns, `- ${id} ${verdict}${room}: ${text}`, tone);
   });
   if (sorted.length <= most) return lines;
-  return [...lines, ...field('', columns, `- and ${sorted.length - most} more that hold, in \`--json\` and the report`)];
+  return [
+    ...lines,
+    ...field('', columns, `- and ${sorted.length - most} more that hold, in \`--json\` and the report`),
+  ];
 }
 
 /** Margins of pressures and temperatures are differences. */

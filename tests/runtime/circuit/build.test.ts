@@ -1,7 +1,18 @@
 import { describe, expect, it } from 'vitest';
 import { branch, store } from '../../../plants/define.js';
 import { BuildError } from '../../../runtime/contract.js';
-import { circuitOf, command, energyNow, energyResidual, expectSameBits, jacobianError, plantOf, reading, stateOf, worstImbalance } from '../../plants/circuit-checks.js';
+import {
+  circuitOf,
+  command,
+  energyNow,
+  energyResidual,
+  expectSameBits,
+  jacobianError,
+  plantOf,
+  reading,
+  stateOf,
+  worstImbalance,
+} from '../../plants/circuit-checks.js';
 
 const laws = {
   soft: function soft(x: number, width: number): number {
@@ -21,7 +32,10 @@ const laws = {
 };
 
 const mass = store({
-  kind: 'mass', about: 'a body', source: 'Newton', ports: { shaft: 'shaft' },
+  kind: 'mass',
+  about: 'a body',
+  source: 'Newton',
+  ports: { shaft: 'shaft' },
   states: { spin: { unit: 'rad/s', about: 'speed', initial: 1 } },
   readings: { rate: { unit: 'rad/s', about: 'speed' } },
   parameters: { inertia: { unit: 'kg m2', about: 'inertia', default: 2 } },
@@ -39,12 +53,18 @@ const mass = store({
 });
 
 const coupling = branch({
-  kind: 'coupling', about: 'a spring and damper', source: 'Hooke', ports: { from: 'shaft', to: 'shaft' },
+  kind: 'coupling',
+  about: 'a spring and damper',
+  source: 'Hooke',
+  ports: { from: 'shaft', to: 'shaft' },
   states: { twist: { unit: 'rad', about: 'twist', initial: 0.1 } },
   memory: { worst: { unit: 'rad', about: 'largest twist so far' } },
   commands: { slack: { unit: '1', about: 'scales the stiffness', rest: 1 } },
   readings: { torque: { unit: 'N m', about: 'torque' }, root: { unit: '1', about: 'a law with its own slope' } },
-  parameters: { stiffness: { unit: 'N m/rad', about: 'stiffness', default: 900 }, damping: { unit: 'N m s/rad', about: 'damping', default: 3 } },
+  parameters: {
+    stiffness: { unit: 'N m/rad', about: 'stiffness', default: 900 },
+    damping: { unit: 'N m s/rad', about: 'damping', default: 3 },
+  },
   laws,
   flows({ from, to, state, derivative, parameter, command, reading, law }) {
     const slip = from.speed - to.speed;
@@ -68,7 +88,14 @@ const coupling = branch({
 });
 
 describe('buildCircuit', () => {
-  const make = () => plantOf(circuitOf({ a: { kind: mass }, b: { kind: mass, parameters: { inertia: 0.5 }, start: { spin: -2 } }, c: { kind: coupling, ports: { from: 'a', to: ['b', 3] } } }));
+  const make = () =>
+    plantOf(
+      circuitOf({
+        a: { kind: mass },
+        b: { kind: mass, parameters: { inertia: 0.5 }, start: { spin: -2 } },
+        c: { kind: coupling, ports: { from: 'a', to: ['b', 3] } },
+      }),
+    );
 
   it('gives the same bits fused and unfused, an exact Jacobian and a balance that closes pointwise', () => {
     const plant = make();
@@ -94,25 +121,109 @@ describe('buildCircuit', () => {
   });
 
   it('alarms in the balance when a torque is false by 1 %', () => {
-    const wrong = branch({ ...(coupling as object), kind: 'false', ports: { from: 'shaft', to: 'shaft' }, flows({ from, to }: any) {
-      const torque = 5 * (from.speed - to.speed);
-      from.torque -= torque;
-      to.torque += 1.01 * torque;
-    }, states: {}, memory: {}, commands: {}, readings: {}, update: undefined, energy: undefined, loss: ({ from, to }: any) => 5 * (from.speed - to.speed) * (from.speed - to.speed) } as never);
-    const plant = plantOf(circuitOf({ a: { kind: mass }, b: { kind: mass, start: { spin: -2 } }, c: { kind: wrong, parameters: {}, ports: { from: 'a', to: 'b' } } }));
+    const wrong = branch({
+      ...(coupling as object),
+      kind: 'false',
+      ports: { from: 'shaft', to: 'shaft' },
+      flows({ from, to }: any) {
+        const torque = 5 * (from.speed - to.speed);
+        from.torque -= torque;
+        to.torque += 1.01 * torque;
+      },
+      states: {},
+      memory: {},
+      commands: {},
+      readings: {},
+      update: undefined,
+      energy: undefined,
+      loss: ({ from, to }: any) => 5 * (from.speed - to.speed) * (from.speed - to.speed),
+    } as never);
+    const plant = plantOf(
+      circuitOf({
+        a: { kind: mass },
+        b: { kind: mass, start: { spin: -2 } },
+        c: { kind: wrong, parameters: {}, ports: { from: 'a', to: 'b' } },
+      }),
+    );
     expect(worstImbalance(plant).relative).toBeGreaterThan(1e-3);
     expect(worstImbalance(plant).element).toContain('c:');
   });
 
   const broken: [string, object, RegExp][] = [
-    ['if', { flows({ from }: any) { if (from.speed > 0) from.torque += 1; } }, /IfStatement is not in the subset in line \d+ .*const/],
-    ['let', { flows({ from }: any) { let x = 1; x += 1; from.torque += x; } }, /`let` is not in the subset/],
-    ['power', { flows({ from }: any) { from.torque += from.speed ** 2; } }, /operator \*\* is not in the subset/],
-    ['unknown member', { flows({ from }: any) { from.torque += from.velocity; } }, /`velocity` is not there to read in line \d+ of the function, `from.velocity`, there are: speed/],
-    ['unknown law', { flows({ from, law }: any) { from.torque += law.missing(1); } }, /no law `missing`/],
-    ['setting a flow', { flows({ from }: any) { from.torque = 1; } }, /`torque` cannot be written here with =/],
-    ['outer name', { flows({ from }: any) { from.torque += outside; } }, /unknown name `outside`/],
-    ['random', { flows({ from }: any) { from.torque += Math.random(); } }, /Math.random is not in the subset/],
+    [
+      'if',
+      {
+        flows({ from }: any) {
+          if (from.speed > 0) from.torque += 1;
+        },
+      },
+      /IfStatement is not in the subset in line \d+ .*const/,
+    ],
+    [
+      'let',
+      {
+        flows({ from }: any) {
+          let x = 1;
+          x += 1;
+          from.torque += x;
+        },
+      },
+      /`let` is not in the subset/,
+    ],
+    [
+      'power',
+      {
+        flows({ from }: any) {
+          from.torque += from.speed ** 2;
+        },
+      },
+      /operator \*\* is not in the subset/,
+    ],
+    [
+      'unknown member',
+      {
+        flows({ from }: any) {
+          from.torque += from.velocity;
+        },
+      },
+      /`velocity` is not there to read in line \d+ of the function, `from.velocity`, there are: speed/,
+    ],
+    [
+      'unknown law',
+      {
+        flows({ from, law }: any) {
+          from.torque += law.missing(1);
+        },
+      },
+      /no law `missing`/,
+    ],
+    [
+      'setting a flow',
+      {
+        flows({ from }: any) {
+          from.torque = 1;
+        },
+      },
+      /`torque` cannot be written here with =/,
+    ],
+    [
+      'outer name',
+      {
+        flows({ from }: any) {
+          from.torque += outside;
+        },
+      },
+      /unknown name `outside`/,
+    ],
+    [
+      'random',
+      {
+        flows({ from }: any) {
+          from.torque += Math.random();
+        },
+      },
+      /Math.random is not in the subset/,
+    ],
   ];
   const outside = 3;
   for (const [name, functions, expected] of broken) {
@@ -129,6 +240,8 @@ describe('buildCircuit', () => {
     });
   }
   it('finds all wiring faults at once', () => {
-    expect(() => circuitOf({ a: { kind: mass }, c: { kind: coupling, ports: { from: 'nowhere' } } })).toThrow(/c.from: no store `nowhere`.*\n.*c.to: port is not connected/);
+    expect(() => circuitOf({ a: { kind: mass }, c: { kind: coupling, ports: { from: 'nowhere' } } })).toThrow(
+      /c.from: no store `nowhere`.*\n.*c.to: port is not connected/,
+    );
   });
 });

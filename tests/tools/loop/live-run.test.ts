@@ -102,7 +102,8 @@ describe.skipIf(why !== '' || !built)('a live run', () => {
       const gone = new Promise<number | null>((resolve) => child.once('close', (code) => resolve(code)));
       // by processor time, which no other program's load stretches: the warm-up takes some seconds of it; the run is
       // told by the policy of its thread where the process may have it
-      const reached = () => (after === 'building' ? processorTime(child.pid!) > 1.5 : fifo(child.pid!) || processorTime(child.pid!) > 25);
+      const reached = () =>
+        after === 'building' ? processorTime(child.pid!) > 1.5 : fifo(child.pid!) || processorTime(child.pid!) > 25;
       while (!reached() && child.exitCode === null) await new Promise((resolve) => setTimeout(resolve, 20));
       child.kill('SIGTERM');
       await gone;
