@@ -125,7 +125,7 @@ export const combustionEngine = branch({
     const requested = request + drag * (1 - Math.exp(-request / parameter.requestWidth));
     const demand = command.ignition * law.between(Math.max(requested, governor + drag), 0, fullLoad + drag);
     const gross = state.indicatedTorque * law.smoothSwitch(speed, parameter.firingSpeed, 3);
-    const torque = gross - law.slidingTorque(drag, speed, 2);
+    const torque = gross - law.slidingTorque(drag, speed, 1);
     const fuelPower = law.willansFuelPower(gross - drag, drag, forward, parameter.efficiency);
     shaft.torque += torque;
     derivative.indicatedTorque =
@@ -150,7 +150,7 @@ export const combustionEngine = branch({
       parameter.dragPressure + parameter.dragRise * Math.abs(shaft.speed),
       parameter.sweptVolume,
     );
-    return law.slidingTorque(drag, shaft.speed, 2) * shaft.speed;
+    return law.slidingTorque(drag, shaft.speed, 1) * shaft.speed;
   },
   initial: ({ parameter, start }) => ({
     indicatedTorque:

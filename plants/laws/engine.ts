@@ -46,9 +46,10 @@ export function fullLoadTorque(
   return Math.max(rising, 0);
 }
 
-/** 0 well below `threshold` and 1 well above it, over about twice `width`. */
+/** 0 below `threshold` less twice `width` and 1 above `threshold` and twice `width`; smooth between, 3 x^2 - 2 x^3. */
 export function smoothSwitch(x: number, threshold: number, width: number): number {
-  return 0.5 + 0.5 * Math.tanh((x - threshold) / width);
+  const held = Math.max(0, Math.min(1, (x - threshold) * (0.25 / width) + 0.5));
+  return held * held * (3 - 2 * held);
 }
 
 /** `x` held between `least` and `most`. */

@@ -6,12 +6,9 @@
  * z holds any torque below capacity * level without creep. The damping acts on z' and so vanishes in steady slip.
  */
 
-/**
- * Level of friction at a slip: 1 when sliding, `staticFactor` at rest, falling off over `width` (same unit as slip) as
- * 1/(1 + (slip/width)^2), the form of Hess and Soom (J. Tribology 112 (1990) 147).
- */
+/** Level of friction at a slip: 1 when sliding, `staticFactor` at rest, falling off over `width` (same unit as slip). */
 export function stribeckLevel(slip: number, staticFactor: number, width: number): number {
-  return staticFactor === 1 ? 1 : 1 + (staticFactor - 1) / (1 + slip * slip * (1 / (width * width)));
+  return staticFactor === 1 ? 1 : 1 + (staticFactor - 1) * Math.exp(-slip * slip * (1 / (width * width)));
 }
 
 /** Rate of the deflection, 1/s: z' = (w - |w| z / level) / angle. */
