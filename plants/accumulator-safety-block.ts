@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /**
  * Safety block of an accumulator: shut-off valve, equaliser, discharge valve, relief valve.
@@ -61,14 +62,7 @@ export const accumulatorSafetyBlock = branch({
     area: { unit: 'm2', about: 'area of the shut-off valve when open', least: 1e-7, most: 0.01, usual: [2e-5, 1e-3] },
     equaliserArea: { unit: 'm2', about: 'area of the equaliser', default: 3e-6, least: 1e-8, most: 1e-4 },
     dischargeArea: { unit: 'm2', about: 'area of the discharge valve', default: 5e-6, least: 1e-8, most: 1e-4 },
-    dischargeCoefficient: {
-      unit: '1',
-      about: 'discharge coefficient',
-      default: 0.65,
-      least: 0.3,
-      most: 1,
-      usual: [0.6, 0.8],
-    },
+    dischargeCoefficient,
     travelTime: {
       unit: 's',
       about: 'time of each valve from end to end',
@@ -98,14 +92,7 @@ export const accumulatorSafetyBlock = branch({
       default: 1.6667e-5,
       least: 0,
     },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    smoothing,
   },
   starts: {
     open: { unit: '1', about: '1: open at the start', default: 0, least: 0, most: 1 },

@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /** Check valve: opens from `from` to `to` above its cracking difference; its area follows with a lag, so it can slam. */
 export const checkValve = branch({
@@ -25,14 +26,7 @@ export const checkValve = branch({
   },
   parameters: {
     area: { unit: 'm2', about: 'area when open', least: 1e-8, most: 0.01, usual: [1e-6, 2e-3] },
-    dischargeCoefficient: {
-      unit: '1',
-      about: 'discharge coefficient',
-      default: 0.65,
-      least: 0.3,
-      most: 1,
-      usual: [0.6, 0.8],
-    },
+    dischargeCoefficient,
     cracking: {
       unit: 'Pa',
       about: 'difference at which it begins to open',
@@ -52,14 +46,7 @@ export const checkValve = branch({
       usual: [0.5e5, 5e5],
     },
     lag: { unit: 's', about: 'lag of the poppet', default: 0.003, least: 0.0001, most: 1, usual: [0.002, 0.01] },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    smoothing,
   },
   laws: flowLaws,
   flows({ parameter, from, to, state, command, derivative, reading, law }) {

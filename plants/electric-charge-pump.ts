@@ -1,6 +1,7 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
 import * as pumpMotorLaws from './laws/pump-motor.js';
+import { chargePumpParameters } from './shared-parameters.js';
 
 /** The charge pump with a speed-controlled electric motor; the work of the motor comes from outside. */
 export const electricChargePump = branch({
@@ -32,49 +33,7 @@ export const electricChargePump = branch({
     shaftPower: { unit: 'W', about: 'power of the motor' },
   },
   parameters: {
-    displacement: { unit: 'm3', about: 'volume displaced per turn', least: 1e-7, most: 1e-3, usual: [2e-6, 1e-4] },
-    slipCoefficient: {
-      unit: '1',
-      about: 'leakage coefficient Cs after Wilson',
-      default: 2e-8,
-      least: 0,
-      most: 1e-6,
-      usual: [5e-9, 1e-7],
-    },
-    viscousCoefficient: {
-      unit: '1',
-      about: 'viscous friction coefficient Cv after Wilson',
-      default: 1e5,
-      least: 0,
-      most: 1e7,
-      usual: [5e4, 3e5],
-    },
-    frictionCoefficient: {
-      unit: '1',
-      about: 'dry friction coefficient Cf after Wilson',
-      default: 0.1,
-      least: 0,
-      most: 0.5,
-      usual: [0.03, 0.25],
-    },
-    dryTorque: { unit: 'N m', about: 'friction torque without pressure', default: 0.2, least: 0, most: 100 },
-    smoothSpeed: {
-      unit: 'rad/s',
-      about: 'speed over which dry friction changes its sign',
-      default: 1,
-      least: 0.01,
-      most: 20,
-    },
-    cracking: {
-      unit: 'Pa',
-      about: 'outlet pressure at which its relief valve begins to open',
-      least: 1.1e5,
-      most: 1e7,
-      usual: [5e5, 4e6],
-    },
-    fullFlow: { unit: 'Pa', about: 'outlet pressure at the rated flow of its relief valve', least: 1.2e5, most: 2e7 },
-    fullFlowRate: { unit: 'm3/s', about: 'that rated flow', least: 1e-6, most: 0.02, usual: [1e-4, 2e-3] },
-    reliefLag: { unit: 's', about: 'lag of its relief valve', default: 0.005, least: 0.0005, most: 0.5 },
+    ...chargePumpParameters,
     maximumSpeed: { unit: 'rad/s', about: 'greatest speed of the motor', default: 314, least: 1, most: 2000 },
     speedLag: { unit: 's', about: 'lag of the speed', default: 0.2, least: 0.01, most: 10, usual: [0.1, 1] },
   },

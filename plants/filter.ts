@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { smoothing } from './shared-parameters.js';
 
 /**
  * Filter with clogging and a bypass valve. Loss of the element: dp = a mu q + b rho q^2, from its clean difference at
@@ -98,14 +99,7 @@ export const filter = branch({
       least: 0,
       difference: true,
     },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    smoothing,
   },
   starts: {
     loading: {

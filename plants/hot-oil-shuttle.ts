@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /**
  * Hot-oil shuttle of a closed circuit: the side with the lower pressure is connected, over a flushing valve, to `drain`,
@@ -30,14 +31,7 @@ export const hotOilShuttle = branch({
   },
   parameters: {
     area: { unit: 'm2', about: 'area to the drain', least: 1e-8, most: 1e-3, usual: [2e-6, 1e-4] },
-    dischargeCoefficient: {
-      unit: '1',
-      about: 'discharge coefficient',
-      default: 0.65,
-      least: 0.3,
-      most: 1,
-      usual: [0.6, 0.8],
-    },
+    dischargeCoefficient,
     switching: {
       unit: 'Pa',
       about: 'difference between the sides at which it is three quarters over',
@@ -63,14 +57,7 @@ export const hotOilShuttle = branch({
       difference: true,
     },
     lag: { unit: 's', about: 'lag of the shuttle', default: 0.01, least: 0.001, most: 1, usual: [0.005, 0.05] },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    smoothing,
   },
   laws: flowLaws,
   flows({ parameter, a, b, drain, state, command, derivative, reading, law }) {

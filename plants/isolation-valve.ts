@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /**
  * Isolation valve: a request is taken over after the dead time of its pilot stage, the spool then moves at its opening
@@ -37,28 +38,14 @@ export const isolationValve = branch({
   },
   parameters: {
     area: { unit: 'm2', about: 'area when open', least: 1e-8, most: 0.01, usual: [2e-5, 1e-3] },
-    dischargeCoefficient: {
-      unit: '1',
-      about: 'discharge coefficient',
-      default: 0.65,
-      least: 0.3,
-      most: 1,
-      usual: [0.6, 0.8],
-    },
+    dischargeCoefficient,
     opens: { unit: 's', about: 'time to open', default: 0.03, least: 0.001, most: 10, usual: [0.02, 0.1] },
     closes: { unit: 's', about: 'time to close', default: 0.03, least: 0.001, most: 10, usual: [0.02, 0.1] },
     deadTime: { unit: 's', about: 'time until it begins to move', default: 0.01, least: 0, most: 1, usual: [0, 0.04] },
     lag: { unit: 's', about: 'lag at the ends of its way', default: 0.003, least: 0.0001, most: 1 },
     leak: { unit: 'm2', about: 'leak area when closed', default: 0, least: 0, most: 1e-5 },
     atPowerLoss: { unit: '1', about: 'where it goes without power', default: 0, choices: ['closed', 'open', 'holds'] },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    smoothing,
   },
   starts: { position: { unit: '1', about: 'position', default: 0, least: 0, most: 1 } },
   laws: flowLaws,

@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /** A fixed orifice; what it dissipates heats the oil that leaves it. */
 export const orifice = branch({
@@ -13,22 +14,8 @@ export const orifice = branch({
   },
   parameters: {
     area: { unit: 'm2', about: 'area of the bore', least: 1e-9, most: 0.01, usual: [1e-7, 1e-3] },
-    dischargeCoefficient: {
-      unit: '1',
-      about: 'discharge coefficient',
-      default: 0.65,
-      least: 0.3,
-      most: 1,
-      usual: [0.6, 0.8],
-    },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    dischargeCoefficient,
+    smoothing,
   },
   commands: {
     blocked: { unit: '1', about: 'share of the bore that is clogged', rest: 0, least: 0, most: 0.9999, fault: true },

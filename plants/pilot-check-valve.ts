@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /**
  * Pilot-operated check valve. It opens from `from` to `to` like a check valve; pressure at `pilot` pushes a piston of
@@ -31,14 +32,7 @@ export const pilotCheckValve = branch({
   },
   parameters: {
     area: { unit: 'm2', about: 'area when open', least: 1e-8, most: 0.01, usual: [1e-6, 2e-3] },
-    dischargeCoefficient: {
-      unit: '1',
-      about: 'discharge coefficient',
-      default: 0.65,
-      least: 0.3,
-      most: 1,
-      usual: [0.6, 0.8],
-    },
+    dischargeCoefficient,
     pilotRatio: {
       unit: '1',
       about: 'area of the pilot piston over that of the seat',
@@ -66,14 +60,7 @@ export const pilotCheckValve = branch({
       usual: [0.5e5, 10e5],
     },
     lag: { unit: 's', about: 'lag of the poppet', default: 0.005, least: 0.0005, most: 1, usual: [0.003, 0.03] },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    smoothing,
   },
   laws: flowLaws,
   flows({ parameter, from, to, pilot, state, command, derivative, reading, law }) {

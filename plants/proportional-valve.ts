@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /**
  * Proportional valve: the spool follows the request as a second-order system whose speed is limited; the area grows in
@@ -35,14 +36,7 @@ export const proportionalValve = branch({
   },
   parameters: {
     area: { unit: 'm2', about: 'area when open', least: 1e-8, most: 0.01, usual: [5e-6, 5e-4] },
-    dischargeCoefficient: {
-      unit: '1',
-      about: 'discharge coefficient',
-      default: 0.65,
-      least: 0.3,
-      most: 1,
-      usual: [0.6, 0.8],
-    },
+    dischargeCoefficient,
     naturalFrequency: {
       unit: 'rad/s',
       about: 'natural frequency of the spool',
@@ -69,14 +63,7 @@ export const proportionalValve = branch({
       least: 0,
       most: 1,
     },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    smoothing,
   },
   starts: { position: { unit: '1', about: 'position', default: 0, least: 0, most: 1 } },
   laws: flowLaws,

@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { smoothing } from './shared-parameters.js';
 
 /**
  * Relief valve, set by the absolute pressure at its inlet (spring chamber drained to the outside). Closed below
@@ -52,14 +53,7 @@ export const reliefValve = branch({
       default: 1.6667e-5,
       least: 0,
     },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    smoothing,
   },
   laws: flowLaws,
   limits: [

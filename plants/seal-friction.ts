@@ -1,5 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
+import { dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /**
  * Friction of the piston seals of an accumulator together with its port: oil flows only where the pressure difference
@@ -46,22 +47,8 @@ export const sealFriction = branch({
       difference: true,
     },
     area: { unit: 'm2', about: 'area of the port', least: 1e-8, most: 0.05, usual: [1e-4, 2e-3] },
-    dischargeCoefficient: {
-      unit: '1',
-      about: 'discharge coefficient',
-      default: 0.65,
-      least: 0.3,
-      most: 1,
-      usual: [0.6, 0.8],
-    },
-    smoothing: {
-      unit: 'Pa',
-      about: 'pressure difference below which it is laminar',
-      default: 2e4,
-      least: 100,
-      most: 2e5,
-      difference: true,
-    },
+    dischargeCoefficient,
+    smoothing,
   },
   laws: flowLaws,
   flows({ parameter, from, to, command, reading, law }) {

@@ -1,0 +1,69 @@
+import type { ParameterDeclaration } from '../runtime/contract.js';
+
+/** Parameters that several elements declare alike. */
+
+export const dischargeCoefficient = {
+  unit: '1',
+  about: 'discharge coefficient',
+  default: 0.65,
+  least: 0.3,
+  most: 1,
+  usual: [0.6, 0.8],
+} as const satisfies ParameterDeclaration;
+
+/** Of the square root of a stiff orifice: see `orificeMassFlow`. */
+export const smoothing = {
+  unit: 'Pa',
+  about: 'pressure difference below which it is laminar',
+  default: 2e4,
+  least: 100,
+  most: 2e5,
+  difference: true,
+} as const satisfies ParameterDeclaration;
+
+/** A charge pump with its relief valve, whatever drives it. */
+export const chargePumpParameters = {
+  displacement: { unit: 'm3', about: 'volume displaced per turn', least: 1e-7, most: 1e-3, usual: [2e-6, 1e-4] },
+  slipCoefficient: {
+    unit: '1',
+    about: 'leakage coefficient Cs after Wilson',
+    default: 2e-8,
+    least: 0,
+    most: 1e-6,
+    usual: [5e-9, 1e-7],
+  },
+  viscousCoefficient: {
+    unit: '1',
+    about: 'viscous friction coefficient Cv after Wilson',
+    default: 1e5,
+    least: 0,
+    most: 1e7,
+    usual: [5e4, 3e5],
+  },
+  frictionCoefficient: {
+    unit: '1',
+    about: 'dry friction coefficient Cf after Wilson',
+    default: 0.1,
+    least: 0,
+    most: 0.5,
+    usual: [0.03, 0.25],
+  },
+  dryTorque: { unit: 'N m', about: 'friction torque without pressure', default: 0.2, least: 0, most: 100 },
+  smoothSpeed: {
+    unit: 'rad/s',
+    about: 'speed over which dry friction changes its sign',
+    default: 1,
+    least: 0.01,
+    most: 20,
+  },
+  cracking: {
+    unit: 'Pa',
+    about: 'outlet pressure at which its relief valve begins to open',
+    least: 1.1e5,
+    most: 1e7,
+    usual: [5e5, 4e6],
+  },
+  fullFlow: { unit: 'Pa', about: 'outlet pressure at the rated flow of its relief valve', least: 1.2e5, most: 2e7 },
+  fullFlowRate: { unit: 'm3/s', about: 'that rated flow', least: 1e-6, most: 0.02, usual: [1e-4, 2e-3] },
+  reliefLag: { unit: 's', about: 'lag of its relief valve', default: 0.005, least: 0.0005, most: 0.5 },
+} as const satisfies Record<string, ParameterDeclaration>;
