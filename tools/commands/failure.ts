@@ -2,6 +2,7 @@ import pc from 'picocolors';
 import { BuildError, problemText } from '../../runtime/contract.js';
 import { RecordingError } from '../../runtime/recording/format.js';
 import { exitCode } from '../../runtime/verdict.js';
+import { clean } from '../terminal/text.js';
 
 /** Something that the user asked for cannot be had; `code` is the exit code. */
 export class CommandError extends Error {
@@ -37,10 +38,7 @@ export function complain(error: unknown): number {
   return exitCode.unfinished;
 }
 
-/** Text from files and names, without what a terminal would act on. */
-export function printable(text: string): string {
-  return text.replace(control, (character) => `\\x${character.charCodeAt(0).toString(16).padStart(2, '0')}`);
+/** Lines of text from files and names, without what a terminal would act on. */
+function printable(text: string): string {
+  return text.split('\n').map(clean).join('\n');
 }
-
-// biome-ignore lint/suspicious/noControlCharactersInRegex: control characters are what is looked for
-const control = /[\u0000-\u0008\u000b-\u001f\u007f-\u009f]/g;
