@@ -169,6 +169,27 @@ export class Recording {
     }
   }
 
+  /**
+   * The end block, found by hopping from block to block without reading what is in them; undefined when there is none at
+   * the end of the file. Only the end block is checked: `examine` checks everything.
+   */
+  endBlock(): EndBlock | undefined {
+    let at = this.firstBlock;
+    for (let number = 1; this.bytes - at >= FRAME; number += 1) {
+      const length = this.readAt(at, FRAME).readUInt32LE(0);
+      const next = at + FRAME + length;
+      if (length === 0 || length > LARGEST_BLOCK || next > this.bytes) return undefined;
+      if (next === this.bytes) {
+        const found = this.blockAt(at, number);
+        if (typeof found === 'string' || found.fields['k'] !== 'end') return undefined;
+        const block = decodeBlock(found.fields, this.header.signals.length);
+        return block.kind === 'end' ? block : undefined;
+      }
+      at = next;
+    }
+    return undefined;
+  }
+
   close(): void {
     fs.closeSync(this.descriptor);
   }

@@ -23,7 +23,7 @@ export function viewCommand(): Command {
       const stat = statSync(said, { throwIfNoEntry: false });
       if (stat === undefined) throw missing(said, 'there is no such file or folder');
       const folder = stat.isDirectory() ? said : path.dirname(said);
-      const shelf = recordingShelf(folder, stat.isDirectory() ? '.osrec' : path.basename(said));
+      const shelf = recordingShelf(folder, { ending: stat.isDirectory() ? '.osrec' : path.basename(said) });
       const [first] = await shelf.list();
       if (first === undefined)
         throw missing(said, stat.isDirectory() ? 'there is no recording in it' : 'not a recording');

@@ -40,7 +40,7 @@ export function pageHooks(
       source = new RunSource(run, run.ready);
       const folder = plan.recording === undefined ? 'recordings' : path.dirname(plan.recording);
       page
-        .serve(source, recordingShelf(folder))
+        .serve(source, recordingShelf(folder, { writing: plan.recording }))
         .catch((error: Error) => remark(`the live page could not be served: ${error.message}`));
     },
     onRows: (_run, ticks, values, count) => source?.rows(ticks, values, count),

@@ -1,5 +1,5 @@
 import { readdir, stat } from 'node:fs/promises';
-import { join } from 'node:path';
+import { join, resolve } from 'node:path';
 import { setImmediate } from 'node:timers/promises';
 import { Decimator } from '../../bridge/live/decimate.js';
 import type {
@@ -33,14 +33,22 @@ const overviewIntervals = 4000;
 /** Blocks that are read before others get their turn. */
 const blocksAtOnce = 8;
 
-/** The recordings in a folder. A file that is none, or not readable, is left out. */
-export function recordingShelf(folder: string, ending = '.osrec'): RecordingShelf {
+/**
+ * The recordings in a folder. A file that is none, or not readable, is left out. `writing`: the file that this process is
+ * still writing, which has no end yet and is not cut off for that.
+ */
+export function recordingShelf(
+  folder: string,
+  { ending = '.osrec', writing }: { readonly ending?: string; readonly writing?: string | undefined } = {},
+): RecordingShelf {
+  const current = writing === undefined ? undefined : resolve(writing);
   return {
     async list() {
       const names = await readdir(folder).catch(() => [] as string[]);
       const entries: RecordingEntry[] = [];
       for (const name of names.filter((candidate) => candidate.endsWith(ending)).sort()) {
-        const entry = await describe(join(folder, name), name).catch(() => undefined);
+        const file = join(folder, name);
+        const entry = await describe(file, name, resolve(file) === current).catch(() => undefined);
         if (entry !== undefined) entries.push(entry);
       }
       return entries.sort((a, b) => b.startedAt - a.startedAt);
@@ -49,20 +57,25 @@ export function recordingShelf(folder: string, ending = '.osrec'): RecordingShel
   };
 }
 
-async function describe(file: string, name: string): Promise<RecordingEntry> {
+async function describe(file: string, name: string, goesOn: boolean): Promise<RecordingEntry> {
   const facts = await stat(file);
   const recording = new Recording(file);
   try {
     const { header } = recording;
     const script = scriptOf(recording);
     const startedAt = Date.parse(header.created);
+    const summary = recording.endBlock()?.summary;
     return {
       name,
       bench: header.bench.name,
       scenario: script.name,
       startedAt,
-      length: Math.max(0, (facts.mtimeMs - startedAt) / 1000),
-      verdict: '',
+      length:
+        typeof summary?.['simulated'] === 'number'
+          ? summary['simulated']
+          : Math.max(0, (facts.mtimeMs - startedAt) / 1000),
+      verdict:
+        summary !== undefined ? String(summary['verdict'] ?? '') : goesOn ? 'still running' : 'not valid: cut off',
     };
   } finally {
     recording.close();

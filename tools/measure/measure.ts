@@ -12,6 +12,7 @@ import { softwareVersion } from '../run/host-run.js';
 import type { Part, PartResult } from './part.js';
 import { fast } from './parts/fast.js';
 import { lateness } from './parts/lateness.js';
+import { page } from './parts/page.js';
 import { recording } from './parts/recording.js';
 import { replies } from './parts/replies.js';
 import { soak } from './parts/soak.js';
@@ -26,7 +27,7 @@ import { Workshop } from './workshop.js';
  */
 // as in the loop thread
 inlineMore();
-const parts: readonly Part[] = [lateness, step, twin, stages, replies, fast, recording];
+const parts: readonly Part[] = [lateness, step, twin, stages, replies, fast, recording, page];
 
 const program = new Command('measure')
   .description('measures the loop beside cyclictest and a twin in C')

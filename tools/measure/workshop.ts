@@ -13,7 +13,7 @@ import { packageRoot } from '../loop/controller-module.js';
 import { plantInC } from './twin/plant-in-c.js';
 
 /** Ports of measurements: away from those of the ready benches. */
-export const PORTS = { bench: 47710, partner: 47711 } as const;
+export const PORTS = { bench: 47710, partner: 47711, page: 47712 } as const;
 
 /** A folder that goes with the process, and the C compiler. */
 export class Workshop {
@@ -23,6 +23,11 @@ export class Workshop {
   close(): void {
     for (const child of this.children) child.kill('SIGTERM');
     fs.rmSync(this.folder, { recursive: true, force: true });
+  }
+
+  /** As Ctrl-C: what runs ends in good order. */
+  interrupt(): void {
+    for (const child of this.children) child.kill('SIGINT');
   }
 
   file(name: string): string {

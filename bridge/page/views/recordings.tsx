@@ -54,7 +54,9 @@ export function Recordings() {
                   <td>{entry.scenario}</td>
                   <td class="number">{new Date(entry.startedAt).toLocaleString()}</td>
                   <td class="number">{clock(entry.length, 1, 0)}</td>
-                  <td>{entry.verdict}</td>
+                  <td class={`verdict ${shapeOf(entry.verdict).kind}`}>
+                    {shapeOf(entry.verdict).shape} {entry.verdict}
+                  </td>
                   <td>
                     <button type="button" onClick={() => openRecording(entry.name)}>
                       Open<span class="hidden"> {entry.name}</span>
@@ -68,6 +70,14 @@ export function Recordings() {
       )}
     </section>
   );
+}
+
+/** A verdict's shape, so that colour does not say it alone. */
+function shapeOf(verdict: string): { readonly shape: string; readonly kind: string } {
+  if (verdict === 'pass') return { shape: '✓', kind: 'holds' };
+  if (verdict === 'fail') return { shape: '✖', kind: 'violated' };
+  if (verdict.startsWith('not valid')) return { shape: '▲', kind: 'violated' };
+  return { shape: '○', kind: 'open' };
 }
 
 /** The moment of the recording that the page shows. */

@@ -1,4 +1,4 @@
-import { rmSync } from 'node:fs';
+import { readFileSync, rmSync, writeFileSync } from 'node:fs';
 import path from 'node:path';
 import { afterAll, beforeAll, expect, test } from 'vitest';
 import type { RecordingView } from '../../../bridge/live/source.js';
@@ -104,7 +104,7 @@ beforeAll(async () => {
     if (tick % 500 === 0) recorder.drain();
   }
   journal.close();
-  await recorder.finish({ verdict: 'passed' });
+  await recorder.finish({ verdict: 'pass', simulated: 20 });
   view = await recordingShelf(path.dirname(file)).open('round.osrec');
 });
 afterAll(async () => {
@@ -114,8 +114,27 @@ afterAll(async () => {
 
 test('a recording stands on the shelf under its name, and a file that is none does not', async () => {
   const list = await recordingShelf(path.dirname(file)).list();
-  expect(list).toMatchObject([{ name: 'round.osrec', bench: spec.name, scenario: script.name }]);
+  expect(list).toMatchObject([
+    { name: 'round.osrec', bench: spec.name, scenario: script.name, verdict: 'pass', length: 20 },
+  ]);
   expect(await recordingShelf('/nowhere').list()).toEqual([]);
+});
+
+test('the shelf says of a recording without its end that it was cut off, unless it is being written', async () => {
+  const folder = path.dirname(scratchFile('shelf'));
+  const whole = readFileSync(file);
+  const name = path.join(folder, 'cut.osrec');
+  for (const cut of [1, 9, Math.floor(whole.length / 2)]) {
+    writeFileSync(name, whole.subarray(0, whole.length - cut));
+    expect(await recordingShelf(folder).list()).toMatchObject([{ name: 'cut.osrec', verdict: 'not valid: cut off' }]);
+    expect(await recordingShelf(folder, { writing: name }).list()).toMatchObject([{ verdict: 'still running' }]);
+  }
+  // the right length, but not the end that was written
+  const spoilt = Buffer.from(whole);
+  spoilt[spoilt.length - 3]! ^= 1;
+  writeFileSync(name, spoilt);
+  expect(await recordingShelf(folder).list()).toMatchObject([{ verdict: 'not valid: cut off' }]);
+  rmSync(folder, { recursive: true });
 });
 
 test('looking back shows the spike at every width and the value of the very tick', async () => {
