@@ -1,6 +1,7 @@
 import { examineMap } from '../bridge/examine-map.js';
 import { identifierOf, isDirected } from '../bridge/j1939/identifier.js';
 import type { LinkSpec, MapSignal, MessageMap, MessageSpec, Protection } from '../bridge/message-map.js';
+import { spreadPhases } from '../bridge/spread-phases.js';
 import type { Position } from '../runtime/contract.js';
 import { overlappingBits } from './can-bits.js';
 import type { Names } from './elements.js';
@@ -89,7 +90,16 @@ export function finishMessages(
   const messages = pending.messages.map((one) =>
     readMessage(one.name, one.section, one.signals, pending, step, signals, drivers, places),
   );
-  const map: MessageMap = { links: pending.links, messages: messages.filter((message) => message !== undefined) };
+  const withPhase = new Set(pending.messages.filter(({ section }) => section.has('phase')).map(({ name }) => name));
+  const map: MessageMap = {
+    links: pending.links,
+    messages: pending.links
+      .filter((link) => link.kind !== 'udp')
+      .reduce(
+        (all, link) => spreadPhases(all, link, (message) => withPhase.has(message.name)),
+        messages.filter((message) => message !== undefined),
+      ),
+  };
   signals.addCounts(map);
   // What is wrong with the map as a map is said once the parts are right: before that it would say things twice.
   if (top.problems.count === before) {

@@ -6,6 +6,7 @@ import { readScenario } from '../../configs/scenario.js';
 import { problemText } from '../../runtime/contract.js';
 import { exitCode } from '../../runtime/verdict.js';
 import { type AccuracySheet, freeze, measureAccuracy } from '../check/accuracy.js';
+import { busSheet } from '../check/bus-sheet.js';
 import { modesAt } from '../check/modes.js';
 import { accuracyLimits, scaleOf, sheetText, verdictOf } from '../check/sheet.js';
 import { type Barrier, loadController, moduleBarrier } from '../loop/controller-module.js';
@@ -60,16 +61,19 @@ export function checkCommand(): Command {
         ),
       );
       for (const remark of spec.remarks) say(`${pc.yellow('remark')} ${problemText(remark)}`);
+      const buses = busSheet(spec);
+      if (buses.text !== '') say(`\n${buses.text}`);
       if (options.quick || script === undefined) {
         const modes = modesAt(circuit, assembly.plant.y, assembly.plant.u, assembly.plant.m).slice(0, 8);
         if (options.json)
           process.stdout.write(
-            `${JSON.stringify({ bench: spec.name, states: circuit.states.length, modes }, undefined, 2)}\n`,
+            `${JSON.stringify({ bench: spec.name, states: circuit.states.length, modes, buses: buses.loads }, undefined, 2)}\n`,
           );
         else
           say(
             `\nno scenario to drive: accuracy is not measured; fastest time constant at the start ${modes[0] ? (modes[0].timeConstant * 1e6).toPrecision(3) : '-'} us`,
           );
+        if (buses.overloaded.length > 0) throw new CommandError(buses.overloaded.join('\n'), exitCode.badInput);
         return;
       }
       const barriers: Barrier[] = [];
@@ -96,10 +100,12 @@ export function checkCommand(): Command {
       } finally {
         progress.done();
       }
-      const verdict = verdictOf(sheet, accuracyLimits, spec);
+      const accuracy = verdictOf(sheet, accuracyLimits, spec);
+      const verdict =
+        buses.overloaded.length === 0 ? accuracy : { fit: false, why: [...buses.overloaded, accuracy.why].join('; ') };
       if (options.json)
         process.stdout.write(
-          `${JSON.stringify({ bench: spec.name, states: circuit.states.length, fit: verdict.fit, why: verdict.why, sheet }, undefined, 2)}\n`,
+          `${JSON.stringify({ bench: spec.name, states: circuit.states.length, fit: verdict.fit, why: verdict.why, sheet, buses: buses.loads }, undefined, 2)}\n`,
         );
       else
         say(
