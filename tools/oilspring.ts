@@ -12,6 +12,7 @@ import { readinessCommand } from './commands/readiness.js';
 import { rederiveCommand } from './commands/rederive.js';
 import { reportCommand } from './commands/report.js';
 import { runCommand } from './commands/run.js';
+import { salvageCommand } from './commands/salvage.js';
 import { suiteCommand } from './commands/suite.js';
 import { viewCommand } from './commands/view.js';
 import { wireCommand } from './commands/wire.js';
@@ -44,6 +45,7 @@ for (const command of [
   listenCommand(),
   replayCommand(),
   viewCommand(),
+  salvageCommand(),
   readinessCommand(),
 ])
   program.addCommand(command);

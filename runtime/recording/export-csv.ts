@@ -60,7 +60,10 @@ export async function exportCsv(recording: Recording, options: ExportOptions): P
     for (let next = walk.next(); ; next = walk.next()) {
       if (options.abort?.aborted) throw new RecordingError('export stopped');
       if (next.done) {
-        if (next.value.how === 'damaged') throw new RecordingError(`${recording.file} is damaged: ${next.value.what}`);
+        if (next.value.how === 'damaged')
+          throw new RecordingError(
+            `${recording.file} is damaged: ${next.value.what}; \`oilspring salvage\` copies what stands before`,
+          );
         await target.close();
         return { rows, columns: columns.length, ending: next.value };
       }

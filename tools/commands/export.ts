@@ -4,7 +4,7 @@ import { globTest } from '../../configs/signal-list.js';
 import { exportCsv } from '../../runtime/recording/export-csv.js';
 import { Recording } from '../../runtime/recording/reader.js';
 import { nearest } from '../../runtime/signals.js';
-import { CommandError } from './failure.js';
+import { CommandError, printable } from './failure.js';
 import { Progress } from './progress.js';
 
 export function exportCommand(): Command {
@@ -34,6 +34,8 @@ export function exportCommand(): Command {
           },
         });
         progress.done();
+        if (result.ending.how !== 'complete')
+          process.stderr.write(`note the recording ended early: ${printable(result.ending.what)}\n`);
         process.stderr.write(`${options.to}: ${result.rows} rows\n`);
       } finally {
         progress.done();

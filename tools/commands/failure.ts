@@ -39,6 +39,6 @@ export function complain(error: unknown): number {
 }
 
 /** Lines of text from files and names, without what a terminal would act on. */
-function printable(text: string): string {
+export function printable(text: string): string {
   return text.split('\n').map(clean).join('\n');
 }

@@ -14,10 +14,10 @@ export function rederiveCommand(): Command {
       'after',
       '\nExample:\n  oilspring rederive recordings/harbour-truck.osrec\n\nExit code 0: identical, 4: it differs, 2: the recording cannot be read, 5: stopped.',
     )
-    .action((file: string, options: { json?: boolean }) => {
+    .action(async (file: string, options: { json?: boolean }) => {
       const progress = new Progress('rederive', options.json);
       try {
-        const found = rederive(file, (share) => progress.update(share));
+        const found = await rederive(file, (share) => progress.update(share));
         progress.done();
         if (options.json) process.stdout.write(`${JSON.stringify(found, undefined, 2)}\n`);
         else {

@@ -1,3 +1,4 @@
+import path from 'node:path';
 import { Command, InvalidArgumentError } from 'commander';
 import { BuildError } from '../../runtime/contract.js';
 import { exitCode } from '../../runtime/verdict.js';
@@ -7,10 +8,12 @@ import { Frames } from '../run/frames.js';
 import { hostRun, type RunOutcome, softwareVersion } from '../run/host-run.js';
 import { planRun, type RunPlan, type RunWish } from '../run/plan.js';
 import { summarise } from '../run/summarise.js';
+import { lastWithoutEnd } from '../salvage/last-without-end.js';
 import { eventText } from '../terminal/event-text.js';
 import { renderStart } from '../terminal/start-up.js';
 import { styleOf } from '../terminal/style.js';
 import { renderSummary } from '../terminal/summary.js';
+import { clean } from '../terminal/text.js';
 import { TerminalView } from '../terminal/view.js';
 import { complain } from './failure.js';
 import { writeReports } from './report.js';
@@ -111,6 +114,7 @@ async function runShown(plan: RunPlan, options: ShowOptions, page: LivePage | un
   process.on('SIGTERM', onSignal);
   let outcome: RunOutcome;
   const view = json ? undefined : new TerminalView({ stream: process.stdout });
+  if (view) mentionCrash(plan);
   if (view) process.stdout.write(startText(plan, view.columns, page?.invitation));
   else if (page) process.stderr.write(`live page ${page.invitation}\n`);
   try {
@@ -157,6 +161,13 @@ async function runShown(plan: RunPlan, options: ShowOptions, page: LivePage | un
   if (options.report !== undefined && final.recording !== null && outcome.recordingFailure === undefined)
     writeReports(final.recording, { to: options.report });
   return final.exitCode;
+}
+
+/** A run before this one may have been cut off, and nobody has looked yet. */
+function mentionCrash(plan: RunPlan): void {
+  const file = plan.recording === undefined ? undefined : lastWithoutEnd(path.dirname(plan.recording));
+  if (file !== undefined)
+    process.stderr.write(`note the last recording before this one has no end: oilspring salvage ${clean(file)}\n`);
 }
 
 function deriveCommand(recording: string | null): string | undefined {

@@ -1,3 +1,4 @@
+import { setImmediate } from 'node:timers/promises';
 import type { Transport } from '../../bridge/transport.js';
 import { assemble } from '../../configs/assemble.js';
 import { readBench } from '../../configs/bench.js';
@@ -29,18 +30,18 @@ export interface Rederivation {
 /**
  * Computes a recorded run again from the bench, the scenario, the seed and the recorded inputs, and compares the hash of
  * the block after every tick. Throws RecordingError when the recording cannot be read, BuildError when its bench cannot
- * be built by this version.
+ * be built by this version. Stops when `onProgress` says false.
  */
-export function rederive(file: string, onProgress: (share: number) => boolean): Rederivation {
+export async function rederive(file: string, onProgress: (share: number) => boolean): Promise<Rederivation> {
   const recording = new Recording(file);
   try {
-    return derive(recording, onProgress);
+    return await derive(recording, onProgress);
   } finally {
     recording.close();
   }
 }
 
-function derive(recording: Recording, onProgress: (share: number) => boolean): Rederivation {
+async function derive(recording: Recording, onProgress: (share: number) => boolean): Promise<Rederivation> {
   const { header } = recording;
   const overview = recording.examine();
   if (overview.rows === 0) throw new RecordingError(`${recording.file}: there is no tick in it`);
@@ -68,7 +69,10 @@ function derive(recording: Recording, onProgress: (share: number) => boolean): R
     );
   if (header.software.version !== softwareVersion())
     remarks.push(`recorded with oilspring ${header.software.version}, derived with ${softwareVersion()}`);
-  if (overview.ending.how !== 'complete') remarks.push(`the recording ${overview.ending.how}: ${overview.ending.what}`);
+  if (overview.ending.how !== 'complete')
+    remarks.push(
+      `the recording ${overview.ending.how === 'damaged' ? 'is damaged' : 'ended early'}: ${overview.ending.what}`,
+    );
 
   const last = overview.lastTick;
   const total = last - assembly.firstTick + 1;
@@ -108,7 +112,10 @@ function derive(recording: Recording, onProgress: (share: number) => boolean): R
         }
       }
     }
-    if ((tick & 511) === 0 && !onProgress((tick - assembly.firstTick) / total)) {
+    if ((tick & 511) !== 0) continue;
+    // lets Ctrl-C be heard
+    await setImmediate();
+    if (!onProgress((tick - assembly.firstTick) / total)) {
       stopped = true;
       break;
     }
