@@ -1,4 +1,5 @@
 import type { Problem } from '../runtime/contract.js';
+import { type Expression, eachSignal } from '../runtime/judge/formula.js';
 import type { SignalTable } from '../runtime/signals.js';
 import { CountReports } from './count-reports.js';
 import type { ExchangeOptions } from './exchange.js';
@@ -109,19 +110,43 @@ export class ExchangeTables {
     }
   }
 
+  private requireSignals(expression: Expression, path: string, signals: SignalTable, problems: Problem[]): void {
+    for (const said of signalsOf(expression))
+      if (signals.find(said) < 0) problems.push(unknown(path, 'there is no such signal', said, signals.nearest(said)));
+  }
+
   /** Finds what sent messages carry and what received ones drive. */
   private connect(options: ExchangeOptions, problems: Problem[]): void {
     const { signals, targets } = options;
     const drivers = new Map<number, string>();
     for (const link of this.links) {
-      for (const sender of link.senders)
+      for (const sender of link.senders) {
+        const condition = sender.message.while;
+        if (condition !== undefined)
+          eachSignal(condition, (said) => {
+            if (signals.find(said) < 0)
+              problems.push(
+                unknown(
+                  `messages.${sender.message.name}.while`,
+                  'there is no such signal',
+                  said,
+                  signals.nearest(said),
+                ),
+              );
+          });
         for (const signal of sender.message.signals) {
-          const index = signals.find(signal.path);
           const path = `messages.${sender.message.name}.${signal.name}`;
+          if (signal.expression !== undefined) {
+            this.requireSignals(signal.expression, path, signals, problems);
+            this.gathered.add(0, this.gathered.length);
+            continue;
+          }
+          const index = signals.find(signal.path);
           if (index < 0)
             problems.push(unknown(path, 'there is no such signal', signal.path, signals.nearest(signal.path)));
           this.gathered.add(index, this.gathered.length, 1 / signal.unitScale, -signal.unitOffset / signal.unitScale);
         }
+      }
       for (const receiver of link.receivers)
         receiver.message.signals.forEach((signal, i) => {
           if (signal.path === '') return;
@@ -143,6 +168,15 @@ export class ExchangeTables {
         });
     }
   }
+}
+
+/** Paths in an expression. */
+function signalsOf(expression: Expression): string[] {
+  const found: string[] = [];
+  eachSignal({ is: 'compare', left: expression, relation: '<', right: expression, unit: '1' }, (path) => {
+    if (!found.includes(path)) found.push(path);
+  });
+  return found;
 }
 
 function unknown(path: string, what: string, value: string, near: readonly string[]): Problem {

@@ -10,6 +10,7 @@ import type { Link } from './link.js';
 import { linkEvents } from './link-events.js';
 import { messageFaults } from './message-faults.js';
 import type { MessageMap } from './message-map.js';
+import { StandIns, standIn } from './stand-ins.js';
 import type { Transport } from './transport.js';
 import { mapChecksum } from './udp-layout.js';
 import { UdpLink } from './udp-link.js';
@@ -33,6 +34,8 @@ export interface ExchangeOptions {
   readonly step: number;
   /** Seed of what faults of messages leave to chance. */
   readonly seed?: number;
+  /** Control units that the bench does not stand in for from the start. */
+  readonly without?: readonly string[];
   /** Ticks, from the first, in which time-outs put substitutes in place but are not counted. Default 0. */
   readonly bootWindowTicks?: number;
   /** Number of the first tick; negative with a pre-roll. Default 0. */
@@ -52,8 +55,8 @@ export interface ExchangeOptions {
 export class Exchange {
   readonly checksum: number;
   readonly links: readonly Link[];
-  /** Faults of messages and of buses as commands, with their slots. */
-  readonly faults: readonly {
+  /** Faults of messages and of buses, and the stand-ins, as commands with their slots. */
+  readonly faults: {
     readonly path: string;
     readonly unit: string;
     readonly about: string;
@@ -62,6 +65,7 @@ export class Exchange {
     readonly slot: number;
   }[];
   private readonly tables: ExchangeTables;
+  private readonly standIns: StandIns;
   private readonly units: Float64Array;
   private readonly bootUntil: number;
   private readonly silent: number;
@@ -128,6 +132,16 @@ export class Exchange {
     ];
     this.tables = new ExchangeTables(links, options, problems);
     if (problems.length > 0) throw new BuildError(problems);
+    this.standIns = new StandIns(
+      links.flatMap((link) => link.senders),
+      layout,
+      options.signals,
+      options.without ?? [],
+    );
+    for (const [unit, slot] of this.standIns.slots) {
+      const { name, ...info } = standIn;
+      this.faults.push({ ...info, path: `${unit}.${name}`, slot });
+    }
 
     this.units = new Float64Array(this.tables.gathered.length);
     this.subjects = links.map((link) =>
@@ -186,6 +200,7 @@ export class Exchange {
   publish(block: Float64Array, signals: Float64Array, tick: number): void {
     if (block[this.silent] === 0) {
       this.tables.gathered.copy(signals, this.units);
+      this.standIns.prepare(block, signals, tick, this.units);
       let from = 0;
       for (let l = 0; l < this.links.length; l += 1) {
         const link = this.links[l];

@@ -76,6 +76,7 @@ export const canReceivedCounts = {
 /** Of every sent message. */
 export const sentCounts = {
   sent: { about: 'messages sent' },
+  muted: { about: '1 while it is kept from going: its control unit is taken out, or its condition does not hold' },
   unsendable: { about: 'times not sent because a value was not finite or not allowed', event: linkEvents.unsendable },
 } as const satisfies Counts;
 

@@ -90,7 +90,7 @@ function row(signal: MapSignal, offset: number | undefined, received: boolean): 
   const about = names.length > 0 ? `${signal.about} (${names.join(', ')})` : signal.about;
   const cells = [...place, `${scaling.scale}`, `${scaling.offset}`, signal.unit, `${signal.least} .. ${signal.most}`];
   if (received) cells.push(`${signal.substitute}`);
-  cells.push(signal.path === '' ? 'shown only' : signal.path, about);
+  cells.push(signal.said ?? (signal.path === '' ? 'shown only' : signal.path), about);
   return `<tr><th scope="row">${text(signal.name)}</th>${cells.map((cell) => `<td>${text(cell)}</td>`).join('')}</tr>`;
 }
 
@@ -106,6 +106,8 @@ function facts(message: MessageSpec, layout: UdpLayout | undefined, step: number
   if (message.trigger !== 'on-change')
     parts.push(`every ${time(message.every, step)}`, `phase ${time(message.phase, step)}`);
   if (message.trigger !== 'cyclic') parts.push(`on change, at most every ${time(message.fastEvery ?? 1, step)}`);
+  if (message.standsFor !== undefined) parts.push(`the bench stands in for ${message.standsFor}`);
+  if (message.whileText !== undefined) parts.push(`only while ${message.whileText}`);
   if (message.startDelay > 0) parts.push(`starts after ${time(message.startDelay, step)}`);
   if (message.direction === 'received') {
     parts.push(message.timeout > 0 ? `time-out ${time(message.timeout, step)}` : 'no time-out');

@@ -1,3 +1,5 @@
+import type { Expression, Formula } from '../runtime/judge/formula.js';
+
 /**
  * The message map as plain data: which signal sits in which message, in which direction, when it is due, how it is
  * laid out on each kind of link and what counts when it stops coming. Read from the bench file by configs/messages.ts.
@@ -30,6 +32,10 @@ export interface MapSignal {
   readonly name: string;
   /** Sent: path of the signal it carries. Received: path of the command it drives, or '' for a signal that only is shown. */
   readonly path: string;
+  /** Sent: what it carries where that is no signal but a number or an expression, SI; `path` is then ''. */
+  readonly expression?: Expression;
+  /** The expression as the file has it, for people. */
+  readonly said?: string;
   readonly about: string;
   /** Unit on the wire as text for people and headers: `bar(a)`, `N m`, `1`. */
   readonly unit: string;
@@ -72,6 +78,12 @@ export interface MessageSpec {
   readonly link: string;
   /** Seen from the bench. */
   readonly direction: 'sent' | 'received';
+  /** Sent: the control unit for which the bench stands in; its messages can be taken out together. */
+  readonly standsFor?: string;
+  /** Sent: it goes only in ticks in which this holds. */
+  readonly while?: Formula;
+  /** That condition as the file has it, for people. */
+  readonly whileText?: string;
   /** Number of the message on the wire (UDP message number; CAN identifier). */
   readonly identifier: number;
   readonly extended?: boolean;

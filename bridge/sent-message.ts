@@ -31,7 +31,11 @@ export class SentMessage {
   readonly unsendable: number;
   /** On the bench's side only. */
   faults: MessageFaults | undefined;
+  /** Slot: 1 while the message is kept from going. */
+  readonly muted: number;
   private readonly lastTick: number;
+  /** Slot: the tick from which the start delay counts. */
+  private readonly since: number;
   private readonly fresh: Float64Array;
   private readonly held: Float64Array;
   private readonly onCycle: boolean;
@@ -41,7 +45,7 @@ export class SentMessage {
   constructor(
     private readonly quantiser: Quantiser,
     layout: BlockLayout,
-    private readonly firstTick: number,
+    firstTick: number,
     /** A value outside its range keeps the message from being sent, instead of being brought into it. */
     private readonly refuses = false,
   ) {
@@ -52,7 +56,9 @@ export class SentMessage {
     for (const signal of message.signals) layout.add(`${message.name}.${signal.name}`);
     this.sent = layout.add(`${message.name}.sent`);
     this.unsendable = layout.add(`${message.name}.unsendable`);
-    this.slots = { sent: this.sent, unsendable: this.unsendable };
+    this.muted = layout.add(`${message.name}.muted`);
+    this.since = layout.add(`${message.name}.since`, firstTick);
+    this.slots = { sent: this.sent, unsendable: this.unsendable, muted: this.muted };
     this.lastTick = layout.add(`${message.name}.lastTick`, Number.NEGATIVE_INFINITY);
     this.fresh = new Float64Array(this.count);
     this.held = new Float64Array(this.count);
@@ -63,9 +69,20 @@ export class SentMessage {
 
   /** Whether the message could go out in this tick, before its values are looked at. */
   mayBeDue(memory: Float64Array, tick: number): boolean {
-    if (this.onCycle && this.dueNow(tick)) return true;
-    if (!this.onChange || tick - this.firstTick < this.message.startDelay) return false;
+    if (memory[this.muted] === 1) return false;
+    if (this.onCycle && this.dueNow(memory, tick)) return true;
+    if (!this.onChange || tick - memory[this.since] < this.message.startDelay) return false;
     return tick - memory[this.lastTick] >= this.distance;
+  }
+
+  /** Keeps the message from going, or lets it go: then its start delay counts from this tick on. */
+  mute(memory: Float64Array, tick: number, muted: boolean): void {
+    if (muted) memory[this.muted] = 1;
+    else if (memory[this.muted] === 1) {
+      memory[this.muted] = 0;
+      memory[this.since] = tick;
+      memory[this.lastTick] = Number.NEGATIVE_INFINITY;
+    }
   }
 
   addFaults(layout: BlockLayout, step: number, seed: number, stream: number): void {
@@ -125,7 +142,11 @@ export class SentMessage {
       memory[this.unsendable] += 1;
       return preparations.unsendable;
     }
-    if (!(this.onCycle && this.dueNow(tick)) && memory[this.lastTick] > Number.NEGATIVE_INFINITY && !this.moved(memory))
+    if (
+      !(this.onCycle && this.dueNow(memory, tick)) &&
+      memory[this.lastTick] > Number.NEGATIVE_INFINITY &&
+      !this.moved(memory)
+    )
       return preparations.notDue;
     for (let i = 0; i < this.count; i += 1) memory[this.carried + i] = this.fresh[i];
     memory[this.lastTick] = tick;
@@ -133,8 +154,8 @@ export class SentMessage {
     return preparations.ready;
   }
 
-  private dueNow(tick: number): boolean {
-    return dueByCycle(tick, this.firstTick, this.message.every, this.message.phase, this.message.startDelay);
+  private dueNow(memory: Float64Array, tick: number): boolean {
+    return dueByCycle(tick, memory[this.since], this.message.every, this.message.phase, this.message.startDelay);
   }
 
   private moved(memory: Float64Array): boolean {

@@ -104,6 +104,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     bootWindowTicks: spec.life.bootWindow,
     firstTick,
     seed: options.seed,
+    without: [...spec.without, ...(script.without ?? [])],
   });
   for (const { slot, ...info } of exchange.faults) {
     commandAt.set(info.path, slot);
@@ -296,7 +297,7 @@ function declareLedger(table: SignalTable, circuit: Circuit): { residual: number
   return { residual, turnover, stuffs };
 }
 
-/** Supply and key: signals that a script sets and messages carry. */
+/** Supply, key, wake-up line and main relay: a script sets them, messages carry them, the relay is the controller's to drive. */
 class LifeSignals {
   readonly targets: [string, number][] = [];
   readonly shownSlots: number[] = [];
@@ -311,6 +312,8 @@ class LifeSignals {
     };
     add('supply', '1 while the controller has its supply', spec.life.supply);
     add('key', '1 while the key is on', spec.life.key);
+    add('wakeUp', '1 while the wake-up line is on', spec.life.key);
+    add('relay', '1 while the controller holds its main relay', false);
   }
 }
 

@@ -34,6 +34,8 @@ export interface BenchSpec {
   readonly circuit: CircuitSpec;
   readonly instruments: readonly InstrumentSpec[];
   readonly map: MessageMap;
+  /** Control units that the bench does not stand in for: the real ones are there. */
+  readonly without: readonly string[];
   readonly watched: readonly WatchedSignal[];
   /** Asked of every run on this bench. */
   readonly requirements: readonly Requirement[];

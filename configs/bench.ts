@@ -3,7 +3,7 @@ import type { BenchSpec, Catalogue } from './bench-spec.js';
 import { Names, type ReadElement, readElements, readFluids } from './elements.js';
 import { diskFiles, type Files } from './files.js';
 import { Drivers, declareInstruments, readInstruments } from './instruments.js';
-import { declareMessages, finishMessages } from './messages.js';
+import { declareMessages, finishMessages, readWithout } from './messages.js';
 import { Problems } from './problems.js';
 import { lookup, readRequirements } from './requirements.js';
 import { readAmbient, readBudgets, readController, readLife, readPath, readRecord } from './running.js';
@@ -61,6 +61,7 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
   const drivers = new Drivers();
   const instruments = readInstruments(pendingInstruments, signals, drivers, ambient);
   const map = finishMessages(pendingMessages, top, step, signals, drivers);
+  const without = readWithout(top, map);
 
   const valves = reliefValves(elements);
   const sides = reliefOfSide(elements, valves);
@@ -95,6 +96,7 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
     },
     instruments,
     map,
+    without,
     watched,
     requirements,
     life,

@@ -1,8 +1,13 @@
 import type { CanLayout, MapSignal, WireType } from '../bridge/message-map.js';
+import { isPresentValue } from '../bridge/value-program.js';
+import type { Expression } from '../runtime/judge/formula.js';
 import type { Drivers } from './instruments.js';
 import { parseQuantity, parseRange, QuantityError, shown } from './quantity.js';
+import { parseValue } from './requirement-parser.js';
+import { lookup, positionIn } from './requirements.js';
 import { type Placed, type Section, suggestion } from './section.js';
 import type { SignalList } from './signal-list.js';
+import type { Scalar } from './source.js';
 import { conversion, fromSI, parseUnit, siUnit, UnitError } from './units.js';
 
 const wireTypes: readonly WireType[] = ['u8', 'i8', 'u16', 'i16', 'u32', 'i32', 'f32', 'f64'];
@@ -15,20 +20,34 @@ export function readSignal(
   messageName: string,
   direction: 'sent' | 'received',
   can: boolean,
+  step: number,
   signals: SignalList,
   drivers: Drivers,
 ): MapSignal | undefined {
   const problemsBefore = section.problems.count;
   const sent = direction === 'sent';
   const said = section.placed(sent ? 'from' : 'to', { required: sent }, 'element.signal');
-  const info = said && signals.resolve(section, sent ? 'from' : 'to', said, sent ? {} : { groups: ['command'] });
-  if (said && info && !sent) drivers.take(section, 'to', info.path, message.path, said.where);
+  const isPath = said !== undefined && /^[A-Za-z][A-Za-z0-9]*(\.[A-Za-z][A-Za-z0-9]*)*$/.test(said.text);
   const names = readNames(section);
+  const made = sent && said && (!isPath || (names && Object.hasOwn(names, said.text))) ? said : undefined;
+  const info = made
+    ? undefined
+    : said && signals.resolve(section, sent ? 'from' : 'to', said, sent ? {} : { groups: ['command'] });
+  if (said && info && !sent) drivers.take(section, 'to', info.path, message.path, said.where);
+  const value = made && readExpression(section, made.text, names, step, signals);
+  if (made && !value) return undefined;
   const unit =
-    section.text('unit', { required: names === undefined && (info === undefined || info.unit !== '1') }, 'bar(a)') ??
-    '1';
+    section.text(
+      'unit',
+      { required: names === undefined && (info ?? value) !== undefined && (info?.unit ?? value?.unit) !== '1' },
+      'bar(a)',
+    ) ?? '1';
   // Received and only shown: kept in the SI unit of the dimension that it is sent in.
-  const declared = info ? { unit: info.unit, difference: info.difference } : undefined;
+  const declared = info
+    ? { unit: info.unit, difference: info.difference }
+    : value?.unit === undefined
+      ? undefined
+      : { unit: value.unit, difference: value.difference };
   const scaling = readScaling(section, unit, declared);
   const type = section.choice('type', wireTypes) ?? (names ? 'u8' : 'f32');
   const scale = section.quantity('scale', { unit: '1' }) ?? 1;
@@ -39,12 +58,18 @@ export function readSignal(
   const layout = can ? readCanLayout(section, scale, offset) : undefined;
   if (!can) section.skip('can');
   const about = section.text('about') ?? info?.about ?? name;
+  const expression =
+    value && scaling && (value.unit === undefined ? inOwnUnit(value.expression, scaling) : value.expression);
   section.finish([sent ? 'from' : 'to', 'substitute']);
   if (sent && info) signals.add({ path: `${messageName}.${name}`, group: 'sent', unit: info.unit, about });
+  if (made && scaling && expression)
+    signals.add({ path: `${messageName}.${name}`, group: 'sent', unit: siUnit(parseUnit(unit)), about });
   if (section.problems.count > problemsBefore || !scaling || !range || substitute === undefined) return undefined;
+  if (made && !expression) return undefined;
   return {
     name,
     path: info?.path ?? '',
+    ...(made && expression ? { expression, said: made.text, siUnit: siUnit(parseUnit(unit)) } : {}),
     about,
     unit,
     unitScale: scaling.unitScale,
@@ -58,6 +83,47 @@ export function readSignal(
     ...(names === undefined ? {} : { names }),
     ...(layout === undefined ? {} : { can: layout }),
   };
+}
+
+/** What an absent control unit says. `unit`: SI unit; undefined for a bare number, which is in the unit of the signal. */
+interface Made {
+  readonly expression: Expression;
+  readonly unit: string | undefined;
+  readonly difference: boolean;
+}
+
+/** A number, a name of the enumeration, or an expression over signals, such as `0.5 * highLine.pressure + 2 bar`. */
+function readExpression(
+  section: Section,
+  text: string,
+  names: Readonly<Record<string, number>> | undefined,
+  step: number,
+  signals: SignalList,
+): Made | undefined {
+  const named = names !== undefined && Object.hasOwn(names, text) ? names[text] : undefined;
+  const bare = named ?? (/^[-+]?[\d.]+(?:[eE][-+]?\d+)?$/.test(text) ? Number(text) : undefined);
+  if (bare !== undefined && Number.isFinite(bare))
+    return { expression: { is: 'number', value: bare }, unit: undefined, difference: false };
+  if (signals.unread.size > 0) return undefined;
+  const tree = section.tree.entries.get('from')!.value as Scalar;
+  const value = parseValue(
+    text,
+    { signals: lookup(signals.all), step },
+    section.problems,
+    section.inner('from'),
+    (at) => positionIn(tree, at),
+  );
+  if (!value) return undefined;
+  if (!isPresentValue(value.expression))
+    return section.fail('from', 'more than what is true now', 'use + - * /, abs, min and max', { value: shown(text) });
+  return { expression: value.expression, unit: siUnit(value.unit), difference: value.scale === 'difference' };
+}
+
+/** A number in the unit of its signal as SI. */
+function inOwnUnit(expression: Expression, scaling: { unitScale: number; unitOffset: number }): Expression {
+  return expression.is === 'number'
+    ? { is: 'number', value: expression.value * scaling.unitScale + scaling.unitOffset }
+    : expression;
 }
 
 function readScaling(

@@ -1,7 +1,10 @@
 import { examineMap } from '../bridge/examine-map.js';
 import { identifierOf, isDirected } from '../bridge/j1939/identifier.js';
+import { receivedCounts } from '../bridge/link-counts.js';
 import type { LinkSpec, MapSignal, MessageMap, MessageSpec, Protection } from '../bridge/message-map.js';
 import { spreadPhases } from '../bridge/spread-phases.js';
+import { unitsStoodFor } from '../bridge/stand-ins.js';
+import { isPresent } from '../bridge/value-program.js';
 import type { Position } from '../runtime/contract.js';
 import { overlappingBits } from './can-bits.js';
 import type { Names } from './elements.js';
@@ -9,8 +12,11 @@ import type { Drivers } from './instruments.js';
 import { readLink } from './links.js';
 import { readSignal } from './message-signals.js';
 import { shown } from './quantity.js';
+import { parseFormula } from './requirement-parser.js';
+import { lookup, positionIn } from './requirements.js';
 import { type Section, suggestion } from './section.js';
 import type { SignalList } from './signal-list.js';
+import type { Scalar } from './source.js';
 import { checkedTicks } from './ticks.js';
 import { parseUnit, siUnit } from './units.js';
 
@@ -53,6 +59,11 @@ export function declareMessages(top: Section, names: Names, signals: SignalList)
     if (direction !== 'received') {
       if (direction !== 'sent') signals.unread.add(name);
       continue;
+    }
+    // What conditions of other messages ask of it: whether it is there.
+    for (const count of ['age', 'timedOut'] as const) {
+      const { about } = receivedCounts[count];
+      signals.add({ path: `${name}.${count}`, group: 'link', unit: count === 'age' ? 's' : '1', about });
     }
     for (const [field, inner] of fields) {
       const target = signals.find(inner.peek('to') ?? '');
@@ -150,10 +161,18 @@ function readMessage(
   const bitRateSwitch = section.flag('bitRateSwitch');
   const bytes = section.whole('bytes', { least: 0, most: flexibleDataRate ? 64 : 8 }, { required: can });
   const protection = readProtection(section);
+  const standsFor = section.text('standsFor');
+  if (standsFor !== undefined && direction === 'received')
+    section.fail('standsFor', 'a message to the bench', 'the bench stands in only for what it sends: leave it away');
+  if (standsFor !== undefined && !/^[a-z][A-Za-z0-9]*$/.test(standsFor))
+    section.fail('standsFor', 'not a name', 'use letters and digits, a small letter first', {
+      value: shown(standsFor),
+    });
+  const condition = readWhile(section, direction, step, signals);
   const read: MapSignal[] = [];
   for (const [field, inner] of fields) {
     places.set(`${section.path}.${field}`, inner.where);
-    const signal = direction && readSignal(field, inner, section, name, direction, can, signals, drivers);
+    const signal = direction && readSignal(field, inner, section, name, direction, can, step, signals, drivers);
     if (signal) read.push(signal);
   }
   if (can && bytes !== undefined) {
@@ -169,6 +188,8 @@ function readMessage(
     about,
     link: link.name,
     direction,
+    ...(standsFor === undefined ? {} : { standsFor }),
+    ...condition,
     identifier,
     ...(extended ? { extended } : {}),
     ...(group !== undefined && direction === 'received' ? { anyPriority: true } : {}),
@@ -185,6 +206,54 @@ function readMessage(
     ...(protection === undefined ? {} : { protection }),
     signals: read,
   };
+}
+
+/** `while: life.key is on`: the message goes only while that holds. */
+function readWhile(
+  section: Section,
+  direction: 'sent' | 'received' | undefined,
+  step: number,
+  signals: SignalList,
+): Pick<MessageSpec, 'while' | 'whileText'> {
+  const said = section.placed('while');
+  if (!said) return {};
+  if (direction === 'received') {
+    section.fail('while', 'a message to the bench', 'only what the bench sends can wait for something: leave it away');
+    return {};
+  }
+  if (signals.unread.size > 0) return {};
+  const tree = section.tree.entries.get('while')!.value as Scalar;
+  const formula = parseFormula(
+    said.text,
+    { signals: lookup(signals.all), step, present: true },
+    section.problems,
+    section.inner('while'),
+    (offset) => positionIn(tree, offset),
+  );
+  if (!formula) return {};
+  if (!isPresent(formula)) {
+    section.fail('while', 'more than what is true now', 'compare signals, joined by and, or, not', {
+      value: shown(said.text),
+    });
+    return {};
+  }
+  return { while: formula, whileText: said.text.trim() };
+}
+
+/** `without: [brakes]` of a bench file. */
+export function readWithout(top: Section, map: MessageMap): string[] {
+  const units = unitsStoodFor(map.messages);
+  return (top.texts('without') ?? []).flatMap(({ text, where }) => {
+    if (units.includes(text)) return [text];
+    top.fail(
+      'without',
+      'the bench does not stand in for this control unit',
+      units.length === 0 ? 'no message says standsFor:' : suggestion(text, units),
+      { value: shown(text) },
+      where,
+    );
+    return [];
+  });
 }
 
 /** `j1939: { pgn: 65265, source: 0, priority: 6, destination: 255 }` in place of `id`: the identifier, or undefined. */

@@ -79,6 +79,29 @@ export function parseFormula(
   return wrong.length === 0 ? formula : undefined;
 }
 
+/** Reads the text of a value, such as `0.5 * highLine.pressure`. What is wrong is added to `problems`; undefined then. */
+export function parseValue(
+  text: string,
+  context: RequirementContext,
+  problems: Problems,
+  path: string,
+  where: (offset: number) => Position | undefined = () => undefined,
+): Value | undefined {
+  try {
+    return new Parser(text, context).wholeValue();
+  } catch (error) {
+    if (!(error instanceof TextError)) throw error;
+    problems.add(
+      where(error.at),
+      path,
+      error.what,
+      error.remedy,
+      error.value === undefined ? {} : { value: shown(error.value) },
+    );
+    return undefined;
+  }
+}
+
 class Parser {
   private readonly list: Token[];
   private next = 0;
@@ -100,6 +123,13 @@ class Parser {
     if (this.peek().kind !== 'end')
       throw this.unexpected('and, or, until, implies, within, for or the end of the text');
     return formula;
+  }
+
+  wholeValue(): Value {
+    this.list.push(...tokens(this.text));
+    const value = this.value();
+    if (this.peek().kind !== 'end') throw this.unexpected('an operator or the end of the text');
+    return value;
   }
 
   // Tokens

@@ -125,7 +125,7 @@ function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: 
     'layout on CAN',
   );
   const signal = mapping({
-    from: { ...text, description: 'sent: the signal that it carries' },
+    from: { ...value, description: 'sent: the signal that it carries, or a number or an expression with units' },
     to: { ...text, description: 'received: the command that it drives' },
     about: text,
     unit: { ...text, description: 'unit on the wire, such as bar(a), N m, %' },
@@ -142,6 +142,8 @@ function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: 
       about: text,
       link: text,
       direction: { enum: ['sent', 'received'], description: 'seen from the bench' },
+      standsFor: { ...text, description: 'sent: the control unit for which the bench stands in' },
+      while: { ...text, description: 'sent: it goes only while this holds, such as: life.key is on' },
       id: { anyOf: [whole(0), text] },
       every: time,
       phase: time,

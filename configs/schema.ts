@@ -50,6 +50,7 @@ export function benchSchema(catalogue: Catalogue): Schema {
       stores: named(elements('store'), 'elements that hold something'),
       branches: named(elements('branch'), 'elements that join ports of stores'),
       instruments: named(instruments, 'driver, sensors, power stages'),
+      without: { ...texts, description: 'control units that the bench does not stand in for: the real ones are there' },
       ...runningSchemas(),
     },
     additionalProperties: false,

@@ -2,6 +2,7 @@ import { busFaults } from '../bridge/bus-adversary.js';
 import { countsOfLink, countsOfMessage } from '../bridge/link-counts.js';
 import { messageFaults } from '../bridge/message-faults.js';
 import type { MessageMap } from '../bridge/message-map.js';
+import { standIn, unitsStoodFor } from '../bridge/stand-ins.js';
 import type { PortKinds, SignalGroup, SignalInfo } from '../runtime/contract.js';
 import type { WatchedSignal } from './bench-spec.js';
 import type { ReadElement } from './elements.js';
@@ -37,6 +38,8 @@ export class SignalList {
       this.add({ path, unit, about, group });
     add('life.supply', '1', '1 while the controller has its supply', 'run');
     add('life.key', '1', '1 while the key is on', 'run');
+    add('life.wakeUp', '1', '1 while the wake-up line is on', 'run');
+    add('life.relay', '1', '1 while the controller holds its main relay', 'command');
     add('scenario.time', 's', 'time since tick 0', 'run');
     add('scenario.step', '1', 'steps of the timeline done', 'run');
     add('scenario.targetSpeed', 'm/s', 'speed that the driver is to follow', 'run');
@@ -110,6 +113,8 @@ export class SignalList {
         group: 'link',
       });
     }
+    const { name, ...info } = standIn;
+    for (const unit of unitsStoodFor(map.messages)) this.add({ ...info, path: `${unit}.${name}`, group: 'command' });
     for (const message of map.messages) {
       for (const [name, { unit, about, least, most, rest }] of Object.entries(messageFaults))
         this.add({ path: `${message.name}.${name}`, unit, about, group: 'command', least, most, withoutFault: rest });

@@ -22,6 +22,8 @@ export interface ScriptSpec {
   readonly conditions?: readonly Formula[];
   /** Start values by element, over those of the bench; SI. */
   readonly start?: Readonly<Record<string, Readonly<Record<string, number>>>>;
+  /** Control units that the bench does not stand in for in this run. */
+  readonly without?: readonly string[];
   /** Parameters of the scenario as they were chosen, and the case. */
   readonly parameters?: Readonly<Record<string, string>>;
   /** Asked beside those of the bench. */

@@ -25,6 +25,7 @@ interface RunFlags {
   readonly for?: string;
   readonly pace: 'live' | 'fast';
   readonly controller?: string;
+  readonly without?: readonly string[];
   readonly record?: string | false;
   readonly seed?: number;
   readonly json?: boolean;
@@ -46,6 +47,7 @@ export function runCommand(): Command {
     .option('--for <20s>', 'how long; default: as long as the scenario')
     .option('--pace <live|fast>', 'live: real time; fast: no waiting', pace, 'live')
     .option('--controller <CMD>', 'a command to start; or module, process, external (it is there already), none')
+    .option('--without <UNIT...>', 'control units that are really there: the bench does not stand in for them')
     .option('--record <FILE>', 'recording; default: a new file under recordings/')
     .option('--no-record', 'record nothing')
     .option('--seed <N>', "seed of all noise; default: the bench's", whole)

@@ -1,4 +1,5 @@
 import path from 'node:path';
+import { unitsStoodFor } from '../../bridge/stand-ins.js';
 import { readBench } from '../../configs/bench.js';
 import type { BenchSpec } from '../../configs/bench-spec.js';
 import { catalogue } from '../../configs/catalogue.js';
@@ -20,6 +21,8 @@ export interface RunWish {
   readonly for?: string | undefined;
   readonly pace: 'live' | 'fast';
   readonly controller?: string | undefined;
+  /** Control units that the bench does not stand in for. */
+  readonly without?: readonly string[] | undefined;
   readonly record?: string | undefined;
   readonly seed?: number | undefined;
   readonly profile?: boolean | undefined;
@@ -64,7 +67,8 @@ export function planRun(wish: RunWish): RunPlan {
     scenarioFile === undefined
       ? undefined
       : readScenario(scenarioFile, spec, diskFiles, { case: wish.case, set: wish.set });
-  const script = scenario?.script ?? emptyScript;
+  const without = checkedUnits(wish.without ?? [], spec);
+  const script = { ...(scenario?.script ?? emptyScript), ...(without.length === 0 ? {} : { without }) };
   const ticks = wish.for === undefined ? script.ticks : ticksOf(wish.for, spec.step);
   if (ticks === 0)
     throw new BuildError([
@@ -82,6 +86,21 @@ export function planRun(wish: RunWish): RunPlan {
     controller: chooseController(wish, spec),
     recording: wish.record === '' ? undefined : (wish.record ?? defaultRecording(spec.name)),
   };
+}
+
+function checkedUnits(without: readonly string[], spec: BenchSpec): readonly string[] {
+  const units = unitsStoodFor(spec.map.messages);
+  for (const unit of without)
+    if (!units.includes(unit))
+      throw new BuildError([
+        {
+          path: '--without',
+          what: 'the bench does not stand in for this control unit',
+          value: unit,
+          remedy: units.length === 0 ? 'no message of the bench says standsFor:' : `it does for ${units.join(', ')}`,
+        },
+      ]);
+  return without;
 }
 
 /** As the recording carries them: forward slashes, relative to the bench's folder. */
