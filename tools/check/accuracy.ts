@@ -15,7 +15,7 @@ export interface SignalError {
   /** Seconds into the drive, and in which event. */
   readonly at: number;
   readonly event: string;
-  /** Error of the reference itself by halving its step once more, as a share. */
+  /** How much the reference itself moved when its step was halved, as a share; not a number where that was not done. */
   readonly reference: number;
 }
 
@@ -82,19 +82,20 @@ interface Compared {
 /**
  * Runs the plant with frozen commands at the bench's step and at two much finer ones side by side, and compares every
  * pressure and speed at every tick. Then the hard events: each isolation valve slammed shut at its largest flow and
- * opened again.
+ * opened again. `finer`: the references' substeps over the bench's; the last is the truth, the one before it judges it.
  */
 export function measureAccuracy(
   assembly: Assembly,
   drive: FrozenDrive,
   scaleOf: (path: string) => number | undefined,
   onProgress: (share: number) => boolean,
+  finer: readonly number[] = [4, 8],
 ): AccuracySheet {
   const { circuit, spec } = assembly;
-  const fine = 4 * spec.substeps;
-  const finer = 2 * fine;
-  const make = (substeps: number) => Plant.alone(circuit, { step: spec.step, substeps });
-  const plants = [make(spec.substeps), make(fine), make(finer)] as const;
+  const plants = [1, ...finer].map((times) =>
+    Plant.alone(circuit, { step: spec.step, substeps: times * spec.substeps }),
+  );
+  const [own, truth] = [plants[0]!, plants[plants.length - 1]!];
   const compared = choose(circuit, scaleOf);
   const count = circuit.commands.length;
   const valves = circuit.spec.elements
@@ -112,7 +113,7 @@ export function measureAccuracy(
   const speeds = compared.filter((one) => one.kind === 'speed');
   const largest = new Float64Array(compared.length);
   const costs: number[] = [];
-  const start = plants[0].observed.slice();
+  const start = own.observed.slice();
   const modesFound: Mode[] = [];
   const share = 1 / (drive.ticks + 600 * valves.length || 1);
   let done = 0;
@@ -120,23 +121,22 @@ export function measureAccuracy(
   for (let tick = 0; tick < drive.ticks && !aborted; tick += 1) {
     for (const plant of plants) plant.u.set(drive.commands.subarray(tick * count, (tick + 1) * count));
     const began = performance.now();
-    plants[0].step();
+    own.step();
     costs.push(performance.now() - began);
-    plants[1].step();
-    plants[2].step();
+    for (const plant of plants) if (plant !== own) plant.step();
     compare(compared, plants, tick * spec.step, 'the duty', largest);
     for (const valve of valves) {
-      const size = Math.abs(plants[0].observed[valve.flow]!);
-      if (size > valve.worst && plants[0].u[valve.command]! > 0.5)
-        Object.assign(valve, { worst: size, tick, state: plants[2].y.slice(), memory: plants[2].m.slice() });
+      const size = Math.abs(own.observed[valve.flow]!);
+      if (size > valve.worst && own.u[valve.command]! > 0.5)
+        Object.assign(valve, { worst: size, tick, state: truth.y.slice(), memory: truth.m.slice() });
     }
     if (tick % Math.max(1, Math.floor(drive.ticks / 8)) === 0)
-      modesFound.push(...modesAt(circuit, plants[2].y, plants[2].u, plants[2].m).slice(0, 12));
+      modesFound.push(...modesAt(circuit, truth.y, truth.u, truth.m).slice(0, 12));
     done += 1;
     if (tick % 500 === 0) aborted = !onProgress(done * share);
   }
-  const energy = residuals(circuit, plants[0], start, assembly);
-  const solver = plants[0].solver;
+  const energy = residuals(circuit, own, start, assembly);
+  const { solver } = own;
   const refined = (solver.refined / Math.max(1, drive.ticks * spec.substeps)) * 1e6;
   const replaced = (solver.replaced / Math.max(1, drive.ticks * spec.substeps)) * 1e6;
   const events = ['the duty'];
@@ -186,7 +186,7 @@ export function measureAccuracy(
     .sort((a, b) => b.share - a.share)[0] ?? { path: '', share: 0 };
   return {
     substeps: spec.substeps,
-    referenceSubsteps: finer,
+    referenceSubsteps: truth.settings.substeps,
     seconds: drive.ticks * spec.step,
     events,
     pressures,
@@ -226,22 +226,25 @@ function choose(circuit: Circuit, scaleOf: (path: string) => number | undefined)
 
 function compare(
   compared: Compared[],
-  plants: readonly [Plant, Plant, Plant],
+  plants: readonly Plant[],
   at: number,
   event: string,
   largest: Float64Array,
 ): void {
+  const own = plants[0]!.observed;
+  const reference = plants[plants.length - 1]!.observed;
+  const before = plants.length > 2 ? plants[plants.length - 2]!.observed : undefined;
   for (let i = 0; i < compared.length; i += 1) {
     const one = compared[i]!;
-    const coarse = plants[0].observed[one.index]!;
-    const truth = plants[2].observed[one.index]!;
+    const coarse = own[one.index]!;
+    const truth = reference[one.index]!;
     const error = Math.abs(coarse - truth);
     if (!(error <= one.error)) {
       one.error = error;
       one.at = at;
       one.event = event;
     }
-    one.reference = Math.max(one.reference, Math.abs(plants[1].observed[one.index]! - truth));
+    one.reference = before ? Math.max(one.reference, Math.abs(before[one.index]! - truth)) : Number.NaN;
     one.peak = Math.max(one.peak, coarse);
     one.truePeak = Math.max(one.truePeak, truth);
     largest[i] = Math.max(largest[i]!, Math.abs(truth));
