@@ -39,6 +39,11 @@ export function lookOf(warning: WarningStatus): LevelLook {
   );
 }
 
+/** Words of a look in the middle of a sentence: PS stays PS. */
+export function midSentence({ words }: LevelLook): string {
+  return words.charAt(0).toLowerCase() + words.slice(1);
+}
+
 /** The most severe warning that is active; if none, that waits for an acknowledgement. */
 export function worst(warnings: readonly WarningStatus[]): WarningStatus | undefined {
   let best: WarningStatus | undefined;

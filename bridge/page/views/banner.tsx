@@ -12,7 +12,7 @@ import {
   type Theme,
   theme,
 } from '../store/preferences.js';
-import { banner, lookOf, nameOfPath } from '../store/pressures.js';
+import { banner, lookOf, midSentence, nameOfPath } from '../store/pressures.js';
 import { clock, format, number, shownAs, withUnit } from '../store/units.js';
 import { beat, newest, usePaths } from '../store/values.js';
 
@@ -131,8 +131,8 @@ export function Banner() {
             )
           ) : past ? (
             <>
-              Was {lookOf(warning).words.toLowerCase()}: {nameOfPath(warning.path)}, peak{' '}
-              {withUnit(warning.peak, shown)}, from {clock(warning.sinceTick, step)}; not acknowledged
+              Was {midSentence(lookOf(warning))}: {nameOfPath(warning.path)}, peak {withUnit(warning.peak, shown)}, from{' '}
+              {clock(warning.sinceTick, step)}; not acknowledged
             </>
           ) : (
             <>

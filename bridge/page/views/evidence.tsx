@@ -3,7 +3,7 @@ import type { LiveEvent, WarningStatus } from '../../live/source.js';
 import { Scroll } from '../parts/scroll.js';
 import { control, eventNames, events, order, status, subject, tick } from '../store/connection.js';
 import { who } from '../store/preferences.js';
-import { lookOf, nameOfPath } from '../store/pressures.js';
+import { lookOf, midSentence, nameOfPath } from '../store/pressures.js';
 import { clock, number, shownAs, withUnit } from '../store/units.js';
 
 export const shapes: Record<string, string> = { note: '○', warning: '▲', alarm: '◆', error: '■' };
@@ -46,7 +46,7 @@ function Warning({ warning }: { warning: WarningStatus }) {
           {look.shape}
         </span>{' '}
         <strong>
-          {nameOfPath(warning.path)}: {look.words.toLowerCase()}
+          {nameOfPath(warning.path)}: {midSentence(look)}
         </strong>{' '}
         {warning.active ? '' : '(over)'}
       </p>

@@ -1,7 +1,16 @@
 import { useEffect, useRef, useState } from 'preact/hooks';
 import type { PressureFacts } from '../../live/source.js';
 import { subject } from '../store/connection.js';
-import { fine, lookOf, peaks, pressureWarnings, resetPeaks, timeToRelief, worst } from '../store/pressures.js';
+import {
+  fine,
+  lookOf,
+  midSentence,
+  peaks,
+  pressureWarnings,
+  resetPeaks,
+  timeToRelief,
+  worst,
+} from '../store/pressures.js';
 import { clock, format, number, shownAs } from '../store/units.js';
 import { beat, newest, pulse, rangeOf, usePaths } from '../store/values.js';
 
@@ -62,7 +71,7 @@ function Column({ pressure }: { pressure: PressureFacts }) {
       </dl>
       {warning !== undefined && !warning.acknowledged && !warning.active && (
         <p class="quiet">
-          was {lookOf(warning).words.toLowerCase()} at {clock(warning.sinceTick, subject.value?.bench.step ?? 0.001)}
+          was {midSentence(lookOf(warning))} at {clock(warning.sinceTick, subject.value?.bench.step ?? 0.001)}
         </p>
       )}
     </article>
