@@ -122,7 +122,7 @@ it('is refused with a place where it cannot be', () => {
   expect(change('0.5 * highLine.pressure + 2 bar', '0.5 * highLine.presure')).toEqual([
     expect.stringMatching(/half\.from: no such signal/),
   ]);
-  expect(change('0.5 * highLine.pressure + 2 bar', 'mean(highLine.pressure, 5 ms)')).toEqual([
+  expect(change('0.5 * highLine.pressure + 2 bar', '"mean(highLine.pressure, 5 ms)"')).toEqual([
     expect.stringMatching(/more than what is true now/),
   ]);
   expect(change('while: life.key is on or', 'while: life.key rises above 0.5 or')).toEqual([
