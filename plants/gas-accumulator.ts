@@ -2,8 +2,10 @@ import type { BuildValues } from '../runtime/contract.js';
 import { store } from './define.js';
 import { oilMass } from './fluids.js';
 import { poppetWidth, prechargeMass, restOilVolume } from './gas-accumulator-start.js';
+import { smoothStep } from './laws/flow.js';
 import * as gasLaws from './laws/gas.js';
 import * as oilLaws from './laws/oil.js';
+import { oilStoreParameters } from './shared-parameters.js';
 
 /**
  * A gas-charged accumulator: oil, gas and separator in one store, as energy storage or as pressurised reservoir. The
@@ -28,7 +30,7 @@ export const gasAccumulator = store({
       errorWeight: ({ parameter, fluid }: BuildValues) =>
         (3 * parameter.precharge!) / (poppetWidth(parameter) * fluid.referenceDensity! * 0.5e5),
     },
-    heat: { unit: 'J', about: 'thermal energy of the oil, m c T', scale: 1e6 },
+    heat: { unit: 'J', about: 'thermal energy of the oil and of the metal that follows it', scale: 1e6 },
     gasTemperature: { unit: 'K', about: 'gas temperature', least: 100, most: 700, scale: 300, errorWeight: () => 1 },
     wallTemperature: { unit: 'K', about: 'wall temperature', least: 200, most: 500, scale: 300 },
     gasMass: { unit: 'kg', about: 'gas mass', least: 0 },
@@ -48,6 +50,7 @@ export const gasAccumulator = store({
   },
   parameters: {
     volume: { unit: 'm3', about: 'gas volume when empty of oil', least: 1e-5, most: 2, usual: [1e-4, 0.2] },
+    ...oilStoreParameters,
     precharge: { unit: 'Pa', about: 'gas pressure when empty of oil', least: 1.1e5, most: 4e7, usual: [3e5, 2.2e7] },
     prechargeTemperature: {
       unit: 'K',
@@ -138,7 +141,7 @@ export const gasAccumulator = store({
     temperature: { unit: 'K', about: 'gas and wall temperature; 0: the surroundings', default: 0, least: 0, most: 450 },
     oilTemperature: { unit: 'K', about: 'oil temperature; 0: that of the fluid', default: 0, least: 0, most: 450 },
   },
-  laws: { ...oilLaws, ...gasLaws },
+  laws: { ...oilLaws, ...gasLaws, smoothStep },
   limits: [
     {
       reading: 'gasPressure',
@@ -216,11 +219,15 @@ export const gasAccumulator = store({
     const gasPressure = law.gasPressure(state.gasMass * (1 / gasVolume), state.gasTemperature, real);
     const pressure =
       gasPressure * law.poppetShare(oilVolume, closing) + law.stopRise(oilVolume, closing, end, parameter.stopPressure);
-    const temperature = state.heat * (1 / fluid.heatCapacity) * (1 / mass);
+    const temperature =
+      state.heat /
+      (fluid.heatCapacity *
+        (Math.max(state.mass, 0) + parameter.metalShare * fluid.referenceDensity * parameter.volume));
     oil.pressure = pressure;
     oil.temperature = temperature;
-    // below the least mass of the pressure law the density goes to zero with the oil that is left
-    oil.density = Math.max(state.mass, 1e-6 * mass) / oilVolume;
+    // below a tenth of the closing volume the density goes to zero with the oil that is left: what draws gets less
+    oil.density =
+      (Math.max(state.mass, 1e-6 * mass) / oilVolume) * Math.max(1e-4, law.smoothStep((10 * oilVolume) / closing));
     oil.potential = law.oilPotential(
       pressure,
       fluid.referenceDensity,
@@ -300,7 +307,7 @@ export const gasAccumulator = store({
         parameter.ambientConductance * (parameter.ambientTemperature - state.wallTemperature)) *
       (1 / parameter.wallHeatCapacity);
     reading.gasHeatFlow = heatFlow;
-    reading.inflow = oil.massFlow / oil.density;
+    reading.inflow = (oil.massFlow * oilVolume) / mass;
   },
   energy({ parameter, state, oil, reading, law }) {
     const real = parameter.gas === 1 ? 0 : parameter.gas === 0 ? 1 : 2;
@@ -333,7 +340,10 @@ export const gasAccumulator = store({
     const mass = oilMass(oilVolume, pressure, fluid);
     return {
       mass,
-      heat: mass * fluid.heatCapacity! * (start.oilTemperature! || fluid.temperature!),
+      heat:
+        (mass + parameter.metalShare! * fluid.referenceDensity! * parameter.volume!) *
+        fluid.heatCapacity! *
+        (start.oilTemperature! || fluid.temperature!),
       gasTemperature: temperature,
       wallTemperature: temperature,
       gasMass,

@@ -2,6 +2,7 @@ import type { BuildValues } from '../runtime/contract.js';
 import { store } from './define.js';
 import { massWeight, oilMass } from './fluids.js';
 import * as oilLaws from './laws/oil.js';
+import { oilStoreParameters } from './shared-parameters.js';
 
 /** A closed volume of oil: mass is the state, pressure follows from it. Line, case, manifold or chamber. */
 export const oilVolume = store({
@@ -18,7 +19,7 @@ export const oilVolume = store({
       least: 0,
       errorWeight: ({ parameter, fluid }: BuildValues) => massWeight(parameter.volume!, fluid),
     },
-    heat: { unit: 'J', about: 'thermal energy of the oil, m c T', scale: 1e5 },
+    heat: { unit: 'J', about: 'thermal energy of the oil and of the metal that follows it', scale: 1e5 },
   },
   readings: {
     pressure: { unit: 'Pa', about: 'absolute pressure', least: 0 },
@@ -26,6 +27,7 @@ export const oilVolume = store({
   },
   parameters: {
     volume: { unit: 'm3', about: 'volume', least: 1e-7, most: 1, usual: [1e-5, 0.02] },
+    ...oilStoreParameters,
     maximumAllowable: { unit: 'Pa', about: 'maximum allowable pressure PS; 0: not watched', default: 0, least: 0 },
     reliefSetting: {
       unit: 'Pa',
@@ -104,7 +106,7 @@ export const oilVolume = store({
     const full = fluid.referenceDensity * parameter.volume;
     const mass = Math.max(state.mass, 0.001 * full);
     const pressure = law.oilPressure(full / mass, fluid.freeAir, fluid.numerator, fluid.denominator);
-    const temperature = state.heat / (fluid.heatCapacity * mass);
+    const temperature = state.heat / (fluid.heatCapacity * (Math.max(state.mass, 0) + parameter.metalShare * full));
     oil.pressure = pressure;
     oil.temperature = temperature;
     // below the least mass of the pressure law the density goes to zero with the oil that is left
@@ -133,6 +135,7 @@ export const oilVolume = store({
   holds: { oil: ({ state }) => state.mass },
   initial: ({ parameter, fluid, start }) => {
     const mass = oilMass(parameter.volume!, start.pressure!, fluid);
-    return { mass, heat: mass * fluid.heatCapacity! * (start.temperature! || fluid.temperature!) };
+    const metal = parameter.metalShare! * fluid.referenceDensity! * parameter.volume!;
+    return { mass, heat: (mass + metal) * fluid.heatCapacity! * (start.temperature! || fluid.temperature!) };
   },
 });

@@ -67,3 +67,18 @@ export const chargePumpParameters = {
   fullFlowRate: { unit: 'm3/s', about: 'that rated flow', least: 1e-6, most: 0.02, usual: [1e-4, 2e-3] },
   reliefLag: { unit: 's', about: 'lag of its relief valve', default: 0.005, least: 0.0005, most: 0.5 },
 } as const satisfies Record<string, ParameterDeclaration>;
+
+/**
+ * Of stores of oil. A store that has run empty keeps the temperature of its metal: heat over mass alone would be a
+ * quotient of two rounding errors.
+ */
+export const oilStoreParameters = {
+  metalShare: {
+    unit: '1',
+    about: 'heat capacity of the metal that follows the oil temperature, as a share of that of a store full of oil',
+    default: 0.01,
+    least: 0.001,
+    most: 100,
+    usual: [0.005, 0.5],
+  },
+} as const;

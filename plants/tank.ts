@@ -2,6 +2,7 @@ import { store } from './define.js';
 import { oilMass } from './fluids.js';
 import * as flowLaws from './laws/flow.js';
 import * as oilLaws from './laws/oil.js';
+import { oilStoreParameters } from './shared-parameters.js';
 
 /**
  * An open tank at the pressure of the air around it. Air breathes in and out as the level moves; its work on the oil is
@@ -17,7 +18,7 @@ export const tank = store({
   fluid: true,
   states: {
     mass: { unit: 'kg', about: 'oil mass', least: 0 },
-    heat: { unit: 'J', about: 'thermal energy of the oil, m c T', scale: 1e6 },
+    heat: { unit: 'J', about: 'thermal energy of the oil and of the metal that follows it', scale: 1e6 },
   },
   readings: {
     level: { unit: '1', about: 'oil as a share of the volume', least: 0, most: 1 },
@@ -27,6 +28,7 @@ export const tank = store({
   },
   parameters: {
     volume: { unit: 'm3', about: 'volume', least: 1e-4, most: 2, usual: [0.005, 0.2] },
+    ...oilStoreParameters,
     ambientPressure: {
       unit: 'Pa',
       about: 'pressure of the air around it',
@@ -63,8 +65,7 @@ export const tank = store({
   efforts({ parameter, state, fluid, oil, wall, reading, law }) {
     const ratio = law.oilVolumeRatio(parameter.ambientPressure, fluid.freeAir, fluid.numerator, fluid.denominator);
     const full = (fluid.referenceDensity * parameter.volume) / ratio;
-    const mass = Math.max(state.mass, 0.0001 * full);
-    const temperature = state.heat / (fluid.heatCapacity * mass);
+    const temperature = state.heat / (fluid.heatCapacity * (Math.max(state.mass, 0) + parameter.metalShare * full));
     oil.pressure = parameter.ambientPressure;
     oil.temperature = temperature;
     oil.density = (fluid.referenceDensity / ratio) * Math.max(1e-5, law.smoothStep((20 * state.mass) / full));
@@ -105,6 +106,7 @@ export const tank = store({
   holds: { oil: ({ state }) => state.mass },
   initial: ({ parameter, fluid, start }) => {
     const mass = oilMass(parameter.volume! * start.level!, parameter.ambientPressure!, fluid);
-    return { mass, heat: mass * fluid.heatCapacity! * (start.temperature! || fluid.temperature!) };
+    const metal = parameter.metalShare! * oilMass(parameter.volume!, parameter.ambientPressure!, fluid);
+    return { mass, heat: (mass + metal) * fluid.heatCapacity! * (start.temperature! || fluid.temperature!) };
   },
 });
