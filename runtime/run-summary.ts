@@ -163,6 +163,6 @@ export interface RunLink {
   /** Malformed, with a wrong checksum, length or map. */
   readonly malformed: number;
   readonly timeOuts: number;
-  /** Share of the used messages that answer the tick just before; null when none was used. */
+  /** Share of the used messages that answer the tick just before; null when none was used, and on CAN. */
   readonly oneStepShare: number | null;
 }

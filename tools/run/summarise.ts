@@ -15,7 +15,7 @@ export function summarise(outcome: RunOutcome): RunSummary {
   const last = new Map((ready?.paths ?? []).map((path, i) => [path, done?.last[i] ?? Number.NaN]));
   const value = (path: string) => last.get(path) ?? 0;
   const timing = outcome.timing.summary();
-  const links = spec.map.links.map((link) => linkOf(plan.spec, link.name, value));
+  const links = spec.map.links.map((link) => linkOf(plan.spec, link, value));
   const expected = spec.map.messages
     .filter((message) => message.direction === 'received' && message.every > 0)
     .reduce((sum, message) => sum + ticks / message.every, 0);
@@ -197,7 +197,7 @@ function measured(name: string, value: number, bound: number, unit: string): Mea
 
 function linkOf(
   spec: RunOutcome['plan']['spec'],
-  name: string,
+  { name, kind }: RunOutcome['plan']['spec']['map']['links'][number],
   value: (path: string) => number,
 ): RunSummary['links'][number] {
   const own = spec.map.messages.filter((message) => message.link === name);
@@ -217,6 +217,7 @@ function linkOf(
       0,
     ),
     timeOuts: sum('received', 'timeOuts'),
-    oneStepShare: replies > 0 ? value(`${name}.oneStepShare`) : null,
+    // a CAN frame does not say which tick it answers
+    oneStepShare: kind === 'udp' && replies > 0 ? value(`${name}.oneStepShare`) : null,
   };
 }
