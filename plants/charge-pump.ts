@@ -13,6 +13,13 @@ export const chargePump = branch({
   states: {
     reliefLift: { unit: '1', about: 'opening of its relief valve, 1 at the rated point', least: -0.01 },
   },
+  memory: {
+    viscosity: {
+      unit: 'Pa s',
+      about: 'dynamic viscosity of the oil in it, once a substep: it changes by nothing meanwhile',
+      initial: 0.04,
+    },
+  },
   commands: {
     wear: {
       unit: '1',
@@ -33,10 +40,13 @@ export const chargePump = branch({
     ...chargePumpParameters,
   },
   laws: { ...flowLaws, ...pumpMotorLaws },
-  flows({ parameter, inlet, outlet, shaft, state, command, derivative, reading, law }) {
+  update({ inlet, memory }) {
+    memory.viscosity = inlet.viscosity;
+  },
+  flows({ parameter, inlet, outlet, shaft, state, memory, command, derivative, reading, law }) {
     const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
     const difference = outlet.pressure - inlet.pressure;
-    const slip = law.wilsonLeakage(difference, inlet.viscosity, radian, parameter.slipCoefficient * command.wear);
+    const slip = law.wilsonLeakage(difference, memory.viscosity, radian, parameter.slipCoefficient * command.wear);
     const slipMass = slip * (slip > 0 ? outlet.density : inlet.density);
     const reliefFlow =
       (parameter.fullFlowRate * Math.max(state.reliefLift, 0) * law.signedRoot(difference, 2e4)) /
@@ -47,7 +57,7 @@ export const chargePump = branch({
     const lossTorque = law.wilsonTorque(
       difference,
       shaft.speed,
-      inlet.viscosity,
+      memory.viscosity,
       radian,
       parameter.viscousCoefficient,
       parameter.frictionCoefficient,
@@ -77,10 +87,10 @@ export const chargePump = branch({
     reading.reliefFlow = reliefFlow;
     reading.torque = torque;
   },
-  loss({ parameter, inlet, outlet, shaft, state, command, law }) {
+  loss({ parameter, inlet, outlet, shaft, state, memory, command, law }) {
     const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
     const difference = outlet.pressure - inlet.pressure;
-    const slip = law.wilsonLeakage(difference, inlet.viscosity, radian, parameter.slipCoefficient * command.wear);
+    const slip = law.wilsonLeakage(difference, memory.viscosity, radian, parameter.slipCoefficient * command.wear);
     const slipMass = slip * (slip > 0 ? outlet.density : inlet.density);
     const reliefFlow =
       (parameter.fullFlowRate * Math.max(state.reliefLift, 0) * law.signedRoot(difference, 2e4)) /
@@ -91,7 +101,7 @@ export const chargePump = branch({
     const lossTorque = law.wilsonTorque(
       difference,
       shaft.speed,
-      inlet.viscosity,
+      memory.viscosity,
       radian,
       parameter.viscousCoefficient,
       parameter.frictionCoefficient,

@@ -14,6 +14,13 @@ export const electricChargePump = branch({
     reliefLift: { unit: '1', about: 'opening of its relief valve, 1 at the rated point', least: -0.01 },
     speed: { unit: 'rad/s', about: 'speed of the motor', scale: 100 },
   },
+  memory: {
+    viscosity: {
+      unit: 'Pa s',
+      about: 'dynamic viscosity of the oil in it, once a substep: it changes by nothing meanwhile',
+      initial: 0.04,
+    },
+  },
   commands: {
     speedRequest: { unit: 'rad/s', about: 'wanted speed', rest: 0, least: 0, most: 1000 },
     power: { unit: '1', about: 'supply of the motor, on above 0.5', rest: 1, least: 0, most: 1 },
@@ -38,10 +45,13 @@ export const electricChargePump = branch({
     speedLag: { unit: 's', about: 'lag of the speed', default: 0.2, least: 0.01, most: 10, usual: [0.1, 1] },
   },
   laws: { ...flowLaws, ...pumpMotorLaws },
-  flows({ parameter, inlet, outlet, state, command, derivative, reading, law }) {
+  update({ inlet, memory }) {
+    memory.viscosity = inlet.viscosity;
+  },
+  flows({ parameter, inlet, outlet, state, memory, command, derivative, reading, law }) {
     const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
     const difference = outlet.pressure - inlet.pressure;
-    const slip = law.wilsonLeakage(difference, inlet.viscosity, radian, parameter.slipCoefficient * command.wear);
+    const slip = law.wilsonLeakage(difference, memory.viscosity, radian, parameter.slipCoefficient * command.wear);
     const slipMass = slip * (slip > 0 ? outlet.density : inlet.density);
     const reliefFlow =
       (parameter.fullFlowRate * Math.max(state.reliefLift, 0) * law.signedRoot(difference, 2e4)) /
@@ -52,7 +62,7 @@ export const electricChargePump = branch({
     const lossTorque = law.wilsonTorque(
       difference,
       state.speed,
-      inlet.viscosity,
+      memory.viscosity,
       radian,
       parameter.viscousCoefficient,
       parameter.frictionCoefficient,
@@ -84,10 +94,10 @@ export const electricChargePump = branch({
     reading.reliefFlow = reliefFlow;
     reading.torque = torque;
   },
-  loss({ parameter, inlet, outlet, state, command, law }) {
+  loss({ parameter, inlet, outlet, state, memory, command, law }) {
     const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
     const difference = outlet.pressure - inlet.pressure;
-    const slip = law.wilsonLeakage(difference, inlet.viscosity, radian, parameter.slipCoefficient * command.wear);
+    const slip = law.wilsonLeakage(difference, memory.viscosity, radian, parameter.slipCoefficient * command.wear);
     const slipMass = slip * (slip > 0 ? outlet.density : inlet.density);
     const reliefFlow =
       (parameter.fullFlowRate * Math.max(state.reliefLift, 0) * law.signedRoot(difference, 2e4)) /
@@ -98,7 +108,7 @@ export const electricChargePump = branch({
     const lossTorque = law.wilsonTorque(
       difference,
       state.speed,
-      inlet.viscosity,
+      memory.viscosity,
       radian,
       parameter.viscousCoefficient,
       parameter.frictionCoefficient,
@@ -108,13 +118,13 @@ export const electricChargePump = branch({
     return backLoss + lossTorque * state.speed;
   },
   /** Work of the electric motor. */
-  supply({ parameter, inlet, outlet, state, law }) {
+  supply({ parameter, inlet, outlet, state, memory, law }) {
     const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
     const density = law.carriedDensity(outlet.density, inlet.density, -state.speed, parameter.smoothSpeed);
     const lossTorque = law.wilsonTorque(
       outlet.pressure - inlet.pressure,
       state.speed,
-      inlet.viscosity,
+      memory.viscosity,
       radian,
       parameter.viscousCoefficient,
       parameter.frictionCoefficient,

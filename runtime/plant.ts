@@ -22,13 +22,13 @@ export class Plant implements LedgerPart {
   /** Readings, ledger powers, total energy, holdings, as of the end of the last step: see `places`. */
   readonly observed: Float64Array;
   readonly solver: Rodas3;
-  private readonly next: Float64Array;
   private readonly open: Float64Array;
-  private openLength = 0;
+  /** Length of the part that is open, s: in an array, where a number needs no box. */
+  private readonly openLength = new Float64Array(1);
   private readonly count: number;
   private readonly first: number;
   private readonly observedLedger: number;
-  private readonly h: number;
+  private readonly h = new Float64Array(1);
 
   constructor(
     readonly circuit: Circuit,
@@ -45,10 +45,9 @@ export class Plant implements LedgerPart {
     this.u = block.subarray(at.commands, at.commands + circuit.commands.length);
     this.ledger = block.subarray(at.ledger, at.ledger + this.count);
     this.observed = new Float64Array(place.observeCount);
-    this.next = new Float64Array(circuit.memory.length);
     this.open = new Float64Array(this.count);
     this.solver = new Rodas3(circuit, { net: settings.net ?? true });
-    this.h = settings.step / settings.substeps;
+    this.h[0] = settings.step / settings.substeps;
   }
 
   /** A plant with a block of its own: for checks, tests and references. */
@@ -86,39 +85,61 @@ export class Plant implements LedgerPart {
   }
 
   observe(): void {
-    this.circuit.functions.observe(this.y, this.u, this.m, this.observed);
+    this.load();
+    this.observeLoaded();
   }
 
   /** Advances by one step with the commands held, then observes. Allocates nothing. */
   step(): void {
-    const { circuit, settings, y, u, m, next, solver, h } = this;
-    this.openLength = 0;
+    const { circuit, settings, y, m, solver, h } = this;
+    const { step } = circuit;
+    this.openLength[0] = 0;
+    this.load();
+    step.t[0] = h[0]!;
     for (let i = 0; i < settings.substeps; i += 1) {
       if (circuit.hasMemory) {
-        circuit.functions.update(y, u, m, h, next);
-        for (let k = 0; k < m.length; k += 1) m[k] = next[k]!;
+        step.update();
+        for (let k = 0; k < m.length; k += 1) step.m[k] = step.n[k]!;
       }
-      solver.substep(y, u, m, h, this);
+      solver.substep(this);
     }
-    this.observe();
+    for (let i = 0; i < y.length; i += 1) y[i] = step.y[i]!;
+    for (let i = 0; i < m.length; i += 1) m[i] = step.m[i]!;
+    this.observeLoaded();
     this.close();
   }
 
+  /** The circuit's functions work on arrays of their own, which all plants of a circuit share. */
+  private load(): void {
+    const { circuit, y, u, m } = this;
+    const { step } = circuit;
+    for (let i = 0; i < y.length; i += 1) step.y[i] = y[i]!;
+    for (let i = 0; i < u.length; i += 1) step.u[i] = u[i]!;
+    for (let i = 0; i < m.length; i += 1) step.m[i] = m[i]!;
+  }
+
+  private observeLoaded(): void {
+    const { circuit, observed } = this;
+    const { step } = circuit;
+    step.observe();
+    for (let i = 0; i < observed.length; i += 1) observed[i] = step.o[i]!;
+  }
+
   /** Trapezoid over the parts of a step: each part's end is the next part's start; the step's end is observed. */
-  part(d: Float64Array, length: number): void {
-    const { count, first, open, ledger } = this;
+  part(d: Float64Array, length: Float64Array): void {
+    const { count, first, open, openLength, ledger } = this;
     for (let i = 0; i < count; i += 1) {
       const power = d[first + i]!;
-      ledger[i] = ledger[i]! + 0.5 * (this.openLength * (open[i]! + power));
+      ledger[i] = ledger[i]! + 0.5 * (openLength[0]! * (open[i]! + power));
       open[i] = power;
     }
-    this.openLength = length;
+    openLength[0] = length[0]!;
   }
 
   private close(): void {
-    const { count, open, ledger, observed, observedLedger } = this;
+    const { count, open, openLength, ledger, observed, observedLedger } = this;
     for (let i = 0; i < count; i += 1)
-      ledger[i] = ledger[i]! + 0.5 * (this.openLength * (open[i]! + observed[observedLedger + i]!));
-    this.openLength = 0;
+      ledger[i] = ledger[i]! + 0.5 * (openLength[0]! * (open[i]! + observed[observedLedger + i]!));
+    openLength[0] = 0;
   }
 }

@@ -76,6 +76,20 @@ export function oilDensity(
   return referenceDensity / oilVolumeRatio(pressure, freeAir, numerator, denominator);
 }
 
+/**
+ * ln(1 + z) for z > -0.5: twice the first eleven terms of artanh(z/(2 + z)). Exact to rounding up to z = 0.6, within 1e-12 of
+ * itself up to 1; the library function costs more.
+ */
+export function logarithmOfOneAnd(z: number): number {
+  const s = z / (2 + z);
+  const q = s * s;
+  const qq = q * q;
+  const low = 1 + q * (1 / 3) + qq * (1 / 5 + q * (1 / 7));
+  const middle = 1 / 9 + q * (1 / 11) + qq * (1 / 13 + q * (1 / 15));
+  const high = 1 / 17 + q * (1 / 19) + qq * (1 / 21);
+  return 2 * s * (low + qq * qq * (middle + qq * qq * high));
+}
+
 /** Pressure potential h(p) = integral of dp/rho from the standard atmosphere, J/kg. */
 export function oilPotential(
   pressure: number,
@@ -87,7 +101,7 @@ export function oilPotential(
   const above = pressure - STANDARD_PRESSURE;
   const share = numerator / denominator;
   const air = freeAir * STANDARD_PRESSURE * Math.log(pressure * (1 / STANDARD_PRESSURE));
-  const liquid = share * above + ((1 - share) / denominator) * Math.log(1 + denominator * above);
+  const liquid = share * above + ((1 - share) / denominator) * logarithmOfOneAnd(denominator * above);
   return (air + (1 - freeAir) * liquid) * (1 / referenceDensity);
 }
 

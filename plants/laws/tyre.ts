@@ -43,5 +43,6 @@ export function relaxationSpeed(slipVelocity: number, velocity: number, least: n
 
 /** Share of the standstill damping that acts: 1 at rest, fading with rolling and slip speed over `width`, m/s. */
 export function standstillShare(slipVelocity: number, velocity: number, width: number): number {
-  return Math.exp(-(slipVelocity * slipVelocity + velocity * velocity) / (width * width));
+  const share = 1 / (1 + (slipVelocity * slipVelocity + velocity * velocity) * (1 / (width * width)));
+  return share * share;
 }

@@ -14,6 +14,7 @@ import { type Elimination, eliminate, printElimination, printPieces } from './el
 import { chunkSize, javaScript, type Output, printFunction } from './emit.js';
 import { Graph, type NodeId } from './graph.js';
 import { jacobian } from './jacobian.js';
+import { type CircuitModule, compileModule, trainModule } from './module.js';
 import { type ReadContext, readFunction, type Table } from './read.js';
 
 /**
@@ -49,22 +50,9 @@ export interface CircuitFunctions {
   readonly observe: (y: Arrays, u: Arrays, m: Arrays, out: Arrays) => void;
   /** Per element: imbalance of its energy, W (0 for a right element), then the sum of the magnitudes of its terms, W. */
   readonly audit: (y: Arrays, u: Arrays, m: Arrays, out: Arrays) => void;
+  /** Factors c I - J; A gets the factors and the least pivot over c: see elimination.ts. */
   readonly factor: (J: Arrays, c: number, A: Arrays) => void;
   readonly solve: (A: Arrays, b: Arrays, x: Arrays) => void;
-  /** Stages of the solver's step: see solver/rodas3-code.ts. */
-  readonly stageOne: (A: Arrays, d: Arrays, y: Arrays, h: number, k1: Arrays, k2: Arrays, s: Arrays) => void;
-  readonly stageTwo: (A: Arrays, b: Arrays, h: number, k1: Arrays, k2: Arrays, k3: Arrays, s: Arrays) => void;
-  readonly stageThree: (
-    A: Arrays,
-    b: Arrays,
-    h: number,
-    k1: Arrays,
-    k2: Arrays,
-    k3: Arrays,
-    k4: Arrays,
-    s: Arrays,
-    e: Arrays,
-  ) => void;
 }
 
 export interface Circuit {
@@ -80,6 +68,8 @@ export interface Circuit {
   readonly jacobian: { readonly rows: readonly number[]; readonly columns: readonly number[] };
   readonly elimination: Elimination;
   readonly functions: CircuitFunctions;
+  /** The functions of a step, on arrays of their own. */
+  readonly step: CircuitModule;
   /** The generated JavaScript, readable. */
   readonly code: string;
   readonly nodeCount: number;
@@ -437,38 +427,23 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     audit: list('out', [...audit, ...auditScale]),
   };
   const elimination = eliminate(states.length, rows, columns);
-  const code = [
-    printFunction(graph, 'rates', ['y', 'u', 'm', 'd'], outputs.rates, most),
-    printFunction(graph, 'ratesAndJacobian', ['y', 'u', 'm', 'd', 'J'], outputs.ratesAndJacobian, most),
-    printFunction(graph, 'update', ['y', 'u', 'm', 'h', 'out'], outputs.update, most),
-    printFunction(graph, 'observe', ['y', 'u', 'm', 'out'], outputs.observe, most),
-    printElimination(elimination),
-    ...rodas3Stages(
-      elimination,
-      states.map((state) => state.errorWeight),
-      javaScript,
-    ).map(({ name, parameters, lines }) => printPieces(name, parameters.join(', '), lines, elimination.cut)),
-  ].join('\n\n');
-  const functions = {
-    ...(compile(code, [
-      'rates',
-      'ratesAndJacobian',
-      'update',
-      'observe',
-      'factor',
-      'solve',
-      'stageOne',
-      'stageTwo',
-      'stageThree',
-    ]) as unknown as CircuitFunctions),
-    audit: lazily(
-      () =>
-        compile(printFunction(graph, 'audit', ['y', 'u', 'm', 'out'], outputs.audit, most), ['audit'])[
-          'audit'
-        ] as CircuitFunctions['audit'],
-    ),
-  };
-  train(functions, { states, memory, commands }, rows.length, elimination.size, outputs);
+  const errorWeights = states.map((state) => state.errorWeight);
+  const step = compileModule({
+    graph,
+    outputs,
+    elimination,
+    commands: commands.length,
+    entries: rows.length,
+    errorWeights,
+    most,
+  });
+  trainModule(step, { states, memory, commands });
+  const auditFunction = lazily(
+    () =>
+      new Function(
+        `'use strict';\n${printFunction(graph, 'audit', ['y', 'u', 'm', 'out'], outputs.audit, most)}\nreturn audit;`,
+      )() as CircuitFunctions['audit'],
+  );
   return {
     name: spec.name,
     spec,
@@ -479,8 +454,11 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     stuffs,
     jacobian: { rows, columns },
     elimination,
-    functions,
-    code,
+    functions: { ...functionsOf(step), audit: auditFunction },
+    step,
+    get code(): string {
+      return printCircuit(graph, outputs, elimination, errorWeights, most);
+    },
     nodeCount: graph.nodes.length,
     hasMemory: memory.length > 0,
     outputs,
@@ -488,62 +466,73 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
   };
 }
 
-/**
- * Runs each function a few times on numbers that are not whole, before anything else does: V8 takes a value that happened
- * to be whole in the first calls for an integer, and throws the optimised code away when it is not, in mid-run.
- */
-function train(
-  functions: CircuitFunctions,
-  circuit: {
-    readonly states: readonly StateSlot[];
-    readonly memory: readonly { readonly initial: number }[];
-    readonly commands: readonly CommandSlot[];
-  },
-  entries: number,
-  factors: number,
-  outputs: CircuitOutputs,
-): void {
-  const odd = (i: number, k: number) => 0.1 + 0.5 * Math.abs(Math.sin(12.9898 * (i + 1) + 78.233 * (k + 1)));
-  const d = new Float64Array(outputs.ratesAndJacobian.length);
-  const J = new Float64Array(entries);
-  const A = new Float64Array(factors + 1);
-  const out = new Float64Array(outputs.observe.length + outputs.update.length);
-  const [x, k1, k2, k3, k4, s] = Array.from({ length: 6 }, () => new Float64Array(circuit.states.length)) as [
-    Arrays,
-    Arrays,
-    Arrays,
-    Arrays,
-    Arrays,
-    Arrays,
-  ];
-  const e = new Float64Array(1);
-  const h = 2.5e-4;
-  for (let k = 0; k < 24; k += 1) {
-    const y = Float64Array.from(
-      circuit.states,
-      (state, i) => state.initial * (0.9 + 0.2 * odd(i, k)) + (state.initial === 0 ? state.scale * odd(i, k) * 0.1 : 0),
-    );
-    const u = Float64Array.from(
-      circuit.commands,
-      (command, i) => command.rest + (k % 2 === 0 ? odd(i, k) : -odd(i, k)),
-    );
-    const m = Float64Array.from(circuit.memory, (slot, i) => slot.initial + odd(i, k));
-    functions.rates(y, u, m, d);
-    functions.update(y, u, m, h, out);
-    functions.observe(y, u, m, out);
-    functions.ratesAndJacobian(y, u, m, d, J);
-    functions.factor(J, 4000, A);
-    for (let i = 0; i < A.length; i += 1) A[i] = odd(i, k);
-    for (let i = 0; i < x.length; i += 1) y[i] = odd(i, k);
-    functions.solve(A, y, x);
-    functions.stageOne(A, y, x, h, k1, k2, s);
-    functions.stageTwo(A, y, h, k1, k2, k3, s);
-    functions.stageThree(A, y, h, k1, k2, k3, k4, s, e);
-  }
+/** The module's functions on arrays of the caller: for checks and tests. */
+function functionsOf(module: CircuitModule): Omit<CircuitFunctions, 'audit'> {
+  const copy = (from: Arrays, to: Arrays) => {
+    for (let i = 0; i < from.length && i < to.length; i += 1) to[i] = from[i]!;
+  };
+  const load = (y: Arrays, u: Arrays, m: Arrays) => {
+    copy(y, module.y);
+    copy(u, module.u);
+    copy(m, module.m);
+  };
+  return {
+    rates(y, u, m, d) {
+      load(y, u, m);
+      copy(y, module.s);
+      module.rates();
+      copy(module.b, d);
+    },
+    ratesAndJacobian(y, u, m, d, J) {
+      load(y, u, m);
+      module.ratesAndJacobian();
+      copy(module.d, d);
+      copy(module.J, J);
+    },
+    update(y, u, m, h, out) {
+      load(y, u, m);
+      module.t[0] = h;
+      module.update();
+      copy(module.n, out);
+    },
+    observe(y, u, m, out) {
+      load(y, u, m);
+      module.observe();
+      copy(module.o, out);
+    },
+    factor(J, c, A) {
+      copy(J, module.J);
+      module.t[1] = c;
+      module.factor();
+      copy(module.J, A);
+    },
+    solve(A, b, x) {
+      copy(A, module.J);
+      copy(b, module.d);
+      module.solve();
+      copy(module.k1, x);
+    },
+  };
 }
 
-function compile(code: string, names: readonly string[]): Record<string, unknown> {
-  return new Function(`'use strict';\n${code}\nreturn { ${names.join(', ')} };`)() as Record<string, unknown>;
+/** The circuit as readable JavaScript. */
+function printCircuit(
+  graph: Graph,
+  outputs: CircuitOutputs,
+  elimination: Elimination,
+  errorWeights: readonly number[],
+  most: number,
+): string {
+  return [
+    printFunction(graph, 'rates', ['y', 'u', 'm', 'd'], outputs.rates, most),
+    printFunction(graph, 'ratesAndJacobian', ['y', 'u', 'm', 'd', 'J'], outputs.ratesAndJacobian, most),
+    printFunction(graph, 'update', ['y', 'u', 'm', 'h', 'out'], outputs.update, most),
+    printFunction(graph, 'observe', ['y', 'u', 'm', 'out'], outputs.observe, most),
+    printElimination(elimination),
+    ...rodas3Stages(elimination, errorWeights, javaScript).map(({ name, parameters, lines }) =>
+      printPieces(name, parameters.join(', '), lines, elimination.cut),
+    ),
+  ].join('\n\n');
 }
 
 function lazily<F extends (...values: never[]) => void>(make: () => F): F {

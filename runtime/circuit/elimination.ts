@@ -1,121 +1,121 @@
 import { type Dialect, javaScript } from './emit.js';
 
 /**
- * Sparse LU of M = c I - J without pivoting, as straight-line code. The order of elimination is chosen once by least
- * fill (Markowitz 1957) on the diagonal; circuits are nearly trees, so there is almost no fill.
+ * Sparse LU of M = c I - J without pivoting, as straight-line code, in place: the factors stand where the Jacobian's
+ * values stood, with places behind them for what fills in. A value that elimination leaves as it is needs no code. The
+ * order of elimination is chosen once by least fill (Markowitz 1957) on the diagonal; circuits are nearly trees, so there
+ * is almost no fill.
+ *
+ * With M = L U, the place of (i, j) holds -L for j < i, 1/U for j = i and -U for j > i.
  */
 export interface Elimination {
   /** Position in the order -> state. */
   readonly order: readonly number[];
-  /** Number of values in the factor array. */
+  /** Length of J with what fills in; behind it stands the least pivot over c. */
   readonly size: number;
   readonly multiplications: number;
-  /** Too large for one function: values stay in arrays between the pieces. */
+  /** Too large for one function. */
   readonly cut: boolean;
-  /** Statements that fill A from J and c and factor it; A[size] gets the least pivot over c. */
+  /** Statements that factor c I - J; `c` is a name. J[size] gets the least pivot over c. */
   factorLines(dialect: Dialect): string[];
   /**
-   * Statements that solve M x = right side into the array `into`. `right` and `after` get a state's index; `after` also
-   * how its solution is called, and gives further statements.
+   * Statements that solve M x = right side into the array `into`. `right` and `after` get a state's index; `after`
+   * gives further statements once its solution is there.
    */
   solveLines(
     dialect: Dialect,
     into: string,
     right: (state: number) => string,
-    after?: (state: number, solution: string) => readonly string[],
+    after?: (state: number) => readonly string[],
   ): string[];
 }
 
 export function eliminate(n: number, rows: readonly number[], columns: readonly number[]): Elimination {
-  const slotOf = new Map<number, number>();
-  rows.forEach((row, i) => {
-    slotOf.set(row * n + columns[i]!, i);
-  });
   const pattern: Set<number>[] = Array.from({ length: n }, (_, i) => new Set([i]));
   rows.forEach((row, i) => {
     pattern[row]!.add(columns[i]!);
   });
-
   const order = chooseOrder(n, pattern);
   const position = new Array<number>(n);
   order.forEach((state, k) => {
     position[state] = k;
   });
-  // symbolic factorisation in permuted coordinates
-  const entries: Set<number>[] = order.map((state) => new Set([...pattern[state]!].map((column) => position[column]!)));
-  const filled = entries.map((row) => new Set(row));
-  let multiplications = 0;
+  // from here on rows and columns in the order of elimination
+  const places = new Map<number, number>();
+  rows.forEach((row, i) => {
+    places.set(position[row]! * n + position[columns[i]!]!, i);
+  });
+  const given = places.size;
+  const filled = order.map((state) => new Set([...pattern[state]!].map((column) => position[column]!)));
   for (let k = 0; k < n; k += 1) {
     for (let i = k + 1; i < n; i += 1) {
       if (!filled[i]!.has(k)) continue;
       for (const j of filled[k]!) if (j > k) filled[i]!.add(j);
     }
   }
-  const index = new Map<number, number>();
-  for (let i = 0; i < n; i += 1)
-    for (const j of [...filled[i]!].sort((a, b) => a - b)) index.set(i * n + j, index.size);
-  const size = index.size;
-  const at = (i: number, j: number) => `A[${index.get(i * n + j)!}]`;
-  // Small circuits keep values in locals; large ones in the array, so that the code can be cut into functions.
+  const entries = filled.map((set) => [...set].sort((a, b) => a - b));
+  entries.forEach((row, i) => {
+    for (const j of row) if (!places.has(i * n + j)) places.set(i * n + j, places.size);
+  });
+  const size = places.size;
+  const at = (i: number, j: number) => `J[${places.get(i * n + j)!}]`;
+  const isGiven = (i: number, j: number) => places.get(i * n + j)! < given;
+  const terms = (i: number, j: number) => entries[i]!.filter((k) => k < Math.min(i, j) && filled[k]!.has(j));
+  let multiplications = n;
+  entries.forEach((row, i) => {
+    for (const j of row) multiplications += terms(i, j).length + (j < i ? 2 : 1);
+  });
   const cut = size > largestInOnePiece;
-  const name = cut ? at : (i: number, k: number) => `a${i}_${k}`;
-  const pivot = cut ? (i: number) => at(i, i) : (i: number) => `r${i}`;
-  for (let i = 0; i < n; i += 1) {
-    for (const j of filled[i]!) {
-      for (const k of filled[i]!) if (k < Math.min(i, j) && filled[k]!.has(j)) multiplications += 1;
-      multiplications += 1;
-    }
-  }
 
-  // values, row by row (Doolittle)
+  // values, row by row (Doolittle); every value is stored at once: V8 would keep what it needs later on its stack
   const factorLines = (dialect: Dialect): string[] => {
-    const lines = [`A[${size}] = ${dialect.infinity};`];
-    const declare = cut ? '' : dialect.local;
+    const lines = [];
     for (let i = 0; i < n; i += 1) {
-      const columnsHere = [...filled[i]!].sort((a, b) => a - b);
-      for (const j of columnsHere) {
-        const slot = slotOf.get(order[i]! * n + order[j]!);
-        const original = slot === undefined ? '' : `J[${slot}]`;
-        const start = i === j ? (original ? `c - ${original}` : 'c') : original ? `-${original}` : '';
-        const terms = columnsHere
-          .filter((k) => k < Math.min(i, j) && filled[k]!.has(j))
-          .map((k) => `${name(i, k)} * ${name(k, j)}`);
-        const sum = terms.length === 0 ? start || '0' : `${start || '0'} - ${terms.join(' - ')}`;
-        const store = cut ? '' : `${at(i, j)} = `;
-        if (j < i) lines.push(`${declare}${name(i, j)} = ${store}(${sum}) * ${pivot(j)};`);
-        else if (j === i) {
-          lines.push(
-            `{ ${dialect.local}d = ${sum}; A[${size}] = ${dialect.math('min')}(A[${size}], d); ${at(i, i)} = 1 / d; }`,
-          );
-          if (!cut) lines.push(`${dialect.local}r${i} = ${at(i, i)};`);
-        } else lines.push(`${declare}${name(i, j)} = ${store}${sum};`);
+      for (const j of entries[i]!) {
+        const sums = terms(i, j).map((k) => `${at(i, k)} * ${at(k, j)}`);
+        if (j === i) {
+          const minus = [...(isGiven(i, i) ? [at(i, i)] : []), ...sums].map((term) => ` - ${term}`).join('');
+          lines.push(`${dialect.local}d${i} = c${minus};`, `${at(i, i)} = ${dialect.number(1)} / d${i};`);
+          // pieces of a cut function see only the array
+          const before = `p${i}`;
+          if (i === 0) lines.push(cut ? `J[${size}] = d0;` : `${dialect.local}least0 = d0;`);
+          else if (cut)
+            lines.push(
+              `${dialect.local}${before} = J[${size}];`,
+              `J[${size}] = d${i} < ${before} ? d${i} : ${before};`,
+            );
+          else lines.push(`${dialect.local}least${i} = d${i} < least${i - 1} ? d${i} : least${i - 1};`);
+        } else {
+          const all = [...(isGiven(i, j) ? [at(i, j)] : []), ...sums].join(' + ');
+          if (j < i) lines.push(`${at(i, j)} = ${sums.length > 0 ? `(${all})` : all} * ${at(j, j)};`);
+          else if (sums.length > 0) lines.push(`${at(i, j)} = ${all};`);
+        }
       }
     }
-    lines.push(`A[${size}] /= c;`);
+    lines.push(`J[${size}] = ${cut ? `J[${size}]` : `least${n - 1}`} / c;`);
     return lines;
   };
 
-  const solveLines: Elimination['solveLines'] = (dialect, into, right, after) => {
+  const solveLines: Elimination['solveLines'] = (_dialect, into, right, after) => {
     const lines: string[] = [];
-    const z = cut ? (i: number) => `${into}[${order[i]!}]` : (i: number) => `${into}z${i}`;
-    const x = cut ? (i: number) => `${into}[${order[i]!}]` : (i: number) => `${into}x${i}`;
-    const declare = cut ? '' : dialect.local;
+    const value = (i: number) => `${into}[${order[i]!}]`;
+    const sum = (i: number, columnsHere: readonly number[]) =>
+      columnsHere.map((j) => ` + ${at(i, j)} * ${value(j)}`).join('');
     for (let i = 0; i < n; i += 1) {
-      const terms = [...filled[i]!]
-        .filter((k) => k < i)
-        .sort((a, b) => a - b)
-        .map((k) => `${at(i, k)} * ${z(k)}`);
-      lines.push(`${declare}${z(i)} = ${right(order[i]!)}${terms.map((term) => ` - ${term}`).join('')};`);
+      lines.push(
+        `${value(i)} = ${right(order[i]!)}${sum(
+          i,
+          entries[i]!.filter((k) => k < i),
+        )};`,
+      );
     }
     for (let i = n - 1; i >= 0; i -= 1) {
-      const terms = [...filled[i]!]
-        .filter((j) => j > i)
-        .sort((a, b) => a - b)
-        .map((j) => `${at(i, j)} * ${x(j)}`);
-      const sum = terms.length === 0 ? z(i) : `(${z(i)}${terms.map((term) => ` - ${term}`).join('')})`;
-      lines.push(`${declare}${x(i)} = ${sum} * ${at(i, i)};`);
-      if (!cut) lines.push(`${into}[${order[i]!}] = ${into}x${i};`);
-      if (after) lines.push(...after(order[i]!, x(i)));
+      const known = sum(
+        i,
+        entries[i]!.filter((j) => j > i),
+      );
+      lines.push(`${value(i)} = ${known === '' ? value(i) : `(${value(i)}${known})`} * ${at(i, i)};`);
+      if (after) lines.push(...after(order[i]!));
     }
     return lines;
   };
@@ -137,10 +137,10 @@ export function printPieces(name: string, parameters: string, lines: readonly st
 
 export function printElimination(elimination: Elimination): string {
   return [
-    printPieces('factor', 'J, c, A', elimination.factorLines(javaScript), elimination.cut),
+    printPieces('factor', 'J, c', elimination.factorLines(javaScript), elimination.cut),
     printPieces(
       'solve',
-      'A, b, x',
+      'J, b, x',
       elimination.solveLines(javaScript, 'x', (state) => `b[${state}]`),
       elimination.cut,
     ),

@@ -18,6 +18,8 @@ export interface Dialect {
   readonly step: string;
   readonly math: (name: string) => string;
   readonly number: (value: number) => string;
+  /** A number in an arm of a choice: text that needs nothing when it is first met. */
+  readonly literal: (value: number) => string;
   readonly local: string;
   readonly equals: string;
   readonly differs: string;
@@ -31,6 +33,7 @@ export const javaScript: Dialect = {
   step: 'h',
   math: (name) => `Math.${name}`,
   number: numberText,
+  literal: numberText,
   local: 'const ',
   equals: '===',
   differs: '!==',
@@ -42,16 +45,19 @@ export const cLanguage: Dialect = {
   command: (index) => `u[${index}]`,
   memory: (index) => `m[${index}]`,
   step: 'h',
-  math: (name) => ({ abs: 'fabs', min: 'fmin', max: 'fmax', sign: 'oilspring_sign' })[name] ?? name,
-  number: (value) => {
-    const text = numberText(value);
-    return /[.e]/i.test(text) ? text : text.startsWith('(') ? `${text.slice(0, -1)}.0)` : `${text}.0`;
-  },
+  math: (name) => ({ abs: 'fabs', min: 'oilspring_min', max: 'oilspring_max', sign: 'oilspring_sign' })[name] ?? name,
+  number: cNumber,
+  literal: cNumber,
   local: 'const double ',
   equals: '==',
   differs: '!=',
   infinity: 'INFINITY',
 };
+
+function cNumber(value: number): string {
+  const text = numberText(value);
+  return /[.e]/i.test(text) ? text : text.startsWith('(') ? `${text.slice(0, -1)}.0)` : `${text}.0`;
+}
 
 function numberText(value: number): string {
   if (Object.is(value, -0)) return '(-0.0)';
@@ -149,6 +155,22 @@ export function printChunks(
     const name = printed.get(target);
     return name ?? expression(target, at);
   };
+  /** An arm of a choice: a name or a number, so that taking it needs nothing that was never run before. */
+  const leafNames = new Set<string>();
+  const arm = (id: NodeId, at: number): string => {
+    const target = throughLaw(graph, id);
+    const node = graph.nodes[target]!;
+    if (node.op === 'const') return dialect.literal(node.value);
+    const mine = chunkOf.get(target);
+    if (mine === at && printed.has(target)) return printed.get(target)!;
+    // a leaf, or a value of an earlier chunk
+    const name = `l${target}_${at}`;
+    if (!leafNames.has(name)) {
+      leafNames.add(name);
+      chunks[at]!.lines.push(`${dialect.local}${name} = ${text(target, at)};`);
+    }
+    return name;
+  };
   const condition = (id: NodeId, at: number): string => {
     const target = throughLaw(graph, id);
     const node = graph.nodes[target]!;
@@ -174,7 +196,16 @@ export function printChunks(
       case 'neg':
         return `(-${text(a, at)})`;
       case '?':
-        return `(${condition(a, at)} ? ${text(b, at)} : ${text(c, at)})`;
+        return `(${condition(a, at)} ? ${arm(b, at)} : ${arm(c, at)})`;
+      case 'min':
+      case 'max': {
+        const sides = heldBy(graph, operandsOf(id));
+        if (!sides) break;
+        const [limit, held] = [graph.nodes[sides[0]]!.value, arm(sides[1], at)];
+        // to the bit what the library function gives, signs of zero and what is no number included
+        const beyond = node.op === 'max' ? (limit === 0 ? '<=' : '<') : '>';
+        return `(${held} ${beyond} ${dialect.number(limit)} ? ${dialect.literal(limit)} : ${held})`;
+      }
       case '!':
         return `(1 - ${truth(a, at)})`;
       case '&&':
@@ -182,18 +213,18 @@ export function printChunks(
       case '||':
         return `${dialect.math('max')}(${truth(a, at)}, ${truth(b, at)})`;
       default:
-        if (infix.has(node.op)) return `(${text(a, at)} ${node.op} ${text(b, at)})`;
-        return `${dialect.math(node.op)}(${node.operands.map((operand) => text(operand, at)).join(', ')})`;
     }
+    if (infix.has(node.op)) return `(${text(a, at)} ${node.op} ${text(b, at)})`;
+    return `${dialect.math(node.op)}(${node.operands.map((operand) => text(operand, at)).join(', ')})`;
   };
   // Both arms of a choice are computed ahead of it: code that runs for the first time when a relief valve opens would
   // make V8 throw the optimised function away in the middle of a live run.
   const arms = new Set<NodeId>();
   for (const id of order) {
-    if (graph.nodes[id]!.op !== '?') continue;
-    const [, b, c] = operandsOf(id);
-    arms.add(b!);
-    arms.add(c!);
+    const { op } = graph.nodes[id]!;
+    if (op === '?') for (const arm of operandsOf(id).slice(1)) arms.add(arm);
+    // printed twice
+    if (op === 'min' || op === 'max') for (const side of operandsOf(id)) arms.add(side);
   }
   const depth = new Map<NodeId, number>();
   for (const id of order) {
@@ -223,6 +254,13 @@ function throughLaw(graph: Graph, id: NodeId): NodeId {
   let at = id;
   while (graph.nodes[at]!.op === 'law') at = graph.nodes[at]!.operands[0]!;
   return at;
+}
+
+/** The constant and the other operand of a minimum or maximum with one constant that is no negative zero. */
+function heldBy(graph: Graph, [a, b]: readonly NodeId[]): [NodeId, NodeId] | undefined {
+  const limit = (id: NodeId) =>
+    graph.isConstant(id) && !Object.is(graph.constantValue(id), -0) && !Number.isNaN(graph.constantValue(id));
+  return limit(a!) ? [a!, b!] : limit(b!) ? [b!, a!] : undefined;
 }
 
 function isLeaf(graph: Graph, id: NodeId): boolean {

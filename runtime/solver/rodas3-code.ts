@@ -5,9 +5,9 @@ import type { Dialect } from '../circuit/emit.js';
  * The stages of one RODAS3 step (see rodas3.ts) as straight-line code around the elimination of its circuit: each vector
  * operation stands where its values are at hand.
  *
- *   stageOne(A, d, y, h, k1, k2, s)            K1 and K2 from d = f(y); s = y + 2 K1
- *   stageTwo(A, b, h, k1, k2, k3, s)           K3 from b = f(s); s = s + K3
- *   stageThree(A, b, h, k1, k2, k3, k4, s, e)  K4 from b = f(s); s = s + K4, the new state; e[0] = the largest weighted
+ *   stageOne(J, d, y, h, k1, k2, s)            K1 and K2 from d = f(y); s = y + 2 K1
+ *   stageTwo(J, b, h, k1, k2, k3, s)           K3 from b = f(s); s = s + K3
+ *   stageThree(J, b, h, k1, k2, k3, k4, s, e)  K4 from b = f(s); s = s + K4, the new state; e[0] = the largest weighted
  *                                              error estimate, not a number where any estimate is none
  */
 export interface StageCode {
@@ -19,63 +19,61 @@ export interface StageCode {
 
 export function rodas3Stages(elimination: Elimination, errorWeights: readonly number[], dialect: Dialect): StageCode[] {
   const { local, number, math } = dialect;
-  const four = `${local}f = 4 / h;`;
-  const inverse = `${local}g = 1 / h;`;
-  const third = number(8 / 3);
   // pieces of a cut function see only the arrays
-  const f = elimination.cut ? '(4 / h)' : 'f';
-  const g = elimination.cut ? '(1 / h)' : 'g';
-  const k4 = errorWeights.map(() => '');
-  const last = elimination.solveLines(
-    dialect,
-    'k4',
-    (i) => `b[${i}] + ${g} * (k1[${i}] - k2[${i}] - ${third} * k3[${i}])`,
-    (i, solution) => {
-      k4[i] = solution;
-      return [`s[${i}] += ${solution};`];
-    },
+  const four = elimination.cut ? `(${number(4)} / h)` : 'f';
+  const inverse = elimination.cut ? `(${number(1)} / h)` : 'g';
+  const two = number(2);
+  const third = number(8 / 3);
+  const sizes = errorWeights.flatMap((weight, i) =>
+    weight > 0 ? [`${math('abs')}(k4[${i}]) * ${number(weight)}`] : [],
   );
-  const estimates = errorWeights.flatMap((weight, i) =>
-    weight > 0 ? [`${math('abs')}(${k4[i]!}) * ${number(weight)}`] : [],
-  );
-  const largest = estimates.reduce((most, estimate) => `${math('max')}(${most}, ${estimate})`, number(0));
   return [
     {
       name: 'stageOne',
-      parameters: ['A', 'd', 'y', 'h', 'k1', 'k2', 's'],
+      parameters: ['J', 'd', 'y', 'h', 'k1', 'k2', 's'],
       lines: [
-        ...(elimination.cut ? [] : [four]),
+        ...(elimination.cut ? [] : [`${local}f = ${number(4)} / h;`]),
         ...elimination.solveLines(
           dialect,
           'k1',
           (i) => `d[${i}]`,
-          (i, k1) => [`s[${i}] = y[${i}] + 2 * ${k1};`],
+          (i) => [`s[${i}] = y[${i}] + ${two} * k1[${i}];`],
         ),
-        ...elimination.solveLines(dialect, 'k2', (i) => `d[${i}] + ${f} * k1[${i}]`),
+        ...elimination.solveLines(dialect, 'k2', (i) => `d[${i}] + ${four} * k1[${i}]`),
       ],
     },
     {
       name: 'stageTwo',
-      parameters: ['A', 'b', 'h', 'k1', 'k2', 'k3', 's'],
+      parameters: ['J', 'b', 'h', 'k1', 'k2', 'k3', 's'],
       lines: [
-        ...(elimination.cut ? [] : [inverse]),
+        ...(elimination.cut ? [] : [`${local}g = ${number(1)} / h;`]),
         ...elimination.solveLines(
           dialect,
           'k3',
-          (i) => `b[${i}] + ${g} * (k1[${i}] - k2[${i}])`,
-          (i, k3) => [`s[${i}] += ${k3};`],
+          (i) => `b[${i}] + ${inverse} * (k1[${i}] - k2[${i}])`,
+          (i) => [`s[${i}] = s[${i}] + k3[${i}];`],
         ),
       ],
     },
     {
       name: 'stageThree',
-      parameters: ['A', 'b', 'h', 'k1', 'k2', 'k3', 'k4', 's', 'e'],
+      parameters: ['J', 'b', 'h', 'k1', 'k2', 'k3', 'k4', 's', 'e'],
       lines: [
-        ...(elimination.cut ? [] : [inverse]),
-        ...last,
-        `e[0] = ${largest};`,
+        ...(elimination.cut ? [] : [`${local}g = ${number(1)} / h;`]),
+        ...elimination.solveLines(
+          dialect,
+          'k4',
+          (i) => `b[${i}] + ${inverse} * (k1[${i}] - k2[${i}] - ${third} * k3[${i}])`,
+          (i) => [`s[${i}] = s[${i}] + k4[${i}];`],
+        ),
+        `e[0] = ${number(0)};`,
+        ...sizes.flatMap((size, i) => [
+          `${local}e${i} = e[0];`,
+          `${local}q${i} = ${size};`,
+          `e[0] = e${i} > q${i} ? e${i} : q${i};`,
+        ]),
         // an infinite estimate and one that is no number both make this no number
-        `e[0] += ${number(0)} * (${balancedSum(k4)});`,
+        `e[0] = e[0] + ${number(0)} * ${balancedSum(errorWeights.map((_, i) => `k4[${i}]`))};`,
       ],
     },
   ];

@@ -31,8 +31,8 @@ export const step: Part = {
       }
       return median(costs);
     };
-    const d = new Float64Array(circuit.states.length + 16);
-    const evaluate = () => circuit.functions.rates(plant.y, plant.u, plant.m, d);
+    circuit.step.s.set(plant.y);
+    const evaluate = () => circuit.step.rates();
     timed(WARM, () => plant.step());
     timed(WARM, evaluate);
     const turns: { own: number; ownEvaluation: number; c: number; cEvaluation: number }[] = [];

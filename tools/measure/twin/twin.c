@@ -29,7 +29,7 @@ static inline double signum(double a) { return a > 0 ? 1 : a < 0 ? -1 : a; }
 
 static double y[STATES], m[MEMORY + 1], u[COMMANDS + 1], next[MEMORY + 1], observed[OBSERVED];
 static double ledger[RATES - STATES], open_power[RATES - STATES];
-static double d[RATES], J[JACOBIAN], A[ELIMINATION + 1], k1[STATES], k2[STATES], k3[STATES], k4[STATES], b[STATES + RATES], stage[STATES], estimate[1];
+static double d[RATES], J[ELIMINATION + 1], k1[STATES], k2[STATES], k3[STATES], k4[STATES], b[STATES + RATES], stage[STATES], estimate[1];
 static double block[STATES + MEMORY + COMMANDS + BLOCK_MORE];
 static float ring[64][ROW];
 static unsigned long refused;
@@ -42,14 +42,14 @@ static void step(void)
         update(y, u, m, h, next);
         memcpy(m, next, sizeof m);
         ratesAndJacobian(y, u, m, d, J);
-        factor(J, 2 / h, A);
-        stageOne(A, d, y, h, k1, k2, stage);
+        factor(J, 2 / h);
+        stageOne(J, d, y, h, k1, k2, stage);
         rates(stage, u, m, b);
-        stageTwo(A, b, h, k1, k2, k3, stage);
+        stageTwo(J, b, h, k1, k2, k3, stage);
         rates(stage, u, m, b);
-        stageThree(A, b, h, k1, k2, k3, k4, stage, estimate);
+        stageThree(J, b, h, k1, k2, k3, k4, stage, estimate);
         /* the safety net of the solver is not part of the twin: its case is counted */
-        if (!(A[ELIMINATION] >= 0.1)) refused += 1;
+        if (!(J[ELIMINATION] >= 0.1)) refused += 1;
         for (int i = 0; i < RATES - STATES; i += 1) {
             ledger[i] += 0.5 * (length * (open_power[i] + d[STATES + i]));
             open_power[i] = d[STATES + i];
