@@ -5,7 +5,8 @@ import { type Part, percent, us } from '../part.js';
 
 /**
  * The loop's waiting beside cyclictest: same policy, same core, in turns, cores swapped, pooled. Each side runs twice:
- * its second row against its first is the null control.
+ * its second row against its first is the null control. The loop spins the last 90 µs before a deadline and cyclictest
+ * does not: the processor share is the price of the difference.
  */
 export const lateness: Part = {
   name: 'lateness',
@@ -42,7 +43,7 @@ export const lateness: Part = {
     const c = all(rows[0]!, rows[1]!);
     const p = all(rows[2]!, rows[3]!);
     const share = shares.reduce((sum, one) => sum + one, 0) / shares.length;
-    const ratio = (a: number, b: number) => (b > 0 ? (a / b).toFixed(2) : 'not defined');
+    const ratio = (a: number, b: number) => (b > 0 ? String(Number((a / b).toPrecision(2))) : 'not defined');
     const text = (q: typeof p) => `${us(q.p50 * 1e3)} / ${us(q.p99 * 1e3)} / ${us(q.p999 * 1e3)} / ${us(q.max * 1e3)}`;
     return {
       rows: [
