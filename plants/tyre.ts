@@ -129,4 +129,18 @@ export const tyre = branch({
       law.standstillShare(slipVelocity, road.velocity, parameter.dampingSpeed);
     return sliding * law.relaxationSpeed(slipVelocity, road.velocity, parameter.creepSpeed) + damping * slipVelocity;
   },
+  examine: ({ parameter }) => {
+    // a spinning wheel at standstill has slip 3: see relaxationRate
+    const x = 3 * parameter.stiffnessFactor!;
+    const bent = Math.atan(x - parameter.curvatureFactor! * (x - Math.atan(x)));
+    return parameter.model !== 0 || parameter.shapeFactor! * bent < Math.PI
+      ? []
+      : [
+          {
+            parameter: 'shapeFactor',
+            what: 'the force of the Magic Formula turns round within the slip of a spinning wheel and would drive it',
+            remedy: 'lower shapeFactor below 2, or bring curvatureFactor near 1',
+          },
+        ];
+  },
 });

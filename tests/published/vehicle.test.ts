@@ -208,6 +208,15 @@ describe('tyre: Magic Formula (Bakker, Nyborg & Pacejka 1987), commonly quoted s
     }
   });
 
+  it('refuses a Magic Formula that turns round at large slip, and takes the quoted sets for dry, wet, snow and ice', () => {
+    const said = (stiffnessFactor: number, shapeFactor: number, curvatureFactor: number, model = 0) =>
+      library.tyre.examine!({ parameter: { stiffnessFactor, shapeFactor, curvatureFactor, model }, fluid: {} }).length;
+    expect([said(10, 1.9, 0.97), said(12, 2.3, 1), said(5, 2, 1), said(4, 2, 1)]).toEqual([0, 0, 0, 0]);
+    expect(said(13.5, 2.28, 0.71)).toBe(1);
+    expect(said(13.5, 2.28, 0.71, 1)).toBe(0);
+    expect(tyreLaws.magicFormula(3, 13.5, 2.28, 1, 0.71)).toBeLessThan(0);
+  });
+
   it('the element follows a step of slip over its relaxation length: 63.2 % at 0.3 m', () => {
     const bench = stand(0.001, { relaxationLength: 0.3 });
     bench.run(0.02); // 15 m/s: 0.3 m
