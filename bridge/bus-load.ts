@@ -1,7 +1,7 @@
 import { frameTime } from './frame-bits.js';
 import type { LinkSpec, MessageMap, MessageSpec } from './message-map.js';
 import { arbitrationKey, type FrameStream, responseTimes } from './response-times.js';
-import { changeDistance } from './schedule.js';
+import { changeDistance, goesByChange, goesByCycle } from './schedule.js';
 import { patternLength } from './spread-phases.js';
 
 /** What a CAN bus has to carry at worst. Times in s. */
@@ -81,13 +81,13 @@ function streamsOf(message: MessageSpec, link: LinkSpec, step: number): Stream[]
     jitter: 0,
   });
   return [
-    ...(message.trigger !== 'on-change' ? [stream(message.every)] : []),
-    ...(message.trigger !== 'cyclic' ? [stream(changeDistance(message))] : []),
+    ...(goesByCycle(message) ? [stream(message.every)] : []),
+    ...(goesByChange(message) ? [stream(changeDistance(message))] : []),
   ];
 }
 
 function worstBurst(messages: readonly MessageSpec[], link: LinkSpec): Burst {
-  const sent = messages.filter((message) => message.direction === 'sent' && message.trigger !== 'on-change');
+  const sent = messages.filter((message) => message.direction === 'sent' && goesByCycle(message));
   const load = new Float64Array(patternLength(sent));
   for (const message of sent)
     for (let tick = message.phase; tick < load.length; tick += message.every) load[tick] += frameTime(message, link)!;

@@ -1,6 +1,7 @@
 import { checksumText, checkText } from './c-header-text.js';
 import { requireSoundMap } from './examine-map.js';
 import type { MapSignal, MessageMap, MessageSpec } from './message-map.js';
+import { goesByChange, goesByCycle } from './schedule.js';
 import { controlLength, header, kinds, magic, mapChecksum, type UdpLayout, udpLayout, version } from './udp-layout.js';
 
 /**
@@ -166,9 +167,9 @@ ${message.signals.map((signal) => signalText(message, signal)).join('')}`;
 
 function timing(message: MessageSpec): string {
   const parts: string[] = [];
-  if (message.trigger !== 'on-change')
-    parts.push(`every ${message.every} ticks, in ticks with remainder ${message.phase}`);
-  if (message.trigger !== 'cyclic') parts.push(`when a value moves, at most every ${message.fastEvery ?? 1} ticks`);
+  if (goesByCycle(message)) parts.push(`every ${message.every} ticks, in ticks with remainder ${message.phase}`);
+  if (goesByChange(message)) parts.push(`when a value moves, at most every ${message.fastEvery ?? 1} ticks`);
+  if (message.trigger === 'on-request') parts.push('when it is asked for');
   if (message.startDelay > 0) parts.push(`from tick ${message.startDelay} of the bench's life on`);
   if (message.direction === 'received') {
     parts.push(message.timeout > 0 ? `time-out after ${message.timeout} ticks` : 'no time-out');

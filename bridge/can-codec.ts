@@ -1,6 +1,20 @@
 import type { CanLayout, MapSignal, MessageSpec } from './message-map.js';
 import { fieldVerdicts } from './udp-codec.js';
 
+/** What turns the values of a message into a payload and back. */
+export interface PayloadCodec {
+  readonly message: MessageSpec;
+  /** Payload, bytes; the longest where it varies. */
+  readonly length: number;
+  readonly count: number;
+  /** Whether a payload of this length can be read. */
+  fits(length: number): boolean;
+  quantise(values: Float64Array, from: number, carried: Float64Array, to: number): number;
+  write(bytes: Uint8Array): number;
+  read(bytes: Uint8Array, values: Float64Array, to: number, length: number): number;
+  carries(index: number): boolean;
+}
+
 /**
  * Reads and writes the payload of one CAN message: any start bit, length to 64 bits, both byte orders, signed,
  * unsigned, IEEE 754 floats, scale and offset, multiplexing of any depth. Compiled into tables once; a call allocates
@@ -12,7 +26,7 @@ import { fieldVerdicts } from './udp-codec.js';
  * Bits are numbered as in CAN database text: bit 8 b + i is bit i of byte b; a little-endian signal starts at its least
  * significant bit, a big-endian one at its most significant.
  */
-export class CanCodec {
+export class CanCodec implements PayloadCodec {
   /** Payload, bytes. */
   readonly length: number;
   readonly count: number;
@@ -36,6 +50,10 @@ export class CanCodec {
     this.order = selectorsFirst(message);
     this.raw = new Float64Array(this.count);
     this.present = new Uint8Array(this.count);
+  }
+
+  fits(length: number): boolean {
+    return length === this.length;
   }
 
   /** As UdpCodec.quantise. A signal that the selectors leave out is carried as it came. */
@@ -163,7 +181,7 @@ class Field {
   readonly wireMost: number;
   /** Bits of the upper half (of the only one to 32 bits) above the number. */
   readonly unused: number;
-  readonly byte: Uint8Array;
+  readonly byte: Uint16Array;
   readonly shift: Uint8Array;
   readonly mask: Uint8Array;
   readonly place: Uint8Array;
@@ -191,7 +209,7 @@ class Field {
     [this.rawLeast, this.rawMost] = rawLimits(layout);
     this.unused = (32 - (layout.length % 32)) % 32;
     const pieces = piecesOf(layout);
-    this.byte = Uint8Array.from(pieces, (piece) => piece.byte);
+    this.byte = Uint16Array.from(pieces, (piece) => piece.byte);
     this.shift = Uint8Array.from(pieces, (piece) => piece.shift);
     this.mask = Uint8Array.from(pieces, (piece) => (1 << piece.count) - 1);
     this.place = Uint8Array.from(pieces, (piece) => piece.place);

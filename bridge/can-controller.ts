@@ -1,12 +1,15 @@
 import { BlockLayout } from '../runtime/block.js';
-import { CanCodec } from './can-codec.js';
 import { frameSizes, identifierFlags, identifierWord, payloadAt, payloadRoom } from './can-frame.js';
 import { CanReceiver } from './can-receiver.js';
 import { CanSender } from './can-sender.js';
 import { ControllerMirror, type ControllerModule } from './controller-side.js';
 import { requireSoundMap } from './examine-map.js';
 import { IdentifierTable } from './identifier-table.js';
+import { heard, Station } from './j1939/station.js';
+import { longestMessage } from './j1939/transport.js';
+import { j1939Counts } from './link-counts.js';
 import type { MessageMap } from './message-map.js';
+import { makeCodec } from './payload-codec.js';
 import { makeProtector } from './protection/make.js';
 import { receptions } from './received-message.js';
 import type { Transport } from './transport.js';
@@ -16,6 +19,8 @@ export interface CanControllerOptions {
   /** The CAN links that the controller is on, all of one block of values. */
   readonly links: readonly string[];
   readonly controller: ControllerModule;
+  /** Length of a tick, s; default 1 ms. Of use to the time-outs of SAE J1939 alone. */
+  readonly step?: number;
   /** Sends the first `size` bytes on link number `link` of `links`; the bytes are used again afterwards. */
   readonly send: (link: number, frame: Uint8Array, size: number) => void;
   /** The message that the controller answers at once; default: of those with the shortest cycle the last in map order. */
@@ -43,6 +48,11 @@ export class CanControllerEndpoint {
   private readonly tables: readonly IdentifierTable[];
   /** Per link: receiver of each place of its table. */
   private readonly places: readonly Int32Array[];
+  /** What it does by SAE J1939, per link; undefined where nothing on it is of that. */
+  private readonly stations: readonly (Station | undefined)[];
+  /** Place of each sender among those of its link. */
+  private readonly senderPlaces: Int32Array;
+  private readonly long = new Uint8Array(longestMessage);
   private readonly incoming = new Uint8Array(frameSizes.flexible);
   private readonly incomingPayload = this.incoming.subarray(payloadAt);
   private readonly outgoing = new Uint8Array(frameSizes.flexible);
@@ -58,14 +68,36 @@ export class CanControllerEndpoint {
     this.mirror = new ControllerMirror(map, links);
     const { inbound, outbound } = this.mirror;
     const layout = new BlockLayout();
-    this.receivers = inbound.map((message) => new CanReceiver(new CanCodec(message), makeProtector(message), layout));
+    this.receivers = inbound.map((message) => new CanReceiver(makeCodec(message), makeProtector(message), layout));
     this.senders = outbound.map(
-      (message) => new CanSender(new CanCodec(message), makeProtector(message), layout, Number.NEGATIVE_INFINITY),
+      (message) => new CanSender(makeCodec(message), makeProtector(message), layout, Number.NEGATIVE_INFINITY),
     );
     this.senderLinks = Int32Array.from(outbound, (message) => links.indexOf(message.link));
     this.tables = links.map((link) => new IdentifierTable(inbound.filter((message) => message.link === link)));
     this.places = links.map((link) =>
       Int32Array.from(inbound.flatMap((message, i) => (message.link === link ? [i] : []))),
+    );
+    const step = options.step ?? 1e-3;
+    this.stations = links.map((link) => {
+      const senders = this.senders.filter((sender) => sender.message.link === link);
+      const receivers = this.receivers.filter((receiver) => receiver.message.link === link);
+      if (![...senders, ...receivers].some(({ message }) => message.j1939)) return undefined;
+      const slots = Object.fromEntries(Object.keys(j1939Counts).map((name) => [name, layout.add(`${link}.${name}`)]));
+      return new Station(
+        link,
+        [],
+        senders,
+        receivers,
+        layout,
+        slots as Record<keyof typeof j1939Counts, number>,
+        step,
+        Number.NEGATIVE_INFINITY,
+      );
+    });
+    this.senderPlaces = Int32Array.from(this.senders, (sender, i) =>
+      this.senders
+        .slice(0, i)
+        .reduce((before, other) => before + (other.message.link === sender.message.link ? 1 : 0), 0),
     );
     this.memory = layout.create();
     this.came = new Float64Array(inbound.length).fill(Number.NEGATIVE_INFINITY);
@@ -118,13 +150,40 @@ export class CanControllerEndpoint {
     for (let i = 0; i < this.senders.length; i += 1) {
       const sender = this.senders[i];
       for (let due = tick - ticks + 1; due <= tick; due += 1) {
-        const size = sender.write(memory, due, write, from, this.outgoing, this.outgoingPayload);
+        const size = this.compose(i, due, from);
         if (size < 0) continue;
-        this.options.send(this.senderLinks[i], this.outgoing, size);
+        if (size > 0) this.options.send(this.senderLinks[i], this.outgoing, size);
         break;
       }
       from += sender.count;
     }
+    for (let l = 0; l < this.stations.length; l += 1) {
+      const station = this.stations[l];
+      if (station === undefined) continue;
+      station.grow(memory, tick);
+      for (
+        let size = station.next(memory, tick, this.outgoing);
+        size >= 0;
+        size = station.next(memory, tick, this.outgoing)
+      )
+        this.options.send(l, this.outgoing, size);
+    }
+  }
+
+  /** Sender `i` in tick `due`: size of a frame to send, 0 when it goes in packets, or what SentMessage says. */
+  private compose(i: number, due: number, from: number): number {
+    const { memory, write } = this;
+    const sender = this.senders[i];
+    if (sender.message.j1939 !== true)
+      return sender.write(memory, due, write, from, this.outgoing, this.outgoingPayload);
+    const length = sender.fill(memory, due, write, from, this.long);
+    if (length < 0) return length;
+    if (length > 8) {
+      this.stations[this.senderLinks[i]]!.begin(memory, this.tick, this.senderPlaces[i], this.long, length);
+      return 0;
+    }
+    for (let k = 0; k < length; k += 1) this.outgoingPayload[k] = this.long[k];
+    return sender.frame(this.outgoing, length);
   }
 
   /** When nothing came for a while by the controller's own clock: time goes on by `ticks`, and what is due is sent. */
@@ -142,14 +201,20 @@ export class CanControllerEndpoint {
     }
     const word = identifierWord(frame);
     if ((word & (identifierFlags.error | identifierFlags.remote)) !== 0) return -1;
+    const station = this.stations[link];
+    if (frame !== this.incoming) for (let i = 0; i < size; i += 1) this.incoming[i] = frame[i];
+    if (station !== undefined) {
+      const outcome = station.hear(this.memory, this.tick, word, this.incomingPayload, frame[4]);
+      if (outcome === heard.used) return this.places[link][station.lastUsed];
+      if (outcome !== heard.none) return -1;
+    }
     const place = this.tables[link].find(word);
     if (place < 0) return -1;
     const index = this.places[link][place];
     const receiver = this.receivers[index];
-    if (frame !== this.incoming) for (let i = 0; i < size; i += 1) this.incoming[i] = frame[i];
     if (
       (size === frameSizes.flexible) !== (receiver.message.flexibleDataRate === true) ||
-      receiver.accept(this.memory, this.incomingPayload, frame[4]) > receptions.saturated
+      receiver.accept(this.memory, this.incomingPayload, this.incoming[4]) > receptions.saturated
     ) {
       this.refused += 1;
       return -1;

@@ -1,5 +1,5 @@
 import type { BlockLayout } from '../runtime/block.js';
-import type { CanCodec } from './can-codec.js';
+import type { PayloadCodec } from './can-codec.js';
 import { type Protector, wrongCheck } from './protection/protector.js';
 import { ReceivedMessage, receptions } from './received-message.js';
 import { fieldVerdicts } from './udp-codec.js';
@@ -18,7 +18,7 @@ export class CanReceiver extends ReceivedMessage {
   private readonly stray: number;
 
   constructor(
-    readonly codec: CanCodec,
+    readonly codec: PayloadCodec,
     private readonly protector: Protector | undefined,
     layout: BlockLayout,
   ) {
@@ -34,7 +34,7 @@ export class CanReceiver extends ReceivedMessage {
 
   /** A frame with this message's identifier and the right form; `payload` is `length` bytes long. One of `receptions`. */
   accept(memory: Float64Array, payload: Uint8Array, length: number): number {
-    if (length !== this.codec.length) return this.refuseLength(memory);
+    if (!this.codec.fits(length)) return this.refuseLength(memory);
     if (this.protector !== undefined) {
       const counter = this.protector.check(payload, length);
       if (counter === wrongCheck) {
@@ -47,7 +47,7 @@ export class CanReceiver extends ReceivedMessage {
       }
     }
     for (let i = 0; i < this.count; i += 1) this.fresh[i] = memory[this.values + i];
-    const verdict = this.codec.read(payload, this.fresh, 0);
+    const verdict = this.codec.read(payload, this.fresh, 0, length);
     if (verdict !== fieldVerdicts.fine) memory[this.outOfRange] += 1;
     if (verdict === fieldVerdicts.refused) return receptions.refused;
     this.hold(memory);

@@ -1,5 +1,5 @@
 import type { BlockLayout } from '../runtime/block.js';
-import type { CanCodec } from './can-codec.js';
+import type { PayloadCodec } from './can-codec.js';
 import { frameFlags, frameSizes, identifierFlags, payloadAt, writeFrameHead } from './can-frame.js';
 import type { Protector } from './protection/protector.js';
 import { SentMessage } from './sent-message.js';
@@ -12,7 +12,7 @@ export class CanSender extends SentMessage {
   private readonly size: number;
 
   constructor(
-    readonly codec: CanCodec,
+    readonly codec: PayloadCodec,
     private readonly protector: Protector | undefined,
     layout: BlockLayout,
     firstTick: number,
@@ -39,6 +39,12 @@ export class CanSender extends SentMessage {
     frame: Uint8Array,
     payload: Uint8Array,
   ): number {
+    const length = this.fill(memory, tick, values, from, payload);
+    return length < 0 ? length : this.frame(frame, length);
+  }
+
+  /** Writes the payload alone, as `write` does; its length, -1 or -2. */
+  fill(memory: Float64Array, tick: number, values: Float64Array, from: number, payload: Uint8Array): number {
     const prepared = this.prepare(memory, tick, values, from);
     if (prepared < 0) return prepared;
     const length = this.codec.write(payload);
@@ -47,6 +53,11 @@ export class CanSender extends SentMessage {
       this.protector.protect(payload, length, counter);
       memory[this.counter] = counter + 1 >= this.protector.modulo ? 0 : counter + 1;
     }
+    return length;
+  }
+
+  /** Writes what stands around a payload of `length` bytes; the size of the frame. */
+  frame(frame: Uint8Array, length: number): number {
     writeFrameHead(frame, this.word, length, this.flags);
     for (let i = payloadAt + length; i < this.size; i += 1) frame[i] = 0;
     return this.size;

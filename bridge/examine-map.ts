@@ -1,9 +1,11 @@
 import { BuildError, type Problem } from '../runtime/contract.js';
 import { bitsOf } from './can-bits.js';
 import { flexibleLengths, identifierMasks } from './can-frame.js';
+import { longestMessage } from './j1939/transport.js';
 import { reservedNames } from './link-counts.js';
 import type { MapSignal, MessageMap, MessageSpec } from './message-map.js';
 import { readProtection } from './protection/make.js';
+import { goesByCycle } from './schedule.js';
 import { greatestLength, limits, udpLayout, wireNumber } from './udp-layout.js';
 
 const identifier = /^[A-Za-z][A-Za-z0-9]*$/;
@@ -71,12 +73,19 @@ function examineFrame(
     add('the identifier does not fit', `${message.identifier}`, `0 to ${most}`, 'choose another or make it extended');
   const bytes = message.bytes ?? 8;
   const lengths = message.flexibleDataRate ? flexibleLengths : flexibleLengths.filter((length) => length <= 8);
-  if (!lengths.includes(bytes))
+  const long = message.j1939 === true && bytes > 8;
+  if (long && bytes > longestMessage)
+    add('no message has this length', `${bytes} bytes`, `at most ${longestMessage}`, 'split it');
+  if (long && (message.flexibleDataRate || message.protection))
+    add('a message of the transport protocol is neither FD nor protected', `${bytes} bytes`, '', 'leave both away');
+  if (message.trigger === 'on-request' && message.j1939 !== true)
+    add('on request, and no parameter group', 'trigger: on-request', '', 'say j1939: { pgn: …, source: … }');
+  if (!long && !lengths.includes(bytes))
     add('no CAN frame has this length', `${bytes} bytes`, `one of ${lengths.join(', ')}`, 'take the next longer one');
   if (message.bitRateSwitch && !message.flexibleDataRate)
     add('a classic frame has no bit-rate switch', 'bitRateSwitch: on', '', 'add flexibleDataRate: on');
   for (const signal of message.signals)
-    if (!signal.can)
+    if (!signal.can && !signal.trouble && signal.lamp === undefined)
       add(`${signal.name} has no layout on CAN`, 'no can:', '', 'add can: { start: 0, length: 8 } to it');
   const { bits, faults } = readProtection(message);
   for (const fault of faults) add(fault.what, fault.value, fault.bound, fault.remedy);
@@ -98,7 +107,7 @@ function examineTiming(
 ): void {
   const whole = (value: number | undefined, least: number): boolean =>
     value === undefined || (Number.isInteger(value) && value >= least);
-  if (!whole(message.every, message.trigger === 'on-change' ? 0 : 1))
+  if (!whole(message.every, goesByCycle(message) ? 1 : 0))
     add(
       'the cycle is not a whole number of ticks',
       `${message.every} ticks`,

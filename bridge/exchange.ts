@@ -209,6 +209,7 @@ export class Exchange {
           link.send(block, tick, i, this.units, from);
           from += link.senders[i].count;
         }
+        link.flush(block, tick);
       }
     }
     this.tables.published.copy(block, signals);

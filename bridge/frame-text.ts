@@ -1,19 +1,20 @@
-import { CanCodec } from './can-codec.js';
+import type { PayloadCodec } from './can-codec.js';
 import { frameSizes, identifierFlags, identifierMasks, identifierWord, payloadAt, payloadRoom } from './can-frame.js';
 import { IdentifierTable } from './identifier-table.js';
 import type { MessageMap, MessageSpec } from './message-map.js';
+import { makeCodec } from './payload-codec.js';
 import { makeProtector } from './protection/make.js';
 import { fieldVerdicts } from './udp-codec.js';
 
 /** Turns the frames of one link into words, by the map. For people: allocates. */
 export class FrameText {
   private readonly messages: readonly MessageSpec[];
-  private readonly codecs: readonly CanCodec[];
+  private readonly codecs: readonly PayloadCodec[];
   private readonly table: IdentifierTable;
 
   constructor(map: MessageMap, link: string) {
     this.messages = map.messages.filter((message) => message.link === link);
-    this.codecs = this.messages.map((message) => new CanCodec(message));
+    this.codecs = this.messages.map((message) => makeCodec(message));
     this.table = new IdentifierTable(this.messages);
   }
 
@@ -29,14 +30,14 @@ export class FrameText {
     if (index < 0) return `unknown ${bare}`;
     const message = this.messages[index]!;
     const codec = this.codecs[index]!;
-    if (length !== codec.length || (size === frameSizes.flexible) !== (message.flexibleDataRate === true))
+    if (!codec.fits(length) || (size === frameSizes.flexible) !== (message.flexibleDataRate === true))
       return `${message.name}: wrong length or format, ${bare}`;
     const payload = frame.subarray(payloadAt);
     const protector = makeProtector(message);
     const counter = protector?.check(payload, length);
     if (counter === -1) return `${message.name}: wrong checksum, ${bare}`;
     const values = new Float64Array(codec.count);
-    const verdict = codec.read(payload, values, 0);
+    const verdict = codec.read(payload, values, 0, length);
     const words = message.signals.flatMap((signal, i) => {
       if (!codec.carries(i)) return [];
       const name = Object.entries(signal.names ?? {}).find(([, value]) => value === values[i])?.[0];

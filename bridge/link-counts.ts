@@ -52,6 +52,15 @@ export const canLinkCounts = {
   unsent: { about: 'frames not sent for another reason', event: linkEvents.unsent },
 } as const satisfies Counts;
 
+/** What a CAN link does by SAE J1939; all 0 where no message is of it. */
+export const j1939Counts = {
+  requests: { about: 'requests for a parameter group that came to units of the bench' },
+  longMessages: { about: 'messages of more than 8 bytes received whole' },
+  transportFailures: { about: 'messages of more than 8 bytes that broke off', event: linkEvents.brokenOff },
+  transportBusy: { about: 'messages of more than 8 bytes not sent because the one before was on its way' },
+  addressesLost: { about: 'addresses that another unit took', event: linkEvents.addressLost },
+} as const satisfies Counts;
+
 /** Of every received message. */
 export const receivedCounts = {
   age: { about: 'time since the newest message that was used', ticks: true },
@@ -88,7 +97,7 @@ const adversaryCounts: Counts = Object.fromEntries(
 );
 
 export function countsOfLink(kind: LinkSpec['kind']): Counts {
-  return kind === 'udp' ? udpLinkCounts : { ...canLinkCounts, ...adversaryCounts };
+  return kind === 'udp' ? udpLinkCounts : { ...canLinkCounts, ...j1939Counts, ...adversaryCounts };
 }
 
 export function countsOfMessage(kind: LinkSpec['kind'], direction: 'sent' | 'received'): Counts {

@@ -126,6 +126,16 @@ export const linkEvents = {
     severity: 'warning',
     text: '{a} frames on {subject} could not be sent ({b} so far)',
   },
+  brokenOff: {
+    name: 'long messages broken off',
+    severity: 'warning',
+    text: '{a} messages of more than 8 bytes on {subject} broke off: a packet was missing or late ({b} so far)',
+  },
+  addressLost: {
+    name: 'address lost',
+    severity: 'error',
+    text: 'another control unit on {subject} took {a} addresses of the bench, whose units send nothing more ({b} so far): take the stand-in out, or give it another address',
+  },
   flood: {
     name: 'link flooded',
     severity: 'warning',

@@ -29,6 +29,8 @@ export interface Link {
   take(block: Float64Array, tick: number): void;
   /** Writes sender number `index` with values[from ..] when it is due, and sends it. */
   send(block: Float64Array, tick: number, index: number, values: Float64Array, from: number): void;
+  /** After all messages of a tick have been sent. */
+  flush(block: Float64Array, tick: number): void;
   /** The bench starts: says so where the link has a word for it. */
   hello(tick: number): void;
   clearCounts(block: Float64Array): void;

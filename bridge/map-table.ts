@@ -1,5 +1,6 @@
 import { requireSoundMap } from './examine-map.js';
 import type { MapSignal, MessageMap, MessageSpec } from './message-map.js';
+import { goesByChange, goesByCycle } from './schedule.js';
 import { mapChecksum, type UdpLayout, udpLayout } from './udp-layout.js';
 
 /**
@@ -103,9 +104,9 @@ function facts(message: MessageSpec, layout: UdpLayout | undefined, step: number
   ];
   const length = layout ? layout.length : message.bytes;
   if (length !== undefined) parts.push(`${length} bytes`);
-  if (message.trigger !== 'on-change')
-    parts.push(`every ${time(message.every, step)}`, `phase ${time(message.phase, step)}`);
-  if (message.trigger !== 'cyclic') parts.push(`on change, at most every ${time(message.fastEvery ?? 1, step)}`);
+  if (goesByCycle(message)) parts.push(`every ${time(message.every, step)}`, `phase ${time(message.phase, step)}`);
+  if (goesByChange(message)) parts.push(`on change, at most every ${time(message.fastEvery ?? 1, step)}`);
+  if (message.trigger === 'on-request') parts.push('when it is asked for');
   if (message.standsFor !== undefined) parts.push(`the bench stands in for ${message.standsFor}`);
   if (message.whileText !== undefined) parts.push(`only while ${message.whileText}`);
   if (message.startDelay > 0) parts.push(`starts after ${time(message.startDelay, step)}`);

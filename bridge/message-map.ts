@@ -1,4 +1,5 @@
 import type { Expression, Formula } from '../runtime/judge/formula.js';
+import type { AddressedUnit } from './j1939/name.js';
 
 /**
  * The message map as plain data: which signal sits in which message, in which direction, when it is due, how it is
@@ -24,6 +25,8 @@ export interface LinkSpec {
   /** Nominal and data bit rate, bit/s (can). */
   readonly bitRate?: number;
   readonly dataBitRate?: number;
+  /** Control units for which the bench claims an address (SAE J1939-81). */
+  readonly units?: readonly AddressedUnit[];
 }
 
 export type WireType = 'u8' | 'i8' | 'u16' | 'i16' | 'u32' | 'i32' | 'f32' | 'f64';
@@ -56,6 +59,10 @@ export interface MapSignal {
   /** Names for values: an enumeration. */
   readonly names?: Readonly<Record<string, number>>;
   readonly can?: CanLayout;
+  /** In place of `can`, in a message of trouble codes (SAE J1939-73): the code whose occurrence count it is. */
+  readonly trouble?: { readonly spn: number; readonly fmi: number };
+  /** In such a message: the lamp whose state it is. */
+  readonly lamp?: 'malfunction' | 'stop' | 'warning' | 'protect';
 }
 
 export interface CanLayout {
@@ -87,6 +94,8 @@ export interface MessageSpec {
   /** Number of the message on the wire (UDP message number; CAN identifier). */
   readonly identifier: number;
   readonly extended?: boolean;
+  /** The identifier is that of SAE J1939: it may be asked for, and more than 8 bytes go by the transport protocol. */
+  readonly j1939?: boolean;
   /** Received: the three bits of an SAE J1939 priority in the identifier are not looked at. */
   readonly anyPriority?: boolean;
   readonly flexibleDataRate?: boolean;
@@ -99,8 +108,8 @@ export interface MessageSpec {
   readonly startDelay: number;
   /** Received: ticks without it after which the substitutes count. */
   readonly timeout: number;
-  /** Sent: `cyclic`, or `on-change`, or cyclic with a faster cycle while its values move. */
-  readonly trigger: 'cyclic' | 'on-change' | 'cyclic-and-change';
+  /** Sent: `cyclic`, or `on-change`, or cyclic with a faster cycle while its values move, or when it is asked for (SAE J1939). */
+  readonly trigger: 'cyclic' | 'on-change' | 'cyclic-and-change' | 'on-request';
   readonly fastEvery?: number;
   /** What a received value outside its range does. */
   readonly outOfRange: 'saturate' | 'refuse';

@@ -11,6 +11,14 @@ export function dueByCycle(tick: number, firstTick: number, every: number, phase
   return past === 0;
 }
 
+/** Whether a message goes by its cycle, and whether it goes when a value moves. One on request does neither. */
+export function goesByCycle({ trigger }: Pick<MessageSpec, 'trigger'>): boolean {
+  return trigger === 'cyclic' || trigger === 'cyclic-and-change';
+}
+export function goesByChange({ trigger }: Pick<MessageSpec, 'trigger'>): boolean {
+  return trigger === 'on-change' || trigger === 'cyclic-and-change';
+}
+
 /** The least distance, in ticks, of two sends of a message that goes out because its values changed. */
 export function changeDistance(message: MessageSpec): number {
   return Math.max(1, message.fastEvery ?? 1);

@@ -1,7 +1,7 @@
 import type { BlockLayout } from '../runtime/block.js';
 import { fates, MessageFaults } from './message-faults.js';
 import type { MessageSpec } from './message-map.js';
-import { changeDistance, dueByCycle } from './schedule.js';
+import { changeDistance, dueByCycle, goesByChange, goesByCycle } from './schedule.js';
 
 /** The part of a codec that the schedule needs. */
 export interface Quantiser {
@@ -33,6 +33,8 @@ export class SentMessage {
   faults: MessageFaults | undefined;
   /** Slot: 1 while the message is kept from going. */
   readonly muted: number;
+  /** Slot: 1 when somebody asked for it and it has not gone since. */
+  private readonly requested: number;
   private readonly lastTick: number;
   /** Slot: the tick from which the start delay counts. */
   private readonly since: number;
@@ -58,21 +60,27 @@ export class SentMessage {
     this.unsendable = layout.add(`${message.name}.unsendable`);
     this.muted = layout.add(`${message.name}.muted`);
     this.since = layout.add(`${message.name}.since`, firstTick);
+    this.requested = layout.add(`${message.name}.requested`);
     this.slots = { sent: this.sent, unsendable: this.unsendable, muted: this.muted };
     this.lastTick = layout.add(`${message.name}.lastTick`, Number.NEGATIVE_INFINITY);
     this.fresh = new Float64Array(this.count);
     this.held = new Float64Array(this.count);
-    this.onCycle = message.trigger !== 'on-change';
-    this.onChange = message.trigger !== 'cyclic';
+    this.onCycle = goesByCycle(message);
+    this.onChange = goesByChange(message);
     this.distance = changeDistance(message);
   }
 
   /** Whether the message could go out in this tick, before its values are looked at. */
   mayBeDue(memory: Float64Array, tick: number): boolean {
     if (memory[this.muted] === 1) return false;
-    if (this.onCycle && this.dueNow(memory, tick)) return true;
+    if (memory[this.requested] === 1 || (this.onCycle && this.dueNow(memory, tick))) return true;
     if (!this.onChange || tick - memory[this.since] < this.message.startDelay) return false;
     return tick - memory[this.lastTick] >= this.distance;
+  }
+
+  /** Somebody asks for it: it goes in the next tick in which it may. */
+  request(memory: Float64Array): void {
+    memory[this.requested] = 1;
   }
 
   /** Keeps the message from going, or lets it go: then its start delay counts from this tick on. */
@@ -142,7 +150,10 @@ export class SentMessage {
       memory[this.unsendable] += 1;
       return preparations.unsendable;
     }
+    const asked = memory[this.requested] === 1;
+    memory[this.requested] = 0;
     if (
+      !asked &&
       !(this.onCycle && this.dueNow(memory, tick)) &&
       memory[this.lastTick] > Number.NEGATIVE_INFINITY &&
       !this.moved(memory)

@@ -1,5 +1,6 @@
 import { frameTime } from './frame-bits.js';
 import type { LinkSpec, MessageSpec } from './message-map.js';
+import { goesByCycle } from './schedule.js';
 
 /** Ticks that are looked at; where the cycles repeat later than this the rest is left to chance. */
 const longestPattern = 20_000;
@@ -17,7 +18,7 @@ export function spreadPhases(
   fixed: (message: MessageSpec) => boolean,
 ): MessageSpec[] {
   const own = messages.filter(
-    (message) => message.link === link.name && message.direction === 'sent' && message.trigger !== 'on-change',
+    (message) => message.link === link.name && message.direction === 'sent' && goesByCycle(message),
   );
   const cost = (message: MessageSpec): number => frameTime(message, { ...link, bitRate: link.bitRate ?? usualRate })!;
   const load = new Float64Array(patternLength(own));

@@ -80,6 +80,8 @@ export class UdpLink implements Link {
     if (length >= 0) this.pass(length);
   }
 
+  flush(_block: Float64Array, _tick: number): void {}
+
   /** Tells the controller that the bench starts: sequences and ages begin again. */
   hello(tick: number): void {
     this.pass(writeControl(this.outgoing, kinds.hello, 0, tick, this.mapChecksum));

@@ -1,5 +1,6 @@
 import { isIPv4 } from 'node:net';
 import { usualGroup } from '../bridge/can-datagram.js';
+import { type AddressedUnit, nameLimits, type UnitName } from '../bridge/j1939/name.js';
 import type { LinkSpec } from '../bridge/message-map.js';
 import { shown } from './quantity.js';
 import type { Section } from './section.js';
@@ -26,7 +27,9 @@ export function readLink(name: string, section: Section): LinkSpec | undefined {
   }
   const bitRate = section.quantity('bitRate', { unit: '1/s', least: 10e3, most: 1e6 });
   const dataBitRate = section.quantity('dataBitRate', { unit: '1/s', least: 10e3, most: 10e6 });
+  const units = readUnits(section);
   const rates = {
+    ...(units.length === 0 ? {} : { units }),
     ...(bitRate === undefined ? {} : { bitRate }),
     ...(dataBitRate === undefined ? {} : { dataBitRate }),
   };
@@ -61,6 +64,18 @@ export function readLink(name: string, section: Section): LinkSpec | undefined {
       },
     );
   return group && { name, kind, localAddress: own, remoteAddress: group.address, remotePort: group.port, ...rates };
+}
+
+/** `units: { engine: { address: 0, identity: 4711, function: 0 } }`: whose addresses the bench claims (SAE J1939-81). */
+function readUnits(section: Section): AddressedUnit[] {
+  return section.sections('units').flatMap(([unit, inner]) => {
+    const address = inner.whole('address', { least: 0, most: 253 }, { required: true });
+    const parts = Object.entries(nameLimits).map(
+      ([part, most]) => [part, inner.whole(part, { least: 0, most }) ?? 0] as const,
+    );
+    inner.finish();
+    return address === undefined ? [] : [{ unit, address, name: Object.fromEntries(parts) as unknown as UnitName }];
+  });
 }
 
 function readAddress(

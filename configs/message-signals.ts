@@ -1,3 +1,4 @@
+import { longestMessage } from '../bridge/j1939/transport.js';
 import type { CanLayout, MapSignal, WireType } from '../bridge/message-map.js';
 import { isPresentValue } from '../bridge/value-program.js';
 import type { Expression } from '../runtime/judge/formula.js';
@@ -55,7 +56,8 @@ export function readSignal(
   section.skip('range');
   const range = scaling && readRange(section, unit, names);
   const substitute = sent ? 0 : scaling && readSubstitute(section, unit, names);
-  const layout = can ? readCanLayout(section, scale, offset) : undefined;
+  const trouble = can ? readTrouble(section) : undefined;
+  const layout = can && trouble === undefined ? readCanLayout(section, scale, offset) : undefined;
   if (!can) section.skip('can');
   const about = section.text('about') ?? info?.about ?? name;
   const expression =
@@ -82,6 +84,7 @@ export function readSignal(
     substitute,
     ...(names === undefined ? {} : { names }),
     ...(layout === undefined ? {} : { can: layout }),
+    ...trouble,
   };
 }
 
@@ -224,10 +227,26 @@ function readNames(section: Section): Record<string, number> | undefined {
   return names;
 }
 
+const lamps = ['malfunction', 'stop', 'warning', 'protect'] as const;
+
+/** `trouble: { spn: 110, fmi: 0 }` or `lamp: warning` in place of `can:`, in a message of trouble codes. */
+function readTrouble(section: Section): Pick<MapSignal, 'trouble' | 'lamp'> | undefined {
+  if (section.has('lamp')) {
+    const lamp = section.choice('lamp', lamps);
+    return lamp === undefined ? {} : { lamp };
+  }
+  const inner = section.section('trouble');
+  if (!inner) return undefined;
+  const spn = inner.whole('spn', { least: 1, most: 0x7ffff }, { required: true });
+  const fmi = inner.whole('fmi', { least: 0, most: 31 }, { required: true });
+  inner.finish();
+  return spn === undefined || fmi === undefined ? {} : { trouble: { spn, fmi } };
+}
+
 function readCanLayout(section: Section, scale: number, offset: number): CanLayout | undefined {
   const inner = section.section('can', { required: true });
   if (!inner) return undefined;
-  const startBit = inner.whole('start', { least: 0, most: 511 }, { required: true });
+  const startBit = inner.whole('start', { least: 0, most: 8 * longestMessage - 1 }, { required: true });
   const length = inner.whole('length', { least: 1, most: 64 }, { required: true });
   const byteOrder = inner.choice('order', ['little', 'big'] as const) ?? 'little';
   const signed = inner.flag('signed') ?? false;

@@ -1,7 +1,9 @@
 import { examineMap } from '../bridge/examine-map.js';
 import { identifierOf, isDirected } from '../bridge/j1939/identifier.js';
+import { longestMessage } from '../bridge/j1939/transport.js';
 import { receivedCounts } from '../bridge/link-counts.js';
 import type { LinkSpec, MapSignal, MessageMap, MessageSpec, Protection } from '../bridge/message-map.js';
+import { goesByCycle } from '../bridge/schedule.js';
 import { spreadPhases } from '../bridge/spread-phases.js';
 import { unitsStoodFor } from '../bridge/stand-ins.js';
 import { isPresent } from '../bridge/value-program.js';
@@ -145,8 +147,9 @@ function readMessage(
     { required: !section.has('j1939') },
   );
   const identifier = group ?? said;
-  const trigger = section.choice('trigger', ['cyclic', 'on-change', 'cyclic-and-change'] as const) ?? 'cyclic';
-  const every = checkedTicks(section, 'every', step, { required: trigger !== 'on-change', least: 1 }) ?? 0;
+  const trigger =
+    section.choice('trigger', ['cyclic', 'on-change', 'cyclic-and-change', 'on-request'] as const) ?? 'cyclic';
+  const every = checkedTicks(section, 'every', step, { required: goesByCycle({ trigger }), least: 1 }) ?? 0;
   const phase = checkedTicks(section, 'phase', step) ?? 0;
   const startDelay = checkedTicks(section, 'startDelay', step) ?? 0;
   const fastEvery = checkedTicks(section, 'fastEvery', step, { least: 1 });
@@ -159,7 +162,11 @@ function readMessage(
     section.choice('outOfRange', ['saturate', 'refuse'] as const) ?? (direction === 'sent' ? 'saturate' : 'refuse');
   const flexibleDataRate = section.flag('flexibleDataRate');
   const bitRateSwitch = section.flag('bitRateSwitch');
-  const bytes = section.whole('bytes', { least: 0, most: flexibleDataRate ? 64 : 8 }, { required: can });
+  const most = flexibleDataRate ? 64 : group === undefined ? 8 : longestMessage;
+  const troubles = fields.filter(([, inner]) => inner.has('trouble')).length;
+  const saidBytes = section.whole('bytes', { least: 0, most }, { required: can && troubles === 0 });
+  // Codes that the map does not know come too: room for twenty.
+  const bytes = troubles === 0 ? saidBytes : (saidBytes ?? Math.max(2 + 4 * troubles, direction === 'sent' ? 8 : 82));
   const protection = readProtection(section);
   const standsFor = section.text('standsFor');
   if (standsFor !== undefined && direction === 'received')
@@ -192,6 +199,7 @@ function readMessage(
     ...condition,
     identifier,
     ...(extended ? { extended } : {}),
+    ...(group === undefined ? {} : { j1939: true }),
     ...(group !== undefined && direction === 'received' ? { anyPriority: true } : {}),
     ...(flexibleDataRate === undefined ? {} : { flexibleDataRate }),
     ...(bitRateSwitch === undefined ? {} : { bitRateSwitch }),

@@ -1,3 +1,4 @@
+import { nameLimits } from '../bridge/j1939/name.js';
 import { severities } from '../runtime/judge/formula.js';
 import { flag, mapping, named, quantitySchema, type Schema, text, texts } from './schema-parts.js';
 
@@ -7,6 +8,12 @@ export function runningSchemas(): Record<string, Schema> {
   const share = quantitySchema({ unit: '1' });
   const whole = (minimum: number): Schema => ({ type: 'integer', minimum });
   const value: Schema = { type: ['string', 'number'] };
+  const units = named(
+    mapping({ address: whole(0), ...Object.fromEntries(Object.keys(nameLimits).map((part) => [part, whole(0)])) }, [
+      'address',
+    ]),
+    'control units whose addresses the bench claims (SAE J1939-81), with the parts of their NAME',
+  );
   return {
     ambient: mapping(
       { temperature: quantitySchema({ unit: 'K' }), pressure: quantitySchema({ unit: 'Pa' }) },
@@ -30,12 +37,20 @@ export function runningSchemas(): Record<string, Schema> {
       {
         oneOf: [
           mapping({ is: { const: 'udp' }, about: text, local: text, remote: text }, ['is', 'local', 'remote']),
-          mapping({ is: { const: 'can' }, about: text, interface: text, bitRate: text, dataBitRate: text }, [
+          mapping({ is: { const: 'can' }, about: text, interface: text, bitRate: text, dataBitRate: text, units }, [
             'is',
             'interface',
           ]),
           mapping(
-            { is: { const: 'can-multicast' }, about: text, group: text, by: text, bitRate: text, dataBitRate: text },
+            {
+              is: { const: 'can-multicast' },
+              about: text,
+              group: text,
+              by: text,
+              bitRate: text,
+              dataBitRate: text,
+              units,
+            },
             ['is'],
           ),
         ],
@@ -136,6 +151,8 @@ function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: 
     substitute: { ...value, description: 'received: what counts after a time-out' },
     names: { type: 'object', additionalProperties: number },
     can,
+    trouble: mapping({ spn: whole(1), fmi: whole(0) }, ['spn', 'fmi'], 'trouble code of SAE J1939-73, in place of can'),
+    lamp: { enum: ['malfunction', 'stop', 'warning', 'protect'], description: 'lamp of SAE J1939-73, in place of can' },
   });
   return mapping(
     {
@@ -150,7 +167,7 @@ function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: 
       startDelay: time,
       fastEvery: time,
       timeout: time,
-      trigger: { enum: ['cyclic', 'on-change', 'cyclic-and-change'] },
+      trigger: { enum: ['cyclic', 'on-change', 'cyclic-and-change', 'on-request'] },
       outOfRange: { enum: ['saturate', 'refuse'] },
       extended: flag,
       j1939: mapping(

@@ -1,3 +1,4 @@
+import { partsOf } from '../j1939/identifier.js';
 import type { CanLayout, MapSignal, MessageSpec } from '../message-map.js';
 
 /**
@@ -15,8 +16,11 @@ export function benchText(messages: readonly MessageSpec[], step: number): strin
     if (message.about !== '') add('about', quoted(message.about));
     add('direction', message.direction);
     add('link', message.link);
-    add('id', `0x${message.identifier.toString(16)}`);
-    if (message.extended) add('extended', 'on');
+    if (message.j1939) add('j1939', groupText(message.identifier));
+    else {
+      add('id', `0x${message.identifier.toString(16)}`);
+      if (message.extended) add('extended', 'on');
+    }
     add('bytes', message.bytes ?? 8);
     if (message.flexibleDataRate) add('flexibleDataRate', 'on');
     if (message.bitRateSwitch) add('bitRateSwitch', 'on');
@@ -29,6 +33,12 @@ export function benchText(messages: readonly MessageSpec[], step: number): strin
     for (const signal of message.signals) lines.push(`      ${signal.name}: ${signalText(signal, message)}`);
   }
   return `${lines.join('\n')}\n`;
+}
+
+function groupText(identifier: number): string {
+  const { pgn, source, priority, destination } = partsOf(identifier);
+  const to = destination === undefined ? '' : `, destination: ${destination}`;
+  return `{ pgn: ${pgn}, source: ${source}, priority: ${priority}${to} }`;
 }
 
 function signalText(signal: MapSignal, message: MessageSpec): string {

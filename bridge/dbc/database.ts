@@ -91,10 +91,23 @@ export function isFlexible(
   message: Pick<DatabaseMessage, 'bytes' | 'attributes'>,
   definitions: readonly AttributeDefinition[],
 ): boolean {
-  if (message.bytes > 8) return true;
-  const said = message.attributes[usualAttributes.frameFormat];
-  if (said === undefined) return false;
-  const choices = definitions.find((one) => one.name === usualAttributes.frameFormat)?.choices ?? frameFormats;
-  const name = typeof said === 'number' ? choices[said] : said;
-  return name?.endsWith('_FD') === true;
+  const format = formatOf(message, definitions);
+  return format === 'J1939PG' ? false : message.bytes > 8 || format?.endsWith('_FD') === true;
+}
+
+/** Whether a message is a parameter group of SAE J1939. */
+export function isParameterGroup(
+  message: Pick<DatabaseMessage, 'attributes'>,
+  definitions: readonly AttributeDefinition[],
+): boolean {
+  return formatOf(message, definitions) === 'J1939PG';
+}
+
+function formatOf(
+  message: Pick<DatabaseMessage, 'attributes'>,
+  definitions: readonly AttributeDefinition[],
+): string | undefined {
+  const definition = definitions.find((one) => one.name === usualAttributes.frameFormat);
+  const said = message.attributes[usualAttributes.frameFormat] ?? definition?.usual;
+  return typeof said === 'number' ? (definition?.choices ?? frameFormats)[said] : said;
 }

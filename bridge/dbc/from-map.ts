@@ -1,4 +1,5 @@
-import type { MapSignal, MessageMap, MessageSpec } from '../message-map.js';
+import { lamps } from '../j1939/trouble-codec.js';
+import type { CanLayout, MapSignal, MessageMap, MessageSpec } from '../message-map.js';
 import { readProtection } from '../protection/make.js';
 import {
   type AttributeDefinition,
@@ -18,7 +19,8 @@ export interface FromMapOptions {
   readonly step: number;
 }
 
-const sendTypes = ['Cyclic', 'OnChange', 'CyclicAndOnChange'] as const;
+const sendTypes = ['Cyclic', 'OnChange', 'CyclicAndOnChange', 'OnRequest'] as const;
+const sendTypeOf = { cyclic: 0, 'on-change': 1, 'cyclic-and-change': 2, 'on-request': 3 } as const;
 
 const definitions: readonly AttributeDefinition[] = [
   { name: usualAttributes.cycle, of: 'message', type: 'INT', least: 0, most: 3600000, usual: 0 },
@@ -63,12 +65,14 @@ export function databaseOf(map: MessageMap, link: string, options: FromMapOption
 function messageOf(message: MessageSpec, sender: string, receiver: string, step: number): DatabaseMessage {
   const flexible = message.flexibleDataRate === true;
   const milliseconds = (ticks: number): number => Math.round(ticks * step * 1000);
-  const format = frameFormats.indexOf(`${message.extended ? 'Extended' : 'Standard'}CAN${flexible ? '_FD' : ''}`);
+  const format = frameFormats.indexOf(
+    message.j1939 ? 'J1939PG' : `${message.extended ? 'Extended' : 'Standard'}CAN${flexible ? '_FD' : ''}`,
+  );
   const attributes: Attributes = {
     ...(message.every > 0 ? { [usualAttributes.cycle]: milliseconds(message.every) } : {}),
     ...(message.fastEvery === undefined ? {} : { [usualAttributes.fastCycle]: milliseconds(message.fastEvery) }),
     ...(message.startDelay > 0 ? { [usualAttributes.startDelay]: milliseconds(message.startDelay) } : {}),
-    ...(message.trigger === 'cyclic' ? {} : { [usualAttributes.sendType]: message.trigger === 'on-change' ? 1 : 2 }),
+    ...(message.trigger === 'cyclic' ? {} : { [usualAttributes.sendType]: sendTypeOf[message.trigger] }),
     ...(format > 0 ? { [usualAttributes.frameFormat]: format } : {}),
     ...(message.bitRateSwitch ? { [usualAttributes.bitRateSwitch]: 1 } : {}),
   };
@@ -91,14 +95,31 @@ function messageOf(message: MessageSpec, sender: string, receiver: string, step:
     flexibleDataRate: flexible,
     bitRateSwitch: message.bitRateSwitch === true,
     senders: [sender],
-    comment: message.about,
+    comment: commentOf(message),
     attributes,
-    signals: [...message.signals.map((signal) => signalOf(signal, message, receiver)), ...guards],
+    signals: [
+      ...message.signals
+        .filter((signal) => signal.trouble === undefined)
+        .map((signal) => signalOf(signal, message, receiver)),
+      ...guards,
+    ],
   };
 }
 
+/** What a message says of itself, with the trouble codes, which have no place of their own in its bits. */
+function commentOf(message: MessageSpec): string {
+  const codes = message.signals.flatMap(({ name, trouble }) =>
+    trouble === undefined ? [] : [`${name} SPN ${trouble.spn} FMI ${trouble.fmi}`],
+  );
+  return codes.length === 0 ? message.about : `${message.about || message.name}; trouble codes: ${codes.join(', ')}`;
+}
+
+function lampLayout(lamp: keyof typeof lamps): CanLayout {
+  return { startBit: lamps[lamp], length: 2, byteOrder: 'little', signed: false, float: false, scale: 1, offset: 0 };
+}
+
 function signalOf(signal: MapSignal, message: MessageSpec, receiver: string): DatabaseSignal {
-  const layout = signal.can;
+  const layout = signal.lamp === undefined ? signal.can : lampLayout(signal.lamp);
   if (!layout) throw new Error(`messages.${message.name}.${signal.name} has no layout on CAN`);
   const start = layout.float ? signal.substitute : Math.round((signal.substitute - layout.offset) / layout.scale);
   return {

@@ -1,5 +1,11 @@
 import type { CanLayout, MapSignal, MessageSpec } from '../message-map.js';
-import { type Database, type DatabaseMessage, type DatabaseSignal, usualAttributes } from './database.js';
+import {
+  type Database,
+  type DatabaseMessage,
+  type DatabaseSignal,
+  isParameterGroup,
+  usualAttributes,
+} from './database.js';
 
 export interface ToMapOptions {
   readonly link: string;
@@ -53,13 +59,18 @@ function messageOf(
   const fast = ticksOf(usualAttributes.fastCycle);
   const sendType = textOf(database, message.attributes[usualAttributes.sendType], usualAttributes.sendType);
   const onChange = /change/i.test(sendType);
-  const trigger = onChange
-    ? /^onchange/i.test(sendType) || every === undefined
-      ? 'on-change'
-      : 'cyclic-and-change'
-    : 'cyclic';
+  const trigger =
+    /request/i.test(sendType) && message.extended && isParameterGroup(message, database.definitions)
+      ? 'on-request'
+      : onChange
+        ? /^onchange/i.test(sendType) || every === undefined
+          ? 'on-change'
+          : 'cyclic-and-change'
+        : 'cyclic';
   if (every === undefined && trigger === 'cyclic') remarks.push(`message ${message.name} says no cycle: 100 ms taken`);
-  const cycle = every ?? (trigger === 'cyclic' ? Math.max(1, Math.round(0.1 / options.step)) : 0);
+  const group = message.extended && isParameterGroup(message, database.definitions);
+  const cycle =
+    trigger === 'on-request' ? 0 : (every ?? (trigger === 'cyclic' ? Math.max(1, Math.round(0.1 / options.step)) : 0));
   const inner = new Set<string>();
   const renamed = new Map<string, string>();
   for (const signal of message.signals)
@@ -71,6 +82,7 @@ function messageOf(
     direction: received ? 'received' : 'sent',
     identifier: message.identifier,
     ...(message.extended ? { extended: true } : {}),
+    ...(group ? { j1939: true, ...(received ? { anyPriority: true } : {}) } : {}),
     ...(message.flexibleDataRate ? { flexibleDataRate: true } : {}),
     ...(message.bitRateSwitch ? { bitRateSwitch: true } : {}),
     bytes: message.bytes,

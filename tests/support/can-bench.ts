@@ -14,12 +14,12 @@ stores:
   tank: { is: tank, volume: 30 L }
 branches:
   drain: { is: orifice, from: highLine, to: tank, area: 1 mm2 }
-links: { bus: { is: can, interface: vcan0, bitRate: 250 kbit/s } }
 `;
+const usualLinks = 'links: { bus: { is: can, interface: vcan0, bitRate: 250 kbit/s } }\n';
 
 /** A small bench of the real catalogue with messages on a CAN link whose frames are in memory. */
-export function canBench(text: string, changes: Partial<ScriptSpec> = {}) {
-  const spec = readBench('bench.yaml', catalogue, memoryFiles({ 'bench.yaml': head + text }));
+export function canBench(text: string, changes: Partial<ScriptSpec> = {}, links = usualLinks) {
+  const spec = readBench('bench.yaml', catalogue, memoryFiles({ 'bench.yaml': head + links + text }));
   const assembly = assemble(spec, { seed: 1, script: { ...emptyScript, ...changes } });
   const toBench = new DatagramQueue(4096, 72);
   const fromBench = new DatagramQueue(4096, 72);
