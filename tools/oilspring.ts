@@ -57,6 +57,15 @@ process.stdout.on('error', (error: NodeJS.ErrnoException) =>
   process.exit(error.code === 'EPIPE' ? 0 : exitCode.unfinished),
 );
 
+// never as an exit code that says something about a run
+process.on('uncaughtException', (error) => {
+  // the run's view may have hidden the cursor
+  if (process.stdout.isTTY) process.stdout.write('\n\x1b[?25h');
+  complain(error);
+  process.stderr.write('error the program broke; a recording that it was writing can be read: oilspring salvage\n');
+  process.exit(exitCode.unfinished);
+});
+
 try {
   await program.parseAsync();
 } catch (error) {

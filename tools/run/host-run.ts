@@ -69,6 +69,8 @@ export interface RunOutcome {
   readonly recording: string | undefined;
   readonly recordingFailure: string | undefined;
   readonly rows: number;
+  /** Counted ticks up to the last one that was read, also of a loop that could not say how far it came. */
+  readonly ticks: number;
   /** Processor time of the whole process in the run, s. */
   readonly processor: number;
   /** Wall time from the order to the first counted tick, s. */
@@ -197,7 +199,12 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
         failed ??= { kind: 'failed', what: `the loop thread ended in an error: ${error.message}`, code: 5 };
         resolve();
       });
-      worker.on('exit', () => resolve());
+      worker.on('exit', (code) => {
+        // a controller's module may end the thread that it runs in
+        if (done === undefined)
+          failed ??= { kind: 'failed', what: `the loop thread ended without a word, with exit code ${code}`, code: 5 };
+        resolve();
+      });
     });
   } finally {
     clearInterval(timer);
@@ -218,6 +225,9 @@ export async function hostRun(plan: RunPlan, hooks: RunHooks = {}): Promise<RunO
     },
     get rows() {
       return recorder?.rows ?? 0;
+    },
+    get ticks() {
+      return done?.ticks ?? (ready === undefined ? 0 : Math.max(0, shared.progress[PROGRESS.tick]! + 1));
     },
     processor: (used.user + used.system) / 1e6,
     startUp,

@@ -9,7 +9,7 @@ export function summarise(outcome: RunOutcome): RunSummary {
   const { plan, done, failed, ready } = outcome;
   const { spec, wish } = plan;
   const { step, budgets } = spec;
-  const ticks = done?.ticks ?? 0;
+  const { ticks } = outcome;
   const simulated = ticks * step;
   const live = wish.pace === 'live';
   const last = new Map((ready?.paths ?? []).map((path, i) => [path, done?.last[i] ?? Number.NaN]));
