@@ -41,6 +41,7 @@ export class CanControllerEndpoint {
   /** Frames that were not used, of whatever fault. */
   refused = 0;
   private readonly memory: Float64Array;
+  private readonly initial: Float64Array;
   private readonly receivers: readonly CanReceiver[];
   private readonly senders: readonly CanSender[];
   /** Link number of each sender. */
@@ -100,13 +101,21 @@ export class CanControllerEndpoint {
         .reduce((before, other) => before + (other.message.link === sender.message.link ? 1 : 0), 0),
     );
     this.memory = layout.create();
+    this.initial = this.memory.slice();
     this.came = new Float64Array(inbound.length).fill(Number.NEGATIVE_INFINITY);
     this.read = new Float64Array(this.mirror.readPaths.length);
     this.write = new Float64Array(this.mirror.writePaths.length);
-    let at = 0;
-    for (const message of outbound) for (const signal of message.signals) this.write[at++] = signal.substitute;
+    this.substitute();
     this.trigger = this.findTrigger();
     this.triggerEvery = this.trigger < 0 ? 1 : Math.max(1, inbound[this.trigger].every);
+  }
+
+  /** The controller begins anew, as after a break of its supply. */
+  restart(): void {
+    this.memory.set(this.initial);
+    this.came.fill(Number.NEGATIVE_INFINITY);
+    this.substitute();
+    this.options.controller.restart?.();
   }
 
   /** One frame of 16 or 72 bytes that came on link number `link`. Answers it when it is the trigger message. */
@@ -190,6 +199,12 @@ export class CanControllerEndpoint {
   elapse(ticks: number): void {
     this.tick += ticks;
     this.answer(ticks);
+  }
+
+  private substitute(): void {
+    let at = 0;
+    for (const message of this.mirror.outbound)
+      for (const signal of message.signals) this.write[at++] = signal.substitute;
   }
 
   /** Index of the message that a frame carried and that was used, or -1. */

@@ -4,6 +4,7 @@ import { type EventCatalogue, type Journal, noJournal } from '../runtime/journal
 import type { SignalTable } from '../runtime/signals.js';
 import { busFaults } from './bus-adversary.js';
 import { CanLink } from './can-link.js';
+import { controllerFaults } from './controller-faults.js';
 import { requireSoundMap } from './examine-map.js';
 import { ExchangeTables } from './exchange-tables.js';
 import type { Link } from './link.js';
@@ -14,6 +15,8 @@ import { StandIns, standIn } from './stand-ins.js';
 import type { Transport } from './transport.js';
 import { mapChecksum } from './udp-layout.js';
 import { UdpLink } from './udp-link.js';
+
+const nobody = () => {};
 
 /** Where commands stand in the block. */
 export interface Targets {
@@ -69,15 +72,22 @@ export class Exchange {
   private readonly units: Float64Array;
   private readonly bootUntil: number;
   private readonly silent: number;
+  /** Slots: 1 while a hello is due; 1 while the controller has no power; what `life.supply` says, or -1. */
+  private readonly helloDue: number;
+  private readonly off: number;
+  private readonly supply: number;
+  private readonly controller: { readonly silent: number; readonly frozen: number; readonly restarting: number };
+  private readonly deaf: number;
   private readonly timedOutKind: number;
   private readonly cameBackKind: number;
   private readonly awakeKind: number;
-  private readonly firstTick: number;
   private readonly step: number;
   private readonly bootWindowTicks: number;
   private readonly subjects: Int32Array[];
   private readonly linkSubjects: Int32Array;
   private journal: Journal = noJournal;
+  /** Told of each start of the controller: for one in the same thread on a link that has no word for it. */
+  onHello: () => void = nobody;
 
   constructor(options: ExchangeOptions) {
     const { map, layout, events, step } = options;
@@ -85,11 +95,19 @@ export class Exchange {
     const firstTick = options.firstTick ?? 0;
     const problems: Problem[] = [];
     this.checksum = mapChecksum(map);
-    this.firstTick = firstTick;
     this.step = step;
     this.bootWindowTicks = options.bootWindowTicks ?? 0;
     this.bootUntil = layout.add('exchange.bootUntil', firstTick + this.bootWindowTicks);
     this.silent = layout.add('exchange.silent');
+    this.helloDue = layout.add('exchange.helloDue', 1);
+    this.off = layout.add('exchange.off');
+    this.deaf = layout.add('exchange.deaf');
+    this.supply = options.targets.find('life.supply');
+    this.controller = {
+      silent: layout.add('controller.silent'),
+      frozen: layout.add('controller.frozen'),
+      restarting: layout.add('controller.restarting'),
+    };
     this.timedOutKind = events.kind(linkEvents.timedOut);
     this.cameBackKind = events.kind(linkEvents.cameBack);
     this.awakeKind = events.kind(linkEvents.awake);
@@ -106,7 +124,19 @@ export class Exchange {
     this.links = links;
     const all = links.flatMap((link) => [...link.receivers, ...link.senders]);
     for (const [stream, one] of all.entries()) one.addFaults(layout, step, options.seed ?? 0, 1000 + stream);
+    for (const { receivers } of links)
+      for (const receiver of receivers) receiver.faults!.join({ silent: this.deaf, frozen: this.controller.frozen });
     this.faults = [
+      ...(links.some((link) => link.receivers.length > 0)
+        ? Object.entries(controllerFaults).map(([name, { unit, about, least, most }]) => ({
+            path: `controller.${name}`,
+            unit,
+            about,
+            least,
+            most,
+            slot: this.controller[name as keyof typeof controllerFaults],
+          }))
+        : []),
       ...all.flatMap(({ message, faults }) =>
         Object.entries(messageFaults).map(([name, { unit, about, least, most }]) => ({
           path: `${message.name}.${name}`,
@@ -164,6 +194,7 @@ export class Exchange {
 
   /** Stage `take`: drains the links, ages messages, puts substitutes in place, drives commands, shows all as signals. */
   take(block: Float64Array, signals: Float64Array, tick: number): void {
+    this.power(block, tick);
     const counts = tick >= block[this.bootUntil];
     for (let l = 0; l < this.links.length; l += 1) {
       const link = this.links[l];
@@ -204,13 +235,15 @@ export class Exchange {
       let from = 0;
       for (let l = 0; l < this.links.length; l += 1) {
         const link = this.links[l];
-        if (tick === this.firstTick) link.hello(tick);
+        if (block[this.helloDue] !== 0) link.hello(tick);
         for (let i = 0; i < link.senders.length; i += 1) {
           link.send(block, tick, i, this.units, from);
           from += link.senders[i].count;
         }
         link.flush(block, tick);
       }
+      if (block[this.helloDue] !== 0) this.onHello();
+      block[this.helloDue] = 0;
     }
     this.tables.published.copy(block, signals);
   }
@@ -218,6 +251,18 @@ export class Exchange {
   /** Defined silence: with `silent` nothing is sent until it is called again with false. */
   setSilent(block: Float64Array, silent: boolean): void {
     block[this.silent] = silent ? 1 : 0;
+  }
+
+  /** Without power nothing of the controller is believed; when it comes back the controller boots anew. */
+  private power(block: Float64Array, tick: number): void {
+    const { controller } = this;
+    const off = (this.supply >= 0 && block[this.supply] < 0.5) || block[controller.restarting] >= 0.5;
+    if (!off && block[this.off] === 1) {
+      this.startBootWindow(block, tick);
+      block[this.helloDue] = 1;
+    }
+    block[this.off] = off ? 1 : 0;
+    block[this.deaf] = off || block[controller.silent] >= 0.5 ? 1 : 0;
   }
 
   /** The controller boots (again) at `tick`: time-outs do not count for the boot window. */

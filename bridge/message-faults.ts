@@ -43,6 +43,8 @@ export class MessageFaults {
   private readonly count: number;
   private readonly least: Float64Array;
   private readonly most: Float64Array;
+  /** Slots of faults that it shares with other messages. */
+  private shared: { readonly silent: number; readonly frozen: number } | undefined;
 
   constructor(
     message: MessageSpec,
@@ -69,15 +71,22 @@ export class MessageFaults {
     this.most = Float64Array.from(message.signals, (signal) => signal.most);
   }
 
+  /** From now on it is silent or frozen as well while one of these slots is not 0. */
+  join(shared: { readonly silent: number; readonly frozen: number }): void {
+    this.shared = shared;
+  }
+
   /** Of a message whose values stand in `values[from ..]`: one of `fates`. May change one of the values. */
   judge(memory: Float64Array, values: Float64Array, from: number): number {
-    const { slots, chance } = this;
+    const { slots, chance, shared } = this;
     if (memory[slots.faultSilent] >= 0.5) return fates.lost;
+    if (shared !== undefined && memory[shared.silent] >= 0.5) return fates.lost;
     if (memory[slots.faultLost] > 0) {
       this.draw(memory);
       if (memory[chance] < memory[slots.faultLost]) return fates.lost;
     }
     if (memory[slots.faultFrozen] >= 0.5) return fates.frozen;
+    if (shared !== undefined && memory[shared.frozen] >= 0.5) return fates.frozen;
     if (memory[slots.faultCorrupted] > 0) {
       this.draw(memory);
       if (memory[chance] < memory[slots.faultCorrupted]) {

@@ -7,6 +7,8 @@ import { HandStage, type HandTarget } from '../runtime/hand.js';
 import type { InstrumentUpdate } from '../runtime/instrument.js';
 import { EventCatalogue } from '../runtime/journal.js';
 import { JudgeStage } from '../runtime/judge/stage.js';
+import { Life } from '../runtime/life.js';
+import { ledgerSignals, meterSignals, stuffSignals, timingSignals } from '../runtime/own-signals.js';
 import { Plant, type PlantPlaces } from '../runtime/plant.js';
 import { emptyScript, requirementsOf, Script, type ScriptSpec } from '../runtime/script.js';
 import { SignalTable } from '../runtime/signals.js';
@@ -69,10 +71,19 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   const at = reservePlant(layout, circuit);
   const commandAt = new Map(circuit.commands.map((command, i) => [command.path, at.commands + i]));
   const shown = declareCircuit(table, circuit, at);
-  const life = new LifeSignals(spec, layout, table);
+  const life = new Life({
+    ...spec.life,
+    firstTick,
+    layout,
+    signals: table,
+    events,
+    link: spec.map.links.length + 1,
+  });
   for (const [path, slot] of life.targets) commandAt.set(path, slot);
-  shown.slots.push(...life.shownSlots);
-  shown.signals.push(...life.shownSignals);
+  for (const { slot, signal } of life.shown) {
+    shown.slots.push(slot);
+    shown.signals.push(signal);
+  }
   const units = new Map(spec.signals.map((info) => [info.path, info.unit]));
   const declared = spec.instruments.map((instrument) =>
     declareInstrument(instrument, layout, table, spec.step, units, commandAt, shown),
@@ -87,7 +98,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   );
   const said = { find: (path: string) => outputs.get(path) ?? -1 };
   const scriptStage = new Script(script, spec.step, layout, table, events, targets, said);
-  const ledgerSignals = declareLedger(table, circuit);
+  const declaredLedger = declareLedger(table, circuit);
   const ledgerSlots = {
     turnover: layout.addMany('ledger.turnover', throughputs(circuit).length),
     start: layout.addMany('ledger.start', 1 + circuit.stuffs.length),
@@ -143,6 +154,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     link: spec.map.links.length,
   });
   commandAt.set('watch.acknowledge', watch.acknowledgeSlot);
+  life.bind(targets.find);
   requireTargets(script, new Set([...commandAt.keys(), ...outputs.keys()]));
   scriptStage.bind(table);
   const judge = new JudgeStage({
@@ -156,7 +168,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
   const block = layout.create();
   const signals = new Float64Array(table.length);
   const plant = new Plant(circuit, { step: spec.step, substeps: options.substeps ?? spec.substeps }, block, at);
-  const ledger = new LedgerStage(circuit, plant, spec.step, ledgerSlots, ledgerSignals, meters);
+  const ledger = new LedgerStage(circuit, plant, spec.step, ledgerSlots, declaredLedger, meters);
   const energy = new EnergyParts(circuit, table, spec.step);
   const initial = block.slice();
   const tick = new Tick({
@@ -164,6 +176,7 @@ export function assemble(spec: BenchSpec, options: AssemblyOptions): Assembly {
     block,
     signals,
     exchange,
+    life,
     hands,
     script: scriptStage,
     before: stageOf(spec, instruments, 'before'),
@@ -242,13 +255,12 @@ function reservePlant(layout: BlockLayout, circuit: Circuit): PlantPlaces {
 
 /** The circuit's own signals: what `observe` writes, in its order, then states, memory and commands. */
 function declareCircuit(table: SignalTable, circuit: Circuit, at: PlantPlaces): { slots: number[]; signals: number[] } {
-  const add = (path: string, unit: string, about: string) => table.add({ path, unit, about, group: 'ledger' });
   for (const reading of circuit.readings) table.add(plain(reading));
-  add('ledger.supply', 'W', 'power that comes in from outside');
-  add('ledger.leaving', 'W', 'dissipated power that leaves the circuit');
-  for (const stuff of circuit.stuffs) add(`ledger.${stuff}Bringing`, 'kg/s', `${stuff} that comes in from outside`);
-  add('ledger.stored', 'J', 'energy stored in all elements');
-  for (const stuff of circuit.stuffs) add(`ledger.${stuff}Held`, 'kg', `${stuff} held by all elements`);
+  table.add(ledgerSignals.supply);
+  table.add(ledgerSignals.leaving);
+  for (const stuff of circuit.stuffs) table.add(stuffSignals(stuff).bringing);
+  table.add(ledgerSignals.stored);
+  for (const stuff of circuit.stuffs) table.add(stuffSignals(stuff).held);
   if (table.length !== places(circuit).observeCount)
     throw new Error('the signals do not match what the circuit observes');
   const slots: number[] = [];
@@ -283,38 +295,11 @@ function plain(info: Parameters<SignalTable['add']>[0]): Parameters<SignalTable[
 }
 
 function declareLedger(table: SignalTable, circuit: Circuit): { residual: number; turnover: number; stuffs: number } {
-  const add = (name: string, unit: string, about: string) =>
-    table.add({ path: `ledger.${name}`, unit, about, group: 'ledger' });
-  const residual = add(
-    'residual',
-    'J',
-    'stored now less at the start, less what came in, plus what left: zero when the physics closes',
-  );
-  const turnover = add('turnover', 'J', 'largest energy that passed through any one branch');
+  const residual = table.add(ledgerSignals.residual);
+  const turnover = table.add(ledgerSignals.turnover);
   const stuffs = table.length;
-  for (const stuff of circuit.stuffs)
-    add(`${stuff}Residual`, 'kg', `${stuff} held now less at the start, less what came in`);
+  for (const stuff of circuit.stuffs) table.add(stuffSignals(stuff).residual);
   return { residual, turnover, stuffs };
-}
-
-/** Supply, key, wake-up line and main relay: a script sets them, messages carry them, the relay is the controller's to drive. */
-class LifeSignals {
-  readonly targets: [string, number][] = [];
-  readonly shownSlots: number[] = [];
-  readonly shownSignals: number[] = [];
-  constructor(spec: BenchSpec, layout: BlockLayout, table: SignalTable) {
-    const add = (name: string, about: string, initial: boolean) => {
-      const path = `life.${name}`;
-      const slot = layout.add(path, initial ? 1 : 0);
-      this.targets.push([path, slot]);
-      this.shownSlots.push(slot);
-      this.shownSignals.push(table.add({ path, unit: '1', about, group: 'run', least: 0, most: 1 }));
-    };
-    add('supply', '1 while the controller has its supply', spec.life.supply);
-    add('key', '1 while the key is on', spec.life.key);
-    add('wakeUp', '1 while the wake-up line is on', spec.life.key);
-    add('relay', '1 while the controller holds its main relay', false);
-  }
 }
 
 /** Every command, and what the instruments ahead of the plant say: pedals, selector, currents. */
@@ -336,33 +321,26 @@ function declareMeters(
 ): { power: number; sign: 1 | -1; slot: number; signal: number }[] {
   return circuit.spec.elements
     .filter((element) => element.kind.kind === 'pump-motor')
-    .flatMap((element) =>
-      (
+    .flatMap((element) => {
+      const own = meterSignals(element.name);
+      const power = table.find(`${element.name}.shaftPower`);
+      return (
         [
-          ['recovered', -1, 'taken from its shaft while pumping'],
-          ['returned', 1, 'given to its shaft while motoring'],
+          [own.recovered, -1],
+          [own.returned, 1],
         ] as const
-      ).map(([name, sign, about]) => {
-        const path = `ledger.${element.name}.${name}`;
-        return {
-          power: table.find(`${element.name}.shaftPower`),
-          sign,
-          slot: layout.add(path),
-          signal: table.add({ path, unit: 'J', about: `energy of ${element.name} ${about}`, group: 'ledger' }),
-        };
-      }),
-    );
+      ).map(([info, sign]) => ({
+        power,
+        sign,
+        slot: layout.add(info.path),
+        signal: table.add(info),
+      }));
+    });
 }
 
 /** What a live run says of each tick besides: not part of the block, zero at fast pace. */
 function declareTiming(table: SignalTable): void {
-  table.add({
-    path: 'timing.lateness',
-    unit: 's',
-    about: 'start of this tick after its deadline (live)',
-    group: 'timing',
-  });
-  table.add({ path: 'timing.step', unit: 's', about: 'length of the tick before (live)', group: 'timing' });
+  for (const info of Object.values(timingSignals)) table.add(info);
 }
 
 interface DeclaredInstrument {

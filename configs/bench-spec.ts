@@ -11,6 +11,7 @@ import type {
 } from '../runtime/contract.js';
 import type { InstrumentKind } from '../runtime/instrument.js';
 import type { Requirement } from '../runtime/judge/formula.js';
+import type { Frames, ResetStep } from '../runtime/life.js';
 import type { SourceText } from './source.js';
 
 /** What a bench file may draw from: everything in it is passed in, so that tests bring their own. */
@@ -114,15 +115,15 @@ export interface LifeSpec {
   readonly preRoll: number;
   /** Ticks from the start of the pre-roll in which time-outs of the controller do not count. */
   readonly bootWindow: number;
-  /** What the controller sees: frames of the rest state, or none. */
-  readonly frames: { readonly warmUp: Frames; readonly preRoll: Frames; readonly afterwards: Frames };
-  /** Ticks that the bench keeps running after key off. */
+  /** What the controller sees. In the warm-up of a live run, before the pre-roll, its links are not open: silence. */
+  readonly frames: { readonly preRoll: Frames; readonly afterRun: Frames };
+  /** Ticks that the bench goes on behind the end of a run, however it ended, with the key off. */
   readonly afterRun: number;
+  /** What the bench does with the controller between runs: from the beginning of the pre-roll, and of the after-run. */
+  readonly reset: { readonly before: readonly ResetStep[]; readonly after: readonly ResetStep[] };
   /** A hand bench: hands in a run do not spoil it. */
   readonly hands: boolean;
 }
-export type Frames = 'rest' | 'silence';
-
 export interface ControllerSpec {
   /** A module in the loop thread, or a command started as a process; relative to the bench's folder. */
   readonly module: string | undefined;
@@ -138,8 +139,6 @@ export interface RecordSpec {
   readonly patterns: readonly string[];
   /** What they match among `BenchSpec.signals`, in that order. */
   readonly signals: readonly string[];
-  /** Ticks between rows. */
-  readonly every: number;
   /** Paths whose peaks the summary names. */
   readonly peaks: readonly string[];
 }

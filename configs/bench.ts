@@ -75,10 +75,10 @@ export function readBench(path: string, catalogue: Catalogue, files: Files = dis
   // Where elements could not be read, what requirements say of them cannot be judged.
   const requirements =
     asked && signals.unread.size === 0 ? readRequirements(asked, { signals: lookup(signals.all), step }) : [];
-  const life = readLife(top, step);
+  const life = readLife(top, step, signals);
   const duty = readPath(top, 'duty', root, file, 'scenarios/round.yaml');
   const controller = readController(top, step, root, file);
-  const record = readRecord(top, step, signals);
+  const record = readRecord(top, signals);
   top.finish(['include']);
   problems.throwIfAny();
   return {

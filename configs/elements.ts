@@ -16,7 +16,19 @@ export interface ReadElement extends ElementInstance {
 }
 
 /** Names that would clash with the runtime's own groups of signals. */
-const reserved = new Set(['run', 'timing', 'ledger', 'link', 'links', 'watch', 'scenario', 'life', 'exchange']);
+const reserved = new Set([
+  'run',
+  'timing',
+  'ledger',
+  'link',
+  'links',
+  'watch',
+  'judge',
+  'scenario',
+  'life',
+  'exchange',
+  'controller',
+]);
 
 /** Checks names of stores, branches, instruments, links and messages, which share one space of paths. */
 export class Names {

@@ -4,7 +4,7 @@ import { isPressure, parseUnit, tradeUnit } from './units.js';
 /** One fault that a scenario can set: `fault: PATH`, with `to:` unless it is a switch. */
 export interface FaultEntry {
   readonly path: string;
-  /** `sensor`, `power stage`, `component`, `message`, `bus` */
+  /** `sensor`, `power stage`, `component`, `controller`, `message`, `bus` */
   readonly group: string;
   /** What it sits in: `pressure-sensor`, `relief-valve`, `message from the controller`. */
   readonly of: string;
@@ -35,9 +35,11 @@ export function faultCatalogue(spec: BenchSpec): FaultEntry[] {
         ? ['component', element]
         : instrument !== undefined
           ? [instrument.includes('sensor') ? 'sensor' : 'power stage', instrument]
-          : direction === undefined
-            ? ['bus', 'CAN link']
-            : ['message', direction === 'sent' ? 'message to the controller' : 'message from the controller'];
+          : owner === 'controller'
+            ? ['controller', 'the controller as a whole']
+            : direction === undefined
+              ? ['bus', 'CAN link']
+              : ['message', direction === 'sent' ? 'message to the controller' : 'message from the controller'];
     found.push({
       path: info.path,
       group,

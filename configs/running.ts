@@ -1,4 +1,7 @@
-import type { Ambient, Budgets, ControllerSpec, Frames, LifeSpec, RecordSpec } from './bench-spec.js';
+import type { Frames, ResetStep } from '../runtime/life.js';
+import { lifeSwitches } from '../runtime/own-signals.js';
+import type { Ambient, Budgets, ControllerSpec, LifeSpec, RecordSpec } from './bench-spec.js';
+import { commandValue } from './command-value.js';
 import { inside } from './files.js';
 import { shown } from './quantity.js';
 import type { Section } from './section.js';
@@ -33,29 +36,76 @@ export function readBudgets(top: Section): Budgets {
   return budgets;
 }
 
-export function readLife(top: Section, step: number): LifeSpec {
+/** Longest after-run, s. */
+const longestAfterRun = 60;
+
+export function readLife(top: Section, step: number, signals: SignalList): LifeSpec {
   const section = top.section('life');
   const frames = section?.section('frames');
-  const seen = (key: 'warmUp' | 'preRoll' | 'afterwards', usual: Frames): Frames =>
-    frames?.choice(key, ['rest', 'silence'] as const) ?? usual;
+  const seen = (key: 'preRoll' | 'afterRun'): Frames =>
+    frames?.choice(key, ['plant', 'silence'] as const) ?? (key === 'preRoll' ? 'plant' : 'silence');
   const ticks = (key: string, usual: number) =>
     (section && checkedTicks(section, key, step)) ?? Math.round(usual / step);
+  const preRoll = ticks('preRoll', 0.2);
+  section?.quantity('afterRun', { unit: 's', least: 0, most: longestAfterRun });
+  const afterRun = ticks('afterRun', 0);
+  const reset = section?.section('reset');
   const life = {
     supply: section?.flag('supply') ?? true,
     key: section?.flag('key') ?? true,
-    preRoll: ticks('preRoll', 0.2),
+    preRoll,
     bootWindow: ticks('bootWindow', 0.5),
-    frames: {
-      warmUp: seen('warmUp', 'silence'),
-      preRoll: seen('preRoll', 'rest'),
-      afterwards: seen('afterwards', 'silence'),
+    frames: { preRoll: seen('preRoll'), afterRun: seen('afterRun') },
+    afterRun,
+    reset: {
+      before: reset ? readProcedure(reset, 'before', step, signals, { within: preRoll, of: 'preRoll' }) : [],
+      after: reset ? readProcedure(reset, 'after', step, signals, { within: afterRun, of: 'afterRun' }) : [],
     },
-    afterRun: ticks('afterRun', 0),
     hands: (section?.choice('hands', ['allowed', 'not allowed'] as const) ?? 'not allowed') === 'allowed',
   };
+  reset?.finish();
   frames?.finish();
   section?.finish();
   return life;
+}
+
+/** `- { at: 200 ms, set: life.supply, to: on }`: commands and switches of the bench's life, over time. */
+function readProcedure(
+  reset: Section,
+  key: 'before' | 'after',
+  step: number,
+  signals: SignalList,
+  room: { readonly within: number; readonly of: string },
+): ResetStep[] {
+  const steps: ResetStep[] = [];
+  for (const [i, item] of (reset.list(key)?.items ?? []).entries()) {
+    const one = reset.sectionIn(item, `${key}[${i}]`);
+    if (!one) continue;
+    const at = checkedTicks(one, 'at', step, { required: true });
+    const said = one.placed('set', { required: true }, 'life.supply');
+    const found = said && signals.resolve(one, 'set', said, { groups: ['command', 'run'] });
+    const target = found && (found.group === 'command' || isSwitch(found.path)) ? found : undefined;
+    if (found && !target)
+      one.fail('set', `${found.path} is nothing that can be set`, `name a command, or ${switchPaths.join(', ')}`);
+    const to = one.entry('to');
+    if (!to) one.fail('to', 'missing', 'add to: on, or a value', {}, one.where);
+    const value = to && target ? commandValue(one, to.value, target, 'to') : undefined;
+    one.finish();
+    if (at === undefined || !target || value === undefined) continue;
+    if (at >= room.within)
+      one.fail('at', `behind the end of ${room.of}`, `make life.${room.of} longer, or do it earlier`, {
+        value: `${Number((at * step).toPrecision(12))} s`,
+        bound: `${Number((room.within * step).toPrecision(12))} s`,
+      });
+    steps.push({ at, target: target.path, value });
+  }
+  return steps;
+}
+
+const switchPaths = Object.values(lifeSwitches).map((info) => info.path);
+/** Whether a signal of the runtime is one that scripts and procedures may set. */
+export function isSwitch(path: string): boolean {
+  return switchPaths.includes(path);
 }
 
 export function readController(top: Section, step: number, root: string, file: string): ControllerSpec | undefined {
@@ -90,15 +140,13 @@ export function readPath(
   return said;
 }
 
-export function readRecord(top: Section, step: number, signals: SignalList): RecordSpec {
+export function readRecord(top: Section, signals: SignalList): RecordSpec {
   const section = top.section('record');
   const named = section?.texts('signals');
   const namedPeaks = section?.texts('peaks');
-  const every = (section && checkedTicks(section, 'every', step, { least: 1 })) ?? 1;
   const record = {
     patterns: named?.map((one) => one.text) ?? ['*'],
     signals: section && named ? signals.match(section, 'signals', named) : signals.all.map((info) => info.path),
-    every,
     peaks: section && namedPeaks ? signals.match(section, 'peaks', namedPeaks) : usualPeaks(signals),
   };
   section?.finish();

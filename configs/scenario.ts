@@ -2,12 +2,14 @@ import { dirname, normalize } from 'node:path';
 import type { SignalInfo } from '../runtime/contract.js';
 import type { ScriptSpec, ScriptTrace } from '../runtime/script.js';
 import type { BenchSpec } from './bench-spec.js';
+import { commandValue, expectedOf, valueAs } from './command-value.js';
 import type { DriveCycle } from './cycles/cycle.js';
 import * as european from './cycles/europe.js';
 import { diskFiles, type Files, inside } from './files.js';
 import { Problems } from './problems.js';
-import { type Expected, parseQuantity, QuantityError, shown } from './quantity.js';
+import type { Expected } from './quantity.js';
 import { lookup, readRequirements } from './requirements.js';
+import { isSwitch } from './running.js';
 import { csvPoints } from './scenario-csv.js';
 import { caseNames, chooseParameters, type ScenarioChoice } from './scenario-parameters.js';
 import { readStartState } from './scenario-start.js';
@@ -34,8 +36,6 @@ export const cycles: readonly DriveCycle[] = Object.values(european);
 
 /** Longest scenario, s: a day. */
 const longest = 86_400;
-/** Signals of the runtime that a script may set beside commands. */
-const settableOfRun = new Set(['life.supply', 'life.key']);
 
 /**
  * Reads a scenario file: `scenario` (name), `about`, `lasts`, `preview`, `parameters` and `cases`, `start` (state at the
@@ -96,7 +96,7 @@ class ScenarioReader {
         .flatMap((one) => Object.keys(one.kind.outputs).map((output) => `${one.name}.${output}`)),
     );
     for (const info of bench.signals)
-      this.signals.add(settableOfRun.has(info.path) || stages.has(info.path) ? { ...info, group: 'command' } : info);
+      this.signals.add(isSwitch(info.path) || stages.has(info.path) ? { ...info, group: 'command' } : info);
   }
 
   read(): ScriptSpec {
@@ -113,7 +113,7 @@ class ScenarioReader {
       step: bench.step,
       signals: bench.signals,
       command: (section, key, said) => this.command(section, key, said),
-      value: (section, value, target, key) => this.value(section, value, expectedOf(target), key),
+      value: (section, value, target, key) => commandValue(section, value, target, key),
       example: exampleOf,
     }).read(top);
     const asked = top.section('requirements');
@@ -289,7 +289,7 @@ class ScenarioReader {
         overDistance ? { unit: 'm' } : { unit: 's', least: 0, most: longest },
         where,
       )?.value;
-      const number = this.value(section, item.items[1]!, expected, where);
+      const number = valueAs(section, item.items[1]!, expected, where);
       if (time === undefined || number === undefined) continue;
       const tick = overDistance ? time : toTicks(time, this.bench.step);
       if (tick === undefined) {
@@ -343,28 +343,6 @@ class ScenarioReader {
   private command(section: Section, key: string, said: Placed | undefined): SignalInfo | undefined {
     return said && this.signals.resolve(section, key, said, { groups: ['command'] });
   }
-
-  /** A quantity, or on and off for a command without a unit. */
-  private value(section: Section, value: Tree, expected: Expected, key: string): number | undefined {
-    if (value.kind === 'scalar' && expected.unit === '1' && /^(on|off|true|false)$/.test(value.text)) {
-      const number = value.text === 'on' || value.text === 'true' ? 1 : 0;
-      return section.attempt(value, section.inner(key), () => {
-        if (number >= (expected.least ?? 0) && number <= (expected.most ?? 1)) return number;
-        throw new QuantityError(
-          'a command that is not switched on and off',
-          shown(value.text),
-          undefined,
-          'write a number',
-        );
-      });
-    }
-    if (value.kind !== 'scalar') return section.quantityIn(value, expected, key)?.value;
-    return section.attempt(value, section.inner(key), () => parseQuantity(value.text, expected).value);
-  }
-}
-
-function expectedOf(info: SignalInfo): Expected {
-  return { unit: info.unit, difference: info.difference, least: info.least, most: info.most };
 }
 
 function exampleOf(info: SignalInfo): string {

@@ -14,6 +14,10 @@ export function runningSchemas(): Record<string, Schema> {
     ]),
     'control units whose addresses the bench claims (SAE J1939-81), with the parts of their NAME',
   );
+  const procedure: Schema = {
+    type: 'array',
+    items: mapping({ at: time, set: text, to: { type: ['string', 'number', 'boolean'] } }, ['at', 'set', 'to']),
+  };
   return {
     ambient: mapping(
       { temperature: quantitySchema({ unit: 'K' }), pressure: quantitySchema({ unit: 'Pa' }) },
@@ -79,7 +83,12 @@ export function runningSchemas(): Record<string, Schema> {
         bootWindow: time,
         afterRun: time,
         hands: { enum: ['allowed', 'not allowed'], description: 'allowed: hands in a run do not spoil it' },
-        frames: mapping({ warmUp: frames, preRoll: frames, afterwards: frames }),
+        frames: mapping({ preRoll: frames, afterRun: frames }, [], 'what the controller sees'),
+        reset: mapping(
+          { before: procedure, after: procedure },
+          [],
+          'what the bench does between runs: from the beginning of the pre-roll, and of the after-run',
+        ),
       },
       [],
       'the life of the bench',
@@ -87,7 +96,7 @@ export function runningSchemas(): Record<string, Schema> {
     requirements: requirementsSchema(),
     duty: { ...text, description: 'scenario that check drives' },
     controller: mapping({ module: text, command: text, period: time, patience: time }, [], 'the controller to start'),
-    record: mapping({ signals: texts, peaks: texts, every: time }, [], 'what is recorded'),
+    record: mapping({ signals: texts, peaks: texts }, [], 'what is recorded'),
   };
 }
 
@@ -120,7 +129,7 @@ export function requirementsSchema(): Schema {
   };
 }
 
-const frames: Schema = { enum: ['rest', 'silence'] };
+const frames: Schema = { enum: ['plant', 'silence'] };
 
 function messageSchema(time: Schema, whole: (minimum: number) => Schema, value: Schema): Schema {
   const number: Schema = { type: 'number' };

@@ -1,9 +1,20 @@
 import { busFaults } from '../bridge/bus-adversary.js';
+import { controllerFaults } from '../bridge/controller-faults.js';
 import { countsOfLink, countsOfMessage } from '../bridge/link-counts.js';
 import { messageFaults } from '../bridge/message-faults.js';
 import type { MessageMap } from '../bridge/message-map.js';
 import { standIn, unitsStoodFor } from '../bridge/stand-ins.js';
 import type { PortKinds, SignalGroup, SignalInfo } from '../runtime/contract.js';
+import {
+  ledgerSignals,
+  lifeSignals,
+  meterSignals,
+  scenarioSignals,
+  stuffSignals,
+  timingSignals,
+  watchSignals,
+  watchSignalsOf,
+} from '../runtime/own-signals.js';
 import type { WatchedSignal } from './bench-spec.js';
 import type { ReadElement } from './elements.js';
 import { shown } from './quantity.js';
@@ -32,63 +43,33 @@ export class SignalList {
     return this.all.filter((info) => info.path.startsWith(`${name}.`));
   }
 
-  /** What the runtime itself tells: life, scenario, ledger. */
+  /** What the runtime itself tells: life, scenario, ledger, timing. */
   addRuntime(): void {
-    const add = (path: string, unit: string, about: string, group: SignalGroup) =>
-      this.add({ path, unit, about, group });
-    add('life.supply', '1', '1 while the controller has its supply', 'run');
-    add('life.key', '1', '1 while the key is on', 'run');
-    add('life.wakeUp', '1', '1 while the wake-up line is on', 'run');
-    add('life.relay', '1', '1 while the controller holds its main relay', 'command');
-    add('scenario.time', 's', 'time since tick 0', 'run');
-    add('scenario.step', '1', 'steps of the timeline done', 'run');
-    add('scenario.targetSpeed', 'm/s', 'speed that the driver is to follow', 'run');
-    add('scenario.targetSpeedAhead', 'm/s', 'the same, a preview time ahead', 'run');
-    add('scenario.remaining', 's', 'time to the end of the scenario', 'run');
-    add('ledger.supply', 'W', 'power that comes in from outside', 'ledger');
-    add('ledger.leaving', 'W', 'dissipated power that leaves the circuit', 'ledger');
-    add('ledger.stored', 'J', 'energy stored in all elements', 'ledger');
-    add('ledger.residual', 'J', 'what the energy balance leaves over', 'ledger');
-    add('timing.lateness', 's', 'start of this tick after its deadline (live)', 'timing');
-    add('timing.step', 's', 'length of the tick before (live)', 'timing');
-    add('ledger.turnover', 'J', 'largest energy that passed through any one branch', 'ledger');
+    for (const own of [lifeSignals, scenarioSignals, ledgerSignals, timingSignals])
+      for (const info of Object.values(own)) this.add(info);
   }
 
   /** Energy that machines took up while braking and gave back. */
   addMeters(elements: readonly ReadElement[]): void {
-    for (const { name, kind } of elements) {
-      if (kind.kind !== 'pump-motor') continue;
-      this.add({
-        path: `ledger.${name}.recovered`,
-        unit: 'J',
-        about: `energy of ${name} taken from its shaft while pumping`,
-        group: 'ledger',
-      });
-      this.add({
-        path: `ledger.${name}.returned`,
-        unit: 'J',
-        about: `energy of ${name} given to its shaft while motoring`,
-        group: 'ledger',
-      });
-    }
+    for (const { name, kind } of elements)
+      if (kind.kind === 'pump-motor') for (const info of Object.values(meterSignals(name))) this.add(info);
   }
 
   /** What the watch tells of itself. */
   addWatch(watched: readonly WatchedSignal[]): void {
-    const add = (path: string, unit: string, about: string) =>
-      this.add({ path: `watch.${path}`, unit, about, group: 'run' });
-    add('worst', '1', 'the worst level that is present');
-    add('count', '1', 'warnings that are open');
-    add('unacknowledged', '1', 'warnings that nobody acknowledged');
-    for (const { path, unit, relief } of watched) {
-      add(`${path}.level`, '1', 'level that is present');
-      add(`${path}.peak`, unit, 'peak of the warning');
-      if (relief) add(`${path}.timeToRelief`, 's', 'predicted time to the relief setting');
+    for (const info of Object.values(watchSignals)) this.add(info);
+    for (const { path, unit, relief, limits } of watched) {
+      const far = !relief && limits.every(({ side }) => side === 'below') ? 'least' : 'largest';
+      const { level, peak, timeToRelief } = watchSignalsOf(path, unit, far);
+      for (const info of relief ? [level, peak, timeToRelief] : [level, peak]) this.add(info);
     }
   }
 
   /** The counts that links and messages keep of themselves. */
   addCounts(map: MessageMap): void {
+    if (map.messages.some((message) => message.direction === 'received'))
+      for (const [name, { unit, about, least, most, rest }] of Object.entries(controllerFaults))
+        this.add({ path: `controller.${name}`, unit, about, group: 'command', least, most, withoutFault: rest });
     for (const link of map.links) {
       for (const [count, { about }] of Object.entries(countsOfLink(link.kind)))
         this.add({ path: `${link.name}.${count}`, unit: '1', about, group: 'link' });
@@ -153,13 +134,7 @@ export class SignalList {
     const stuffs = new Set(
       elements.flatMap(({ kind }) => [...Object.keys(kind.holds ?? {}), ...Object.keys(kind.brings ?? {})]),
     );
-    for (const stuff of [...stuffs].sort()) {
-      const add = (name: string, unit: string, about: string) =>
-        this.add({ path: `ledger.${stuff}${name}`, unit, about, group: 'ledger' });
-      add('Bringing', 'kg/s', `${stuff} that comes in from outside`);
-      add('Held', 'kg', `${stuff} held by all elements`);
-      add('Residual', 'kg', `${stuff} held now less at the start, less what came in`);
-    }
+    for (const stuff of [...stuffs].sort()) for (const info of Object.values(stuffSignals(stuff))) this.add(info);
   }
 
   /** What the circuit builder tells of each element's energy. */

@@ -1,10 +1,14 @@
 import type { BuildValues } from '../runtime/contract.js';
 import { store } from './define.js';
 import { massWeight, oilMass } from './fluids.js';
+import * as flowLaws from './laws/flow.js';
 import * as oilLaws from './laws/oil.js';
 import { oilStoreParameters } from './shared-parameters.js';
 
-/** A closed volume of oil: mass is the state, pressure follows from it. Line, case, manifold or chamber. */
+/**
+ * A closed volume of oil: mass is the state, pressure follows from it. Line, case, manifold or chamber. Oil that leaks to the
+ * surroundings takes its energy along; what it leaks is settled once a substep, which is short against how fast it empties.
+ */
 export const oilVolume = store({
   kind: 'oil-volume',
   about: 'closed oil volume with compressible oil and free air',
@@ -20,6 +24,20 @@ export const oilVolume = store({
       errorWeight: ({ parameter, fluid }: BuildValues) => massWeight(parameter.volume!, fluid),
     },
     heat: { unit: 'J', about: 'thermal energy of the oil and of the metal that follows it', scale: 1e5 },
+  },
+  memory: {
+    leak: { unit: 'kg/s', about: 'oil lost to the surroundings, once a substep' },
+    lost: { unit: 'kg', about: 'oil lost to the surroundings so far' },
+  },
+  commands: {
+    leakArea: {
+      unit: 'm2',
+      about: 'area through which oil is lost to the surroundings: an external leak',
+      rest: 0,
+      least: 0,
+      most: 1e-4,
+      fault: true,
+    },
   },
   readings: {
     pressure: { unit: 'Pa', about: 'absolute pressure', least: 0 },
@@ -48,7 +66,7 @@ export const oilVolume = store({
     pressure: { unit: 'Pa', about: 'absolute pressure', default: 101325, least: 1000 },
     temperature: { unit: 'K', about: 'oil temperature; 0: that of the fluid', default: 0, least: 0, most: 450 },
   },
-  laws: oilLaws,
+  laws: { ...oilLaws, ...flowLaws },
   limits: [
     {
       reading: 'pressure',
@@ -125,14 +143,26 @@ export const oilVolume = store({
     reading.pressure = pressure;
     reading.temperature = temperature;
   },
-  derivatives({ derivative, oil, wall }) {
-    derivative.mass = oil.massFlow;
-    derivative.heat = oil.heatFlow + wall.heatFlow;
+  update({ memory, command, oil, step, law }) {
+    const leak = Math.max(
+      0,
+      law.orificeMassFlow(oil.pressure, law.STANDARD_PRESSURE, oil.density, oil.density, 0.7 * command.leakArea, 1e4),
+    );
+    memory.leak = leak;
+    memory.lost = memory.lost + step * leak;
+  },
+  derivatives({ memory, derivative, oil, wall }) {
+    derivative.mass = oil.massFlow - memory.leak;
+    derivative.heat = oil.heatFlow + wall.heatFlow - memory.leak * oil.heatCapacity * oil.temperature;
+  },
+  supply({ memory, oil }) {
+    return -memory.leak * (oil.potential + oil.heatCapacity * oil.temperature);
   },
   energy({ parameter, state, oil }) {
     return state.mass * oil.potential - oil.pressure * parameter.volume + state.heat;
   },
-  holds: { oil: ({ state }) => state.mass },
+  /** What was lost counts as held: it is known to the bit, an integral over the leak would not be. */
+  holds: { oil: ({ state, memory }) => state.mass + memory.lost },
   initial: ({ parameter, fluid, start }) => {
     const mass = oilMass(parameter.volume!, start.pressure!, fluid);
     const metal = parameter.metalShare! * fluid.referenceDensity! * parameter.volume!;

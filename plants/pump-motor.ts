@@ -57,6 +57,14 @@ export const pumpMotor = branch({
       most: 1,
       fault: true,
     },
+    runawayTo: {
+      unit: '1',
+      about: 'displacement to which it runs away, whatever is asked; below -1.5: it does not',
+      rest: -2,
+      least: -2,
+      most: 1,
+      fault: true,
+    },
   },
   readings: {
     torque: { unit: 'N m', about: 'torque on the shaft' },
@@ -369,7 +377,8 @@ export const pumpMotor = branch({
     const asked = parameter.request === 0 ? byTorque : command.displacementRequest;
     const stroked = command.enable > 0.5 ? Math.max(parameter.leastDisplacement, Math.min(1, asked)) : 0;
     const wanted = parameter.request === 2 ? 1 : stroked;
-    const approach = (parameter.naturalFrequency / (2 * parameter.damping)) * (wanted - state.displacement);
+    const driven = command.runawayTo < -1.5 ? wanted : Math.max(parameter.leastDisplacement, command.runawayTo);
+    const approach = (parameter.naturalFrequency / (2 * parameter.damping)) * (driven - state.displacement);
     const limited = Math.max(-parameter.rateLimit, Math.min(parameter.rateLimit, approach));
     const rate = command.stuck > 0.5 ? 0 : limited;
     derivative.displacement = command.stuck > 0.5 ? 0 : state.displacementRate;

@@ -1,6 +1,7 @@
 import type { BlockLayout } from './block.js';
 import type { EventCatalogue, Journal } from './journal.js';
 import type { Formula, Requirement } from './judge/formula.js';
+import { scenarioSignals } from './own-signals.js';
 import { ScriptConditions } from './script-conditions.js';
 import type { SignalTable } from './signals.js';
 
@@ -169,18 +170,12 @@ export class Script {
     this.traceValues = spec.traces.map((trace) => Float64Array.from(trace.points, (point) => point[1]));
     this.driveTicks = Float64Array.from(spec.drive, (point) => point[0]);
     this.driveValues = Float64Array.from(spec.drive, (point) => point[1]);
-    const signal = (name: string, unit: string, about: string) =>
-      signals.add({ path: `scenario.${name}`, unit, about, group: 'run' });
-    this.signalTime = signal('time', 's', 'time of the timeline: since tick 0, less what it was held');
-    this.signalStep = signal('step', '1', 'steps of the timeline done');
-    this.signalTarget = signal('targetSpeed', 'm/s', 'speed that the driver is to follow');
-    this.signalAhead = signal('targetSpeedAhead', 'm/s', 'the same, a preview time ahead');
-    this.signalTimeOuts = signal(
-      'timeOuts',
-      '1',
-      'steps of the timeline that were left out because what they wait for did not come',
-    );
-    this.signalRemaining = signal('remaining', 's', 'time to the end of the scenario');
+    this.signalTime = signals.add(scenarioSignals.time);
+    this.signalStep = signals.add(scenarioSignals.step);
+    this.signalTarget = signals.add(scenarioSignals.targetSpeed);
+    this.signalAhead = signals.add(scenarioSignals.targetSpeedAhead);
+    this.signalTimeOuts = signals.add(scenarioSignals.timeOuts);
+    this.signalRemaining = signals.add(scenarioSignals.remaining);
     this.kindStep = events.kind({ name: 'scenario step', severity: 'note', text: 'scenario: {subject}' });
     this.kindFault = events.kind({ name: 'fault', severity: 'warning', text: 'fault: {subject}, value {a}' });
     this.kindTimeOut = events.kind({
@@ -277,6 +272,13 @@ export class Script {
     }
     signals[this.signalStep] = block[this.next]!;
     signals[this.signalTimeOuts] = block[this.timeOuts]!;
+  }
+
+  /** In place of `run` behind the end of the run: the timeline stands, and the driver is to stop. */
+  rest(signals: Float64Array): void {
+    signals[this.signalTarget] = 0;
+    signals[this.signalAhead] = 0;
+    signals[this.signalRemaining] = 0;
   }
 
   /** What the steps hold of what instruments say: behind the instruments, ahead of what they drive. */

@@ -5,6 +5,7 @@ import type { EnergyParts } from './energy-parts.js';
 import type { HandStage } from './hand.js';
 import type { InstrumentUpdate } from './instrument.js';
 import { type Journal, noJournal } from './journal.js';
+import type { Life } from './life.js';
 import type { Plant } from './plant.js';
 import type { Script } from './script.js';
 
@@ -24,6 +25,7 @@ export interface MessageStage {
   take(block: Float64Array, signals: Float64Array, tick: number): void;
   publish(block: Float64Array, signals: Float64Array, tick: number): void;
   clearCounts(block: Float64Array): void;
+  setSilent(block: Float64Array, silent: boolean): void;
 }
 
 export interface TickParts {
@@ -31,6 +33,7 @@ export interface TickParts {
   readonly block: Float64Array;
   readonly signals: Float64Array;
   readonly exchange: MessageStage;
+  readonly life: Life;
   readonly hands: HandStage;
   readonly script: Script;
   /** Driver and power stages; then what they drive: signal index to block slot. */
@@ -52,7 +55,8 @@ export interface TickParts {
  * again from a recording; only what stands behind `exchange` and `journal` differs. Allocates nothing.
  *
  * Ticks below 0 are the pre-roll: messages go both ways and sensors run, the plant stands in its rest state, nothing
- * is watched, judged or scripted. Tick 0 is the first counted one.
+ * is watched, judged or scripted. Tick 0 is the first counted one. From `beginAfterRun` on nothing is scripted or judged,
+ * and the plant goes on.
  */
 export class Tick {
   journal: Journal = noJournal;
@@ -66,22 +70,30 @@ export class Tick {
     this.words = new Int32Array(block.buffer, block.byteOffset, 2 * block.length);
   }
 
+  /** The run is over; the next tick, number `tick`, is the first of the after-run. */
+  beginAfterRun(tick: number): void {
+    this.parts.life.beginAfterRun(this.parts.block, tick, this.journal);
+  }
+
   run(tick: number): void {
     const { parts, meter, journal } = this;
-    const { block, signals, plant, exchange, hands, script, before, after, drives, shown } = parts;
+    const { block, signals, plant, exchange, life, hands, script, before, after, drives, shown } = parts;
     meter.begin();
+    life.begin(block, tick, exchange);
     hands.lift(block);
     if (tick === 0) exchange.clearCounts(block);
     exchange.take(block, signals, tick);
     hands.take(block, tick, journal);
     meter.end(0);
-    script.run(block, signals, tick, journal);
+    if (life.afterwards(block)) script.rest(signals);
+    else script.run(block, signals, tick, journal);
     for (let i = 0; i < before.length; i += 1) before[i]!(block, signals, tick);
     script.applySignals(block, signals, tick);
     hands.applySignals(block, signals);
     for (let i = 0; i < drives.from.length; i += 1) block[drives.to[i]!] = signals[drives.from[i]!]!;
     script.apply(block, tick);
     hands.apply(block);
+    life.apply(block, tick);
     meter.end(1);
     if (tick >= 0) plant.step();
     else plant.observe();
@@ -95,7 +107,7 @@ export class Tick {
       parts.energy.run(signals);
       parts.watch.run(block, signals, tick, journal);
       meter.end(4);
-      parts.judge.run(block, signals, tick, journal);
+      if (life.counts(block)) parts.judge.run(block, signals, tick, journal);
     } else meter.end(4);
     meter.end(5);
     exchange.publish(block, signals, tick);

@@ -1,5 +1,6 @@
 import type { BlockLayout } from './block.js';
 import { BuildError, type Problem } from './contract.js';
+import { watchSignals, watchSignalsOf } from './own-signals.js';
 import type { SignalTable } from './signals.js';
 import { laddersOf, type WatchInput, type WatchLadder } from './watch-ladders.js';
 
@@ -136,22 +137,17 @@ export class WatchTables {
     this.peakSlot = layout.length;
     for (const { path } of watched) layout.add(`watch.${path}.peak`);
 
-    const add = (name: string, unit: string, about: string) =>
-      signals.add({ path: `watch.${name}`, unit, about, group: 'run' });
-    this.worstSignal = add('worst', '1', 'number of the most urgent level that is present; 0: nothing to say');
-    this.countSignal = add('count', '1', 'warnings that are present or not acknowledged');
-    this.unseenSignal = add('unacknowledged', '1', 'warnings that are not acknowledged');
+    this.worstSignal = signals.add(watchSignals.worst);
+    this.countSignal = signals.add(watchSignals.count);
+    this.unseenSignal = signals.add(watchSignals.unacknowledged);
     this.levelSignal = new Int32Array(watched.length);
     this.peakSignal = new Int32Array(watched.length);
     const times: number[] = [];
     watched.forEach(({ path, unit }, i) => {
-      const far = this.peakSign[i] < 0 ? 'least' : 'largest';
-      this.levelSignal[i] = add(`${path}.level`, '1', `number of the level of ${path}; 0: nothing to say`);
-      this.peakSignal[i] = add(`${path}.peak`, unit, `${far} value of ${path} so far`);
-      if (bySignal[i].some((ladder) => ladder.relief))
-        times.push(
-          add(`${path}.timeToRelief`, 's', `time to the relief setting of ${path} at the present rate; 1e6: none`),
-        );
+      const own = watchSignalsOf(path, unit, this.peakSign[i] < 0 ? 'least' : 'largest');
+      this.levelSignal[i] = signals.add(own.level);
+      this.peakSignal[i] = signals.add(own.peak);
+      if (bySignal[i].some((ladder) => ladder.relief)) times.push(signals.add(own.timeToRelief));
     });
     this.timeSignal = Int32Array.from(times);
   }

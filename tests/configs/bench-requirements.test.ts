@@ -41,11 +41,11 @@ describe('requirements in bench and scenario files', () => {
   it.each([
     [
       'requirements: { HP-1: always highLine.presure < 350 bar(g) }\n',
-      'bench.yaml:57:30 requirements.HP-1: no such signal, highLine.presure, did you mean highLine.pressure or lowLine.pressure or highLine.mass?',
+      'bench.yaml:60:30 requirements.HP-1: no such signal, highLine.presure, did you mean highLine.pressure or lowLine.pressure or highLine.mass?',
     ],
     [
       'requirements: { HP-1: always highLine.pressure < 350 bar }\n',
-      'bench.yaml:57:50 requirements.HP-1: pressure without (a) or (g), write bar(a) for absolute or bar(g) for gauge pressure',
+      'bench.yaml:60:50 requirements.HP-1: pressure without (a) or (g), write bar(a) for absolute or bar(g) for gauge pressure',
     ],
   ])('say where they are wrong: %s', (text, complaint) => {
     expect(complaints(() => read(text))).toEqual([complaint.replace(':57:', `:${smallBench.split('\n').length}:`)]);

@@ -46,8 +46,16 @@ messages:
       mode: { names: { off: 0, drive: 1 }, substitute: off }
 watch:
   lowLine.pressure: { below: 3 bar(a), level: below least inlet, meaning: the machine cavitates }
-life: { key: off, bootWindow: 500 ms, preRoll: 200 ms, frames: { preRoll: silence } }
+life:
+  key: off
+  bootWindow: 500 ms
+  preRoll: 200 ms
+  afterRun: 300 ms
+  frames: { preRoll: silence, afterRun: plant }
+  reset:
+    before: [{ at: 0 s, set: life.supply, to: off }, { at: 50 ms, set: life.supply, to: on }]
+    after: [{ at: 100 ms, set: life.supply, to: off }]
 controller: { command: node controller.js, period: 10 ms }
-record: { signals: ['high*', '*.speed'], every: 2 ms }
+record: { signals: ['high*', '*.speed'] }
 duty: round.yaml
 `;

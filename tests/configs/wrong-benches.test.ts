@@ -343,22 +343,44 @@ const cases: readonly (readonly [string, string, string, readonly string[]])[] =
     'record',
     "'*.speed'",
     'propShaft.sped',
-    ['bench.yaml:50:30 record.signals: no such signal, propShaft.sped, did you mean propShaft.speed?'],
+    ['bench.yaml:58:30 record.signals: no such signal, propShaft.sped, did you mean propShaft.speed?'],
   ],
   [
     'frames',
     'preRoll: silence',
     'preRoll: quiet',
-    ['bench.yaml:48:75 life.frames.preRoll: unknown choice, quiet, use one of rest, silence'],
+    ['bench.yaml:53:22 life.frames.preRoll: unknown choice, quiet, use one of plant, silence'],
+  ],
+  [
+    'after-run frames',
+    'afterRun: plant',
+    'warmUp: plant',
+    ['bench.yaml:53:31 life.frames.warmUp: unknown key, use one of preRoll, afterRun'],
+  ],
+  [
+    'reset too late',
+    'at: 50 ms',
+    'at: 250 ms',
+    [
+      'bench.yaml:55:60 life.reset.before[1].at: behind the end of preRoll, 0.25 s, 0.2 s, make life.preRoll longer, or do it earlier',
+    ],
+  ],
+  [
+    'reset of nothing',
+    'at: 100 ms, set: life.supply',
+    'at: 100 ms, set: highLine.pressure',
+    [
+      'bench.yaml:56:32 life.reset.after[0].set: highLine.pressure is a reading, highLine.pressure, name a command or run',
+    ],
   ],
   ['step', 'step: 1 ms', 'step: 1 s', ['bench.yaml:3:7 step: too large, 1 s, at most 0.02 s, use a smaller value']],
   [
     'duty',
     'duty: round.yaml',
     'duty: ../round.yaml',
-    ['bench.yaml:51:7 duty: outside the folder of the bench, ../round.yaml, move the file into the folder'],
+    ['bench.yaml:59:7 duty: outside the folder of the bench, ../round.yaml, move the file into the folder'],
   ],
-  ['top key', 'duty: round', 'dutty: round', ['bench.yaml:51:1 dutty: unknown key, did you mean duty?']],
+  ['top key', 'duty: round', 'dutty: round', ['bench.yaml:59:1 dutty: unknown key, did you mean duty?']],
   [
     'alias',
     'fluid: oil',
@@ -427,25 +449,25 @@ const cases: readonly (readonly [string, string, string, readonly string[]])[] =
     'include outside',
     'duty: round.yaml',
     'include: ../other.yaml',
-    ['bench.yaml:51:10 include: outside the folder of the bench, ../other.yaml, move the file into the folder'],
+    ['bench.yaml:59:10 include: outside the folder of the bench, ../other.yaml, move the file into the folder'],
   ],
   [
     'include absent',
     'duty: round.yaml',
     'include: other.yaml',
-    ['bench.yaml:51:10 include: no such file, other.yaml, check the name'],
+    ['bench.yaml:59:10 include: no such file, other.yaml, check the name'],
   ],
   [
     'include self',
     'duty: round.yaml',
     'include: bench.yaml',
-    ['bench.yaml:51:10 include: file included twice, bench.yaml, include each file once'],
+    ['bench.yaml:59:10 include: file included twice, bench.yaml, include each file once'],
   ],
   [
     'two docs',
     'duty: round.yaml',
     '---\nduty: round.yaml',
-    ['bench.yaml:51:1 yaml: more than one document in the file, put it into a file of its own and include that'],
+    ['bench.yaml:59:1 yaml: more than one document in the file, put it into a file of its own and include that'],
   ],
   [
     'start key',
@@ -457,7 +479,7 @@ const cases: readonly (readonly [string, string, string, readonly string[]])[] =
     'controller',
     'command: node controller.js,',
     'module: a.js, command: b,',
-    ['bench.yaml:49:38 controller.command: a module and a command, keep one of the two: --controller takes the other'],
+    ['bench.yaml:57:38 controller.command: a module and a command, keep one of the two: --controller takes the other'],
   ],
   [
     'store as branch',
@@ -498,7 +520,7 @@ describe('several wrong statements', () => {
       'bench.yaml:21:68 branches.mainRelief.cracking: pressure without (a) or (g)',
       'bench.yaml:24:41 instruments.highPressureSensor.of: unknown signal',
       'bench.yaml:32:12 messages.sensors.every: not a multiple of the step',
-      'bench.yaml:51:1 dutty: unknown key',
+      'bench.yaml:59:1 dutty: unknown key',
     ]);
   });
 

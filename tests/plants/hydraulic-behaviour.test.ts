@@ -201,6 +201,36 @@ describe('isolation-valve', () => {
   });
 });
 
+describe('an external leak of a volume', () => {
+  it('loses oil by the orifice law, down to the pressure of the surroundings and not below', () => {
+    const bench = new Bench([
+      element('line', library.oilVolume, {
+        fluid: oil(),
+        parameters: { volume: 2 * litre },
+        start: { pressure: 200 * bar },
+      }),
+      element('other', library.oilVolume, {
+        fluid: oil(),
+        parameters: { volume: litre },
+        start: { pressure: 0.6 * bar },
+      }),
+      orifice('between', 'line', 'other', 1e-12),
+    ]);
+    bench.set('line.leakArea', 1e-7);
+    bench.set('other.leakArea', 1e-7);
+    const before = bench.get('line.mass');
+    const low = bench.get('other.mass');
+    bench.run(0.001);
+    // Cd A sqrt(2 rho dp): 0.7 * 1e-7 m2 * sqrt(2 * 870 kg/m3 * 199e5 Pa), 0.0130 kg/s
+    expect((before - bench.get('line.mass')) / 0.001).toBeCloseTo(0.013, 3);
+    bench.run(30);
+    expect(bench.get('line.pressure') / bar).toBeGreaterThan(1);
+    expect(bench.get('line.pressure') / bar).toBeLessThan(1.1);
+    // nothing is drawn in from outside
+    expect(Math.abs(bench.get('other.mass') - low)).toBeLessThan(1e-4);
+  });
+});
+
 describe('check-valve', () => {
   it('two of them facing one volume keep its pressure between and do not ring', () => {
     const circuit = () => [
@@ -342,6 +372,22 @@ describe('pump-motor', () => {
     one.set('unit.enable', 0);
     one.run(0.5);
     expect(one.get('unit.displacement')).toBeCloseTo(0, 3);
+  });
+
+  it('runs away to where a fault drives it, whatever is asked, and comes back', () => {
+    const one = bench();
+    one.set('unit.displacementRequest', 0.2);
+    one.run(0.4);
+    one.set('unit.runawayTo', -0.8);
+    one.run(0.5);
+    expect(one.get('unit.displacement')).toBeCloseTo(-0.8, 2);
+    expect(one.get('unit.wantedDisplacement')).toBeCloseTo(0.2, 9);
+    one.set('unit.enable', 0);
+    one.run(0.3);
+    expect(one.get('unit.displacement')).toBeCloseTo(-0.8, 2);
+    one.set('unit.runawayTo', -2);
+    one.run(0.5);
+    expect(one.get('unit.displacement')).toBeCloseTo(0, 2);
   });
 
   it('leaks more when worn, into the case', () => {

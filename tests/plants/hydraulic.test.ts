@@ -41,6 +41,7 @@ const circuits: Record<string, OilCircuit> = {
       bench.set('valve.open', Math.floor(time / 0.1) % 2 === 0 ? 1 : 0.05);
       bench.set('valve.power', time > 0.55 && time < 0.65 ? 0 : 1);
       bench.set('accumulator.gasLeak', time > 0.7 ? 0.05 : 0);
+      bench.set('line.leakArea', time > 0.4 ? 3e-6 : 0);
     },
   },
   'gas-accumulator with reference nitrogen and foam': {
@@ -134,6 +135,8 @@ const circuits: Record<string, OilCircuit> = {
       bench.set('unit.torqueRequest', 300 * Math.sin(12 * time));
       bench.set('unit.wear', time > 0.5 ? 3 : 1);
       bench.set('unit.enable', time > 0.8 ? 0 : 1);
+      bench.set('unit.runawayTo', time > 0.6 && time < 0.75 ? -0.6 : -2);
+      bench.set('low.leakArea', time > 0.3 ? 5e-6 : 0);
     },
   },
   'electric-charge-pump': {

@@ -74,6 +74,7 @@ export async function attachLinks(order: RunOrder, spec: BenchSpec, exchange: Ex
 export function attachModule(spec: BenchSpec, exchange: Exchange, factory: ControllerFactory, every: number): Barrier {
   const module = moduleBarrier(spec.map, exchange.checksum, factory, spec.step, every);
   for (const { link, transport } of module.transports) exchange.attach(link, transport);
+  if (module.restart) exchange.onHello = module.restart;
   return module.barrier;
 }
 

@@ -93,6 +93,8 @@ export interface ModuleBarrier {
   readonly barrier: Barrier;
   /** What the bench's links are to be attached to. */
   readonly transports: readonly { readonly link: string; readonly transport: Transport }[];
+  /** Starts the controller anew, where the link has no word for it. */
+  readonly restart?: () => void;
 }
 
 /**
@@ -117,7 +119,10 @@ export function moduleBarrier(
   const endpoint: CanControllerEndpoint = new CanControllerEndpoint({
     map,
     links,
-    controller: { step: (tick, read, write) => controller!.step(tick, read, write) },
+    controller: {
+      step: (tick, read, write) => controller!.step(tick, read, write),
+      restart: () => controller!.restart?.(),
+    },
     send: (link, frame, size) => {
       pairs[link]![1].send(frame, size);
     },
@@ -130,7 +135,11 @@ export function moduleBarrier(
       if (tick % every === 0) endpoint.answer(every);
     },
   };
-  return { barrier, transports: links.map((link, i) => ({ link, transport: pairs[i]![0] })) };
+  return {
+    barrier,
+    transports: links.map((link, i) => ({ link, transport: pairs[i]![0] })),
+    restart: () => endpoint.restart(),
+  };
 }
 
 function makeEndpoint(

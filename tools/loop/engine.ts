@@ -46,8 +46,10 @@ export interface LoopOptions {
   readonly peaks: Int32Array;
   /** Asked in every tick whether the code is still what it was. */
   readonly code?: CodeWatch | undefined;
-  /** Called between the pre-roll and tick 0, and once after the last tick. */
-  readonly onCount?: (() => void) | undefined;
+  /** Called between the pre-roll and tick 0, and once after the last counted tick: with how many there were. */
+  readonly onCount?: ((ticks: number) => void) | undefined;
+  /** Ticks behind the last counted one, however the run ended. Absent: none. */
+  readonly afterRun?: number | undefined;
 }
 
 export interface LoopEnd {
@@ -134,6 +136,19 @@ export class LoopBody {
     return !(assembly.plant.solver.failed || this.control[CONTROL.stop] !== 0 || block[assembly.hands.endedSlot] !== 0);
   }
 
+  /** `count` ticks of after-run, the first of them `from`: nothing is counted any more. */
+  afterRun(from: number, count: number): void {
+    const { assembly, barriers, barrierCount, pacer, board, block, signals } = this;
+    if (count > 0) assembly.tick.beginAfterRun(from);
+    for (let tick = from; tick < from + count && !assembly.plant.solver.failed; tick += 1) {
+      if (pacer !== undefined) pacer.wait();
+      assembly.tick.run(tick);
+      for (let i = 0; i < barrierCount; i += 1) barriers[i]!.end(tick);
+      this.progress[PROGRESS.tick] = tick;
+      if (board !== undefined && tick % board.every === 0) board.write(block, signals, tick);
+    }
+  }
+
   /** True past the last counted tick: a scenario that was held by hand ends later by as much. */
   over(tick: number): boolean {
     return tick >= this.ticks + this.block[this.assembly.scriptDelaySlot]!;
@@ -151,12 +166,14 @@ export function runLoop(options: LoopOptions): LoopEnd {
   const body = new LoopBody(options);
   let tick = firstTick;
   let failure: string | undefined;
+  let counted = -1;
+  let hash = '';
   Atomics.store(control, CONTROL.phase, firstTick < 0 ? 2 : 3);
   try {
     pacer?.begin();
     while (!body.over(tick)) {
       if (tick === 0) {
-        options.onCount?.();
+        options.onCount?.(0);
         pacer?.count();
       }
       body.wait(tick);
@@ -172,20 +189,36 @@ export function runLoop(options: LoopOptions): LoopEnd {
     if (plant.solver.failed)
       failure = `the plant has no finite state any more after tick ${tick - 1}: see \`oilspring check\` for its fastest modes and accuracy`;
     pacer?.finish();
+    clock.now(times, 2);
+    clock.threadTime(times, 3);
+    counted = Math.max(0, tick);
+    hash = hashText(stage.hash[0]!, stage.hash[1]!);
+    options.onCount?.(counted);
+    if (failure === undefined && tick >= 0) {
+      try {
+        body.afterRun(tick, options.afterRun ?? 0);
+      } catch (error) {
+        failure = `in the after-run: ${error instanceof Error ? error.message : String(error)}`;
+      }
+    }
   } catch (error) {
     failure = error instanceof Error ? error.message : String(error);
   }
-  clock.now(times, 2);
-  clock.threadTime(times, 3);
+  if (counted < 0) {
+    // broken off in the middle: this is the end
+    clock.now(times, 2);
+    clock.threadTime(times, 3);
+    counted = Math.max(0, tick);
+    hash = hashText(stage.hash[0]!, stage.hash[1]!);
+    options.onCount?.(counted);
+  }
   board?.write(block, signals, tick - 1);
-  options.onCount?.();
   Atomics.store(control, CONTROL.phase, failure === undefined ? 4 : 5);
-  const counted = Math.max(0, tick);
   return {
     ticks: counted,
     stopped: control[CONTROL.stop] !== 0 || block[hands.endedSlot] !== 0,
     peaks: body.peaks,
-    hash: hashText(stage.hash[0]!, stage.hash[1]!),
+    hash,
     ...(failure === undefined ? {} : { failure }),
     wall: counted > 0 ? (times[2]! - times[0]!) * 1e-9 : 0,
     processor: counted > 0 ? (times[3]! - times[1]!) * 1e-9 : 0,

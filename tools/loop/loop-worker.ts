@@ -21,7 +21,7 @@ import { attachLinks } from './attach-links.js';
 import { loadController } from './controller-module.js';
 import { CONTROL, createLoopControl, runLoop } from './engine.js';
 import { inlineMore } from './engine-flags.js';
-import type { LoopMessage, RunOrder } from './run-order.js';
+import type { LoopMessage, RunDone, RunOrder } from './run-order.js';
 import { StageClock } from './stage-meter.js';
 import { statusBoard } from './status.js';
 import { hotCode, type WarmUpResult, warmUp } from './warm-up.js';
@@ -125,7 +125,7 @@ async function main(order: RunOrder): Promise<void> {
     }),
     paths: assembly.table.all.map((info) => info.path),
     events: { kinds: assembly.events.kinds, subjects: assembly.events.subjects },
-    links: [...spec.map.links.map((link) => link.name), 'hands'],
+    links: [...spec.map.links.map((link) => link.name), 'hands', 'life'],
     hands: assembly.handTargets.map(({ path, unit }) => ({ path, unit })),
     board: board.handle,
     block: Array.from({ length: assembly.layout.length }, (_, i) => assembly.layout.path(i)),
@@ -146,6 +146,7 @@ async function main(order: RunOrder): Promise<void> {
   const meterOfCollections = new CollectionMeter();
   let collections = { collections: 0, longest: 0, allocated: 0 };
   let counting = false;
+  let atEnd: ReturnType<typeof said> | undefined;
   const end = runLoop({
     assembly,
     ticks: order.ticks,
@@ -157,18 +158,21 @@ async function main(order: RunOrder): Promise<void> {
     timingSignals,
     peaks,
     code: live ? code : undefined,
-    onCount: () => {
-      if (!counting) {
+    onCount: (ticks) => {
+      if (counting) {
+        collections = meterOfCollections.stop();
+        code.finish(ticks);
+        atEnd = said(assembly, ticks);
+      } else {
         meter?.reset();
         if (live) code.begin();
         meterOfCollections.start();
-      } else collections = meterOfCollections.stop();
+      }
       counting = true;
     },
+    afterRun: spec.life.afterRun,
   });
-  code.finish(end.ticks);
   journal.close();
-  const shares = assembly.ledger.shares(assembly.block, assembly.signals);
   say({
     kind: 'done',
     ticks: end.ticks,
@@ -178,12 +182,6 @@ async function main(order: RunOrder): Promise<void> {
     processor: end.processor,
     hash: end.hash,
     peaks: Object.fromEntries(order.peaks.map((path, i) => [path, end.peaks[i]!])),
-    ledger: {
-      energyResidual: shares.energy,
-      oilResidual: shares.stuffs['oil'] ?? 0,
-      turnover: assembly.signals[assembly.table.find('ledger.turnover')]!,
-      stuffs: shares.stuffs,
-    },
     code: code.report(),
     collections: collections.collections,
     longestCollection: collections.longest,
@@ -193,11 +191,29 @@ async function main(order: RunOrder): Promise<void> {
     overflows: journal.overflows,
     dropped: journal.dropped,
     stages: meter?.summary() ?? [],
-    last: assembly.signals.slice(),
-    warnings: assembly.warnings(),
-    requirements: assembly.judge.results(end.ticks, assembly.block),
-    energy: assembly.energy.list(assembly.signals),
+    ...(atEnd ?? said(assembly, end.ticks)),
   });
+}
+
+/** What the run has come to by its last counted tick: what is behind it, an after-run, is recorded and changes none of this. */
+function said(
+  assembly: Assembly,
+  ticks: number,
+): Pick<RunDone, 'ledger' | 'last' | 'warnings' | 'requirements' | 'energy'> {
+  const { block, signals, table } = assembly;
+  const shares = assembly.ledger.shares(block, signals);
+  return {
+    ledger: {
+      energyResidual: shares.energy,
+      oilResidual: shares.stuffs['oil'] ?? 0,
+      turnover: signals[table.find('ledger.turnover')]!,
+      stuffs: shares.stuffs,
+    },
+    last: signals.slice(),
+    warnings: assembly.warnings(),
+    requirements: assembly.judge.results(ticks, block),
+    energy: assembly.energy.list(signals),
+  };
 }
 
 /** Indices of the signals that any pattern or requirement names, in the order of the list; those of watch, scenario, judge and life always. */

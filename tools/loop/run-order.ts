@@ -60,7 +60,7 @@ export interface RunReady {
     }[];
     readonly subjects: readonly string[];
   };
-  /** Names of what inputs come from: the links, then `hands`. */
+  /** Names of what inputs come from: the links, then `hands`, then `life`. */
   readonly links: readonly string[];
   /** What a hand may take hold of, in the order of the numbers by which hands name it. */
   readonly hands: readonly { readonly path: string; readonly unit: string }[];

@@ -111,6 +111,7 @@ export function warmUp(options: WarmUpOptions): WarmUpResult {
     peaks: options.peaks,
     code,
     onCount,
+    afterRun: 0,
   });
   const run = (from: number, ticks: number, pacer: Pacer) => {
     runLoop(optionsOf(from, ticks, pacer));

@@ -49,6 +49,17 @@ export function recordedBench(header: RecordingHeader): { spec: BenchSpec; scrip
   return { spec, script: { ...script, requirements: script.requirements ?? [] } };
 }
 
+/** The tick from which on a recording without a summary holds an after-run; Infinity without one. */
+function afterRunFrom(recording: Recording): number {
+  const code = recording.header.events.kinds.findIndex((kind) => kind.name === 'after-run');
+  if (code < 0) return Number.POSITIVE_INFINITY;
+  for (const block of recording.blocks()) {
+    if (block.kind !== 'events') continue;
+    for (let i = 0; i < block.count; i += 1) if (block.codes[i] === code) return block.ticks[i]!;
+  }
+  return Number.POSITIVE_INFINITY;
+}
+
 function gather(recording: Recording, file: string): RecordedReport {
   const { header } = recording;
   const { spec, script } = recordedBench(header);
@@ -62,7 +73,9 @@ function gather(recording: Recording, file: string): RecordedReport {
   for (const { formula } of requirements) eachSignal(formula, (one) => wanted.add(one));
   const followed = driveSignals(spec);
   for (const one of ['timing.lateness', 'timing.step', ...Object.values(followed ?? {})]) wanted.add(one);
-  const rows = new RecordedRows(recording, lastTick, wanted);
+  const counted =
+    summary?.simulated === undefined ? afterRunFrom(recording) : Math.round(summary.simulated / spec.step);
+  const rows = new RecordedRows(recording, Math.min(lastTick, counted - 1), wanted);
   const results = summary
     ? resultsOf(summary, requirements, spec.step, remarks)
     : judgeAgain(requirements, rows, remarks);

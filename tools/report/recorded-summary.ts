@@ -17,6 +17,8 @@ const requirement = z.object({
 const duration = z.object({ p50: number, p99: number, p999: number, max: number });
 
 export const recordedSummary = z.object({
+  /** Counted time, s: what is recorded behind it is after-run. */
+  simulated: number.optional(),
   verdict: z.enum(['pass', 'fail', 'not exercised', 'not valid']),
   valid: z.boolean(),
   exitCode: number,

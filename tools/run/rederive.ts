@@ -62,6 +62,8 @@ async function derive(recording: Recording, onProgress: (share: number) => boole
   // what hands did came in behind the links
   const handLink = spec.map.links.length;
   if (header.links.length > handLink) assembly.hands.source = { poll: (into) => inputs.next(tick, handLink, into) };
+  const lifeLink = handLink + 1;
+  const word = new Uint8Array(16);
   const remarks: string[] = [];
   if (header.software.node !== process.version)
     remarks.push(
@@ -81,6 +83,7 @@ async function derive(recording: Recording, onProgress: (share: number) => boole
   let firstTick: number | undefined;
   let stopped = false;
   for (; tick <= last; tick += 1) {
+    if (header.links.length > lifeLink && inputs.next(tick, lifeLink, word) >= 0) assembly.tick.beginAfterRun(tick);
     assembly.tick.run(tick);
     const same = states.compare(tick, assembly.tick.hash);
     if (same < 0) missing += 1;
