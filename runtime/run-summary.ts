@@ -73,6 +73,8 @@ export interface RunSummary {
   readonly energies: readonly RunEnergy[];
   /** By element, for the picture of energy. */
   readonly energyParts: readonly EnergyPart[];
+  /** How well the driver followed the drive; null or absent when there was none to follow. */
+  readonly drive?: DriveQuality | null;
   /** Burnt over the run; null without an engine. */
   readonly fuel: { readonly mass: number; readonly energy: number } | null;
   /** Steps that the solver's safety net refined, and results that it replaced. */
@@ -139,6 +141,28 @@ export interface RunEnergy {
   readonly about: string;
   /** J */
   readonly value: number;
+}
+
+/** After SAE J2951, 40 CFR 1037.555 and 40 CFR 600.109-08; ratings in percent, null where the drive asks nothing. */
+export interface DriveQuality {
+  readonly energyRating: number | null;
+  readonly distanceRating: number | null;
+  readonly energyEconomyRating: number | null;
+  readonly absoluteSpeedChangeRating: number | null;
+  readonly inertialWorkRating: number | null;
+  /** m/s */
+  readonly rootMeanSquareSpeedError: number;
+  readonly regression: {
+    readonly slope: number;
+    /** m/s */
+    readonly intercept: number;
+    readonly standardError: number;
+    readonly determination: number;
+    /** What of the regression is not accepted; empty: all is. */
+    readonly faults: readonly string[];
+  };
+  /** s */
+  readonly outside: readonly { readonly from: number; readonly until: number }[];
 }
 
 export interface RunMessage {

@@ -217,7 +217,7 @@ function complainAboutLoop(outcome: RunOutcome): void {
     process.stderr.write(`what was recorded until then is in ${outcome.recording}\n`);
 }
 
-function pace(value: string): 'live' | 'fast' {
+export function pace(value: string): 'live' | 'fast' {
   if (value !== 'live' && value !== 'fast') throw new InvalidArgumentError('live or fast');
   return value;
 }

@@ -13,10 +13,12 @@ import { suiteJunit } from '../suite/suite-junit.js';
 import { CommandError } from './failure.js';
 import { Progress } from './progress.js';
 import { writeReports } from './report.js';
+import { pace } from './run.js';
 
 interface SuiteFlags {
   readonly bench?: string;
   readonly jobs: number;
+  readonly pace: 'live' | 'fast';
   readonly out?: string;
   readonly junit?: string;
   readonly report?: string;
@@ -29,10 +31,16 @@ interface SuiteFlags {
 
 export function suiteCommand(): Command {
   return new Command('suite')
-    .description('runs all scenarios of a folder at fast pace, several at a time, and gives one verdict')
+    .description('runs all scenarios of a folder, at fast pace several at a time, and gives one verdict')
     .argument('FOLDER', 'folder with scenario files; each case of a file is a run of its own')
     .option('--bench <FILE>', 'bench file; default: the nearest bench.yaml above the folder')
-    .option('--jobs <N>', 'runs at a time; default: one for each processor', whole, os.availableParallelism())
+    .option(
+      '--pace <live|fast>',
+      'fast: no waiting; live: in real time, one after another, with the reset procedure of the bench between',
+      pace,
+      'fast',
+    )
+    .option('--jobs <N>', 'runs at a time (fast); default: one for each processor', whole, os.availableParallelism())
     .option('--out <FOLDER>', 'results and recordings; default: recordings/suites/ and the name of the folder')
     .option('--resume', 'go on where an earlier suite stopped: runs whose files have not changed are not run again')
     .option('--controller <CMD>', 'as of run')
@@ -48,7 +56,7 @@ export function suiteCommand(): Command {
     .option('--json', 'one object on standard output at the end, and nothing else')
     .addHelpText(
       'after',
-      '\nExample:\n  oilspring suite configs/harbour-truck/scenarios/suite --junit suite.xml --report suite.html\n\nExit code 0: pass, or something was not exercised; 1: a requirement failed; 3: a run is not valid or broke; 5: stopped.\nCtrl-C ends it cleanly; --resume goes on from there.',
+      '\nExamples:\n  oilspring suite configs/harbour-truck/scenarios/suite --junit suite.xml --report suite.html\n  oilspring suite my/scenarios --pace live --controller external\n\nExit code 0: pass, or something was not exercised; 1: a requirement failed; 3: a run is not valid or broke; 5: stopped.\nCtrl-C ends it cleanly; --resume goes on from there.',
     )
     .action(async (folder: string, flags: SuiteFlags) => {
       process.exitCode = await suite(folder, flags);
@@ -59,12 +67,14 @@ async function suite(folder: string, flags: SuiteFlags): Promise<number> {
   const bench = flags.bench ?? benchAbove(folder);
   const { spec } = readBenchFile(bench);
   const seed = flags.seed ?? spec.seed;
-  const entries = suiteEntries(folder, spec, seed, flags.controller ?? '');
+  const entries = suiteEntries(folder, spec, seed, `${flags.pace} ${flags.controller ?? ''}`);
   const out = flags.out ?? path.join('recordings', 'suites', path.basename(path.resolve(folder)));
   const say = (text: string) => {
     if (!flags.json) process.stdout.write(`${text}\n`);
   };
-  say(`${entries.length} runs on ${spec.name}, ${flags.jobs} at a time, results in ${out}`);
+  const jobs = flags.pace === 'live' ? 1 : flags.jobs;
+  const how = flags.pace === 'live' ? 'live, one after another' : `${jobs} at a time`;
+  say(`${entries.length} runs on ${spec.name}, ${how}, results in ${out}`);
   const progress = new Progress('suite', flags.json ?? false);
   const began = performance.now();
   let results: SuiteResult[];
@@ -74,7 +84,8 @@ async function suite(folder: string, flags: SuiteFlags): Promise<number> {
       bench,
       entries,
       out,
-      jobs: flags.jobs,
+      jobs,
+      pace: flags.pace,
       seed,
       controller: flags.controller,
       resume: flags.resume ?? false,
@@ -110,7 +121,7 @@ async function suite(folder: string, flags: SuiteFlags): Promise<number> {
         bench: spec.name,
         created,
         took,
-        jobs: flags.jobs,
+        how,
         judgement,
         results,
         pages,

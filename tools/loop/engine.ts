@@ -48,6 +48,8 @@ export interface LoopOptions {
   readonly code?: CodeWatch | undefined;
   /** Called between the pre-roll and tick 0, and once after the last counted tick: with how many there were. */
   readonly onCount?: ((ticks: number) => void) | undefined;
+  /** Two signals that are kept every `stride` ticks: as many values as the arrays have room for. */
+  readonly samples?: Samples | undefined;
   /** Ticks behind the last counted one, however the run ended. Absent: none. */
   readonly afterRun?: number | undefined;
 }
@@ -66,6 +68,13 @@ export interface LoopEnd {
   readonly processor: number;
 }
 
+export interface Samples {
+  readonly signals: Int32Array;
+  readonly stride: number;
+  readonly into: readonly [Float64Array, Float64Array];
+}
+
+const noSamples: Samples = { signals: new Int32Array(2), stride: 1, into: [new Float64Array(0), new Float64Array(0)] };
 const nobody: Barrier = { end() {} };
 
 /**
@@ -88,6 +97,7 @@ export class LoopBody {
   private readonly code: CodeWatch | undefined;
   private readonly lateness: number;
   private readonly step: number;
+  private readonly samples: Samples;
 
   constructor(options: LoopOptions) {
     const { assembly, shared } = options;
@@ -107,6 +117,7 @@ export class LoopBody {
     this.code = options.code;
     this.lateness = options.timingSignals?.lateness ?? -1;
     this.step = options.timingSignals?.step ?? -1;
+    this.samples = options.samples ?? noSamples;
   }
 
   /** Waits for the tick's deadline (live) and shows how late the last one was. */
@@ -129,11 +140,20 @@ export class LoopBody {
         const value = signals[peakSignals[i]!]!;
         if (value > peaks[i]!) peaks[i] = value;
       }
+      this.sample(tick);
     }
     this.progress[PROGRESS.tick] = tick;
     if (board !== undefined && tick % board.every === 0) board.write(block, signals, tick);
     if (this.code !== undefined) this.code.check(tick);
     return !(assembly.plant.solver.failed || this.control[CONTROL.stop] !== 0 || block[assembly.hands.endedSlot] !== 0);
+  }
+
+  private sample(tick: number): void {
+    const { signals, samples } = this;
+    const { stride, into } = samples;
+    if (tick % stride !== 0 || tick >= stride * into[0].length) return;
+    into[0][tick / stride] = signals[samples.signals[0]!]!;
+    into[1][tick / stride] = signals[samples.signals[1]!]!;
   }
 
   /** `count` ticks of after-run, the first of them `from`: nothing is counted any more. */
@@ -167,7 +187,6 @@ export function runLoop(options: LoopOptions): LoopEnd {
   let tick = firstTick;
   let failure: string | undefined;
   let counted = -1;
-  let hash = '';
   Atomics.store(control, CONTROL.phase, firstTick < 0 ? 2 : 3);
   try {
     pacer?.begin();
@@ -192,7 +211,6 @@ export function runLoop(options: LoopOptions): LoopEnd {
     clock.now(times, 2);
     clock.threadTime(times, 3);
     counted = Math.max(0, tick);
-    hash = hashText(stage.hash[0]!, stage.hash[1]!);
     options.onCount?.(counted);
     if (failure === undefined && tick >= 0) {
       try {
@@ -209,7 +227,6 @@ export function runLoop(options: LoopOptions): LoopEnd {
     clock.now(times, 2);
     clock.threadTime(times, 3);
     counted = Math.max(0, tick);
-    hash = hashText(stage.hash[0]!, stage.hash[1]!);
     options.onCount?.(counted);
   }
   board?.write(block, signals, tick - 1);
@@ -218,7 +235,7 @@ export function runLoop(options: LoopOptions): LoopEnd {
     ticks: counted,
     stopped: control[CONTROL.stop] !== 0 || block[hands.endedSlot] !== 0,
     peaks: body.peaks,
-    hash,
+    hash: hashText(stage.hash[0]!, stage.hash[1]!),
     ...(failure === undefined ? {} : { failure }),
     wall: counted > 0 ? (times[2]! - times[0]!) * 1e-9 : 0,
     processor: counted > 0 ? (times[3]! - times[1]!) * 1e-9 : 0,

@@ -17,9 +17,10 @@ import { enterScheduling } from '../../runtime/realtime/scheduling.js';
 import { TimingRecord } from '../../runtime/realtime/timing-record.js';
 import { RingJournal } from '../../runtime/ring-journal.js';
 import { noMeter } from '../../runtime/tick.js';
+import { driveSignals, driveStride } from '../report/drive-trace.js';
 import { attachLinks } from './attach-links.js';
 import { loadController } from './controller-module.js';
-import { CONTROL, createLoopControl, runLoop } from './engine.js';
+import { CONTROL, createLoopControl, runLoop, type Samples } from './engine.js';
 import { inlineMore } from './engine-flags.js';
 import type { LoopMessage, RunDone, RunOrder } from './run-order.js';
 import { StageClock } from './stage-meter.js';
@@ -71,6 +72,7 @@ async function main(order: RunOrder): Promise<void> {
   if (meter) assembly.tick.meter = meter;
   const code = hotCode(assembly, [journal, board.writer, ...(pacer ? [pacer, pacer.record.step] : [])]);
 
+  const driven = driveSamples(assembly, order.ticks);
   let warmed: WarmUpResult = { ticks: 0, tick: 0, settled: true };
   if (live) {
     Atomics.store(shared.control, CONTROL.phase, 1);
@@ -87,6 +89,7 @@ async function main(order: RunOrder): Promise<void> {
       peaks,
       timingSignals,
       meter: meter ?? noMeter,
+      samples: driven,
       code,
       stopped: () => Atomics.load(shared.control, CONTROL.stop) !== 0,
     });
@@ -170,6 +173,7 @@ async function main(order: RunOrder): Promise<void> {
       }
       counting = true;
     },
+    samples: driven,
     afterRun: spec.life.afterRun,
   });
   journal.close();
@@ -192,7 +196,24 @@ async function main(order: RunOrder): Promise<void> {
     dropped: journal.dropped,
     stages: meter?.summary() ?? [],
     ...(atEnd ?? said(assembly, end.ticks)),
+    drive: driven ? sampled(driven, end.ticks) : null,
   });
+}
+
+/** Room for what the driver was to follow and what it had; undefined without a driver. */
+function driveSamples({ spec, table }: Assembly, ticks: number): Samples | undefined {
+  const paths = driveSignals(spec);
+  if (paths === undefined) return undefined;
+  const signals = Int32Array.of(table.find(paths.target), table.find(paths.driven));
+  if (signals.some((index) => index < 0)) return undefined;
+  const stride = driveStride(spec.step);
+  const count = Math.floor(ticks / stride);
+  return { signals, stride, into: [new Float64Array(count), new Float64Array(count)] };
+}
+
+function sampled({ stride, into }: Samples, ticks: number): NonNullable<RunDone['drive']> {
+  const count = Math.min(into[0].length, Math.floor(ticks / stride));
+  return { wanted: into[0].slice(0, count), had: into[1].slice(0, count) };
 }
 
 /** What the run has come to by its last counted tick: what is behind it, an after-run, is recorded and changes none of this. */

@@ -124,6 +124,8 @@ export interface RunDone {
   readonly warnings: readonly WatchWarning[];
   readonly requirements: readonly RequirementResult[];
   readonly energy: readonly EnergyPart[];
+  /** Speed that the driver was to follow and that it had, one value every `driveStride` ticks; null without a driver. */
+  readonly drive: { readonly wanted: Float64Array; readonly had: Float64Array } | null;
 }
 
 export interface RunFailed {

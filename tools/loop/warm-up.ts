@@ -13,7 +13,7 @@ import type { BoardWriter } from '../../runtime/status-board.js';
 import type { StageMeter } from '../../runtime/tick.js';
 import { attachModule } from './attach-links.js';
 import type { Barrier, ControllerFactory } from './controller-module.js';
-import { createLoopControl, LoopBody, type LoopOptions, runLoop } from './engine.js';
+import { createLoopControl, LoopBody, type LoopOptions, runLoop, type Samples } from './engine.js';
 import { rehearse } from './rehearsal-partner.js';
 import { rehearseHands } from './rehearse-hands.js';
 
@@ -59,6 +59,7 @@ export interface WarmUpOptions {
   readonly peaks: Int32Array;
   readonly timingSignals: { readonly lateness: number; readonly step: number } | undefined;
   readonly meter: StageMeter;
+  readonly samples: Samples | undefined;
   readonly code: CodeWatch;
   /** True when the run is to be given up. */
   readonly stopped: () => boolean;
@@ -111,6 +112,7 @@ export function warmUp(options: WarmUpOptions): WarmUpResult {
     peaks: options.peaks,
     code,
     onCount,
+    samples: options.samples,
     afterRun: 0,
   });
   const run = (from: number, ticks: number, pacer: Pacer) => {

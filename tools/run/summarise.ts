@@ -2,6 +2,7 @@ import type { RequirementResult } from '../../runtime/judge/result.js';
 import type { RunRequirement, RunSummary } from '../../runtime/run-summary.js';
 import { judgeRun, type Measured } from '../../runtime/verdict.js';
 import { pressureSettings } from '../../runtime/watch-settings.js';
+import { driveQuality } from '../report/drive-trace.js';
 import { type RunOutcome, softwareVersion } from './host-run.js';
 
 /** The summary of a run that has ended, with its verdict. */
@@ -121,6 +122,7 @@ export function summarise(outcome: RunOutcome): RunSummary {
     },
     energies,
     energyParts: done?.energy ?? [],
+    drive: done?.drive ? driveQuality(spec, done.drive.wanted, done.drive.had) : null,
     fuel:
       engine === undefined || !done
         ? null

@@ -20,13 +20,16 @@ export interface SuiteEntry {
   readonly key: string;
 }
 
-/** The scenario files of a folder and those below it, by name; each case of a file is a run of its own. Throws BuildError. */
-export function suiteEntries(folder: string, spec: BenchSpec, seed: number, controller: string): SuiteEntry[] {
+/**
+ * The scenario files of a folder and those below it, by name; each case of a file is a run of its own. `how`: whatever else the
+ * outcome follows from, such as pace and controller. Throws BuildError.
+ */
+export function suiteEntries(folder: string, spec: BenchSpec, seed: number, how: string): SuiteEntry[] {
   if (!existsSync(folder) || !statSync(folder).isDirectory())
     throw new CommandError(`${folder} is no folder: name one with scenario files`);
   const files = scenarioFiles(folder);
   if (files.length === 0) throw new CommandError(`${folder} holds no scenario: put files *.yaml into it`);
-  const bench = createHash('sha256').update(softwareVersion()).update(controller).update(String(seed));
+  const bench = createHash('sha256').update(softwareVersion()).update(how).update(String(seed));
   for (const source of spec.sources) bench.update(source.name).update(source.text);
   const before = bench.digest('hex');
   return files.flatMap((file) => {

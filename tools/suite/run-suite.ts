@@ -12,6 +12,7 @@ export interface SuiteOptions {
   /** Folder for results and recordings. */
   readonly out: string;
   readonly jobs: number;
+  readonly pace: 'live' | 'fast';
   readonly seed: number;
   readonly controller: string | undefined;
   /** Takes over what stands in `out` already, when it follows from the same files. */
@@ -25,8 +26,9 @@ export interface SuiteOptions {
 }
 
 /**
- * Runs each entry at fast pace in a process of its own, `jobs` at a time, the longest first. A crash ends one run and no other. When
- * it is aborted the runs that are on are told to end, and count as not run.
+ * Runs each entry in a process of its own. At fast pace `jobs` at a time, the longest first; live one after another in the order of
+ * the suite, with the reset procedure of the bench between: the end of its after-run and the beginning of its pre-roll. A crash ends
+ * one run and no other. When it is aborted the runs that are on are told to end, and count as not run.
  */
 export async function runSuite(options: SuiteOptions): Promise<SuiteResult[]> {
   const { entries, out, jobs, abort } = options;
@@ -47,7 +49,8 @@ export async function runSuite(options: SuiteOptions): Promise<SuiteResult[]> {
     if (before && before.key === entry.key && before.verdict !== 'broken') finish(entry, before, true);
     else waiting.push(entry);
   }
-  waiting.sort((a, b) => b.length - a.length);
+  const live = options.pace === 'live';
+  if (!live) waiting.sort((a, b) => b.length - a.length);
   const children = new Set<ChildProcess>();
   const stop = () => {
     for (const child of children) child.kill('SIGINT');
@@ -60,7 +63,7 @@ export async function runSuite(options: SuiteOptions): Promise<SuiteResult[]> {
       if (!abort.aborted) finish(entry, result, false);
     }
   };
-  await Promise.all(Array.from({ length: Math.max(1, jobs) }, work));
+  await Promise.all(Array.from({ length: live ? 1 : Math.max(1, jobs) }, work));
   abort.removeEventListener('abort', stop);
   return entries.flatMap((entry) => results.get(entry.name) ?? []);
 }
@@ -70,14 +73,14 @@ export function resultFile(out: string, name: string): string {
 }
 
 async function runOne(options: SuiteOptions, entry: SuiteEntry, children: Set<ChildProcess>): Promise<SuiteResult> {
-  const { out, bench, seed, controller, keep } = options;
+  const { out, bench, seed, controller, keep, pace } = options;
   const recording = path.join(out, `${entry.name}.osrec`);
   rmSync(recording, { force: true });
   rmSync(resultFile(out, entry.name), { force: true });
   const began = performance.now();
   const words = [
     path.join(packageRoot(), 'dist', 'tools', 'oilspring.js'),
-    ...['run', bench, '--scenario', entry.file, '--pace', 'fast', '--json', '--seed', String(seed)],
+    ...['run', bench, '--scenario', entry.file, '--pace', pace, '--json', '--seed', String(seed)],
     ...(entry.case === undefined ? [] : ['--case', entry.case]),
     ...(controller === undefined ? [] : ['--controller', controller]),
     ...(keep === 'none' ? ['--no-record'] : ['--record', recording]),

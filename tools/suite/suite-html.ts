@@ -15,9 +15,9 @@ export interface SuitePage {
   readonly title: string;
   readonly bench: string;
   readonly created: string;
-  /** Wall time of the suite, s, and how many ran at a time. */
+  /** Wall time of the suite, s, and how it ran: `2 at a time`. */
   readonly took: number;
-  readonly jobs: number;
+  readonly how: string;
   readonly judgement: SuiteJudgement;
   readonly results: readonly SuiteResult[];
   /** Pages of single runs beside this one, by name. */
@@ -58,7 +58,7 @@ export function suiteHtml(page: SuitePage): string {
 <title>${escaped(`${judgement.verdict}: ${page.title}`)}</title><style>${style}</style></head><body><main>
 <header><h1>${escaped(page.title)}</h1><p class="meta">${escaped(page.bench)}, ${escaped(page.created)}</p>
 <div class="verdict ${kind}" role="status">${word(judgement.verdict)}<div><p>${escaped(judgement.summary)}</p></div></div>
-<p class="quiet">${results.length} runs in ${page.took.toFixed(0)} s, ${page.jobs} at a time. Recordings of runs that did not pass are kept whole; of the runs that passed, those with the least margin of a requirement.</p></header>
+<p class="quiet">${results.length} runs in ${page.took.toFixed(0)} s, ${escaped(page.how)}. Recordings of runs that did not pass are kept whole; of the runs that passed, those with the least margin of a requirement.</p></header>
 <section><h2 id="runs">Runs</h2>${table(['Verdict', 'Run', '>Simulated', '>Took'], runs)}</section>
 <section><h2 id="requirements">Requirements over all runs</h2>${table(['Verdict', 'Requirement', '>Least margin', '>Pass', '>Fail', '>Not exercised'], requirements)}</section>
 <p class="caution"><strong>Caution.</strong> ${escaped(caution)}</p>

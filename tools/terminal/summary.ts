@@ -2,6 +2,7 @@ import type { RunSummary } from '../../runtime/run-summary.js';
 import type { Invalidity } from '../../runtime/verdict.js';
 import { watchLevelWords, watchSeverity } from '../../runtime/watch-levels.js';
 import type { WatchWarning } from '../../runtime/watch-log.js';
+import { driveSentence } from '../report/drive-trace.js';
 import { show, showClock, showEnergy, showMicroseconds, showShare, showTime } from './show.js';
 import { cautionLines } from './start-up.js';
 import { draw, type Line, type Style, span, type Tone } from './style.js';
@@ -21,6 +22,7 @@ export function renderSummary(summary: RunSummary, columns: number, style: Style
   const lines: Line[] = [
     ...verdictLines(summary, columns),
     ...requirementLines(summary, columns),
+    ...(summary.drive ? field('drive', columns, driveSentence(summary.drive)) : []),
     [],
     ...field('run', columns, runText(summary)),
     ...timingLines(summary, columns),
