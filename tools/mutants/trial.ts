@@ -4,7 +4,7 @@ import type { BenchSpec } from '../../configs/bench-spec.js';
 import { diskFiles } from '../../configs/files.js';
 import { readScenario } from '../../configs/scenario.js';
 import { hashText } from '../../runtime/block.js';
-import type { Circuit, CircuitFunctions } from '../../runtime/circuit/build.js';
+import type { Circuit } from '../../runtime/circuit/build.js';
 import type { RequirementVerdict } from '../../runtime/judge/result.js';
 import { judgeSignal } from '../../runtime/judge/stage.js';
 import { attachModule } from '../loop/attach-links.js';
@@ -34,7 +34,7 @@ const FAIL = 2;
  */
 export class TrialBench {
   private readonly built = new Map<string, { assembly: Assembly; ticks: number; watched: [string, number][] }>();
-  private functions: CircuitFunctions | undefined;
+  private shared: Pick<Circuit, 'functions' | 'step'> | undefined;
   private readonly circuits = new Map<string, Circuit>();
 
   constructor(
@@ -98,8 +98,9 @@ export class TrialBench {
     const known = this.circuits.get(starts);
     let assembly = assemble(this.spec, { seed: this.seed, script, ...(known ? { circuit: known } : {}) });
     if (!known) {
-      this.functions ??= assembly.circuit.functions;
-      const circuit = { ...assembly.circuit, functions: this.functions };
+      const { functions, step } = assembly.circuit;
+      this.shared ??= { functions, step };
+      const circuit = { ...assembly.circuit, ...this.shared };
       this.circuits.set(starts, circuit);
       assembly = assemble(this.spec, { seed: this.seed, script, circuit });
     }
