@@ -18,20 +18,32 @@ export const axle = store({
     inputSpeed: { unit: 'rad/s', about: 'speed of the input shaft' },
     inputTorque: { unit: 'N m', about: 'torque into the final drive' },
     lossTorque: { unit: 'N m', about: 'loss torque at the wheels' },
+    speedMagnitude: { unit: 'rad/s', about: 'speed of the input without its sign', least: 0 },
   },
   parameters: {
     ratio: { unit: '1', about: 'input speed over wheel speed', default: 1, least: 0.1, usual: [2, 8] },
     inertia: { unit: 'kg m2', about: 'inertia of wheels and gear at wheel speed', least: 0.01, usual: [1, 60] },
     dragTorque: { unit: 'N m', about: 'drag of bearings and oil at the wheels', default: 0, least: 0, usual: [0, 60] },
+    maximumSpeed: { unit: 'rad/s', about: 'highest speed of the input; 0: not watched', default: 0, least: 0 },
     meshLoss: { unit: '1', about: 'share of the transmitted torque that is lost', default: 0.03, least: 0, most: 0.3 },
   },
   starts: { speed: { unit: 'rad/s', about: 'speed of the wheels', default: 0 } },
   laws: frictionLaws,
   heat: 'leaves',
+  limits: [
+    {
+      reading: 'speedMagnitude',
+      side: 'above',
+      level: 'over speed',
+      parameter: 'maximumSpeed',
+      meaning: 'the final drive turns faster than its bearings and seals are built for',
+    },
+  ],
   efforts({ parameter, state, input, wheels, reading }) {
     input.speed = parameter.ratio * state.speed;
     wheels.speed = state.speed;
     reading.inputSpeed = parameter.ratio * state.speed;
+    reading.speedMagnitude = Math.abs(parameter.ratio * state.speed);
   },
   derivatives({ parameter, state, input, wheels, reading, derivative, law }) {
     const transmitted = parameter.ratio * input.torque;

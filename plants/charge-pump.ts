@@ -35,11 +35,30 @@ export const chargePump = branch({
     reliefFlow: { unit: 'm3/s', about: 'volume flow through its relief valve' },
     torque: { unit: 'N m', about: 'torque that it takes' },
     shaftPower: { unit: 'W', about: 'power taken from the shaft' },
+    speedMagnitude: { unit: 'rad/s', about: 'speed without its sign', least: 0 },
+    inletPressure: { unit: 'Pa', about: 'pressure at its inlet' },
   },
   parameters: {
     ...chargePumpParameters,
+    maximumSpeed: { unit: 'rad/s', about: 'greatest permitted speed; 0: not watched', default: 0, least: 0 },
   },
   laws: { ...flowLaws, ...pumpMotorLaws },
+  limits: [
+    {
+      reading: 'speedMagnitude',
+      side: 'above',
+      level: 'over speed',
+      parameter: 'maximumSpeed',
+      meaning: 'the pump cavitates and wears out',
+    },
+    {
+      reading: 'inletPressure',
+      side: 'below',
+      level: 'below least inlet',
+      parameter: 'leastInletPressure',
+      meaning: 'the charge pump cavitates and the low side will starve',
+    },
+  ],
   update({ inlet, memory }) {
     memory.viscosity = inlet.viscosity;
   },
@@ -84,6 +103,8 @@ export const chargePump = branch({
     shaft.torque -= torque;
     reading.shaftPower = torque * shaft.speed;
     reading.flow = net / inlet.density;
+    reading.speedMagnitude = Math.abs(shaft.speed);
+    reading.inletPressure = inlet.pressure;
     reading.reliefFlow = reliefFlow;
     reading.torque = torque;
   },

@@ -14,11 +14,22 @@ export const differential = store({
     leftSpeed: { unit: 'rad/s', about: 'speed of the left wheel', scale: 50 },
     rightSpeed: { unit: 'rad/s', about: 'speed of the right wheel', scale: 50 },
   },
-  readings: { inputSpeed: { unit: 'rad/s', about: 'speed of the input shaft' } },
+  readings: {
+    inputSpeed: { unit: 'rad/s', about: 'speed of the input shaft' },
+    speedMagnitude: { unit: 'rad/s', about: 'speed of the input without its sign', least: 0 },
+    slipSpeed: { unit: 'rad/s', about: 'speed of one wheel over the other, without its sign', least: 0 },
+  },
   parameters: {
     ratio: { unit: '1', about: 'input speed over mean wheel speed', default: 1, least: 0.1, usual: [2, 8] },
     inputInertia: { unit: 'kg m2', about: 'inertia at the input', default: 0.05, least: 0 },
     wheelInertia: { unit: 'kg m2', about: 'inertia of one wheel with its half shaft', least: 0.01, usual: [0.5, 30] },
+    maximumSpeed: { unit: 'rad/s', about: 'highest speed of the input; 0: not watched', default: 0, least: 0 },
+    maximumSlipSpeed: {
+      unit: 'rad/s',
+      about: 'highest speed of one wheel over the other; 0: not watched',
+      default: 0,
+      least: 0,
+    },
     wheelFriction: { unit: 'N m s', about: 'friction torque of a wheel per speed', default: 0, least: 0 },
     lockingFriction: {
       unit: 'N m s',
@@ -29,12 +40,30 @@ export const differential = store({
   },
   starts: { speed: { unit: 'rad/s', about: 'speed of both wheels', default: 0 } },
   heat: 'leaves',
+  limits: [
+    {
+      reading: 'speedMagnitude',
+      side: 'above',
+      level: 'over speed',
+      parameter: 'maximumSpeed',
+      meaning: 'the final drive turns faster than its bearings and seals are built for',
+    },
+    {
+      reading: 'slipSpeed',
+      side: 'above',
+      level: 'over speed',
+      parameter: 'maximumSlipSpeed',
+      meaning: 'one wheel spins: the pinions of the differential seize within minutes',
+    },
+  ],
   efforts({ parameter, state, input, left, right, reading }) {
     const fast = 0.5 * parameter.ratio * (state.leftSpeed + state.rightSpeed);
     input.speed = fast;
     left.speed = state.leftSpeed;
     right.speed = state.rightSpeed;
     reading.inputSpeed = fast;
+    reading.speedMagnitude = Math.abs(fast);
+    reading.slipSpeed = Math.abs(state.leftSpeed - state.rightSpeed);
   },
   derivatives({ parameter, state, input, left, right, derivative }) {
     const drive = 0.5 * parameter.ratio * input.torque;

@@ -38,6 +38,7 @@ export const electricChargePump = branch({
     reliefFlow: { unit: 'm3/s', about: 'volume flow through its relief valve' },
     torque: { unit: 'N m', about: 'torque that it takes' },
     shaftPower: { unit: 'W', about: 'power of the motor' },
+    inletPressure: { unit: 'Pa', about: 'pressure at its inlet' },
   },
   parameters: {
     ...chargePumpParameters,
@@ -45,6 +46,15 @@ export const electricChargePump = branch({
     speedLag: { unit: 's', about: 'lag of the speed', default: 0.2, least: 0.01, most: 10, usual: [0.1, 1] },
   },
   laws: { ...flowLaws, ...pumpMotorLaws },
+  limits: [
+    {
+      reading: 'inletPressure',
+      side: 'below',
+      level: 'below least inlet',
+      parameter: 'leastInletPressure',
+      meaning: 'the charge pump cavitates and the low side will starve',
+    },
+  ],
   update({ inlet, memory }) {
     memory.viscosity = inlet.viscosity;
   },
@@ -91,6 +101,7 @@ export const electricChargePump = branch({
       parameter.speedLag;
     reading.shaftPower = torque * state.speed;
     reading.flow = net / inlet.density;
+    reading.inletPressure = inlet.pressure;
     reading.reliefFlow = reliefFlow;
     reading.torque = torque;
   },

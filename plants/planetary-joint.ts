@@ -20,6 +20,8 @@ export const planetaryJoint = store({
   },
   readings: {
     sunSpeed: { unit: 'rad/s', about: 'speed of the sun' },
+    ringSpeedMagnitude: { unit: 'rad/s', about: 'speed of the ring without its sign', least: 0 },
+    carrierSpeedMagnitude: { unit: 'rad/s', about: 'speed of the carrier without its sign', least: 0 },
     sunSpeedMagnitude: { unit: 'rad/s', about: 'speed of the sun without its sign', least: 0 },
     meshTorque: { unit: 'N m', about: 'friction torque on the sun against the carrier' },
   },
@@ -35,6 +37,8 @@ export const planetaryJoint = store({
       least: 0,
     },
     meshFriction: { unit: 'N m', about: 'constant mesh friction on the sun', default: 0, least: 0 },
+    maximumRingSpeed: { unit: 'rad/s', about: 'highest speed of the ring; 0: not watched', default: 0, least: 0 },
+    maximumCarrierSpeed: { unit: 'rad/s', about: 'highest speed of the carrier; 0: not watched', default: 0, least: 0 },
     maximumSunSpeed: { unit: 'rad/s', about: 'highest speed of the sun; 0: not watched', default: 0, least: 0 },
   },
   starts: {
@@ -44,6 +48,20 @@ export const planetaryJoint = store({
   laws: { ...frictionLaws, ...shaftLaws },
   heat: 'leaves',
   limits: [
+    {
+      reading: 'ringSpeedMagnitude',
+      side: 'above',
+      level: 'over speed',
+      parameter: 'maximumRingSpeed',
+      meaning: 'the ring turns faster than its bearings are built for',
+    },
+    {
+      reading: 'carrierSpeedMagnitude',
+      side: 'above',
+      level: 'over speed',
+      parameter: 'maximumCarrierSpeed',
+      meaning: 'the planets are flung against their bearings',
+    },
     {
       reading: 'sunSpeedMagnitude',
       side: 'above',
@@ -59,6 +77,8 @@ export const planetaryJoint = store({
     carrier.speed = state.carrierSpeed;
     reading.sunSpeed = fast;
     reading.sunSpeedMagnitude = Math.abs(fast);
+    reading.ringSpeedMagnitude = Math.abs(state.ringSpeed);
+    reading.carrierSpeedMagnitude = Math.abs(state.carrierSpeed);
   },
   derivatives({ parameter, state, sun, ring, carrier, reading, derivative, law }) {
     const z = parameter.ratio;

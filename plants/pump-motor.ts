@@ -16,7 +16,7 @@ export const pumpMotor = branch({
   about: 'over-centre pump-motor with displacement actuator, leakage to the case and losses in four quadrants',
   source: 'losses: Wilson 1946, Willans lines, Schloesser 1961, McCandlish and Dorey 1984; terms of ISO 4391',
   valid:
-    'mean values: no flow ripple, which a step of a millisecond cannot carry (nine pistons at 2000 rpm: 600 Hz); loss coefficients constant',
+    'mean values: no flow ripple, which a step of a millisecond cannot carry (nine pistons at 2000 rpm: 600 Hz); loss coefficients constant; mirrored efficiencies are for comparison only: their losses jump in slope at zero power and vanish at zero displacement',
   ports: { high: 'oil', low: 'oil', caseDrain: 'oil', shaft: 'shaft' },
   states: {
     displacement: { unit: '1', about: 'displacement as a share of the full one', least: -1.05, most: 1.05 },
@@ -28,10 +28,27 @@ export const pumpMotor = branch({
       about: 'dynamic viscosity of the oil in it, once a substep: it changes by nothing meanwhile',
       initial: 0.04,
     },
+    mistaken: { unit: 's', about: 'time for which the displacement has been off its request by more than allowed' },
+    delayClock: { unit: 's', about: 'time since the request moved on through the dead time' },
+    delay1: { unit: '1', about: 'request on its way through the dead time, newest' },
+    delay2: { unit: '1', about: 'the one before' },
+    delay3: { unit: '1', about: 'and before' },
+    delay4: { unit: '1', about: 'and before' },
+    delay5: { unit: '1', about: 'and before' },
+    delay6: { unit: '1', about: 'and before' },
+    delay7: { unit: '1', about: 'and before' },
+    delay8: { unit: '1', about: 'request that has passed the dead time' },
   },
   commands: {
     torqueRequest: { unit: 'N m', about: 'wanted torque on the shaft, before losses', rest: 0 },
     displacementRequest: { unit: '1', about: 'wanted displacement', rest: 0, least: -1, most: 1 },
+    currentRequest: {
+      unit: 'A',
+      about: 'current of the displacement valve, with its sign',
+      rest: 0,
+      least: -5,
+      most: 5,
+    },
     enable: { unit: '1', about: 'on above 0.5; off swings to zero displacement', rest: 1, least: 0, most: 1 },
     wear: {
       unit: '1',
@@ -73,12 +90,14 @@ export const pumpMotor = branch({
     leakage: { unit: 'm3/s', about: 'leakage out of the high side' },
     wantedDisplacement: { unit: '1', about: 'displacement that the actuator is driven to' },
     following: { unit: '1', about: 'that less the displacement, without its sign', least: 0 },
+    lastingError: { unit: '1', about: 'the same once it has lasted followingTime', least: 0 },
     shaftPower: { unit: 'W', about: 'power given to the shaft' },
     hydraulicPower: { unit: 'W', about: 'power taken from the oil' },
     speed: { unit: 'rad/s', about: 'shaft speed' },
     speedMagnitude: { unit: 'rad/s', about: 'shaft speed without its sign', least: 0 },
     difference: { unit: 'Pa', about: 'pressure of the high side less that of the low side' },
     inletPressure: { unit: 'Pa', about: 'the lower of the two pressures, at which a pump draws' },
+    inletForSpeed: { unit: 'Pa', about: 'the same less what the present speed wants above standstill' },
     casePressure: { unit: 'Pa', about: 'case pressure' },
   },
   parameters: {
@@ -100,13 +119,13 @@ export const pumpMotor = branch({
       unit: '1',
       about: 'what it obeys; fixed: a unit without actuator, always at full displacement',
       default: 0,
-      choices: ['torque', 'displacement', 'fixed'],
+      choices: ['torque', 'displacement', 'fixed', 'current'],
     },
     losses: {
       unit: '1',
       about: 'form of the losses',
       default: 0,
-      choices: ['wilson', 'constant efficiencies', 'willans', 'extended'],
+      choices: ['wilson', 'constant efficiencies', 'willans', 'extended', 'mirrored efficiencies', 'map'],
     },
     leastDifference: {
       unit: 'Pa',
@@ -133,6 +152,25 @@ export const pumpMotor = branch({
       most: 200,
       usual: [5, 15],
     },
+    deadTime: {
+      unit: 's',
+      about: 'time until a request moves the actuator, in eighths of whole substeps; 0: none',
+      default: 0,
+      least: 0,
+      most: 0.2,
+      usual: [0.005, 0.02],
+    },
+    ratedControlPressure: {
+      unit: 'Pa',
+      about:
+        'higher of its two pressures from which the actuator has its rate limit; below, the rate goes with the root; 0: always',
+      default: 0,
+      least: 0,
+      most: 1e8,
+      usual: [20e5, 100e5],
+    },
+    deadCurrent: { unit: 'A', about: 'current at which the displacement begins', default: 0.2, least: 0, most: 2 },
+    fullCurrent: { unit: 'A', about: 'current of full displacement', default: 0.6, least: 0.01, most: 5 },
     slipCoefficient: {
       unit: '1',
       about: 'leakage coefficient Cs after Wilson',
@@ -224,6 +262,60 @@ export const pumpMotor = branch({
       most: 1e11,
       difference: true,
     },
+    ratedSpeed: {
+      unit: 'rad/s',
+      about: 'speed that the map is relative to',
+      default: 200,
+      least: 1,
+      most: 2000,
+    },
+    mapLeakage: {
+      unit: '1',
+      about: 'map, leakage: share of the rated ideal flow at the rated difference',
+      default: 0,
+      least: -1,
+      most: 1,
+    },
+    mapLeakageDisplacement: { unit: '1', about: 'map, the same, per displacement', default: 0, least: -1, most: 1 },
+    mapLeakagePressure: {
+      unit: '1',
+      about: 'map, the same, per difference over the rated one',
+      default: 0,
+      least: -1,
+      most: 1,
+    },
+    mapLeakageSpeed: {
+      unit: '1',
+      about: 'map, the same, per speed over the rated one',
+      default: 0,
+      least: -1,
+      most: 1,
+    },
+    mapLeakageBoth: { unit: '1', about: 'map, the same, per displacement and speed', default: 0, least: -1, most: 1 },
+    mapTorque: {
+      unit: '1',
+      about: 'map, loss torque: share of the rated ideal torque, constant',
+      default: 0,
+      least: -1,
+      most: 1,
+    },
+    mapTorqueSpeed: { unit: '1', about: 'map, the same, per speed over the rated one', default: 0, least: -1, most: 1 },
+    mapTorqueSquare: { unit: '1', about: 'map, the same, per square of that', default: 0, least: -1, most: 1 },
+    mapTorquePressure: {
+      unit: '1',
+      about: 'map, the same, per difference over the rated one',
+      default: 0,
+      least: -1,
+      most: 1,
+    },
+    mapTorqueDisplacement: {
+      unit: '1',
+      about: 'map, the same, per difference and displacement',
+      default: 0,
+      least: -1,
+      most: 1,
+    },
+    mapTorqueBoth: { unit: '1', about: 'map, the same, per difference and speed', default: 0, least: -1, most: 1 },
     caseLeakShare: { unit: '1', about: 'share of the leakage that goes to the case', default: 0.5, least: 0, most: 1 },
     caseHeatShare: {
       unit: '1',
@@ -243,15 +335,31 @@ export const pumpMotor = branch({
     notFollowing: {
       unit: '1',
       about: 'error of the displacement that is watched; 0: not watched',
-      default: 0,
+      default: 0.25,
       least: 0,
       most: 2,
+    },
+    followingTime: { unit: 's', about: 'time that it may last', default: 0.3, least: 0, most: 10 },
+    inletRise: {
+      unit: 'Pa s',
+      about: 'rise of the least inlet pressure per speed',
+      default: 0,
+      least: 0,
+      most: 1e5,
+      difference: true,
     },
     leastInletPressure: { unit: 'Pa', about: 'least inlet pressure; 0: not watched', default: 0.8e5, least: 0 },
     maximumCasePressure: { unit: 'Pa', about: 'greatest case pressure; 0: not watched', default: 3e5, least: 0 },
   },
   laws: { ...flowLaws, ...pumpMotorLaws },
   limits: [
+    {
+      reading: 'lastingError',
+      side: 'above',
+      level: 'not following',
+      parameter: 'notFollowing',
+      meaning: 'the swash plate does not do what it is told: a stuck actuator, lost control pressure or a broken wire',
+    },
     {
       reading: 'speedMagnitude',
       side: 'above',
@@ -260,7 +368,7 @@ export const pumpMotor = branch({
       meaning: 'pistons lift off or parts fly apart: the unit is to be disconnected before',
     },
     {
-      reading: 'inletPressure',
+      reading: 'inletForSpeed',
       side: 'below',
       level: 'below least inlet',
       parameter: 'leastInletPressure',
@@ -274,8 +382,30 @@ export const pumpMotor = branch({
       meaning: 'the shaft seal is pressed out and the case leaks',
     },
   ],
-  update({ high, low, memory }) {
+  update({ parameter, high, low, state, memory, command, step, law }) {
+    const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
+    const difference = high.pressure - low.pressure;
+    const byTorque = law.displacementForTorque(command.torqueRequest, difference, radian, parameter.leastDifference);
+    const byCurrent = law.displacementForCurrent(command.currentRequest, parameter.deadCurrent, parameter.fullCurrent);
+    const asked =
+      parameter.request === 0 ? byTorque : parameter.request === 3 ? byCurrent : command.displacementRequest;
+    const clock = memory.delayClock + step;
+    const moves = clock >= 0.125 * parameter.deadTime - 0.5 * step;
+    const now = parameter.deadTime > 0 ? memory.delay8 : asked;
+    const stroked = command.enable > 0.5 ? Math.max(parameter.leastDisplacement, Math.min(1, now)) : 0;
+    const wanted = parameter.request === 2 ? 1 : stroked;
+    const wrong = Math.abs(wanted - state.displacement) > parameter.notFollowing;
     memory.viscosity = 0.5 * (high.viscosity + low.viscosity);
+    memory.mistaken = wrong ? Math.min(memory.mistaken + step, 100) : 0;
+    memory.delayClock = moves ? 0 : clock;
+    memory.delay1 = moves ? asked : memory.delay1;
+    memory.delay2 = moves ? memory.delay1 : memory.delay2;
+    memory.delay3 = moves ? memory.delay2 : memory.delay3;
+    memory.delay4 = moves ? memory.delay3 : memory.delay4;
+    memory.delay5 = moves ? memory.delay4 : memory.delay5;
+    memory.delay6 = moves ? memory.delay5 : memory.delay6;
+    memory.delay7 = moves ? memory.delay6 : memory.delay7;
+    memory.delay8 = moves ? memory.delay7 : memory.delay8;
   },
   flows({ parameter, high, low, caseDrain, shaft, state, memory, command, derivative, reading, law }) {
     const radian = parameter.displacement / (2 * law.CIRCLE_RATIO);
@@ -285,23 +415,43 @@ export const pumpMotor = branch({
     const drawing = stroke * shaft.speed;
     const density = law.carriedDensity(high.density, low.density, drawing, parameter.smoothSpeed);
 
+    const mappedTorque =
+      parameter.losses === 5
+        ? law.mappedTorque(
+            difference,
+            shaft.speed,
+            stroke,
+            radian,
+            parameter.mapTorque,
+            parameter.mapTorqueSpeed,
+            parameter.mapTorqueSquare,
+            parameter.mapTorquePressure,
+            parameter.mapTorqueDisplacement,
+            parameter.mapTorqueBoth,
+            parameter.ratedDifference,
+            parameter.ratedSpeed,
+            parameter.smoothSpeed,
+          )
+        : 0;
     const lossTorque =
       command.frictionFactor *
-      law.lossTorque(
-        parameter.losses,
-        difference,
-        shaft.speed,
-        stroke,
-        viscosity,
-        low.density,
-        radian,
-        parameter.viscousCoefficient,
-        parameter.frictionCoefficient,
-        parameter.dryTorque,
-        parameter.mechanicalEfficiency,
-        parameter.hydrodynamicCoefficient,
-        parameter.smoothSpeed,
-      );
+      (parameter.losses === 5
+        ? mappedTorque
+        : law.lossTorque(
+            parameter.losses,
+            difference,
+            shaft.speed,
+            stroke,
+            viscosity,
+            low.density,
+            radian,
+            parameter.viscousCoefficient,
+            parameter.frictionCoefficient,
+            parameter.dryTorque,
+            parameter.mechanicalEfficiency,
+            parameter.hydrodynamicCoefficient,
+            parameter.smoothSpeed,
+          ));
 
     const conductance =
       command.wear *
@@ -313,20 +463,38 @@ export const pumpMotor = branch({
         parameter.idleLeakage,
         parameter.ratedDifference,
       );
+    const mappedLeakage =
+      parameter.losses === 5
+        ? law.mappedLeakage(
+            difference,
+            shaft.speed,
+            stroke,
+            radian,
+            parameter.mapLeakage,
+            parameter.mapLeakageDisplacement,
+            parameter.mapLeakagePressure,
+            parameter.mapLeakageSpeed,
+            parameter.mapLeakageBoth,
+            parameter.ratedDifference,
+            parameter.ratedSpeed,
+          )
+        : 0;
     const further =
       command.wear *
-      law.furtherLeakage(
-        parameter.losses,
-        difference,
-        shaft.speed,
-        stroke,
-        low.density,
-        radian,
-        parameter.volumetricEfficiency,
-        parameter.turbulentCoefficient,
-        parameter.deadVolumeShare,
-        parameter.bulkModulus,
-      );
+      (parameter.losses === 5
+        ? mappedLeakage
+        : law.furtherLeakage(
+            parameter.losses,
+            difference,
+            shaft.speed,
+            stroke,
+            low.density,
+            radian,
+            parameter.volumetricEfficiency,
+            parameter.turbulentCoefficient,
+            parameter.deadVolumeShare,
+            parameter.bulkModulus,
+          ));
     const across = (1 - parameter.caseLeakShare) * conductance * difference + further;
     const toCase = parameter.caseLeakShare * conductance;
     const highLeak = toCase * (high.pressure - caseDrain.pressure);
@@ -374,12 +542,17 @@ export const pumpMotor = branch({
       lowHeat;
 
     const byTorque = law.displacementForTorque(command.torqueRequest, difference, radian, parameter.leastDifference);
-    const asked = parameter.request === 0 ? byTorque : command.displacementRequest;
-    const stroked = command.enable > 0.5 ? Math.max(parameter.leastDisplacement, Math.min(1, asked)) : 0;
+    const byCurrent = law.displacementForCurrent(command.currentRequest, parameter.deadCurrent, parameter.fullCurrent);
+    const asked =
+      parameter.request === 0 ? byTorque : parameter.request === 3 ? byCurrent : command.displacementRequest;
+    const arrived = parameter.deadTime > 0 ? memory.delay8 : asked;
+    const stroked = command.enable > 0.5 ? Math.max(parameter.leastDisplacement, Math.min(1, arrived)) : 0;
     const wanted = parameter.request === 2 ? 1 : stroked;
     const driven = command.runawayTo < -1.5 ? wanted : Math.max(parameter.leastDisplacement, command.runawayTo);
     const approach = (parameter.naturalFrequency / (2 * parameter.damping)) * (driven - state.displacement);
-    const limited = Math.max(-parameter.rateLimit, Math.min(parameter.rateLimit, approach));
+    const fastest =
+      parameter.rateLimit * law.controlShare(Math.max(high.pressure, low.pressure), parameter.ratedControlPressure);
+    const limited = Math.max(-fastest, Math.min(fastest, approach));
     const rate = command.stuck > 0.5 ? 0 : limited;
     derivative.displacement = command.stuck > 0.5 ? 0 : state.displacementRate;
     derivative.displacementRate = 2 * parameter.damping * parameter.naturalFrequency * (rate - state.displacementRate);
@@ -390,12 +563,14 @@ export const pumpMotor = branch({
     reading.highFlow = massFlow / density + across + highLeak;
     reading.wantedDisplacement = wanted;
     reading.following = Math.abs(wanted - state.displacement);
+    reading.lastingError = memory.mistaken >= parameter.followingTime ? Math.abs(wanted - state.displacement) : 0;
     reading.shaftPower = torque * shaft.speed;
     reading.hydraulicPower = massFlow * (high.potential - low.potential) + acrossLoss + highLoss + lowLoss;
     reading.speed = shaft.speed;
     reading.speedMagnitude = Math.abs(shaft.speed);
     reading.difference = difference;
     reading.inletPressure = Math.min(high.pressure, low.pressure);
+    reading.inletForSpeed = Math.min(high.pressure, low.pressure) - parameter.inletRise * Math.abs(shaft.speed);
     reading.casePressure = caseDrain.pressure;
   },
   /** Friction, and what leaks from a higher to a lower potential. */
@@ -404,23 +579,43 @@ export const pumpMotor = branch({
     const stroke = Math.max(-1, Math.min(1, state.displacement));
     const difference = high.pressure - low.pressure;
     const viscosity = memory.viscosity;
+    const mappedTorque =
+      parameter.losses === 5
+        ? law.mappedTorque(
+            difference,
+            shaft.speed,
+            stroke,
+            radian,
+            parameter.mapTorque,
+            parameter.mapTorqueSpeed,
+            parameter.mapTorqueSquare,
+            parameter.mapTorquePressure,
+            parameter.mapTorqueDisplacement,
+            parameter.mapTorqueBoth,
+            parameter.ratedDifference,
+            parameter.ratedSpeed,
+            parameter.smoothSpeed,
+          )
+        : 0;
     const lossTorque =
       command.frictionFactor *
-      law.lossTorque(
-        parameter.losses,
-        difference,
-        shaft.speed,
-        stroke,
-        viscosity,
-        low.density,
-        radian,
-        parameter.viscousCoefficient,
-        parameter.frictionCoefficient,
-        parameter.dryTorque,
-        parameter.mechanicalEfficiency,
-        parameter.hydrodynamicCoefficient,
-        parameter.smoothSpeed,
-      );
+      (parameter.losses === 5
+        ? mappedTorque
+        : law.lossTorque(
+            parameter.losses,
+            difference,
+            shaft.speed,
+            stroke,
+            viscosity,
+            low.density,
+            radian,
+            parameter.viscousCoefficient,
+            parameter.frictionCoefficient,
+            parameter.dryTorque,
+            parameter.mechanicalEfficiency,
+            parameter.hydrodynamicCoefficient,
+            parameter.smoothSpeed,
+          ));
 
     const conductance =
       command.wear *
@@ -432,20 +627,38 @@ export const pumpMotor = branch({
         parameter.idleLeakage,
         parameter.ratedDifference,
       );
+    const mappedLeakage =
+      parameter.losses === 5
+        ? law.mappedLeakage(
+            difference,
+            shaft.speed,
+            stroke,
+            radian,
+            parameter.mapLeakage,
+            parameter.mapLeakageDisplacement,
+            parameter.mapLeakagePressure,
+            parameter.mapLeakageSpeed,
+            parameter.mapLeakageBoth,
+            parameter.ratedDifference,
+            parameter.ratedSpeed,
+          )
+        : 0;
     const further =
       command.wear *
-      law.furtherLeakage(
-        parameter.losses,
-        difference,
-        shaft.speed,
-        stroke,
-        low.density,
-        radian,
-        parameter.volumetricEfficiency,
-        parameter.turbulentCoefficient,
-        parameter.deadVolumeShare,
-        parameter.bulkModulus,
-      );
+      (parameter.losses === 5
+        ? mappedLeakage
+        : law.furtherLeakage(
+            parameter.losses,
+            difference,
+            shaft.speed,
+            stroke,
+            low.density,
+            radian,
+            parameter.volumetricEfficiency,
+            parameter.turbulentCoefficient,
+            parameter.deadVolumeShare,
+            parameter.bulkModulus,
+          ));
     const across = (1 - parameter.caseLeakShare) * conductance * difference + further;
     const toCase = parameter.caseLeakShare * conductance;
     const highLeak = toCase * (high.pressure - caseDrain.pressure);
@@ -461,7 +674,7 @@ export const pumpMotor = branch({
   },
   initial: ({ parameter }) => (parameter.request === 2 ? { displacement: 1 } : {}),
   examine: ({ parameter }) => {
-    const laminar = [parameter.slipCoefficient!, 0, parameter.idleLeakage!, parameter.slipCoefficient!];
+    const laminar = [parameter.slipCoefficient!, 0, parameter.idleLeakage!, parameter.slipCoefficient!, 0, 0];
     return parameter.caseHeatShare! > 0 && laminar[parameter.losses!]! * parameter.caseLeakShare! === 0
       ? [
           {

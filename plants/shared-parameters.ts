@@ -65,6 +65,7 @@ export const chargePumpParameters = {
   },
   fullFlow: { unit: 'Pa', about: 'outlet pressure at the rated flow of its relief valve', least: 1.2e5, most: 2e7 },
   fullFlowRate: { unit: 'm3/s', about: 'that rated flow', least: 1e-6, most: 0.02, usual: [1e-4, 2e-3] },
+  leastInletPressure: { unit: 'Pa', about: 'least inlet pressure; 0: not watched', default: 0.6e5, least: 0 },
   reliefLag: { unit: 's', about: 'lag of its relief valve', default: 0.005, least: 0.0005, most: 0.5 },
 } as const satisfies Record<string, ParameterDeclaration>;
 

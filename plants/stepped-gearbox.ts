@@ -38,6 +38,7 @@ export const steppedGearbox = branch({
     inputTorque: { unit: 'N m', about: 'torque taken from the input shaft' },
     outputTorque: { unit: 'N m', about: 'torque given to the output shaft' },
     slip: { unit: 'rad/s', about: 'speed of the input less ratio times output' },
+    speedMagnitude: { unit: 'rad/s', about: 'speed of the input without its sign', least: 0 },
     shifting: { unit: '1', about: '1 while the wanted gear is not locked', least: 0, most: 1 },
   },
   parameters: {
@@ -61,12 +62,22 @@ export const steppedGearbox = branch({
       most: 0.2,
     },
     bristleDamping: { unit: 's/rad', about: 'damping of sticking, at the output', default: 0.03, least: 0, most: 1 },
+    maximumSpeed: { unit: 'rad/s', about: 'highest speed of the input; 0: not watched', default: 0, least: 0 },
     dragTorque: { unit: 'N m', about: 'drag of bearings and oil at the input', default: 2, least: 0, usual: [0, 20] },
     meshLoss: { unit: '1', about: 'share of the transmitted torque that is lost', default: 0.02, least: 0, most: 0.3 },
   },
   starts: { gear: { unit: '1', about: 'engaged gear', default: 0, least: -1, most: 6 } },
   laws: frictionLaws,
   heat: 'leaves',
+  limits: [
+    {
+      reading: 'speedMagnitude',
+      side: 'above',
+      level: 'over speed',
+      parameter: 'maximumSpeed',
+      meaning: 'gears and synchronisers turn faster than they are built for, as after a wrong shift down',
+    },
+  ],
   update({ parameter, memory, state, command, step }) {
     const wanted = Math.floor(command.gearRequest + 0.5);
     const wantedRatio =
@@ -123,6 +134,7 @@ export const steppedGearbox = branch({
     reading.inputTorque = torque + drag;
     reading.outputTorque = memory.ratio * torque - mesh;
     reading.slip = slip;
+    reading.speedMagnitude = Math.abs(input.speed);
     reading.shifting =
       memory.gear === Math.floor(command.gearRequest + 0.5) && (memory.gear === 0 || memory.locked > 0.5) ? 0 : 1;
   },

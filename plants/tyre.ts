@@ -35,6 +35,8 @@ export const tyre = branch({
     slip: { unit: '1', about: 'longitudinal slip that the carcass feels, driving positive' },
     force: { unit: 'N', about: 'force on the body, forward positive' },
     load: { unit: 'N', about: 'vertical load' },
+    lock: { unit: '1', about: 'slip of a braked wheel above walking pace, without its sign', least: 0 },
+    spin: { unit: 'm/s', about: 'speed of the tread over that of the road when it drives', least: 0 },
     slipVelocity: { unit: 'm/s', about: 'wheel speed times radius less velocity' },
   },
   parameters: {
@@ -46,6 +48,13 @@ export const tyre = branch({
     shapeFactor: { unit: '1', about: 'C of it', default: 1.9, least: 1, most: 2.5 },
     peakFriction: { unit: '1', about: 'D of it; friction of the friction tyre', default: 1, least: 0.01, most: 2 },
     curvatureFactor: { unit: '1', about: 'E of it', default: 0.97, least: -10, most: 1 },
+    lockedSlip: {
+      unit: '1',
+      about: 'slip of a braked wheel from which it counts as locked; 0: not watched',
+      default: 0.6,
+      least: 0,
+      most: 1,
+    },
     relaxationLength: { unit: 'm', about: 'relaxation length', default: 0.3, least: 0.05, usual: [0.15, 0.6] },
     creepSpeed: {
       unit: 'm/s',
@@ -59,6 +68,15 @@ export const tyre = branch({
   },
   laws: tyreLaws,
   heat: 'leaves',
+  limits: [
+    {
+      reading: 'lock',
+      side: 'above',
+      level: 'locked',
+      parameter: 'lockedSlip',
+      meaning: 'the wheel is locked: the vehicle cannot be steered there and its tyre is ruined',
+    },
+  ],
   flows({ parameter, wheel, road, state, command, derivative, reading, law }) {
     const slipVelocity = wheel.speed * parameter.radius - road.velocity;
     const load = Math.max(
@@ -98,6 +116,8 @@ export const tyre = branch({
     reading.slip = slip;
     reading.force = force;
     reading.load = load;
+    reading.lock = Math.abs(road.velocity) > 1.5 ? Math.max(0, -slip * Math.sign(road.velocity)) : 0;
+    reading.spin = Math.max(0, slipVelocity * Math.sign(road.velocity + 1e-3));
     reading.slipVelocity = slipVelocity;
   },
   energy({ state }) {

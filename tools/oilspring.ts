@@ -5,6 +5,7 @@ import { checkCommand } from './commands/check.js';
 import { compareCommand } from './commands/compare.js';
 import { exportCommand } from './commands/export.js';
 import { complain } from './commands/failure.js';
+import { fitMapCommand } from './commands/fit-map.js';
 import { importCommand } from './commands/import.js';
 import { listCommand } from './commands/list.js';
 import { listenCommand, replayCommand } from './commands/listen.js';
@@ -42,6 +43,7 @@ for (const command of [
   listCommand(),
   wireCommand(),
   importCommand(),
+  fitMapCommand(),
   listenCommand(),
   replayCommand(),
   viewCommand(),

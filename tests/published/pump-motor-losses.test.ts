@@ -1,13 +1,14 @@
 import { describe, expect, it } from 'vitest';
 import * as law from '../../plants/laws/pump-motor.js';
 import * as library from '../../plants/library.js';
+import { fitLossMap } from '../../tools/fit/loss-map.js';
 import { Bench, element } from '../support/circuit.js';
 import { bar, litresPerMinute, oil, rpm } from '../support/oil.js';
 
 const fluid = oil({ bulkModulus: 1e13, air: 1e-4, density: 870, thermalExpansion: 0 });
 const displacement = 100e-6;
 const radian = displacement / (2 * Math.PI);
-const forms = ['wilson', 'constant efficiencies', 'willans', 'extended'] as const;
+const forms = ['wilson', 'constant efficiencies', 'willans', 'extended', 'mirrored efficiencies', 'map'] as const;
 
 /** The element between prescribed pressures on a shaft of prescribed speed, its displacement swung to `stroke`. */
 function unit(
@@ -31,6 +32,16 @@ function unit(
   bench.run(0.8);
   return bench;
 }
+
+/** Some map: with losses that rise, and a leakage polynomial that would be negative at speed. */
+const map = {
+  mapLeakage: 0.02,
+  mapLeakageSpeed: -0.05,
+  mapTorque: 0.01,
+  mapTorqueSquare: 0.02,
+  mapTorquePressure: 0.02,
+  mapTorqueDisplacement: 0.01,
+};
 
 describe('constant efficiencies in additive form', () => {
   const given = { losses: 1, volumetricEfficiency: 0.95, mechanicalEfficiency: 0.95, caseHeatShare: 0 };
@@ -64,6 +75,63 @@ describe('Willans lines', () => {
   });
 });
 
+describe('mirrored efficiencies, for comparison', () => {
+  const given = { losses: 4, volumetricEfficiency: 0.95, mechanicalEfficiency: 0.95, caseHeatShare: 0 };
+  // terms of ISO 4391; 100 cm3, 2000 rpm, 300 bar, 0.95 and 0.95: the worked pump and motor
+  it('need 502.595 N m as a pump and take 210.526 L/min as a motor', () => {
+    const pump = unit(310, 10, 2000 * rpm, -1, given);
+    expect(-pump.get('unit.torque')).toBeCloseTo(502.595, 0);
+    expect(-pump.get('unit.highFlow') / litresPerMinute).toBeCloseTo(190, 0);
+    const motor = unit(310, 10, 2000 * rpm, 1, given);
+    expect(motor.get('unit.torque')).toBeCloseTo(453.592, 0);
+    expect(motor.get('unit.highFlow') / litresPerMinute).toBeCloseTo(210.526, 0);
+  });
+  it('jump in slope where the power changes its sign', () => {
+    const torque = (stroke: number) =>
+      stroke * radian * 3e7 - law.lossTorque(4, 3e7, 200, stroke, 0.03, 870, radian, 0, 0, 0, 0.9, 0, 1);
+    const slope = (stroke: number) => (torque(stroke + 1e-3) - torque(stroke)) / (1e-3 * radian * 3e7);
+    expect(slope(0.1)).toBeCloseTo(0.9, 3);
+    expect(slope(-0.1)).toBeCloseTo(1 / 0.9, 3);
+  });
+});
+
+describe('a map fitted to measured points', () => {
+  // points made by Wilson's law at 20 speeds, pressures and displacements, as pump and as motor
+  const wilson = (speed: number, difference: number, displacement: number) => {
+    const leak = law.wilsonLeakage(difference, 0.03, radian, 3e-9);
+    const lost = law.lossTorque(0, difference, speed, displacement, 0.03, 870, radian, 1.2e5, 0.02, 2, 1, 0, 1);
+    const share = Math.abs(displacement);
+    const sign = displacement > 0 ? 1 : -1;
+    return {
+      speed,
+      difference,
+      displacement,
+      flow: share * radian * speed - sign * leak,
+      torque: share * radian * difference + sign * lost,
+    };
+  };
+  const points = [500, 1000, 1500, 2000, 2500].flatMap((n) =>
+    [50, 150, 250, 350].flatMap((p) =>
+      [-1, -0.5, 0.5, 1].map((displacement) => wilson(n * rpm, p * bar, displacement)),
+    ),
+  );
+  it('gives them back to a thousandth of the largest', () => {
+    const fitted = fitLossMap(points, displacement);
+    expect(fitted.flowDeviation).toBeLessThan(1e-3);
+    expect(fitted.torqueDeviation).toBeLessThan(1e-3);
+    expect(fitted.gaining).toEqual([]);
+    const bench = unit(260, 10, 1500 * rpm, -0.5, { losses: 5, caseHeatShare: 0, ...fitted.parameters });
+    const point = wilson(1500 * rpm, 250 * bar, 0.5);
+    expect(-bench.get('unit.highFlow') / point.flow).toBeCloseTo(1, 2);
+    expect(-bench.get('unit.torque') / point.torque).toBeCloseTo(1, 2);
+  });
+  it('names a point that gives more than the ideal unit', () => {
+    expect(fitLossMap([...points, { ...points[0]!, torque: points[0]!.torque + 1e3 }], displacement).gaining).toEqual([
+      points.length + 1,
+    ]);
+  });
+});
+
 describe('extended form', () => {
   it('adds turbulent leakage with the root of the difference: twice at four times (Schloesser 1961)', () => {
     const leak = (difference: number) =>
@@ -85,6 +153,7 @@ describe('extended form', () => {
 
 describe.each(forms.map((form, losses) => [form, losses] as const))('%s', (_form, losses) => {
   it('never gives more power than it takes, in all four quadrants and at the corners', () => {
+    const bench = unit(20, 20, 0, 0, { losses, caseHeatShare: 0, ...map });
     for (const speed of [-200, -0.5, 0, 0.5, 200])
       for (const stroke of [-1, 0, 0.3, 1])
         for (const [high, low] of [
@@ -92,7 +161,13 @@ describe.each(forms.map((form, losses) => [form, losses] as const))('%s', (_form
           [10, 300],
           [20, 20],
         ] as const) {
-          const bench = unit(high, low, speed, stroke, { losses, caseHeatShare: 0 });
+          bench.set('drive.speed', speed);
+          bench.set('unit.displacementRequest', stroke);
+          bench.set('highSide.pressureChange', (high - 20) * bar);
+          bench.set('lowSide.pressureChange', (low - 20) * bar);
+          bench.run(0.7);
+          expect(bench.get('unit.displacement')).toBeCloseTo(stroke, 3);
+          expect(bench.get('unit.difference')).toBeCloseTo((high - low) * bar, -3);
           expect(bench.get('unit.loss'), `${speed} ${stroke} ${high}`).toBeGreaterThanOrEqual(-1e-6);
           expect(bench.get('unit.hydraulicPower') - bench.get('unit.shaftPower')).toBeGreaterThanOrEqual(-1e-3);
         }
