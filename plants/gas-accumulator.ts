@@ -9,8 +9,10 @@ import { oilStoreParameters } from './shared-parameters.js';
 
 /**
  * A gas-charged accumulator: oil, gas and separator in one store, as energy storage or as pressurised reservoir. The
- * oil is compressed by the pressure it sees; gas temperature is a state; gas heats the wall with a time constant, the
- * wall gives heat to its surroundings. When nearly empty the poppet closes and the oil pressure leaves the gas pressure;
+ * oil is compressed by the pressure it sees; gas temperature is a state; gas heats the wall with a time constant, a
+ * conductance or by natural convection, the wall gives heat to its surroundings. In the short form, for comparison only,
+ * the gas has the temperature at which heat and work would balance, with a short lag; it has none where the gas is
+ * charged faster than its heat can leave (see `shortFormMargin`). When nearly empty the poppet closes and the oil pressure leaves the gas pressure;
  * at its end the separator meets a stop.
  */
 export const gasAccumulator = store({
@@ -19,7 +21,7 @@ export const gasAccumulator = store({
   source:
     'Otis and Pourmovahed 1985 (thermal time constant); Benedict, Webb and Rubin; Cooper and Goldfrank 1967; Span et al. 2000',
   valid:
-    'gas 250 K to 450 K, up to 40 MPa (reference-nitrogen 230 K to 500 K, up to 60 MPa); one thermal time constant: right for temperature and energy, weak for stiffness above 0.1 Hz (Hartig, Depp, Rexer and Pelz 2020)',
+    'gas 250 K to 450 K, up to 40 MPa (reference-nitrogen 230 K to 500 K, up to 60 MPa); natural convection within a third or so; one thermal time constant: right for temperature and energy, weak for stiffness above 0.1 Hz (Hartig, Depp, Rexer and Pelz 2020)',
   ports: { oil: 'oil', wall: 'heat' },
   fluid: true,
   states: {
@@ -47,6 +49,11 @@ export const gasAccumulator = store({
     oilTemperature: { unit: 'K', about: 'oil temperature' },
     gasHeatFlow: { unit: 'W', about: 'heat from the wall into the gas' },
     inflow: { unit: 'm3/s', about: 'oil that flows in, at its own pressure' },
+    heatTime: { unit: 's', about: 'thermal time constant of the gas at present', least: 0 },
+    shortFormMargin: {
+      unit: '1',
+      about: 'what is left until the short form has no solution: 1 at rest, 0 there',
+    },
   },
   parameters: {
     volume: { unit: 'm3', about: 'gas volume when empty of oil', least: 1e-5, most: 2, usual: [1e-4, 0.2] },
@@ -87,6 +94,50 @@ export const gasAccumulator = store({
       least: 1e6,
       most: 1e9,
       difference: true,
+    },
+    heatTransfer: {
+      unit: '1',
+      about: 'what carries heat between gas and wall',
+      default: 0,
+      choices: ['time constant', 'conductance', 'natural convection'],
+    },
+    gasTemperatureForm: {
+      unit: '1',
+      about: 'gas temperature as a state, or by the short form for comparison',
+      default: 0,
+      choices: ['state', 'short form'],
+    },
+    gasConductance: {
+      unit: 'W/K',
+      about: 'conductance between gas and wall, where that is chosen',
+      default: 100,
+      least: 0.01,
+      most: 1e6,
+      usual: [1, 500],
+    },
+    gasSurface: {
+      unit: 'm2',
+      about: 'surface between gas and wall, for natural convection',
+      default: 0.5,
+      least: 1e-3,
+      most: 50,
+      usual: [0.02, 3],
+    },
+    convectionFactor: {
+      unit: '1',
+      about: 'factor C of Nu = C Ra^(1/3)',
+      default: 0.13,
+      least: 0.01,
+      most: 1,
+      usual: [0.1, 0.15],
+    },
+    shortFormLag: { unit: 's', about: 'lag of the short form', default: 0.02, least: 0.002, most: 1 },
+    leastShortFormMargin: {
+      unit: '1',
+      about: 'margin of the short form below which it is not to be believed; 0: not watched',
+      default: 0.3,
+      least: 0,
+      most: 1,
     },
     timeConstant: {
       unit: 's',
@@ -143,6 +194,14 @@ export const gasAccumulator = store({
   },
   laws: { ...oilLaws, ...gasLaws, smoothStep },
   limits: [
+    {
+      reading: 'shortFormMargin',
+      side: 'below',
+      level: 'not following',
+      parameter: 'leastShortFormMargin',
+      meaning:
+        'oil flows in nearly as fast as the short form of the gas can follow: temperature and pressure are wrong',
+    },
     {
       reading: 'gasPressure',
       side: 'below',
@@ -291,15 +350,34 @@ export const gasAccumulator = store({
     const gasLoss = -command.gasLeak;
     const byGasMass = law.gasPressureByDensity(density, state.gasTemperature, real) * (1 / gasVolume);
     const shrinking = share * (byMass * oil.massFlow + byGas * byGasMass * gasLoss);
-    const heatFlow = heatCapacity * (state.wallTemperature - state.gasTemperature) * (1 / parameter.timeConstant);
+    const conductance =
+      parameter.heatTransfer === 0
+        ? heatCapacity * (1 / parameter.timeConstant)
+        : parameter.heatTransfer === 1
+          ? parameter.gasConductance
+          : parameter.gasSurface *
+            law.naturalConvection(
+              density,
+              state.gasTemperature,
+              state.wallTemperature,
+              law.gasHeatCapacity(density, state.gasTemperature, real),
+              byTemperature,
+              law.gasPressureByDensity(density, state.gasTemperature, real),
+              parameter.convectionFactor,
+            );
     const work = state.gasTemperature * byTemperature;
     const oilHeat = parameter.oilConductance * (oil.temperature - state.wallTemperature);
     derivative.mass = oil.massFlow;
     derivative.heat = oil.heatFlow - oilHeat;
     derivative.gasMass = gasLoss;
-    derivative.gasTemperature =
-      (heatFlow + work * (shrinking + gasLoss / density)) /
-      (heatCapacity + parameter.foamHeatCapacity - work * share * byGas * byTemperature);
+    const resisting = heatCapacity + parameter.foamHeatCapacity - work * share * byGas * byTemperature;
+    const working = work * (shrinking + gasLoss / density);
+    // the short form: heat and work balance, (hA)(Tw - T) = T pT dV/dt
+    const margin = 1 - (byTemperature * share * byMass * oil.massFlow) / conductance;
+    const settled = (state.wallTemperature / Math.max(margin, 0.05) - state.gasTemperature) / parameter.shortFormLag;
+    const driven = conductance * (state.wallTemperature - state.gasTemperature);
+    const heatFlow = parameter.gasTemperatureForm === 0 ? driven : settled * resisting - working;
+    derivative.gasTemperature = parameter.gasTemperatureForm === 0 ? (driven + working) / resisting : settled;
     derivative.wallTemperature =
       (oilHeat -
         heatFlow +
@@ -307,6 +385,8 @@ export const gasAccumulator = store({
         parameter.ambientConductance * (parameter.ambientTemperature - state.wallTemperature)) *
       (1 / parameter.wallHeatCapacity);
     reading.gasHeatFlow = heatFlow;
+    reading.heatTime = heatCapacity / conductance;
+    reading.shortFormMargin = parameter.gasTemperatureForm === 0 ? 1 : margin;
     reading.inflow = (oil.massFlow * oilVolume) / mass;
   },
   energy({ parameter, state, oil, reading, law }) {

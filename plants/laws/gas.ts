@@ -378,6 +378,42 @@ export function gasEnergy(density: number, temperature: number, real: number): n
       : 2.5 * NITROGEN_GAS_CONSTANT * temperature;
 }
 
+/** Viscosity of nitrogen, Pa s: Sutherland's law and a rise with density through the values at 300 K, 10 and 30 MPa. */
+export function nitrogenViscosity(density: number, temperature: number): number {
+  const t = temperature * (1 / 273);
+  return 1.663e-5 * t * Math.sqrt(t) * (380 / (temperature + 107)) + density * (1.188e-8 + 6.27e-11 * density);
+}
+
+/** Thermal conductivity of nitrogen, W/(m K): dilute with T^(3/4), the rise with density as for the viscosity. */
+export function nitrogenConductivity(density: number, temperature: number): number {
+  const t = temperature * (1 / 300);
+  return 0.0259 * Math.sqrt(t * Math.sqrt(t)) + density * (3.686e-5 + 8.67e-8 * density);
+}
+
+/**
+ * Heat transfer coefficient of turbulent natural convection, W/(m2 K): Nu = C Ra^(1/3) (McAdams, Heat Transmission, 1954),
+ * from which the length drops out. The temperature difference is rounded over 0.01 K. `byTemperature` and `byDensity`
+ * are the slopes of the pressure, which give the expansion and c_p.
+ */
+export function naturalConvection(
+  density: number,
+  temperature: number,
+  wallTemperature: number,
+  heatCapacity: number,
+  byTemperature: number,
+  byDensity: number,
+  factor: number,
+): number {
+  const expansion = byTemperature / (density * byDensity);
+  const atPressure = heatCapacity + (temperature * byTemperature * expansion) / density;
+  const viscosity = nitrogenViscosity(density, temperature);
+  const conductivity = nitrogenConductivity(density, temperature);
+  const difference = wallTemperature - temperature;
+  const size = Math.sqrt(difference * difference + 1e-4);
+  const rayleigh = (9.80665 * expansion * size * (density * density) * atPressure) / (viscosity * conductivity);
+  return factor * conductivity * Math.exp((1 / 3) * Math.log(rayleigh));
+}
+
 /**
  * Share of the gas pressure that the oil of an accumulator sees, 0 to 1, by its oil volume: 1 with the poppet open, and
  * 1 - (1 - V/Vc)^3 below the closing volume Vc, where the poppet carries the rest. The gas then gives way only by this

@@ -74,7 +74,12 @@ function tieTogether(random: () => number, kind: ElementKind, parameters: Record
   for (const [name, declared] of Object.entries(kind.parameters))
     if (declared.unit === 'm2' && declared.most !== undefined && parameters[name]! > 3e-4)
       parameters[name] = between(random, 3e-5, 3e-4);
-  if (kind.kind === 'pump-motor' && parameters.losses === 1) parameters.caseHeatShare = 0;
+  if (kind.kind === 'pump-motor') {
+    // forms without laminar leakage have none that could carry the heat of the case
+    if ([1, 4, 5].includes(parameters.losses!)) parameters.caseHeatShare = 0;
+    for (const name of Object.keys(parameters))
+      if (name.startsWith('map')) parameters[name] = between(random, -0.01, 0.05);
+  }
 }
 
 function startOf(

@@ -1,6 +1,7 @@
 import type { BenchSpec } from '../../configs/bench-spec.js';
 import { table } from '../commands/table.js';
 import type { AccuracySheet, SignalError } from './accuracy.js';
+import { shortFormFaults } from './short-form.js';
 
 /** Past these a bench is refused for live runs. Shares of the relief setting or of the largest value. */
 export const accuracyLimits = { pressure: 0.005, speed: 0.005, overshoot: 0.01, energy: 1e-3, oil: 1e-10 };
@@ -21,7 +22,7 @@ export function verdictOf(
   limits: typeof accuracyLimits,
   spec: BenchSpec,
 ): { fit: boolean; why: string } {
-  const faults: string[] = [];
+  const faults = shortFormFaults(spec);
   const share = (value: number) => `${(100 * value).toPrecision(3)} %`;
   const worst = [sheet.worstPressure, sheet.worstSpeed].filter((one): one is SignalError => one !== undefined);
   for (const one of worst) {
