@@ -149,6 +149,17 @@ export function pipeMassFlow(
   return 0.25 * CIRCLE_RATIO * diameter * viscosity * reynoldsOfFriction(friction);
 }
 
+/**
+ * Share of a moving column that is oil: 1 while the store that it draws from has three tenths of the reference density
+ * or more, to 0 as that runs empty. Densities relative to the reference, `speed` in m/s from a to b.
+ */
+export function columnShare(densityA: number, densityB: number, speed: number): number {
+  const a = smoothStep(densityA * (1 / 0.3));
+  const b = smoothStep(densityB * (1 / 0.3));
+  const x = speed * 20;
+  return b + 0.5 * (a - b) * (1 + x / Math.sqrt(1 + x * x));
+}
+
 /** Critical pressure ratio of a perfect gas, (2/(k+1))^(k/(k-1)). */
 export function criticalRatio(heatRatio: number): number {
   return Math.exp((heatRatio / (heatRatio - 1)) * Math.log(2 / (heatRatio + 1)));

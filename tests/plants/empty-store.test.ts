@@ -67,3 +67,38 @@ describe.each(['accumulator', 'volume'] as const)('an empty %s', (kind) => {
     expect(bench.plant.solver.replaced).toBeLessThan(10);
   });
 });
+
+describe('an inertial pipe', () => {
+  it('whose column draws a volume empty passes no oil that is not there, fills it again, and keeps the ledger', () => {
+    const bench = new Bench([
+      element('store', library.oilVolume, {
+        fluid,
+        parameters: { volume: 1 * litre },
+        start: { pressure: 20 * bar, temperature: 320 },
+      }),
+      element('tank', library.tank, {
+        fluid,
+        parameters: { volume: 60 * litre, ambientPressure: 101325, ...ambient },
+        start: { level: 0.5, temperature: 313 },
+      }),
+      element('column', library.inertialPipe, {
+        fluid,
+        parameters: { length: 8, diameter: 0.05 },
+        start: { massFlow: 12 },
+        to: { from: 'store.oil', to: 'tank.oil' },
+      }),
+    ]);
+    let least = 1e9;
+    let mass = 0;
+    bench.run(3, () => {
+      least = Math.min(least, bench.get('store.mass'));
+      mass = bench.get('store.mass');
+    });
+    expect(least).toBeGreaterThan(0);
+    expect(least).toBeLessThan(0.03);
+    expect(mass).toBeGreaterThan(0.5);
+    expect(bench.get('store.temperature')).toBeGreaterThan(312);
+    expect(bench.get('store.temperature')).toBeLessThan(321);
+    expect(Math.abs(bench.energyResidual())).toBeLessThan(2);
+  });
+});
