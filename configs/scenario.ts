@@ -185,12 +185,12 @@ class ScenarioReader {
     });
   }
 
-  /** `grade:` goes to the one command of that name, or to the one that `of:` names. */
+  /** `grade:` goes to the one command of that name, or to the one that `of:` names: points, or a section with a file. */
   private grade(): ScriptTrace | undefined {
     const entry = this.top.entry('grade');
     if (!entry) return undefined;
-    if (entry.value.kind === 'mapping') {
-      const section = this.top.sectionIn(entry.value, 'grade')!;
+    const section = entry.value.kind === 'mapping' ? this.top.sectionIn(entry.value, 'grade')! : undefined;
+    if (section?.has('of')) {
       const target = this.command(section, 'of', section.placed('of', { required: true }, 'truck.grade'));
       return target && this.trace(section, target, ['of']);
     }
@@ -207,6 +207,7 @@ class ScenarioReader {
       );
     }
     const target = candidates[0]!;
+    if (section) return this.trace(section, target);
     return this.pointsOrSection(this.top, 'grade', entry.value, target);
   }
 

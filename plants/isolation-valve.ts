@@ -29,6 +29,7 @@ export const isolationValve = branch({
       fault: true,
     },
     leakArea: { unit: 'm2', about: 'further leak area', rest: 0, least: 0, most: 1e-3, fault: true },
+    speedFactor: { unit: '1', about: 'share of its speed that is left', rest: 1, least: 0.01, most: 1, fault: true },
   },
   readings: {
     massFlow: { unit: 'kg/s', about: 'mass flow' },
@@ -61,7 +62,7 @@ export const isolationValve = branch({
   flows({ parameter, from, to, state, memory, command, derivative, reading, law }) {
     const target = command.stuckAt < 0 ? memory.accepted : command.stuckAt;
     const rate = (target - state.position) / parameter.lag;
-    derivative.position = Math.max(-1 / parameter.closes, Math.min(1 / parameter.opens, rate));
+    derivative.position = command.speedFactor * Math.max(-1 / parameter.closes, Math.min(1 / parameter.opens, rate));
     const opening = law.minimumJerk(state.position);
     const massFlow = law.orificeMassFlow(
       from.pressure,

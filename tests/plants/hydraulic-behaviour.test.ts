@@ -190,6 +190,24 @@ describe('isolation-valve', () => {
     expect(deviation(slam, 'a.pressure', 0.3, drive) / bar).toBeLessThan(3.3);
   });
 
+  it('takes ten times as long with a tenth of its speed', () => {
+    const until = (share: number) => {
+      const bench = new Bench(circuit());
+      bench.set('valve.speedFactor', share);
+      bench.set('valve.open', 1);
+      let ticks = 0;
+      while (bench.get('valve.position') < 0.9 && ticks < 2000) {
+        bench.run(0.001);
+        ticks += 1;
+      }
+      return ticks;
+    };
+    // the dead time is the pilot stage's and stays
+    const [usual, slow] = [until(1), until(0.1)];
+    expect((slow - 10) / (usual - 10)).toBeGreaterThan(9);
+    expect((slow - 10) / (usual - 10)).toBeLessThan(11);
+  });
+
   it('sticks where a fault holds it', () => {
     const bench = new Bench(circuit());
     bench.set('valve.open', 1);

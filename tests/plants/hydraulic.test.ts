@@ -40,6 +40,7 @@ const circuits: Record<string, OilCircuit> = {
     drive: (bench, time) => {
       bench.set('valve.open', Math.floor(time / 0.1) % 2 === 0 ? 1 : 0.05);
       bench.set('valve.power', time > 0.55 && time < 0.65 ? 0 : 1);
+      bench.set('valve.speedFactor', time > 0.8 ? 0.3 : 1);
       bench.set('accumulator.gasLeak', time > 0.7 ? 0.05 : 0);
       bench.set('line.leakArea', time > 0.4 ? 3e-6 : 0);
     },

@@ -22,33 +22,20 @@ describe('the suite of the harbour truck', () => {
     for (const script of scripts) expect([script.name, script.requirements.length > 0]).toEqual([script.name, true]);
   });
 
-  it('touches every kind of fault of sensors, messages, hydraulics and driveline', () => {
+  it('has a scenario for every fault of the catalogue, on one of its owners at least', () => {
+    // the name of a fault with what it sits in: all sensors share theirs
+    const kindOf = ({ path, group, of }: ReturnType<typeof faultCatalogue>[number]) =>
+      `${group === 'component' ? of : group}.${path.slice(path.indexOf('.') + 1)}`;
     const all = faultCatalogue(spec);
-    const kindOf = (path: string) => {
-      const entry = all.find((one) => one.path === path)!;
-      return `${entry.of}.${path.split('.')[1]}`;
-    };
+    const byPath = new Map(all.map((one) => [one.path, kindOf(one)]));
     const used = new Set(
       scripts.flatMap((script) =>
-        script.steps.filter((step) => step.action === 'fault').map((step) => kindOf(step.target)),
+        script.steps.flatMap((step) => (step.action === 'fault' ? byPath.get(step.target)! : [])),
       ),
     );
-    for (const name of ['drift', 'stuck', 'shortToGround', 'shortToSupply', 'addedNoise', 'spikes'])
-      expect(used).toContain(`pressure-sensor.${name}`);
-    for (const name of ['faultSilent', 'faultFrozen', 'faultDelay', 'faultLost', 'faultCorrupted'])
-      expect([...used].some((one) => one.startsWith('message') && one.endsWith(name))).toBe(true);
-    for (const name of [
-      'isolation-valve.stuckAt',
-      'relief-valve.settingFactor',
-      'relief-valve.stuckAt',
-      'gas-accumulator.gasLeak',
-      'pump-motor.wear',
-      'pump-motor.stuck',
-      'orifice.blocked',
-      'clutch.capacityFactor',
-      'combustion-engine.derate',
-    ])
-      expect(used).toContain(name);
+    const kinds = [...new Set(all.map(kindOf))];
+    expect(kinds.length).toBeGreaterThan(30);
+    expect(kinds.filter((kind) => !used.has(kind))).toEqual([]);
   });
 
   it('documents each run that the demo controller fails', () => {
