@@ -1,6 +1,6 @@
 import type { BlockLayout } from '../runtime/block.js';
 import { uniform } from '../runtime/noise.js';
-import { flexibleLengths, frameSizes, payloadAt } from './can-frame.js';
+import { flexibleLengths, frameSizes, payloadAt, writeFrameHead } from './can-frame.js';
 
 /**
  * What a bus may do to frames on one way, as commands `link.wayName` (way: `received` or `sent`). Shares are of all
@@ -14,6 +14,11 @@ export const busFaults = {
   Shorten: { unit: '1', about: 'share of the frames that are one length shorter', most: 1 },
   Delay: { unit: 's', about: 'delay of all frames', most: 1 },
   Silence: { unit: '1', about: '1: no frame goes', most: 1 },
+  Flood: {
+    unit: '1/s',
+    about: 'frames of the highest priority with payloads by chance, beside all others',
+    most: 20000,
+  },
 } as const;
 
 /** What was done, as signals `link.wayName`. */
@@ -23,6 +28,16 @@ export const busFaultCounts = {
   Reordered: 'frames that went after the next one on purpose',
   Corrupted: 'frames with a bit turned on purpose',
   Shortened: 'frames shortened on purpose',
+  Flooded: 'frames put in on purpose',
+} as const;
+
+/** What a link does as a whole, as commands `link.name`. */
+export const linkFaults = {
+  reportBusOff: {
+    unit: '1',
+    about: '1: as if the CAN controller were bus-off: it says so, nothing comes and nothing leaves; 0: restarted',
+    most: 1,
+  },
 } as const;
 
 type Fault = keyof typeof busFaults;
@@ -33,6 +48,8 @@ const depth = 16;
 const words = frameSizes.flexible / 4;
 /** Tick of release, size, then the frame as 32-bit words. */
 const place = 2 + words;
+/** Frames that a flood puts in within one tick at most. */
+const mostInTick = 64;
 /** A frame that is to go after the next one goes after this many ticks when no next one comes. */
 const longestHold = 200;
 
@@ -47,6 +64,8 @@ export class BusAdversary {
   readonly counts: Readonly<Record<Count, number>>;
   private readonly drawn: number;
   private readonly chance: number;
+  /** Frames of a flood that are owed. */
+  private readonly owed: number;
   private readonly waiting: number;
   private readonly queue: number;
   /** Release tick (or -Infinity: none is held), size and words of the frame that goes after the next. */
@@ -68,6 +87,7 @@ export class BusAdversary {
     this.counts = slots(Object.keys(busFaultCounts) as Count[]);
     this.drawn = layout.add(path('Draws'));
     this.chance = layout.add(path('Chance'));
+    this.owed = layout.add(path('Owed'));
     this.waiting = layout.add(path('Waiting'));
     this.queue = layout.addMany(path('Queue'), depth * place);
     this.held = layout.addMany(path('Held'), place);
@@ -141,6 +161,39 @@ export class BusAdversary {
     return size;
   }
 
+  /** A tick begins: what a flood puts in during it is owed from now on. */
+  beginFlood(block: Float64Array): void {
+    const rate = block[this.faults.Flood];
+    if (!(rate > 0)) {
+      block[this.owed] = 0;
+      return;
+    }
+    block[this.owed] = Math.min(mostInTick, block[this.owed] + rate * this.step);
+  }
+
+  /** The next frame of a flood, into `frame`; its size, or -1. */
+  nextFlood(block: Float64Array, frame: Uint8Array): number {
+    // Whole frames only; a rounding of the rate by the step is none.
+    if (block[this.owed] < 1 - 1e-9) return -1;
+    block[this.owed] -= 1;
+    writeFrameHead(frame, 0, 8, 0);
+    this.draw(block);
+    const low = block[this.chance] * 0x100000000;
+    this.draw(block);
+    const high = block[this.chance] * 0x100000000;
+    for (let i = 0; i < 4; i += 1) {
+      frame[payloadAt + i] = low >>> (8 * i);
+      frame[payloadAt + 4 + i] = high >>> (8 * i);
+    }
+    block[this.counts.Flooded] += 1;
+    return frameSizes.classic;
+  }
+
+  /** A frame is lost for another reason than a fault of this way. */
+  lose(block: Float64Array): void {
+    block[this.counts.Dropped] += 1;
+  }
+
   clearCounts(block: Float64Array): void {
     const { counts } = this;
     block[counts.Dropped] = 0;
@@ -148,6 +201,7 @@ export class BusAdversary {
     block[counts.Reordered] = 0;
     block[counts.Corrupted] = 0;
     block[counts.Shortened] = 0;
+    block[counts.Flooded] = 0;
   }
 
   private append(block: Float64Array, release: number, frame: Uint8Array, size: number): void {
@@ -195,7 +249,7 @@ export class BusAdversary {
 }
 
 /** The longest payload length that a frame can have below this one. */
-function nextShorter(length: number): number {
+export function nextShorter(length: number): number {
   let shorter = 0;
   for (let i = 0; i < flexibleLengths.length; i += 1) if (flexibleLengths[i] < length) shorter = flexibleLengths[i];
   return shorter;

@@ -16,6 +16,14 @@ const CONTROLLER_WARNING = 0x04 | 0x08;
 const CONTROLLER_PASSIVE = 0x10 | 0x20;
 const CONTROLLER_ACTIVE = 0x40;
 
+/** As if the CAN controller had gone bus-off, or had been restarted after it. */
+export function reportBusOff(block: Float64Array, slots: Slots, off: boolean): void {
+  block[slots.errorFrames] += 1;
+  block[slots.controllerState] = off ? controllerStates.busOff : controllerStates.active;
+  if (off) block[slots.busOffs] += 1;
+  else block[slots.restarts] += 1;
+}
+
 /** What an error frame says of the CAN controller, into the slots of a link. */
 export function useErrorFrame(block: Float64Array, slots: Slots, word: number, frame: Uint8Array): void {
   block[slots.errorFrames] += 1;

@@ -1,7 +1,7 @@
 import type { BlockLayout } from '../runtime/block.js';
 import { type Journal, noJournal } from '../runtime/journal.js';
-import { BusAdversary } from './bus-adversary.js';
-import { useErrorFrame, useNote } from './can-bus-state.js';
+import { BusAdversary, type linkFaults } from './bus-adversary.js';
+import { reportBusOff, useErrorFrame, useNote } from './can-bus-state.js';
 import { frameSizes, identifierFlags, identifierMasks, identifierWord, payloadAt, payloadRoom } from './can-frame.js';
 import { noteSize } from './can-notes.js';
 import { CanReceiver } from './can-receiver.js';
@@ -40,6 +40,9 @@ export class CanLink implements Link {
   readonly adversaries: readonly BusAdversary[];
   private readonly fromBus: BusAdversary;
   private readonly toBus: BusAdversary;
+  /** Slots of the commands of the link as a whole, by the names of `linkFaults`. */
+  readonly faults: Readonly<Record<keyof typeof linkFaults, number>>;
+  private readonly isOff: number;
   private readonly table: IdentifierTable;
   /** What it does by SAE J1939; undefined where nothing on it is of that. */
   private readonly station: Station | undefined;
@@ -81,6 +84,8 @@ export class CanLink implements Link {
       ? new Station(spec.name, spec.units ?? [], this.senders, this.receivers, layout, this.slots, step, firstTick)
       : undefined;
     this.awake = layout.add(`${spec.name}.awake`);
+    this.faults = { reportBusOff: layout.add(`${spec.name}.reportBusOff`) };
+    this.isOff = layout.add(`${spec.name}.isOff`);
   }
 
   /** Takes what waits. Each frame goes to the journal before anything is believed of it. */
@@ -88,8 +93,21 @@ export class CanLink implements Link {
     const { incoming } = this;
     for (let i = 0; i < this.receivers.length; i += 1) this.receivers[i].grow(block);
     this.station?.grow(block, tick);
+    const off = block[this.faults.reportBusOff] >= 0.5;
+    if (off !== (block[this.isOff] === 1)) {
+      block[this.isOff] = off ? 1 : 0;
+      reportBusOff(block, this.slots, off);
+    }
     let taken = 0;
     let frames = 0;
+    this.fromBus.beginFlood(block);
+    while (taken < this.framesPerTick) {
+      const size = this.fromBus.nextFlood(block, incoming);
+      if (size < 0) break;
+      taken += 1;
+      frames += 1;
+      if (!off) this.judge(block, tick, size);
+    }
     while (taken < this.framesPerTick) {
       const whole = this.transport.poll(incoming);
       if (whole < 0) break;
@@ -102,10 +120,11 @@ export class CanLink implements Link {
         payloadRoom(whole) > 0 &&
         incoming[4] <= payloadRoom(whole) &&
         (identifierWord(incoming) & identifierFlags.error) === 0 &&
-        this.fromBus.acts(block)
-      )
-        this.fromBus.push(block, tick, incoming, whole);
-      else this.judge(block, tick, whole);
+        (off || this.fromBus.acts(block))
+      ) {
+        if (off) this.fromBus.lose(block);
+        else this.fromBus.push(block, tick, incoming, whole);
+      } else this.judge(block, tick, whole);
       for (
         let size = this.fromBus.next(block, tick, incoming);
         size >= 0;
@@ -150,6 +169,9 @@ export class CanLink implements Link {
         if (size < 0) break;
         this.leave(block, tick, size);
       }
+    toBus.beginFlood(block);
+    for (let size = toBus.nextFlood(block, outgoing); size >= 0; size = toBus.nextFlood(block, outgoing))
+      if (block[this.isOff] === 0) this.pass(size);
     if (!toBus.acts(block)) return;
     for (let next = toBus.next(block, tick, outgoing); next >= 0; next = toBus.next(block, tick, outgoing))
       this.pass(next);
@@ -158,6 +180,10 @@ export class CanLink implements Link {
   /** A frame of the bench on its way to the bus. */
   private leave(block: Float64Array, tick: number, size: number): void {
     const { outgoing, toBus } = this;
+    if (block[this.isOff] === 1) {
+      toBus.lose(block);
+      return;
+    }
     if (!toBus.acts(block)) {
       this.pass(size);
       return;

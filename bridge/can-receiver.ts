@@ -1,5 +1,6 @@
 import type { BlockLayout } from '../runtime/block.js';
 import type { PayloadCodec } from './can-codec.js';
+import { checkByteOf } from './protection/make.js';
 import { type Protector, wrongCheck } from './protection/protector.js';
 import { ReceivedMessage, receptions } from './received-message.js';
 import { fieldVerdicts } from './udp-codec.js';
@@ -15,6 +16,7 @@ export class CanReceiver extends ReceivedMessage {
   readonly wrongChecksum: number;
   readonly wrongLength: number;
   private readonly last: number;
+  private readonly checkByte: number;
   private readonly stray: number;
 
   constructor(
@@ -28,6 +30,7 @@ export class CanReceiver extends ReceivedMessage {
     this.wrongLength = add('wrongLength');
     this.last = add('lastCounter', -1);
     this.stray = add('strayCounter', -1);
+    this.checkByte = checkByteOf(this.message);
     this.slots['wrongChecksum'] = this.wrongChecksum;
     this.slots['wrongLength'] = this.wrongLength;
   }
@@ -35,6 +38,17 @@ export class CanReceiver extends ReceivedMessage {
   /** A frame with this message's identifier and the right form; `payload` is `length` bytes long. One of `receptions`. */
   accept(memory: Float64Array, payload: Uint8Array, length: number): number {
     if (!this.codec.fits(length)) return this.refuseLength(memory);
+    const { faults } = this;
+    if (faults !== undefined) {
+      if (faults.strikes(memory, faults.slots.faultLength)) return this.refuseLength(memory);
+      if (this.checkByte >= 0 && faults.strikes(memory, faults.slots.faultChecksum)) payload[this.checkByte] ^= 1;
+      else if (
+        this.protector !== undefined &&
+        memory[this.last] >= 0 &&
+        faults.strikes(memory, faults.slots.faultCounter)
+      )
+        this.protector.protect(payload, length, memory[this.last] | 0);
+    }
     if (this.protector !== undefined) {
       const counter = this.protector.check(payload, length);
       if (counter === wrongCheck) {

@@ -1,12 +1,15 @@
 import type { BlockLayout } from '../runtime/block.js';
+import { nextShorter } from './bus-adversary.js';
 import type { PayloadCodec } from './can-codec.js';
 import { frameFlags, frameSizes, identifierFlags, payloadAt, writeFrameHead } from './can-frame.js';
+import { checkByteOf } from './protection/make.js';
 import type { Protector } from './protection/protector.js';
 import { SentMessage } from './sent-message.js';
 
 /** A message that goes by CAN, with its counter and checksum where it has them. */
 export class CanSender extends SentMessage {
   private readonly counter: number;
+  private readonly checkByte: number;
   private readonly word: number;
   private readonly flags: number;
   private readonly size: number;
@@ -20,6 +23,7 @@ export class CanSender extends SentMessage {
     // Of a message that the bench receives `outOfRange` says what the bench does, not what its sender does.
     super(codec, layout, firstTick, codec.message.direction === 'sent' && codec.message.outOfRange === 'refuse');
     const { message } = this;
+    this.checkByte = checkByteOf(message);
     this.counter = layout.add(`${message.name}.counter`);
     this.word = message.identifier | (message.extended ? identifierFlags.extended : 0);
     const flexible = message.flexibleDataRate === true;
@@ -40,7 +44,10 @@ export class CanSender extends SentMessage {
     payload: Uint8Array,
   ): number {
     const length = this.fill(memory, tick, values, from, payload);
-    return length < 0 ? length : this.frame(frame, length);
+    if (length < 0) return length;
+    const { faults } = this;
+    const short = faults?.strikes(memory, faults.slots.faultLength) === true;
+    return this.frame(frame, short ? nextShorter(length) : length);
   }
 
   /** Writes the payload alone, as `write` does; its length, -1 or -2. */
@@ -48,10 +55,15 @@ export class CanSender extends SentMessage {
     const prepared = this.prepare(memory, tick, values, from);
     if (prepared < 0) return prepared;
     const length = this.codec.write(payload);
-    if (this.protector !== undefined) {
-      const counter = memory[this.counter];
-      this.protector.protect(payload, length, counter);
-      memory[this.counter] = counter + 1 >= this.protector.modulo ? 0 : counter + 1;
+    const { protector, faults } = this;
+    if (protector !== undefined) {
+      const { modulo } = protector;
+      let counter = memory[this.counter] | 0;
+      if (faults?.strikes(memory, faults.slots.faultCounter))
+        counter = counter === 0 ? Math.max(0, modulo - 1) : counter - 1;
+      protector.protect(payload, length, counter);
+      memory[this.counter] = counter + 1 >= modulo ? 0 : counter + 1;
+      if (this.checkByte >= 0 && faults?.strikes(memory, faults.slots.faultChecksum)) payload[this.checkByte] ^= 1;
     }
     return length;
   }

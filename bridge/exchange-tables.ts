@@ -4,7 +4,7 @@ import type { SignalTable } from '../runtime/signals.js';
 import { CountReports } from './count-reports.js';
 import type { ExchangeOptions } from './exchange.js';
 import type { Link } from './link.js';
-import { type Counts, countsOfLink, countsOfMessage } from './link-counts.js';
+import { type Counts, countsOfLink, countsOfMessage, shownAs } from './link-counts.js';
 import type { MapSignal } from './message-map.js';
 import { SlotCopies } from './slot-copies.js';
 
@@ -57,8 +57,10 @@ export class ExchangeTables {
       copies.add(slot, signals.add({ path, unit, about, group }), scale, offset);
     };
     const showCounts = (copies: SlotCopies, owner: string, counts: Counts, slots: Link['slots']): void => {
-      for (const [name, { about, ticks, event }] of Object.entries(counts)) {
-        show(copies, slots[name], `${owner}.${name}`, ticks ? 's' : '1', about, 'link', ticks ? step : 1);
+      for (const [name, info] of Object.entries(counts)) {
+        const { about, event } = info;
+        const { unit, scale } = shownAs(info, step);
+        show(copies, slots[name], `${owner}.${name}`, unit, about, 'link', scale);
         if (event) this.reports.watch(slots[name], event, owner);
       }
     };

@@ -2,14 +2,14 @@ import type { BlockLayout } from '../runtime/block.js';
 import { BuildError, type Problem } from '../runtime/contract.js';
 import { type EventCatalogue, type Journal, noJournal } from '../runtime/journal.js';
 import type { SignalTable } from '../runtime/signals.js';
-import { busFaults } from './bus-adversary.js';
+import { busFaults, linkFaults } from './bus-adversary.js';
 import { CanLink } from './can-link.js';
 import { controllerFaults } from './controller-faults.js';
 import { requireSoundMap } from './examine-map.js';
 import { ExchangeTables } from './exchange-tables.js';
 import type { Link } from './link.js';
 import { linkEvents } from './link-events.js';
-import { messageFaults } from './message-faults.js';
+import { frameFaults, messageFaults } from './message-faults.js';
 import type { MessageMap } from './message-map.js';
 import { StandIns, standIn } from './stand-ins.js';
 import type { Transport } from './transport.js';
@@ -123,7 +123,10 @@ export class Exchange {
     });
     this.links = links;
     const all = links.flatMap((link) => [...link.receivers, ...link.senders]);
-    for (const [stream, one] of all.entries()) one.addFaults(layout, step, options.seed ?? 0, 1000 + stream);
+    for (const [stream, one] of all.entries()) {
+      const { kind } = map.links.find((link) => link.name === one.message.link)!;
+      one.addFaults(layout, step, options.seed ?? 0, 1000 + stream, kind !== 'udp');
+    }
     for (const { receivers } of links)
       for (const receiver of receivers) receiver.faults!.join({ silent: this.deaf, frozen: this.controller.frozen });
     this.faults = [
@@ -138,14 +141,28 @@ export class Exchange {
           }))
         : []),
       ...all.flatMap(({ message, faults }) =>
-        Object.entries(messageFaults).map(([name, { unit, about, least, most }]) => ({
-          path: `${message.name}.${name}`,
-          unit,
-          about,
-          least,
-          most,
-          slot: faults!.slots[name as keyof typeof messageFaults],
-        })),
+        Object.entries({ ...messageFaults, ...(faults!.frames ? frameFaults : {}) }).map(
+          ([name, { unit, about, least, most }]) => ({
+            path: `${message.name}.${name}`,
+            unit,
+            about,
+            least,
+            most,
+            slot: faults!.slots[name as keyof typeof messageFaults | keyof typeof frameFaults],
+          }),
+        ),
+      ),
+      ...links.flatMap(({ spec, faults }) =>
+        faults === undefined
+          ? []
+          : Object.entries(linkFaults).map(([name, { unit, about, most }]) => ({
+              path: `${spec.name}.${name}`,
+              unit,
+              about,
+              least: 0,
+              most,
+              slot: faults[name as keyof typeof linkFaults],
+            })),
       ),
       ...links.flatMap((link) =>
         (link.adversaries ?? []).flatMap(({ way, faults }) =>

@@ -8,6 +8,8 @@ export interface CountInfo {
   readonly about: string;
   /** Shown in seconds, kept in ticks. */
   readonly ticks?: boolean;
+  /** Shown per second, kept per tick. */
+  readonly perTick?: boolean;
   /** Reported when it rises. */
   readonly event?: EventKind;
 }
@@ -69,6 +71,7 @@ export const receivedCounts = {
   outOfRange: { about: 'messages with a value outside its range', event: linkEvents.outOfRange },
   timeOuts: { about: 'time-outs' },
   period: { about: 'time between the two newest messages that were used', ticks: true },
+  rate: { about: 'messages used per second, counted over the last whole 1000 ticks', perTick: true },
   jitter: { about: 'largest difference of that time from the cycle', ticks: true },
   lost: { about: 'messages missing in the sequence', event: linkEvents.lost },
   duplicate: { about: 'messages that came twice', event: linkEvents.duplicate },
@@ -95,6 +98,12 @@ const adversaryCounts: Counts = Object.fromEntries(
     Object.entries(busFaultCounts).map(([name, about]) => [`${way}${name}`, { about: `${about}, ${way}` }]),
   ),
 );
+
+/** Unit in which a count is shown, and what turns it into that; `step` is the length of a tick, s. */
+export function shownAs({ ticks, perTick }: CountInfo, step: number): { unit: string; scale: number } {
+  if (ticks) return { unit: 's', scale: step };
+  return perTick ? { unit: '1/s', scale: 1 / step } : { unit: '1', scale: 1 };
+}
 
 export function countsOfLink(kind: LinkSpec['kind']): Counts {
   return kind === 'udp' ? udpLinkCounts : { ...canLinkCounts, ...j1939Counts, ...adversaryCounts };

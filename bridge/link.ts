@@ -1,5 +1,5 @@
 import type { Journal } from '../runtime/journal.js';
-import type { BusAdversary } from './bus-adversary.js';
+import type { BusAdversary, linkFaults } from './bus-adversary.js';
 import type { LinkSpec } from './message-map.js';
 import type { ReceivedMessage } from './received-message.js';
 import type { SentMessage } from './sent-message.js';
@@ -21,6 +21,8 @@ export interface Link {
   readonly slots: Readonly<Record<string, number>>;
   /** What the bus does to frames, where the link can have it done: way in, way out. */
   readonly adversaries?: readonly BusAdversary[];
+  /** Commands of the link as a whole, where it has any: slots by the names of `linkFaults`. */
+  readonly faults?: Readonly<Record<keyof typeof linkFaults, number>>;
   /** Slot: 1 once a message was used. */
   readonly awake: number;
   /** Sends that the transport did not accept. It depends on the machine and not on inputs: not part of the block. */

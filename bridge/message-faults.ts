@@ -23,6 +23,13 @@ export const messageFaults = {
   faultDelay: { unit: 's', about: 'delay, at most 16 cycles', rest: 0, least: 0, most: 10 },
 } as const;
 
+/** Further faults of a message that goes by CAN: what a control unit in trouble does to its frame. */
+export const frameFaults = {
+  faultCounter: { unit: '1', about: 'share of the messages whose counter stands still', rest: 0, least: 0, most: 1 },
+  faultChecksum: { unit: '1', about: 'share of the messages with a wrong checksum', rest: 0, least: 0, most: 1 },
+  faultLength: { unit: '1', about: 'share of the messages that are too short', rest: 0, least: 0, most: 1 },
+} as const;
+
 /** What becomes of a message. */
 export const fates = { passes: 0, lost: 1, frozen: 2 } as const;
 
@@ -35,7 +42,7 @@ const deepest = 16;
  */
 export class MessageFaults {
   /** Slots by the names of `messageFaults`. */
-  readonly slots: Readonly<Record<keyof typeof messageFaults, number>>;
+  readonly slots: Readonly<Record<keyof typeof messageFaults | keyof typeof frameFaults, number>>;
   private readonly drawn: number;
   private readonly chance: number;
   /** Messages that wait, then for each of them ticks to go and its values. */
@@ -54,14 +61,20 @@ export class MessageFaults {
     private readonly seed: number,
     /** A number of its own among all messages. */
     private readonly stream: number,
+    /** Whether it goes by CAN. */
+    readonly frames = false,
   ) {
     const add = (name: string) => layout.add(`${message.name}.${name}`);
+    const addFrame = (name: string) => (frames ? add(name) : -1);
     this.slots = {
       faultSilent: add('faultSilent'),
       faultFrozen: add('faultFrozen'),
       faultLost: add('faultLost'),
       faultCorrupted: add('faultCorrupted'),
       faultDelay: add('faultDelay'),
+      faultCounter: addFrame('faultCounter'),
+      faultChecksum: addFrame('faultChecksum'),
+      faultLength: addFrame('faultLength'),
     };
     this.drawn = add('faultDraws');
     this.chance = add('faultChance');
@@ -97,6 +110,13 @@ export class MessageFaults {
       }
     }
     return fates.passes;
+  }
+
+  /** Whether one of `frameFaults` strikes this message. */
+  strikes(memory: Float64Array, fault: number): boolean {
+    if (fault < 0 || !(memory[fault] > 0)) return false;
+    this.draw(memory);
+    return memory[this.chance] < memory[fault];
   }
 
   /** Whether messages are held back; what waits when the delay ends is dropped. */

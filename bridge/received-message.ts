@@ -5,6 +5,9 @@ import type { MessageSpec } from './message-map.js';
 /** What became of a datagram or frame of a message. */
 export const receptions = { used: 0, saturated: 1, refused: 2, duplicate: 3, late: 4 } as const;
 
+/** Ticks over which the rate of a message is counted. */
+const rateWindow = 1000;
+
 /**
  * One message on its way in, whatever carries it: age, time-out and the values that count. What it remembers stands in
  * a block that each call is given. The values that count are the substitutes until the first good message has come and
@@ -31,6 +34,10 @@ export class ReceivedMessage {
   readonly outOfRange: number;
   readonly timeOuts: number;
   readonly restarts: number;
+  /** Slots: messages used per tick over the last whole window; used in this window, and how many ticks of it are over. */
+  readonly rate: number;
+  private readonly heard: number;
+  private readonly heardFor: number;
   /** Slot: 1 once a message has come and no time-out has put the substitutes in place since. */
   protected readonly alive: number;
   /** On the bench's side only. */
@@ -57,6 +64,9 @@ export class ReceivedMessage {
     this.outOfRange = add('outOfRange');
     this.timeOuts = add('timeOuts');
     this.restarts = add('restarts');
+    this.rate = add('rate');
+    this.heard = add('heard');
+    this.heardFor = add('heardFor');
     this.alive = add('alive');
     this.count = message.signals.length;
     this.fresh = new Float64Array(this.count);
@@ -73,6 +83,7 @@ export class ReceivedMessage {
       duplicate: this.duplicate,
       late: this.late,
       restarts: this.restarts,
+      rate: this.rate,
     };
   }
 
@@ -84,11 +95,17 @@ export class ReceivedMessage {
   /** One tick has passed: before what came in a tick is looked at. */
   grow(memory: Float64Array): void {
     memory[this.age] += 1;
+    memory[this.heardFor] += 1;
+    if (memory[this.heardFor] === rateWindow) {
+      memory[this.rate] = memory[this.heard] / rateWindow;
+      memory[this.heard] = 0;
+      memory[this.heardFor] = 0;
+    }
     if (this.faults?.delays(memory) && this.faults.due(memory, this.fresh)) this.use(memory, false);
   }
 
-  addFaults(layout: BlockLayout, step: number, seed: number, stream: number): void {
-    this.faults = new MessageFaults(this.message, layout, step, seed, stream);
+  addFaults(layout: BlockLayout, step: number, seed: number, stream: number, frames: boolean): void {
+    this.faults = new MessageFaults(this.message, layout, step, seed, stream, frames);
   }
 
   /**
@@ -152,6 +169,7 @@ export class ReceivedMessage {
       memory[this.gap] = age;
     }
     memory[this.received] += 1;
+    memory[this.heard] += 1;
     memory[this.age] = 0;
     memory[this.alive] = 1;
   }

@@ -93,8 +93,8 @@ export class SentMessage {
     }
   }
 
-  addFaults(layout: BlockLayout, step: number, seed: number, stream: number): void {
-    this.faults = new MessageFaults(this.message, layout, step, seed, stream);
+  addFaults(layout: BlockLayout, step: number, seed: number, stream: number, frames: boolean): void {
+    this.faults = new MessageFaults(this.message, layout, step, seed, stream, frames);
   }
 
   /** Another run begins: what was sent before is no measure for what is due now. The sequence goes on. */

@@ -1,7 +1,7 @@
-import { busFaults } from '../bridge/bus-adversary.js';
+import { busFaults, linkFaults } from '../bridge/bus-adversary.js';
 import { controllerFaults } from '../bridge/controller-faults.js';
-import { countsOfLink, countsOfMessage } from '../bridge/link-counts.js';
-import { messageFaults } from '../bridge/message-faults.js';
+import { countsOfLink, countsOfMessage, shownAs } from '../bridge/link-counts.js';
+import { frameFaults, messageFaults } from '../bridge/message-faults.js';
 import type { MessageMap } from '../bridge/message-map.js';
 import { standIn, unitsStoodFor } from '../bridge/stand-ins.js';
 import type { PortKinds, SignalGroup, SignalInfo } from '../runtime/contract.js';
@@ -74,6 +74,8 @@ export class SignalList {
       for (const [count, { about }] of Object.entries(countsOfLink(link.kind)))
         this.add({ path: `${link.name}.${count}`, unit: '1', about, group: 'link' });
       if (link.kind !== 'udp') {
+        for (const [name, { unit, about, most }] of Object.entries(linkFaults))
+          this.add({ path: `${link.name}.${name}`, unit, about, group: 'command', least: 0, most, withoutFault: 0 });
         for (const way of ['received', 'sent'])
           for (const [name, { unit, about, most }] of Object.entries(busFaults))
             this.add({
@@ -97,11 +99,12 @@ export class SignalList {
     const { name, ...info } = standIn;
     for (const unit of unitsStoodFor(map.messages)) this.add({ ...info, path: `${unit}.${name}`, group: 'command' });
     for (const message of map.messages) {
-      for (const [name, { unit, about, least, most, rest }] of Object.entries(messageFaults))
-        this.add({ path: `${message.name}.${name}`, unit, about, group: 'command', least, most, withoutFault: rest });
       const kind = map.links.find((link) => link.name === message.link)?.kind ?? 'udp';
-      for (const [count, { about, ticks }] of Object.entries(countsOfMessage(kind, message.direction)))
-        this.add({ path: `${message.name}.${count}`, unit: ticks ? 's' : '1', about, group: 'link' });
+      const faults = { ...messageFaults, ...(kind === 'udp' ? {} : frameFaults) };
+      for (const [name, { unit, about, least, most, rest }] of Object.entries(faults))
+        this.add({ path: `${message.name}.${name}`, unit, about, group: 'command', least, most, withoutFault: rest });
+      for (const [count, info] of Object.entries(countsOfMessage(kind, message.direction)))
+        this.add({ path: `${message.name}.${count}`, unit: shownAs(info, 1).unit, about: info.about, group: 'link' });
     }
   }
 

@@ -67,6 +67,12 @@ export function makeProtector(message: MessageSpec): Protector | undefined {
   return protector;
 }
 
+/** The byte of the payload in which the checksum begins, or -1 without one. */
+export function checkByteOf(message: MessageSpec): number {
+  const field = readProtection(message).fields.find(({ name }) => name === 'checksum');
+  return field === undefined ? -1 : field.startBit >> 3;
+}
+
 /** Reads the settings of a message's protection. */
 export function readProtection(message: MessageSpec): ReadProtection {
   const { protection } = message;

@@ -161,6 +161,78 @@ describe('a bus that misbehaves', () => {
     expect(hash(again)).toBe(hash(a));
   });
 
+  it('floods: so many frames a second, exact to the tick, of the highest priority, and counted', () => {
+    const { out, count } = run(rigWith({ sentFlood: 2500, receivedFlood: 250 }), 400);
+    const flood = out.filter(({ bytes }) => bytes[0] === 0 && bytes[1] === 0);
+    expect(flood).toHaveLength(1000);
+    expect(count('sentFlooded')).toBe(1000);
+    expect(out).toHaveLength(1400);
+    expect(new Set(flood.map(({ bytes }) => Buffer.from(bytes).toString('hex'))).size).toBe(1000);
+    // two frames and a half in each tick
+    for (let tick = 0; tick < 400; tick += 2)
+      expect(flood.filter((one) => one.tick === tick || one.tick === tick + 1)).toHaveLength(5);
+    expect(count('receivedFlooded')).toBe(100);
+    const rig = rigWith({ receivedFlood: 20_000 });
+    run(rig, 100);
+    expect(rig.value('bus.unknown')).toBe(2000);
+    expect(rig.value('request.received')).toBe(100);
+  });
+
+  it('reports bus-off: nothing comes and nothing leaves until it is restarted, and every frame is accounted for', () => {
+    const rig = rigWith({ reportBusOff: 1 });
+    const off = run(rig, 100);
+    expect(off.out).toEqual([]);
+    expect(['busOffs', 'controllerState', 'sentDropped', 'receivedDropped', 'restarts'].map(off.count)).toEqual([
+      1, 3, 100, 100, 0,
+    ]);
+    expect([rig.value('request.received'), rig.value('request.timeOuts')]).toEqual([0, 1]);
+    expect(rig.seen.map(({ name }) => name)).toContain('bus-off');
+    rig.block[rig.exchange.faults.find(({ path }) => path === 'bus.reportBusOff')!.slot] = 0;
+    const on = run(rig, 100);
+    expect(on.out).toHaveLength(100);
+    expect([on.count('restarts'), on.count('controllerState'), rig.value('request.received')]).toEqual([1, 0, 100]);
+  });
+
+  it('lets single messages go wrong: counters that stand still, wrong checksums, too short', () => {
+    const fault = (path: string, value: number): CanRig => {
+      const rig = new CanRig(map(), { seed: 3 });
+      rig.block[rig.exchange.faults.find((one) => one.path === path)!.slot] = value;
+      return rig;
+    };
+    const counter = fault('request.faultCounter', 0.25);
+    const { request } = run(counter, 2000);
+    expect(request('duplicate')).toBeGreaterThan(400);
+    expect(request('duplicate') + request('received')).toBe(2000);
+    const checksum = run(fault('request.faultChecksum', 0.25), 2000);
+    expect(checksum.request('wrongChecksum')).toBeGreaterThan(400);
+    expect(checksum.request('wrongChecksum') + checksum.request('received')).toBe(2000);
+    const length = run(fault('request.faultLength', 0.25), 2000);
+    expect(length.request('wrongLength')).toBeGreaterThan(400);
+    expect(length.request('wrongLength') + length.request('received')).toBe(2000);
+    // on the way out: as its receiver counts them
+    const clean = run(rigWith({}), 1000).out;
+    const counters = run(fault('status.faultCounter', 0.25), 1000).out.map(({ bytes }) => bytes[9]! & 15);
+    const repeats = counters.filter((value, i) => i > 0 && value === counters[i - 1]).length;
+    expect(repeats).toBeGreaterThan(200);
+    expect(clean.map(({ bytes }) => bytes[9]! & 15).filter((value, i, all) => value === all[i - 1])).toEqual([]);
+    const spoilt = run(fault('status.faultChecksum', 0.25), 1000).out.filter(
+      ({ bytes }, i) => bytes[8] !== clean[i]!.bytes[8],
+    );
+    expect(spoilt.length).toBeGreaterThan(200);
+    const short = run(fault('status.faultLength', 0.25), 1000).out.filter(({ bytes }) => bytes[4] === 7);
+    expect(short.length).toBeGreaterThan(200);
+  });
+
+  it('shows the rate of a message, counted over whole seconds', () => {
+    const rig = rigWith({});
+    for (let tick = 0; tick < 2400; tick += 1) {
+      if (tick % 10 === 0 && tick < 1500) rig.say('request', [tick], (tick / 10) % 15);
+      rig.take(tick);
+      if (tick === 1100) expect(rig.value('request.rate')).toBe(100);
+      if (tick === 2100) expect(rig.value('request.rate')).toBe(50);
+    }
+  });
+
   it('holds at most sixteen frames: more are dropped and counted', () => {
     const rig = rigWith({ receivedDelay: 0.1 });
     for (let i = 0; i < 40; i += 1) rig.say('request', [i], i % 15);

@@ -86,7 +86,7 @@ describe.runIf(canRun)('on the CAN stack of Linux', { timeout: 240_000 }, () => 
       expect([name, counts[name]! > 100]).toEqual([name, true]);
   });
 
-  it('misbehaves as it counts: candump sees every frame that was dropped, doubled, swapped, damaged or shortened', () => {
+  it('misbehaves as it counts: candump sees every frame that was dropped, doubled, swapped, damaged, shortened or put in', () => {
     const { ticks, found } = runInside('adversary.ts') as {
       ticks: number;
       found: { faults: Record<string, number>; frames: string[]; own: Record<string, number> }[];
@@ -102,6 +102,7 @@ describe.runIf(canRun)('on the CAN stack of Linux', { timeout: 240_000 }, () => 
         Corrupted: payloads.filter(
           (payload, i) => Number.parseInt(payload, 16) !== 0 && (values[i] !== i || !/^.{4}0*$/.test(payload)),
         ).length,
+        Flooded: frames.filter((frame) => frame.startsWith('000#')).length,
         Shortened: payloads.filter((payload) => payload.length === 14).length,
       };
       const [fault] = Object.keys(faults);
@@ -115,6 +116,8 @@ describe.runIf(canRun)('on the CAN stack of Linux', { timeout: 240_000 }, () => 
               sentCorrupt: 'Corrupted',
               sentShorten: 'Shortened',
               sentSilence: 'Dropped',
+              sentFlood: 'Flooded',
+              reportBusOff: 'Dropped',
             }[fault];
       if (name === undefined) expect(payloads.length).toBe(ticks);
       else {

@@ -26,6 +26,7 @@ interface RunFlags {
   readonly pace: 'live' | 'fast';
   readonly controller?: string;
   readonly without?: readonly string[];
+  readonly disturb?: readonly string[];
   readonly record?: string | false;
   readonly seed?: number;
   readonly json?: boolean;
@@ -48,6 +49,10 @@ export function runCommand(): Command {
     .option('--pace <live|fast>', 'live: real time; fast: no waiting', pace, 'live')
     .option('--controller <CMD>', 'a command to start; or module, process, external (it is there already), none')
     .option('--without <UNIT...>', 'control units that are really there: the bench does not stand in for them')
+    .option(
+      '--disturb <PATH=VALUE@TIME...>',
+      "a command disturbed from a time on, or to another: 'bus.sentDrop=0.3@5s..8s'",
+    )
     .option('--record <FILE>', 'recording; default: a new file under recordings/')
     .option('--no-record', 'record nothing')
     .option('--seed <N>', "seed of all noise; default: the bench's", whole)

@@ -9,6 +9,7 @@ import { readScenario } from '../../configs/scenario.js';
 import type { SourceText } from '../../configs/source.js';
 import { BuildError } from '../../runtime/contract.js';
 import { emptyScript, type ScriptSpec } from '../../runtime/script.js';
+import { disturbancesOf } from './disturbances.js';
 
 /** What the command line asks for. */
 export interface RunWish {
@@ -23,6 +24,8 @@ export interface RunWish {
   readonly controller?: string | undefined;
   /** Control units that the bench does not stand in for. */
   readonly without?: readonly string[] | undefined;
+  /** Disturbances by hand: `bus.sentDrop=0.3@5s..8s`. */
+  readonly disturb?: readonly string[] | undefined;
   readonly record?: string | undefined;
   readonly seed?: number | undefined;
   readonly profile?: boolean | undefined;
@@ -68,7 +71,12 @@ export function planRun(wish: RunWish): RunPlan {
       ? undefined
       : readScenario(scenarioFile, spec, diskFiles, { case: wish.case, set: wish.set });
   const without = checkedUnits(wish.without ?? [], spec);
-  const script = { ...(scenario?.script ?? emptyScript), ...(without.length === 0 ? {} : { without }) };
+  const planned = scenario?.script ?? emptyScript;
+  const script = {
+    ...planned,
+    traces: [...planned.traces, ...disturbancesOf(wish.disturb ?? [], spec)],
+    ...(without.length === 0 ? {} : { without }),
+  };
   const ticks = wish.for === undefined ? script.ticks : ticksOf(wish.for, spec.step);
   if (ticks === 0)
     throw new BuildError([

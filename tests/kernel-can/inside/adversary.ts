@@ -13,6 +13,8 @@ for (const faults of [
   { sentCorrupt: 0.3 },
   { sentShorten: 0.3 },
   { sentSilence: 1 },
+  { sentFlood: 500 },
+  { reportBusOff: 1 },
 ]) {
   const map = canMap([
     frameMessage('status', 0x100, 'sent', [field('v', 'x.v', { startBit: 0, length: 16 }, { least: 0, most: 65535 })]),
@@ -33,7 +35,7 @@ for (const faults of [
   socket.close();
   const slots = rig.exchange.links[0]!.slots;
   const own = Object.fromEntries(
-    ['Dropped', 'Duplicated', 'Reordered', 'Corrupted', 'Shortened'].map((name) => [
+    ['Dropped', 'Duplicated', 'Reordered', 'Corrupted', 'Shortened', 'Flooded'].map((name) => [
       name,
       rig.block[slots[`sent${name}`]!],
     ]),
