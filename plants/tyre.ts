@@ -36,7 +36,6 @@ export const tyre = branch({
     force: { unit: 'N', about: 'force on the body, forward positive' },
     load: { unit: 'N', about: 'vertical load' },
     lock: { unit: '1', about: 'slip of a braked wheel above walking pace, without its sign', least: 0 },
-    spin: { unit: 'm/s', about: 'speed of the tread over that of the road when it drives', least: 0 },
     slipVelocity: { unit: 'm/s', about: 'wheel speed times radius less velocity' },
   },
   parameters: {
@@ -117,7 +116,6 @@ export const tyre = branch({
     reading.force = force;
     reading.load = load;
     reading.lock = Math.abs(road.velocity) > 1.5 ? Math.max(0, -slip * Math.sign(road.velocity)) : 0;
-    reading.spin = Math.max(0, slipVelocity * Math.sign(road.velocity + 1e-3));
     reading.slipVelocity = slipVelocity;
   },
   energy({ state }) {

@@ -2,7 +2,9 @@ import type { Assembly } from '../../configs/assemble.js';
 import type { Circuit } from '../../runtime/circuit/build.js';
 import { Plant } from '../../runtime/plant.js';
 import type { Barrier } from '../loop/controller-module.js';
-import { type Mode, modesAt } from './modes.js';
+import { HardEvents } from './hard-events.js';
+import type { Mode } from './modes.js';
+import { Stability, type StabilityMargin } from './stability.js';
 
 /** How far the bench's step is from the converged solution, for one signal. */
 export interface SignalError {
@@ -37,6 +39,7 @@ export interface AccuracySheet {
   readonly energyResidual: number;
   readonly oilResidual: number;
   readonly modes: readonly Mode[];
+  readonly stability: StabilityMargin;
   /** Cost of one step of the plant, µs, median. */
   readonly stepCost: number;
 }
@@ -81,8 +84,7 @@ interface Compared {
 
 /**
  * Runs the plant with frozen commands at the bench's step and at two much finer ones side by side, and compares every
- * pressure and speed at every tick. Then the hard events: each isolation valve slammed shut at its largest flow and
- * opened again. `finer`: the references' substeps over the bench's; the last is the truth, the one before it judges it.
+ * pressure and speed at every tick. Then the hard events that the circuit can have (hard-events.ts). `finer`: the references' substeps over the bench's; the last is the truth, the one before it judges it.
  */
 export function measureAccuracy(
   assembly: Assembly,
@@ -98,24 +100,14 @@ export function measureAccuracy(
   const [own, truth] = [plants[0]!, plants[plants.length - 1]!];
   const compared = choose(circuit, scaleOf);
   const count = circuit.commands.length;
-  const valves = circuit.spec.elements
-    .filter((element) => element.kind.kind === 'isolation-valve')
-    .map((element) => ({
-      name: element.name,
-      flow: circuit.readings.findIndex((reading) => reading.path === `${element.name}.massFlow`),
-      command: circuit.commands.findIndex((command) => command.element === element.name && !command.fault),
-      worst: 0,
-      tick: -1,
-      state: undefined as Float64Array | undefined,
-      memory: undefined as Float64Array | undefined,
-    }))
-    .filter((valve) => valve.flow >= 0 && valve.command >= 0);
+  const hard = new HardEvents(circuit);
+  const stability = new Stability(circuit, spec.step / spec.substeps);
   const speeds = compared.filter((one) => one.kind === 'speed');
   const largest = new Float64Array(compared.length);
   const costs: number[] = [];
   const start = own.observed.slice();
   const modesFound: Mode[] = [];
-  const share = 1 / (drive.ticks + 600 * valves.length || 1);
+  const share = 1 / (1.1 * drive.ticks || 1);
   let done = 0;
   let aborted = false;
   for (let tick = 0; tick < drive.ticks && !aborted; tick += 1) {
@@ -125,13 +117,8 @@ export function measureAccuracy(
     costs.push(performance.now() - began);
     for (const plant of plants) if (plant !== own) plant.step();
     compare(compared, plants, tick * spec.step, 'the duty', largest);
-    for (const valve of valves) {
-      const size = Math.abs(own.observed[valve.flow]!);
-      if (size > valve.worst && own.u[valve.command]! > 0.5)
-        Object.assign(valve, { worst: size, tick, state: truth.y.slice(), memory: truth.m.slice() });
-    }
-    if (tick % Math.max(1, Math.floor(drive.ticks / 8)) === 0)
-      modesFound.push(...modesAt(circuit, truth.y, truth.u, truth.m).slice(0, 12));
+    hard.look(own.observed, own.u, truth);
+    if (tick % Math.max(1, Math.floor(drive.ticks / 8)) === 0) modesFound.push(...stability.look(truth).slice(0, 12));
     done += 1;
     if (tick % 500 === 0) aborted = !onProgress(done * share);
   }
@@ -140,25 +127,26 @@ export function measureAccuracy(
   const refined = (solver.refined / Math.max(1, drive.ticks * spec.substeps)) * 1e6;
   const replaced = (solver.replaced / Math.max(1, drive.ticks * spec.substeps)) * 1e6;
   const events = ['the duty'];
-  for (const valve of valves) {
-    if (!valve.state || aborted) continue;
-    const event = `${valve.name} slammed at ${valve.worst.toPrecision(3)} kg/s`;
-    events.push(event);
-    const commands = drive.commands.subarray(valve.tick * count, (valve.tick + 1) * count);
+  const found = hard.found();
+  for (const event of found) {
+    if (aborted) break;
+    events.push(event.name);
     for (const plant of plants) {
       plant.reset();
-      plant.y.set(valve.state);
-      plant.m.set(valve.memory!);
+      plant.y.set(event.state);
+      plant.m.set(event.memory);
+      plant.observe();
     }
-    for (let k = 0; k < 600; k += 1) {
+    for (let k = 0; k < event.ticks; k += 1) {
       for (const plant of plants) {
-        plant.u.set(commands);
-        plant.u[valve.command] = k < 300 ? 0 : 1;
+        plant.u.set(event.commands);
+        event.change(plant.u, k);
         plant.step();
       }
-      compare(compared, plants, k * spec.step, event, largest);
-      done += 1;
+      compare(compared, plants, k * spec.step, event.name, largest);
+      if (k % 50 === 0) stability.look(plants[plants.length - 1]!);
     }
+    done += (0.1 * drive.ticks) / found.length;
     aborted = !onProgress(done * share);
   }
   costs.sort((a, b) => a - b);
@@ -199,6 +187,7 @@ export function measureAccuracy(
     energyResidual: energy.energy,
     oilResidual: energy.oil,
     modes: distinct(modesFound),
+    stability: stability.margin(),
     stepCost: 1000 * (costs[Math.floor(costs.length / 2)] ?? 0),
   };
 }

@@ -81,6 +81,7 @@ export function sheetText(sheet: AccuracySheet, spec: BenchSpec): string {
     'Fastest modes met on the way',
     table([['swings', 'decays in', 'damping', '2 pi f h', 'carried by'], ...modes], [0, 1, 2, 3]),
     '',
+    `stability: fastest growth of the circuit itself ${sheet.stability.growth.toPrecision(3)} 1/s${sheet.stability.growing.length > 0 ? ` (${sheet.stability.growing.join(', ')})` : ''}; what decays within a step, the method takes down to ${percent(sheet.stability.amplification)} or less in each substep`,
     `refined ${sheet.refined.toFixed(1)} and replaced ${sheet.replaced.toFixed(1)} of a million substeps; energy residual ${sheet.energyResidual.toExponential(1)}, oil residual ${sheet.oilResidual.toExponential(1)}; plant step ${sheet.stepCost.toFixed(1)} us here and now`,
   ].join('\n');
 }
