@@ -78,7 +78,9 @@ static inline size_t oilspring_finish_control(struct oilspring_control *datagram
     return sizeof *datagram;
 }
 
-/* The nearest whole number; halves go up. */
+`;
+
+export const numbersText = `/* The nearest whole number; halves go up. */
 static inline int64_t oilspring_round(double value)
 {
     double raised = value + 0.5;

@@ -1,11 +1,13 @@
-import { checksumText, checkText } from './c-header-text.js';
+import { type CNames, canMessageText } from './c-can.js';
+import { canHelpers } from './c-can-text.js';
+import { checksumText, checkText, numbersText } from './c-header-text.js';
 import { requireSoundMap } from './examine-map.js';
 import type { MapSignal, MessageMap, MessageSpec } from './message-map.js';
 import { goesByChange, goesByCycle } from './schedule.js';
 import { controlLength, header, kinds, magic, mapChecksum, type UdpLayout, udpLayout, version } from './udp-layout.js';
 
 /**
- * The C header of the UDP messages of a map, for the controller's side: C11 or C++11, freestanding but for string.h.
+ * The C header of the messages of a map, for the controller's side: C11 or C++11, freestanding but for string.h.
  * Structs that are the datagrams byte for byte, static asserts on their layout, numbers of the messages, values of
  * enumerations, checksum, and per message `finish` (header, padding, checksum) and per signal `get` and `set` in its
  * unit. Names of messages and signals are used as they are.
@@ -14,16 +16,26 @@ export function cHeader(map: MessageMap, bench: string): string {
   requireSoundMap(map);
   const udp = new Set(map.links.filter((link) => link.kind === 'udp').map((link) => link.name));
   const layouts = map.messages.filter((message) => udp.has(message.link)).map(udpLayout);
-  const parts = [opening(map, bench), messageNumbers(layouts), helpers(layouts), ...layouts.map(messageText), closing];
+  const frames = map.messages.filter((message) => !udp.has(message.link));
+  const names: CNames = { member, number, comment, timing, enumeration: enumerationText };
+  const parts = [
+    opening(map, bench, layouts.length > 0),
+    ...(layouts.length > 0 ? [messageNumbers(layouts), helpers(layouts)] : []),
+    numbersText,
+    ...layouts.map(messageText),
+    ...(frames.length > 0 ? [canHelpers] : []),
+    ...frames.map((message) => canMessageText(message, message.link, names)),
+    closing,
+  ];
   return parts.join('\n');
 }
 
-function opening(map: MessageMap, bench: string): string {
+function opening(map: MessageMap, bench: string, datagrams: boolean): string {
   return `/*
- * Messages of the bench "${comment(bench)}", as datagrams of oilspring's UDP link.
+ * Messages of the bench "${comment(bench)}": datagrams of oilspring's UDP links, payloads of CAN frames.
  * Made by \`oilspring wire\` from the message map; make it again when the map changes, do not edit it.
  *
- * "to bench" and "from bench" are said from the controller's side. All numbers are little-endian.
+ * "to bench" and "from bench" are said from the controller's side. All numbers in datagrams are little-endian.
  * oilspring is not a safety device: a bench has its own relief valves, interlocks and emergency stop.
  */
 #ifndef OILSPRING_MESSAGES_H
@@ -33,11 +45,15 @@ function opening(map: MessageMap, bench: string): string {
 #include <stdint.h>
 #include <string.h>
 
-#if defined(__BYTE_ORDER__) && __BYTE_ORDER__ != __ORDER_LITTLE_ENDIAN__
+${
+  datagrams
+    ? `#if defined(__BYTE_ORDER__) && __BYTE_ORDER__ != __ORDER_LITTLE_ENDIAN__
 #error "these structs are the datagrams themselves: they need a little-endian processor"
 #endif
 
-#ifdef __cplusplus
+`
+    : ''
+}#ifdef __cplusplus
 #define OILSPRING_ASSERT(condition, text) static_assert(condition, text)
 #else
 #define OILSPRING_ASSERT(condition, text) _Static_assert(condition, text)
@@ -45,7 +61,11 @@ function opening(map: MessageMap, bench: string): string {
 
 OILSPRING_ASSERT(sizeof(float) == 4 && sizeof(double) == 8, "IEEE 754 numbers of 4 and 8 bytes");
 
-#define OILSPRING_MAGIC ${hex(magic)} /* "OILS" */
+${datagrams ? datagramConstants(map) : ''}`;
+}
+
+function datagramConstants(map: MessageMap): string {
+  return `#define OILSPRING_MAGIC ${hex(magic)} /* "OILS" */
 #define OILSPRING_VERSION ${version}u
 /* Checksum of the message map: both ends must have been built from the same. */
 #define OILSPRING_MAP_CHECKSUM ${hex(mapChecksum(map))}
@@ -204,18 +224,7 @@ function signalText(message: MessageSpec, signal: MapSignal): string {
         : `(${type})(${wire})`
       : `(${type})oilspring_round(${wire})`;
   const value = plain ? `(double)${field}` : `(double)${field} * ${number(signal.scale)} + ${number(signal.offset)}`;
-  const names = Object.entries(signal.names ?? {}).filter(
-    ([, one]) => Number.isSafeInteger(one) && Math.abs(one) < 2 ** 31,
-  );
-  const enumeration =
-    names.length === 0
-      ? ''
-      : `
-enum oilspring_${name} {
-${names.map(([text, one]) => `    OILSPRING_${name}_${text.replace(/[^A-Za-z0-9_]/g, '_')} = ${one}`).join(',\n')}
-};
-`;
-  return `${enumeration}
+  return `${enumerationText(message, signal)}
 /* In ${comment(signal.unit)}. */
 static inline double oilspring_get_${name}(const ${struct} *message)
 {
@@ -230,6 +239,20 @@ static inline int oilspring_set_${name}(${struct} *message, double value)
         ${field} = ${stored};
     return verdict;
 }
+`;
+}
+
+/** Names of the values of a signal, where it has any. */
+function enumerationText(message: MessageSpec, signal: MapSignal): string {
+  const name = `${message.name}_${signal.name}`;
+  const names = Object.entries(signal.names ?? {}).filter(
+    ([, one]) => Number.isSafeInteger(one) && Math.abs(one) < 2 ** 31,
+  );
+  if (names.length === 0) return '';
+  return `
+enum oilspring_${name} {
+${names.map(([text, one]) => `    OILSPRING_${name}_${text.replace(/[^A-Za-z0-9_]/g, '_')} = ${one}`).join(',\n')}
+};
 `;
 }
 

@@ -33,7 +33,7 @@ export class CanCodec implements PayloadCodec {
   private readonly refuses: boolean;
   private readonly fields: readonly Field[];
   /** Indices of the fields, selectors ahead of what they select. */
-  private readonly order: Int32Array;
+  readonly order: Int32Array;
   /** Per field of the last `quantise` or `read`: raw number, and 1 when the selectors say that it is there. */
   private readonly raw: Float64Array;
   private readonly present: Uint8Array;
@@ -169,7 +169,7 @@ export class CanCodec implements PayloadCodec {
 }
 
 /** One signal as tables. Piece i: `mask[i]` of byte `byte[i]` shifted down by `shift[i]` is bit `place[i]` and up of raw. */
-class Field {
+export class Field {
   readonly bits: number;
   readonly signed: boolean;
   readonly float: boolean;
@@ -188,8 +188,8 @@ class Field {
   /** Index of the signal that selects this one, or -1, and the raw values of it that do: least, most, least, most, ... */
   readonly selector: number;
   readonly selectorValues: Float64Array;
-  private readonly rawLeast: number;
-  private readonly rawMost: number;
+  readonly rawLeast: number;
+  readonly rawMost: number;
 
   constructor(signal: MapSignal, message: MessageSpec) {
     const layout = signal.can;
@@ -232,7 +232,7 @@ class Field {
   }
 }
 
-interface Piece {
+export interface Piece {
   byte: number;
   shift: number;
   count: number;
@@ -241,7 +241,7 @@ interface Piece {
 }
 
 /** A signal as pieces of bytes, none across the middle of a 64-bit number. */
-function piecesOf(layout: CanLayout): Piece[] {
+export function piecesOf(layout: CanLayout): Piece[] {
   const pieces: Piece[] = [];
   const { startBit, length, byteOrder } = layout;
   // From the least significant bit up: little endian upwards, big endian down the bytes.

@@ -6,12 +6,12 @@ export class Crc {
   private readonly table: Int32Array;
 
   constructor(
-    /** 8, 16 or 32 bits. */
+    /** 8, 16 or 32 bits; the polynomial with its bits reversed where it is reflected. */
     readonly width: 8 | 16 | 32,
-    polynomial: number,
+    readonly polynomial: number,
     readonly initial: number,
     readonly final: number,
-    private readonly reflected = false,
+    readonly reflected = false,
   ) {
     this.table = reflected ? rightTable(polynomial) : leftTable(width, polynomial);
   }

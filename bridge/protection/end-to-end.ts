@@ -15,11 +15,12 @@ export type DataIdMode = 'both' | 'alternating' | 'low' | 'nibble';
  */
 export class NibbleProfile implements Protector {
   readonly modulo = 15;
+  readonly crc = j1850Zero;
 
   constructor(
-    private readonly dataId: number,
-    private readonly mode: DataIdMode,
-    private readonly offset: number,
+    readonly dataId: number,
+    readonly mode: DataIdMode,
+    readonly offset: number,
     readonly mostStep: number,
   ) {}
 
@@ -58,8 +59,8 @@ export class ListProfile implements Protector {
   readonly modulo = 16;
 
   constructor(
-    private readonly dataIds: Uint8Array,
-    private readonly offset: number,
+    readonly dataIds: Uint8Array,
+    readonly offset: number,
     readonly mostStep: number,
   ) {}
 
@@ -88,8 +89,8 @@ export class LongProfile implements Protector {
   readonly modulo = 0x10000;
 
   constructor(
-    private readonly dataId: number,
-    private readonly offset: number,
+    readonly dataId: number,
+    readonly offset: number,
     readonly mostStep: number,
   ) {}
 
@@ -127,8 +128,8 @@ export class ShortProfile implements Protector {
   readonly modulo = 0x100;
 
   constructor(
-    private readonly dataId: number,
-    private readonly offset: number,
+    readonly dataId: number,
+    readonly offset: number,
     readonly mostStep: number,
   ) {}
 

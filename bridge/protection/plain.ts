@@ -28,8 +28,8 @@ export class PlainProtector implements Protector {
   readonly mostStep: number;
 
   constructor(
-    private readonly counter: CounterPlace | undefined,
-    private readonly check_: CrcPlace | undefined,
+    readonly counter: CounterPlace | undefined,
+    readonly place: CrcPlace | undefined,
   ) {
     this.modulo = counter?.modulo ?? 0;
     this.mostStep = counter?.mostStep ?? 0;
@@ -37,7 +37,7 @@ export class PlainProtector implements Protector {
 
   protect(payload: Uint8Array, _length: number, counter: number): void {
     if (this.counter !== undefined) writeBits(payload, this.counter.start, this.counter.length, counter);
-    const place = this.check_;
+    const place = this.place;
     if (place === undefined) return;
     const value = compute(place, payload);
     const bytes = place.crc.width >> 3;
@@ -46,7 +46,7 @@ export class PlainProtector implements Protector {
   }
 
   check(payload: Uint8Array, _length: number): number {
-    const place = this.check_;
+    const place = this.place;
     if (place !== undefined) {
       const value = compute(place, payload);
       const bytes = place.crc.width >> 3;
