@@ -135,7 +135,7 @@ export const gasAccumulator = store({
     leastShortFormMargin: {
       unit: '1',
       about: 'margin of the short form below which it is not to be believed; 0: not watched',
-      default: 0.3,
+      default: 0.6,
       least: 0,
       most: 1,
     },
@@ -374,7 +374,9 @@ export const gasAccumulator = store({
     const working = work * (shrinking + gasLoss / density);
     // the short form: heat and work balance, (hA)(Tw - T) = T pT dV/dt
     const margin = 1 - (byTemperature * share * byMass * oil.massFlow) / conductance;
-    const settled = (state.wallTemperature / Math.max(margin, 0.05) - state.gasTemperature) / parameter.shortFormLag;
+    // held where the laws of the gas still hold: 0.77 to 1.67 times the wall's temperature
+    const believed = Math.max(0.6, Math.min(1.3, margin));
+    const settled = (state.wallTemperature / believed - state.gasTemperature) / parameter.shortFormLag;
     const driven = conductance * (state.wallTemperature - state.gasTemperature);
     const heatFlow = parameter.gasTemperatureForm === 0 ? driven : settled * resisting - working;
     derivative.gasTemperature = parameter.gasTemperatureForm === 0 ? (driven + working) / resisting : settled;
@@ -446,6 +448,13 @@ export const gasAccumulator = store({
         parameter: 'precharge',
         what: 'the precharge is not below maximumAllowable',
         remedy: 'lower the precharge to 0.9 of the least working pressure or less',
+      });
+    }
+    if (parameter.gasTemperatureForm === 1 && parameter.heatTransfer === 2) {
+      problems.push({
+        parameter: 'gasTemperatureForm',
+        what: 'the short form goes with a time constant or a conductance, not with natural convection',
+        remedy: 'set gasTemperatureForm: state, or another heatTransfer',
       });
     }
     if (parameter.reliefSetting! > most && most > 0) {

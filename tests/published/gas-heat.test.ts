@@ -103,7 +103,7 @@ describe('a constant conductance', () => {
 describe('the short form of the gas temperature, for comparison', () => {
   const given = { volume: 50 * litre, precharge: 50 * bar, gas: 1, gasTemperatureForm: 1, timeConstant: 30 };
   it("is Tw/(1 + (kappa - 1) tau V'/V), charging and discharging", () => {
-    for (const flow of [60, -60]) {
+    for (const flow of [35, -35]) {
       const bench = charged(given, { pressure: 100 * bar, temperature: 300 });
       bench.set('pump.flowRequest', flow * litresPerMinute);
       bench.run(0.3);
@@ -157,6 +157,10 @@ describe('the short form of the gas temperature, for comparison', () => {
       /highAccumulator: the short form .* from \d+\.?\d* L\/min .* can deliver 418\.9 L\/min/,
     );
     expect(shortFormFaults(changed({ timeConstant: 0.5 }))).toEqual([]);
-    expect(shortFormFaults(changed({ heatTransfer: 2 }))[0]).toMatch(/natural convection/);
+    const said = library.gasAccumulator.examine!({
+      parameter: { gasTemperatureForm: 1, heatTransfer: 2, separator: 0, maximumAllowable: 0, precharge: 1e6 },
+      fluid: {},
+    });
+    expect(said[0]!.what).toMatch(/natural convection/);
   });
 });

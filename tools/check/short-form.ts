@@ -35,10 +35,6 @@ export function shortFormFaults(spec: Pick<BenchSpec, 'circuit'>): string[] {
   return elements
     .filter((element) => element.kind.kind === 'gas-accumulator' && element.parameters.gasTemperatureForm === 1)
     .flatMap((element) => {
-      if (element.parameters.heatTransfer === 2)
-        return [
-          `${element.name}: the short form goes with a time constant or a conductance, not with natural convection`,
-        ];
       const singular = singularFlow(element.parameters);
       return delivered < singular
         ? []
