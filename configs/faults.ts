@@ -34,7 +34,10 @@ export function faultCatalogue(spec: BenchSpec): FaultEntry[] {
       element !== undefined
         ? ['component', element]
         : instrument !== undefined
-          ? [instrument.includes('sensor') ? 'sensor' : 'power stage', instrument]
+          ? [
+              instrument.includes('sensor') ? 'sensor' : /-(in|out)put$/.test(instrument) ? 'wire' : 'power stage',
+              instrument,
+            ]
           : owner === 'controller'
             ? ['controller', 'the controller as a whole']
             : direction === undefined

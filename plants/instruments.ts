@@ -10,3 +10,13 @@ export {
   torqueSensor,
   velocitySensor,
 } from './instruments/sensor.js';
+export {
+  currentInput,
+  currentOutput,
+  dutyInput,
+  dutyOutput,
+  frequencyInput,
+  frequencyOutput,
+  voltageInput,
+  voltageOutput,
+} from './instruments/terminal.js';
