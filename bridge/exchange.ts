@@ -17,6 +17,8 @@ import { mapChecksum } from './udp-layout.js';
 import { UdpLink } from './udp-link.js';
 
 const nobody = () => {};
+/** s */
+const leastBoot = 0.01;
 
 /** Where commands stand in the block. */
 export interface Targets {
@@ -72,12 +74,14 @@ export class Exchange {
   private readonly units: Float64Array;
   private readonly bootUntil: number;
   private readonly silent: number;
-  /** Slots: 1 while a hello is due; 1 while the controller has no power; what `life.supply` says, or -1. */
+  /** Slots: 1 while a hello is due; above 0 while the controller has no power and until it has booted; what `life.supply` says, or -1. */
   private readonly helloDue: number;
   private readonly off: number;
   private readonly supply: number;
   private readonly controller: { readonly silent: number; readonly frozen: number; readonly restarting: number };
   private readonly deaf: number;
+  /** Ticks after its supply has come in which what is still on its way is not believed. */
+  private readonly boot: number;
   private readonly timedOutKind: number;
   private readonly cameBackKind: number;
   private readonly awakeKind: number;
@@ -102,6 +106,7 @@ export class Exchange {
     this.helloDue = layout.add('exchange.helloDue', 1);
     this.off = layout.add('exchange.off');
     this.deaf = layout.add('exchange.deaf');
+    this.boot = Math.max(2, Math.round(leastBoot / step));
     this.supply = options.targets.find('life.supply');
     this.controller = {
       silent: layout.add('controller.silent'),
@@ -274,12 +279,15 @@ export class Exchange {
   private power(block: Float64Array, tick: number): void {
     const { controller } = this;
     const off = (this.supply >= 0 && block[this.supply] < 0.5) || block[controller.restarting] >= 0.5;
-    if (!off && block[this.off] === 1) {
-      this.startBootWindow(block, tick);
-      block[this.helloDue] = 1;
+    if (off) block[this.off] = this.boot;
+    else if (block[this.off] > 0) {
+      if (block[this.off] === this.boot) {
+        this.startBootWindow(block, tick);
+        block[this.helloDue] = 1;
+      }
+      block[this.off] -= 1;
     }
-    block[this.off] = off ? 1 : 0;
-    block[this.deaf] = off || block[controller.silent] >= 0.5 ? 1 : 0;
+    block[this.deaf] = block[this.off] > 0 || block[controller.silent] >= 0.5 ? 1 : 0;
   }
 
   /** The controller boots (again) at `tick`: time-outs do not count for the boot window. */

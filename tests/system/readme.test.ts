@@ -25,6 +25,12 @@ describe('the README', () => {
     expect(stuffs['oil']).toBeLessThan(1e-12);
   });
 
+  it('shows a scenario of the truck that reads as it stands', () => {
+    const truck = readBench(path.join(root, 'configs', 'harbour-truck', 'bench.yaml'), catalogue);
+    const { script } = readScenario('s.yaml', truck, memoryFiles({ 's.yaml': blocks[2]! }));
+    expect([script.steps.length, script.requirements.length]).toEqual([1, 1]);
+  });
+
   it('names every command that there is', async () => {
     const { output } = await (await import('./command.js')).runCommand('--help');
     const commands = [...output.matchAll(/^ {2}([a-z]+)(?: |\n)/gm)]

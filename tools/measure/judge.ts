@@ -4,7 +4,10 @@ import type { SignalInfo } from '../../runtime/contract.js';
 import { compileRequirements } from '../../runtime/judge/monitor.js';
 import { SignalTable } from '../../runtime/signals.js';
 
-/** Prints what 50 requirements cost a tick: median and worst, memory, and what the heap grew. Run: node dist/tools/measure/judge.js */
+/**
+ * Prints what 50 requirements cost a tick, as JSON: median and worst, memory, and what the heap grew. A process of its own, started by
+ * the part `judge` of the measurements: nothing else of the project has run in it.
+ */
 
 const infos: SignalInfo[] = [];
 const signal = (path: string, unit: string) => infos.push({ path, unit, about: '', group: 'reading' });
@@ -115,20 +118,24 @@ const at = (share: number) => {
   const pick = (costs: Float64Array) => costs[Math.min(costs.length - 1, Math.floor(share * costs.length))]!;
   return Math.round(((pick(judged.costs) - pick(empty.costs)) / batch) * 1000);
 };
-console.log(`requirements        ${requirements.length}`);
-console.log(`operations a tick   ${judge.operations}`);
-console.log(
-  `cost a tick         ${at(0.5)} ns median of batches of ${batch}, least ${at(0)} ns, worst batch ${at(1)} ns (processor time)`,
-);
-console.log(
-  `memory              ${block.length} slots hashed, ${history.length} slots of history (${(history.length * 8e-6).toFixed(1)} MB)`,
-);
-console.log(
-  `heap growth         ${judged.growth.toFixed(2)} B a tick; of the measuring itself ${empty.growth.toFixed(2)} B`,
-);
 const start = performance.now();
 const results = judge.finish(ticks, block, history);
 const count = (verdict: string) => results.filter((one) => one.verdict === verdict).length;
-console.log(
-  `end of the run      ${(performance.now() - start).toFixed(0)} ms: ${count('pass')} pass, ${count('fail')} fail, ${count('undecided')} undecided, ${count('not exercised')} not exercised`,
-);
+const found = {
+  requirements: requirements.length,
+  operations: judge.operations,
+  /** Of batches of ticks, processor time of one tick, ns. */
+  nanoseconds: { median: at(0.5), least: at(0), worst: at(1) },
+  /** Slots that are hashed, and slots of history. */
+  slots: { block: block.length, history: history.length },
+  /** Bytes a tick: with the judge, and of the measuring itself. */
+  growth: { judged: judged.growth, measuring: empty.growth },
+  end: {
+    milliseconds: performance.now() - start,
+    pass: count('pass'),
+    fail: count('fail'),
+    undecided: count('undecided'),
+    notExercised: count('not exercised'),
+  },
+};
+console.log(JSON.stringify(found));

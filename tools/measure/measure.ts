@@ -11,6 +11,7 @@ import { inlineMore } from '../loop/engine-flags.js';
 import { softwareVersion } from '../run/host-run.js';
 import type { Part, PartResult } from './part.js';
 import { fast } from './parts/fast.js';
+import { judge } from './parts/judge.js';
 import { lateness } from './parts/lateness.js';
 import { page } from './parts/page.js';
 import { recording } from './parts/recording.js';
@@ -27,7 +28,7 @@ import { Workshop } from './workshop.js';
  */
 // as in the loop thread
 inlineMore();
-const parts: readonly Part[] = [lateness, step, twin, stages, replies, fast, recording, page];
+const parts: readonly Part[] = [lateness, step, twin, stages, judge, replies, fast, recording, page];
 
 const program = new Command('measure')
   .description('measures the loop beside cyclictest and a twin in C')

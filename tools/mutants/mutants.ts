@@ -13,7 +13,7 @@ import { sample } from './sample.js';
 import { type MutantResult, tryMutants } from './try-mutants.js';
 
 const usage = `Usage: node dist/tools/mutants/mutants.js [--bench FILE] [--suite FOLDER] [--kind planted|mechanical|all]
-  [--only TEXT] [--sample N] [--seed N] [--jobs N] [--out FOLDER] [--resume] [--list]
+  [--only TEXT,TEXT] [--sample N] [--seed N] [--jobs N] [--out FOLDER] [--resume] [--list]
 
 Runs a suite against copies of the bench's demo controller with one mistake in each, and prints the share that it catches
 and the copies that it does not. Ctrl-C ends it; --resume goes on from there.
@@ -53,7 +53,7 @@ async function main(): Promise<number> {
   let mutants = [
     ...(values.kind !== 'mechanical' && ours ? plantedBugs.map((bug) => planted(source, bug)) : []),
     ...(values.kind !== 'planted' ? mutations(source) : []),
-  ].filter((one) => values.only === undefined || one.name.includes(values.only));
+  ].filter((one) => values.only === undefined || values.only.split(',').some((part) => one.name.includes(part)));
   if (values.sample !== undefined) mutants = sample(mutants, Number(values.sample), Number(values.seed));
   if (values.list) {
     for (const one of mutants) process.stdout.write(`${one.name}  ${one.what}\n`);

@@ -51,6 +51,7 @@ export async function tryMutants(options: TryOptions): Promise<{ before: Trial[]
   const workers = Array.from({ length: Math.max(1, options.jobs) }, () => new TrialProcess(options));
   try {
     const before = await soundRuns(options, workers, suiteKey);
+    if (abort.aborted) return { before, results: [] };
     const ledger = path.join(out, 'results.jsonl');
     const known = options.resume ? knownResults(ledger) : new Map<string, MutantResult>();
     if (!options.resume) writeFileSync(ledger, '');
