@@ -15,15 +15,22 @@ function run(count: number): void {
   }
 }
 
-// once through the duty: code that runs first in the middle of it is compiled there
+/** What `count` ticks from the start did to the heap. */
+function measured(count: number): { collections: number; allocated: number } {
+  const meter = new CollectionMeter();
+  assembly.reset();
+  tick = assembly.firstTick;
+  meter.start();
+  run(count);
+  return meter.stop();
+}
+
+// once through the duty: code that runs first in the middle of it is compiled there; on a computer that is busy with other
+// work the compiler comes late, and its rounds are no measurement
 run(10_000);
-assembly.reset();
-tick = assembly.firstTick;
-run(truck.ticks - assembly.firstTick);
-const meter = new CollectionMeter();
-assembly.reset();
-tick = assembly.firstTick;
-meter.start();
-run(ticks);
-const { collections, allocated } = meter.stop();
+for (let round = 0; round < 3; round += 1) {
+  const { allocated } = measured(truck.ticks - assembly.firstTick);
+  if (allocated < 8 * truck.ticks) break;
+}
+const { collections, allocated } = measured(ticks);
 console.log(JSON.stringify({ collections, allocated, tick, distance: truck.value('body.distance') }));
