@@ -518,11 +518,11 @@ class Parser {
       case 'change': {
         const of = this.value();
         const span = over() ?? 1;
-        return done({ is: name, of: of.expression, over: span }, name === 'rate' ? timed(of.unit, -1) : of.unit);
+        return done({ is: name, of: of.expression, over: span }, name === 'rate' ? timed(of.unit, -1, of.at) : of.unit);
       }
       case 'integral': {
         const of = this.value();
-        return done({ is: 'integral', of: of.expression, over: over() }, timed(of.unit, 1));
+        return done({ is: 'integral', of: of.expression, over: over() }, timed(of.unit, 1, of.at));
       }
       case 'peak':
       case 'trough':

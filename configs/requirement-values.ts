@@ -49,7 +49,7 @@ export function numberValue(number: number, unit: Unit | undefined, written: str
     unit.reference !== undefined || unit.scaleOfTemperature ? 'point' : isTemperature(unit) ? 'either' : 'difference';
   return {
     expression: { is: 'number', value: toSI(number, unit), written },
-    unit: siUnit(unit),
+    unit: siUnit(unit, at),
     scale,
     zero: false,
     at,
@@ -57,10 +57,23 @@ export function numberValue(number: number, unit: Unit | undefined, written: str
 }
 
 /** A unit's SI unit, by the name that people know. */
-function siUnit(unit: Unit): Unit {
-  return parseUnit(unitName(unit.dimension));
+function siUnit(unit: Unit, at: number): Unit {
+  return unitOf(unit.dimension, at);
 }
 
+/** Throws TextError for a dimension that no unit can be written for. */
+function unitOf(dimension: Dimension, at: number): Unit {
+  if (dimension.some((exponent) => Math.abs(exponent) > highestExponent))
+    throw new TextError(
+      at,
+      `a quantity in ${unitName(dimension)}`,
+      `exponents of units go to ${highestExponent}: write it with fewer products or integrals`,
+    );
+  return parseUnit(unitName(dimension));
+}
+
+/** Of a base unit; parseUnit takes no more. */
+const highestExponent = 9;
 const bases = ['kg', 'm', 's', 'A', 'K', 'mol', 'rad'] as const;
 const basePlaces = [1, 0, 2, 3, 4, 5, 6] as const;
 
@@ -80,9 +93,9 @@ export function unitName(dimension: Dimension): string {
   return below.length === 1 ? `${top}/${below[0]}` : `${top}/(${below.join(' ')})`;
 }
 
-function combined(a: Unit, b: Unit, sign: 1 | -1): Unit {
+function combined(a: Unit, b: Unit, sign: 1 | -1, at: number): Unit {
   const dimension = a.dimension.map((exponent, i) => exponent + sign * b.dimension[i]!) as unknown as Dimension;
-  return parseUnit(unitName(dimension));
+  return unitOf(dimension, at);
 }
 
 /** Units that may stand side by side; radians count as 1. */
@@ -123,7 +136,7 @@ export function arithmetic(is: Arithmetic, left: Value, right: Value, at: number
   if (is === 'product' || is === 'quotient') {
     return {
       expression,
-      unit: combined(left.unit, right.unit, is === 'product' ? 1 : -1),
+      unit: combined(left.unit, right.unit, is === 'product' ? 1 : -1, right.at),
       scale: 'difference',
       zero: false,
       at,
@@ -158,8 +171,8 @@ export function arithmetic(is: Arithmetic, left: Value, right: Value, at: number
 }
 
 /** The same unit times (1) or by (-1) seconds. */
-export function timed(unit: Unit, sign: 1 | -1): Unit {
+export function timed(unit: Unit, sign: 1 | -1, at: number): Unit {
   // What people read: an integral of power is energy, not torque.
   if (sign === 1 && unit.text === 'W') return parseUnit('J');
-  return combined(unit, parseUnit('s'), sign);
+  return combined(unit, parseUnit('s'), sign, at);
 }

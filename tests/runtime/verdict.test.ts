@@ -74,6 +74,42 @@ describe('verdict of a run', () => {
     expect(judgeRun({ ...sound, ending: 'broken', endingReason: 'controller gone' }, []).exitCode).toBe(5);
   });
 
+  it('says in one sentence what the run is worth', () => {
+    const said = (facts: Partial<RunFacts>, ...all: RequirementVerdict[]) =>
+      judgeRun(
+        { ...sound, ...facts },
+        all.map((one) => result(one)),
+      ).summary;
+    expect(said({})).toBe('The run is valid; nothing was required of it.');
+    expect(said({}, 'pass')).toBe('The requirement holds.');
+    expect(said({}, 'pass', 'pass')).toBe('All 2 requirements hold.');
+    expect(said({}, 'pass', 'fail', 'not exercised')).toBe('1 of 3 requirements failed.');
+    expect(said({}, 'pass', 'not exercised')).toBe('Of 2 requirements none failed, but 1 not exercised.');
+    expect(said({}, 'undecided', 'undecided', 'not exercised')).toBe(
+      'Of 3 requirements none failed, but 1 not exercised and 2 still open when the run ended.',
+    );
+    expect(said({}, 'pass', 'undecided')).toBe('Of 2 requirements none failed, but 1 still open when the run ended.');
+    expect(said({ ending: 'broken', endingReason: 'controller gone' }, 'pass')).toBe(
+      'This run does not count: the run could not be finished after 1.000 s: controller gone.',
+    );
+    expect(said({ ending: 'stopped', rowsLost: 2, hands: ['brake'] })).toBe(
+      'This run does not count: the run was stopped before its end after 1.000 s and 2 more.',
+    );
+    expect(judgeRun({ ...sound, ticks: 0 }, []).reasons[0]!.what).toBe('the run has no tick');
+    expect(judgeRun({ ...sound, rowsLost: 2 }, []).reasons[0]).toEqual({
+      reason: 'ring overflow',
+      what: 'ticks are missing in the record',
+      value: 2,
+      bound: 0,
+      unit: '1',
+    });
+    const timing = [{ name: 'lateness', value: 3, bound: 2, unit: 's' }];
+    expect(judgeRun({ ...sound, timing }, []).reasons[0]!.what).toBe('lateness is past its bound');
+    // only one that is not exercised can be at rest
+    const held = { ...result('pass'), requirement: { ...result('pass').requirement, exercise: 'optional' as const } };
+    expect(judgeRun(sound, [held]).counts).toMatchObject({ pass: 1, atRest: 0 });
+  });
+
   it('counts a value at its bound as within, and one without a bound as shown only', () => {
     const timing = [
       { name: 'lateness', value: 2, bound: 2, unit: 's' },
