@@ -28,7 +28,7 @@ export const accumulatorSafetyBlock = branch({
   memory: {
     asked: { unit: '1', about: '1 while it is asked to be open and supplied' },
     equalised: { unit: '1', about: '1 once the pressures have met since it was asked' },
-    shutFor: { unit: 's', about: 'time since it was last asked to be open' },
+    shutFor: { unit: 's', about: 'time since it was last asked to be open', gradual: true },
     discharging: { unit: '1', about: '1 while the discharge valve is to be open' },
   },
   commands: {

@@ -18,6 +18,7 @@ export const chargePump = branch({
       unit: 'Pa s',
       about: 'dynamic viscosity of the oil in it, once a substep: it changes by nothing meanwhile',
       initial: 0.04,
+      gradual: true,
     },
   },
   commands: {

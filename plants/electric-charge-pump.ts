@@ -19,6 +19,7 @@ export const electricChargePump = branch({
       unit: 'Pa s',
       about: 'dynamic viscosity of the oil in it, once a substep: it changes by nothing meanwhile',
       initial: 0.04,
+      gradual: true,
     },
   },
   commands: {

@@ -15,7 +15,7 @@ export const isolationValve = branch({
   states: { position: { unit: '1', about: 'position of the spool, 0 closed to 1 open', least: -0.01, most: 1.01 } },
   memory: {
     accepted: { unit: '1', about: 'position that the spool is driven to' },
-    waited: { unit: 's', about: 'time for which another one has been asked for' },
+    waited: { unit: 's', about: 'time for which another one has been asked for', gradual: true },
   },
   commands: {
     open: { unit: '1', about: 'wanted position, 0 closed to 1 open', rest: 0, least: 0, most: 1 },
@@ -54,10 +54,11 @@ export const isolationValve = branch({
     const without = parameter.atPowerLoss === 0 ? 0 : parameter.atPowerLoss === 1 ? 1 : memory.accepted;
     const asked = command.power > 0.5 ? command.open : without;
     const waiting = asked !== memory.accepted;
+    const waited = waiting ? memory.waited + step : 0;
     // half a substep of grace: whole substeps do not add up to the dead time to the bit
-    const taken = waiting && memory.waited >= parameter.deadTime - 0.5 * step;
+    const taken = waiting && waited >= parameter.deadTime - 0.5 * step;
     memory.accepted = taken ? asked : memory.accepted;
-    memory.waited = waiting && !taken ? memory.waited + step : 0;
+    memory.waited = taken ? 0 : waited;
   },
   flows({ parameter, from, to, state, memory, command, derivative, reading, law }) {
     const target = command.stuckAt < 0 ? memory.accepted : command.stuckAt;

@@ -27,6 +27,7 @@ export const pumpMotor = branch({
       unit: 'Pa s',
       about: 'dynamic viscosity of the oil in it, once a substep: it changes by nothing meanwhile',
       initial: 0.04,
+      gradual: true,
     },
     mistaken: { unit: 's', about: 'time for which the displacement has been off its request by more than allowed' },
     delayClock: { unit: 's', about: 'time since the request moved on through the dead time' },

@@ -27,7 +27,7 @@ export const steppedGearbox = branch({
   memory: {
     gear: { unit: '1', about: 'engaged gear: -1 reverse, 0 neutral, 1 to 6' },
     ratio: { unit: '1', about: 'ratio of the gear engaged last', initial: 1 },
-    neutralTime: { unit: 's', about: 'time since the last gear was let go', initial: 10 },
+    neutralTime: { unit: 's', about: 'time since the last gear was let go', initial: 10, gradual: true },
     locked: { unit: '1', about: '1 when the gear is synchronised and locked' },
   },
   commands: {

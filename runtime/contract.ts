@@ -41,12 +41,20 @@ export interface StateDeclaration extends Quantity {
    * net refines (1). For an oil mass: (beta / (rho V)) / 0.5 bar. Absent: the state is not judged.
    */
   readonly errorWeight?: (values: BuildValues) => number;
-  /** A typical size, for scaling differences and accuracy figures. Default: 1. */
+  /**
+   * A typical size, for scaling differences and accuracy figures, and for how long a stride of the solver may be (see
+   * solver/rodas3.ts). Default: 1.
+   */
   readonly scale?: number;
 }
 
 export interface MemoryDeclaration extends Quantity {
   readonly initial?: number;
+  /**
+   * True for what changes gently or only counts time. Anything else is a latch: the solver takes short substeps where it
+   * changes.
+   */
+  readonly gradual?: boolean;
 }
 
 /** A number that the controller, the script, a fault or an instrument sets; held over a tick. */

@@ -13,6 +13,16 @@ export interface PlantPlaces {
   readonly ledger: number;
 }
 
+export interface PlantSettings {
+  /** s */ readonly step: number;
+  /** Substeps of a step. */
+  readonly substeps: number;
+  /** The safety net; default on. */
+  readonly net?: boolean;
+  /** Substeps that one stride of the solver may pass; default: all of a step. 1: each by itself. */
+  readonly longest?: number;
+}
+
 export class Plant implements LedgerPart {
   readonly y: Float64Array;
   readonly m: Float64Array;
@@ -29,10 +39,13 @@ export class Plant implements LedgerPart {
   private readonly first: number;
   private readonly observedLedger: number;
   private readonly h = new Float64Array(1);
+  private readonly longest: number;
+  /** Memory whose change ends a stride. */
+  private readonly latches: Int32Array;
 
   constructor(
     readonly circuit: Circuit,
-    readonly settings: { readonly step: number; readonly substeps: number; readonly net?: boolean },
+    readonly settings: PlantSettings,
     block: Float64Array,
     at: PlantPlaces,
   ) {
@@ -48,13 +61,12 @@ export class Plant implements LedgerPart {
     this.open = new Float64Array(this.count);
     this.solver = new Rodas3(circuit, { net: settings.net ?? true });
     this.h[0] = settings.step / settings.substeps;
+    this.longest = Math.min(settings.substeps, settings.longest ?? settings.substeps);
+    this.latches = Int32Array.from(circuit.memory.flatMap((slot, i) => (slot.gradual ? [] : [i])));
   }
 
   /** A plant with a block of its own: for checks, tests and references. */
-  static alone(
-    circuit: Circuit,
-    settings: { readonly step: number; readonly substeps: number; readonly net?: boolean },
-  ): Plant {
+  static alone(circuit: Circuit, settings: PlantSettings): Plant {
     const n = circuit.states.length;
     const k = circuit.memory.length;
     const c = circuit.commands.length;
@@ -95,13 +107,24 @@ export class Plant implements LedgerPart {
     const { step } = circuit;
     this.openLength[0] = 0;
     this.load();
-    step.t[0] = h[0]!;
-    for (let i = 0; i < settings.substeps; i += 1) {
-      if (circuit.hasMemory) {
-        step.update();
-        for (let k = 0; k < m.length; k += 1) step.m[k] = step.n[k]!;
+    // memory meets the new commands
+    step.t[0] = 0;
+    this.update();
+    let left = settings.substeps;
+    let size = this.longest;
+    while (left > 0) {
+      if (size > left) size = left;
+      step.t[0] = size * h[0]!;
+      if (size > 1) {
+        if (!this.stride()) {
+          size >>= 1;
+          continue;
+        }
+      } else {
+        solver.substep(this);
+        this.update();
       }
-      solver.substep(this);
+      left -= size;
     }
     for (let i = 0; i < y.length; i += 1) y[i] = step.y[i]!;
     for (let i = 0; i < m.length; i += 1) m[i] = step.m[i]!;
@@ -109,11 +132,40 @@ export class Plant implements LedgerPart {
     this.close();
   }
 
+  /** One stride of length t[0]; false when it has to be shorter: nothing has changed then. */
+  private stride(): boolean {
+    const { circuit, solver, latches } = this;
+    const { step } = circuit;
+    if (!solver.stride()) return false;
+    if (circuit.hasMemory) {
+      step.update();
+      for (let i = 0; i < latches.length; i += 1) if (step.n[latches[i]!] !== step.m[latches[i]!]) return false;
+      this.remember();
+    }
+    this.part(step.d, step.t);
+    solver.accept();
+    return true;
+  }
+
+  private update(): void {
+    if (!this.circuit.hasMemory) return;
+    this.circuit.step.update();
+    this.remember();
+  }
+
+  private remember(): void {
+    const { m, n } = this.circuit.step;
+    for (let i = 0; i < m.length; i += 1) m[i] = n[i]!;
+  }
+
   /** The circuit's functions work on arrays of their own, which all plants of a circuit share. */
   private load(): void {
     const { circuit, y, u, m } = this;
     const { step } = circuit;
-    for (let i = 0; i < y.length; i += 1) step.y[i] = y[i]!;
+    for (let i = 0; i < y.length; i += 1) {
+      step.y[i] = y[i]!;
+      step.s[i] = y[i]!;
+    }
     for (let i = 0; i < u.length; i += 1) step.u[i] = u[i]!;
     for (let i = 0; i < m.length; i += 1) step.m[i] = m[i]!;
   }

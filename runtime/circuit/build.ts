@@ -9,7 +9,7 @@ import {
   type SignalInfo,
   type StateDeclaration,
 } from '../contract.js';
-import { rodas3Stages } from '../solver/rodas3-code.js';
+import { rodas3Stages, strideWeightsOf } from '../solver/rodas3-code.js';
 import { type Elimination, eliminate, printElimination, printPieces } from './elimination.js';
 import { chunkSize, javaScript, type Output, printFunction } from './emit.js';
 import { Graph, type NodeId } from './graph.js';
@@ -33,6 +33,11 @@ export interface StateSlot extends Slot {
   /** See StateDeclaration.errorWeight; 0: not judged. */
   readonly errorWeight: number;
 }
+export interface MemorySlot extends Slot {
+  readonly initial: number;
+  /** See MemoryDeclaration.gradual. */
+  readonly gradual: boolean;
+}
 export interface CommandSlot extends Slot {
   readonly rest: number;
   readonly fault: boolean;
@@ -44,7 +49,7 @@ export interface CircuitFunctions {
   readonly rates: (y: Arrays, u: Arrays, m: Arrays, d: Arrays) => void;
   /** Fills d (n rates, then the ledger rates: supplied, left, brought per stuff) and the Jacobian's values J. */
   readonly ratesAndJacobian: (y: Arrays, u: Arrays, m: Arrays, d: Arrays, J: Arrays) => void;
-  /** Memory after a substep boundary: out = new memory; h is the substep, s. */
+  /** Memory after a substep: out = new memory; h is the length of the substep that has ended, s. */
   readonly update: (y: Arrays, u: Arrays, m: Arrays, h: number, out: Arrays) => void;
   /** Readings, then the ledger rates, then total energy, then holdings per stuff. */
   readonly observe: (y: Arrays, u: Arrays, m: Arrays, out: Arrays) => void;
@@ -59,13 +64,15 @@ export interface Circuit {
   readonly name: string;
   readonly spec: CircuitSpec;
   readonly states: readonly StateSlot[];
-  readonly memory: readonly (Slot & { readonly initial: number })[];
+  readonly memory: readonly MemorySlot[];
   readonly commands: readonly CommandSlot[];
   readonly readings: readonly Slot[];
   /** Kinds of conserved stuff, for instance `oil`. */
   readonly stuffs: readonly string[];
   /** Row and column of each Jacobian value. */
   readonly jacobian: { readonly rows: readonly number[]; readonly columns: readonly number[] };
+  /** By state: what one unit of estimated error counts against a long stride; see solver/rodas3.ts. */
+  readonly strideWeights: readonly number[];
   readonly elimination: Elimination;
   readonly functions: CircuitFunctions;
   /** The functions of a step, on arrays of their own. */
@@ -275,7 +282,7 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
   const most = options.chunkSize ?? chunkSize;
   checkWiring(spec);
   const states: StateSlot[] = [];
-  const memory: (Slot & { initial: number })[] = [];
+  const memory: MemorySlot[] = [];
   const commands: CommandSlot[] = [];
   for (const element of spec.elements) declareSlots(element, states, memory, commands);
 
@@ -428,6 +435,7 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
   };
   const elimination = eliminate(states.length, rows, columns);
   const errorWeights = states.map((state) => state.errorWeight);
+  const strideWeights = strideWeightsOf(states, columns);
   const step = compileModule({
     graph,
     outputs,
@@ -435,6 +443,7 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     commands: commands.length,
     entries: rows.length,
     errorWeights,
+    strideWeights,
     most,
   });
   trainModule(step, { states, memory, commands });
@@ -453,11 +462,12 @@ export function buildCircuit(spec: CircuitSpec, options: BuildOptions = {}): Cir
     readings,
     stuffs,
     jacobian: { rows, columns },
+    strideWeights,
     elimination,
     functions: { ...functionsOf(step), audit: auditFunction },
     step,
     get code(): string {
-      return printCircuit(graph, outputs, elimination, errorWeights, most);
+      return printCircuit(graph, outputs, elimination, errorWeights, strideWeights, most);
     },
     nodeCount: graph.nodes.length,
     hasMemory: memory.length > 0,
@@ -491,6 +501,7 @@ function functionsOf(module: CircuitModule): Omit<CircuitFunctions, 'audit'> {
     },
     update(y, u, m, h, out) {
       load(y, u, m);
+      copy(y, module.s);
       module.t[0] = h;
       module.update();
       copy(module.n, out);
@@ -521,6 +532,7 @@ function printCircuit(
   outputs: CircuitOutputs,
   elimination: Elimination,
   errorWeights: readonly number[],
+  strideWeights: readonly number[],
   most: number,
 ): string {
   return [
@@ -529,7 +541,7 @@ function printCircuit(
     printFunction(graph, 'update', ['y', 'u', 'm', 'h', 'out'], outputs.update, most),
     printFunction(graph, 'observe', ['y', 'u', 'm', 'out'], outputs.observe, most),
     printElimination(elimination),
-    ...rodas3Stages(elimination, errorWeights, javaScript).map(({ name, parameters, lines }) =>
+    ...rodas3Stages(elimination, errorWeights, strideWeights, javaScript).map(({ name, parameters, lines }) =>
       printPieces(name, parameters.join(', '), lines, elimination.cut),
     ),
   ].join('\n\n');
@@ -615,7 +627,7 @@ function bounds(declaration: { least?: number; most?: number }): { least?: numbe
 function declareSlots(
   element: ElementInstance,
   states: StateSlot[],
-  memory: (Slot & { initial: number })[],
+  memory: MemorySlot[],
   commands: CommandSlot[],
 ): void {
   const { kind } = element;
@@ -639,7 +651,11 @@ function declareSlots(
     });
   }
   for (const [name, declaration] of Object.entries(kind.memory)) {
-    memory.push({ ...slot(element, name, declaration, 'memory'), initial: initial[name] ?? declaration.initial ?? 0 });
+    memory.push({
+      ...slot(element, name, declaration, 'memory'),
+      initial: initial[name] ?? declaration.initial ?? 0,
+      gradual: declaration.gradual ?? false,
+    });
   }
   for (const [name, declaration] of Object.entries(kind.commands) as [string, CommandDeclaration][]) {
     commands.push({

@@ -18,19 +18,20 @@ export interface CircuitModule {
   /** A stage's state; after `stageThree` the new state. */ readonly s: Float64Array;
   /** dy/dt at `s`. */ readonly b: Float64Array;
   /** Stages' increments; `k1` is also what `solve` finds. */ readonly k1: Float64Array;
-  /** The largest weighted error estimate. */ readonly e: Float64Array;
+  /** The largest weighted error estimate: for the safety net, for strides. */ readonly e: Float64Array;
   /** New memory. */ readonly n: Float64Array;
   /** Readings, ledger rates, total energy, holdings at `y`. */ readonly o: Float64Array;
-  /** Length h of the (sub)step, s, and c of the factors, 1/s. */ readonly t: Float64Array;
+  /** Length h of the substep, s, and c of the factors, 1/s. */ readonly t: Float64Array;
   /** b = dy/dt at s. */ rates(): void;
   ratesAndJacobian(): void;
-  update(): void;
+  /** n = memory after a substep of length t[0] that has led to s. */ update(): void;
   observe(): void;
   factor(): void;
   /** k1 = M^-1 d. */ solve(): void;
   stageOne(): void;
   stageTwo(): void;
   stageThree(): void;
+  strideError(): void;
 }
 
 export interface ModuleInput {
@@ -45,6 +46,7 @@ export interface ModuleInput {
   readonly commands: number;
   readonly entries: number;
   readonly errorWeights: readonly number[];
+  readonly strideWeights: readonly number[];
   /** Operations in one function, at most. */
   readonly most: number;
 }
@@ -59,11 +61,12 @@ const functionNames = [
   'stageOne',
   'stageTwo',
   'stageThree',
+  'strideError',
 ] as const;
 let made = 0;
 
 export function compileModule(input: ModuleInput): CircuitModule {
-  const { graph, outputs, elimination, errorWeights, most } = input;
+  const { graph, outputs, elimination, errorWeights, strideWeights, most } = input;
   const states = errorWeights.length;
   const pool: number[] = [];
   const pooled = new Map<string, number>();
@@ -105,7 +108,7 @@ export function compileModule(input: ModuleInput): CircuitModule {
   };
   evaluation('rates', outputs.rates, { d: 'b' }, 's');
   evaluation('ratesAndJacobian', outputs.ratesAndJacobian, {});
-  evaluation('update', outputs.update, { out: 'n' });
+  evaluation('update', outputs.update, { out: 'n' }, 's');
   evaluation('observe', outputs.observe, { out: 'o' });
   const straight = (name: string, before: string, lines: readonly string[]) => {
     const size = elimination.cut ? 400 : lines.length;
@@ -120,7 +123,7 @@ export function compileModule(input: ModuleInput): CircuitModule {
     '',
     elimination.solveLines(dialect, 'k1', (state) => `d[${state}]`),
   );
-  for (const { name, lines } of rodas3Stages(elimination, errorWeights, dialect))
+  for (const { name, lines } of rodas3Stages(elimination, errorWeights, strideWeights, dialect))
     straight(name, 'const h = t[0];', lines);
 
   const sizes: Record<string, number> = {
@@ -129,7 +132,7 @@ export function compileModule(input: ModuleInput): CircuitModule {
     u: input.commands,
     m: outputs.update.length,
     t: 2,
-    e: 1,
+    e: 2,
     K: pool.length,
     d: outputs.ratesAndJacobian.length - input.entries,
     b: states,
@@ -206,6 +209,7 @@ export function trainModule(
     module.stageOne();
     module.stageTwo();
     module.stageThree();
+    module.strideError();
   };
   for (let k = 0; k < 24; k += 1) {
     t[0] = 2.5e-4;

@@ -10,10 +10,11 @@ import { cLanguage, type Output, printChunks } from './emit.js';
  *
  *   oilspring_rates(y, u, m, d)                 d = dy/dt
  *   oilspring_rates_and_jacobian(y, u, m, d, J) d with the ledger rates behind it, J in the order of its comment
- *   oilspring_update(y, u, m, h, n)             n = memory after a substep boundary
+ *   oilspring_update(y, u, m, h, n)             n = memory after a substep of length h that has led to y
  *   oilspring_observe(y, u, m, out)             readings, ledger rates, energy, holdings
  *   oilspring_factor(J, c), oilspring_solve(J, b, x)   (c I - J) x = b, in place
- *   oilspring_step(y, u, m, h, substeps, counts)       advances y and m by substeps of h; counts[0], [1]: refined, replaced
+ *   oilspring_step(y, u, m, h, substeps, counts)       advances y and m by substeps of h, each by itself: no strides;
+ *                                                      counts[0], [1]: refined, replaced
  */
 export function printC(circuit: Circuit): string {
   const { graph, outputs, elimination, jacobian, states, memory, commands, readings } = circuit;
@@ -57,6 +58,7 @@ export function printC(circuit: Circuit): string {
   const stages = rodas3Stages(
     elimination,
     states.map((state) => state.errorWeight),
+    circuit.strideWeights,
     cLanguage,
   );
   for (const stage of stages) write(stage.name, stage.parameters, stage.lines);
@@ -91,7 +93,7 @@ const int oilspring_columns[] = {${jacobian.columns.join(', ') || '0'}};
 
 ${parts.join('\n\n')}
 
-static double d[OILSPRING_RATES], J[OILSPRING_FACTORS + 1], s[OILSPRING_STATES], b[OILSPRING_STATES], e[1];
+static double d[OILSPRING_RATES], J[OILSPRING_FACTORS + 1], s[OILSPRING_STATES], b[OILSPRING_STATES], e[2];
 static double k1[OILSPRING_STATES], k2[OILSPRING_STATES], k3[OILSPRING_STATES], k4[OILSPRING_STATES];
 static double next[OILSPRING_MEMORY + 1];
 
@@ -107,10 +109,14 @@ static int attempt(const double *y, const double *u, const double *m, double h) 
   return J[OILSPRING_FACTORS] >= 0.1 && e[0] <= 1;
 }
 
+static void remember(const double *y, const double *u, double *m, double h) {
+  oilspring_update(y, u, m, h, next);
+  memcpy(m, next, OILSPRING_MEMORY * sizeof(double));
+}
+
 void oilspring_step(double *y, const double *u, double *m, double h, int substeps, long *counts) {
-  for (int k = 0; k < substeps; k += 1) {
-    oilspring_update(y, u, m, h, next);
-    memcpy(m, next, OILSPRING_MEMORY * sizeof(double));
+  remember(y, u, m, 0);
+  for (int k = 0; k < substeps; k += 1, remember(y, u, m, h)) {
     if (attempt(y, u, m, h)) {
       memcpy(y, s, sizeof s);
       continue;

@@ -9,6 +9,7 @@ import type { Dialect } from '../circuit/emit.js';
  *   stageTwo(J, b, h, k1, k2, k3, s)           K3 from b = f(s); s = s + K3
  *   stageThree(J, b, h, k1, k2, k3, k4, s, e)  K4 from b = f(s); s = s + K4, the new state; e[0] = the largest weighted
  *                                              error estimate, not a number where any estimate is none
+ *   strideError(k4, e)                         e[1] = the largest estimate weighted by what a stride may err
  */
 export interface StageCode {
   readonly name: string;
@@ -17,16 +18,44 @@ export interface StageCode {
   readonly lines: readonly string[];
 }
 
-export function rodas3Stages(elimination: Elimination, errorWeights: readonly number[], dialect: Dialect): StageCode[] {
+/**
+ * A stride may err by a tenth of what the safety net lets pass, and by 1e-4 of a state's scale. States that no rate
+ * depends on are not asked.
+ */
+export function strideWeightsOf(
+  states: readonly { readonly errorWeight: number; readonly scale: number }[],
+  columns: readonly number[],
+): number[] {
+  const used = new Set(columns);
+  return states.map(({ errorWeight, scale }, i) =>
+    used.has(i) ? (errorWeight > 0 ? 10 * errorWeight : 1e4 / scale) : 0,
+  );
+}
+
+export function rodas3Stages(
+  elimination: Elimination,
+  errorWeights: readonly number[],
+  strideWeights: readonly number[],
+  dialect: Dialect,
+): StageCode[] {
   const { local, number, math } = dialect;
   // pieces of a cut function see only the arrays
   const four = elimination.cut ? `(${number(4)} / h)` : 'f';
   const inverse = elimination.cut ? `(${number(1)} / h)` : 'g';
   const two = number(2);
   const third = number(8 / 3);
-  const sizes = errorWeights.flatMap((weight, i) =>
-    weight > 0 ? [`${math('abs')}(k4[${i}]) * ${number(weight)}`] : [],
-  );
+  const largest = (place: string, weights: readonly number[]) => [
+    `${place} = ${number(0)};`,
+    ...weights.flatMap((weight, i) =>
+      weight > 0
+        ? [
+            `${local}e${i} = ${place};`,
+            `${local}q${i} = ${math('abs')}(k4[${i}]) * ${number(weight)};`,
+            `${place} = e${i} > q${i} ? e${i} : q${i};`,
+          ]
+        : [],
+    ),
+  ];
   return [
     {
       name: 'stageOne',
@@ -66,16 +95,12 @@ export function rodas3Stages(elimination: Elimination, errorWeights: readonly nu
           (i) => `b[${i}] + ${inverse} * (k1[${i}] - k2[${i}] - ${third} * k3[${i}])`,
           (i) => [`s[${i}] = s[${i}] + k4[${i}];`],
         ),
-        `e[0] = ${number(0)};`,
-        ...sizes.flatMap((size, i) => [
-          `${local}e${i} = e[0];`,
-          `${local}q${i} = ${size};`,
-          `e[0] = e${i} > q${i} ? e${i} : q${i};`,
-        ]),
+        ...largest('e[0]', errorWeights),
         // an infinite estimate and one that is no number both make this no number
         `e[0] = e[0] + ${number(0)} * ${balancedSum(errorWeights.map((_, i) => `k4[${i}]`))};`,
       ],
     },
+    { name: 'strideError', parameters: ['k4', 'e'], lines: largest('e[1]', strideWeights) },
   ];
 }
 

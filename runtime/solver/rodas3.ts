@@ -11,6 +11,10 @@ import type { Circuit } from '../circuit/build.js';
  *   M K4 = f(y + 2 K1 + K3) + (K1 - K2 - 8/3 K3)/h
  *   y+   = y + 2 K1 + K3 + K4,   error estimate K4.
  *
+ * Strides: a step tries to pass several substeps in one stride. A stride counts only where the estimate stays far below
+ * what the net lets pass (see rodas3-code.ts) and no latch of the circuit changes; else it is taken back and halved. What
+ * happens quickly is thus computed in the bench's substeps and what goes on calmly in few, at the same accuracy.
+ *
  * Safety net: where the weighted error estimate is above 1 (or not a number), or the least pivot below a tenth of its
  * healthy size, the substep is done again as four quarters; a quarter that fails again is replaced by two linearly
  * implicit Euler half steps. The cost is bounded and the result deterministic; both are counted.
@@ -29,13 +33,21 @@ export class Rodas3 {
     this.start = new Float64Array(circuit.states.length);
   }
 
+  /** Tries a stride of length `step.t[0]`, s, from y: the new state stands in `step.s` when it is accurate enough. */
+  stride(): boolean {
+    const { step } = this.circuit;
+    if (!this.attempt()) return false;
+    step.strideError();
+    return step.e[1]! <= 1;
+  }
+
   /**
-   * One substep of length `step.t[0]`, s, on the arrays of `circuit.step`, whose y advances in place. `onPart` gets the
+   * One substep of length `step.t[0]`, s, on the arrays of `circuit.step`, whose y and s advance in place. `onPart` gets the
    * ledger powers at the start of each part; the caller integrates them by the trapezoid (see Plant).
    */
   substep(onPart: LedgerPart): void {
     const { start, circuit } = this;
-    const { y, d, k1, t } = circuit.step;
+    const { y, s, d, k1, t } = circuit.step;
     const n = y.length;
     const good = this.attempt();
     if (good || !this.settings.net) {
@@ -64,7 +76,10 @@ export class Rodas3 {
       t[0] = 2 * t[0]!;
       for (let i = 0; i < n; i += 1) {
         if (!Number.isFinite(y[i]!)) {
-          for (let j = 0; j < n; j += 1) y[j] = start[j]!;
+          for (let j = 0; j < n; j += 1) {
+            y[j] = start[j]!;
+            s[j] = start[j]!;
+          }
           this.failed = true;
           t[0] = 4 * t[0]!;
           return;
@@ -97,20 +112,24 @@ export class Rodas3 {
     return step.J[elimination.size]! >= 0.1 && step.e[0]! <= 1;
   }
 
-  private accept(): void {
+  /** y = s. */
+  accept(): void {
     const { y, s } = this.circuit.step;
     for (let i = 0; i < y.length; i += 1) y[i] = s[i]!;
   }
 
   private euler(onPart: LedgerPart): void {
     const { step } = this.circuit;
-    const { y, k1, t, d } = step;
+    const { y, s, k1, t, d } = step;
     t[1] = 1 / t[0]!;
     step.ratesAndJacobian();
     step.factor();
     step.solve();
     onPart.part(d, t);
-    for (let i = 0; i < y.length; i += 1) y[i] = y[i]! + k1[i]!;
+    for (let i = 0; i < y.length; i += 1) {
+      y[i] = y[i]! + k1[i]!;
+      s[i] = y[i]!;
+    }
   }
 }
 

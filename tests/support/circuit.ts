@@ -54,13 +54,14 @@ export class Bench {
 
   constructor(
     elements: readonly ElementInstance[],
-    settings: { step?: number; substeps?: number; net?: boolean } = {},
+    settings: { step?: number; substeps?: number; net?: boolean; longest?: number } = {},
   ) {
     this.circuit = buildCircuit({ name: 'test', portKinds, elements });
     this.plant = Plant.alone(this.circuit, {
       step: settings.step ?? 1e-3,
       substeps: settings.substeps ?? 4,
       net: settings.net ?? true,
+      ...(settings.longest === undefined ? {} : { longest: settings.longest }),
     });
     const { plant, circuit } = this;
     circuit.states.forEach((slot, i) => {

@@ -56,8 +56,9 @@ export interface Comparison {
   readonly worst: Compared;
 }
 
-export function run(circuit: HardCircuit, substeps: number, paths: readonly string[]): Run {
-  const bench = new Bench(circuit.elements(), { substeps });
+/** `longest`: substeps that a stride may pass; a reference takes none. */
+export function run(circuit: HardCircuit, substeps: number, paths: readonly string[], longest = substeps): Run {
+  const bench = new Bench(circuit.elements(), { substeps, longest });
   const { plant } = bench;
   const at = places(bench.circuit);
   const count = Math.round(circuit.seconds * 1000);
@@ -111,10 +112,10 @@ export function compare(circuit: HardCircuit, substeps = 4): Comparison {
   const scales = paths.map((path) => circuit.others?.[path] ?? circuit.reliefSetting);
   const product = run(circuit, substeps, paths);
   const enough = circuit.converged ?? 2e-4;
-  let reference = run(circuit, 4 * substeps, paths);
+  let reference = run(circuit, 4 * substeps, paths, 1);
   let halving = Number.POSITIVE_INFINITY;
   while (reference.substeps < 2048) {
-    const finer = run(circuit, 2 * reference.substeps, paths);
+    const finer = run(circuit, 2 * reference.substeps, paths, 1);
     halving = Math.max(...paths.map((_, i) => distance(finer.traces[i]!, reference.traces[i]!)[0] / scales[i]!));
     reference = finer;
     if (halving < enough) break;

@@ -44,7 +44,7 @@ describe.each(hardCircuits)('%s', (_name, circuit) => {
   });
 
   it('has an exact Jacobian and the same bits fused and unfused all along', () => {
-    const { plant } = new Bench(circuit.elements());
+    const { plant } = new Bench(circuit.elements(), { longest: 1 });
     const at = new Map(plant.circuit.commands.map((slot, i) => [slot.path, i]));
     const every = Math.round((circuit.seconds * 1000) / 12);
     for (let k = 0; k < circuit.seconds * 1000; k += 1) {

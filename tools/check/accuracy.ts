@@ -95,7 +95,11 @@ export function measureAccuracy(
 ): AccuracySheet {
   const { circuit, spec } = assembly;
   const plants = [1, ...finer].map((times) =>
-    Plant.alone(circuit, { step: spec.step, substeps: times * spec.substeps }),
+    Plant.alone(circuit, {
+      step: spec.step,
+      substeps: times * spec.substeps,
+      ...(times === 1 ? {} : { longest: 1 }),
+    }),
   );
   const [own, truth] = [plants[0]!, plants[plants.length - 1]!];
   const compared = choose(circuit, scaleOf);

@@ -81,7 +81,7 @@ function differences(plant: Plant, c: InC): { rates: number; jacobian: number; s
     const scale = Math.abs(y[columns[k]!]!) + circuit.states[columns[k]!]!.scale;
     jacobian = Math.max(jacobian, (Math.abs(own.J[k]! - other.J[k]!) * scale) / (term[row]! + 1e-300));
   });
-  const twin = Plant.alone(circuit, plant.settings);
+  const twin = Plant.alone(circuit, { ...plant.settings, longest: 1 });
   twin.y.set(y);
   twin.m.set(m);
   twin.u.set(u);

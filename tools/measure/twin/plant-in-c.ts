@@ -19,6 +19,7 @@ export function plantInC(circuit: Circuit, map: MessageMap, options: PlantInC): 
   const at = places(circuit);
   const list = (values: readonly number[]) =>
     values.length === 0 ? '0' : values.map((value) => literal(value)).join(', ');
+  const latches = circuit.memory.flatMap((slot, i) => (slot.gradual ? [] : [i]));
   const define = (name: string, value: number | string) => `#define ${name} ${value}`;
   return [
     define('STATES', circuit.states.length),
@@ -33,6 +34,8 @@ export function plantInC(circuit: Circuit, map: MessageMap, options: PlantInC): 
     define('SUBSTEPS', options.substeps),
     define('ROW', Math.max(1, options.row)),
     define('BLOCK_MORE', options.blockMore),
+    define('LATCHES', latches.length),
+    `static const int latches[] = {${latches.join(', ') || '0'}};`,
     `static const double y_start[] = {${list(circuit.states.map((one) => one.initial))}};`,
     `static const double m_start[] = {${list(circuit.memory.map((one) => one.initial))}};`,
     `static const double u_start[] = {${list(circuit.commands.map((one) => one.rest))}};`,
@@ -102,6 +105,7 @@ function requireSolver(circuit: Circuit): void {
     'stageOne',
     'stageTwo',
     'stageThree',
+    'strideError',
   ]) {
     if (!new RegExp(`^function ${name}\\(`, 'm').test(circuit.code))
       throw new Error(`the circuit has no function ${name}: the twin no longer fits the solver`);

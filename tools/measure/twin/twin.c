@@ -3,9 +3,9 @@
  * bench), the same messages (messages.h, made by `oilspring wire`), the same sockets, waiting, hash and row of evidence.
  * It has no scenario, no sensors, no watch and no requirements.
  *
- *   twin OWN_PORT PEER_PORT TICKS CORE [SPEED_ROUNDS]
+ *   twin OWN_PORT PEER_PORT TICKS CORE [SPEED_ROUNDS [LONGEST]]
  *
- * With SPEED_ROUNDS it runs that many steps without waiting and prints their cost instead (up to 1000: the states at
+ * With SPEED_ROUNDS (and the longest stride in substeps) it runs that many steps without waiting and prints their cost instead (up to 1000: the states at
  * their end). Prints one line of JSON, times in ns.
  */
 #define _GNU_SOURCE
@@ -29,52 +29,95 @@ static inline double signum(double a) { return a > 0 ? 1 : a < 0 ? -1 : a; }
 
 static double y[STATES], m[MEMORY + 1], u[COMMANDS + 1], next[MEMORY + 1], observed[OBSERVED];
 static double ledger[RATES - STATES], open_power[RATES - STATES];
-static double d[RATES], J[ELIMINATION + 1], k1[STATES], k2[STATES], k3[STATES], k4[STATES], b[STATES + RATES], stage[STATES], estimate[1];
+static double d[RATES], J[ELIMINATION + 1], k1[STATES], k2[STATES], k3[STATES], k4[STATES], b[STATES + RATES], stage[STATES], estimate[2];
 static double block[STATES + MEMORY + COMMANDS + BLOCK_MORE];
 static float ring[64][ROW];
 static unsigned long refused;
+
+/* Strides as in the solver: 1 passes each substep by itself. */
+static int longest = SUBSTEPS;
+
+static void remember(double h)
+{
+    update(stage, u, m, h, next);
+    memcpy(m, next, sizeof m);
+}
+
+/* One attempt of length h; whether it is accurate enough for a stride. The safety net is not part of the twin: its case
+   is counted. */
+static int attempt(double h)
+{
+    ratesAndJacobian(y, u, m, d, J);
+    factor(J, 2 / h);
+    stageOne(J, d, y, h, k1, k2, stage);
+    rates(stage, u, m, b);
+    stageTwo(J, b, h, k1, k2, k3, stage);
+    rates(stage, u, m, b);
+    stageThree(J, b, h, k1, k2, k3, k4, stage, estimate);
+    strideError(k4, estimate);
+    return J[ELIMINATION] >= 0.1 && estimate[0] <= 1 && estimate[1] <= 1;
+}
 
 static void step(void)
 {
     const double h = STEP / SUBSTEPS;
     double length = 0;
-    for (int part = 0; part < SUBSTEPS; part += 1) {
-        update(y, u, m, h, next);
-        memcpy(m, next, sizeof m);
-        ratesAndJacobian(y, u, m, d, J);
-        factor(J, 2 / h);
-        stageOne(J, d, y, h, k1, k2, stage);
-        rates(stage, u, m, b);
-        stageTwo(J, b, h, k1, k2, k3, stage);
-        rates(stage, u, m, b);
-        stageThree(J, b, h, k1, k2, k3, k4, stage, estimate);
-        /* the safety net of the solver is not part of the twin: its case is counted */
-        if (!(J[ELIMINATION] >= 0.1)) refused += 1;
+    memcpy(stage, y, sizeof y);
+    remember(0);
+    int size = longest;
+    for (int left = SUBSTEPS; left > 0;) {
+        if (size > left) size = left;
+        int good = attempt(size * h);
+        if (size > 1) {
+            if (good) {
+                update(stage, u, m, size * h, next);
+                for (int i = 0; i < LATCHES; i += 1) good &= next[latches[i]] == m[latches[i]];
+            }
+            if (!good) {
+                size >>= 1;
+                continue;
+            }
+            memcpy(m, next, sizeof m);
+        } else {
+            if (!(J[ELIMINATION] >= 0.1 && estimate[0] <= 1)) refused += 1;
+            remember(h);
+        }
         for (int i = 0; i < RATES - STATES; i += 1) {
             ledger[i] += 0.5 * (length * (open_power[i] + d[STATES + i]));
             open_power[i] = d[STATES + i];
         }
-        length = h;
+        length = size * h;
         memcpy(y, stage, sizeof y);
+        left -= size;
     }
     observe(y, u, m, observed);
     for (int i = 0; i < RATES - STATES; i += 1) ledger[i] += 0.5 * (length * (open_power[i] + observed[LEDGER_AT + i]));
 }
 
 static uint32_t turn(uint32_t x, int by) { return (x << by) | (x >> (32 - by)); }
+static uint32_t avalanche(uint32_t h)
+{
+    h = (h ^ (h >> 16)) * 0x85ebca6bu;
+    h = (h ^ (h >> 13)) * 0xc2b2ae35u;
+    return h ^ (h >> 16);
+}
 static void hash(const uint32_t *words, size_t count, uint32_t out[2])
 {
-    uint32_t a = 0x243f6a88u, c = 0x85a308d3u;
-    for (size_t i = 0; i < count; i += 2) {
-        uint32_t low = turn(words[i] * 0xcc9e2d51u, 15);
-        a = turn(a ^ (low * 0x1b873593u), 13) * 5u + 0xe6546b64u;
-        uint32_t high = turn(words[i + 1] * 0x38b34ae5u, 16);
-        c = turn(c ^ (high * 0xa1e38b93u), 17) * 5u + 0x561ccd1bu;
-        a += c;
-        c ^= a;
+    uint32_t a = 0x243f6a88u, b2 = 0x85a308d3u, c = 0x13198a2eu, e = 0x03707344u;
+    size_t i = 0;
+    for (; i + 4 <= count; i += 4) {
+        a = turn((a ^ words[i]) * 0x9e3779b1u, 13);
+        b2 = turn((b2 ^ words[i + 1]) * 0x85ebca77u, 15);
+        c = turn((c ^ words[i + 2]) * 0xc2b2ae3du, 17);
+        e = turn((e ^ words[i + 3]) * 0x27d4eb2fu, 11);
     }
-    out[0] = a;
-    out[1] = c;
+    for (; i < count; i += 1) a = turn((a ^ words[i]) * 0x9e3779b1u, 13);
+    a = avalanche(a ^ (uint32_t)count);
+    b2 = avalanche(b2 + a);
+    c = avalanche(c + b2);
+    e = avalanche(e + c);
+    out[0] = a ^ c;
+    out[1] = b2 + e * 0x9e3779b1u;
 }
 
 static double now(void)
@@ -115,6 +158,7 @@ int main(int argc, char **argv)
     memcpy(m, m_start, sizeof m_start);
     memcpy(u, u_start, sizeof u_start);
     observe(y, u, m, observed);
+    if (argc > 6) longest = atoi(argv[6]);
     if (argc > 5) {
         long rounds = atol(argv[5]);
         static double costs[MOST];
