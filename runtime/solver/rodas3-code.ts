@@ -19,8 +19,8 @@ export interface StageCode {
 }
 
 /**
- * A stride may err by a tenth of what the safety net lets pass, and by 1e-4 of a state's scale. States that no rate
- * depends on are not asked.
+ * A stride may err by 1/25 of what the safety net lets pass, and by 2e-5 of a state's scale. States that no rate depends on
+ * are not asked.
  */
 export function strideWeightsOf(
   states: readonly { readonly errorWeight: number; readonly scale: number }[],
@@ -28,7 +28,7 @@ export function strideWeightsOf(
 ): number[] {
   const used = new Set(columns);
   return states.map(({ errorWeight, scale }, i) =>
-    used.has(i) ? (errorWeight > 0 ? 10 * errorWeight : 1e4 / scale) : 0,
+    used.has(i) ? (errorWeight > 0 ? 25 * errorWeight : 5e4 / scale) : 0,
   );
 }
 

@@ -1,3 +1,4 @@
+import { existsSync } from 'node:fs';
 import path from 'node:path';
 import { unitsStoodFor } from '../../bridge/stand-ins.js';
 import { readBench } from '../../configs/bench.js';
@@ -81,6 +82,11 @@ export function planRun(wish: RunWish): RunPlan {
   if (ticks === 0)
     throw new BuildError([
       { path: 'run', what: 'nothing says how long it runs', remedy: 'give --for 20s, or a scenario' },
+    ]);
+  // before anything is built: a name that is taken costs no wait
+  if (wish.record !== undefined && wish.record !== '' && existsSync(wish.record))
+    throw new BuildError([
+      { path: '--record', what: 'it exists already', value: wish.record, remedy: 'choose another name' },
     ]);
   return {
     wish,
