@@ -26,8 +26,8 @@ export const oilVolume = store({
     heat: { unit: 'J', about: 'thermal energy of the oil and of the metal that follows it', scale: 1e5 },
   },
   memory: {
-    leak: { unit: 'kg/s', about: 'oil lost to the surroundings, once a substep' },
-    lost: { unit: 'kg', about: 'oil lost to the surroundings so far' },
+    leak: { unit: 'kg/s', about: 'oil lost to the surroundings, once a substep', gradual: true },
+    lost: { unit: 'kg', about: 'oil lost to the surroundings so far', gradual: true },
   },
   commands: {
     leakArea: {
@@ -148,8 +148,9 @@ export const oilVolume = store({
       0,
       law.orificeMassFlow(oil.pressure, law.STANDARD_PRESSURE, oil.density, oil.density, 0.7 * command.leakArea, 1e4),
     );
+    // what leaked in the substep that has ended is the leak from before
+    memory.lost = memory.lost + step * memory.leak;
     memory.leak = leak;
-    memory.lost = memory.lost + step * leak;
   },
   derivatives({ memory, derivative, oil, wall }) {
     derivative.mass = oil.massFlow - memory.leak;

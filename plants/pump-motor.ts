@@ -29,8 +29,12 @@ export const pumpMotor = branch({
       initial: 0.04,
       gradual: true,
     },
-    mistaken: { unit: 's', about: 'time for which the displacement has been off its request by more than allowed' },
-    delayClock: { unit: 's', about: 'time since the request moved on through the dead time' },
+    mistaken: {
+      unit: 's',
+      about: 'time for which the displacement has been off its request by more than allowed',
+      gradual: true,
+    },
+    delayClock: { unit: 's', about: 'time since the request moved on through the dead time', gradual: true },
     delay1: { unit: '1', about: 'request on its way through the dead time, newest' },
     delay2: { unit: '1', about: 'the one before' },
     delay3: { unit: '1', about: 'and before' },
@@ -391,14 +395,14 @@ export const pumpMotor = branch({
     const asked =
       parameter.request === 0 ? byTorque : parameter.request === 3 ? byCurrent : command.displacementRequest;
     const clock = memory.delayClock + step;
-    const moves = clock >= 0.125 * parameter.deadTime - 0.5 * step;
+    const moves = parameter.deadTime > 0 && clock >= 0.125 * parameter.deadTime - 0.5 * step;
     const now = parameter.deadTime > 0 ? memory.delay8 : asked;
     const stroked = command.enable > 0.5 ? Math.max(parameter.leastDisplacement, Math.min(1, now)) : 0;
     const wanted = parameter.request === 2 ? 1 : stroked;
     const wrong = Math.abs(wanted - state.displacement) > parameter.notFollowing;
     memory.viscosity = 0.5 * (high.viscosity + low.viscosity);
     memory.mistaken = wrong ? Math.min(memory.mistaken + step, 100) : 0;
-    memory.delayClock = moves ? 0 : clock;
+    memory.delayClock = parameter.deadTime > 0 && !moves ? clock : 0;
     memory.delay1 = moves ? asked : memory.delay1;
     memory.delay2 = moves ? memory.delay1 : memory.delay2;
     memory.delay3 = moves ? memory.delay2 : memory.delay3;
