@@ -19,16 +19,16 @@ export interface StageCode {
 }
 
 /**
- * A stride may err by 1/25 of what the safety net lets pass, and by 2e-5 of a state's scale. States that no rate depends on
- * are not asked.
+ * A stride may err by 1/25 of what the safety net lets pass, and by 2e-5 of a state's scale; by 1e-7 where the state is an
+ * energy, for these errors add up in the ledger. States that no rate depends on are not asked.
  */
 export function strideWeightsOf(
-  states: readonly { readonly errorWeight: number; readonly scale: number }[],
+  states: readonly { readonly errorWeight: number; readonly scale: number; readonly unit: string }[],
   columns: readonly number[],
 ): number[] {
   const used = new Set(columns);
-  return states.map(({ errorWeight, scale }, i) =>
-    used.has(i) ? (errorWeight > 0 ? 25 * errorWeight : 5e4 / scale) : 0,
+  return states.map(({ errorWeight, scale, unit }, i) =>
+    used.has(i) ? (errorWeight > 0 ? 25 * errorWeight : (unit === 'J' ? 1e7 : 5e4) / scale) : 0,
   );
 }
 
