@@ -30,6 +30,17 @@ ProtectSystem=strict
 # the only place that is written: make it first
 ReadWritePaths=${where.folder}/recordings
 PrivateTmp=yes
+ProtectHome=read-only
+ProtectKernelTunables=yes
+ProtectKernelModules=yes
+ProtectKernelLogs=yes
+ProtectControlGroups=yes
+ProtectHostname=yes
+RestrictNamespaces=yes
+RestrictSUIDSGID=yes
+LockPersonality=yes
+SystemCallArchitectures=native
+UMask=0027
 # holds the deep idle states of the processors off
 DeviceAllow=/dev/cpu_dma_latency rw
 

@@ -229,6 +229,13 @@ describe('the answer and the unit', () => {
     const unit = systemdUnit({ folder: '/opt/oilspring', node: '/usr/bin/node', user: 'bench' });
     const caps = unit.match(/CAP_[A-Z_]+/g)!;
     expect(new Set(caps)).toEqual(new Set(['CAP_SYS_NICE']));
+    for (const kept of [
+      'ProtectSystem=strict',
+      'ProtectHome=read-only',
+      'NoNewPrivileges=yes',
+      'RestrictNamespaces=yes',
+    ])
+      expect(unit).toContain(`\n${kept}\n`);
     expect(unit).toContain('User=bench');
     expect(unit).not.toMatch(/User=root/);
     expect(unit).toContain('ExecStart=/usr/bin/node dist/tools/oilspring.js run');
