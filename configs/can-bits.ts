@@ -15,6 +15,7 @@ export interface BitClash {
 export function overlappingBits(signals: readonly MapSignal[], bytes: number): BitClash[] {
   const clashes: BitClash[] = [];
   const placed: { readonly signal: MapSignal; readonly bits: ReadonlySet<number> }[] = [];
+  const layouts = new Map(signals.flatMap(({ name, can }) => (can === undefined ? [] : [[name, can] as const])));
   const selectors = new Set(signals.filter((signal) => signal.can?.selector).map((signal) => signal.name));
   for (const signal of signals) {
     const layout = signal.can;
@@ -42,7 +43,7 @@ export function overlappingBits(signals: readonly MapSignal[], bytes: number): B
     }
     for (const other of placed) {
       const shared = bits.find((bit) => other.bits.has(bit));
-      if (shared === undefined || !together(layout, other.signal.can!)) continue;
+      if (shared === undefined || !together(layout, other.signal.can!, layouts)) continue;
       clashes.push({
         signal: signal.name,
         what: `bits shared with ${other.signal.name}`,
@@ -76,10 +77,28 @@ function beyondRange(signal: MapSignal, layout: CanLayout): BitClash | undefined
   };
 }
 
-/** Whether two signals can be in the same frame. */
-function together(a: CanLayout, b: CanLayout): boolean {
-  if (!a.selectedBy || !b.selectedBy || a.selectedBy.signal !== b.selectedBy.signal) return true;
-  return a.selectedBy.values.some(([from, to]) =>
-    b.selectedBy!.values.some(([other, otherTo]) => from <= otherTo && other <= to),
+/** Whether two signals can be in the same frame: no selector above both of them lets in only one. */
+function together(a: CanLayout, b: CanLayout, layouts: ReadonlyMap<string, CanLayout>): boolean {
+  const above = conditionsOf(b, layouts);
+  return conditionsOf(a, layouts).every((own) =>
+    above.every(
+      (other) =>
+        own.signal !== other.signal ||
+        own.values.some(([from, to]) => other.values.some(([least, most]) => from <= most && least <= to)),
+    ),
   );
+}
+
+/** What has to hold for a signal to be there: its selector's values, those of the selector's selector, and so on. */
+function conditionsOf(
+  layout: CanLayout,
+  layouts: ReadonlyMap<string, CanLayout>,
+): NonNullable<CanLayout['selectedBy']>[] {
+  const found: NonNullable<CanLayout['selectedBy']>[] = [];
+  const seen = new Set<string>();
+  for (let by = layout.selectedBy; by !== undefined && !seen.has(by.signal); by = layouts.get(by.signal)?.selectedBy) {
+    seen.add(by.signal);
+    found.push(by);
+  }
+  return found;
 }

@@ -10,6 +10,7 @@ import { allowedCores } from '../../runtime/realtime/scheduling.js';
 import { inlineMore } from '../loop/engine-flags.js';
 import { softwareVersion } from '../run/host-run.js';
 import type { Part, PartResult } from './part.js';
+import { codec } from './parts/codec.js';
 import { fast } from './parts/fast.js';
 import { judge } from './parts/judge.js';
 import { lateness } from './parts/lateness.js';
@@ -28,7 +29,7 @@ import { Workshop } from './workshop.js';
  */
 // as in the loop thread
 inlineMore();
-const parts: readonly Part[] = [lateness, step, twin, stages, judge, replies, fast, recording, page];
+const parts: readonly Part[] = [lateness, step, twin, stages, judge, replies, fast, recording, page, codec];
 
 const program = new Command('measure')
   .description('measures the loop beside cyclictest and a twin in C')
