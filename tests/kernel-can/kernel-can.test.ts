@@ -178,8 +178,8 @@ describe.runIf(canRun)('on the CAN stack of Linux', { timeout: 240_000 }, () => 
       // Only the clock of a guest may be held against the run.
       expect(summary.reasons.filter((one) => one.reason !== 'timing budget')).toEqual([]);
       const ofId = (...ids: string[]): string[] => frames.filter((frame) => ids.includes(frame.split('#')[0]!));
-      // A second of pre-roll and three counted: cycles of 5, 10 and 5 ms.
-      expect(['001', '002', '003'].map((id) => ofId(id).length)).toEqual([800, 400, 800]);
+      // A second of pre-roll, three counted, 300 ms of after-run: cycles of 5, 10 and 5 ms.
+      expect(['001', '002', '003'].map((id) => ofId(id).length)).toEqual([860, 430, 860]);
       expect(ofId('001')[0]).toMatch(/^001##5[0-9A-F]{32}$/);
       expect(summary.links[0]!.received).toBeGreaterThan(100);
       expect(summary.links[0]!.lost).toBe(0);
