@@ -1,5 +1,6 @@
 import { mkdirSync, readdirSync, readFileSync, writeFileSync } from 'node:fs';
 import { afterAll, describe, expect, it } from 'vitest';
+import { Recording } from '../../../runtime/recording/reader.js';
 import type { RunRequirement, RunSummary } from '../../../runtime/run-summary.js';
 import { movedBetween } from '../../../tools/compare/compare-runs.js';
 import { judgeSuite, kept, type SuiteResult } from '../../../tools/suite/result.js';
@@ -161,5 +162,37 @@ describe('suite and compare as commands', () => {
     expect(found.firstState).toBe(-1000);
     expect(found.signals[0]!.path).toMatch(/Sensor/);
     expect((await runCommand('compare', out, out)).code).toBe(0);
+  });
+
+  it('run live, one after another, and go on from before', async () => {
+    const scenarios = folder.file('live-set');
+    mkdirSync(scenarios);
+    writeFileSync(
+      `${scenarios}/hold.yaml`,
+      'scenario: hold\nlasts: $length\nparameters: { length: 200 ms }\ncases: { a: { length: 200 ms }, b: { length: 300 ms } }\nrequirements: { S-1: always abs(body.velocity) < 1 km/h }\n',
+    );
+    const out = folder.file('live-out');
+    const words = ['suite', scenarios, '--bench', truck, '--out', out, '--keep', 'all', '--jobs', '2'];
+    const live = await runCommand(...words, '--pace', 'live');
+    expect(live.output).toContain('live, one after another');
+    const results = ['a', 'b'].map(
+      (name) => JSON.parse(readFileSync(`${out}/hold.${name}.json`, 'utf8')) as SuiteResult,
+    );
+    // a computer that is busy may spoil the timing, and nothing else
+    for (const { verdict, summary } of results) {
+      expect(['pass', 'not valid']).toContain(verdict);
+      expect(summary).toMatchObject({ pace: 'live', ending: 'complete' });
+    }
+    const times = results
+      .map((one) => new Recording(`${out}/${one.recording}`))
+      .map((recording) => {
+        const created = Date.parse(recording.header.created);
+        recording.close();
+        return created;
+      });
+    // the second begins when the first has had its pre-roll of a second, its run and its after-run
+    expect(times[1]! - times[0]!).toBeGreaterThan(1500);
+    const again = await runCommand(...words, '--pace', 'live', '--resume');
+    expect(again.output.match(/from before/g)).toHaveLength(2);
   });
 });
