@@ -104,6 +104,11 @@ describe('sensor', () => {
       'torque-sensor': 'N m',
       'position-sensor': 'input',
       sensor: 'input',
+      // terminals of an I/O box carry whatever their sensor measures
+      'voltage-output': 'input',
+      'current-output': 'input',
+      'frequency-output': 'input',
+      'duty-output': 'input',
     });
   });
 });
