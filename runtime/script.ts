@@ -66,6 +66,14 @@ export function requirementsOf(ofBench: readonly Requirement[], script: ScriptSp
   return [...ofBench.filter(({ id }) => !Object.hasOwn(waived, id)), ...script.requirements];
 }
 
+/**
+ * A script as a recording carries it and gives it back: JSON, which knows no minus zero. A run is to use this form, or else
+ * it is not the run that is derived again.
+ */
+export function recordedForm(script: ScriptSpec): ScriptSpec {
+  return JSON.parse(JSON.stringify(script)) as ScriptSpec;
+}
+
 export const emptyScript: ScriptSpec = {
   name: 'no scenario',
   about: '',

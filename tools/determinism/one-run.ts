@@ -12,7 +12,7 @@ import { signalDigest } from '../../runtime/recording/signal-digest.js';
 import { RecordingWriter } from '../../runtime/recording/writer.js';
 import { createRing } from '../../runtime/ring.js';
 import { RingJournal } from '../../runtime/ring-journal.js';
-import type { ScriptSpec } from '../../runtime/script.js';
+import { recordedForm, type ScriptSpec } from '../../runtime/script.js';
 import { attachModule } from '../loop/attach-links.js';
 import { loadController } from '../loop/controller-module.js';
 import { createLoopControl, LoopBody } from '../loop/engine.js';
@@ -67,7 +67,7 @@ export class Runner {
     const { spec, place, circuit } = made;
     const choose = chooser(number);
     const ticks = Math.min(most, 150 + choose(650));
-    const script = drawScript(spec, choose, ticks);
+    const script = recordedForm(drawScript(spec, choose, ticks));
     const seed = 1 + choose(1e6);
     const assembly = assemble(spec, { seed, script, circuit });
     const hands = drawHands(assembly, choose, ticks);

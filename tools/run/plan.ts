@@ -9,7 +9,7 @@ import { parseQuantity } from '../../configs/quantity.js';
 import { readScenario } from '../../configs/scenario.js';
 import type { SourceText } from '../../configs/source.js';
 import { BuildError } from '../../runtime/contract.js';
-import { emptyScript, type ScriptSpec } from '../../runtime/script.js';
+import { emptyScript, recordedForm, type ScriptSpec } from '../../runtime/script.js';
 import { disturbancesOf } from './disturbances.js';
 
 /** What the command line asks for. */
@@ -73,11 +73,11 @@ export function planRun(wish: RunWish): RunPlan {
       : readScenario(scenarioFile, spec, diskFiles, { case: wish.case, set: wish.set });
   const without = checkedUnits(wish.without ?? [], spec);
   const planned = scenario?.script ?? emptyScript;
-  const script = {
+  const script = recordedForm({
     ...planned,
     traces: [...planned.traces, ...disturbancesOf(wish.disturb ?? [], spec)],
     ...(without.length === 0 ? {} : { without }),
-  };
+  });
   const ticks = wish.for === undefined ? script.ticks : ticksOf(wish.for, spec.step);
   if (ticks === 0)
     throw new BuildError([
