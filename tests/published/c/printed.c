@@ -1,6 +1,6 @@
 /*
  * Solves a circuit that oilspring printed (`check --code c`) by CVODE at a tolerance of 1e-9, with its exact Jacobian.
- * PRINTED is that file. Memory changes where the bench changes it: at the start of each substep.
+ * PRINTED is that file. Memory changes where the bench changes it: when commands are new, and at the end of each substep.
  *
  *   printed INPUT OUTPUT
  *
@@ -30,6 +30,17 @@ static int slopes(double t, N_Vector y, N_Vector fy, SUNMatrix a, void *unused, 
   SUNMatZero(a);
   for (int i = 0; i < OILSPRING_JACOBIAN; i++) SM_ELEMENT_D(a, oilspring_rows[i], oilspring_columns[i]) = values[i];
   return 0;
+}
+/* says whether a latch has moved */
+static int take_memory(const double *y, double length) {
+  double next_memory[OILSPRING_MEMORY + 1];
+  int moved = 0;
+  oilspring_update(y, u, m, length, next_memory);
+  for (int i = 0; i < OILSPRING_MEMORY; i++) {
+    if (latches[i] && next_memory[i] != m[i]) moved = 1;
+    m[i] = next_memory[i];
+  }
+  return moved;
 }
 static void must(int flag, const char *what) {
   if (flag >= 0) return;
@@ -62,24 +73,22 @@ int main(int count, char **words) {
   must(CVodeSetJacFn(solver, slopes), "Jacobian");
   must(CVodeSetMaxNumSteps(solver, 200000), "steps");
   long tick = 0;
+  int pending = 1;
   /* `line` holds the t of the first tick */
   for (int more = 1; more; tick++) {
-    int jumped = tick == 0;
+    int jumped = pending;
     while ((more = fgets(line, sizeof line, in) != NULL) && line[0] != 't')
       if (sscanf(line, "c %d %lf", &i, &value) == 2) u[i] = value, jumped = 1;
+    jumped |= take_memory(y, 0);
     for (int k = 0; k < substeps; k++) {
-      double next_memory[OILSPRING_MEMORY + 1], reached;
-      oilspring_update(y, u, m, step / substeps, next_memory);
-      for (i = 0; i < OILSPRING_MEMORY; i++) {
-        if (latches[i] && next_memory[i] != m[i]) jumped = 1;
-        m[i] = next_memory[i];
-      }
+      double reached;
       if (jumped) must(CVodeReInit(solver, (tick + (double)k / substeps) * step, state), "restart");
-      jumped = 0;
       const double end = (tick + (k + 1.0) / substeps) * step;
       must(CVodeSetStopTime(solver, end), "stop time");
       must(CVode(solver, end, state, &reached, CV_NORMAL), "step");
+      jumped = take_memory(y, step / substeps);
     }
+    pending = jumped;
     oilspring_observe(y, u, m, observed);
     for (i = 0; i < wanted_count; i++) fwrite(&observed[wanted[i]], sizeof(double), 1, out);
   }

@@ -398,7 +398,7 @@ static int rates(double t, N_Vector state, N_Vector slope, void *unused) {
   return 0;
 }
 
-/* ---- what is decided at the start of a substep; says whether anything jumped ------------------------------------- */
+/* ---- what is decided when commands are new (step 0) and at the end of a substep; says whether anything jumped ------------------------------------- */
 
 static int latch(struct relief *r, double pressure) {
   const int was = r->lifted;
@@ -409,9 +409,9 @@ static int decide(const double *y, double step) {
   int jumped = latch(&truck.main_relief, closed(&truck.high_line, y[HIGH_LINE], y[HIGH_LINE_HEAT]).pressure);
   jumped |= latch(&truck.low_relief, closed(&truck.low_line, y[LOW_LINE], y[LOW_LINE_HEAT]).pressure);
   const double asked = COMMAND("isolationValve.power") > 0.5 ? COMMAND("isolationValve.open") : truck.valve_off;
-  if (asked == truck.valve_accepted) truck.valve_waited = 0;
-  else if (truck.valve_waited >= truck.valve_dead - 0.5 * step) truck.valve_accepted = asked, truck.valve_waited = 0, jumped = 1;
-  else truck.valve_waited += step;
+  truck.valve_waited = asked == truck.valve_accepted ? 0 : truck.valve_waited + step;
+  if (asked != truck.valve_accepted && truck.valve_waited >= truck.valve_dead - 0.5 * step)
+    truck.valve_accepted = asked, truck.valve_waited = 0, jumped = 1;
   const int wanted = (int)floor(COMMAND("gearbox.gearRequest") + 0.5);
   char name[20] = "reverseRatio";
   if (wanted > 0) snprintf(name, sizeof name, "ratio%d", wanted);
@@ -488,17 +488,21 @@ int main(int count, char **words) {
   must(CVodeSetLinearSolver(solver, linear, matrix), "linear solver");
   must(CVodeSetMaxNumSteps(solver, 200000), "steps");
   long tick = 0;
+  int pending = 1;
   /* `line` holds the t of the first tick */
   for (int more = 1; more; tick++) {
-    int jumped = tick == 0;
+    int jumped = pending;
     while ((more = fgets(line, sizeof line, in) != NULL) && line[0] != 't')
       if (sscanf(line, "c %d %lf", &index, &value) == 2 && index < command_count) commands[index].value = value, jumped = 1;
+    jumped |= decide(y, 0);
     for (int k = 0; k < substeps; k++) {
       double now = (tick + (double)k / substeps) * step, end = (tick + (k + 1.0) / substeps) * step, reached;
-      if (decide(y, step / substeps) || (k == 0 && jumped)) must(CVodeReInit(solver, now, state), "restart");
+      if (jumped) must(CVodeReInit(solver, now, state), "restart");
       must(CVodeSetStopTime(solver, end), "stop time");
       must(CVode(solver, end, state, &reached, CV_NORMAL), "step");
+      jumped = decide(y, step / substeps);
     }
+    pending = jumped;
     const struct charge full = charged(&truck.high, y[HIGH_MASS], y[HIGH_GAS]), low = charged(&truck.low, y[LOW_MASS], y[LOW_GAS]);
     const double row[] = {full.pressure, low.pressure, closed(&truck.high_line, y[HIGH_LINE], 0).pressure,
         closed(&truck.low_line, y[LOW_LINE], 0).pressure, closed(&truck.pump_case, y[CASE], 0).pressure,
