@@ -1,6 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
-import { dischargeCoefficient, smoothing } from './shared-parameters.js';
+import { dischargeCoefficient, smoothing, spoolStuckAt } from './shared-parameters.js';
 
 /**
  * Isolation valve: a request is taken over after the dead time of its pilot stage, the spool then moves at its opening
@@ -20,14 +20,7 @@ export const isolationValve = branch({
   commands: {
     open: { unit: '1', about: 'wanted position, 0 closed to 1 open', rest: 0, least: 0, most: 1 },
     power: { unit: '1', about: 'supply of the pilot stage, on above 0.5', rest: 1, least: 0, most: 1 },
-    stuckAt: {
-      unit: '1',
-      about: 'position to which it goes and sticks; below 0: free',
-      rest: -1,
-      least: -1,
-      most: 1,
-      fault: true,
-    },
+    stuckAt: spoolStuckAt,
     leakArea: { unit: 'm2', about: 'further leak area', rest: 0, least: 0, most: 1e-3, fault: true },
     speedFactor: { unit: '1', about: 'share of its speed that is left', rest: 1, least: 0.01, most: 1, fault: true },
   },

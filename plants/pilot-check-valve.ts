@@ -1,6 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
-import { dischargeCoefficient, smoothing } from './shared-parameters.js';
+import { checkValveFaults, dischargeCoefficient, smoothing } from './shared-parameters.js';
 
 /**
  * Pilot-operated check valve. It opens from `from` to `to` like a check valve; pressure at `pilot` pushes a piston of
@@ -14,17 +14,7 @@ export const pilotCheckValve = branch({
   valid: 'the oil that the pilot piston takes is left out',
   ports: { from: 'oil', to: 'oil', pilot: 'oil' },
   states: { opening: { unit: '1', about: 'share of the area that is open', least: -0.01, most: 1.01 } },
-  commands: {
-    stuckAt: {
-      unit: '1',
-      about: 'opening at which it sticks; below 0: free',
-      rest: -1,
-      least: -1,
-      most: 1,
-      fault: true,
-    },
-    leakArea: { unit: 'm2', about: 'area that stays open', rest: 0, least: 0, most: 1e-3, fault: true },
-  },
+  commands: checkValveFaults,
   readings: {
     massFlow: { unit: 'kg/s', about: 'mass flow' },
     flow: { unit: 'm3/s', about: 'volume flow at the density upstream' },

@@ -1,6 +1,6 @@
 import { branch } from './define.js';
 import * as flowLaws from './laws/flow.js';
-import { dischargeCoefficient, smoothing } from './shared-parameters.js';
+import { dischargeCoefficient, smoothing, spoolStuckAt } from './shared-parameters.js';
 
 /**
  * Proportional valve: the spool follows the request as a second-order system whose speed is limited; the area grows in
@@ -19,14 +19,7 @@ export const proportionalValve = branch({
   commands: {
     request: { unit: '1', about: 'wanted position, 0 shut to 1 open', rest: 0, least: 0, most: 1 },
     power: { unit: '1', about: 'supply, on above 0.5', rest: 1, least: 0, most: 1 },
-    stuckAt: {
-      unit: '1',
-      about: 'position to which it goes and sticks; below 0: free',
-      rest: -1,
-      least: -1,
-      most: 1,
-      fault: true,
-    },
+    stuckAt: spoolStuckAt,
   },
   readings: {
     massFlow: { unit: 'kg/s', about: 'mass flow' },

@@ -1,5 +1,12 @@
 import { branch } from './define.js';
 import * as frictionLaws from './laws/friction.js';
+import {
+  brakeBristles,
+  brakeMaximumTorque,
+  brakeTorqueLeft,
+  frictionBrakeReadings,
+  frictionBrakeStates,
+} from './shared-parameters.js';
 
 /**
  * Service brake on a shaft against the frame: bristle friction whose capacity follows the demand with a first-order
@@ -11,33 +18,16 @@ export const serviceBrake = branch({
   source: 'Canudas de Wit et al., IEEE Trans. Autom. Control 40 (1995) 419 (bristles)',
   valid: 'no fade with temperature',
   ports: { shaft: 'shaft' },
-  states: {
-    application: { unit: '1', about: 'application as a share of the full one', least: -0.001, scale: 1 },
-    deflection: { unit: '1', about: 'bristle deflection', scale: 1 },
-    brakeEnergy: { unit: 'J', about: 'heat of braking so far', scale: 1e5 },
-  },
+  states: frictionBrakeStates,
   commands: {
     demand: { unit: '1', about: 'wanted application, 0 released to 1 full', rest: 0, least: 0, most: 1 },
-    gainFactor: { unit: '1', about: 'share of the brake torque that is left', rest: 1, least: 0, most: 2, fault: true },
+    gainFactor: brakeTorqueLeft,
   },
-  readings: {
-    torque: { unit: 'N m', about: 'torque against the shaft' },
-    capacity: { unit: 'N m', about: 'greatest torque at the present application', least: 0 },
-    brakePower: { unit: 'W', about: 'heat of braking', least: 0 },
-  },
+  readings: frictionBrakeReadings,
   parameters: {
-    maximumTorque: { unit: 'N m', about: 'torque at full application', least: 1, usual: [500, 30000] },
+    maximumTorque: brakeMaximumTorque,
     applicationTime: { unit: 's', about: 'lag of the application', default: 0.08, least: 0.003, usual: [0.05, 0.5] },
-    bristleAngle: {
-      unit: 'rad',
-      about: 'slip after which friction is built up',
-      default: 0.008,
-      least: 0.002,
-      most: 0.1,
-    },
-    bristleDamping: { unit: 's/rad', about: 'damping of sticking', default: 0.02, least: 0, most: 1 },
-    staticFactor: { unit: '1', about: 'sticking over sliding torque', default: 1, least: 1, most: 2 },
-    staticWidth: { unit: 'rad/s', about: 'slip over which it falls to sliding', default: 0.5, least: 0.01 },
+    ...brakeBristles,
   },
   starts: { application: { unit: '1', about: 'application', default: 0, least: 0, most: 1 } },
   laws: frictionLaws,

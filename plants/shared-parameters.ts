@@ -1,6 +1,6 @@
-import type { ParameterDeclaration } from '../runtime/contract.js';
+import type { CommandDeclaration, ParameterDeclaration } from '../runtime/contract.js';
 
-/** Parameters that several elements declare alike. */
+/** Parameters, states, commands and readings that several elements declare alike. */
 
 export const dischargeCoefficient = {
   unit: '1',
@@ -83,3 +83,57 @@ export const oilStoreParameters = {
     usual: [0.005, 0.5],
   },
 } as const;
+
+/** A friction brake of a shaft against the frame, whatever applies it. */
+export const frictionBrakeStates = {
+  application: { unit: '1', about: 'application as a share of the full one', least: -0.001, scale: 1 },
+  deflection: { unit: '1', about: 'bristle deflection', scale: 1 },
+  brakeEnergy: { unit: 'J', about: 'heat of braking so far', scale: 1e5 },
+} as const;
+export const frictionBrakeReadings = {
+  torque: { unit: 'N m', about: 'torque against the shaft' },
+  capacity: { unit: 'N m', about: 'greatest torque at the present application', least: 0 },
+  brakePower: { unit: 'W', about: 'heat of braking', least: 0 },
+} as const;
+export const brakeTorqueLeft = {
+  unit: '1',
+  about: 'share of the brake torque that is left',
+  rest: 1,
+  least: 0,
+  most: 2,
+  fault: true,
+} as const satisfies CommandDeclaration;
+export const brakeMaximumTorque = {
+  unit: 'N m',
+  about: 'torque at full application',
+  least: 1,
+  usual: [500, 30000],
+} as const satisfies ParameterDeclaration;
+export const brakeBristles = {
+  bristleAngle: {
+    unit: 'rad',
+    about: 'slip after which friction is built up',
+    default: 0.008,
+    least: 0.002,
+    most: 0.1,
+  },
+  bristleDamping: { unit: 's/rad', about: 'damping of sticking', default: 0.02, least: 0, most: 1 },
+  staticFactor: { unit: '1', about: 'sticking over sliding torque', default: 1, least: 1, most: 2 },
+  staticWidth: { unit: 'rad/s', about: 'slip over which it falls to sliding', default: 0.5, least: 0.01 },
+} as const satisfies Record<string, ParameterDeclaration>;
+
+/** Faults of a check valve, with a pilot or without. */
+export const checkValveFaults = {
+  stuckAt: { unit: '1', about: 'opening at which it sticks; below 0: free', rest: -1, least: -1, most: 1, fault: true },
+  leakArea: { unit: 'm2', about: 'area that stays open', rest: 0, least: 0, most: 1e-3, fault: true },
+} as const satisfies Record<string, CommandDeclaration>;
+
+/** Of a spool that a command moves. */
+export const spoolStuckAt = {
+  unit: '1',
+  about: 'position to which it goes and sticks; below 0: free',
+  rest: -1,
+  least: -1,
+  most: 1,
+  fault: true,
+} as const satisfies CommandDeclaration;
