@@ -3,7 +3,7 @@ import type { EventKind } from '../../runtime/journal.js';
 import { watchLevelNames } from '../../runtime/watch-levels.js';
 import { pressureSettings } from '../../runtime/watch-settings.js';
 import type { TerminalFrame, TerminalHeadline, TerminalNote, TerminalPressure } from '../terminal/frame.js';
-import type { RunView } from './host-run.js';
+import type { JournaledEvent, RunView } from './host-run.js';
 
 /** Makes what the terminal shows out of the rows and events that a run hands over. */
 export class Frames {
@@ -58,14 +58,7 @@ export class Frames {
   }
 
   note(
-    event: {
-      readonly tick: number;
-      readonly code: number;
-      readonly subject: number;
-      readonly a: number;
-      readonly b: number;
-      readonly c: number;
-    },
+    event: JournaledEvent,
     text: (kind: EventKind, subject: string, a: number, b: number, c: number) => string,
   ): TerminalNote | undefined {
     const { ready, plan } = this.view;

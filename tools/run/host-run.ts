@@ -35,6 +35,16 @@ export interface RunView {
   readonly hands: HandChannel | undefined;
 }
 
+/** An event as the host takes it from the ring; `code` and `subject` index the catalogue of the run. */
+export interface JournaledEvent {
+  readonly tick: number;
+  readonly code: number;
+  readonly subject: number;
+  readonly a: number;
+  readonly b: number;
+  readonly c: number;
+}
+
 export interface RunHooks {
   /** Everything is built; the recording is open. */
   onReady?(view: RunView): void;
@@ -44,17 +54,7 @@ export interface RunHooks {
   onRows?(view: RunView, ticks: Float64Array, values: Float32Array, count: number): void;
   /** The last row of each look at the ring, and each event. */
   onRow?(view: RunView, tick: number, values: Float32Array): void;
-  onEvent?(
-    view: RunView,
-    event: {
-      readonly tick: number;
-      readonly code: number;
-      readonly subject: number;
-      readonly a: number;
-      readonly b: number;
-      readonly c: number;
-    },
-  ): void;
+  onEvent?(view: RunView, event: JournaledEvent): void;
   /** From the host's timer, about every 200 ms. */
   onTimer?(view: RunView): void;
   readonly abort?: AbortSignal;
